@@ -1,0 +1,256 @@
+"""One reader, or one reviewer, at one queue: everything the desk and the commands do with an open queue."""
+
+from __future__ import annotations
+
+import contextlib
+import sqlite3
+from array import array
+from collections.abc import Iterable, Mapping, Sequence
+from typing import TYPE_CHECKING
+
+from tui.errors import HandleError, UnknownNameError
+from tui.model import CHECKS, KINDS, RULINGS, Candidate, Evidence, Fit, Reviewer, Ruling, Settings
+from tui.store import candidates, claims, connect, drafts, evidence, reviewers, rulings, settings, views
+from tui.workflow.clock import new_id, utc_now
+from tui.workflow.records import CandidateView, Filter, QueueRow, StoryLine
+
+if TYPE_CHECKING:
+    from tui.checks import Curve
+    from tui.data.load import BandRow
+    from tui.workflow.tallying import Tally
+
+JOIN_HINT = "Join first: plainlight join QUEUE HANDLE."
+
+
+class Session:
+    """An open queue, seen with the eyes of one reviewer or, without a handle, of nobody.
+
+    Not to be shared between threads: each takes its own with `clone()`. Reading never reveals what the seal
+    covers: every view asks the store as `reviewer`.
+    """
+
+    def __init__(self, path: str, connection: sqlite3.Connection, reviewer: Reviewer | None, write: bool) -> None:
+        self.path = path
+        self.reviewer = reviewer
+        self.connection = connection
+        self.write = write
+        self.settings: Settings = settings.read_settings(connection)
+
+    # --- opening and closing ---
+
+    @classmethod
+    def open(cls, path: str, handle: str | None = None, *, write: bool = True) -> Session:
+        """Open an existing queue; `handle` must have joined it.
+
+        Raises:
+            HandleError: nobody joined under `handle`.
+            StoreError: no such file, no queue, newer than the program, or on a network filesystem.
+        """
+        connection = connect.open_queue(path, write=write)
+        try:
+            reviewer = reviewer_named(connection, handle) if handle else None
+            return cls(path, connection, reviewer, write)
+        except BaseException:
+            connection.close()
+            raise
+
+    def clone(self) -> Session:
+        """The same reader on a connection of its own, for another thread."""
+        return Session(self.path, connect.open_queue(self.path, write=self.write), self.reviewer, self.write)
+
+    def close(self) -> None:
+        """Close the connection; the session is of no use afterwards."""
+        self.connection.close()
+
+    def __enter__(self) -> Session:
+        return self
+
+    def __exit__(self, *exc_info: object) -> None:
+        self.close()
+
+    def data_version(self) -> int:
+        """A number that changes when another connection has written to the queue."""
+        return connect.data_version(self.connection)
+
+    def refresh_settings(self) -> Settings:
+        """Read the settings again, as someone may have set them since."""
+        self.settings = settings.read_settings(self.connection)
+        return self.settings
+
+    @property
+    def reader_id(self) -> str | None:
+        """The reviewer's id, or None for a reader without a handle."""
+        return self.reviewer.id if self.reviewer else None
+
+    # --- the queue ---
+
+    def order(self, sort: str = "oddness", descending: bool = True, where: Filter | None = None) -> array[int]:
+        """Ids of the candidates that `where` lets through, in order, as this reader may know it."""
+        return views.view_order(
+            self.connection, self.reader_id, sort=sort, descending=descending, where=where or Filter()
+        )
+
+    def rows(self, ids: Sequence[int]) -> list[QueueRow]:
+        """One row for each id, in the order asked."""
+        return views.view_rows(self.connection, self.reader_id, ids)
+
+    def counts(self) -> dict[str, int]:
+        """How many candidates each filter would show this reader."""
+        return views.view_counts(self.connection, self.reader_id)
+
+    def find(self, text: str, substring: bool = False) -> array[int]:
+        """Ids of the candidates whose name starts with `text`, or holds it."""
+        search = views.find_substring if substring else views.find_prefix
+        return search(self.connection, text)
+
+    def id_of(self, name: str) -> int:
+        """The id of a candidate in this file. UnknownNameError if there is none of that name."""
+        return candidates.candidate_id(self.connection, name)
+
+    def name_of(self, candidate_id: int) -> str:
+        """The name of a candidate of this file."""
+        return candidates.candidate_name(self.connection, candidate_id)
+
+    def next_for_me(self, skip: Iterable[str] = ()) -> str | None:
+        """The candidate that needs this reviewer most and is on nobody's screen; None when nothing does."""
+        return views.next_for(self.connection, self.needed_reviewer().id, utc_now(), skip=frozenset(skip))
+
+    def claim(self, name: str) -> None:
+        """Say that this reviewer is looking at `name`, for 15 minutes."""
+        claims.claim(self.connection, name, self.needed_reviewer().id, utc_now())
+
+    def release(self, name: str) -> None:
+        """Say that this reviewer no longer looks at `name`."""
+        claims.release(self.connection, name, self.needed_reviewer().id)
+
+    # --- one candidate ---
+
+    def candidate(self, name: str) -> Candidate:
+        """What was measured of a candidate."""
+        return candidates.get_candidate(self.connection, name)
+
+    def view(self, name: str) -> CandidateView:
+        """Where a candidate stands, as far as this reader may know."""
+        return views.standing_for(self.connection, self.reader_id, name)
+
+    def stored_evidence(self, name: str) -> dict[str, Evidence]:
+        """The evidence kept in the queue, which may be outdated; computes nothing."""
+        return evidence.current_evidence(self.connection, name)
+
+    def evidence(self, name: str, kinds: Sequence[str] = KINDS) -> dict[str, Evidence]:
+        """Today's evidence: what lacks or is outdated is computed and stored first."""
+        from tui.workflow import assessing
+
+        return assessing.evidence_for(self.connection, name, kinds, self.settings, store=self.write)
+
+    def curve(self, name: str, check: str, fit_index: int = 0) -> Curve | None:
+        """The spectrum of one of a check's fits, by component; None where the check fitted nothing."""
+        from tui.workflow import probing
+
+        return probing.fit_curve(self.candidate(name), self.evidence(name, (check,))[check], fit_index, self.settings)
+
+    def probe(
+        self, name: str, check: str, fixed: Mapping[str, float], dropped: Iterable[str] = ()
+    ) -> tuple[Fit, Curve]:
+        """A fit of `check` with some parameters fixed and some bands dropped, and its curve; stores nothing."""
+        from tui.workflow import probing
+
+        return probing.probe(self.candidate(name), check, fixed, frozenset(dropped), self.settings)
+
+    def band_info(self) -> Mapping[str, BandRow]:
+        """Every band by name: pivot wavelength, beam, saturation and so on."""
+        from tui.data.load import bands
+
+        return bands()
+
+    # --- rulings ---
+
+    def rule(
+        self, name: str, check: str, ruling: str, note: str = "", evidence_digest: str | None = None
+    ) -> Ruling:
+        """Record this reviewer's ruling; it is in the file when this returns.
+
+        Args:
+            evidence_digest: of the evidence on screen; None computes lacking evidence first and cites that.
+        Raises:
+            UnknownNameError: no such candidate, check or ruling.
+            StoreError: refused by the rules of the log.
+        """
+        reviewer = self.needed_reviewer()
+        if check not in CHECKS:
+            raise UnknownNameError("check", check, f"The checks are {', '.join(CHECKS)}.")
+        if ruling not in RULINGS:
+            raise UnknownNameError("ruling", ruling, f"A ruling is one of {', '.join(RULINGS)}.")
+        if evidence_digest is None:
+            evidence_digest = self.evidence(name, (check,))[check].digest
+        view = self.view(name)
+        own = view.own.get(check)
+        made = Ruling(
+            candidate=view.name,
+            check=check,
+            reviewer_id=reviewer.id,
+            ruling=ruling,
+            note=note,
+            evidence_digest=evidence_digest,
+            seen_others=view.seal_open,
+            replaces=own.id if own else "",
+            utc=utc_now(),
+            id=new_id(),
+        )
+        return rulings.append_ruling(self.connection, made)
+
+    def withdraw(self, name: str, check: str, note: str = "") -> Ruling:
+        """Take back this reviewer's ruling on `check`. StoreError when there is none to take back."""
+        own = self.view(name).own.get(check)
+        digest = own.evidence_digest if own else ""
+        return self.rule(name, check, "withdrawn", note, evidence_digest=digest)
+
+    def draft(self, name: str, check: str) -> str:
+        """The note this reviewer was typing on `check`, or ''."""
+        return drafts.draft(self.connection, self.needed_reviewer().id, name, check)
+
+    def save_draft(self, name: str, check: str, text: str) -> None:
+        """Keep a note that is being typed; '' forgets it."""
+        drafts.save_draft(self.connection, self.needed_reviewer().id, name, check, text)
+
+    def position(self) -> tuple[str, str] | None:
+        """Candidate and check this reviewer was last at."""
+        return drafts.position(self.connection, self.needed_reviewer().id)
+
+    def save_position(self, name: str, check: str) -> None:
+        """Keep where this reviewer is, to resume there."""
+        drafts.save_position(self.connection, self.needed_reviewer().id, name, check)
+
+    def story(self, name: str) -> list[StoryLine]:
+        """What happened to a candidate, in time order, as far as this reader may know."""
+        return views.story(self.connection, self.reader_id, name)
+
+    def tally(self) -> Tally:
+        """The team's standing. Whoever shows it to a reviewer names only candidates whose seal is open to them."""
+        from tui.workflow import tallying
+
+        return tallying.tally(self.connection, self.settings, now=utc_now())
+
+    def needed_reviewer(self) -> Reviewer:
+        """The reviewer; HandleError for a reader without a handle."""
+        if self.reviewer is None:
+            raise HandleError("", f"This needs a handle. {JOIN_HINT}")
+        return self.reviewer
+
+
+def reviewer_named(connection: sqlite3.Connection, handle: str) -> Reviewer:
+    """The reviewer who joined under `handle`; HandleError, saying how to join, if nobody did."""
+    found = reviewers.reviewer_by_handle(connection, handle)
+    if found is None:
+        raise HandleError(handle, f"Nobody joined this queue as {handle!r}. {JOIN_HINT}")
+    return found
+
+
+@contextlib.contextmanager
+def opened(path: str, handle: str | None = None, *, write: bool = True):
+    """A session that is closed on the way out, for commands."""
+    session = Session.open(path, handle, write=write)
+    try:
+        yield session
+    finally:
+        session.close()
