@@ -30,6 +30,26 @@ NATURES = (*CHECKS, "none")
 EMPTY: Mapping[str, Any] = MappingProxyType({})
 
 
+@dataclass(frozen=True, slots=True, eq=False)
+class Band:
+    """One photometric band: its response, its magnitudes and what limits it."""
+
+    name: str
+    pivot_um: float  # Koornneef 1986 pivot wavelength, micron
+    mag_system: str  # "Vega" or "AB"
+    zero_point_jy: float  # flux density of magnitude 0
+    floor: float  # calibration floor c_b, fraction of the flux
+    instrument: str
+    wave_um: FloatArray  # shape (M,), micron, strictly increasing; one entry where only the pivot is known
+    response: FloatArray  # shape (M,), photon response, any scale
+    reference_spectrum: str = ""  # "" flat F_nu; "nufnu" nu F_nu constant; "planck10000": what quoted Jy assume
+    reference_um: float = math.nan  # wavelength at which quoted Jy hold
+    beam_fwhm_arcsec: float = math.nan
+    saturation_mag: float = math.nan
+    limit_mag: float = math.nan
+    source: str = ""
+
+
 @dataclass(frozen=True, slots=True)
 class Measurement:
     """One band's flux density or upper limit, as fitted and as given."""
