@@ -27,8 +27,6 @@ STATES = ("open", "split", "explains", "short", "nodata")
 OUTCOMES = ("ordinary", "explained", "unexplained", "pending")
 NATURES = (*CHECKS, "none")
 
-EMPTY: Mapping[str, Any] = MappingProxyType({})
-
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Band:
@@ -61,7 +59,7 @@ class Measurement:
     nsigma: float = 2.0
     source: str = ""
     epoch: str = ""  # as given: ISO date, MJD or catalogue release
-    flags: Mapping[str, str] = EMPTY  # catalogue column -> its text for this band
+    flags: Mapping[str, str] = field(default_factory=dict)  # catalogue column -> its text for this band
     exclude: bool = False  # kept, shown, not fitted
     value: float = math.nan  # as given, in `unit`
     value_error: float = math.nan
@@ -75,7 +73,7 @@ class Neighbour:
 
     separation_arcsec: float
     position_angle_deg: float = math.nan
-    fluxes_jy: Mapping[str, float] = EMPTY  # band -> flux density
+    fluxes_jy: Mapping[str, float] = field(default_factory=dict)  # band -> flux density
     source: str = ""
 
 
@@ -105,7 +103,7 @@ class Candidate:
 
     name: str
     measurements: tuple[Measurement, ...] = ()
-    facts: Mapping[str, Any] = EMPTY  # names and units of tui/data/facts.ecsv: ra, dec, parallax, ruwe, av_max ...
+    facts: Mapping[str, Any] = field(default_factory=dict)  # names and units of tui/data/facts.ecsv: ra, dec, parallax, ruwe, av_max ...
     neighbours: tuple[Neighbour, ...] = ()
     dips: tuple[Dip, ...] = ()
     spectrum: Spectrum | None = None
@@ -132,8 +130,8 @@ class Fit:
     p: float
     aic: float
     bic: float
-    params: Mapping[str, Param] = EMPTY
-    pulls: Mapping[str, float] = EMPTY  # band -> (measured - model)/sigma; for a limit 0 where it is met
+    params: Mapping[str, Param] = field(default_factory=dict)
+    pulls: Mapping[str, float] = field(default_factory=dict)  # band -> (measured - model)/sigma; for a limit 0 where it is met
     minus2lnl: float = math.nan
 
 
@@ -146,7 +144,7 @@ class Evidence:
     adequate: bool | None  # None: untestable
     fits: tuple[Fit, ...] = ()  # best first: lowest BIC
     cautions: tuple[str, ...] = ()
-    facts: Mapping[str, Any] = EMPTY  # JSON values only
+    facts: Mapping[str, Any] = field(default_factory=dict)  # JSON values only
     digest: str = ""  # of inputs and settings; set by workflow
     bands: tuple[str, ...] = ()  # bands fitted, in order of wavelength
 
