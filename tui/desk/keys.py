@@ -1,0 +1,193 @@
+"""Every key of the desk: one table per place, from which bindings, key lines and help are all made.
+
+A reader may give other keys in the configuration file, by the id of the action:
+
+    [keys]
+    "queue.next" = "n"
+    "candidate.explains" = "1"
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from types import MappingProxyType
+
+from textual.binding import Binding
+
+from tui.errors import SettingError
+from tui.model import CHECKS
+
+# What a terminal, its multiplexer or the shell does with these is left to them.
+RESERVED = frozenset({"ctrl+a", "ctrl+b", "ctrl+c", "ctrl+d", "ctrl+h", "ctrl+q", "ctrl+s", "ctrl+w", "ctrl+z"})
+
+
+@dataclass(frozen=True, slots=True)
+class Key:
+    """One action of one place."""
+
+    id: str  # `place.action`, the name used in the configuration file
+    keys: str  # names that Textual gives to keys, separated by commas
+    action: str
+    label: str  # on the key line: one or two words
+    why: str  # in help: what it does and what for, one sentence
+    rank: int = 2  # on the key line: 1 stays longest when room is short; 0 never stands there
+
+
+_CHECK_KEYS = dict(zip(CHECKS, "sixbd", strict=True))
+
+
+def _list_keys(place: str) -> tuple[Key, ...]:
+    return (
+        Key(f"{place}.up", "up,k", "up", "up", "One line up.", 0),
+        Key(f"{place}.down", "down,j", "down", "down", "One line down.", 0),
+        Key(f"{place}.page_up", "pageup", "page_up", "page up", "One screen up.", 0),
+        Key(f"{place}.page_down", "pagedown,space", "page_down", "page down", "One screen down.", 0),
+        Key(f"{place}.first", "home,g", "first", "first", "To the first line.", 0),
+        Key(f"{place}.last", "end,G", "last", "last", "To the last line.", 0),
+    )
+
+
+_LEAVE = Key("leave.back", "q", "back", "back", "Back to where you came from.", 1)
+_HELP = Key("desk.help", "question_mark", "help", "help", "The keys of this place, each with its reason.", 1)
+_THEME = Key("desk.theme", "T", "next_theme", "colours", "The next set of colours: dark, light, contrast, terminal.", 0)
+
+QUEUE = (
+    Key("queue.next", "m", "next_for_me", "next for me",
+        "Open the candidate that needs you most and is on nobody's screen.", 1),
+    Key("queue.open", "enter", "open", "open", "Open the chosen candidate, at the first check you have not ruled.", 1),
+    *(
+        Key(f"queue.unresolved_{check}", key, f"unresolved('{check}')", "unresolved",
+            f"Only candidates whose check {check} is unresolved (open or split), as far as you may see; again for all.", 0)
+        for check, key in _CHECK_KEYS.items()
+    ),
+    Key("queue.needs_me", "n", "needs_me", "needs me",
+        "Only candidates that still need a ruling from you; again for all.", 2),
+    Key("queue.all", "0", "all", "all", "Every candidate: drops filter and search.", 2),
+    Key("queue.find", "slash", "find", "find",
+        "Search the names: those that begin with what you type, then those that hold it.", 2),
+    Key("queue.order", "o", "order", "order", "The next order: oddness, name, what you have ruled, outcome.", 2),
+    Key("queue.reverse", "O", "reverse", "reverse", "Turn the order around.", 0),
+    Key("queue.story", "y", "story", "story", "What happened to the chosen candidate, in time order.", 3),
+    Key("queue.tally", "t", "tally", "tally", "How far the team is, whether it can be trusted, and what is left.", 2),
+    *_list_keys("queue"),
+    Key("queue.quit", "q", "quit", "quit", "Leave. Everything you ruled is already in the file.", 1),
+)
+TALLY = (
+    Key("tally.up", "up,k", "up", "up", "The line above.", 0),
+    Key("tally.down", "down,j", "down", "down", "The line below.", 0),
+    Key("tally.list", "enter", "list", "list what a line counts",
+        "Show the candidates that the line counts, in the queue.", 1),
+    Key("tally.reviewers", "r", "reviewers", "reviewers", "What each reviewer has done. There is no ranking.", 2),
+    Key("tally.write", "w", "write_out", "write out", "Where to find the command that writes the vetted list.", 2),
+)
+SPLIT = (
+    Key("split.explains", "e", "choose('explains')", "explains",
+        "Choose: the check explains the data. Enter records it.", 1),
+    Key("split.short", "f", "choose('short')", "falls short", "Choose: the check falls short of the data.", 1),
+    Key("split.unclear", "u", "choose('unclear')", "unclear",
+        "Choose: these data cannot tell. It is not counted as sure.", 1),
+    Key("split.note", "a", "note", "a note", "Write a note beside your ruling: what decided it.", 2),
+    Key("split.record", "enter", "record", "record",
+        "Record what you chose, with the note, as seen with the others' in view.", 1),
+    Key("split.up", "up,k", "up", "up", "Scroll up.", 0),
+    Key("split.down", "down,j", "down", "down", "Scroll down.", 0),
+)
+STORY = _list_keys("story")
+HELP = (
+    Key("help.up", "up", "up", "up", "The line above.", 0),
+    Key("help.down", "down", "down", "down", "The line below.", 0),
+    Key("help.page_up", "pageup", "page_up", "page up", "One screen up.", 0),
+    Key("help.page_down", "pagedown", "page_down", "page down", "One screen down.", 0),
+    Key("help.find", "slash", "find", "find an action", "Type part of what you want to do.", 1),
+    Key("help.do", "enter", "do", "do it", "Do the chosen action, back where you came from.", 1),
+)
+CANDIDATE = (
+    Key("candidate.explains", "e", "choose('explains')", "explains",
+        "Choose: the check explains the data. Enter records it.", 1),
+    Key("candidate.short", "f", "choose('short')", "falls short", "Choose: the check falls short of the data.", 1),
+    Key("candidate.unclear", "u", "choose('unclear')", "unclear", "Choose: these data cannot tell.", 1),
+    Key("candidate.record", "enter", "record", "record", "Record what you chose, with its note.", 1),
+    Key("candidate.note", "a", "note", "a note",
+        "Write a note beside the ruling. Tab leaves it; it is kept as you type.", 1),
+    Key("candidate.next_check", "tab", "next_check", "check", "The next check.", 1),
+    *(
+        Key(f"candidate.check_{check}", key, f"check('{check}')", "check", f"Go to the check {check}.", 0)
+        for check, key in _CHECK_KEYS.items()
+    ),
+    Key("candidate.views", "v", "views", "views", "The next page: mixture, dips, neighbours, pictures, story.", 2),
+    Key("candidate.plot", "p", "plot", "plot", "The plot alone, as large as the screen; again for the numbers.", 2),
+    Key("candidate.hand", "h", "hand", "hand", "Change parameters by hand: the curve and chi-square follow.", 2),
+    Key("candidate.compare", "c", "compare", "compare", "Draw another check's fit on the same plot.", 2),
+    Key("candidate.later", "l", "later", "later", "Leave this candidate for later and take the next.", 2),
+    Key("candidate.withdraw", "w", "withdraw", "withdraw", "Take back your ruling on this check.", 2),
+    Key("candidate.left", "left", "point(-1)", "point", "The point to the left, in words.", 0),
+    Key("candidate.right", "right", "point(1)", "point", "The point to the right, in words.", 0),
+    Key("candidate.up", "up", "up", "up", "Up; in hand mode, more of the chosen parameter.", 0),
+    Key("candidate.down", "down", "down", "down", "Down; in hand mode, less of the chosen parameter.", 0),
+    Key("candidate.zoom_in", "plus", "zoom(1)", "zoom", "Closer.", 0),
+    Key("candidate.zoom_out", "minus", "zoom(-1)", "zoom", "Farther.", 0),
+    Key("candidate.drop", "space", "drop", "drop",
+        "In hand mode, leave the band under the cursor out of the fit, or take it in again.", 0),
+    Key("candidate.reset", "0", "reset", "reset", "The whole plot again; in hand mode, the program's own fit.", 0),
+    Key("candidate.next", "m", "next_for_me", "next for me", "The next candidate that needs you.", 2),
+)
+PLACES: Mapping[str, tuple[Key, ...]] = MappingProxyType(
+    {
+        "queue": (*QUEUE, _THEME, _HELP),
+        "candidate": (*CANDIDATE, _LEAVE, _THEME, _HELP),
+        "tally": (*TALLY, _LEAVE, _THEME, _HELP),
+        "split": (*SPLIT, _LEAVE, _THEME, _HELP),
+        "story": (*STORY, _LEAVE, _THEME, _HELP),
+        "help": (*HELP, _LEAVE),
+    }
+)
+PLACE_TITLES = MappingProxyType(
+    {"queue": "Queue", "candidate": "Candidate", "tally": "Tally", "split": "Split", "story": "Story", "help": "Help"}
+)
+_SHOWN = MappingProxyType(
+    {"enter": "Enter", "question_mark": "?", "slash": "/", "space": "Space", "tab": "Tab", "up": "Up", "down": "Down"}
+    | {"left": "Left", "right": "Right", "pageup": "PgUp", "pagedown": "PgDn", "home": "Home", "end": "End"}
+    | {"plus": "+", "minus": "-", "backspace": "Backspace", "escape": "Esc", "comma": ",", "full_stop": "."}
+)
+
+
+def bindings(place: str) -> list[Binding]:
+    """The bindings of a place, each with the id by which a reader may remap it."""
+    return [Binding(key.keys, key.action, key.label, show=False, id=key.id) for key in PLACES[place]]
+
+
+def checked_keymap(wanted: Mapping[str, str]) -> dict[str, str]:
+    """The keys that a reader asked for, if they can all be had.
+
+    Raises:
+        SettingError: an unknown action, a key that stays the terminal's, or one key for two actions of a place.
+    """
+    known = {key.id: key for place in PLACES.values() for key in place}
+    for action, keys in wanted.items():
+        if action not in known:
+            raise SettingError(f"keys.{action}", f"there is no such action. They are {', '.join(sorted(known))}.")
+        taken = RESERVED.intersection(keys.split(","))
+        if taken or not keys.strip():
+            raise SettingError(f"keys.{action}", f"{keys!r} cannot be used: {', '.join(sorted(RESERVED))} stay the terminal's.")
+    for place, entries in PLACES.items():
+        _refuse_clash(place, {key.id: wanted.get(key.id, key.keys) for key in entries})
+    return dict(wanted)
+
+
+def shown(keys: str) -> str:
+    """A key as people read it on their keyboard; the first, where an action has several.
+
+    >>> shown("question_mark"), shown("down,j"), shown("G")
+    ('?', 'Down', 'G')
+    """
+    first = keys.split(",")[0]
+    return _SHOWN.get(first, first)
+
+
+def _refuse_clash(place: str, keys_of: Mapping[str, str]) -> None:
+    owner: dict[str, str] = {}
+    for action, keys in keys_of.items():
+        for key in keys.split(","):
+            if owner.setdefault(key.strip(), action) != action:
+                raise SettingError(f"keys.{action}", f"{key!r} is already {owner[key.strip()]} in the place {place}.")
