@@ -15,6 +15,7 @@ _CONTROLS = (
     *range(0xD800, 0xE000),  # lone surrogates: no stream can encode them
     0xFEFF,  # byte order mark
     *range(0xFFF9, 0xFFFC),  # interlinear annotations
+    *range(0xE0000, 0xE0080),  # tags: text that shows as nothing
 )
 _LINE = dict.fromkeys(_CONTROLS, REPLACEMENT)
 _BLOCK = {code: glyph for code, glyph in _LINE.items() if code != 0x0A}

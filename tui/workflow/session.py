@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import contextlib
 import sqlite3
 from array import array
 from collections.abc import Iterable, Mapping, Sequence
@@ -244,13 +243,3 @@ def reviewer_named(connection: sqlite3.Connection, handle: str) -> Reviewer:
     if found is None:
         raise HandleError(handle, f"Nobody joined this queue as {handle!r}. {JOIN_HINT}")
     return found
-
-
-@contextlib.contextmanager
-def opened(path: str, handle: str | None = None, *, write: bool = True):
-    """A session that is closed on the way out, for commands."""
-    session = Session.open(path, handle, write=write)
-    try:
-        yield session
-    finally:
-        session.close()

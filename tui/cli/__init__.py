@@ -1,0 +1,3 @@
+"""The command line: parse, call workflow, print, exit status."""
+
+from __future__ import annotations

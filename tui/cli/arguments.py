@@ -1,0 +1,55 @@
+"""Arguments and options that several commands share."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import Any
+
+import click
+
+from tui.errors import HandleError
+from tui.model import CHECKS, OUTCOMES
+
+queue_argument = click.argument("queue", type=click.Path())
+name_argument = click.argument("name")
+check_argument = click.argument("check", type=click.Choice(CHECKS))
+as_option = click.option("--as", "handle", metavar="HANDLE", help="See, or rule, as this reviewer.")
+json_option = click.option("--json", "as_json", is_flag=True, help="One JSON document, documented in the README.")
+unresolved_option = click.option(
+    "--unresolved", type=click.Choice(CHECKS), help="Only candidates on which this check is open or split."
+)
+outcome_option = click.option("--outcome", type=click.Choice((*OUTCOMES, "sealed")), help="Only this outcome.")
+controls_option = click.option(
+    "--controls", type=click.Path(), metavar="TRUTH", help="Table of controls (name, nature); it never enters the queue."
+)
+
+
+def handle_or_configured(handle: str | None) -> str | None:
+    """The handle given, else the one of the user's config file, else none."""
+    if handle:
+        return handle
+    from tui.workflow.config import read_config
+
+    return read_config().handle
+
+
+def needed_handle(handle: str | None) -> str:
+    """The handle to rule as; HandleError, saying how to give one, where there is none."""
+    found = handle_or_configured(handle)
+    if not found:
+        raise HandleError("", "Say who you are: --as HANDLE, or handle = \"...\" in your config file.")
+    return found
+
+
+def pairs(ctx: click.Context, param: click.Parameter, values: tuple[str, ...]) -> dict[str, str]:
+    """A click callback: repeated NAME=VALUE as a dict."""
+    found: dict[str, str] = {}
+    for text in values:
+        name, equals, value = text.partition("=")
+        if not equals or not name.strip() or not value.strip():
+            raise click.BadParameter(f"{text!r} is not of the form NAME=VALUE", ctx=ctx, param=param)
+        found[name.strip()] = value.strip()
+    return found
+
+
+Decorated = Callable[..., Any]

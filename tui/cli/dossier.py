@@ -1,0 +1,118 @@
+"""One candidate as text: why it is odd, what was measured, and what each check's fits say."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+from tui.cli.printing import NOTHING, figure, heading, line, signed, table
+from tui.model import CHECK_TITLES, CHECKS, Evidence, Fit, Measurement, Param
+from tui.workflow.showing import Dossier
+
+ADEQUATE = {True: "adequate: some fit explains the data", False: "not adequate: no fit explains the data"}
+UNTESTABLE = "untestable with these data"
+
+
+def print_dossier(found: Dossier) -> None:
+    """Print everything; the reader's own stale rulings are said with their reason."""
+    line(f"{found.candidate.name}   outcome: {found.view.outcome}   {place(found.candidate.facts)}".rstrip())
+    line(oddness_sentence(found.oddness))
+    print_measurements(found)
+    for check in CHECKS:
+        print_check(found, check)
+    for kind, title in (("mixture", "mixture bound"), ("dips", "dips")):
+        evidence = found.evidence.get(kind)
+        if evidence is not None and (evidence.fits or evidence.cautions or evidence.facts):
+            heading(f"{title}: {adequacy_words(evidence)}")
+            print_evidence(evidence)
+
+
+def place(facts: Mapping[str, object]) -> str:
+    """Where on the sky, in degrees, where the table said it."""
+    if "ra" in facts and "dec" in facts:
+        return f"ra {facts['ra']} dec {facts['dec']}"
+    return ""
+
+
+def oddness_sentence(oddness: Mapping[str, object]) -> str:
+    """Why a search may have called it odd."""
+    if not oddness or oddness.get("sigma") is None:
+        return "Oddness: not computed."
+    return f"Oddness: {figure(oddness['sigma'], 3)} sigma, most by {oddness['band']} ({signed(oddness['pull'])})."
+
+
+def adequacy_words(evidence: Evidence | None) -> str:
+    """The evidence's own state in words."""
+    if evidence is None:
+        return "no evidence yet"
+    return UNTESTABLE if evidence.adequate is None else ADEQUATE[evidence.adequate]
+
+
+def print_measurements(found: Dossier) -> None:
+    """One row a measurement, with its pull from the plain star where that was fitted."""
+    star = found.evidence.get("star")
+    pulls = star.best.pulls if star and star.best else {}
+    heading("measurements")
+    rows = [measurement_cells(one, pulls) for one in found.candidate.measurements]
+    table(("band", "flux (mJy)", "error", "star pull", "source", "epoch", "flags"), rows, numbers=(1, 2, 3))
+
+
+def measurement_cells(one: Measurement, pulls: Mapping[str, float]) -> tuple[str, ...]:
+    """A measurement as cells; a limit is marked < and an excluded one says so."""
+    flux = ("<" if one.limit else "") + figure(1000.0 * one.flux_jy)
+    error = f"{one.nsigma:g} sigma" if one.limit else figure(1000.0 * one.error_jy, 2)
+    flags = " ".join(f"{name}={value}" for name, value in one.flags.items())
+    flags = f"{flags} (kept, not fitted)".strip() if one.exclude else flags
+    pull = NOTHING if one.exclude else signed(pulls.get(one.band))
+    return (one.band, flux, error, pull, one.source or NOTHING, one.epoch or NOTHING, flags or NOTHING)
+
+
+def print_check(found: Dossier, check: str) -> None:
+    """One check: its state, its evidence's, its fits and cautions."""
+    evidence = found.evidence.get(check)
+    heading(f"{CHECK_TITLES[check]}: {found.view.states.get(check, 'todo')}; {adequacy_words(evidence)}")
+    if check in found.view.stale:
+        line(f"stale: {found.view.stale[check]}")
+    if evidence is not None:
+        print_evidence(evidence)
+
+
+def print_evidence(evidence: Evidence) -> None:
+    """Fits, best first, then facts and cautions."""
+    if evidence.fits:
+        rows = [fit_cells(fit) for fit in evidence.fits]
+        table(("model", "chi2", "dof", "p", "BIC", "fitted values", "largest pull"), rows, numbers=(1, 2, 3, 4))
+    for name, value in evidence.facts.items():
+        if isinstance(value, (str, int, float, bool)):
+            line(f"{name.replace('_', ' ')}: {figure(value) if isinstance(value, float) else value}")
+    for caution in evidence.cautions:
+        line(f"caution: {caution}")
+
+
+def fit_cells(fit: Fit) -> tuple[str, ...]:
+    """One fit as cells."""
+    values = "; ".join(param_words(name, param) for name, param in fit.params.items())
+    return (fit.model, figure(fit.chi2), str(fit.dof), figure(fit.p, 2), figure(fit.bic), values, largest_pull(fit))
+
+
+def param_words(name: str, param: Param) -> str:
+    """A fitted number with its interval, or as the limit that it is.
+
+    >>> param_words("teff", Param(5772.0, 5700.0, 5850.0, "K"))
+    'teff 5772 (5700 to 5850) K'
+    >>> param_words("av", Param(0.0, 0.0, 0.2, "mag", limit=True))
+    'av < 0.2000 mag (95 %)'
+    """
+    label = name.replace("_", " ")
+    if param.limit:
+        below = param.high != param.value
+        text = f"{label} {'<' if below else '>'} {figure(param.high if below else param.low)} {param.unit}"
+        return f"{text.rstrip()} (95 %)"
+    return f"{label} {figure(param.value)} ({figure(param.low)} to {figure(param.high)}) {param.unit}".rstrip()
+
+
+def largest_pull(fit: Fit) -> str:
+    """Band and pull farthest from the model."""
+    if not fit.pulls:
+        return NOTHING
+    band = max(fit.pulls, key=lambda name: abs(fit.pulls[name]))
+    return f"{band} {signed(fit.pulls[band])}"

@@ -1,0 +1,190 @@
+"""The group of all commands, and the one door through which every error leaves: a sentence, never a traceback."""
+
+from __future__ import annotations
+
+import errno
+import importlib
+import os
+import sqlite3
+import sys
+import traceback
+from collections.abc import Sequence
+from typing import Any
+
+import click
+
+from tui import __version__
+from tui.errors import TuiError
+
+DONE, FAULTS, WRONG_USE = 0, 1, 2
+INTERRUPTED = 130  # 128 + SIGINT, as shells say it
+
+COMMANDS = {  # name -> module of tui.cli that holds it, in the order of a vetting round
+    "demo": "demo",
+    "load": "filling",
+    "assess": "filling",
+    "join": "filling",
+    "list": "looking",
+    "show": "looking",
+    "rule": "ruling",
+    "probe": "probing",
+    "review": "ruling",
+    "set": "keeping",
+    "tally": "results",
+    "export": "results",
+    "gather": "keeping",
+    "audit": "keeping",
+    "story": "looking",
+}
+
+
+class PlainGroup(click.Group):
+    """A click group that finds its commands late and says every error as one or two plain sentences."""
+
+    def list_commands(self, ctx: click.Context) -> list[str]:
+        """All commands, in the order of a vetting round."""
+        return list(COMMANDS)
+
+    def get_command(self, ctx: click.Context, cmd_name: str) -> click.Command | None:
+        """Import the module of one command."""
+        if cmd_name not in COMMANDS:
+            return None
+        module = importlib.import_module(f"tui.cli.{COMMANDS[cmd_name]}")
+        return getattr(module, f"{cmd_name}_command")
+
+    def main(self, args: Sequence[str] | None = None, prog_name: str | None = None, **extra: Any) -> Any:
+        """Run a command and leave with its exit status."""
+        extra["standalone_mode"] = False
+        sys.exit(self._status(args, prog_name or "plainlight", extra))
+
+    def _status(self, args: Sequence[str] | None, prog_name: str, extra: dict[str, Any]) -> int:
+        try:
+            status = super().main(args=args, prog_name=prog_name, **extra)
+            return status if isinstance(status, int) else DONE
+        except (KeyboardInterrupt, click.Abort):
+            complain("Interrupted. What was already saved stays saved.")
+            return INTERRUPTED
+        except click.ClickException as error:
+            complain(usage_sentence(error))
+            return WRONG_USE
+
+    def invoke(self, ctx: click.Context) -> int | None:
+        """Run the chosen command; what it raises becomes a sentence and a status."""
+        try:
+            status = super().invoke(ctx)
+            sys.stdout.flush()  # a full disk or a closed pipe is met here and not at interpreter exit
+            return status
+        except (TuiError, sqlite3.Error, OSError, MemoryError) as error:
+            return failed(error)
+        except (click.ClickException, click.exceptions.Exit, click.Abort):
+            raise
+        except Exception as error:  # a fault of the program: said, and kept whole for whoever mends it
+            return fault(error)
+
+
+def failed(error: BaseException) -> int:
+    """Say an expected error; a reader that closed the pipe wants no more, and that is no error."""
+    if is_broken_pipe(error):
+        silence_stdout()
+        return DONE
+    complain(sentence(error))
+    return WRONG_USE
+
+
+def is_broken_pipe(error: BaseException) -> bool:
+    """Whether whoever read our output has gone."""
+    return isinstance(error, BrokenPipeError) or getattr(error, "errno", None) == errno.EPIPE
+
+
+def silence_stdout() -> None:
+    """Point standard output at nothing, so that the interpreter's last flush stays quiet."""
+    try:
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+    except (OSError, ValueError):  # no real file behind it
+        sys.stdout = open(os.devnull, "w", encoding="utf-8")  # noqa: SIM115 - lives until exit
+
+
+def complain(text: str) -> None:
+    """One line on standard error, safe for a terminal."""
+    from tui.workflow.safe_text import safe
+
+    try:
+        print(f"plainlight: {safe(text)}", file=sys.stderr, flush=True)
+    except OSError:  # nobody listens there
+        return
+
+
+def usage_sentence(error: click.ClickException) -> str:
+    """What was wrong with the command as typed, and where to read how it goes."""
+    text = error.format_message().strip()
+    text = text if text.endswith((".", "?", "!")) else f"{text}."
+    context = getattr(error, "ctx", None)
+    path = context.command_path if context else "plainlight"
+    return f"{text} Try: {path} --help"
+
+
+def sentence(error: BaseException) -> str:
+    """An expected error in plain words, with the file and the mend where they are known."""
+    if isinstance(error, TuiError):
+        return str(error)
+    if isinstance(error, MemoryError):
+        return "There was not enough memory. Close other programs, or work on a smaller table."
+    if isinstance(error, sqlite3.Error):
+        return sqlite_sentence(error)
+    return os_sentence(error)
+
+
+def sqlite_sentence(error: sqlite3.Error) -> str:
+    """SQLite's complaint with the mend; nothing was written when one is raised."""
+    text = str(error)
+    if "locked" in text or "busy" in text:
+        return "The queue is locked by another program. Nothing was written; try again when it has finished."
+    if "full" in text:
+        return "The disk is full. Nothing was written; make room and try again."
+    if "readonly" in text:
+        return "The queue file may only be read. Copy it to a folder you may write to, or ask its owner."
+    return f"The queue file could not be used: {text}. plainlight audit QUEUE says more."
+
+
+def os_sentence(error: BaseException) -> str:
+    """The operating system's complaint: the file, what is wrong with it, and the mend."""
+    name = getattr(error, "filename", None)
+    reason = getattr(error, "strerror", None) or str(error)
+    place = f"{os.fsdecode(name)}: " if isinstance(name, (str, bytes)) else ""
+    mend = {
+        errno.ENOSPC: "Make room on the disk and try again.",
+        errno.ENOENT: "Check the path.",
+        errno.EACCES: "Check who may read and write it.",
+        errno.EISDIR: "Name a file, not a folder.",
+    }.get(getattr(error, "errno", None), "Check the path and try again.")
+    return f"{place}{reason}. {mend}"
+
+
+def fault(error: Exception) -> int:
+    """A fault of the program itself: one sentence here, the whole of it in a file."""
+    where = kept_traceback(error)
+    complain(f"Plainlight failed through a fault of its own ({type(error).__name__}: {error}). {where}")
+    return WRONG_USE
+
+
+def kept_traceback(error: Exception) -> str:
+    """Write the traceback to the user's log folder; says where, or that it could not."""
+    import platformdirs
+
+    try:
+        folder = platformdirs.user_log_path("plainlight", ensure_exists=True)
+        path = folder / "fault.txt"
+        path.write_text("".join(traceback.format_exception(error)), encoding="utf-8", errors="replace")
+    except OSError as refused:
+        return f"Its details could not be kept ({refused.strerror})."
+    return f"Please send {path} to whoever maintains it."
+
+
+@click.group(
+    cls=PlainGroup,
+    context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100},
+    epilog="QUEUE is one SQLite file. Exit status: 0 done, 1 done with rows refused or faults found, 2 wrong use.",
+)
+@click.version_option(__version__, prog_name="plainlight", message="%(prog)s %(version)s")
+def cli() -> None:
+    """Vet odd stars together: explain each one away, with numbers, or keep it as unexplained."""

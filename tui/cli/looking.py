@@ -1,0 +1,138 @@
+"""Commands that look at a queue: list, show, story. None reveals what the seal covers."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from itertools import islice
+from typing import TYPE_CHECKING
+
+import click
+
+from tui.cli.arguments import (
+    as_option,
+    handle_or_configured,
+    json_option,
+    name_argument,
+    needed_handle,
+    outcome_option,
+    queue_argument,
+    unresolved_option,
+)
+from tui.model import CHECKS
+
+if TYPE_CHECKING:
+    from tui.workflow.records import QueueRow
+    from tui.workflow.session import Session
+
+SORTS = ("oddness", "name", "outcome", "yours")
+PAGE = 1000  # rows fetched at a time
+LIST_HEADINGS = ("name", "oddness", "odd_band", "odd_pull", *CHECKS, "outcome", "ruled", "to_rule")
+
+
+@click.command("list")
+@queue_argument
+@as_option
+@unresolved_option
+@outcome_option
+@click.option("--sort", type=click.Choice(SORTS), default="oddness", show_default=True, help="Order of the rows.")
+@click.option("--next", "only_next", is_flag=True, help="Only the name of the candidate that needs you next.")
+@click.option("--share", metavar="I/N", help="Only the I-th of N equal shares, for copies worked on apart.")
+def list_command(queue, handle, unresolved, outcome, sort, only_next, share) -> int:
+    """The queue as text: tab-separated when it goes to a file or a program.
+
+    Without --as, states and outcome read sealed. A trailing * marks a stale ruling.
+    """
+    from tui.cli.printing import line, remark
+    from tui.workflow.records import Filter
+    from tui.workflow.session import Session
+    from tui.workflow.sharing import read_share
+
+    part = read_share(share) if share else None
+    handle = needed_handle(handle) if only_next else handle_or_configured(handle)
+    with Session.open(queue, handle, write=only_next) as session:
+        if only_next:
+            name = session.next_for_me() if part is None else next_in_share(session, part)
+            line(name) if name else remark("Nothing needs you now.")
+            return 0
+        where = Filter(unresolved=unresolved, outcome=outcome)
+        ids = session.order(sort=sort, descending=sort == "oddness", where=where)
+        print_rows(row for row in pages(session, ids) if part is None or part.holds(row.name))
+    return 0
+
+
+def next_in_share(session: Session, part) -> str | None:
+    """The next candidate for this reviewer that falls in a share."""
+    skipped: list[str] = []
+    while (name := session.next_for_me(skip=skipped)) is not None and not part.holds(name):
+        skipped.append(name)
+    return name
+
+
+def pages(session: Session, ids) -> Iterator[QueueRow]:
+    """The rows of `ids`, fetched a page at a time."""
+    for start in range(0, len(ids), PAGE):
+        yield from session.rows(ids[start : start + PAGE])
+
+
+def list_cells(row: QueueRow) -> tuple[str, ...]:
+    """One candidate as cells of LIST_HEADINGS."""
+    from tui.cli.printing import NOTHING, figure, signed
+
+    states = (row.states.get(check, NOTHING) + ("*" if check in row.stale else "") for check in CHECKS)
+    numbers = (figure(row.oddness, 3), row.odd_band or NOTHING, signed(row.odd_pull))
+    return (row.name, *numbers, *states, row.outcome, str(row.ruled), str(row.to_rule))
+
+
+def print_rows(rows: Iterator[QueueRow]) -> None:
+    """Tables of a page each at a terminal, tab-separated rows elsewhere; either way as they come."""
+    from tui.cli.printing import is_terminal, tab_rows, table
+
+    cells = map(list_cells, rows)
+    if not is_terminal():
+        tab_rows(LIST_HEADINGS, cells)
+        return
+    while page := list(islice(cells, PAGE)):
+        table(LIST_HEADINGS, page, numbers=(1, 3, 10, 11))
+
+
+@click.command("show")
+@queue_argument
+@name_argument
+@as_option
+@json_option
+def show_command(queue: str, name: str, handle: str | None, as_json: bool) -> int:
+    """The evidence of one candidate; lacking evidence is computed first."""
+    from tui.workflow.session import Session
+    from tui.workflow.showing import dossier
+
+    with Session.open(queue, handle_or_configured(handle)) as session:
+        found = dossier(session, name)
+    if as_json:
+        from tui.cli.printing import as_json as print_json
+
+        print_json(found.as_dict())
+    else:
+        from tui.cli.dossier import print_dossier
+
+        print_dossier(found)
+    return 0
+
+
+@click.command("story")
+@queue_argument
+@name_argument
+@as_option
+def story_command(queue: str, name: str, handle: str | None) -> int:
+    """What happened to a candidate, in time order; others' rulings only where your seal is open."""
+    from tui.cli.printing import line, remark, table
+    from tui.workflow.session import Session
+
+    with Session.open(queue, handle_or_configured(handle), write=False) as session:
+        lines = session.story(name)
+        if not session.view(name).seal_open:
+            remark("Others' rulings stay sealed until your walk of this candidate ends.")
+    if not lines:
+        line("Nothing has happened to it yet.")
+    else:
+        table(("when (UTC)", "who", "what"), [(entry.utc, entry.who, entry.text) for entry in lines])
+    return 0

@@ -1,0 +1,46 @@
+"""The command that fits by hand: probe."""
+
+from __future__ import annotations
+
+import click
+
+from tui.cli.arguments import check_argument, name_argument, pairs, queue_argument
+from tui.errors import InputError
+
+
+@click.command("probe")
+@queue_argument
+@name_argument
+@check_argument
+@click.option("--fix", multiple=True, callback=pairs, metavar="PARAM=VALUE", help="Hold a parameter; repeat for more.")
+@click.option("--drop", multiple=True, metavar="BAND", help="Leave a band out; repeat for more.")
+def probe_command(queue: str, name: str, check: str, fix: dict[str, str], drop: tuple[str, ...]) -> int:
+    """A fit with parameters fixed or bands dropped: --fix T=450 --drop W3. Nothing is stored."""
+    from tui.cli.dossier import fit_cells
+    from tui.cli.printing import NOTHING, line, signed, table
+    from tui.workflow.session import Session
+
+    fixed = {parameter: number(parameter, text) for parameter, text in fix.items()}
+    with Session.open(queue, write=False) as session:
+        fit, _ = session.probe(name, check, fixed, dropped_bands(drop))
+    line(f"{name}: {check} by hand" + (f", without {', '.join(drop)}" if drop else ""))
+    table(("model", "chi2", "dof", "p", "BIC", "fitted values", "largest pull"), [fit_cells(fit)], numbers=(1, 2, 3, 4))
+    line()
+    table(("band", "pull"), [(band, signed(pull) if band not in drop else NOTHING) for band, pull in fit.pulls.items()], (1,))
+    return 0
+
+
+def number(parameter: str, text: str) -> float:
+    """The value of a fixed parameter. InputError where it is no number."""
+    try:
+        value = float(text)
+    except ValueError:
+        value = float("nan")
+    if not abs(value) < float("inf"):
+        raise InputError(f"--fix {parameter}={text}: the value must be a finite number.")
+    return value
+
+
+def dropped_bands(given: tuple[str, ...]) -> frozenset[str]:
+    """Bands as typed, several to one --drop allowed with commas."""
+    return frozenset(part.strip() for text in given for part in text.split(",") if part.strip())

@@ -1,0 +1,118 @@
+"""Everything there is to show of one candidate, gathered once for text and for JSON."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any
+
+from tui.model import CHECKS, Candidate, Dip, Evidence, Fit, Measurement, plain
+from tui.workflow.records import CandidateView
+
+if TYPE_CHECKING:
+    from tui.workflow.session import Session
+
+
+@dataclass(frozen=True, slots=True)
+class Dossier:
+    """A candidate, today's evidence on it, and where it stands for the reader."""
+
+    candidate: Candidate
+    evidence: Mapping[str, Evidence]
+    view: CandidateView
+    oddness: Mapping[str, Any]  # sigma, band, pull; empty where there is no evidence for `star`
+
+    def as_dict(self) -> dict[str, Any]:
+        """The document of `show --json`: JSON values only, in a fixed order of keys."""
+        return {
+            "name": self.candidate.name,
+            "outcome": self.view.outcome,
+            "oddness": plain(self.oddness),
+            "measurements": [measurement_dict(one) for one in self.candidate.measurements],
+            "checks": {check: self.check_dict(check) for check in CHECKS},
+            "mixture": evidence_dict(self.evidence.get("mixture")),
+            "dips": [dip_dict(dip) for dip in self.candidate.dips],
+        }
+
+    def check_dict(self, check: str) -> dict[str, Any]:
+        """One check: its state as the reader may know it, then its evidence."""
+        found = self.evidence.get(check)
+        return {
+            "state": self.view.states.get(check, "todo"),
+            "version": found.version if found else None,
+            "digest": found.digest if found else None,
+            "stale": self.view.stale.get(check),
+            "adequate": found.adequate if found else None,
+            "cautions": list(found.cautions) if found else [],
+            "fits": [fit_dict(fit) for fit in found.fits] if found else [],
+            "facts": plain(found.facts) if found else {},
+        }
+
+
+def dossier(session: Session, name: str) -> Dossier:
+    """Gather what there is to show of a candidate, computing lacking evidence first.
+
+    Raises:
+        UnknownNameError: no candidate of that name.
+    """
+    candidate = session.candidate(name)
+    evidence = session.evidence(name)
+    return Dossier(candidate, evidence, session.view(name), oddness_dict(evidence.get("star")))
+
+
+def oddness_dict(star: Evidence | None) -> dict[str, Any]:
+    """Oddness in sigma beside the band of the largest pull and that pull."""
+    if star is None:
+        return {}
+    from tui.checks import oddness
+
+    found = oddness(star)
+    return {"sigma": found.sigma, "band": found.band, "pull": found.pull}
+
+
+def evidence_dict(evidence: Evidence | None) -> dict[str, Any]:
+    """Evidence that is no check (the mixture bound); empty where it was not computed."""
+    if evidence is None:
+        return {}
+    return {
+        "version": evidence.version,
+        "digest": evidence.digest,
+        "adequate": evidence.adequate,
+        "cautions": list(evidence.cautions),
+        "fits": [fit_dict(fit) for fit in evidence.fits],
+        "facts": plain(evidence.facts),
+    }
+
+
+def fit_dict(fit: Fit) -> dict[str, Any]:
+    """One fit, NaN as null."""
+    return {
+        "model": fit.model,
+        "chi2": plain(fit.chi2),
+        "dof": fit.dof,
+        "p": plain(fit.p),
+        "aic": plain(fit.aic),
+        "bic": plain(fit.bic),
+        "params": {
+            name: {
+                "value": plain(param.value),
+                "low": plain(param.low),
+                "high": plain(param.high),
+                "unit": param.unit,
+                "limit": param.limit,
+            }
+            for name, param in fit.params.items()
+        },
+        "pulls": plain(fit.pulls),
+    }
+
+
+def measurement_dict(one: Measurement) -> dict[str, Any]:
+    """One measurement, in Jy and as given, NaN as null."""
+    names = "band flux_jy error_jy limit nsigma source epoch flags exclude value value_error unit note".split()
+    return {name: plain(getattr(one, name)) for name in names}
+
+
+def dip_dict(dip: Dip) -> dict[str, Any]:
+    """One dimming event in one band, NaN as null."""
+    return {name: plain(getattr(dip, name)) for name in ("event", "band", "depth", "depth_error", "epoch")}
