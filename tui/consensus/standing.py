@@ -17,8 +17,9 @@ standing in whatever order copies of a queue were gathered. What the rules leave
 - *Needs*: "everyone who is not done" is everyone, known or yet to join. When all reviewers who joined are done and have
   ruled their splits again, and two still stand against two, or `unclear` left fewer sure rulings than the quorum, or
   one ended the walk with another explanation than the rest, nothing that they could be asked remains: such a candidate
-  needs a further reviewer, and `needs` is true of any id that is not in `done`. `lacks_only_data` alone stops it. Hence no
-  pending candidate needs nobody unless it lacks only data; `tests/consensus/test_dead_ends.py` searches for one.
+  waits for a further reviewer (`waits_for_another` says so), and `needs` is true of any id that is not in `done`. Only
+  lacking data ends it. Hence no pending candidate needs nobody unless it lacks only data, and new reviewers who agree
+  always end it: `tests/consensus/test_dead_ends.py` searches all small histories and many larger ones.
 - A party who never rules again holds a split open: it needs that party, and the tally says whom.
 """
 
@@ -81,6 +82,10 @@ class Standing:
     def needs(self, reviewer_id: str) -> bool:
         """Whether it needs this reviewer, who may not have ruled at all yet."""
         return self.needs_people and (reviewer_id not in self.done or bool(self.owed_by(reviewer_id)))
+
+    def waits_for_another(self, team: Iterable[str]) -> bool:
+        """Whether it needs people and none of these reviewers, so that only someone further can end it."""
+        return self.needs_people and not any(self.needs(reviewer_id) for reviewer_id in team)
 
     def owed_by(self, reviewer_id: str) -> tuple[str, ...]:
         """Split checks that this reviewer is asked to rule again, once, with the seal open."""
@@ -269,4 +274,5 @@ def _holds_natural(ruled: Mapping[str, Ruling]) -> bool:
 
 def _reasons(states: Mapping[str, str]) -> tuple[str, ...]:
     """What keeps a candidate pending: splits first, data last, each in the order of the walk."""
-    return tuple(f"{state}:{check}" for state in ("split", "open", "nodata") for check in CHECKS if states[check] == state)
+    told = ("split", "open", "nodata")
+    return tuple(f"{state}:{check}" for state in told for check in CHECKS if states[check] == state)
