@@ -58,7 +58,7 @@ QUEUE = (
     Key("queue.open", "enter", "open", "open", "Open the chosen candidate, at the first check you have not ruled.", 1),
     *(
         Key(f"queue.unresolved_{check}", key, f"unresolved('{check}')", "unresolved",
-            f"Only candidates whose check {check} is unresolved (open or split), as far as you may see; again for all.", 0)
+            f"Only candidates whose check {check} is unresolved, as far as you may see; again for all.", 2)
         for check, key in _CHECK_KEYS.items()
     ),
     Key("queue.needs_me", "n", "needs_me", "needs me",
@@ -169,7 +169,8 @@ def checked_keymap(wanted: Mapping[str, str]) -> dict[str, str]:
             raise SettingError(f"keys.{action}", f"there is no such action. They are {', '.join(sorted(known))}.")
         taken = RESERVED.intersection(keys.split(","))
         if taken or not keys.strip():
-            raise SettingError(f"keys.{action}", f"{keys!r} cannot be used: {', '.join(sorted(RESERVED))} stay the terminal's.")
+            reason = f"{keys!r} cannot be used: {', '.join(sorted(RESERVED))} stay the terminal's."
+            raise SettingError(f"keys.{action}", reason)
     for place, entries in PLACES.items():
         _refuse_clash(place, {key.id: wanted.get(key.id, key.keys) for key in entries})
     return dict(wanted)

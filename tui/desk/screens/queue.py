@@ -1,0 +1,273 @@
+"""The queue: what needs me, why it is odd, where it stands."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from pathlib import PurePath
+from typing import TYPE_CHECKING
+
+from textual import on, work
+from textual.app import ComposeResult
+from textual.containers import Horizontal, Vertical
+from textual.geometry import Offset
+from textual.message import Message
+from textual.timer import Timer
+from textual.widgets import Input, Static
+
+from tui.desk.keys import bindings
+from tui.desk.screens.base import MovesThroughList
+from tui.desk.screens.queue_background import POLL_S, POLL_THIN_S, QueueBackground
+from tui.desk.summary import oddness_sentence, standing_sentence
+from tui.desk.text import KEY_OF_CHECK, safe
+from tui.desk.widgets.candidate_list import CandidateList
+from tui.desk.widgets.find_line import FindLine
+from tui.desk.widgets.peek import Peek
+from tui.desk.widgets.queue_head import ColumnHead, HeadFacts, QueueTitle
+from tui.errors import TuiError
+
+if TYPE_CHECKING:
+    from tui.workflow.records import QueueRow
+    from tui.workflow.session import Session
+
+SETTLE_S = 0.04  # a candidate is described once the cursor has rested on it so long
+SIGN_WORDS = ".todo not ruled by you   .sealed opens when you are done   * stale"
+
+
+class QueueScreen(MovesThroughList, QueueBackground):
+    """Every candidate, one a line."""
+
+    PLACE = "queue"
+    CSS_PATH = "queue.tcss"
+    BINDINGS = bindings("queue")
+
+    @dataclass
+    class NextFound(Message):
+        """The candidate that needs this reviewer most; None when nothing does."""
+
+        name: str | None
+
+    def __init__(self, session: Session) -> None:
+        super().__init__(session)
+        self._settle: Timer | None = None
+
+    def compose(self) -> ComposeResult:
+        """Head, list with the chosen candidate's data beside it, what is said of it, keys."""
+        yield QueueTitle()
+        with Horizontal(id="middle"):
+            with Vertical(id="left"):
+                yield ColumnHead()
+                yield CandidateList(self.session.rows, id="list")
+            yield Peek(id="peek")
+        yield Static("", id="chosen", markup=False)
+        yield Static("", id="standing", markup=False)
+        yield Static("", id="orientation", markup=False)
+        yield FindLine(id="find")
+        yield Static("", id="message", markup=False)
+        yield Static(SIGN_WORDS, id="signs", markup=False)
+        yield self.key_line(2)
+
+    def on_mount(self) -> None:
+        """List at once what can be listed at once; resume where the reviewer was."""
+        reviewer = self.session.reviewer
+        position = self.session.position() if reviewer else None
+        self.orient(is_new=position is None)
+        self.wanted = position[0] if position else None
+        self.tell_head()
+        self.order()
+        self.set_interval(POLL_THIN_S if self.app.thin else POLL_S, self.poll)
+
+    def orient(self, is_new: bool) -> None:
+        """Three lines for who comes for the first time."""
+        from tui.desk.help import ORIENTATION, READER_LINE
+
+        line = self.query_one("#orientation", Static)
+        line.update("\n".join(ORIENTATION if self.session.reviewer else (READER_LINE,)))
+        line.display = is_new or self.session.reviewer is None
+        self.query_one("#signs").display = not line.display
+
+    # --- the chosen candidate ---
+
+    @on(CandidateList.Chosen)
+    def choose(self, message: CandidateList.Chosen) -> None:
+        """Describe the candidate once the cursor rests."""
+        self.tell_head()
+        if self._settle is not None:
+            self._settle.stop()
+        self._settle = self.set_timer(SETTLE_S, lambda: self.describe(message.row))
+        self.place_terminal_cursor()
+
+    def describe(self, row: QueueRow | None) -> None:
+        """One sentence on why it is odd, one on where it stands, its data beside the list if there is room."""
+        chosen, standing = self.query_one("#chosen", Static), self.query_one("#standing", Static)
+        peek = self.query_one(Peek)
+        if row is None:
+            chosen.update("")
+            standing.update("")
+            peek.show(None, {}, {})
+            return
+        try:
+            evidence = self.session.stored_evidence(row.name)
+            view = self.session.view(row.name) if row.seal_open else None
+            candidate = self.session.candidate(row.name) if peek.display else None
+        except TuiError as error:
+            self.say(str(error), is_error=True)
+            return
+        chosen.update(safe(f"{row.name}  {oddness_sentence(row, evidence)}"))
+        standing.update(safe(standing_sentence(row, view)) if self.session.reviewer else "")
+        if candidate is not None:
+            peek.show(candidate, evidence, self.session.band_info())
+
+    def place_terminal_cursor(self) -> None:
+        """The terminal's own cursor follows the choice, for those who read by it."""
+        candidates = self.query_one(CandidateList)
+        line = candidates.cursor - candidates.scroll_offset.y
+        self.app.cursor_position = candidates.region.offset + Offset(0, max(0, line))
+
+    def tell_head(self) -> None:
+        """Hand the lines above the list what they show."""
+        candidates, reviewer = self.query_one(CandidateList), self.session.reviewer
+        facts = HeadFacts(
+            queue_name=PurePath(self.session.path).name,
+            handle=reviewer.handle if reviewer else "",
+            saved=self.app.saved,
+            view=self.view,
+            counts=self.counts,
+            line=candidates.cursor + 1 if candidates.ids else 0,
+            listed=len(candidates.ids),
+            is_ordering=self.is_ordering,
+            letters=self._letters(),
+        )
+        self.query_one(QueueTitle).show(facts)
+        self.query_one(ColumnHead).show(replace(facts, line=0, listed=0, is_ordering=False))
+
+    def _letters(self) -> dict[str, str]:
+        """The key that filters by each check."""
+        return {check: self.app.keys_of.get(f"queue.unresolved_{check}", key) for check, key in KEY_OF_CHECK.items()}
+
+    # --- keys ---
+
+    def action_unresolved(self, check: str) -> None:
+        """Only what is unresolved in one check; again for all."""
+        self.look(self.view.toggled(check))
+
+    @on(ColumnHead.CheckClicked)
+    def click_check(self, message: ColumnHead.CheckClicked) -> None:
+        """The head of a column does what its key does."""
+        self.action_unresolved(message.check)
+
+    def action_needs_me(self) -> None:
+        """Only what needs this reviewer; again for all."""
+        if self.session.reviewer is None:
+            self.say("Without a handle nothing can need you. Join first: plainlight join QUEUE HANDLE.")
+            return
+        self.look(replace(self.view, needs_me=not self.view.needs_me, find=""))
+
+    def action_all(self) -> None:
+        """Every candidate."""
+        self.look(self.view.whole())
+
+    def action_order(self) -> None:
+        """The next order."""
+        self.look(self.view.next_order())
+
+    def action_reverse(self) -> None:
+        """The order turned around."""
+        self.look(replace(self.view, descending=not self.view.descending))
+
+    def look(self, view: QueueView) -> None:
+        """Wish for another view."""
+        self.view = view
+        self.order()
+
+    def list_names(self, names: frozenset[str], words: str) -> None:
+        """List just these candidates, which a line of the tally counted."""
+        self.look(replace(self.view.whole(), names=names, counted=words))
+
+    def action_find(self) -> None:
+        """Open the line to search in."""
+        self.query_one(FindLine).open(self.view.find)
+
+    @on(Input.Changed)
+    def find_as_typed(self, message: Input.Changed) -> None:
+        """List what matches so far; typing never waits for it."""
+        message.stop()
+        if message.value != self.view.find:
+            self.look(replace(self.view.whole(), find=message.value))
+
+    @on(FindLine.Left)
+    def leave_find(self) -> None:
+        """Letters are keys again."""
+        self.set_focus(None)
+        self.place_terminal_cursor()
+
+    def action_open(self) -> None:
+        """Open the chosen candidate."""
+        row = self.query_one(CandidateList).chosen
+        if row is not None:
+            self.open_candidate(row.name)
+
+    @on(CandidateList.Opened)
+    def open_clicked(self) -> None:
+        """A second click opens."""
+        self.action_open()
+
+    def action_next_for_me(self) -> None:
+        """The candidate that needs this reviewer most; the question may take a while on a long queue."""
+        if self.session.reviewer is None:
+            self.say("Without a handle nothing can need you. Join first: plainlight join QUEUE HANDLE.")
+            return
+        self.find_next()
+
+    @work(thread=True, exclusive=True, group="next", exit_on_error=False)
+    def find_next(self) -> None:
+        """Runs in a thread: finds and claims; only posts."""
+        try:
+            with self.session.clone() as session:
+                name = session.next_for_me()
+                if name is not None:
+                    session.claim(name)
+        except TuiError as error:
+            self.post_message(self.Failed(str(error)))
+        else:
+            self.post_message(self.NextFound(name))
+
+    @on(NextFound)
+    def open_next(self, message: NextFound) -> None:
+        """Open it, unless the reviewer went elsewhere meanwhile."""
+        if self.app.screen is not self:
+            return
+        if message.name is None:
+            self.say("Nothing needs you now. You may still look: t shows how far the team is.")
+        else:
+            self.open_candidate(message.name)
+
+    def open_candidate(self, name: str) -> None:
+        """Show one candidate; coming back, the cursor stands on the one last seen."""
+        from tui.desk.screens.candidate import CandidateScreen
+
+        self.orient(is_new=False)
+        self.wanted = name
+        self.app.push_screen(CandidateScreen(self.session, name, order=self.query_one(CandidateList).ids))
+
+    def action_story(self) -> None:
+        """What happened to the chosen candidate."""
+        from tui.desk.screens.story import StoryScreen
+
+        row = self.query_one(CandidateList).chosen
+        if row is not None:
+            self.app.push_screen(StoryScreen(self.session, row.name))
+
+    def action_tally(self) -> None:
+        """How far the team is."""
+        from tui.desk.screens.tally import TallyScreen
+
+        self.app.push_screen(TallyScreen(self.session), self.list_counted)
+
+    def list_counted(self, counted: tuple[frozenset[str], str] | None) -> None:
+        """List what a line of the tally counts."""
+        if counted is not None:
+            self.list_names(*counted)
+
+    def action_quit(self) -> None:
+        """Leave the desk."""
+        self.app.exit()

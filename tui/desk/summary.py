@@ -1,0 +1,86 @@
+"""One candidate in one sentence: how odd, where, and what agrees."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from typing import TYPE_CHECKING
+
+from tui.desk.text import listed, plural, short_band
+from tui.model import CHECK_TITLES, Evidence
+
+if TYPE_CHECKING:
+    from tui.workflow.records import CandidateView, QueueRow
+
+ODD_PULL = 3.0  # sigma: a band that the sentence names
+PLAIN_PULL = 2.0  # sigma: a band that agrees with the star alone
+NAMED_BANDS = 4
+
+
+def oddness_sentence(row: QueueRow, evidence: Mapping[str, Evidence]) -> str:
+    """Why the candidate is odd, in one sentence."""
+    star = evidence.get("star")
+    if star is None:
+        return "Not assessed yet: opening it computes the evidence."
+    if star.best is None or not star.best.pulls:
+        return "The star alone cannot be fitted: too few bands."
+    pulls = star.best.pulls
+    bright = [band for band, pull in pulls.items() if pull >= ODD_PULL]
+    faint = [band for band, pull in pulls.items() if pull <= -ODD_PULL]
+    said = [f"{_bands(bands)} {word}" for bands, word in ((bright, "brighter"), (faint, "fainter")) if bands]
+    sigma = "" if row.oddness != row.oddness else f"{row.oddness:.1f} sigma: "
+    if not said:
+        return f"{sigma}no single band stands out from the star alone; {_agree(pulls)}."
+    return f"{sigma}{' and '.join(said)} than the star alone; {_agree(pulls)}."
+
+
+def standing_sentence(row: QueueRow, view: CandidateView | None) -> str:
+    """Where the candidate stands for this reader, in one sentence."""
+    if row.stale:
+        return f"Stale: the evidence under your ruling on {_checks(row.stale)} has changed since. Look once more."
+    if not row.seal_open:
+        return _sealed_sentence(row)
+    reason = view.pending_reason if view else ""
+    if row.outcome == "pending":
+        said = f"Pending: {reason_text(reason)}." if reason else "Pending."
+        return f"{said} It asks you once more." if row.needs_me else said
+    cause = f" by {reason_text(view.cause)}" if view and view.cause and row.outcome == "explained" else ""
+    return f"You are done with it. The team's outcome: {row.outcome}{cause}."
+
+
+def reason_text(reason: str) -> str:
+    """`split:dust;nodata:extinction` as people say it.
+
+    >>> reason_text("split:dust;nodata:extinction")
+    'warm dust split, extinction lacks data'
+    """
+    words = {"nodata": "lacks data"}
+    said = []
+    for piece in filter(None, reason.split(";")):
+        state, _, check = piece.partition(":")
+        title = CHECK_TITLES.get(check, check)
+        said.append(f"{title} {words.get(state, state)}" if check else CHECK_TITLES.get(state, state))
+    return ", ".join(said)
+
+
+def _sealed_sentence(row: QueueRow) -> str:
+    if not row.needs_me:
+        return "It needs nobody now. You may still walk it; what others ruled opens when you are done."
+    if row.ruled == 0:
+        return "You have ruled nothing on it yet. What others ruled opens when you are done."
+    return f"You have ruled {row.ruled} of {plural(row.to_rule, 'check')}. What others ruled opens when you are done."
+
+
+def _agree(pulls: Mapping[str, float]) -> str:
+    count = sum(abs(pull) <= PLAIN_PULL for pull in pulls.values())
+    return f"{plural(count, 'band')} agree{'s' if count == 1 else ''}"
+
+
+def _bands(bands: list[str]) -> str:
+    names = [short_band(band) for band in bands]
+    if len(names) > NAMED_BANDS:
+        return f"{', '.join(names[: NAMED_BANDS - 1])} and {len(names) - NAMED_BANDS + 1} bands more"
+    return listed(names)
+
+
+def _checks(checks: frozenset[str]) -> str:
+    return listed([CHECK_TITLES[check] for check in CHECK_TITLES if check in checks])

@@ -1,0 +1,54 @@
+"""One line to search in: what is typed is looked for at once."""
+
+from __future__ import annotations
+
+from textual.app import ComposeResult
+from textual.binding import Binding
+from textual.containers import Horizontal
+from textual.message import Message
+from textual.widgets import Input, Static
+
+
+class FindInput(Input):
+    """A text line that the Enter, Tab and arrow keys leave."""
+
+    BINDINGS = [Binding("enter,tab,down,up", "leave", show=False)]
+
+    def action_leave(self) -> None:
+        """Back to the list."""
+        self.post_message(FindLine.Left())
+
+
+class FindLine(Horizontal):
+    """Shown while the reader searches."""
+
+    DEFAULT_CSS = """
+    FindLine { height: 1; display: none; }
+    FindLine Static { width: auto; }
+    FindLine Input { width: 1fr; height: 1; border: none; padding: 0; background: transparent; }
+    """
+
+    class Left(Message):
+        """The reader is done typing."""
+
+    def __init__(self, prompt: str = " find ", hint: str = "  Enter: to the list ", *, id: str | None = None) -> None:
+        super().__init__(id=id)
+        self.prompt, self.hint = prompt, hint
+
+    def compose(self) -> ComposeResult:
+        """The word, the line, the way out."""
+        yield Static(self.prompt, markup=False, classes="prompt")
+        yield FindInput(compact=True, select_on_focus=False)
+        yield Static(self.hint, markup=False, classes="hint")
+
+    def open(self, text: str) -> None:
+        """Show the line with a text in it, ready to type."""
+        self.display = True
+        entry = self.query_one(FindInput)
+        entry.value = text
+        entry.cursor_position = len(text)
+        entry.focus()
+
+    def close(self) -> None:
+        """Hide it."""
+        self.display = False

@@ -1,0 +1,97 @@
+"""The keys of a place, on one or two lines; what is bound is what is shown, and a click does the same."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+from rich.cells import cell_len
+from textual.content import Content
+from textual.geometry import Size
+from textual.style import Style
+from textual.widget import Widget
+
+from tui.desk.keys import Key, shown
+
+
+@dataclass(frozen=True, slots=True)
+class Entry:
+    """One piece of the line: keys as people read them, what they do, and the action of a click."""
+
+    keys: str
+    label: str
+    action: str
+    rank: int
+
+    @property
+    def width(self) -> int:
+        """Cells, with the gap after it."""
+        return cell_len(self.keys) + 1 + cell_len(self.label) + 2
+
+
+def entries(keys: tuple[Key, ...], keymap: Mapping[str, str]) -> list[Entry]:
+    """The pieces for these actions under this key map; neighbours with one label share a piece.
+
+    >>> keys = Key("a.one", "s", "", "check", ""), Key("a.two", "i", "", "check", "")
+    >>> [(entry.keys, entry.label) for entry in entries(keys, {"a.two": "7"})]
+    [('s 7', 'check')]
+    """
+    found: list[Entry] = []
+    for key in keys:
+        if key.rank == 0:
+            continue
+        name = shown(keymap.get(key.id, key.keys))
+        if found and found[-1].label == key.label:
+            found[-1] = Entry(f"{found[-1].keys} {name}", key.label, "", key.rank)
+        else:
+            found.append(Entry(name, key.label, key.action, key.rank))
+    return found
+
+
+def chosen_lines(pieces: list[Entry], width: int, lines: int) -> list[list[Entry]]:
+    """The pieces that fit, in their order, those of the greatest rank left out first."""
+    for rank in sorted({piece.rank for piece in pieces}, reverse=True):
+        placed = _placed([piece for piece in pieces if piece.rank <= rank], width)
+        if len(placed) <= lines:
+            return placed
+    return _placed([piece for piece in pieces if piece.rank <= 1], width)[:lines]
+
+
+def _placed(pieces: list[Entry], width: int) -> list[list[Entry]]:
+    lines: list[list[Entry]] = [[]]
+    used = 0
+    for piece in pieces:
+        if used + piece.width - 2 > width and lines[-1]:
+            lines.append([])
+            used = 0
+        lines[-1].append(piece)
+        used += piece.width
+    return lines
+
+
+class KeyLine(Widget):
+    """Draws the keys of a place; told again whenever what can be done changes."""
+
+    COMPONENT_CLASSES = {"key-line--key", "key-line--label"}
+    DEFAULT_CSS = "KeyLine { height: auto; padding: 0 1; }"
+
+    def __init__(self, keys: tuple[Key, ...], keymap: Mapping[str, str], lines: int = 2) -> None:
+        super().__init__()
+        self.pieces = entries(keys, keymap)
+        self.lines = lines
+
+    def get_content_height(self, container: Size, viewport: Size, width: int) -> int:
+        """As many lines as the keys take at this width, up to the most allowed."""
+        return len(chosen_lines(self.pieces, width, self.lines))
+
+    def render(self) -> Content:
+        """The lines."""
+        key_style, label_style = self.get_visual_style("key-line--key"), self.get_visual_style("key-line--label")
+        drawn = []
+        for line in chosen_lines(self.pieces, self.size.width or 78, self.lines):
+            parts = []
+            for piece in line:
+                click = Style.from_meta({"@click": f"screen.{piece.action}"}) if piece.action else Style()
+                parts += [(piece.keys, key_style + click), (f" {piece.label}", label_style + click), "  "]
+            drawn.append(Content.assemble(*parts))
+        return Content("\n").join(drawn)

@@ -1,0 +1,149 @@
+"""The columns of the queue: which fit a width, what their heads say, and one candidate's cells in them."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from functools import lru_cache
+from typing import TYPE_CHECKING
+
+from tui.desk.text import KEY_OF_CHECK, SHORT_CHECKS, fit, outcome_text, safe, short_band, signed, state_text, thousands
+from tui.model import CHECKS
+
+if TYPE_CHECKING:
+    from tui.workflow.records import QueueRow
+
+Cell = tuple[str, str]  # text, the name of its style: `plain`, `quiet`, `attention` or a state
+NAME_WIDEST = 30
+NAME_NARROWEST = 11
+
+
+@dataclass(frozen=True, slots=True)
+class Columns:
+    """Cells for each column at one width; 0 leaves a column out. Each is followed by its gap."""
+
+    width: int
+    name: int
+    oddness: int
+    check: int
+    outcome: int = 11
+    yours: int = 5
+    band: int = 6
+    pull: int = 6
+    gap: int = 1
+
+
+@lru_cache(maxsize=32)
+def columns_for(width: int) -> Columns:
+    """The columns that a list `width` cells wide has room for.
+
+    >>> columns_for(80).name, columns_for(80).oddness, columns_for(120).oddness
+    (12, 0, 7)
+    """
+    check = 7 if width < 100 else 8
+    gap = 1 if width < 100 else 2
+    oddness = 7 if width >= 92 else 0
+    used = 2 + gap + oddness + 6 + 6 + gap + check * len(CHECKS) + 11 + gap + 5
+    return Columns(width, max(NAME_NARROWEST, min(NAME_WIDEST, width - used)), oddness, check, gap=gap)
+
+
+def head_cells(
+    columns: Columns, order: str, active: str | None, letters: Mapping[str, str] = KEY_OF_CHECK
+) -> list[Cell]:
+    """The words above the columns; in a check's word the letter that filters by it stands large.
+
+    Args:
+        order: the column that the list is ordered by: `name`, `oddness`, `ruled`, `outcome`.
+        active: the check that the list is filtered by, or None.
+        letters: the key that filters by each check.
+    """
+    gap = " " * columns.gap
+    odd = "odd by" if columns.oddness else "most in"
+    cells = [("  ", "quiet"), (fit("name", columns.name) + gap, _head("name", order))]
+    if columns.oddness:
+        cells.append((fit("sigma", columns.oddness - 2, align="right") + "  ", _head("oddness", order)))
+        odd = "most in"
+    cells.append((fit(odd, columns.band + columns.pull) + gap, "quiet" if columns.oddness else _head("oddness", order)))
+    for check in CHECKS:
+        cells += _check_head(SHORT_CHECKS[check], letters.get(check, ""), columns.check, check == active)
+    cells.append((fit("outcome", columns.outcome) + gap, _head("outcome", order)))
+    cells.append((fit("yours", columns.yours), _head("ruled", order)))
+    return cells
+
+
+def count_cells(columns: Columns, unresolved: Mapping[str, int], active: str | None) -> list[Cell]:
+    """The second line above the columns: how many candidates each check is unresolved for."""
+    before = 2 + columns.name + columns.oddness + columns.band + columns.pull + 2 * columns.gap
+    cells = [(fit("unresolved  ", before, align="right"), "quiet")]
+    for check in CHECKS:
+        text = compact(unresolved.get(check))
+        cells.append((fit(f"[{text}]" if check == active else f" {text}", columns.check), _mark(check == active)))
+    return cells
+
+
+def row_cells(row: QueueRow, columns: Columns, chosen: bool) -> list[Cell]:
+    """One candidate in its columns; every cell carries its meaning in text, and a style beside."""
+    gap = " " * columns.gap
+    cells = [("> " if chosen else "  ", "attention"), (fit(safe(row.name), columns.name, cut="middle") + gap, "name")]
+    if columns.oddness:
+        cells.append((fit(_sigma(row.oddness), columns.oddness - 2, align="right") + "  ", "plain"))
+    band = fit(short_band(row.odd_band) if row.odd_band else "--", columns.band)
+    pull = fit(signed(row.odd_pull) if row.odd_band else "", columns.pull - 1, align="right")
+    cells.append((band + pull + " " + gap, "plain"))
+    for check in CHECKS:
+        state = row.states.get(check, "")
+        text = state_text(state, check in row.stale) if state else ""
+        cells.append((fit(text[: columns.check - 1] if state == "nodata" else text, columns.check), state or "plain"))
+    cells.append((fit(outcome_text(row.outcome), columns.outcome) + gap, row.outcome))
+    cells.append((fit(yours_text(row), columns.yours), _mark(row.needs_me)))
+    return cells
+
+
+def yours_text(row: QueueRow) -> str:
+    """What the row still asks of the reader: `2/5` ruled so far, `again` for a split or a stale ruling, `done`.
+
+    A candidate that needs nobody, though this reader is not done with it, reads `--`.
+    """
+    if row.done:
+        return "again" if row.needs_me else "done"
+    if row.needs_me:
+        return f"{row.ruled}/{row.to_rule}"
+    return "--"
+
+
+def compact(count: int | None) -> str:
+    """A count in at most 5 cells.
+
+    >>> compact(941), compact(12_345), compact(1_000_000), compact(None)
+    ('941', '12.3k', '1.00M', '')
+    """
+    if count is None:
+        return ""
+    if count < 10_000:
+        return str(count)
+    if count < 999_500:
+        return f"{count / 1e3:.1f}k" if count < 99_950 else f"{count / 1e3:.0f}k"
+    return f"{count / 1e6:.2f}M"
+
+
+def _sigma(oddness: float | None) -> str:
+    if oddness is None or oddness != oddness:
+        return "--"
+    return f"{oddness:.1f}" if oddness < 1000 else thousands(round(oddness))
+
+
+def _check_head(word: str, letter: str, width: int, is_active: bool) -> list[Cell]:
+    style = "active" if is_active else "quiet"
+    place = word.find(letter) if len(letter) == 1 else -1
+    if place < 0:
+        return [(fit(word, width), style)]
+    rest = [(word[place + 1 :], style), (" " * (width - len(word)), "quiet")]
+    return [*([(word[:place], style)] if place else []), (letter.upper(), "key"), *rest]
+
+
+def _head(column: str, order: str) -> str:
+    return "active" if column == order else "quiet"
+
+
+def _mark(is_marked: bool) -> str:
+    return "attention" if is_marked else "quiet"
