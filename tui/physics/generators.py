@@ -17,16 +17,15 @@ from tui.model import FloatArray
 from tui.physics.constants import MAG
 from tui.physics.extinction import R_V_RANGE, extinction_curve
 from tui.physics.photometry import Quadrature
-from tui.physics.photosphere import Photosphere
 from tui.physics.planck import ln_planck_jy
 
 BLOCK = 2048  # columns a block: a block, its right side and its product stay in the processor's cache
-NIL = 1e-25  # a column's flux in a band, over its largest, that counts as nothing (a float32 holds 1e-38)
+NIL = 1e-25  # a column's flux in a band, over its largest, that counts as nothing (float32 holds 1e-38)
 AV_MAX = 40.0  # mag; behind more, a star's light through any band to 5 micron is that of a hotter or redder source
 HOT_K, COLD_K = (2000.0, 100000.0), (20.0, 2000.0)  # Planck sources, in two ranges of one family
 MODIFIED_BETA, MODIFIED_UM = (0.5, 2.0), (1.0, 300.0)  # emissivity min(1, um/wave)^beta of dust grains
 FEATURE_UM, FEATURE_WIDTH, FEATURE_K = (3.2, 40.0), (0.02, 0.3), (120.0, 900.0)  # minerals and PAH
-TEMPLATES_MAX = 200  # interpolated photospheres are thinned to about this many
+TEMPLATES_MAX = 200  # a longer list of templates, in order of temperature, is thinned evenly to at most this many
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -44,7 +43,7 @@ class Family:
 class Generators:
     """Columns of the natural cone on one set of bands."""
 
-    flux: NDArray[np.float32]  # shape (blocks, B, BLOCK): each column's largest band is 1; padded with zero columns
+    flux: NDArray[np.float32]  # shape (blocks, B, BLOCK): each column's largest band is 1
     coarse: NDArray[np.int64]  # shape (M,), columns of the coarse grid
     families: tuple[Family, ...]
     covered: NDArray[np.bool_]  # shape (B,): bands for which the photosphere source has a flux
@@ -131,7 +130,8 @@ def _grid(*axes: FloatArray) -> tuple[FloatArray, NDArray[np.bool_]]:
 
 def build_generators(
     rules: Sequence[Quadrature],
-    photosphere: Photosphere,
+    teff_k: FloatArray,
+    ln_flux: FloatArray,
     law: str = "g23",
     user: Mapping[str, tuple[FloatArray, FloatArray]] | None = None,
 ) -> Generators:
@@ -139,7 +139,8 @@ def build_generators(
 
     Args:
         rules: one quadrature per band, B of them.
-        photosphere: templates on the same B bands.
+        teff_k: shape (N,), effective temperatures of the photosphere templates.
+        ln_flux: shape (N, B), ln of their band fluxes at any scale; NaN where the source says nothing.
         law: extinction law of every screen.
         user: name -> (wavelength in micron, flux density in Jy at any scale), natural sources the user adds.
     """
@@ -151,14 +152,14 @@ def build_generators(
     bumps = refined(*FEATURE_UM, 24), refined(*FEATURE_WIDTH, 1)
     light = _Light(rules, shades)
     parts = [
-        light.photospheres(photosphere, star),
+        light.photospheres(teff_k, ln_flux, star),
         light.thermal("planck", ("temperature",), (hot_k,), star),
         light.thermal("planck", ("temperature",), (cold_k,), cold),
         light.thermal("modified", ("temperature", "beta", "break_um"), (grain_k, *grains), dusty, emissivity),
         light.thermal("feature", ("temperature", "centre_um", "width"), (feature_k, *bumps), dusty, drude),
         *(light.spectrum(name, *spectrum, star) for name, spectrum in (user or {}).items()),
     ]
-    return _assemble(parts, np.isfinite(photosphere.ln_flux).all(axis=0))
+    return _assemble(parts, np.isfinite(ln_flux).all(axis=0))
 
 
 Screens = tuple[FloatArray, NDArray[np.bool_]]
@@ -196,18 +197,15 @@ class _Light:
             rows.append((source.reshape(len(parameters), -1) @ shade).ravel())
         return _Part(name, keys, parameters, screens[0], np.stack(rows), np.outer(even, screens[1]).ravel())
 
-    def photospheres(self, photosphere: Photosphere, screens: Screens) -> _Part:
+    def photospheres(self, teff_k: FloatArray, ln_flux: FloatArray, screens: Screens) -> _Part:
         """Templates dimmed in each band as a Planck source of their temperature is."""
-        thinned = photosphere.source in ("dwarfs", "planck")
-        step = -(-photosphere.teff_k.size // TEMPLATES_MAX) if thinned else 1
-        teff = photosphere.teff_k[::step]
+        step = -(-teff_k.size // TEMPLATES_MAX)
+        teff = teff_k[::step]
         rows = []
-        for rule, shade, ln_flux in zip(
-            self.rules, self.shades[id(screens)], photosphere.ln_flux[::step].T, strict=True
-        ):
+        for rule, shade, ln_band in zip(self.rules, self.shades[id(screens)], ln_flux[::step].T, strict=True):
             source = planck_sources(rule.wave_um, teff) * rule.weight
             dimmed = (source @ shade) / source.sum(axis=1, keepdims=True)
-            rows.append((np.exp(ln_flux)[:, None] * dimmed).ravel())
+            rows.append((np.exp(ln_band)[:, None] * dimmed).ravel())
         even = np.outer(np.arange(teff.size) % 4 == 0, screens[1]).ravel()
         return _Part("photosphere", ("teff",), teff[:, None], screens[0], np.nan_to_num(np.stack(rows)), even)
 
@@ -221,16 +219,21 @@ class _Light:
 
 
 def _assemble(parts: Sequence[_Part], covered: NDArray[np.bool_]) -> Generators:
-    """One table of float32 blocks, every column over its own largest band flux."""
+    """One table of float32 blocks, every column over its own largest band flux.
+
+    Each column has a trace of the hottest Planck source in it, which is natural too, so that none is zero in any
+    set of bands; the last block is filled up with that source.
+    """
     first, families, coarse = 0, [], []
     total = sum(part.flux.shape[1] for part in parts)
-    table = np.zeros((len(covered), -(-total // BLOCK) * BLOCK), dtype=np.float32)
+    hottest = parts[1].flux[:, parts[1].flux.shape[1] - len(parts[1].screens)]  # unscreened, the last temperature
+    ground = (hottest / hottest.max())[:, None]
+    table = np.tile(ground, (1, -(-total // BLOCK) * BLOCK)).astype(np.float32)
     for part in parts:
         families.append(Family(part.name, part.keys, part.sources, part.screens, first))
         top = part.flux.max(axis=0)
         scaled = part.flux / np.where(top > 0, top, 1.0)
-        scaled[scaled < NIL] = 0.0
-        table[:, first : first + scaled.shape[1]] = scaled
+        table[:, first : first + scaled.shape[1]] = np.where(scaled < NIL, 0.0, scaled) + NIL * ground
         coarse.append(first + np.flatnonzero(part.even))
         first += scaled.shape[1]
     blocks = table.reshape(len(covered), -1, BLOCK).transpose(1, 0, 2).copy()
