@@ -67,6 +67,10 @@ class PlainGroup(click.Group):
         except click.ClickException as error:
             complain(usage_sentence(error))
             return WRONG_USE
+        except OSError as error:  # while help was printed
+            return failed(error)
+        except SystemExit:  # how click leaves when whoever read our output has gone
+            return DONE
 
     def invoke(self, ctx: click.Context) -> int | None:
         """Run the chosen command; what it raises becomes a sentence and a status."""

@@ -29,7 +29,7 @@ PAGE = 1000  # rows fetched at a time
 LIST_HEADINGS = ("name", "oddness", "odd_band", "odd_pull", *CHECKS, "outcome", "ruled", "to_rule")
 
 
-@click.command("list")
+@click.command("list", short_help="The queue as text.")
 @queue_argument
 @as_option
 @unresolved_option
@@ -95,7 +95,7 @@ def print_rows(rows: Iterator[QueueRow]) -> None:
         table(LIST_HEADINGS, page, numbers=(1, 3, 10, 11))
 
 
-@click.command("show")
+@click.command("show", short_help="One candidate's evidence.")
 @queue_argument
 @name_argument
 @as_option
@@ -118,7 +118,7 @@ def show_command(queue: str, name: str, handle: str | None, as_json: bool) -> in
     return 0
 
 
-@click.command("story")
+@click.command("story", short_help="What happened to a candidate, in time order.")
 @queue_argument
 @name_argument
 @as_option

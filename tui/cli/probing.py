@@ -8,7 +8,7 @@ from tui.cli.arguments import check_argument, name_argument, pairs, queue_argume
 from tui.errors import InputError
 
 
-@click.command("probe")
+@click.command("probe", short_help="A fit with parameters fixed or bands dropped.")
 @queue_argument
 @name_argument
 @check_argument
@@ -17,7 +17,7 @@ from tui.errors import InputError
 def probe_command(queue: str, name: str, check: str, fix: dict[str, str], drop: tuple[str, ...]) -> int:
     """A fit with parameters fixed or bands dropped: --fix T=450 --drop W3. Nothing is stored."""
     from tui.cli.dossier import fit_cells
-    from tui.cli.printing import NOTHING, line, signed, table
+    from tui.cli.printing import line, signed, table
     from tui.workflow.session import Session
 
     fixed = {parameter: number(parameter, text) for parameter, text in fix.items()}
@@ -26,7 +26,7 @@ def probe_command(queue: str, name: str, check: str, fix: dict[str, str], drop: 
     line(f"{name}: {check} by hand" + (f", without {', '.join(drop)}" if drop else ""))
     table(("model", "chi2", "dof", "p", "BIC", "fitted values", "largest pull"), [fit_cells(fit)], numbers=(1, 2, 3, 4))
     line()
-    table(("band", "pull"), [(band, signed(pull) if band not in drop else NOTHING) for band, pull in fit.pulls.items()], (1,))
+    table(("band", "pull"), [(band, signed(pull)) for band, pull in fit.pulls.items()], numbers=(1,))
     return 0
 
 

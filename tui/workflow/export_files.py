@@ -7,21 +7,19 @@ import csv
 import json
 import os
 import tempfile
-from collections.abc import Callable, Iterator, Mapping, Sequence
+from collections.abc import Callable, Iterator, Mapping
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, TextIO
 
 import numpy as np
 
 from tui.errors import InputError, TableError
-from tui.workflow.export_columns import ExportColumn
+from tui.workflow.export_columns import INT_NULL, Cells
 from tui.workflow.safe_text import safe
 
 if TYPE_CHECKING:
     from astropy.table import Table
 
-Cells = Mapping[str, Sequence[Any]]  # column name -> one value a row, None where masked
-INT_NULL = -2147483648  # TNULL of FITS integer columns: no count or number of degrees of freedom
 RISKY_STARTS = ("=", "+", "-", "@", "\t", "\r", "\n", "\uff1d", "\uff0b", "\uff0d", "\uff20")
 INERT = "'"
 INERT_REMARK = (
@@ -30,18 +28,17 @@ INERT_REMARK = (
 UTF8_REMARK = "text columns are UTF-8 bytes"
 
 
-def write_list(path: str, columns: Sequence[ExportColumn], cells: Cells, meta: Mapping[str, Any], force: bool) -> None:
+def write_list(path: str, cells: Cells, meta: Mapping[str, Any], *, force: bool) -> None:
     """Write one file in the format that its ending names.
 
     Args:
-        cells: all of one length.
         meta: JSON values.
     Raises:
         InputError: an ending of no known format, or the file exists and `force` is false.
     """
     writer = writer_for(path)
     with replacing(path, force) as place:
-        writer(place, columns, cells, meta)
+        writer(place, cells, meta)
 
 
 def writer_for(path: str) -> Callable[..., None]:
@@ -96,54 +93,33 @@ def claim_name(path: str) -> None:
         refuse_existing(path, force=False)
 
 
-def as_table(columns: Sequence[ExportColumn], cells: Cells, meta: Mapping[str, Any]) -> Table:
-    """The list as an astropy table with units, descriptions, UCDs and masks."""
-    from astropy.table import MaskedColumn, Table
+def as_table(cells: Cells, meta: Mapping[str, Any], clean: Callable[[str], str] = str) -> Table:
+    """The list as an astropy table with units, descriptions, UCDs and masks; texts go through `clean`."""
+    from astropy.table import Column, MaskedColumn, Table
 
-    made = Table(meta=dict(meta), masked=False)
-    for column in columns:
-        values = cells[column.name]
-        mask = np.array([value is None for value in values], dtype=bool)
-        filled = column_values(column, values)
-        one = MaskedColumn(filled, mask=mask, name=column.name, unit=column.unit or None, description=column.description)
-        if column.kind is int:
+    made = Table(meta=dict(meta))
+    for column in cells.columns:
+        values, mask = cells.column(column, clean)
+        about = {"name": column.name, "unit": column.unit or None, "description": column.description}
+        one = MaskedColumn(values, mask=mask, **about) if mask.any() else Column(values, **about)
+        if mask.any() and column.kind is int:
             one.fill_value = INT_NULL
-        if column.ucd:
-            one.meta["ucd"] = column.ucd
-        made.add_column(one if mask.any() else unmasked(one), copy=False)
+        one.meta["ucd"] = column.ucd
+        made.add_column(one, copy=False)
     return made
 
 
-def unmasked(column: Any) -> Any:
-    """A column in which nothing is masked, as a plain one; what it says of itself stays."""
-    from astropy.table import Column
-
-    plain = Column(column.data.data, name=column.name, unit=column.unit, description=column.description)
-    plain.meta.update(column.meta)
-    return plain
-
-
-def column_values(column: ExportColumn, values: Sequence[Any]) -> np.ndarray:
-    """One column's values as an array, with a filler of its type where there is none."""
-    if column.kind is str:
-        return np.array(["" if value is None else value for value in values], dtype=np.str_ if values else "U1")
-    filler = np.nan if column.kind is float else INT_NULL
-    dtype = np.float64 if column.kind is float else np.int32
-    return np.array([filler if value is None else value for value in values], dtype=dtype)
-
-
-def write_ecsv(place: str, columns: Sequence[ExportColumn], cells: Cells, meta: Mapping[str, Any]) -> None:
+def write_ecsv(place: str, cells: Cells, meta: Mapping[str, Any]) -> None:
     """Enhanced character-separated values, comma between cells."""
-    as_table(columns, cells, meta).write(place, format="ascii.ecsv", delimiter=",", overwrite=True)
+    as_table(cells, meta).write(place, format="ascii.ecsv", delimiter=",", overwrite=True)
 
 
-def write_votable(place: str, columns: Sequence[ExportColumn], cells: Cells, meta: Mapping[str, Any]) -> None:
+def write_votable(place: str, cells: Cells, meta: Mapping[str, Any]) -> None:
     """VOTable with a UCD, unit and description on each field; the metadata as INFO elements."""
     from astropy.io.votable import from_table
     from astropy.io.votable.tree import Info
 
-    kept = {column.name: xml_cells(cells[column.name]) if column.kind is str else cells[column.name] for column in columns}
-    document = from_table(as_table(columns, kept, {}))
+    document = from_table(as_table(cells, {}, clean=safe))  # XML cannot hold control characters
     resource = document.resources[0]
     resource.description = safe(meta.get("caution", ""))
     for name, text in meta_lines(meta):
@@ -151,25 +127,19 @@ def write_votable(place: str, columns: Sequence[ExportColumn], cells: Cells, met
     document.to_xml(place)
 
 
-def xml_cells(values: Sequence[Any]) -> list[str | None]:
-    """Text cells without the characters that XML cannot hold."""
-    return [None if value is None else safe(value) for value in values]
-
-
-def write_fits(place: str, columns: Sequence[ExportColumn], cells: Cells, meta: Mapping[str, Any]) -> None:
+def write_fits(place: str, cells: Cells, meta: Mapping[str, Any]) -> None:
     """A FITS binary table: units, descriptions as TCOMMn, UCDs as TUCDn, the metadata as HISTORY lines."""
     from astropy.io import fits
 
-    made = as_table(columns, cells, {})
-    for column in columns:
-        if column.kind is str:
-            made[column.name] = encoded(made[column.name])
+    made = as_table(cells, {})
+    for name in made.colnames:
+        if made[name].dtype.kind == "U":
+            made[name] = encoded(made[name])
     table = fits.table_to_hdu(made)
     table.name = "VETTED"
-    for number, column in enumerate(columns, start=1):
+    for number, column in enumerate(cells.columns, start=1):
         table.header[f"TCOMM{number}"] = column.description
-        if column.ucd:
-            table.header[f"TUCD{number}"] = column.ucd
+        table.header[f"TUCD{number}"] = column.ucd
     for name, text in (*meta_lines(meta), ("text", UTF8_REMARK)):
         table.header.add_history(ascii_text(f"{name}: {text}"))
     fits.HDUList([fits.PrimaryHDU(), table]).writeto(place, overwrite=True)
@@ -188,22 +158,21 @@ def ascii_text(text: str) -> str:
     return safe(text).encode("ascii", "backslashreplace").decode("ascii")
 
 
-def write_csv(place: str, columns: Sequence[ExportColumn], cells: Cells, meta: Mapping[str, Any]) -> None:
+def write_csv(place: str, cells: Cells, meta: Mapping[str, Any]) -> None:
     """Comma-separated values under lines that begin with #; numbers keep every digit, empty where masked."""
     with open(place, "w", encoding="utf-8", newline="") as stream:
-        write_csv_head(stream, columns, meta)
+        write_csv_head(stream, cells, meta)
         rows = csv.writer(stream, lineterminator="\n")
-        rows.writerow([column.name for column in columns])
-        ordered = [cells[column.name] for column in columns]
-        for values in zip(*ordered, strict=True):
+        rows.writerow([column.name for column in cells.columns])
+        for values in cells.rows():
             rows.writerow([csv_cell(value) for value in values])
 
 
-def write_csv_head(stream: TextIO, columns: Sequence[ExportColumn], meta: Mapping[str, Any]) -> None:
+def write_csv_head(stream: TextIO, cells: Cells, meta: Mapping[str, Any]) -> None:
     """The metadata, and unit and meaning of each column, as lines that begin with #."""
     for name, text in (*meta_lines(meta), ("text", INERT_REMARK)):
         stream.write(f"# {name}: {safe(text)}\n")
-    for column in columns:
+    for column in cells.columns:
         unit = f" [{column.unit}]" if column.unit else ""
         stream.write(f"# column {column.name}{unit}: {column.description}\n")
 

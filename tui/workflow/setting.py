@@ -1,0 +1,67 @@
+"""The settings of a queue: read, write, and every value they ever had."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from contextlib import closing
+
+from tui.model import Settings
+from tui.store.connect import open_queue
+from tui.store.settings import read_settings, setting_history, write_setting
+from tui.workflow.clock import utc_now
+
+MEANINGS = {
+    "quorum": "sure rulings that settle a check",
+    "agree_share": "share of them that must agree",
+    "walk_all": "every check must be ruled even after one explains",
+    "photosphere": "dwarfs, planck, or grid DIR",
+    "law": "extinction law: g23, f99, ccm89, wc19",
+    "r_v": "A(V)/E(B-V), a number or free",
+    "av_prior": "largest A(V) in mag; empty: av_max of the candidate, else 1.8 mag/kpc, else 5 mag",
+    "p_min": "a fit with a smaller p is not adequate",
+    "source_floor": "spread of stars around the photosphere source, fraction; empty: its own table",
+    "ruwe_max": "RUWE above which a parallax is a limit only",
+    "n_searched": "stars searched to make this queue; empty: not known",
+}
+
+
+def shown(value: object) -> str:
+    """A setting's value as it is typed.
+
+    >>> shown(True), shown(None), shown(2)
+    ('yes', '', '2')
+    """
+    if isinstance(value, bool):
+        return "yes" if value else "no"
+    return "" if value is None else str(value)
+
+
+def overview(path: str) -> list[tuple[str, str, str]]:
+    """Name, value and meaning of every setting."""
+    with closing(open_queue(path, write=False)) as connection:
+        return list(overview_rows(read_settings(connection)))
+
+
+def overview_rows(settings: Settings) -> Iterator[tuple[str, str, str]]:
+    """Name, value and meaning of every setting, those of single bands and instruments at the end."""
+    for name, meaning in MEANINGS.items():
+        yield name, shown(getattr(settings, name)), meaning
+    for band, floor in sorted(settings.floors.items()):
+        yield f"floor.{band}", shown(floor), "calibration floor of the band, fraction"
+    for instrument, common in sorted(settings.common.items()):
+        yield f"common.{instrument}", shown(common), "common error of the instrument, fraction"
+
+
+def write(path: str, name: str, value: str, handle: str | None) -> None:
+    """Set a value. SettingError where there is no such setting or the value is out of its range."""
+    from tui.workflow.session import reviewer_named
+
+    with closing(open_queue(path)) as connection:
+        by = reviewer_named(connection, handle).id if handle else ""
+        write_setting(connection, name, value, utc_now(), by)
+
+
+def history(path: str, name: str) -> list[tuple[str, str, str]]:
+    """When, by whom and to what a setting was set, oldest first."""
+    with closing(open_queue(path, write=False)) as connection:
+        return [(line.utc, line.by, line.value) for line in setting_history(connection, name)]
