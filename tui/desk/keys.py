@@ -16,7 +16,7 @@ from types import MappingProxyType
 from textual.binding import Binding
 
 from tui.errors import SettingError
-from tui.model import CHECKS
+from tui.model import CHECK_TITLES, CHECKS
 
 # What a terminal, its multiplexer or the shell does with these is left to them.
 RESERVED = frozenset({"ctrl+a", "ctrl+b", "ctrl+c", "ctrl+d", "ctrl+h", "ctrl+q", "ctrl+s", "ctrl+w", "ctrl+z"})
@@ -58,7 +58,7 @@ QUEUE = (
     Key("queue.open", "enter", "open", "open", "Open the chosen candidate, at the first check you have not ruled.", 1),
     *(
         Key(f"queue.unresolved_{check}", key, f"unresolved('{check}')", "unresolved",
-            f"Only candidates whose check {check} is unresolved, as far as you may see; again for all.", 2)
+            f"Only candidates unresolved in {CHECK_TITLES[check]}, as far as you may see; again for all.", 2)
         for check, key in _CHECK_KEYS.items()
     ),
     Key("queue.needs_me", "n", "needs_me", "needs me",
@@ -107,30 +107,43 @@ CANDIDATE = (
         "Choose: the check explains the data. Enter records it.", 1),
     Key("candidate.short", "f", "choose('short')", "falls short", "Choose: the check falls short of the data.", 1),
     Key("candidate.unclear", "u", "choose('unclear')", "unclear", "Choose: these data cannot tell.", 1),
-    Key("candidate.record", "enter", "record", "record", "Record what you chose, with its note.", 1),
+    Key("candidate.record", "enter", "record", "record",
+        "Record what you chose, with its note, and go on to the next check you have to rule.", 1),
     Key("candidate.note", "a", "note", "a note",
         "Write a note beside the ruling. Tab leaves it; it is kept as you type.", 1),
-    Key("candidate.next_check", "tab", "next_check", "check", "The next check.", 1),
+    Key("candidate.reaffirm", "r", "reaffirm", "it stands",
+        "Record your stale ruling anew: the evidence changed, and it still holds.", 0),
+    Key("candidate.withdraw", "w", "withdraw", "withdraw", "Choose: take back your ruling on this check.", 2),
+    Key("candidate.later", "l", "later", "later", "Leave this candidate for later and take the next.", 2),
+    Key("candidate.next", "m", "next_for_me", "next for me", "The next candidate that needs you.", 2),
+    Key("candidate.last", "z", "last_candidate", "the one before", "Back to the candidate you had before this one.", 0),
+    Key("candidate.next_check", "tab", "next_check", "check", "The next check; by hand, the next number.", 1),
+    Key("candidate.previous_check", "shift+tab", "previous_check", "check", "The check before.", 0),
     *(
         Key(f"candidate.check_{check}", key, f"check('{check}')", "check", f"Go to the check {check}.", 0)
         for check, key in _CHECK_KEYS.items()
     ),
-    Key("candidate.views", "v", "views", "views", "The next page: mixture, dips, neighbours, pictures, story.", 2),
-    Key("candidate.plot", "p", "plot", "plot", "The plot alone, as large as the screen; again for the numbers.", 2),
-    Key("candidate.hand", "h", "hand", "hand", "Change parameters by hand: the curve and chi-square follow.", 2),
-    Key("candidate.compare", "c", "compare", "compare", "Draw another check's fit on the same plot.", 2),
-    Key("candidate.later", "l", "later", "later", "Leave this candidate for later and take the next.", 2),
-    Key("candidate.withdraw", "w", "withdraw", "withdraw", "Take back your ruling on this check.", 2),
     Key("candidate.left", "left", "point(-1)", "point", "The point to the left, in words.", 0),
     Key("candidate.right", "right", "point(1)", "point", "The point to the right, in words.", 0),
-    Key("candidate.up", "up", "up", "up", "Up; in hand mode, more of the chosen parameter.", 0),
-    Key("candidate.down", "down", "down", "down", "Down; in hand mode, less of the chosen parameter.", 0),
-    Key("candidate.zoom_in", "plus", "zoom(1)", "zoom", "Closer.", 0),
+    Key("candidate.up", "up", "up", "up", "The fit before; by hand, more of the chosen number; on a page, up.", 0),
+    Key("candidate.down", "down", "down", "down", "The next fit; by hand, less of the chosen number; on a page, down.", 0),
+    Key("candidate.page_up", "pageup", "page_up", "page up", "One screen up; by hand, a large step up.", 0),
+    Key("candidate.page_down", "pagedown", "page_down", "page down", "One screen down; by hand, a large step down.", 0),
+    Key("candidate.zoom_in", "plus,equals_sign", "zoom(1)", "zoom", "Closer, about the point under the cursor.", 0),
     Key("candidate.zoom_out", "minus", "zoom(-1)", "zoom", "Farther.", 0),
+    Key("candidate.pan_left", "less_than_sign", "pan(-1)", "move", "Zoomed: towards shorter wavelengths.", 0),
+    Key("candidate.pan_right", "greater_than_sign", "pan(1)", "move", "Zoomed: towards longer wavelengths.", 0),
+    Key("candidate.quantity", "y", "quantity", "F_nu or nu F_nu", "Draw nu F_nu, where a black body's share of the light shows, or F_nu.", 0),
+    Key("candidate.plot", "p", "plot", "plot", "The plot alone, as large as the screen; again for the numbers.", 2),
+    Key("candidate.views", "v", "views", "views", "The next page: facts, measurements, all fits, mixture, dips, pictures, story.", 2),
+    Key("candidate.views_back", "V", "views_back", "page before", "The page before.", 0),
+    *(Key(f"candidate.page_{n}", str(n), f"page({n})", "page", f"Page {n}.", 0) for n in range(1, 10)),
+    Key("candidate.hand", "h", "hand", "by hand", "Change numbers by hand: the curve and chi-square follow.", 2),
     Key("candidate.drop", "space", "drop", "drop",
-        "In hand mode, leave the band under the cursor out of the fit, or take it in again.", 0),
-    Key("candidate.reset", "0", "reset", "reset", "The whole plot again; in hand mode, the program's own fit.", 0),
-    Key("candidate.next", "m", "next_for_me", "next for me", "The next candidate that needs you.", 2),
+        "By hand: leave the band under the cursor out of the fit, or take it in again.", 0),
+    Key("candidate.release", "o", "release", "let it fit", "By hand: let the chosen number be fitted again.", 0),
+    Key("candidate.reset", "0", "reset", "reset", "By hand: the program's own fit. Else the whole plot again.", 0),
+    Key("candidate.compare", "c", "compare", "compare", "Draw another check's best fit on the same plot.", 2),
 )
 PLACES: Mapping[str, tuple[Key, ...]] = MappingProxyType(
     {
@@ -149,6 +162,7 @@ _SHOWN = MappingProxyType(
     {"enter": "Enter", "question_mark": "?", "slash": "/", "space": "Space", "tab": "Tab", "up": "Up", "down": "Down"}
     | {"left": "Left", "right": "Right", "pageup": "PgUp", "pagedown": "PgDn", "home": "Home", "end": "End"}
     | {"plus": "+", "minus": "-", "backspace": "Backspace", "escape": "Esc", "comma": ",", "full_stop": "."}
+    | {"less_than_sign": "<", "greater_than_sign": ">", "equals_sign": "=", "shift+tab": "Shift+Tab"}
 )
 
 
