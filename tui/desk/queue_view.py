@@ -9,7 +9,7 @@ from tui.workflow.records import Filter
 
 ORDERS = ("oddness", "name", "ruled", "outcome")
 _ORDER_WORDS = {
-    ("oddness", True): "oddness, most first",
+    ("oddness", True): "oddness",
     ("oddness", False): "oddness, least first",
     ("name", False): "name",
     ("name", True): "name, last first",

@@ -24,7 +24,7 @@ class DeskScreen(Screen[Result]):
     """A screen of one place; `PLACE` names its table of keys."""
 
     PLACE: ClassVar[str] = ""
-    AUTO_FOCUS = None  # a focused widget would swallow letters
+    AUTO_FOCUS = ""  # none: a focused widget would swallow letters
     app: Desk
 
     def key_line(self, lines: int = 1) -> KeyLine:

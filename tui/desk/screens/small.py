@@ -13,7 +13,7 @@ from tui.desk.help import TOO_SMALL
 class SmallScreen(Screen[None]):
     """One plain sentence; everything else waits beneath it."""
 
-    AUTO_FOCUS = None
+    AUTO_FOCUS = ""
 
     def compose(self) -> ComposeResult:
         """The sentence."""

@@ -6,9 +6,9 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 
 from rich.cells import cell_len
+from textual import events
 from textual.content import Content
 from textual.geometry import Size
-from textual.style import Style
 from textual.widget import Widget
 
 from tui.desk.keys import Key, shown
@@ -88,10 +88,23 @@ class KeyLine(Widget):
         """The lines."""
         key_style, label_style = self.get_visual_style("key-line--key"), self.get_visual_style("key-line--label")
         drawn = []
-        for line in chosen_lines(self.pieces, self.size.width or 78, self.lines):
-            parts = []
-            for piece in line:
-                click = Style.from_meta({"@click": f"screen.{piece.action}"}) if piece.action else Style()
-                parts += [(piece.keys, key_style + click), (f" {piece.label}", label_style + click), "  "]
+        for line in self.placed():
+            parts = [part for piece in line for part in ((piece.keys, key_style), (f" {piece.label}  ", label_style))]
             drawn.append(Content.assemble(*parts))
         return Content("\n").join(drawn)
+
+    def placed(self) -> list[list[Entry]]:
+        """The pieces as they stand on the lines."""
+        return chosen_lines(self.pieces, self.size.width or 78, self.lines)
+
+    async def on_click(self, event: events.Click) -> None:
+        """A click on a piece does what its key does."""
+        place = event.get_content_offset(self)
+        if place is None or place.y >= len(self.placed()):
+            return
+        start = 0
+        for piece in self.placed()[place.y]:
+            if start <= place.x < start + piece.width - 2 and piece.action:
+                await self.screen.run_action(piece.action)
+                return
+            start += piece.width

@@ -38,12 +38,12 @@ def columns_for(width: int) -> Columns:
     """The columns that a list `width` cells wide has room for.
 
     >>> columns_for(80).name, columns_for(80).oddness, columns_for(120).oddness
-    (12, 0, 7)
+    (11, 0, 7)
     """
     check = 7 if width < 100 else 8
     gap = 1 if width < 100 else 2
     oddness = 7 if width >= 92 else 0
-    used = 2 + gap + oddness + 6 + 6 + gap + check * len(CHECKS) + 11 + gap + 5
+    used = 2 + gap + oddness + 6 + 6 + gap + check * len(CHECKS) + 11 + gap + 5 + 1
     return Columns(width, max(NAME_NARROWEST, min(NAME_WIDEST, width - used)), oddness, check, gap=gap)
 
 
@@ -95,7 +95,7 @@ def row_cells(row: QueueRow, columns: Columns, chosen: bool) -> list[Cell]:
         text = state_text(state, check in row.stale) if state else ""
         cells.append((fit(text[: columns.check - 1] if state == "nodata" else text, columns.check), state or "plain"))
     cells.append((fit(outcome_text(row.outcome), columns.outcome) + gap, row.outcome))
-    cells.append((fit(yours_text(row), columns.yours), _mark(row.needs_me)))
+    cells.append((fit(yours_text(row), columns.yours), yours_style(row)))
     return cells
 
 
@@ -109,6 +109,13 @@ def yours_text(row: QueueRow) -> str:
     if row.needs_me:
         return f"{row.ruled}/{row.to_rule}"
     return "--"
+
+
+def yours_style(row: QueueRow) -> str:
+    """Loud where something is begun or asked again, plain where it waits, quiet where nothing is asked."""
+    if not row.needs_me:
+        return "quiet"
+    return "attention" if row.done or row.ruled else "plain"
 
 
 def compact(count: int | None) -> str:

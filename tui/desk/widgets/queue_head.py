@@ -16,7 +16,7 @@ from tui.desk.text import KEY_OF_CHECK, fit, safe, thousands
 from tui.desk.widgets.queue_columns import Cell, columns_for, count_cells, head_cells
 from tui.model import CHECKS
 
-HEAD_STYLES = ("quiet", "attention", "key", "active", "plain")
+HEAD_STYLES = ("name", "quiet", "attention", "key", "active", "plain")
 
 
 @dataclass(frozen=True, slots=True)
@@ -70,7 +70,7 @@ class QueueTitle(HeadLines):
         right = [*([f"saved {facts.saved}"] if facts.saved else []), reader]
         end = "   ".join(right) + " "
         name = fit(" " + safe(facts.queue_name), max(10, width - cell_len(end)))
-        return [[(name, "plain"), (end, "quiet")], self._work_line(width)]
+        return [[(name, "name"), (end, "quiet")], self._work_line(width)]
 
     def _work_line(self, width: int) -> list[Cell]:
         facts = self.facts

@@ -1,0 +1,103 @@
+"""What happened to a candidate, in time order, as far as the reader may know."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from textual.app import ComposeResult
+from textual.widgets import Static
+
+from tui.desk.keys import bindings
+from tui.desk.screens.base import DeskScreen
+from tui.desk.text import SHORT_CHECKS, fit, safe, wrap
+from tui.desk.widgets.pick_rows import PickRow, PickRows
+from tui.desk.widgets.rows import Span, row
+from tui.errors import TuiError
+
+if TYPE_CHECKING:
+    from tui.workflow.records import StoryLine
+    from tui.workflow.session import Session
+
+TIME_WIDE, WHO_WIDE, WHAT_WIDE = 17, 13, 12
+
+
+class StoryScreen(DeskScreen[None]):
+    """One line or more for each thing that happened."""
+
+    PLACE = "story"
+    BINDINGS = bindings("story")
+
+    def __init__(self, session: Session, name: str) -> None:
+        super().__init__()
+        self.session = session
+        self.candidate_name = name
+        self.happened: list[StoryLine] = []
+
+    def compose(self) -> ComposeResult:
+        """Title, what happened, keys."""
+        yield Static(f" {safe(self.candidate_name)}   STORY, times in UTC", id="title", markup=False)
+        yield PickRows(self.make_rows, id="rows")
+        yield Static("", id="message", markup=False)
+        yield self.key_line(1)
+
+    def on_mount(self) -> None:
+        """Read it; a candidate has tens of lines at most."""
+        try:
+            self.happened = self.session.story(self.candidate_name)
+        except TuiError as error:
+            self.say(str(error), is_error=True)
+        self.query_one(PickRows).renew()
+
+    def make_rows(self, width: int) -> list[PickRow]:
+        """The story for a width."""
+        rows: list[PickRow] = [PickRow()]
+        has_marked = False
+        for line in self.happened:
+            if line.since_mine and not has_marked:
+                has_marked = True
+                rows += [PickRow(), PickRow(row((" since you last ruled on it", "head")))]
+            rows += [PickRow(spans) for spans in story_rows(line, width)]
+        if not self.happened:
+            rows.append(PickRow(row((" Nothing is told of it.", "quiet"))))
+        return rows
+
+    def action_up(self) -> None:
+        """Scroll up."""
+        self.query_one(PickRows).scroll_rows(-1)
+
+    def action_down(self) -> None:
+        """Scroll down."""
+        self.query_one(PickRows).scroll_rows(1)
+
+    def action_page_up(self) -> None:
+        """One screen up."""
+        rows = self.query_one(PickRows)
+        rows.scroll_rows(1 - rows.size.height)
+
+    def action_page_down(self) -> None:
+        """One screen down."""
+        rows = self.query_one(PickRows)
+        rows.scroll_rows(rows.size.height - 1)
+
+    def action_first(self) -> None:
+        """To the beginning."""
+        self.query_one(PickRows).to_top()
+
+    def action_last(self) -> None:
+        """To the end."""
+        self.query_one(PickRows).scroll_rows(1_000_000)
+
+
+def story_rows(line: StoryLine, width: int) -> list[list[Span]]:
+    """One thing that happened: when, who, what, then the text as often as it takes lines."""
+    when = safe(line.utc[:16].replace("T", " "))
+    what = f"{safe(line.what)} {SHORT_CHECKS.get(line.check, '')}".strip()
+    head = 1 + TIME_WIDE + WHO_WIDE + WHAT_WIDE + 6
+    first, *rest = wrap(safe(line.text), max(20, width - head - 1)) or [""]
+    spans = [
+        Span(" " + fit(when, TIME_WIDE), "quiet"),
+        Span(fit(safe(line.who), WHO_WIDE - 1) + " ", "strong"),
+        Span(fit(what, WHAT_WIDE + 5) + " "),
+        Span(first),
+    ]
+    return [spans, *([Span(" " * head), Span(more)] for more in rest)]
