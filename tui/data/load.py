@@ -126,3 +126,9 @@ def dwarfs() -> DwarfTable:
         mass_sun=column["mass_sun"],
         absolute_mag=MappingProxyType({name: column[name] for name in names}),
     )
+
+
+@cache
+def spreads() -> tuple[dict[str, str], ...]:
+    """Rows of the spread table: photosphere, bands, low_k, high_k, short_um, long_um, spread (text)."""
+    return tuple(read_rows("spread.csv"))

@@ -1,0 +1,201 @@
+"""Models made of a star and up to two further sources behind one screen of extinction.
+
+Every model shares one row of parameters; a model frees some of its columns:
+
+    LN_T    ln of the star's T_eff                    LN_S   ln of theta^2, theta = R/d in radian
+    AV, RV  the screen                                X2, X3 ln T (or slope) of the further sources
+    A2, A3  their amplitudes, >= 0: fraction of the star's luminosity (dust), of its Ks flux (star),
+            of its surface (compact), of its flux at 3.4 micron (power law)
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from tui.model import FloatArray
+from tui.physics.constants import MAG, PARSEC
+from tui.physics.extinction import R_V_RANGE
+from tui.physics.reddening import Reddening
+from tui.physics.sources import SourceGrid
+from tui.physics.templates import Templates
+
+LN_T, LN_S, AV, RV, X2, A2, X3, A3 = range(8)
+WIDTH = 8
+POWER_REDDENING_K = 1000.0  # a power law is reddened as a source of this colour
+A_MAX = 1e6
+NEAR = 1e-6  # a parameter this close to a bound, as a fraction of its range, lies at it
+
+
+@dataclass(frozen=True, slots=True)
+class Model:
+    """One family of explanation as the fits see it."""
+
+    name: str
+    free: tuple[int, ...]  # columns of the parameter row
+    sources: tuple[str, ...] = ()  # further sources: "dust", "star", "compact", "power"
+    bound_pair: bool = False  # the second star's size follows from both temperatures; the parallax is a datum
+
+
+STAR = Model("star", (LN_T, LN_S))
+STAR_AV = Model("star + A_V", (LN_T, LN_S, AV))
+STAR_AV_RV = Model("star + A_V, R_V", (LN_T, LN_S, AV, RV))
+DUST = Model("star + dust", (LN_T, LN_S, X2, A2), ("dust",))
+DUST_AV = Model("star + dust, A_V", (LN_T, LN_S, AV, X2, A2), ("dust",))
+TWO_DUST = Model("star + two dusts, A_V", (LN_T, LN_S, AV, X2, A2, X3, A3), ("dust", "dust"))
+BOUND_PAIR = Model("bound pair", (LN_T, LN_S, AV, X2), ("star",), bound_pair=True)
+FREE_PAIR = Model("free pair", (LN_T, LN_S, AV, X2, A2), ("star",))
+COMPACT = Model("star + compact", (LN_T, LN_S, AV, X2, A2), ("compact",))
+GALAXY = Model("star + galaxy", (LN_T, LN_S, AV, X2, A2), ("power",))
+MODELS = {
+    model.name: model
+    for model in (STAR, STAR_AV, STAR_AV_RV, DUST, DUST_AV, TWO_DUST, BOUND_PAIR, FREE_PAIR, COMPACT, GALAXY)
+}
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Kit:
+    """The tables of one model, for one choice of bands."""
+
+    model: Model
+    star: SourceGrid
+    star_reddening: Reddening
+    further: tuple[SourceGrid, ...]
+    further_reddening: tuple[Reddening, ...]
+    ratio: SourceGrid  # ln of the star's flux at Ks, one column
+    infrared: SourceGrid  # ln of the star's flux at 3.4 micron, one column
+    ln_radius2: SourceGrid  # ln of the squared radius on the dwarf sequence, m2, one column
+
+    def bounds(self, av_max: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Lowest and highest value of every parameter, each (M, 8)."""
+        low, high = np.zeros((av_max.size, WIDTH)), np.zeros((av_max.size, WIDTH))
+        low[:, LN_T], high[:, LN_T] = self.star.low, self.star.high
+        low[:, LN_S], high[:, LN_S] = -90.0, 0.0
+        high[:, AV] = av_max
+        low[:, RV], high[:, RV] = R_V_RANGE
+        for column, grid in zip((X2, X3), self.further, strict=False):
+            low[:, column], high[:, column] = grid.low, grid.high
+        high[:, A2] = high[:, A3] = A_MAX
+        return low, high
+
+    def near(self, av_max: FloatArray) -> FloatArray:
+        """How close to a bound counts as at it, (M, 8)."""
+        low, high = self.bounds(av_max)
+        near = NEAR * np.maximum(high - low, NEAR)
+        near[:, A2] = near[:, A3] = 1e-12
+        return near
+
+
+def one_column(grid: SourceGrid, column: FloatArray) -> SourceGrid:
+    """A table of one column over the parameter of `grid`."""
+    table = column[:, None]
+    return replace(grid, ln_flux=table, slope=np.gradient(table, axis=0))
+
+
+def kit_for(model: Model, templates: Templates, r_v: float = 3.1) -> Kit:
+    """Collect the tables of a model; R_V is fixed where the model does not free it."""
+    free_rv = RV in model.free
+
+    def screen(reddening: Reddening) -> Reddening:
+        return reddening if free_rv else reddening.fixed(r_v)
+
+    screens = {"star": templates.star_reddening, "dust": templates.dust_reddening, "power": templates.dust_reddening}
+    screens["compact"] = templates.compact_reddening
+    with np.errstate(divide="ignore"):
+        radius = np.where(np.isfinite(templates.radius_m), 2 * np.log(templates.radius_m), 0.0)
+    return Kit(
+        model=model,
+        star=templates.star,
+        star_reddening=screen(templates.star_reddening),
+        further=tuple(getattr(templates, source) for source in model.sources),
+        further_reddening=tuple(screen(screens[source]) for source in model.sources),
+        ratio=one_column(templates.star, templates.ln_ks),
+        infrared=one_column(templates.star, templates.ln_infrared),
+        ln_radius2=one_column(templates.star, radius),
+    )
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Prediction:
+    """Model fluxes (M, B), the star's share of them, and derivatives (M, P, B) for the free columns."""
+
+    flux: FloatArray
+    star: FloatArray
+    slopes: FloatArray
+
+
+def predict(kit: Kit, x: FloatArray) -> Prediction:
+    """Fluxes of parameter rows `x` (M, 8) in Jy, with derivatives."""
+    model = kit.model
+    value, slope = kit.star.at(x[:, LN_T])
+    reddened = AV in model.free
+    ratio = x[:, RV] if RV in model.free else None
+    slopes = np.zeros((x.shape[0], WIDTH, value.shape[1]))
+    if reddened:
+        a, da_t, da_av, da_rv = kit.star_reddening.at(x[:, LN_T], x[:, AV], ratio)
+        value, slope = value - MAG * a, slope - MAG * da_t
+    star = np.exp(value + x[:, LN_S, None])
+    slopes[:, LN_T] = star * slope
+    if reddened:
+        slopes[:, AV] = -MAG * star * da_av
+        if da_rv is not None:
+            slopes[:, RV] = -MAG * star * da_rv
+    total = star
+    for number in range(len(model.sources)):
+        total = total + _add_source(kit, number, x, ratio, reddened, slopes)
+    slopes[:, LN_S] = total
+    return Prediction(total, star, slopes[:, list(model.free)])
+
+
+def _add_source(
+    kit: Kit, number: int, x: FloatArray, ratio: FloatArray | None, reddened: bool, slopes: FloatArray
+) -> FloatArray:
+    """Flux of a further source; its derivatives are added to `slopes`."""
+    column_x, column_a = ((X2, A2), (X3, A3))[number]
+    source = kit.model.sources[number]
+    value, slope = kit.further[number].at(x[:, column_x])
+    if reddened:
+        colour = np.full(x.shape[0], np.log(POWER_REDDENING_K)) if source == "power" else x[:, column_x]
+        a, da_t, da_av, da_rv = kit.further_reddening[number].at(colour, x[:, AV], ratio)
+        value = value - MAG * a
+        slope = slope if source == "power" else slope - MAG * da_t
+    ln_h, dh_star, dh_own = _norm(kit, source, x[:, LN_T], x[:, column_x])
+    if kit.model.bound_pair:
+        own, down = kit.ln_radius2.at(x[:, column_x])
+        first, dfirst = kit.ln_radius2.at(x[:, LN_T])
+        amplitude = np.ones(x.shape[0])
+        ln_h, dh_star, dh_own = (own - first)[:, 0], -dfirst[:, 0], down[:, 0]
+    else:
+        amplitude = x[:, column_a]
+    unit = np.exp(value + (ln_h + x[:, LN_S])[:, None])
+    flux = amplitude[:, None] * unit
+    slopes[:, LN_T] += flux * dh_star[:, None]
+    slopes[:, column_x] = flux * (slope + dh_own[:, None])
+    slopes[:, column_a] = unit
+    if reddened:
+        slopes[:, AV] -= MAG * flux * da_av
+        if da_rv is not None:
+            slopes[:, RV] -= MAG * flux * da_rv
+    return flux
+
+
+def _norm(kit: Kit, source: str, ln_t: FloatArray, own: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """ln of what an amplitude of 1 means, and its derivatives with ln T and with the source's parameter."""
+    if source == "dust":
+        return 4 * ln_t - 4 * own, np.full(ln_t.shape, 4.0), np.full(ln_t.shape, -4.0)
+    if source == "star":
+        first, dfirst = kit.ratio.at(ln_t)
+        second, dsecond = kit.ratio.at(own)
+        return (first - second)[:, 0], dfirst[:, 0], -dsecond[:, 0]
+    if source == "power":
+        first, dfirst = kit.infrared.at(ln_t)
+        return first[:, 0], dfirst[:, 0], np.zeros(ln_t.shape)
+    return np.zeros(ln_t.shape), np.zeros(ln_t.shape), np.zeros(ln_t.shape)
+
+
+def parallax_of(kit: Kit, x: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Parallax (mas) that puts a dwarf of this T_eff at this angular size, and d ln parallax / d ln T_eff."""
+    radius2, slope = kit.ln_radius2.at(x[:, LN_T])
+    ln_distance = 0.5 * (radius2[:, 0] - x[:, LN_S])  # ln of metres
+    return 1000.0 * PARSEC * np.exp(-ln_distance), -0.5 * slope[:, 0]

@@ -1,0 +1,103 @@
+"""Levenberg-Marquardt within bounds, for many candidates at once."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from tui.model import FloatArray
+from tui.physics.composite import Kit, predict
+from tui.physics.likelihood import Errors, Residuals, residuals
+from tui.physics.problem import Problem
+
+STEPS = 40
+TOLERANCE = 1e-5  # of the cost: a thousandth of what an interval or a ruling could feel
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Descent:
+    """Where the descent ended."""
+
+    x: FloatArray  # (M, 8)
+    cost: FloatArray  # (M,)
+
+
+def descend(
+    problem: Problem,
+    kit: Kit,
+    errors: Errors,
+    start: FloatArray,
+    *,
+    held: np.ndarray | None = None,
+    steps: int = STEPS,
+    tolerance: float = TOLERANCE,
+) -> Descent:
+    """Lowest cost reached from `start` (M, 8), parameters kept within their bounds.
+
+    Args:
+        held: (M, 8) bool, parameters that stay as they are (for profiles and hand probing).
+    Source: Marquardt 1963, J. SIAM 11, 431; steps at an active bound are projected.
+    """
+    low, high = kit.bounds(problem.av_max)
+    free = list(kit.model.free)
+    x = np.clip(start, low, high)
+    x[:, [c for c in range(x.shape[1]) if c not in free]] = start[:, [c for c in range(x.shape[1]) if c not in free]]
+    fixed = np.zeros((x.shape[0], len(free)), bool) if held is None else held[:, free]
+    cost = np.full(x.shape[0], np.inf)
+    damping = np.full(x.shape[0], 1e-3)
+    rows = np.arange(x.shape[0])
+    state = residuals(problem, kit, errors, x, predict(kit, x))
+    cost[:] = state.cost
+    local = (problem, errors, low[:, free], high[:, free], fixed)
+    value, slopes = state.value, state.slopes
+    for _ in range(steps):
+        here, some_errors, lo, hi, still = local
+        step = _step(value, slopes, damping[rows], x[rows][:, free], lo, hi, still)
+        trial = x[rows].copy()
+        trial[:, free] = np.clip(trial[:, free] + step, lo, hi)
+        new = residuals(here, kit, some_errors, trial, predict(kit, trial))
+        new_cost = new.cost
+        gain = cost[rows] - new_cost
+        better = gain > 0
+        x[rows[better]] = trial[better]
+        cost[rows[better]] = new_cost[better]
+        damping[rows] = np.where(better, damping[rows] * 0.1, damping[rows] * 8.0)
+        value, slopes = np.where(better[:, None], new.value, value), np.where(better[:, None, None], new.slopes, slopes)
+        going = np.where(better, gain > tolerance, damping[rows] < 1e6)
+        if not going.any():
+            break
+        if going.sum() < 0.8 * rows.size:
+            rows, value, slopes = rows[going], value[going], slopes[going]
+            local = (here.take(going), some_errors.take(going), lo[going], hi[going], still[going])
+    return Descent(x, cost)
+
+
+def _step(
+    value: FloatArray,
+    slopes: FloatArray,
+    damping: FloatArray,
+    x: FloatArray,
+    low: FloatArray,
+    high: FloatArray,
+    fixed: np.ndarray,
+) -> FloatArray:
+    """One damped step (M, P); a parameter at a bound that would leave it rests."""
+    normal = slopes @ slopes.transpose(0, 2, 1)
+    gradient = np.einsum("mpb,mb->mp", slopes, value)
+    rests = fixed | ((x <= low) & (gradient > 0)) | ((x >= high) & (gradient < 0))
+    normal = np.where(rests[:, :, None] | rests[:, None, :], 0.0, normal)
+    diagonal = np.einsum("mpp->mp", normal)
+    scale = np.maximum(diagonal, 1e-12 * (1e-300 + diagonal.max(axis=1, keepdims=True)))
+    scale = np.where(rests | (scale <= 0), 1.0, scale)
+    root = np.sqrt(scale)
+    matrix = normal / root[:, :, None] / root[:, None, :]
+    place = np.arange(x.shape[1])
+    matrix[:, place, place] = np.where(rests, 1.0, matrix[:, place, place] + damping[:, None] + 1e-12)
+    right = np.where(rests, 0.0, -gradient / root)
+    return np.linalg.solve(matrix, right[:, :, None])[:, :, 0] / root
+
+
+def curvature(state: Residuals) -> FloatArray:
+    """Half the second derivative of the cost, Gauss-Newton, shape (M, P, P)."""
+    return state.slopes @ state.slopes.transpose(0, 2, 1)

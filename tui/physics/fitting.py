@@ -1,0 +1,169 @@
+"""Global fits of one model to many candidates: scan, descend, let the errors follow the model, look again."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from tui.model import FloatArray
+from tui.physics.composite import A2, A3, AV, LN_T, WIDTH, X2, X3, Kit, Model, Prediction, kit_for, predict
+from tui.physics.descent import descend
+from tui.physics.likelihood import Errors, chi_square, errors_for, minus_2_ln_l
+from tui.physics.problem import Problem
+from tui.physics.scan import scan
+
+PASSES = 8
+SETTLED = 0.1  # the error model has settled once chi-square moves by less
+LOOKS = 3  # times that the whole range is scanned anew with the errors of the last pass
+LOWER = 0.02  # a minimum found anew counts when its cost is lower by more
+SECOND_DUST_STEPS = (-1.4, -0.6, 0.6, 1.4)  # of ln T, where a second dust temperature is looked for
+REST = {"dust": np.log(300.0), "star": np.log(3500.0), "compact": np.log(20000.0), "power": 1.0}
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class FitBatch:
+    """The best fit of one model to each of M candidates."""
+
+    kit: Kit
+    problem: Problem
+    errors: Errors
+    x: FloatArray  # (M, 8)
+    cost: FloatArray  # (M,) sum of squares with the last pass's errors
+    chi2: FloatArray  # (M,)
+    minus2lnl: FloatArray  # (M,)
+    prediction: Prediction
+
+    @property
+    def model(self) -> Model:
+        """The model fitted."""
+        return self.kit.model
+
+    @property
+    def pulls(self) -> FloatArray:
+        """(measured - model)/sigma (M, B); for a limit 0 where it is met; NaN where nothing was measured."""
+        pull = (self.problem.flux_jy - self.prediction.flux) / self.errors.sigma
+        pull = np.where(self.problem.limited, np.minimum(pull, 0.0), pull)
+        return np.where(self.problem.detected | self.problem.limited, pull, np.nan)
+
+    def at_bounds(self) -> np.ndarray:
+        """Which free parameters lie at a bound, (M, P)."""
+        free = list(self.model.free)
+        low, high = (edge[:, free] for edge in self.kit.bounds(self.problem.av_max))
+        x, near = self.x[:, free], self.kit.near(self.problem.av_max)[:, free]
+        return (x <= low + near) | (x >= high - near)
+
+
+def first_errors(problem: Problem) -> Errors:
+    """Errors before any model: floors and spread of the measured fluxes themselves."""
+    flux = np.where(problem.detected, np.maximum(problem.flux_jy, 0.0), 0.0)
+    middle = np.full(len(problem), np.log(6000.0))
+    return errors_for(problem, flux, flux, middle)
+
+
+def fit(problem: Problem, model: Model, *, r_v: float = 3.1, start: FloatArray | None = None) -> FitBatch:
+    """Best fit of `model` to every candidate of `problem`.
+
+    Args:
+        r_v: R_V of the screen where the model does not free it.
+        start: (M, 8) rows to begin from besides the scan's, for nested models; NaN rows are passed over.
+    """
+    kit = kit_for(model, problem.templates, r_v)
+    errors = first_errors(problem)
+    extra = [] if start is None else [start]
+    x, cost = look(problem, kit, errors, extra)
+    errors, x, cost = settle(problem, kit, x)
+    for _ in range(LOOKS):
+        anew, anew_cost = look(problem, kit, errors, extra)
+        better = np.flatnonzero(anew_cost < cost - LOWER)
+        if not better.size:
+            break
+        some, x_some, cost_some = settle(problem.take(better), kit, anew[better])
+        x[better], cost[better] = x_some, cost_some
+        errors = replace_rows(errors, better, some)
+    return finish(problem, kit, errors, x)
+
+
+def look(problem: Problem, kit: Kit, errors: Errors, extra: list[FloatArray]) -> tuple[FloatArray, FloatArray]:
+    """The lowest of several descents from a scan of the whole range, errors frozen."""
+    best, best_cost = None, None
+    for rows in (*starting_rows(problem, kit, errors), *extra):
+        found = descend(problem, kit, errors, np.where(np.isfinite(rows), rows, 0.0))
+        if best is None:
+            best, best_cost = found.x, found.cost
+            continue
+        lower = found.cost < best_cost
+        best, best_cost = np.where(lower[:, None], found.x, best), np.where(lower, found.cost, best_cost)
+    return best, best_cost
+
+
+def starting_rows(problem: Problem, kit: Kit, errors: Errors) -> list[FloatArray]:
+    """Rows to descend from; a second dust temperature is looked for about the first."""
+    if len(kit.model.sources) < 2:
+        return list(scan(problem, kit, errors))
+    rows = scan(problem, kit, errors, 1)[0]
+    out = []
+    for step in SECOND_DUST_STEPS:
+        row = rows.copy()
+        row[:, X3] = np.clip(rows[:, X2] + step, kit.further[1].low, kit.further[1].high)
+        row[:, A3] = 0.3 * rows[:, A2]
+        out.append(row)
+    return out
+
+
+def settle(problem: Problem, kit: Kit, x: FloatArray) -> tuple[Errors, FloatArray, FloatArray]:
+    """Let errors and parameters follow each other until chi-square rests."""
+    before = np.full(len(problem), np.inf)
+    for _ in range(PASSES):
+        here = predict(kit, x)
+        errors = errors_for(problem, here.flux, here.star, x[:, LN_T])
+        found = descend(problem, kit, errors, x)
+        x = found.x
+        chi2 = chi_square(problem, kit, errors, x, predict(kit, x))
+        if np.all(np.abs(chi2 - before) < SETTLED):
+            break
+        before = chi2
+    return errors, x, found.cost
+
+
+def replace_rows(errors: Errors, rows: np.ndarray, some: Errors) -> Errors:
+    """`errors` with those of some candidates put in."""
+    sigma, ln_det = errors.sigma.copy(), errors.ln_det.copy()
+    sigma[rows], ln_det[rows] = some.sigma, some.ln_det
+    if errors.whiten is None:
+        return Errors(sigma, None, ln_det)
+    whiten = errors.whiten.copy()
+    whiten[rows] = some.whiten
+    return Errors(sigma, whiten, ln_det)
+
+
+def finish(problem: Problem, kit: Kit, errors: Errors, x: FloatArray) -> FitBatch:
+    """Statistics of parameter rows with given errors."""
+    x = rested(kit, x)
+    prediction = predict(kit, x)
+    chi2 = chi_square(problem, kit, errors, x, prediction)
+    from tui.physics.likelihood import residuals
+
+    cost = residuals(problem, kit, errors, x, prediction).cost
+    return FitBatch(kit, problem, errors, x, cost, chi2, minus_2_ln_l(problem, errors, cost), prediction)
+
+
+def rested(kit: Kit, x: FloatArray) -> FloatArray:
+    """Parameters of a source of no amplitude put to rest at a plain value, so that they mean nothing."""
+    x = x.copy()
+    if kit.model.bound_pair:
+        return x
+    for source, (column_x, column_a) in zip(kit.model.sources, ((X2, A2), (X3, A3)), strict=False):
+        gone = x[:, column_a] <= 1e-12
+        x[gone, column_x], x[gone, column_a] = REST[source], 0.0
+    return x
+
+
+def empty_rows(count: int) -> FloatArray:
+    """Rows of parameters that say nothing, (M, 8)."""
+    return np.full((count, WIDTH), np.nan)
+
+
+def screened(model: Model) -> bool:
+    """Whether the model has a screen of extinction."""
+    return AV in model.free

@@ -1,0 +1,136 @@
+"""The error model and -2 ln L: residuals that sum in squares to it, for many candidates at once."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from scipy.special import log_ndtr
+
+from tui.model import FloatArray
+from tui.physics.composite import LN_T, Kit, Prediction, parallax_of
+from tui.physics.problem import Problem
+
+LN_2PI = float(np.log(2 * np.pi))
+PARALLAX_SCATTER = 0.115  # 0.25 mag of real dwarfs about the sequence, as a fraction of the distance
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Errors:
+    """Errors of one pass, frozen while parameters move."""
+
+    sigma: FloatArray  # (M, B) Jy, total, 1 where nothing
+    whiten: FloatArray | None = None  # (M, B, B): inverse Cholesky factor where instruments share an error
+    ln_det: FloatArray | None = None  # (M,): ln determinant of the detections' covariance
+
+    def take(self, rows: np.ndarray) -> Errors:
+        """The same for some candidates."""
+        if self.whiten is None:
+            return Errors(self.sigma[rows], None, self.ln_det[rows])
+        return Errors(self.sigma[rows], self.whiten[rows], self.ln_det[rows])
+
+
+def spread_at(problem: Problem, ln_t: FloatArray) -> FloatArray:
+    """Fractional spread of real stars at ln T, shape (M, B): the nearest grid temperature's."""
+    star = problem.templates.star
+    place = np.rint((ln_t - star.low) / star.step).astype(np.intp)
+    return problem.templates.spread[np.clip(place, 0, star.ln_flux.shape[0] - 1)]
+
+
+def errors_for(problem: Problem, total: FloatArray, star: FloatArray, ln_t: FloatArray) -> Errors:
+    """sigma^2 = measurement^2 + (floor max(F, model))^2 + (spread F_star)^2, and the common term if any.
+
+    Args:
+        total, star: (M, B) Jy, model flux and the star's share of it, of the last pass.
+        ln_t: (M,), ln T_eff of the last pass, for the spread.
+    """
+    used = problem.detected | problem.limited
+    floor = problem.templates.floor * np.maximum(np.where(problem.detected, problem.flux_jy, 0.0), total)
+    variance = problem.error_jy**2 + floor**2 + (spread_at(problem, ln_t) * star) ** 2
+    sigma = np.where(used, np.sqrt(variance), 1.0)
+    ln_det = np.sum(np.where(problem.detected, 2 * np.log(sigma), 0.0), axis=1)
+    if not problem.common.size:
+        return Errors(sigma, None, ln_det)
+    shared = problem.common[None] * np.where(problem.detected, total, 0.0)[:, None, :] / sigma[:, None, :]
+    covariance = np.eye(sigma.shape[1]) + np.einsum("mkb,mkc->mbc", shared, shared)
+    factor = np.linalg.cholesky(covariance)
+    ln_det = ln_det + 2 * np.sum(np.log(np.diagonal(factor, axis1=1, axis2=2)), axis=1)
+    return Errors(sigma, np.linalg.inv(factor), ln_det)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Residuals:
+    """Residuals (M, B + 1) whose squares sum to -2 ln L less its constant, and derivatives (M, P, B + 1)."""
+
+    value: FloatArray
+    slopes: FloatArray
+
+    @property
+    def cost(self) -> FloatArray:
+        """Sum of squares, shape (M,)."""
+        return np.einsum("mb,mb->m", self.value, self.value)
+
+
+def residuals(problem: Problem, kit: Kit, errors: Errors, x: FloatArray, prediction: Prediction) -> Residuals:
+    """Detections, limits and, for a bound pair, the parallax."""
+    m, b = problem.flux_jy.shape
+    value, slopes = np.zeros((m, b + 1)), np.zeros((m, prediction.slopes.shape[1], b + 1))
+    pull = (problem.flux_jy - prediction.flux) / errors.sigma
+    value[:, :b] = np.where(problem.detected, pull, 0.0)
+    gain = np.where(problem.detected, -1.0 / errors.sigma, 0.0)
+    if problem.limited.any():
+        root, dpull = limit_residual(pull[problem.limited])
+        value[:, :b][problem.limited] = root
+        gain[problem.limited] = -dpull / errors.sigma[problem.limited]
+    slopes[:, :, :b] = prediction.slopes * gain[:, None, :]
+    if errors.whiten is not None:
+        value[:, :b] = np.einsum("mbc,mc->mb", errors.whiten, value[:, :b])
+        slopes[:, :, :b] = np.einsum("mbc,mpc->mpb", errors.whiten, slopes[:, :, :b])
+    if kit.model.bound_pair:
+        _add_parallax(problem, kit, x, value, slopes)
+    return Residuals(value, slopes)
+
+
+def limit_residual(pull: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """sqrt(-2 ln Phi(pull)) and its derivative with pull, pull = (limit - model)/sigma (Sawicki 2012)."""
+    ln_phi = log_ndtr(pull)
+    root = np.sqrt(-2.0 * ln_phi)
+    density = np.exp(-0.5 * pull**2 - 0.5 * LN_2PI - ln_phi)
+    return root, -density / np.maximum(root, 1e-12)
+
+
+def parallax_sigma(problem: Problem) -> FloatArray:
+    """Error of the parallax as a datum on the dwarf sequence, mas, shape (M,)."""
+    return np.hypot(problem.parallax_error_mas, PARALLAX_SCATTER * problem.parallax_mas)
+
+
+def _add_parallax(problem: Problem, kit: Kit, x: FloatArray, value: FloatArray, slopes: FloatArray) -> None:
+    known = np.isfinite(problem.parallax_mas)
+    model, slope_t = parallax_of(kit, x)
+    sigma = np.where(known, parallax_sigma(problem), 1.0)
+    value[:, -1] = np.where(known, (problem.parallax_mas - model) / sigma, 0.0)
+    relative = np.where(known, -model / sigma, 0.0)
+    for place, column in enumerate(kit.model.free):
+        if column == LN_T:
+            slopes[:, place, -1] = relative * slope_t
+        elif column == 1:
+            slopes[:, place, -1] = relative * 0.5
+
+
+def chi_square(problem: Problem, kit: Kit, errors: Errors, x: FloatArray, prediction: Prediction) -> FloatArray:
+    """Chi-square (M,): limits count max(0, (model - limit)/sigma)^2, a bound on what they can say."""
+    pull = (problem.flux_jy - prediction.flux) / errors.sigma
+    detected = np.where(problem.detected, pull, 0.0)
+    if errors.whiten is not None:
+        detected = np.einsum("mbc,mc->mb", errors.whiten, detected)
+    total = np.sum(detected**2, axis=1) + np.sum(np.where(problem.limited, np.maximum(-pull, 0.0), 0.0) ** 2, axis=1)
+    if kit.model.bound_pair:
+        known = np.isfinite(problem.parallax_mas)
+        model, _ = parallax_of(kit, x)
+        total = total + np.where(known, ((problem.parallax_mas - model) / parallax_sigma(problem)) ** 2, 0.0)
+    return total
+
+
+def minus_2_ln_l(problem: Problem, errors: Errors, cost: FloatArray) -> FloatArray:
+    """-2 ln L (M,): the cost, the determinant of the errors and the constant of the detections."""
+    return cost + errors.ln_det + LN_2PI * problem.detected.sum(axis=1)

@@ -1,0 +1,167 @@
+"""Intervals by profile likelihood: how far one parameter can go while the others make the best of it."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from tui.model import FloatArray
+from tui.physics.composite import WIDTH
+from tui.physics.descent import curvature, descend
+from tui.physics.fitting import FitBatch
+from tui.physics.likelihood import residuals
+
+RISE_68 = 1.0  # of -2 ln L, two-sided 68.3 % (Wilks 1938)
+RISE_95 = 2.71  # one-sided 95 % at a bound
+TRIES = 7
+CLOSE = 0.03  # of the square root of the rise
+FARTHER = (1.6, 2.6, 4.5)  # times the first crossing: where a further dip is looked for
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Intervals:
+    """Ends per candidate and parameter column, each (M, 8); NaN for columns that the model does not free."""
+
+    low: FloatArray
+    high: FloatArray
+    limit: np.ndarray  # bool: the best value lies at a bound, and the other end is a 95 % limit
+
+
+def intervals(batch: FitBatch) -> Intervals:
+    """Profile intervals of every free parameter, errors frozen at the last pass."""
+    m, free = len(batch.problem), list(batch.model.free)
+    low, high = batch.kit.bounds(batch.problem.av_max)
+    ends = np.full((2, m, WIDTH), np.nan)
+    limit = np.zeros((m, WIDTH), bool)
+    directions, scale = _directions(batch)
+    sides = np.array([-1.0, 1.0])
+    column = np.repeat(free, 2 * m)
+    place = np.repeat(np.arange(len(free)), 2 * m)
+    side = np.tile(np.repeat(sides, m), len(free))
+    row = np.tile(np.arange(m), 2 * len(free))
+    best = batch.x[row, column]
+    edge = np.where(side < 0, low[row, column], high[row, column])
+    other = np.where(side < 0, high[row, column], low[row, column])
+    near = batch.kit.near(batch.problem.av_max)[row, column]
+    at_other = np.abs(best - other) <= near
+    goal = np.where(at_other, RISE_95, RISE_68)
+    room = np.abs(edge - best)
+    todo = np.flatnonzero(room > near)
+    found = best.copy()
+    if todo.size:
+        ray = _Ray(batch, row[todo], column[todo], side[todo], goal[todo], directions[row, place][todo])
+        found[todo] = best[todo] + side[todo] * _reach(ray, room[todo], scale[row, place][todo])
+    for index, s in enumerate(sides):
+        chosen = side == s
+        ends[index, row[chosen], column[chosen]] = found[chosen]
+    limit[row[at_other], column[at_other]] = True
+    return Intervals(ends[0], ends[1], limit)
+
+
+def _directions(batch: FitBatch) -> tuple[FloatArray, FloatArray]:
+    """How the free parameters move per unit of each one (M, P, P), and each one's 1 sigma (M, P), from the curvature."""
+    state = residuals(batch.problem, batch.kit, batch.errors, batch.x, batch.prediction)
+    normal = curvature(state)
+    at_bound = batch.at_bounds()
+    normal = np.where(at_bound[:, :, None] | at_bound[:, None, :], 0.0, normal)
+    diagonal = np.einsum("mpp->mp", normal)
+    root = np.sqrt(np.where(diagonal > 0, diagonal, 1.0))
+    matrix = normal / root[:, :, None] / root[:, None, :]
+    place = np.arange(root.shape[1])
+    matrix[:, place, place] = 1.0 + 1e-9
+    inverse = np.linalg.inv(matrix) / root[:, :, None] / root[:, None, :]
+    variance = np.einsum("mpp->mp", inverse)
+    single = np.sqrt(np.maximum(np.einsum("mpp->mp", curvature(state)), 1e-300))
+    sigma = np.where(at_bound, 1.0 / single, np.sqrt(np.maximum(variance, 1e-300)))
+    direction = inverse / np.maximum(variance, 1e-300)[:, None, :]
+    direction = np.where(at_bound[:, None, :], 0.0, direction).transpose(0, 2, 1)
+    direction[:, place, place] = 1.0
+    return direction, sigma
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Ray:
+    """K searches: from a candidate's best value of one column, to one side."""
+
+    batch: FitBatch
+    row: np.ndarray
+    column: np.ndarray
+    side: FloatArray
+    goal: FloatArray
+    direction: FloatArray  # (K, P)
+
+    def root(self, some: np.ndarray, step: FloatArray) -> FloatArray:
+        """Square root of the profile's rise at `step`, in units of the goal, for the searches `some`."""
+        row, column = self.row[some], self.column[some]
+        free = list(self.batch.model.free)
+        place = np.arange(some.size)
+        start = self.batch.x[row].copy()
+        start[:, free] += self.direction[some] * (self.side[some] * step)[:, None]
+        start[place, column] = self.batch.x[row, column] + self.side[some] * step
+        held = np.zeros((some.size, WIDTH), bool)
+        held[place, column] = True
+        part, errors = self.batch.problem.take(row), self.batch.errors.take(row)
+        cost = descend(part, self.batch.kit, errors, start, held=held, steps=14, tolerance=1e-3).cost
+        return np.sqrt(np.maximum(cost - self.batch.cost[row], 0.0) / self.goal[some])
+
+
+def _reach(ray: _Ray, room: FloatArray, scale: FloatArray) -> FloatArray:
+    """Distance (K,) from the best value beyond which the profile stays above the goal, or `room`."""
+    guess = np.where(np.isfinite(scale) & (scale > 0), scale * np.sqrt(ray.goal), room / 20)
+    everyone = np.arange(room.size)
+    zero, nothing = np.zeros(room.size), np.full(room.size, np.nan)
+    step = _cross(ray, everyone, np.minimum(guess, room), (zero, zero), (nothing, nothing), room)
+    for factor in FARTHER:  # chi-square may dip again beyond: the interval is the hull of all that is allowed
+        far = np.minimum(step * factor, room)
+        some = np.flatnonzero(far > step * 1.05)
+        if not some.size:
+            continue
+        root = ray.root(some, far[some])
+        inside = root < 1.0
+        some, root = some[inside], root[inside]
+        if some.size:
+            edge = np.full(some.size, np.nan)
+            onward = np.minimum(far[some] * 1.3, room[some])
+            step[some] = _cross(ray, some, onward, (far[some], root), (edge, edge), room[some])
+    return step
+
+
+def _cross(
+    ray: _Ray,
+    some: np.ndarray,
+    step: FloatArray,
+    inner: tuple[FloatArray, FloatArray],
+    outer: tuple[FloatArray, FloatArray],
+    room: FloatArray,
+) -> FloatArray:
+    """Where the root of the rise passes 1, by bracketing; ends are (step, root), NaN where not yet known."""
+    (inner, inner_root), (outer, outer_root) = (tuple(v.copy() for v in pair) for pair in (inner, outer))
+    step, answer = step.copy(), step.copy()
+    live = np.arange(some.size)
+    for attempt in range(TRIES):
+        root = ray.root(some[live], step[live])
+        answer[live] = step[live]
+        below = root < 1.0
+        inner[live], inner_root[live] = np.where(below, step[live], inner[live]), np.where(below, root, inner_root[live])
+        outer[live] = np.where(below, outer[live], step[live])
+        outer_root[live] = np.where(below, outer_root[live], root)
+        done = (np.abs(root - 1.0) < CLOSE) | (below & (step[live] >= room[live] * (1 - 1e-9)))
+        live = live[~done]
+        if not live.size or attempt == TRIES - 1:
+            break
+        step[live] = _next_step(inner[live], inner_root[live], outer[live], outer_root[live], room[live])
+    return answer
+
+
+def _next_step(
+    inner: FloatArray, inner_root: FloatArray, outer: FloatArray, outer_root: FloatArray, room: FloatArray
+) -> FloatArray:
+    """Where the root of the rise should be 1: between the ends known, else stretched outwards, at most fivefold."""
+    bracketed = np.isfinite(outer)
+    share = (1.0 - inner_root) / np.maximum(np.where(bracketed, outer_root, 2.0) - inner_root, 1e-9)
+    between = inner + np.clip(share, 0.08, 0.92) * (np.where(bracketed, outer, 0.0) - inner)
+    stretched = inner * np.clip(1.0 / np.maximum(inner_root, 1e-3), 1.05, 5.0)
+    return np.minimum(np.where(bracketed, between, stretched), room)
+
+
