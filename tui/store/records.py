@@ -10,11 +10,16 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 
-from tui.model import EMPTY, Candidate, FloatArray, Ruling
+from tui.consensus.seal import SEALED, TODO
+from tui.consensus.standing import CheckCount
+from tui.model import CHECKS, Candidate, FloatArray, Ruling
 
-SEALED = "sealed"  # what the outcome reads before the seal opens
-TODO = "todo"  # what a check reads that the reader has not ruled, before the seal opens
-SORTS = ("oddness", "name", "band", "pull", "outcome", "ruled", "needs", *("star", "instrument", "extinction", "blend", "dust"))
+__all__ = [
+    "SEALED", "TODO", "SORTS", "Attachment", "AuditReport", "CandidateView", "CheckCount", "Cutout", "Fault", "Filter",
+    "GatherReport", "LoadCounts", "LoadRecord", "QueueRow", "RulingLine", "SettingLine", "StoryLine", "TeamRow",
+]  # fmt: skip
+
+SORTS = ("oddness", "name", "band", "pull", "outcome", "ruled", "needs", *CHECKS)
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,7 +51,7 @@ class Cutout:
     image: FloatArray
     arcsec_per_pixel: float
     source: str = ""
-    facts: Mapping[str, object] = EMPTY  # JSON values only
+    facts: Mapping[str, object] = field(default_factory=dict)  # JSON values only
 
 
 @dataclass(frozen=True, slots=True)
@@ -145,17 +150,6 @@ class StoryLine:
 
 
 @dataclass(frozen=True, slots=True)
-class CheckCounts:
-    """Rulings on one check: current ones by kind, and how many of those no longer count."""
-
-    explains: int = 0
-    short: int = 0
-    unclear: int = 0
-    revised: int = 0  # reviewers who ruled it more than once
-    stale: int = 0
-
-
-@dataclass(frozen=True, slots=True)
 class TeamRow:
     """Where one candidate stands for the team: tally, export and audit only."""
 
@@ -165,7 +159,7 @@ class TeamRow:
     cause: str
     pending_reason: str
     states: dict[str, str]
-    counts: dict[str, CheckCounts]
+    counts: dict[str, CheckCount]
     done: int  # reviewers done with it
     touched: bool  # somebody ruled something
 

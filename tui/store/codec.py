@@ -1,0 +1,86 @@
+"""Evidence as the JSON text that the queue keeps; every number comes back as it went in."""
+
+from __future__ import annotations
+
+import json
+import math
+from collections.abc import Mapping
+from typing import Any
+
+from tui.model import Evidence, Fit, Param, plain
+
+
+def number(value: float) -> float | str | None:
+    """A float as JSON can hold it: NaN as null, infinities as text."""
+    value = float(value)
+    if math.isfinite(value):
+        return value
+    return None if math.isnan(value) else str(value)
+
+
+def from_number(value: float | str | None) -> float:
+    """What `number` wrote."""
+    return math.nan if value is None else float(value)
+
+
+def evidence_text(evidence: Evidence) -> str:
+    """Everything of the evidence but kind, version, digest and adequate, which are columns."""
+    content = {
+        "fits": [fit_list(fit) for fit in evidence.fits],
+        "cautions": list(evidence.cautions),
+        "facts": plain(evidence.facts),
+        "bands": list(evidence.bands),
+    }
+    return json.dumps(content, separators=(",", ":"), ensure_ascii=True, allow_nan=False)
+
+
+def fit_list(fit: Fit) -> list[Any]:
+    """One fit as a list, in the order of its fields."""
+    return [
+        fit.model,
+        number(fit.chi2),
+        int(fit.dof),
+        *(number(value) for value in (fit.p, fit.aic, fit.bic)),
+        {name: param_list(param) for name, param in fit.params.items()},
+        {band: number(pull) for band, pull in fit.pulls.items()},
+        number(fit.minus2lnl),
+    ]
+
+
+def param_list(param: Param) -> list[Any]:
+    """One fitted number as a list, in the order of its fields."""
+    return [number(param.value), number(param.low), number(param.high), param.unit, bool(param.limit)]
+
+
+def evidence_from(kind: str, version: int, digest: str, adequate: int | None, text: str) -> Evidence:
+    """The evidence of one row."""
+    content: Mapping[str, Any] = json.loads(text)
+    return Evidence(
+        kind=kind,
+        version=version,
+        adequate=None if adequate is None else bool(adequate),
+        fits=tuple(fit_from(fit) for fit in content["fits"]),
+        cautions=tuple(content["cautions"]),
+        facts=content["facts"],
+        digest=digest,
+        bands=tuple(content["bands"]),
+    )
+
+
+def fit_from(fit: list[Any]) -> Fit:
+    """What `fit_list` wrote."""
+    model, chi2, dof, p, aic, bic, params, pulls, minus2lnl = fit
+    return Fit(
+        model=model,
+        chi2=from_number(chi2),
+        dof=dof,
+        p=from_number(p),
+        aic=from_number(aic),
+        bic=from_number(bic),
+        params={
+            name: Param(from_number(value), from_number(low), from_number(high), unit, limit)
+            for name, (value, low, high, unit, limit) in params.items()
+        },
+        pulls={band: from_number(pull) for band, pull in pulls.items()},
+        minus2lnl=from_number(minus2lnl),
+    )

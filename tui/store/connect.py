@@ -1,0 +1,251 @@
+"""The only place that opens a queue file.
+
+The header is read as bytes before SQLite touches the file, so that what is no queue, or is newer
+than the program, stays as it is to the byte.
+"""
+
+from __future__ import annotations
+
+import os
+import shutil
+import sqlite3
+from collections.abc import Iterator
+from contextlib import contextmanager
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+from tui.errors import StoreError
+from tui.store.filesystem import network_type
+from tui.store.schema import APPLICATION_ID, SCHEMA_VERSION, migrate
+
+MAGIC = b"SQLite format 3\x00"  # sqlite.org/fileformat2.html, section 1.3; the two numbers: offsets 60 and 68
+BUSY_SECONDS = 60.0
+
+
+@dataclass(frozen=True, slots=True)
+class Header:
+    """What the first hundred bytes of a queue file say."""
+
+    application_id: int
+    user_version: int
+
+
+class Cursor(sqlite3.Cursor):
+    """A cursor whose errors are ours: one plain sentence that names the file."""
+
+    def execute(self, *args: Any) -> sqlite3.Cursor:
+        with plainly(self.connection):
+            return super().execute(*args)
+
+    def executemany(self, *args: Any) -> sqlite3.Cursor:
+        with plainly(self.connection):
+            return super().executemany(*args)
+
+    def fetchone(self) -> Any:
+        with plainly(self.connection):
+            return super().fetchone()
+
+    def fetchall(self) -> list[Any]:
+        with plainly(self.connection):
+            return super().fetchall()
+
+
+class QueueConnection(sqlite3.Connection):
+    """A connection to a queue; errors of SQLite arrive as StoreError."""
+
+    queue_path = ""
+
+    def cursor(self, factory: type[sqlite3.Cursor] = Cursor) -> sqlite3.Cursor:
+        return super().cursor(factory)
+
+    def execute(self, *args: Any) -> sqlite3.Cursor:
+        return self.cursor().execute(*args)
+
+    def executemany(self, *args: Any) -> sqlite3.Cursor:
+        return self.cursor().executemany(*args)
+
+
+class plainly:  # noqa: N801 - reads as a word at its use
+    """Turn an error of SQLite into a StoreError; cheaper than a generator, as it wraps every statement."""
+
+    def __init__(self, connection: sqlite3.Connection) -> None:
+        self.connection = connection
+
+    def __enter__(self) -> None:
+        return None
+
+    def __exit__(self, kind: type[BaseException] | None, error: BaseException | None, trace: object) -> None:
+        if isinstance(error, sqlite3.Error):
+            raise StoreError(sentence(getattr(self.connection, "queue_path", ""), error)) from error
+        if isinstance(error, UnicodeEncodeError):
+            raise StoreError("Text with half a surrogate pair cannot be stored; mend its encoding.") from error
+
+
+def sentence(path: str, error: sqlite3.Error) -> str:
+    """What went wrong with the queue file, and the mend."""
+    text = str(error)
+    if "locked" in text or "busy" in text:
+        return f"{path} stayed locked for {BUSY_SECONDS:.0f} s; nothing was written. Try again when the other writer is done."
+    if "full" in text:
+        return f"{path}: the disk is full; nothing was written. Make room and repeat."
+    if "readonly" in text or "read-only" in text:
+        return f"{path} cannot be written here; check its permissions and its directory's."
+    if "malformed" in text or "not a database" in text or "disk image" in text:
+        return f"{path} is damaged ({text}). Keep it, and start again from a backup."
+    if "unable to open" in text:
+        return f"{path} cannot be opened; check that it exists and may be read."
+    return f"{path} refused: {text}."
+
+
+def open_queue(path: str | os.PathLike[str], *, create: bool = False, write: bool = True) -> QueueConnection:
+    """Open a queue, bringing an older one up to date first.
+
+    Args:
+        create: make the file if there is none.
+        write: False opens it for reading; nothing can be written through the connection.
+    Raises:
+        StoreError: no such file, no queue, newer than the program, or, for writing, on a network filesystem.
+    """
+    path = os.fspath(path)
+    header = read_header(path, create)
+    kind = network_type(path)
+    if kind and write:
+        raise StoreError(
+            f"{path} lies on a network filesystem ({kind}), where several writers would damage it. Copy it to a "
+            "local disk, review there, and bring the copies together with: plainlight gather."
+        )
+    if header is None or header.user_version < SCHEMA_VERSION:
+        if not write and not os.access(path, os.W_OK):
+            raise StoreError(f"{path} was made by an older Plainlight and cannot be written; copy it and open the copy.")
+        bring_up_to_date(path)
+    return connected(path, write=write, shared=not kind)
+
+
+def read_header(path: str, create: bool = False) -> Header | None:
+    """What the file says it is, read as bytes; None where it is to be created.
+
+    Raises:
+        StoreError: it is missing (and not to be created), unreadable, no queue, or newer than the program.
+    """
+    try:
+        with open(path, "rb") as file:
+            head = file.read(100)
+    except FileNotFoundError:
+        if not create:
+            raise StoreError(f"There is no queue {path}. Make one with: plainlight load {path} TABLE.") from None
+        if not os.path.isdir(os.path.dirname(os.path.abspath(path))):
+            raise StoreError(f"{path}: its directory does not exist; make it first.") from None
+        return None
+    except OSError as error:
+        raise StoreError(f"{path} cannot be read: {error.strerror}.") from error
+    if not head and create:
+        return None
+    header = Header(int.from_bytes(head[68:72], "big"), int.from_bytes(head[60:64], "big"))
+    if len(head) < 100 or not head.startswith(MAGIC) or header.application_id != APPLICATION_ID:
+        raise StoreError(f"{path} is not a Plainlight queue; it was left untouched.")
+    if header.user_version > SCHEMA_VERSION:
+        raise StoreError(
+            f"{path} was written by a newer Plainlight (file version {header.user_version}, this program knows "
+            f"{SCHEMA_VERSION}); it was left untouched. Bring the program up to date."
+        )
+    return header
+
+
+def connected(path: str, *, write: bool, shared: bool = True) -> QueueConnection:
+    """A connection to a queue that is up to date."""
+    quoted = Path(path).absolute().as_uri()
+    writable = os.access(path, os.W_OK) and os.access(os.path.dirname(os.path.abspath(path)), os.W_OK)
+    if write or (writable and shared):
+        query = "?mode=rw"
+    else:
+        query = "?mode=ro" if os.path.exists(path + "-wal") else "?immutable=1"
+    try:
+        connection = sqlite3.connect(
+            quoted + query, uri=True, timeout=BUSY_SECONDS, isolation_level=None, factory=QueueConnection
+        )
+    except sqlite3.Error as error:
+        raise StoreError(sentence(path, error)) from error
+    connection.queue_path = path
+    try:
+        prepare(connection, write)
+    except BaseException:
+        connection.close()
+        raise
+    return connection
+
+
+def prepare(connection: QueueConnection, write: bool) -> None:
+    """Set what every connection to a queue keeps to."""
+    connection.execute("PRAGMA foreign_keys = ON")
+    connection.execute("PRAGMA recursive_triggers = ON")
+    connection.execute("PRAGMA synchronous = FULL")
+    connection.execute("PRAGMA cache_size = -32768")  # KiB
+    if not write:
+        connection.execute("PRAGMA query_only = ON")
+    elif connection.execute("PRAGMA journal_mode").fetchone()[0] != "wal":  # a backup starts without a log
+        connection.execute("PRAGMA journal_mode = WAL").fetchone()
+
+
+def bring_up_to_date(path: str) -> None:
+    """Create the tables, or copy an older file to NAME.vN.bak and run the migrations it lacks."""
+    try:
+        connection = sqlite3.connect(path, timeout=BUSY_SECONDS, isolation_level=None, factory=QueueConnection)
+    except sqlite3.Error as error:
+        raise StoreError(sentence(path, error)) from error
+    connection.queue_path = path
+    try:
+        connection.execute("PRAGMA journal_mode = WAL").fetchone()
+        with immediate(connection):
+            version = connection.execute("PRAGMA user_version").fetchone()[0]
+            if 0 < version < SCHEMA_VERSION:
+                keep_copy(connection, path, version)
+            if version < SCHEMA_VERSION:
+                migrate(connection)
+        connection.execute("PRAGMA wal_checkpoint(TRUNCATE)").fetchone()  # so that the header in the file tells
+    finally:
+        connection.close()
+
+
+def keep_copy(connection: sqlite3.Connection, path: str, version: int) -> str:
+    """Copy a queue beside itself as NAME.vN.bak, never over an earlier copy; the path of the copy."""
+    copy = f"{path}.v{version}.bak"
+    number = 1
+    while os.path.exists(copy):
+        number += 1
+        copy = f"{path}.v{version}.{number}.bak"
+    source = sqlite3.connect(Path(path).absolute().as_uri() + "?mode=ro", uri=True, timeout=BUSY_SECONDS)
+    target = sqlite3.connect(copy)
+    try:
+        source.backup(target)
+    except sqlite3.Error as error:
+        raise StoreError(f"{copy} cannot be written ({error}), so {path} was not brought up to date.") from error
+    finally:
+        target.close()
+        source.close()
+    shutil.copymode(path, copy)
+    return copy
+
+
+@contextmanager
+def immediate(connection: sqlite3.Connection) -> Iterator[None]:
+    """One transaction that holds the write lock from its start: COMMIT at the end, else ROLLBACK.
+
+    Within another such transaction it joins that one, which alone commits.
+    """
+    if connection.in_transaction:
+        yield
+        return
+    connection.execute("BEGIN IMMEDIATE")
+    try:
+        yield
+        connection.execute("COMMIT")
+    except BaseException:
+        if connection.in_transaction:  # a full disk may have rolled it back already
+            connection.execute("ROLLBACK")
+        raise
+
+
+def data_version(connection: sqlite3.Connection) -> int:
+    """A number that changes when another connection has written to the queue."""
+    return connection.execute("PRAGMA data_version").fetchone()[0]

@@ -1,0 +1,249 @@
+"""The derived tables `standing`, `queue_row` and `reviewer_row`: what the log and the evidence amount to.
+
+They hold nothing of their own. Whoever writes to the log or to the evidence calls `refresh` in the
+same transaction; `audit` computes them again and compares. `reviewer_row` has a row only where a
+reviewer ruled something (or has the seal open), with what that reviewer may read there; everywhere
+else the reader's view follows from `queue_row` alone.
+"""
+
+from __future__ import annotations
+
+import math
+import sqlite3
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass
+from functools import lru_cache
+from statistics import NormalDist
+from typing import Any
+
+from tui.consensus.seal import own_stale, seen_states
+from tui.consensus.standing import Standing, standing
+from tui.model import CHECKS, Evidence, Ruling, Settings
+from tui.store import settings as settings_log
+from tui.store.codec import evidence_from
+from tui.store.names import folded, ring
+
+QUEUE_COLUMNS = (
+    *("oddness", "odd_band", "odd_pull", "untestable", *CHECKS),
+    *("outcome", "cause", "pending_reason", "done", "needs", "touched"),
+)
+RULING_COLUMNS = (
+    'candidate, "check", reviewer_id, ruling, note, evidence_digest, seen_others, replaces, utc, id, previous_hash, hash'
+)
+
+
+@dataclass(frozen=True, slots=True)
+class Derived:
+    """The derived rows of one candidate."""
+
+    queue: tuple[Any, ...]  # values of QUEUE_COLUMNS
+    standing: list[tuple[Any, ...]]  # check, state, explains, short, unclear, revised, stale
+    reviewers: list[tuple[Any, ...]]  # reviewer_id, five states, stale, ruled, done, seal_open, needs_me
+    opened: frozenset[str]
+
+
+def insert_queue_row(connection: sqlite3.Connection, candidate_id: int, name: str) -> None:
+    """The row of a candidate that has neither evidence nor rulings yet."""
+    connection.execute(
+        "INSERT INTO queue_row (id, name, fold, ring, pending_reason) VALUES (?, ?, ?, ?, ?)",
+        (candidate_id, name, folded(name), ring(name), untouched(0).pending_reason),
+    )
+
+
+@lru_cache(maxsize=64)
+def untouched(mask: int) -> Standing:
+    """The standing of a candidate without rulings, by which checks are untestable; settings do not enter."""
+    return standing((), {check: Evidence(check, 0, None) for bit, check in enumerate(CHECKS) if mask >> bit & 1})
+
+
+def refresh(connection: sqlite3.Connection, ids: Iterable[int], settings: Settings | None = None) -> None:
+    """Write the derived rows of some candidates anew, within the caller's transaction."""
+    settings = settings or settings_log.read_settings(connection)
+    for candidate_id in ids:
+        write(connection, candidate_id, derive(connection, candidate_id, settings))
+
+
+def derive(connection: sqlite3.Connection, candidate_id: int, settings: Settings) -> Derived:
+    """Compute the derived rows of one candidate from the log, the evidence and the seals on file."""
+    evidence = current_of(connection, candidate_id)
+    mask = untestable_mask(evidence)
+    odd = oddness_of(evidence.get("star"))
+    rulings = rulings_on(connection, candidate_id)
+    opened = opened_on(connection, candidate_id)
+    if not rulings and not opened:
+        return Derived((*odd, mask, *queue_values(untouched(mask)), 0), [], [], opened)
+    stands = stand(connection, candidate_id, settings, evidence, rulings, opened)
+    readers = sorted({ruling.reviewer_id for ruling in rulings} | stands.opened)
+    return Derived(
+        (*odd, mask, *queue_values(stands), 1),
+        [standing_values(stands, check) for check in CHECKS],
+        [reviewer_values(stands, reader) for reader in readers],
+        stands.opened,
+    )
+
+
+def stand(
+    connection: sqlite3.Connection,
+    candidate_id: int,
+    settings: Settings,
+    evidence: dict[str, Evidence] | None = None,
+    rulings: list[Ruling] | None = None,
+    opened: frozenset[str] | None = None,
+) -> Standing:
+    """The standing of one candidate, seal and all: for this package's own use, never handed to one reader whole."""
+    evidence = current_of(connection, candidate_id) if evidence is None else evidence
+    rulings = rulings_on(connection, candidate_id) if rulings is None else rulings
+    opened = opened_on(connection, candidate_id) if opened is None else opened
+    today = {one.digest for one in evidence.values()}
+    wanted = {(one.check, one.evidence_digest) for one in rulings if one.evidence_digest not in today}
+    cited = cited_of(connection, candidate_id, wanted)
+    checks = {check: evidence[check] for check in CHECKS if check in evidence}
+    return standing(rulings, checks, cited, settings, opened)
+
+
+def queue_values(stands: Standing) -> tuple[Any, ...]:
+    """The part of QUEUE_COLUMNS that comes from the standing, `touched` apart."""
+    return (
+        *(stands.states[check] for check in CHECKS),
+        *(stands.outcome, stands.cause, stands.pending_reason, len(stands.done), int(stands.needs_people)),
+    )
+
+
+def standing_values(stands: Standing, check: str) -> tuple[Any, ...]:
+    """One row of `standing`, without the candidate."""
+    count = stands.counts[check]
+    return (check, stands.states[check], count.explains, count.short, count.unclear, count.revised, count.stale)
+
+
+def reviewer_values(stands: Standing, reviewer_id: str) -> tuple[Any, ...]:
+    """One row of `reviewer_row`, without the candidate: only what that reviewer may read."""
+    states = seen_states(stands, reviewer_id)
+    testable = [check for check in CHECKS if stands.states[check] != "nodata"]
+    return (
+        reviewer_id,
+        *(states[check] for check in CHECKS),
+        mask_of(own_stale(stands, reviewer_id)),
+        sum(stands.has_counting(check, reviewer_id) for check in testable),
+        int(reviewer_id in stands.done),
+        int(reviewer_id in stands.opened),
+        int(stands.needs(reviewer_id)),
+    )
+
+
+def write(connection: sqlite3.Connection, candidate_id: int, derived: Derived) -> None:
+    """Put the derived rows of one candidate in the place of the old ones; opened seals are kept for good."""
+    sets = ", ".join(f"{column} = ?" for column in QUEUE_COLUMNS)
+    connection.execute(f"UPDATE queue_row SET {sets} WHERE id = ?", (*derived.queue, candidate_id))
+    if not derived.queue[-1]:
+        return
+    connection.execute("DELETE FROM standing WHERE candidate_id = ?", (candidate_id,))
+    connection.executemany(
+        "INSERT INTO standing VALUES (?, ?, ?, ?, ?, ?, ?, ?)", [(candidate_id, *row) for row in derived.standing]
+    )
+    connection.execute("DELETE FROM reviewer_row WHERE candidate_id = ?", (candidate_id,))
+    connection.executemany(
+        f"INSERT INTO reviewer_row VALUES (?, ?{', ?' * 10})",
+        [(reviewer_id, candidate_id, *row) for reviewer_id, *row in derived.reviewers],
+    )
+    connection.executemany(
+        "INSERT INTO seal_opened (reviewer_id, candidate_id) SELECT ?1, ?2 WHERE NOT EXISTS "
+        "(SELECT 1 FROM seal_opened WHERE reviewer_id = ?1 AND candidate_id = ?2)",
+        [(reviewer_id, candidate_id) for reviewer_id in sorted(derived.opened)],
+    )
+
+
+def current_of(connection: sqlite3.Connection, candidate_id: int) -> dict[str, Evidence]:
+    """Kind -> today's evidence of one candidate."""
+    query = "SELECT kind, version, digest, adequate, content FROM evidence WHERE candidate_id = ? AND is_current = 1"
+    return {row[0]: evidence_from(*row) for row in connection.execute(query, (candidate_id,)).fetchall()}
+
+
+def cited_of(
+    connection: sqlite3.Connection, candidate_id: int, wanted: Iterable[tuple[str, str]]
+) -> dict[str, Evidence]:
+    """Digest -> evidence, for those (check, digest) that are on file."""
+    query = (
+        "SELECT kind, version, digest, adequate, content FROM evidence WHERE candidate_id = ? AND kind = ? AND digest = ?"
+    )
+    found: dict[str, Evidence] = {}
+    for check, digest in sorted(wanted):
+        row = connection.execute(query, (candidate_id, check, digest)).fetchone()
+        if row is not None:
+            found[digest] = evidence_from(*row)
+    return found
+
+
+def rulings_on(connection: sqlite3.Connection, candidate_id: int) -> list[Ruling]:
+    """The whole log on one candidate, in order of arrival."""
+    query = f"SELECT {RULING_COLUMNS} FROM ruling WHERE candidate = (SELECT name FROM candidate WHERE id = ?) ORDER BY seq"
+    return [ruling_from(row) for row in connection.execute(query, (candidate_id,)).fetchall()]
+
+
+def ruling_from(row: Sequence[Any]) -> Ruling:
+    """One row of RULING_COLUMNS."""
+    candidate, check, reviewer_id, ruling, note, digest, seen, *rest = row
+    return Ruling(candidate, check, reviewer_id, ruling, note, digest, bool(seen), *rest)
+
+
+def opened_on(connection: sqlite3.Connection, candidate_id: int) -> frozenset[str]:
+    """Reviewers whose seal on this candidate is known to be open."""
+    query = "SELECT reviewer_id FROM seal_opened WHERE candidate_id = ?"
+    return frozenset(row[0] for row in connection.execute(query, (candidate_id,)).fetchall())
+
+
+def untestable_mask(evidence: dict[str, Evidence]) -> int:
+    """Bits of the checks, in their order, whose evidence is untestable."""
+    return mask_of(check for check in CHECKS if check in evidence and evidence[check].adequate is None)
+
+
+def mask_of(checks: Iterable[str]) -> int:
+    """Bits of some checks, in the order of CHECKS."""
+    return sum(1 << CHECKS.index(check) for check in checks)
+
+
+def checks_of(mask: int) -> tuple[str, ...]:
+    """The checks whose bits are set.
+
+    >>> checks_of(0b10001)
+    ('star', 'dust')
+    """
+    return tuple(check for bit, check in enumerate(CHECKS) if mask >> bit & 1)
+
+
+def oddness_of(star: Evidence | None) -> tuple[float | None, str, float | None]:
+    """Oddness in sigma, the band of the largest pull and that pull, as the star evidence says or as they follow.
+
+    The facts `oddness`, `odd_band`, `odd_pull` are taken where the check gives them.
+    """
+    if star is None or star.best is None:
+        return None, "", None
+    band, pull = max(star.best.pulls.items(), key=lambda item: abs(item[1]), default=("", math.nan))
+    sigma = star.facts.get("oddness")
+    if sigma is None:
+        sigma = sigma_of(star.best.p)
+    band = str(star.facts.get("odd_band", band))
+    return number(sigma), band, number(star.facts.get("odd_pull", pull))
+
+
+def sigma_of(p: float) -> float | None:
+    """The one-sided Gaussian sigma of a chance probability; beyond what NormalDist holds, its asymptote.
+
+    Source: Abramowitz & Stegun 1964, 26.2.23 and 26.2.12 (the tail of the normal distribution).
+
+    >>> round(sigma_of(0.0013498980316301035), 9)
+    3.0
+    """
+    if not math.isfinite(p) or not 0 <= p <= 1:
+        return None
+    if p >= 1e-15:
+        return 0.0 if p >= 1 else -NormalDist().inv_cdf(p)
+    log_p = math.log(max(p, 5e-324))
+    sigma = math.sqrt(-2 * log_p)
+    for _ in range(20):  # log p = -x**2/2 - log(x sqrt(2 pi)) + log(1 - 1/x**2)
+        sigma = math.sqrt(-2 * (log_p + math.log(sigma * math.sqrt(2 * math.pi)) - math.log1p(-1 / sigma**2)))
+    return sigma
+
+
+def number(value: Any) -> float | None:
+    """A finite number, or None."""
+    return float(value) if isinstance(value, (int, float)) and math.isfinite(value) else None
