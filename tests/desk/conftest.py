@@ -16,6 +16,7 @@ import pytest
 from tui.errors import UnknownNameError
 from tui.model import (
     CHECKS,
+    Band,
     Candidate,
     Dip,
     Evidence,
@@ -107,6 +108,29 @@ def make_evidence(number: int) -> dict[str, Evidence]:
     made["mixture"] = Evidence("mixture", 1, number % 4 != 0, (bound,), (), {"points": 10}, f"mixture-{number}", BANDS)
     made["dips"] = Evidence("dips", 1, None, (), (), {}, f"dips-{number}")
     return made
+
+
+def own_rulings(own: dict[str, Ruling], number: int) -> list[RulingLine]:
+    """The reader's own lines of the log; a first, sealed one on a split that the fake queue starts with."""
+    lines = []
+    if number % 20 == 2:
+        note = "Neighbour at 3 arcsec is too faint by far.\nK shows nothing."
+        lines.append(RulingLine("o1", "blend", "heron", "r-heron", "short", note, "2026-03-01T10:00:00.000000Z", False,
+                                "blend" not in own, ""))  # fmt: skip
+    for check, made in own.items():
+        lines.append(RulingLine(made.id, check, "heron", "r-heron", made.ruling, made.note, made.utc, made.seen_others,
+                                True, ""))  # fmt: skip
+    return lines
+
+
+def other_rulings() -> list[RulingLine]:
+    """What two colleagues ruled on a blend."""
+    return [
+        RulingLine("o2", "blend", "curlew", "r-curlew", "explains", "[/] the beam holds \x1b[31mtwo\x1b[0m sources, see W1",
+                   "2026-03-02T11:00:00.000000Z", False, True, ""),
+        RulingLine("o3", "blend", "plover", "r-plover", "unclear", "", "2026-03-02T12:00:00.000000Z", False, True,
+                   "W3 was measured anew"),
+    ]  # fmt: skip
 
 
 class FakeSession:
@@ -231,10 +255,10 @@ class FakeSession:
         needs = not done or i % 20 == 2
         drafts = {check: text for (of, check), text in self.drafts.items() if of == name and text}
         to_rule = tuple(check for check in CHECKS if check not in own and states[check] != "nodata")
-        others = self.other.get(name, []) if done else []
+        others = (self.other.get(name) or (other_rulings() if i % 20 == 2 else [])) if done else []
         cause = "dust" if outcome == "explained" else ""
         return CandidateView(name, states, stale, outcome, reason, done, done, needs, own, others, drafts,
-                             cause=cause, to_rule=to_rule)  # fmt: skip
+                             cause=cause, to_rule=to_rule, own_history=own_rulings(own, i))  # fmt: skip
 
     def evidence(self, name, kinds=None):
         return self.stored_evidence(name)
@@ -252,8 +276,8 @@ class FakeSession:
         return make_fit("star + dust", self.id_of(name), 2.0), self.curve(name, check)
 
     def band_info(self):
-        return {band: SimpleNamespace(name=band, pivot_um=wave, floor=0.02, beam_fwhm_arcsec=6.5, instrument="any",
-                                      curve=None) for band, wave in PIVOT_UM.items()}  # fmt: skip
+        return {band: Band(band, wave, "Vega", 1000.0, 0.02, "any", np.array([0.9, 1.1]) * wave, np.ones(2))
+                for band, wave in PIVOT_UM.items()}  # fmt: skip
 
     # --- rulings ---
 

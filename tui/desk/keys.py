@@ -68,6 +68,8 @@ QUEUE = (
         "Search the names: those that begin with what you type, then those that hold it.", 2),
     Key("queue.order", "o", "order", "order", "The next order: oddness, name, what you have ruled, outcome.", 2),
     Key("queue.reverse", "O", "reverse", "reverse", "Turn the order around.", 0),
+    Key("queue.split", "v", "split", "notes of a split",
+        "Where rulings part: everybody's notes on the check side by side, to rule once more.", 3),
     Key("queue.story", "y", "story", "story", "What happened to the chosen candidate, in time order.", 3),
     Key("queue.tally", "t", "tally", "tally", "How far the team is, whether it can be trusted, and what is left.", 2),
     *_list_keys("queue"),

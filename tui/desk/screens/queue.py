@@ -257,6 +257,17 @@ class QueueScreen(MovesThroughList, QueueBackground):
         if row is not None:
             self.app.push_screen(StoryScreen(self.session, row.name))
 
+    def action_split(self) -> None:
+        """Everybody's notes where the chosen candidate's rulings part."""
+        row = self.query_one(CandidateList).chosen
+        parted = [check for check, state in row.states.items() if state == "split"] if row else []
+        if row is None or not parted:
+            self.say("No split to see here: either nobody parted on it, or its seal is not yet open to you.")
+            return
+        from tui.desk.screens.split import SplitScreen
+
+        self.app.push_screen(SplitScreen(self.session, row.name, parted[0]))
+
     def action_tally(self) -> None:
         """How far the team is."""
         from tui.desk.screens.tally import TallyScreen

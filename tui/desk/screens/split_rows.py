@@ -1,0 +1,153 @@
+"""A split as rows of text: the numbers first, then everybody's rulings and notes, in columns where there is room."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+from tui.desk.text import RULING_WORDS, SIGNS, decimal_aligned, fit, number, once_in, safe, short_band, signed, wrap
+from tui.desk.widgets.rows import Row, Span, fit_row, paragraph, row
+from tui.model import CHECK_TITLES, Evidence
+
+if TYPE_CHECKING:
+    from tui.workflow.records import CandidateView, RulingLine
+
+COLUMN_LEAST = 25  # cells: narrower columns of notes cannot be read
+PULLS_SHOWN = 5
+
+
+@dataclass(frozen=True, slots=True)
+class Split:
+    """What is drawn."""
+
+    name: str
+    check: str
+    handle: str
+    view: CandidateView | None
+    evidence: Mapping[str, Evidence]
+    question: str
+
+    @property
+    def state(self) -> str:
+        """The check's state as the reader may see it."""
+        return self.view.states.get(self.check, "") if self.view else ""
+
+    def rulings(self) -> list[tuple[str, list[RulingLine]]]:
+        """Handle and rulings on this check, the reader first, then the others by name, each in time order."""
+        if self.view is None:
+            return []
+        said: dict[str, list[RulingLine]] = {}
+        for line in [*self.view.own_history, *self.view.others]:
+            if line.check == self.check:
+                said.setdefault(line.handle, []).append(line)
+        return sorted(said.items(), key=lambda item: (item[0] != self.handle, item[0]))
+
+
+def head_rows(split: Split, width: int) -> list[Row]:
+    """Candidate, check and its state; the question."""
+    title = CHECK_TITLES[split.check].upper()
+    state = f"{SIGNS.get(split.state, '')}{split.state}"
+    you = f"you: {safe(split.handle)} " if split.handle else "reading, not ruling "
+    left = [Span(f" {safe(split.name)}", "name"), Span("   "), Span(title, "now"), Span(f"  {state}", split.state)]
+    return [
+        [*fit_row(left, width - len(you)), Span(you, "quiet")],
+        *indented(split.question, width, "question"),
+    ]
+
+
+def split_rows(split: Split, width: int) -> list[Row]:
+    """The whole body."""
+    if split.view is None:
+        return []
+    if not split.view.seal_open:
+        return indented("Sealed: what others ruled here opens for you once you are done with this star.", width)
+    said = split.rulings()
+    if not said:
+        return [row((" Nobody has ruled on this check yet.", "quiet"))]
+    rows = [*number_rows(split.evidence.get(split.check), width), []]
+    columns = max(1, min(len(said), (width - 1) // COLUMN_LEAST))
+    column_width = (width - 1) // columns
+    for start in range(0, len(said), columns):
+        blocks = [column_rows(handle, lines, column_width - 2, handle == split.handle)
+                  for handle, lines in said[start : start + columns]]  # fmt: skip
+        rows += side_by_side(blocks, column_width)
+        rows.append([])
+    return rows
+
+
+def number_rows(evidence: Evidence | None, width: int) -> list[Row]:
+    """Each fit of the check in one line, and the bands it leaves farthest."""
+    if evidence is None:
+        return [row((" Not assessed yet.", "quiet"))]
+    if not evidence.fits:
+        return [row((" Nothing could be fitted: too few data.", "quiet"))]
+    fits = evidence.fits[:4]
+    name_wide = max(len(safe(found.model)) for found in fits) + 2
+    chi2 = decimal_aligned([f"{found.chi2:.1f}" for found in fits])
+    bic = decimal_aligned([f"{found.bic:.1f}" for found in fits])
+    head = f" {fit('fit', name_wide)}{fit('chi2', len(chi2[0]), align='right')}   dof  {fit('BIC', len(bic[0]), align='right')}"
+    rows: list[Row] = [row((head + "  chance alone", "quiet"))]
+    for place, found in enumerate(fits):
+        text = f" {fit(safe(found.model), name_wide)}{chi2[place]}  {found.dof:>4}  {bic[place]}  {once_in(found.p)}"
+        rows.append([Span(text, "strong" if place == 0 else "")])
+    pulls = sorted(fits[0].pulls.items(), key=lambda item: -abs(item[1]))[:PULLS_SHOWN]
+    left = "  ".join(f"{short_band(band)} {signed(pull)}" for band, pull in pulls)
+    rows += [[], *indented(f"left over, sigma: {left}", width)]
+    rows += indented(_params(evidence), width, "quiet")
+    return rows + [line for text in evidence.cautions for line in indented(f"CAUTION {text}", width, "caution", 8)]
+
+
+def indented(text: str, width: int, style: str = "", hang: int = 0) -> list[Row]:
+    """A paragraph one cell from the edge."""
+    return [[Span(" "), *line] for line in paragraph(text, width - 2, style, hang)]
+
+
+def column_rows(handle: str, lines: list[RulingLine], width: int, is_reader: bool) -> list[Row]:
+    """One reviewer's rulings in time order, the newest that stands in full colour, each with its note."""
+    rows: list[Row] = [row((f"{safe(handle)}{' (you)' if is_reader else ''}", "head"))]
+    for line in lines:
+        word = RULING_WORDS.get(line.ruling, safe(line.ruling))
+        how = "with others in view" if line.seen_others else "sealed"
+        when = safe(line.utc[:10])
+        style = line.ruling if line.current else "quiet"
+        rows.append(row((f"{SIGNS.get(line.ruling, '')}{word}", style), (f"  {how}, {when}", "quiet")))
+        if line.stale:
+            rows += paragraph(f"stale: {safe(line.stale)}", width, "caution")
+        for text in line.note.splitlines():
+            rows += [[Span(part)] for part in wrap(safe(text), width)]
+        rows.append([])
+    return rows
+
+
+def side_by_side(blocks: list[list[Row]], column_width: int) -> list[Row]:
+    """Blocks in columns, a margin of one cell before the first."""
+    height = max(len(block) for block in blocks)
+    rows: list[Row] = []
+    for place in range(height):
+        line: Row = [Span(" ")]
+        for block in blocks:
+            line += fit_row(block[place] if place < len(block) else [], column_width)
+        rows.append(line)
+    return rows
+
+
+def foot_row(width: int, chosen: str, note: str, is_recording: bool, can_rule: bool) -> Row:
+    """The ruling, in one row."""
+    head = Span(" RULE  ", "head")
+    if not can_rule:
+        return fit_row([head, Span("nothing can be ruled here by you", "quiet")], width)
+    if is_recording:
+        return fit_row([head, Span(f"recording {RULING_WORDS[chosen]} ...", "message")], width)
+    said = " / ".join(safe(line) for line in note.splitlines() if line.strip())
+    line = [head, Span(f"> {RULING_WORDS[chosen]} <", "chosen") if chosen else Span("choose once more", "quiet")]
+    line += [Span("   Enter records it", "")] if chosen else []
+    return fit_row([*line, *([Span("   note: ", "quiet"), Span(said)] if said else [])], width)
+
+
+def _params(evidence: Evidence) -> str:
+    best = evidence.fits[0]
+    return "   ".join(
+        f"{safe(name)} {number(param.value)} ({number(param.low)} to {number(param.high)}) {param.unit}".rstrip()
+        for name, param in best.params.items()
+    )
