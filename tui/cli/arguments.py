@@ -2,9 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
-from typing import Any
-
 import click
 
 from tui.errors import HandleError
@@ -52,4 +49,11 @@ def pairs(ctx: click.Context, param: click.Parameter, values: tuple[str, ...]) -
     return found
 
 
-Decorated = Callable[..., Any]
+def share_of(ctx: click.Context, param: click.Parameter, text: str | None) -> tuple[int, int] | None:
+    """A click callback: `I/N` as numbers; the queue says whether I is in range."""
+    if text is None:
+        return None
+    index, _, of = text.partition("/")
+    if not (index.isascii() and index.isdigit() and of.isascii() and of.isdigit()) or len(text) > 16:
+        raise click.BadParameter(f"{text!r} is not of the form I/N, such as 2/3", ctx=ctx, param=param)
+    return int(index), int(of)

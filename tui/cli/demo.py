@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import os
 import sys
+import tempfile
+from pathlib import Path
 
 import click
 
@@ -12,19 +14,27 @@ import click
 @click.option("--thin", is_flag=True, help="For slow lines.")
 def demo_command(thin: bool) -> int:
     """Open a copy of the sample queue as `visitor`; a text summary when there is no terminal."""
-    from tui.workflow.demo import sample_copy
-
-    path = sample_copy()
     if not (sys.stdin.isatty() and sys.stdout.isatty()) or os.environ.get("TERM", "dumb") in ("", "dumb"):
-        from tui.cli.demo_text import print_summary
-
-        print_summary(path)
-        return 0
+        return summary_of_a_copy()
+    from tui.cli.printing import line
     from tui.cli.ruling import open_desk
     from tui.workflow.config import read_config
-    from tui.workflow.demo import VISITOR
+    from tui.workflow.demo import VISITOR, sample_copy
     from tui.workflow.session import Session
 
     config = read_config()
+    path = sample_copy()
     with Session.open(str(path), VISITOR) as session:
-        return open_desk(session, thin=thin, theme=config.theme, keys=config.keys)
+        status = open_desk(session, thin=thin, theme=config.theme, keys=config.keys)
+    line(f"Your copy of the sample stays at {path}; go on with: plainlight review {path} --as {VISITOR}")
+    return status
+
+
+def summary_of_a_copy() -> int:
+    """Print what is in the sample, from a copy that is gone afterwards."""
+    from tui.cli.demo_text import print_summary
+    from tui.workflow.demo import sample_copy
+
+    with tempfile.TemporaryDirectory(prefix="plainlight-demo-") as folder:
+        print_summary(sample_copy(Path(folder)))
+    return 0

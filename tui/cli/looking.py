@@ -16,15 +16,17 @@ from tui.cli.arguments import (
     needed_handle,
     outcome_option,
     queue_argument,
+    share_of,
     unresolved_option,
 )
 from tui.model import CHECKS
+from tui.workflow.records import SORTS, Filter
 
 if TYPE_CHECKING:
     from tui.workflow.records import QueueRow
     from tui.workflow.session import Session
 
-SORTS = ("oddness", "name", "outcome", "yours")
+UPWARD = ("name", "band", "outcome", "ruled", *CHECKS)  # sorts that begin with the smallest
 PAGE = 1000  # rows fetched at a time
 LIST_HEADINGS = ("name", "oddness", "odd_band", "odd_pull", *CHECKS, "outcome", "ruled", "to_rule")
 
@@ -36,36 +38,35 @@ LIST_HEADINGS = ("name", "oddness", "odd_band", "odd_pull", *CHECKS, "outcome", 
 @outcome_option
 @click.option("--sort", type=click.Choice(SORTS), default="oddness", show_default=True, help="Order of the rows.")
 @click.option("--next", "only_next", is_flag=True, help="Only the name of the candidate that needs you next.")
-@click.option("--share", metavar="I/N", help="Only the I-th of N equal shares, for copies worked on apart.")
+@click.option("--share", callback=share_of, metavar="I/N", help="Only the I-th of N equal shares, for copies worked on apart.")
 def list_command(queue, handle, unresolved, outcome, sort, only_next, share) -> int:
     """The queue as text: tab-separated when it goes to a file or a program.
 
     Without --as, states and outcome read sealed. A trailing * marks a stale ruling.
     """
     from tui.cli.printing import line, remark
-    from tui.workflow.records import Filter
     from tui.workflow.session import Session
-    from tui.workflow.sharing import read_share
 
-    part = read_share(share) if share else None
     handle = needed_handle(handle) if only_next else handle_or_configured(handle)
     with Session.open(queue, handle, write=only_next) as session:
         if only_next:
-            name = session.next_for_me() if part is None else next_in_share(session, part)
+            name = session.claim_next() if share is None else next_in_share(session, share)
             line(name) if name else remark("Nothing needs you now.")
             return 0
-        where = Filter(unresolved=unresolved, outcome=outcome)
-        ids = session.order(sort=sort, descending=sort == "oddness", where=where)
-        print_rows(row for row in pages(session, ids) if part is None or part.holds(row.name))
+        where = Filter(unresolved=unresolved, outcome=outcome, share=share)
+        print_rows(pages(session, session.order(sort=sort, descending=sort not in UPWARD, where=where)))
     return 0
 
 
-def next_in_share(session: Session, part) -> str | None:
-    """The next candidate for this reviewer that falls in a share."""
+def next_in_share(session: Session, share: tuple[int, int]) -> str | None:
+    """The next candidate for this reviewer that falls in a share, claimed."""
     skipped: list[str] = []
-    while (name := session.next_for_me(skip=skipped)) is not None and not part.holds(name):
+    while (name := session.next_for_me(skip=skipped)) is not None:
+        if session.order(where=Filter(share=share, names=frozenset((name,)))):
+            session.claim(name)
+            return name
         skipped.append(name)
-    return name
+    return None
 
 
 def pages(session: Session, ids) -> Iterator[QueueRow]:

@@ -7,19 +7,15 @@ from collections import defaultdict
 from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from contextlib import closing
 from dataclasses import dataclass, replace
-from typing import TYPE_CHECKING
 
 from tui.errors import UnknownNameError
-from tui.model import KINDS, Evidence, Settings
+from tui.model import KINDS, Evidence
 from tui.store import evidence as kept
 from tui.store.candidates import candidate_digests, candidate_id, candidate_name, get_candidates, name_pages
 from tui.store.connect import open_queue
-from tui.store.settings import read_settings
+from tui.workflow.basis import Basis, read_basis
 from tui.workflow.digests import Recipe, recipes
 from tui.workflow.processes import in_processes, spare_processes
-
-if TYPE_CHECKING:
-    from tui.physics.templates import Templates
 
 CHUNK = 256  # candidates computed at once: enough for the matrix products, small enough for memory
 FEW = 1024  # below this starting processes costs more than it saves
@@ -42,28 +38,27 @@ class Assessed:
         return f"Computed {self.evidence} pieces of evidence for {self.candidates} candidates."
 
 
-def recipes_for(kinds: Iterable[str], settings: Settings) -> dict[str, Recipe]:
+def recipes_for(kinds: Iterable[str], basis: Basis) -> dict[str, Recipe]:
     """What each kind of evidence would be made with today. UnknownNameError for no such kind."""
     from tui.checks import VERSIONS
-    from tui.workflow.templates import templates_digest
 
     wanted = tuple(kinds)
     for kind in wanted:
         if kind not in KINDS:
             raise UnknownNameError("kind of evidence", kind, f"There are {', '.join(KINDS)}.")
     available = tuple(kind for kind in wanted if kind in VERSIONS)
-    return recipes(available, VERSIONS, settings, templates_digest(settings))
+    return recipes(available, VERSIONS, basis.settings, basis.templates_digest())
 
 
 def evidence_for(
-    connection: sqlite3.Connection, name: str, kinds: Sequence[str], settings: Settings, *, store: bool = True
+    connection: sqlite3.Connection, name: str, kinds: Sequence[str], basis: Basis, *, store: bool = True
 ) -> dict[str, Evidence]:
     """Today's evidence of one candidate; what lacks or is outdated is computed and, with `store`, kept.
 
     Raises:
         UnknownNameError: no such candidate or kind.
     """
-    made_with = recipes_for(kinds, settings)
+    made_with = recipes_for(kinds, basis)
     name = candidate_name(connection, candidate_id(connection, name))  # as the queue spells it
     input_digest = candidate_digests(connection, [name])[name]
     current = kept.current_evidence(connection, name)
@@ -71,27 +66,19 @@ def evidence_for(
     found = {kind: current[kind] for kind in wanted if kind in current and current[kind].digest == wanted[kind]}
     lacking = tuple(kind for kind in wanted if kind not in found)
     if lacking:
-        rows = compute(connection, (name,), lacking, settings, made_with, grids(settings))
+        rows = compute(connection, (name,), lacking, basis, made_with)
         if store:
             kept.save_evidence(connection, rows)
         found |= {made.kind: made for _, made in rows}
     return {kind: found[kind] for kind in KINDS if kind in found}
 
 
-def grids(settings: Settings) -> Templates:
-    """The template grids of some settings."""
-    from tui.workflow.templates import templates_for
-
-    return templates_for(settings)
-
-
 def compute(
     connection: sqlite3.Connection,
     names: Sequence[str],
     kinds: tuple[str, ...],
-    settings: Settings,
+    basis: Basis,
     made_with: Mapping[str, Recipe],
-    templates: Templates,
 ) -> Made:
     """Evidence of some kinds for some candidates, with its digest; nothing is stored.
 
@@ -102,7 +89,7 @@ def compute(
 
     digests = candidate_digests(connection, names)
     candidates = get_candidates(connection, names)
-    found = assess_all(candidates, templates, settings, kinds)
+    found = assess_all(candidates, basis.templates(), basis.settings, kinds)
     return [
         (candidate.name, replace(made, digest=made_with[kind].digest_of(digests[candidate.name])))
         for candidate, by_kind in zip(candidates, found, strict=True)
@@ -123,12 +110,12 @@ def assess_queue(
         WorkerError: a process died.
     """
     with closing(open_queue(path)) as connection:
-        settings = read_settings(connection)
-        made_with = recipes_for(kinds, settings)
+        basis = read_basis(connection)
+        made_with = recipes_for(kinds, basis)
         total = lacking_count(connection, made_with)
         jobs = jobs or (spare_processes() if total > FEW else 1)
         candidates = pieces = 0
-        for rows in results_of(path, connection, jobs, settings, made_with):
+        for rows in results_of(path, connection, jobs, basis, made_with):
             kept.save_evidence(connection, rows)
             candidates, pieces = candidates + len({name for name, _ in rows}), pieces + len(rows)
             if report:
@@ -137,17 +124,15 @@ def assess_queue(
 
 
 def results_of(
-    path: str, connection: sqlite3.Connection, jobs: int, settings: Settings, made_with: Mapping[str, Recipe]
+    path: str, connection: sqlite3.Connection, jobs: int, basis: Basis, made_with: Mapping[str, Recipe]
 ) -> Iterator[Made]:
     """Evidence for all that lacks some, chunk by chunk, computed here or in processes of their own."""
     if jobs == 1:
-        templates = None
         for names, kinds in tasks(connection, made_with):
-            templates = templates or grids(settings)
-            yield compute(connection, names, kinds, settings, made_with, templates)
+            yield compute(connection, names, kinds, basis, made_with)
         return
-    grids(settings)  # so that the processes find them in the cache, and do not each build them
-    yield from in_processes(work, tasks(connection, made_with), jobs, prepare, (path, settings, dict(made_with)))
+    basis.templates()  # so that the processes find them in the cache, and do not each build them
+    yield from in_processes(work, tasks(connection, made_with), jobs, prepare, (path, basis, dict(made_with)))
 
 
 def lacking_in(
@@ -179,13 +164,14 @@ def tasks(connection: sqlite3.Connection, made_with: Mapping[str, Recipe]) -> It
 _bench: dict[str, tuple] = {}  # what one process works with; filled once by `prepare`
 
 
-def prepare(path: str, settings: Settings, made_with: Mapping[str, Recipe]) -> None:
+def prepare(path: str, basis: Basis, made_with: Mapping[str, Recipe]) -> None:
     """Make a process of its own ready: its connection, its grids."""
-    _bench["with"] = (open_queue(path, write=False), settings, made_with, grids(settings))
+    basis.templates()
+    _bench["with"] = (open_queue(path, write=False), basis, made_with)
 
 
 def work(task: Task) -> Made:
     """Compute one task in a process of its own."""
-    connection, settings, made_with, templates = _bench["with"]
+    connection, basis, made_with = _bench["with"]
     names, kinds = task
-    return compute(connection, names, kinds, settings, made_with, templates)
+    return compute(connection, names, kinds, basis, made_with)

@@ -9,7 +9,8 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from tui.errors import InputError, UnknownNameError
-from tui.model import Candidate, Evidence, Fit, FloatArray, Settings
+from tui.model import Candidate, Evidence, Fit, FloatArray
+from tui.workflow.basis import Basis
 
 if TYPE_CHECKING:
     from tui.checks import Curve
@@ -46,7 +47,7 @@ def band_name(candidate: Candidate, typed: str) -> str:
 
 
 def probe(
-    candidate: Candidate, check: str, fixed: Mapping[str, float], dropped: frozenset[str], settings: Settings
+    candidate: Candidate, check: str, fixed: Mapping[str, float], dropped: frozenset[str], basis: Basis
 ) -> tuple[Fit, Curve]:
     """Fit one check with some parameters fixed and some bands dropped.
 
@@ -58,34 +59,31 @@ def probe(
         InputError: no such parameter in any model of the check, or too few bands are left.
     """
     from tui import checks
-    from tui.workflow.assessing import grids
 
     held = {parameter_name(check, name): value for name, value in fixed.items()}
     without = frozenset(band_name(candidate, band) for band in dropped)
     left = {one.band for one in candidate.measurements if not one.exclude} - without
     if not left:
         raise InputError(f"No band of {candidate.name} is left to fit.")
-    templates = grids(settings)
-    fit = checks.probe(candidate, check, held, without, templates, settings)
-    return fit, checks.curve(candidate, fit, check, templates, settings, curve_wavelengths(candidate))
+    templates = basis.templates()
+    fit = checks.probe(candidate, check, held, without, templates, basis.settings)
+    return fit, checks.curve(candidate, fit, check, templates, basis.settings, curve_wavelengths(candidate, basis))
 
 
-def fit_curve(candidate: Candidate, evidence: Evidence, fit_index: int, settings: Settings) -> Curve | None:
+def fit_curve(candidate: Candidate, evidence: Evidence, fit_index: int, basis: Basis) -> Curve | None:
     """The spectrum of one fit of some evidence, by component; None where there is no such fit."""
     if not 0 <= fit_index < len(evidence.fits):
         return None
     from tui import checks
-    from tui.workflow.assessing import grids
 
     fit = evidence.fits[fit_index]
-    return checks.curve(candidate, fit, evidence.kind, grids(settings), settings, curve_wavelengths(candidate))
+    wave_um = curve_wavelengths(candidate, basis)
+    return checks.curve(candidate, fit, evidence.kind, basis.templates(), basis.settings, wave_um)
 
 
-def curve_wavelengths(candidate: Candidate) -> FloatArray:
+def curve_wavelengths(candidate: Candidate, basis: Basis) -> FloatArray:
     """Where to draw a curve: shape (POINTS,), micron, even in the logarithm, a little beyond the bands measured."""
-    from tui.data.load import bands
-
-    known = bands()
+    known = basis.bands()
     pivots = [known[one.band].pivot_um for one in candidate.measurements if one.band in known]
     low, high = (min(pivots) / MARGIN, max(pivots) * MARGIN) if pivots else BARE_RANGE_UM
     return np.geomspace(low, high, POINTS)

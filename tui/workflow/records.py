@@ -2,6 +2,6 @@
 
 from __future__ import annotations
 
-from tui.store.records import CandidateView, Filter, QueueRow, RulingLine, StoryLine
+from tui.store.records import SORTS, CandidateView, Cutout, Filter, QueueRow, RulingLine, StoryLine
 
-__all__ = ["CandidateView", "Filter", "QueueRow", "RulingLine", "StoryLine"]
+__all__ = ["SORTS", "CandidateView", "Cutout", "Filter", "QueueRow", "RulingLine", "StoryLine"]

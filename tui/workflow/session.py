@@ -8,14 +8,14 @@ from collections.abc import Iterable, Mapping, Sequence
 from typing import TYPE_CHECKING
 
 from tui.errors import HandleError, UnknownNameError
-from tui.model import CHECKS, KINDS, RULINGS, Candidate, Evidence, Fit, Reviewer, Ruling, Settings
-from tui.store import candidates, claims, connect, drafts, evidence, reviewers, rulings, settings, views
-from tui.workflow.clock import new_id, utc_now
+from tui.model import CHECKS, KINDS, Band, Candidate, Evidence, Fit, Reviewer, Ruling, Settings
+from tui.store import candidates, claims, connect, drafts, evidence, reviewers, rulings, views
+from tui.workflow.basis import read_basis
+from tui.workflow.clock import utc_now
 from tui.workflow.records import CandidateView, Filter, QueueRow, StoryLine
 
 if TYPE_CHECKING:
     from tui.checks import Curve
-    from tui.data.load import BandRow
     from tui.workflow.tallying import Tally
 
 JOIN_HINT = "Join first: plainlight join QUEUE HANDLE."
@@ -33,7 +33,8 @@ class Session:
         self.reviewer = reviewer
         self.connection = connection
         self.write = write
-        self.settings: Settings = settings.read_settings(connection)
+        self.basis = read_basis(connection)
+        self._read_at = connect.data_version(connection)
 
     # --- opening and closing ---
 
@@ -71,9 +72,20 @@ class Session:
         """A number that changes when another connection has written to the queue."""
         return connect.data_version(self.connection)
 
+    def follow_settings(self) -> None:
+        """Read the basis anew if another connection has written since it was read."""
+        version = self.data_version()
+        if version != self._read_at:
+            self.basis, self._read_at = read_basis(self.connection), version
+
+    @property
+    def settings(self) -> Settings:
+        """The settings as last read."""
+        return self.basis.settings
+
     def refresh_settings(self) -> Settings:
         """Read the settings again, as someone may have set them since."""
-        self.settings = settings.read_settings(self.connection)
+        self.basis = read_basis(self.connection)
         return self.settings
 
     @property
@@ -97,6 +109,10 @@ class Session:
         """How many candidates each filter would show this reader."""
         return views.view_counts(self.connection, self.reader_id)
 
+    def reviewers(self) -> list[Reviewer]:
+        """Everyone who joined, by handle."""
+        return reviewers.reviewers(self.connection)
+
     def find(self, text: str, substring: bool = False) -> array[int]:
         """Ids of the candidates whose name starts with `text`, or holds it."""
         search = views.find_substring if substring else views.find_prefix
@@ -112,15 +128,35 @@ class Session:
 
     def next_for_me(self, skip: Iterable[str] = ()) -> str | None:
         """The candidate that needs this reviewer most and is on nobody's screen; None when nothing does."""
-        return views.next_for(self.connection, self.needed_reviewer().id, utc_now(), skip=frozenset(skip))
+        return views.next_for(self.connection, self.needed_reviewer().id, utc_now(), frozenset(skip))
 
-    def claim(self, name: str) -> None:
-        """Say that this reviewer is looking at `name`, for 15 minutes."""
-        claims.claim(self.connection, name, self.needed_reviewer().id, utc_now())
+    def claim_next(self, skip: Iterable[str] = ()) -> str | None:
+        """The same, and claimed at once, so that two people never get one candidate."""
+        return claims.claim_next(self.connection, self.needed_reviewer().id, utc_now(), frozenset(skip))
+
+    def claim(self, name: str) -> bool:
+        """Say that this reviewer is looking at `name`, for 15 minutes; whether nobody else is."""
+        return claims.claim(self.connection, name, self.needed_reviewer().id, utc_now())
 
     def release(self, name: str) -> None:
         """Say that this reviewer no longer looks at `name`."""
         claims.release(self.connection, name, self.needed_reviewer().id)
+
+    def release_all(self) -> None:
+        """Say that this reviewer looks at nothing any more."""
+        claims.release_all(self.connection, self.needed_reviewer().id)
+
+    def put_off(self, name: str) -> None:
+        """Come back to a candidate later: it is offered after all others."""
+        claims.put_off(self.connection, self.needed_reviewer().id, name)
+
+    def take_up(self, name: str) -> None:
+        """Undo `put_off`."""
+        claims.take_up(self.connection, self.needed_reviewer().id, name)
+
+    def put_off_names(self) -> list[str]:
+        """What this reviewer put off, by name."""
+        return claims.put_off_names(self.connection, self.needed_reviewer().id)
 
     # --- one candidate ---
 
@@ -140,13 +176,14 @@ class Session:
         """Today's evidence: what lacks or is outdated is computed and stored first."""
         from tui.workflow import assessing
 
-        return assessing.evidence_for(self.connection, name, kinds, self.settings, store=self.write)
+        self.follow_settings()
+        return assessing.evidence_for(self.connection, name, kinds, self.basis, store=self.write)
 
     def curve(self, name: str, check: str, fit_index: int = 0) -> Curve | None:
         """The spectrum of one of a check's fits, by component; None where the check fitted nothing."""
         from tui.workflow import probing
 
-        return probing.fit_curve(self.candidate(name), self.evidence(name, (check,))[check], fit_index, self.settings)
+        return probing.fit_curve(self.candidate(name), self.evidence(name, (check,))[check], fit_index, self.basis)
 
     def probe(
         self, name: str, check: str, fixed: Mapping[str, float], dropped: Iterable[str] = ()
@@ -154,13 +191,11 @@ class Session:
         """A fit of `check` with some parameters fixed and some bands dropped, and its curve; stores nothing."""
         from tui.workflow import probing
 
-        return probing.probe(self.candidate(name), check, fixed, frozenset(dropped), self.settings)
+        return probing.probe(self.candidate(name), check, fixed, frozenset(dropped), self.basis)
 
-    def band_info(self) -> Mapping[str, BandRow]:
+    def band_info(self) -> Mapping[str, Band]:
         """Every band by name: pivot wavelength, beam, saturation and so on."""
-        from tui.data.load import bands
-
-        return bands()
+        return self.basis.bands()
 
     # --- rulings ---
 
@@ -176,33 +211,29 @@ class Session:
             StoreError: refused by the rules of the log.
         """
         reviewer = self.needed_reviewer()
-        if check not in CHECKS:
-            raise UnknownNameError("check", check, f"The checks are {', '.join(CHECKS)}.")
-        if ruling not in RULINGS:
-            raise UnknownNameError("ruling", ruling, f"A ruling is one of {', '.join(RULINGS)}.")
         if evidence_digest is None:
-            evidence_digest = self.evidence(name, (check,))[check].digest
-        view = self.view(name)
-        own = view.own.get(check)
+            evidence_digest = self.digest_to_cite(name, check) if ruling != "withdrawn" else ""
         made = Ruling(
-            candidate=view.name,
+            candidate=name,
             check=check,
             reviewer_id=reviewer.id,
             ruling=ruling,
             note=note,
             evidence_digest=evidence_digest,
-            seen_others=view.seal_open,
-            replaces=own.id if own else "",
             utc=utc_now(),
-            id=new_id(),
         )
         return rulings.append_ruling(self.connection, made)
 
+    def digest_to_cite(self, name: str, check: str) -> str:
+        """Digest of today's evidence on a check, computed first where it lacks."""
+        if check not in CHECKS:
+            raise UnknownNameError("check", check, f"The checks are {', '.join(CHECKS)}.")
+        found = self.evidence(name, (check,)).get(check)
+        return found.digest if found else ""
+
     def withdraw(self, name: str, check: str, note: str = "") -> Ruling:
         """Take back this reviewer's ruling on `check`. StoreError when there is none to take back."""
-        own = self.view(name).own.get(check)
-        digest = own.evidence_digest if own else ""
-        return self.rule(name, check, "withdrawn", note, evidence_digest=digest)
+        return self.rule(name, check, "withdrawn", note)
 
     def draft(self, name: str, check: str) -> str:
         """The note this reviewer was typing on `check`, or ''."""

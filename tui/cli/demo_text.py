@@ -1,0 +1,36 @@
+"""What is in the sample, as text: for a pipe, a log, or a terminal that cannot place text."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+from tui.cli.looking import LIST_HEADINGS, list_cells
+from tui.cli.printing import heading, line, table
+
+SHOWN = 10  # oddest candidates listed
+NEXT_STEPS = (
+    ("plainlight demo", "in a terminal: opens a copy of this queue as visitor"),
+    ("plainlight load my.db table.vot", "begin a queue of your own"),
+    ("plainlight --help", "every command"),
+)
+
+
+def print_summary(path: Path) -> None:
+    """How many candidates, which are oddest, who ruled, what is settled, and how to go on."""
+    from tui.workflow.demo import VISITOR
+    from tui.workflow.session import Session
+
+    with Session.open(str(path), VISITOR, write=False) as session:
+        counts = session.counts()
+        line(f"Saltmarsh, an invented survey: {counts['all']} candidates, {counts['needs_me']} of them need a new reviewer.")
+        team = ", ".join(one.handle for one in session.reviewers() if one.handle != VISITOR)
+        line(f"Reviewers so far: {team}. What they ruled stays sealed until you have ruled yourself.")
+        heading(f"The {SHOWN} oddest, as a new reviewer sees them")
+        rows = session.rows(session.order()[:SHOWN])
+        table(LIST_HEADINGS, map(list_cells, rows), numbers=(1, 3, 9, 10))
+        heading("Where the team stands")
+        for text in session.tally().sentences():
+            line(text)
+    heading("Go on with")
+    for command, meaning in NEXT_STEPS:
+        line(f"  {command:<34}{meaning}")
