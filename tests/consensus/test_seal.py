@@ -35,9 +35,11 @@ def test_what_a_closed_seal_shows_depends_on_own_rulings_only(new_team):
             one.rule("curlew", ruling, check)
             two.rule("curlew", ruling, check)
         for _ in range(dice.randint(0, 12)):
-            two.rule(dice.choice(["heron", "plover"]), dice.choice(["explains", "short", "unclear"]), dice.choice(CHECKS))
+            who, ruling = dice.choice(["heron", "plover"]), dice.choice(["explains", "short", "unclear"])
+            two.rule(who, ruling, dice.choice(CHECKS))
         assert seal.seen_states(one.now, "curlew") == seal.seen_states(two.now, "curlew")
-        assert seal.seen_outcome(two.now, "curlew") == "sealed" and two.now.to_rule("curlew") == one.now.to_rule("curlew")
+        assert seal.seen_outcome(two.now, "curlew") == "sealed"
+        assert two.now.to_rule("curlew") == one.now.to_rule("curlew")
         assert not seal.has_others_in_view(two.now, "curlew")
 
 
