@@ -126,7 +126,7 @@ def own_rulings(own: dict[str, Ruling], number: int) -> list[RulingLine]:
 def other_rulings() -> list[RulingLine]:
     """What two colleagues ruled on a blend."""
     return [
-        RulingLine("o2", "blend", "curlew", "r-curlew", "explains", "[/] the beam holds \x1b[31mtwo\x1b[0m sources, see W1",
+        RulingLine("o2", "blend", "curlew", "r-curlew", "explains", "[/] the beam holds \x1b[31mtwo\x1b[0m, see W1",
                    "2026-03-02T11:00:00.000000Z", False, True, ""),
         RulingLine("o3", "blend", "plover", "r-plover", "unclear", "", "2026-03-02T12:00:00.000000Z", False, True,
                    "W3 was measured anew"),

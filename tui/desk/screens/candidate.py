@@ -1,0 +1,235 @@
+"""One candidate, one check at a time: where the data leave the model, the numbers, and the key that rules."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import replace
+from pathlib import PurePath
+from typing import TYPE_CHECKING
+
+from textual import events, on
+from textual.app import ComposeResult
+from textual.containers import Horizontal
+
+from tui.desk.keys import bindings
+from tui.desk.screens.base import DeskScreen
+from tui.desk.screens.candidate_actions import MovesThroughPlot, ProbesByHand
+from tui.desk.screens.candidate_draw import advice_height, draw_foot, draw_head, draw_numbers
+from tui.desk.screens.candidate_layout import shares
+from tui.desk.screens.candidate_opening import OpensCandidates
+from tui.desk.screens.candidate_ruling import RecordsRulings
+from tui.desk.screens.pages import PAGES, page_rows
+from tui.desk.screens.walk import Walk, step_check
+from tui.desk.session_thread import SessionThread
+from tui.desk.widgets.note import NoteEditor
+from tui.desk.widgets.rows import Row
+from tui.desk.widgets.rows_view import RowsView
+from tui.desk.widgets.spectrum_plot import SpectrumPlot
+
+if TYPE_CHECKING:
+    from tui.workflow.session import Session
+
+class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesByHand, DeskScreen[None]):
+    """One candidate; evidence is computed off the interface's thread, and never drawn under another's name."""
+
+    PLACE = "candidate"
+    CSS_PATH = "candidate.tcss"
+    BINDINGS = bindings("candidate")
+
+    def __init__(self, session: Session, name: str, order: Sequence[int] | Sequence[str] | None = None) -> None:
+        """Open a candidate.
+
+        Args:
+            session: the reader's own; only its clones are used in threads.
+            name: of the candidate.
+            order: ids or names in the order in which the queue lists them; without it the queue decides what is next.
+        """
+        super().__init__()
+        self.session = session
+        self.order = order
+        self.walk = Walk(name)
+        self.skipped: set[str] = set()
+        self.before: list[str] = []
+        self.reads = SessionThread(session, "evidence")
+        self.writes = SessionThread(session, "rulings")
+        self._ready_at = float("inf")  # keys older than the page they would hit are dropped
+        self._draft_of: tuple[str, str] | None = None
+
+    # --- life ---
+
+    def compose(self) -> ComposeResult:
+        """Checks and question, plot and numbers (or a further page), note, ruling and keys."""
+        yield RowsView(lambda width, height: draw_head(self.walk, width, height, self._right()), id="walk-head")
+        with Horizontal(id="walk-middle"):
+            yield SpectrumPlot(id="walk-plot")
+            yield RowsView(lambda width, height: draw_numbers(self.walk, width, height), id="walk-numbers")
+        yield RowsView(lambda width, height: page_rows(self.walk, width) if self.walk.page else [], id="walk-page")
+        yield NoteEditor(id="walk-note")
+        yield RowsView(self._foot, id="walk-foot")
+
+    def on_mount(self) -> None:
+        """Open at the check where the reviewer was, else at the first one still to rule."""
+        position = self.session.position() if self.session.reviewer else None
+        self.open(self.walk.name, position[1] if position and position[0] == self.walk.name else "")
+
+    def on_unmount(self) -> None:
+        """Finish what is being written; leave what is being read."""
+        self.reads.close(finish=False)
+        self.writes.close(finish=True)
+
+    def on_resize(self, event: events.Resize) -> None:
+        """Share the terminal anew."""
+        self.lay_out(event.size.width, event.size.height)
+
+    def lay_out(self, width: int, height: int) -> None:
+        """Give every part its rows and columns."""
+        share = shares(width, height, self.walk.plot_only, advice_height(self.walk, width))
+        self.query_one("#walk-head").styles.height = share.head
+        self.query_one("#walk-foot").styles.height = share.foot
+        self.query_one("#walk-numbers").styles.width = max(share.side, 1)
+        self.set_class(self.walk.plot_only, "-plot-only")
+        self.set_class(self.walk.page > 0, "-page")
+        self.set_class(self._draft_of is not None, "-writing")
+
+    def on_key(self, event: events.Key) -> None:
+        """Keys typed before this page was drawn were meant for the one before: drop them."""
+        if event.time < self._ready_at:
+            event.stop()
+            event.prevent_default()
+        elif self.walk.message:
+            self.walk.message = ""
+            self.draw_foot()
+
+    # --- drawing ---
+
+    def draw(self) -> None:
+        """Everything, from the state of the walk."""
+        walk = self.walk
+        self.lay_out(*self.size)
+        self.query_one("#walk-plot", SpectrumPlot).show(walk.plot(), walk.plot_view)
+        for part in ("#walk-head", "#walk-numbers", "#walk-page", "#walk-foot"):
+            self.query_one(part, RowsView).redraw()
+
+    def draw_foot(self) -> None:
+        """The last lines only, with as many rows as they need now."""
+        self.lay_out(*self.size)
+        self.query_one("#walk-foot", RowsView).redraw()
+
+    def say(self, text: str, *, is_error: bool = False) -> None:
+        """A quiet plain line in place of the advice; it goes with the next key."""
+        self.walk.message = text
+        self.draw_foot()
+
+    def _foot(self, width: int, height: int) -> list[Row]:
+        return draw_foot(self.walk, width, height, self.app.keys_of, self.session, self._draft_of is not None)
+
+    def _right(self) -> str:
+        reviewer = self.session.reviewer
+        saved = f"  saved {self.app.saved}" if self.app.saved else ""
+        return f"{PurePath(self.session.path).name}  {'you: ' + reviewer.handle if reviewer else 'reading'}{saved}"
+
+    # --- checks and pages ---
+
+    def action_check(self, check: str) -> None:
+        """Turn to a check, or compare with it when that was asked."""
+        walk = self.walk
+        if walk.asking_compare:
+            walk.asking_compare = False
+            walk.compared = "" if check == walk.check else check
+            if walk.compared:
+                self.show_curve(walk, check, 0)
+        else:
+            walk.go(check)
+            walk.page = 0 if walk.page and check != walk.check else walk.page
+            self.keep_place()
+            self.show_curve(walk, check, 0)
+        self.draw()
+
+    def action_next_check(self) -> None:
+        """The next check; by hand, the next number."""
+        if self.walk.hand is not None:
+            self.next_param(1)
+        else:
+            self.action_check(step_check(self.walk.check, 1))
+
+    def action_previous_check(self) -> None:
+        """The check before."""
+        if self.walk.hand is not None:
+            self.next_param(-1)
+        else:
+            self.action_check(step_check(self.walk.check, -1))
+
+    def action_views(self) -> None:
+        """The next further page; after the last the plot."""
+        self.action_page((self.walk.page + 1) % (len(PAGES) + 1))
+
+    def action_views_back(self) -> None:
+        """The page before."""
+        self.action_page((self.walk.page - 1) % (len(PAGES) + 1))
+
+    def action_page(self, number: int) -> None:
+        """One page by its number; 0 is the plot."""
+        self.walk.page = number if 0 <= number <= len(PAGES) else 0
+        self.walk.hand = None
+        self.query_one("#walk-page", RowsView).to_top()
+        self.draw()
+
+    def action_back(self) -> None:
+        """Out of a mode, a page or the large plot; else to the queue."""
+        walk = self.walk
+        if walk.asking_compare or walk.hand is not None:
+            walk.asking_compare, walk.hand = False, None
+        elif walk.page or walk.plot_only:
+            walk.page, walk.plot_only = 0, False
+        else:
+            self.leave()
+            return
+        self.draw()
+
+    def leave(self) -> None:
+        """Back to the queue; somebody else may look at this candidate."""
+        name = self.walk.name
+        if self.session.reviewer is not None:
+            self.write(lambda s: s.release(name))
+        self.dismiss(None)
+
+    # --- notes ---
+
+    def action_note(self) -> None:
+        """Write the note of this check."""
+        if self.session.reviewer is None or self.walk.loaded is None:
+            self.say(self.cannot_rule())
+            return
+        self._draft_of = (self.walk.name, self.walk.check)
+        self.lay_out(*self.size)
+        self.query_one(NoteEditor).open(self.walk.note)
+        self.draw_foot()
+
+    @on(SpectrumPlot.PointPicked)
+    def pick_point(self, message: SpectrumPlot.PointPicked) -> None:
+        """The mouse puts the cursor on a point."""
+        self.walk.plot_view = replace(self.walk.plot_view, cursor=message.index)
+        self.draw()
+
+    @on(SpectrumPlot.Zoomed)
+    def zoom_by_wheel(self, message: SpectrumPlot.Zoomed) -> None:
+        """The wheel zooms."""
+        self.action_zoom(message.direction)
+
+    @on(NoteEditor.Typed)
+    def keep_draft(self, message: NoteEditor.Typed) -> None:
+        """Kept at every keystroke, in order, under the check it was begun on."""
+        if self._draft_of is None:
+            return
+        name, check = self._draft_of
+        self.walk.note = message.text
+        self.write(lambda s: s.save_draft(name, check, message.text))
+
+    @on(NoteEditor.Left)
+    def leave_note(self) -> None:
+        """Letters are keys again."""
+        if self._draft_of is not None:
+            self._draft_of = None
+            self.set_focus(None)
+            self.lay_out(*self.size)
+            self.draw_foot()

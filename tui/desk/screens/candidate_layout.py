@@ -1,0 +1,37 @@
+"""How the parts of a candidate's page share a terminal: plain numbers, so that every size can be tested."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+
+@dataclass(frozen=True, slots=True)
+class Shares:
+    """Rows of head and foot, and columns of the numbers beside the plot (0: none)."""
+
+    head: int
+    foot: int
+    side: int
+
+
+def shares(width: int, height: int, plot_only: bool = False, advice: int = 2) -> Shares:
+    """The plot gets what is left: 51 x 16 at 80 x 24, about 126 x 45 at 200 x 60.
+
+    Args:
+        advice: rows that advice and caution would take in full; a row or so is found for them.
+
+    >>> shares(80, 24)
+    Shares(head=3, foot=5, side=29)
+    """
+    head = 3 if height < 32 else 5
+    least, most = (2, 3) if height < 32 else (3, 5) if height < 45 else (4, 7)
+    foot = min(max(advice, least), most) + 3  # then the ruling line and two rows of keys
+    if plot_only:
+        return Shares(head, foot, 0)
+    if width < 100:
+        side = 29 + max(0, (width - 80) // 2)
+    elif width < 165:
+        side = 40 + (width - 100) // 4
+    else:
+        side = min(90, width - 126)
+    return Shares(head, foot, side)

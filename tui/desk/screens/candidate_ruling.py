@@ -1,0 +1,174 @@
+"""Ruling on a candidate and going on: a letter chooses, Enter records, then the next check or the next candidate."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from textual import work
+
+from tui.desk.screens.walk import Loaded, Walk, next_to_rule, refusal
+from tui.desk.text import RULING_WORDS
+from tui.errors import TuiError
+from tui.model import CHECK_TITLES, Ruling
+from tui.workflow.records import CandidateView
+
+if TYPE_CHECKING:
+    from tui.desk.screens.candidate import CandidateScreen
+    from tui.workflow.session import Session
+
+NOBODY = "Nothing else needs you. q: back to the queue."
+MORE = 400  # candidates of the list looked at for the next one, before the queue is asked
+
+
+class RecordsRulings:
+    """The part of the candidate's screen that rules; every write is off the interface's thread."""
+
+    def action_choose(self: CandidateScreen, ruling: str) -> None:
+        """Choose, record nothing yet; the same letter again takes the choice back."""
+        walk = self.walk
+        why = self.cannot_rule() or refusal(walk.loaded.view, walk.check, ruling)
+        if why:
+            self.say(why)
+            return
+        walk.chosen = "" if walk.chosen == ruling else ruling
+        walk.asking_compare = False
+        self.draw_foot()
+
+    def action_withdraw(self: CandidateScreen) -> None:
+        """Choose to take the ruling on this check back."""
+        self.action_choose("withdrawn")
+
+    def action_reaffirm(self: CandidateScreen) -> None:
+        """A stale ruling still holds: record it anew."""
+        walk = self.walk
+        own = walk.loaded.view.own.get(walk.check) if walk.loaded else None
+        if self.cannot_rule() or own is None or walk.check not in walk.loaded.view.stale:
+            self.say(self.cannot_rule() or "There is no stale ruling of yours on this check.")
+            return
+        walk.chosen = own.ruling
+        walk.note = walk.note or own.note
+        self.action_record()
+
+    def cannot_rule(self: CandidateScreen) -> str:
+        """Why nothing can be ruled now, as a plain sentence; '' where it can."""
+        if self.session.reviewer is None:
+            return "You read without a handle. To rule: plainlight join QUEUE HANDLE, then review --as HANDLE."
+        if self.walk.loaded is None or self.walk.own_evidence is None:
+            return "The evidence is not here yet: rulings open when the numbers are."
+        return "Recording ..." if self.walk.recording else ""
+
+    def action_record(self: CandidateScreen) -> None:
+        """Record what was chosen with its note; the evidence on view is cited."""
+        walk = self.walk
+        if self.cannot_rule() or not walk.chosen:
+            self.say(self.cannot_rule() or "Choose first: e explains, f falls short, u unclear. Then Enter records.")
+            return
+        walk.recording = True
+        self._ready_at = float("inf")
+        self.draw_foot()
+        self.record(walk, walk.check, walk.chosen, walk.note)
+
+    @work(group="record", exit_on_error=False)
+    async def record(self: CandidateScreen, walk: Walk, check: str, ruling: str, note: str) -> None:
+        """Write the ruling off this thread, then go on."""
+        name, shown = walk.name, walk.own_evidence.digest
+
+        def job(session: Session) -> tuple[Ruling, CandidateView]:
+            if ruling == "withdrawn":
+                made = session.withdraw(name, check, note)
+            else:
+                made = session.rule(name, check, ruling, note, evidence_digest=shown)
+            session.save_draft(name, check, "")
+            return made, session.view(name)
+
+        try:
+            made, view = await self.writes.ask(job)
+        except TuiError as error:
+            walk.recording = False
+            self.be_ready()
+            self.say(str(error), is_error=True)
+            return
+        walk.recording = False
+        self.app.note_ruling(made.utc)
+        if self.is_here(walk):
+            await self.go_on(walk, view, check, ruling)
+
+    async def go_on(self: CandidateScreen, walk: Walk, view: CandidateView, check: str, ruling: str) -> None:
+        """To the next check that this reviewer has to rule, else to the next candidate."""
+        walk.loaded = Loaded(walk.loaded.candidate, view, walk.loaded.bands)
+        said = f"Recorded: {CHECK_TITLES[check]} {RULING_WORDS[ruling]}."
+        following = None if view.done and ruling != "withdrawn" else next_to_rule(view, check)
+        if ruling == "withdrawn" or following is not None:
+            walk.go(check if ruling == "withdrawn" else following)
+            walk.message = said if ruling != "withdrawn" else f"Taken back: your ruling on {CHECK_TITLES[check]}."
+            self.draw()
+            self.be_ready()
+            self.keep_place()
+            self.show_curve(walk, walk.check, 0)
+            return
+        done = f"{said} You are done with {walk.name}"
+        walk.message = f"{done}; the seal is open: {view.outcome}. z goes back to it."
+        await self.take_next(walk)
+
+    # --- going on ---
+
+    def action_next_for_me(self: CandidateScreen) -> None:
+        """The next candidate that needs this reviewer."""
+        self.walk.message = ""
+        self.turn(self.walk)
+
+    def action_later(self: CandidateScreen) -> None:
+        """Leave this candidate for later and take the next."""
+        if self.session.reviewer is None:
+            self.say(self.cannot_rule())
+            return
+        self.skipped.add(self.walk.name)
+        self.walk.message = f"Left for later: {self.walk.name}."
+        self.turn(self.walk)
+
+    def action_last_candidate(self: CandidateScreen) -> None:
+        """Back to the candidate before."""
+        if not self.before:
+            self.say("There is no candidate before this one.")
+            return
+        name = self.before.pop()
+        self.open(name)
+
+    @work(exclusive=True, group="turn", exit_on_error=False)
+    async def turn(self: CandidateScreen, walk: Walk) -> None:
+        """Find and open the next candidate."""
+        self._ready_at = float("inf")
+        await self.take_next(walk)
+
+    async def take_next(self: CandidateScreen, walk: Walk) -> None:
+        """Open the next candidate, or say that there is none."""
+        skip = frozenset(self.skipped | {walk.name})
+        try:
+            following = await self.writes.ask(lambda s: self.following(s, walk.name, skip))
+        except TuiError as error:
+            walk.message, following = str(error), None
+        if not self.is_here(walk):
+            return
+        if following is None:
+            walk.message = f"{walk.message} {NOBODY}".strip()
+            walk.go(walk.check, keep_message=True)
+            self.draw()
+            self.be_ready()
+            return
+        self.before.append(walk.name)
+        self.open(following)
+
+    def following(self: CandidateScreen, session: Session, name: str, skip: frozenset[str]) -> str | None:
+        """The next candidate of the list that needs this reviewer, else what the queue says; runs in a thread."""
+        if session.reviewer is None:
+            return None
+        session.release(name)
+        if self.order is not None and len(self.order):
+            ids = self.order
+            own = session.id_of(name) if not isinstance(ids[0], str) else name
+            place = ids.index(own) + 1 if own in ids else 0
+            ahead = [one if not isinstance(one, str) else session.id_of(one) for one in ids[place : place + MORE]]
+            for entry in session.rows(ahead):
+                if entry.needs_me and entry.name not in skip:
+                    return entry.name
+        return session.next_for_me(skip)

@@ -1,0 +1,128 @@
+"""The plain question of a check, made from where the data leave the star alone, and what to look at before ruling."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping
+
+from tui.desk.text import listed, short_band, signed
+from tui.model import Evidence, Fit
+
+STRONG = 3.0  # sigma: from here on a band is named as leaving the model
+NAMED = 3  # bands named one by one; more are counted
+
+ASKS = {
+    "instrument": "Could {bands} be badly measured rather than truly {way}?",
+    "extinction": "Can extinction on the way to us leave {bands} this {way}?",
+    "blend": "Can a second source in the beam make {bands} this {way}?",
+    "dust": "Can warm dust near the star make {bands} this {way}?",
+}
+ASKS_PLAIN = {
+    "instrument": "No band leaves the star alone by 3 sigma. Is any of them badly measured?",
+    "extinction": "No band leaves the star alone by 3 sigma. Does extinction change these data at all?",
+    "blend": "No band leaves the star alone by 3 sigma. Is there a second source in the beam?",
+    "dust": "No band leaves the star alone by 3 sigma. Is there warm dust at all?",
+}
+
+
+def question(check: str, evidence: Mapping[str, Evidence]) -> str:
+    """What the reviewer is asked on this check, of this candidate."""
+    star = evidence.get("star")
+    fit = star.best if star else None
+    if fit is None:
+        return f"Nothing could be fitted to the star alone. Does {ARTICLES[check]} explain this candidate?"
+    strong = strong_pulls(fit)
+    if check == "star":
+        return _star_question(fit, strong)
+    if not strong:
+        return ASKS_PLAIN[check]
+    return ASKS[check].format(bands=_bands(strong), way=_way(strong))
+
+
+ARTICLES = {
+    "star": "a plain star",
+    "instrument": "a bad measurement",
+    "extinction": "extinction",
+    "blend": "a second source",
+    "dust": "warm dust",
+}
+
+
+def strong_pulls(fit: Fit) -> dict[str, float]:
+    """Bands that leave the fit by three sigma or more, the farthest first."""
+    strong = {band: pull for band, pull in fit.pulls.items() if math.isfinite(pull) and abs(pull) >= STRONG}
+    return dict(sorted(strong.items(), key=lambda item: -abs(item[1])))
+
+
+def look_at(check: str, evidence: Mapping[str, Evidence], index: int = 0) -> tuple[str, ...]:
+    """Where the plotted fit is weakest, or where it would show first: a place to look, never a verdict.
+
+    Returns:
+        The same said at less and less length, for whoever has less room.
+    """
+    own = evidence.get(check)
+    if own is None:
+        return ("",)
+    if not own.fits or index >= len(own.fits):
+        return ("the measurements themselves: nothing could be fitted here.",)
+    fit, hint = own.fits[index], HINTS[check]
+    strong = strong_pulls(fit)
+    if strong:
+        named = [f"{short_band(band)} {signed(pull)}" for band, pull in strong.items()]
+        return (f"{', '.join(named[:3])} sigma left over. {hint}", f"{', '.join(named[:2])} left over. {hint}",
+                f"{named[0]} left over. {hint}", f"{named[0]} sigma left over.")  # fmt: skip
+    worst = max(fit.pulls.items(), key=lambda item: abs(item[1]), default=None)
+    if worst is None:
+        return (hint,)
+    near = f"{short_band(worst[0])} {signed(worst[1])} sigma"
+    return (f"No band is off by 3 sigma; the farthest is {near}. {hint}", f"Farthest off: {near}. {hint}", hint)
+
+
+HINTS = {
+    "star": "Do the points scatter, or lean away together?",
+    "instrument": "v shows flags and epochs.",
+    "extinction": "Does the blue side bend with it?",
+    "blend": "A second source shows first in the bands beside it.",
+    "dust": "A smooth rise, or one band alone?",
+}
+
+
+def caution_line(check: str, evidence: Mapping[str, Evidence]) -> str:
+    """The first caution, and how many more there are."""
+    own = evidence.get(check)
+    if own is None or not own.cautions:
+        return ""
+    more = len(own.cautions) - 1
+    return own.cautions[0] + (f" (+{more} more: v)" if more else "")
+
+
+def oddness_words(star: Evidence | None) -> str:
+    """The band that leaves the star alone farthest."""
+    fit = star.best if star else None
+    pulls = {band: pull for band, pull in fit.pulls.items() if math.isfinite(pull)} if fit else {}
+    if not pulls:
+        return ""
+    band = max(pulls, key=lambda name: abs(pulls[name]))
+    return f"odd by {short_band(band)} {signed(pulls[band])}"
+
+
+def _star_question(fit: Fit, strong: Mapping[str, float]) -> str:
+    if strong:
+        verb = "is" if len(strong) == 1 else "are"
+        return f"Is it a plain star after all? {_bands(strong, start=True)} {verb} {_way(strong, more=True)} than the best star."
+    worst = max((abs(pull) for pull in fit.pulls.values() if math.isfinite(pull)), default=0.0)
+    return f"Is it a plain star? The best one meets every band within {worst:.1f} sigma."
+
+
+def _bands(pulls: Mapping[str, float], start: bool = False) -> str:
+    names = [short_band(band) for band in pulls]
+    if len(names) <= NAMED:
+        return listed(names)
+    return f"{names[0]}, {names[1]} and {len(names) - 2} more bands"
+
+
+def _way(pulls: Mapping[str, float], more: bool = False) -> str:
+    up, down = any(pull > 0 for pull in pulls.values()), any(pull < 0 for pull in pulls.values())
+    if up and down:
+        return "brighter or fainter" if more else "bright or faint"
+    return ("brighter" if more else "bright") if up else ("fainter" if more else "faint")

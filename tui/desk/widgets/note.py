@@ -1,0 +1,52 @@
+"""Where a note is written: several lines, Tab leaves, every keystroke is reported so that it can be kept."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from textual import events
+from textual.message import Message
+from textual.widgets import TextArea
+
+MOST = 4000  # characters of one note
+
+
+class NoteEditor(TextArea):
+    """A plain text area that gives Tab back and keeps a note to a sane length."""
+
+    @dataclass
+    class Typed(Message):
+        """The note reads so now."""
+
+        text: str
+
+    @dataclass
+    class Left(Message):
+        """The reviewer is done writing."""
+
+    def __init__(self, *, id: str | None = None) -> None:
+        super().__init__(id=id, soft_wrap=True, show_line_numbers=False, tab_behavior="focus", highlight_cursor_line=False)
+
+    def open(self, text: str) -> None:
+        """Show a note to go on with, the cursor at its end."""
+        with self.prevent(TextArea.Changed):
+            self.load_text(text)
+        self.move_cursor(self.document.end)
+        self.focus()
+
+    async def _on_key(self, event: events.Key) -> None:
+        if event.key in ("tab", "shift+tab", "escape"):
+            event.stop()
+            event.prevent_default()
+            self.post_message(self.Left())
+            return
+        await super()._on_key(event)
+
+    def on_text_area_changed(self, event: TextArea.Changed) -> None:
+        """Tell at every keystroke, paste included."""
+        event.stop()
+        if len(self.text) > MOST:
+            with self.prevent(TextArea.Changed):
+                self.load_text(self.text[:MOST])
+            self.move_cursor(self.document.end)
+        self.post_message(self.Typed(self.text))

@@ -1,0 +1,218 @@
+"""A fit in numbers, aligned on their decimal points, each with its unit and interval, beside the star alone."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+
+from tui.desk.text import decimal_aligned, number, once_in, safe
+from tui.desk.widgets.rows import Row, Span, paragraph, row
+from tui.model import Evidence, Fit, Param
+
+WIDE = 40  # columns from which full names, both ends of intervals and all fits find room
+NOTHING = "--"
+
+
+@dataclass(frozen=True, slots=True)
+class ParamName:
+    """How a parameter is called on the page, and by what its value is multiplied."""
+
+    label: str
+    short: str
+    unit: str = ""
+    factor: float = 1.0
+
+
+NAMES: Mapping[str, ParamName] = {
+    "teff": ParamName("star temperature", "T star", "K"),
+    "teff1": ParamName("first temperature", "T 1st", "K"),
+    "teff2": ParamName("second temperature", "T 2nd", "K"),
+    "theta": ParamName("angular radius", "rad", "uas", 1e3),
+    "av": ParamName("extinction A_V", "A_V", "mag"),
+    "r_v": ParamName("extinction R_V", "R_V"),
+    "flux_ratio": ParamName("second/first in Ks", "2nd/1st"),
+    "dust_temperature": ParamName("dust temperature", "T dust", "K"),
+    "dust_fractional_luminosity": ParamName("dust share of light", "L dust", "%", 100.0),
+    "dust_radius": ParamName("dust distance", "R dust", "au"),
+    "dust2_temperature": ParamName("second dust temperature", "T dust2", "K"),
+    "dust2_fractional_luminosity": ParamName("second dust's share", "L dust2", "%", 100.0),
+    "dust2_radius": ParamName("second dust's distance", "R dust2", "au"),
+    "compact_temperature": ParamName("compact temperature", "T comp", "K"),
+    "compact_radius": ParamName("compact radius", "R comp", "R_sun"),
+}
+
+
+def fit_rows_of(
+    width: int, height: int, evidence: Evidence | None, star: Evidence | None, index: int, held: Fit | None = None
+) -> list[Row]:
+    """The numbers of one check at a given size, the most needed first.
+
+    Args:
+        evidence: the check's; None while it is being computed.
+        star: the star-only evidence that every other check is held against.
+        index: which of the check's fits is plotted.
+        held: a fit made by hand, in place of the plotted one.
+    """
+    if evidence is None:
+        return [row(("computing ...", "quiet"))]
+    fit = held or (evidence.fits[index] if index < len(evidence.fits) else None)
+    if fit is None:
+        return [row(("no fit", "head")), row(("adequate  ", "quiet"), adequate_word(evidence))]
+    alone = star.best if star and evidence.kind != "star" else None
+    rows = [_title(width, evidence, index, held), *statistic_rows(width, fit, alone)]
+    rows += chance_rows(width, fit)
+    rows += [] if held else [row(("adequate  ", "quiet"), adequate_word(evidence))]
+    params = param_rows(width, fit.params)
+    gap: list[Row] = [[]] if len(rows) + len(params) < height else []
+    rows += gap + params
+    if width >= WIDE and len(evidence.fits) > 1:
+        rows += [[], *fits_table(width, evidence.fits, index)]
+    return rows
+
+
+def adequate_word(evidence: Evidence) -> str:
+    """The evidence's own state, which is no ruling."""
+    return "untestable" if evidence.adequate is None else "yes" if evidence.adequate else "no"
+
+
+def statistic_rows(width: int, fit: Fit, alone: Fit | None) -> list[Row]:
+    """chi2, dof, p and BIC, the star alone beside them."""
+    columns = [_statistics(fit)] + ([_statistics(alone)] if alone else [])
+    labels = ("chi2", "dof", "p", "BIC")
+    room = max(8, (width - 6) // 2 if width < WIDE else 12)
+    rows = [row(" " * 6, (" this fit".rjust(room), "head"), ("star alone".rjust(room) if alone else "", "quiet"))]
+    for line, label in enumerate(labels):
+        cells = [column[line].rjust(room) for column in columns]
+        rows.append(row((label.ljust(6), "quiet"), (cells[0], "strong"), *((cell, "quiet") for cell in cells[1:])))
+    return rows
+
+
+def chance_rows(width: int, fit: Fit) -> list[Row]:
+    """What p means, in words."""
+    if fit.p is None or math.isnan(fit.p):
+        return []
+    return paragraph(f"chance alone does this {once_in(fit.p)}", width, "", indent=1)
+
+
+def param_rows(width: int, params: Mapping[str, Param], held: Sequence[str] = (), chosen: str = "") -> list[Row]:
+    """Parameters with units and 68 % intervals, or 95 % limits where they lie at a bound."""
+    if not params:
+        return []
+    wide = width >= WIDE
+    names = [param_name(key, param) for key, param in params.items()]
+    labels = [f"{name.label if wide else name.short}{' ' + name.unit if name.unit and not wide else ''}" for name in names]
+    values, errors = [], []
+    for name, param in zip(names, params.values(), strict=True):
+        value, error = value_and_error(param, name.factor, wide)
+        values.append(value)
+        errors.append(error)
+    label_width = min(max(len(label) for label in labels), 24 if wide else 11)
+    rows = []
+    lines = zip(params, labels, decimal_aligned(values), errors, names, strict=True)
+    for key, label, value, error, name in lines:
+        mark = ">" if key == chosen else "=" if key in held else " "
+        style = "chosen" if key == chosen else "quiet"
+        tail = f" {name.unit}" if wide else ""
+        error = squeezed(error, width - label_width - 2 - len(value) - len(tail))
+        rows.append(row((f"{mark}{label[:label_width].ljust(label_width)}", style), (f" {value}", "strong"), f"{error}{tail}"))
+    return rows
+
+
+def squeezed(error: str, room: int) -> str:
+    """An interval in `room` columns: without its spaces, else the larger side for both, where the whole does not fit.
+
+    >>> squeezed(" +0.19 -0.11", 10), squeezed(" +0.19 -0.11", 7)
+    ('+0.19-0.11', '+-0.19')
+    """
+    if len(error) <= room:
+        return error
+    tight = error.replace(" ", "")
+    if len(tight) <= room or not tight.startswith("+") or tight.startswith("+-"):
+        return tight
+    more, _, less = tight[1:].partition("-")
+    return f"+-{max(more, less, key=float)}" if "?" not in tight else f"+-{(more + less).strip('?')}"
+
+
+def param_name(key: str, param: Param) -> ParamName:
+    """The name of a parameter on the page; one we do not know keeps its own."""
+    known = NAMES.get(key)
+    if known is not None:
+        return known if not (key == "theta" and param.unit != "mas") else ParamName("scale", "scale", safe(param.unit))
+    plain_name = safe(key).replace("_", " ")
+    return ParamName(plain_name, plain_name, safe(param.unit))
+
+
+def value_and_error(param: Param, factor: float = 1.0, wide: bool = False) -> tuple[str, str]:
+    """A value as far as its error reaches, and the error (one digit, two where it begins with 1); limits read as such.
+
+    >>> value_and_error(Param(5612.3, 5572.0, 5652.0, "K"))
+    ('5612', ' +-40')
+    >>> value_and_error(Param(0.31, 0.2, 0.5, ""))
+    ('0.31', ' +0.19 -0.11')
+    """
+    value, low, high = (factor * end for end in (param.value, param.low, param.high))
+    if not math.isfinite(value):
+        return NOTHING, ""
+    if param.limit:
+        if math.isfinite(high) and high > value:
+            return f"<{number(high, 2)}", " 95%"
+        return f">{number(low, 2)}", " 95%"
+    up, down = high - value, value - low
+    spread = [size for size in (up, down) if math.isfinite(size) and size > 0]
+    if not spread:
+        return number(value, 4), ""
+    decimals = max(0, _error_digits(min(spread)) - 1 - math.floor(math.log10(min(spread))))
+    if decimals > 6:
+        return number(value, 3), f" +-{number(min(spread), 2)}"
+    text, more, less = (f"{size:.{decimals}f}" for size in (value, up, down))
+    if not (math.isfinite(up) and math.isfinite(down)):
+        return text, f"{'+' + more if math.isfinite(up) else '+?'}{'-' + less if math.isfinite(down) else '-?'}"
+    if more == less or not wide and max(spread) < 1.25 * min(spread):
+        return text, f" +-{max(more, less, key=float)}"
+    return text, f" +{more} -{less}"
+
+
+def _error_digits(error: float) -> int:
+    return 2 if f"{error:e}"[0] == "1" else 1
+
+
+def fits_table(width: int, fits: Sequence[Fit], shown: int) -> list[Row]:
+    """All fits of a check, best first."""
+    columns = [[f"{fit.chi2:.1f}" for fit in fits], [str(fit.dof) for fit in fits],
+               [number(fit.p, 1) for fit in fits], [f"{fit.bic:.1f}" for fit in fits]]  # fmt: skip
+    aligned = [decimal_aligned(column) for column in columns]
+    room = max(12, min(24, width - 33))
+    rows = [row((f" {'fits of this check':<{room}}{'chi2':>9}{'dof':>5}{'p':>8}{'BIC':>9}", "head"))]
+    for line, fit in enumerate(fits):
+        cells = "".join(cell[line].rjust(size) for cell, size in zip(aligned, (9, 5, 8, 9), strict=True))
+        mark = ">" if line == shown else " "
+        text = f"{mark}{safe(fit.model)[:room]:<{room}}{cells}"
+        rows.append([Span(text, "chosen" if line == shown else "", f"fit({line})")])
+    return rows
+
+
+def _title(width: int, evidence: Evidence, index: int, held: Fit | None) -> Row:
+    if held is not None:
+        return row(("by hand: ", "message"), (safe(held.model), "head"))
+    count = len(evidence.fits)
+    model = safe(evidence.fits[index].model)
+    which = f"  fit {index + 1} of {count}" if count > 1 else ""
+    short = which if len(model) + len(which) <= width else f" {index + 1}/{count}" if count > 1 else ""
+    return row((model, "head"), (short, "quiet"))
+
+
+def _statistics(fit: Fit) -> list[str]:
+    chi2, bic = decimal_aligned([_tenth(fit.chi2), _tenth(fit.bic)])
+    return [chi2, f"{fit.dof}  ", _whole_e(number(fit.p, 1)), bic]
+
+
+def _whole_e(text: str) -> str:
+    """Shift a short exponent number so that its last digit stands at the decimal points above."""
+    return text if "." in text else f"{text}  " if "e" not in text else text
+
+
+def _tenth(value: float) -> str:
+    if not math.isfinite(value):
+        return NOTHING
+    return f"{value:.1f}" if abs(value) < 1e6 else number(value, 3)
