@@ -11,9 +11,9 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.special import gammaincc, gammaln
 
 from tui.model import FloatArray
+from tui.physics.statistics import chi2_tail, ln_chi2_tail
 
 BoolArray = NDArray[np.bool_]
 STAR_PARAMETERS = 2  # temperature and scale
@@ -72,27 +72,6 @@ def removal_trials(present: BoolArray, bands: Sequence[str], instruments: Sequen
     return Trials(np.concatenate(rows), np.concatenate(masks), tuple(names))
 
 
-def ln_chi2_tail(chi2: FloatArray, dof: FloatArray) -> FloatArray:
-    """ln Q(dof/2, chi2/2), also where Q is smaller than a double can hold.
-
-    Far in the tail Q(a, x) = x^(a-1) e^-x / Gamma(a) (1 + (a-1)/x + (a-1)(a-2)/x^2 + ...), the asymptotic
-    series of DLMF 8.11.2.
-    """
-    a, x = np.asarray(dof, dtype=float) / 2.0, np.maximum(np.asarray(chi2, dtype=float), 0.0) / 2.0
-    a, x = np.broadcast_arrays(a, x)
-    tail = gammaincc(a, x)
-    far = tail < 1e-280
-    result = np.log(np.where(far, 1.0, tail))
-    if np.any(far):
-        b, y = a[far], x[far]
-        term, series = np.ones_like(b), np.ones_like(b)
-        for step in range(1, 12):
-            term = term * (b - step) / y
-            series = series + term
-        result[far] = (b - 1.0) * np.log(y) - y - gammaln(b) + np.log(series)
-    return result
-
-
 def sidak(p1: FloatArray, tried: FloatArray) -> FloatArray:
     """p of the smallest of `tried` independent p values: 1 - (1 - p1)^tried (Sidak 1967, JASA 62, 626).
 
@@ -140,7 +119,7 @@ def find_carriers(
             p=float(sidak(p1, tried[row])),
             pull=_pull(pulls[row], members, float(delta[trial])),
             chi2_without=float(chi2_without[trial]),
-            p_without=float(gammaincc(dof / 2.0, chi2_without[trial] / 2.0)),
+            p_without=float(chi2_tail(chi2_without[trial], dof)),
         )
     return found
 

@@ -1,0 +1,118 @@
+"""Flag meanings against what the catalogues' documentation says of well-known codes."""
+
+from __future__ import annotations
+
+import pytest
+
+from tui.checks.flags import blend_shares, candidate_flags, flag_table, read_flag
+from tui.data.load import bands
+from tui.data.load_flags import flag_rows
+from tui.errors import InputError
+from tui.model import Candidate, Measurement
+
+TABLE = flag_table(flag_rows())
+
+
+def meaning(column, band, text):
+    (reading,) = read_flag(column, band, text, TABLE)
+    return reading
+
+
+# AllWISE Explanatory Supplement II.1.a: cc_flags lower case is a real source that may be contaminated, upper case may
+# be spurious; D spike, P persistence, H halo, O ghost. 2MASS supplement II.2.a: p, c, d, s, b.
+@pytest.mark.parametrize(
+    ("column", "band", "text", "word", "is_suspicion"),
+    [
+        ("cc_flags", "W3", "h", "scattered light", True),
+        ("cc_flags", "W3", "H", "nothing but scattered light", True),
+        ("cc_flags", "W4", "p", "latent", True),
+        ("cc_flags", "W1", "D", "diffraction spike", True),
+        ("cc_flags", "W1", "0", "no artifact", False),
+        ("ph_qual", "W4", "U", "95 %", False),
+        ("ph_qual", "W4", "A", "10 sigma", False),
+        ("ph_qual", "Ks", "B", "7 to 10", False),  # the same letter is 3 to 10 sigma in AllWISE
+        ("ph_qual", "W2", "B", "3 to 10", False),
+        ("ph_qual", "J", "E", "fits the profile poorly", True),
+        ("var_flg", "W1", "3", "constant", False),
+        ("var_flg", "W1", "8", "variable", True),
+        ("var_flg", "W1", "n", "too few", False),
+        ("ext_flg", "W2", "5", "extended", True),
+        ("rd_flg", "J", "3", "saturate", True),
+        ("rd_flg", "H", "2", "usual", False),
+        ("cc_flg", "Ks", "d", "diffraction spike", True),
+        ("gal_contam", "Ks", "2", "extended source", True),
+        ("phot_proc_mode", "Gaia_BP", "2", "bronze", True),
+        ("phot_proc_mode", "Gaia_BP", 0, "gold", False),
+        ("moon_lev", "W4", "7", "half or more", True),
+        ("moon_lev", "W4", "2", "some", False),
+        ("w4sat", "W4", "0.12", "saturated pixels", True),
+        ("w4sat", "W4", "0", "no saturated", False),
+        ("duplicated_source", "Gaia_G", "True", "two sources", True),
+        ("phot_variable_flag", "Gaia_G", "VARIABLE", "variable", True),
+    ],
+)
+def test_meaning(column, band, text, word, is_suspicion):
+    reading = meaning(column, band, text)
+    assert word in reading.meaning
+    assert (reading.severity == "suspicion") is is_suspicion
+    assert reading.source
+
+
+def test_bits_are_said_one_by_one():
+    assert len(read_flag("non_single_star", "Gaia_G", 3, TABLE)) == 2
+    assert len(read_flag("w1flg", "W1", "17", TABLE)) == 2  # neighbour and saturated pixels in the aperture
+    assert [r.cause for r in read_flag("nuv_artifact", "GALEX_NUV", "6", TABLE)] == ["reflection", "reflection"]
+
+
+def test_a_code_nobody_documented_is_shown_and_raises_nothing():
+    reading = meaning("cc_flags", "W1", "x")
+    assert "does not list" in reading.meaning and reading.severity == "informative"
+
+
+@pytest.mark.parametrize("text", ["", " ", "nan", "--", None])
+def test_nothing_is_said_of_a_missing_flag(text):
+    assert read_flag("cc_flags", "W1", text, TABLE) == ()
+
+
+def test_other_columns_say_nothing():
+    assert read_flag("w1mpro", "W1", "8.2", TABLE) == ()
+    assert read_flag("cc_flags", "J", "h", TABLE) == ()
+
+
+def test_candidate_flags_join_measurements_and_facts():
+    candidate = Candidate(
+        "one",
+        (
+            Measurement("W3", 0.1, 0.01, flags={"cc_flags": "h", "ext_flg": "0"}),
+            Measurement("Gaia_BP", 1.0, 0.01),
+            Measurement("J", 1.0, 0.02),
+        ),
+        {"phot_bp_n_obs": 40, "phot_bp_n_blended_transits": 20, "twomass_gal_contam": 1, "ruwe": 1.1},
+    )
+    said = {(r.band, r.column): r for r in candidate_flags(candidate, TABLE)}
+    assert said["W3", "cc_flags"].cause == "scattered light"
+    assert said["Gaia_BP", "bp_blended_share"].text == "0.5"
+    assert said["J", "twomass_gal_contam"].cause == "extended"
+    assert ("W3", "twomass_gal_contam") not in said
+
+
+def test_a_flag_given_twice_is_said_once():
+    candidate = Candidate("one", (Measurement("W1", 1.0, 0.1, flags={"nb": "2"}),), {"wise_nb": 2})
+    assert len(candidate_flags(candidate, TABLE)) == 1
+
+
+def test_blend_shares():
+    assert blend_shares({"phot_rp_n_obs": 50, "phot_rp_n_contaminated_transits": 5}) == {"rp_contaminated_share": 0.1}
+    assert blend_shares({"phot_rp_n_obs": 0, "phot_rp_n_blended_transits": 5}) == {}
+
+
+def test_every_row_is_whole():
+    for row in flag_rows():
+        assert row["meaning"] and row["source"] and row["catalogue"]
+        assert set(row["bands"].split()) <= set(bands())
+        assert row["severity"] == "informative" or row["cause"]
+
+
+def test_a_faulty_table_is_refused():
+    with pytest.raises(InputError, match="severity"):
+        flag_table([{**flag_rows()[0], "severity": "bad"}])
