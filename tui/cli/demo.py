@@ -10,7 +10,7 @@ from pathlib import Path
 import click
 
 
-@click.command("demo", short_help="Open a copy of the sample queue, or say what is in it.")
+@click.command("demo")
 @click.option("--thin", is_flag=True, help="For slow lines.")
 def demo_command(thin: bool) -> int:
     """Open a copy of the sample queue as `visitor`; a text summary when there is no terminal."""

@@ -8,7 +8,7 @@ from tui.cli.arguments import queue_argument
 from tui.model import KINDS
 
 
-@click.command("load", short_help="Create or extend a queue from tables.")
+@click.command("load")
 @queue_argument
 @click.argument("tables", nargs=-1, type=click.Path(), metavar="TABLE...")
 @click.option("--columns", type=click.Path(), metavar="MAP.toml", help="Column map: [columns], [units], [source].")
@@ -41,7 +41,7 @@ def load_command(queue, tables, columns, source, refused, dips, neighbours, spec
     return 1 if done.refused else 0
 
 
-@click.command("assess", short_help="Compute evidence that is lacking or outdated.")
+@click.command("assess")
 @queue_argument
 @click.option("--only", type=click.Choice(KINDS), multiple=True, metavar="CHECK", help="Only this kind of evidence.")
 @click.option("--jobs", type=click.IntRange(1, 256), default=None, metavar="N", help="Processes; default 1.")
@@ -56,7 +56,7 @@ def assess_command(queue: str, only: tuple[str, ...], jobs: int | None) -> int:
     return 0
 
 
-@click.command("join", short_help="Become a reviewer.")
+@click.command("join")
 @queue_argument
 @click.argument("handle")
 def join_command(queue: str, handle: str) -> int:

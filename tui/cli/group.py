@@ -19,22 +19,22 @@ from tui.errors import TuiError
 DONE, FAULTS, WRONG_USE = 0, 1, 2
 INTERRUPTED = 130  # 128 + SIGINT, as shells say it
 
-COMMANDS = {  # name -> module of tui.cli that holds it, in the order of a vetting round
-    "demo": "demo",
-    "load": "filling",
-    "assess": "filling",
-    "join": "filling",
-    "list": "looking",
-    "show": "looking",
-    "rule": "ruling",
-    "probe": "probing",
-    "review": "ruling",
-    "set": "keeping",
-    "tally": "results",
-    "export": "results",
-    "gather": "keeping",
-    "audit": "keeping",
-    "story": "looking",
+COMMANDS = {  # name -> module of tui.cli that holds it, what it does; in the order of a vetting round
+    "demo": ("demo", "Open a copy of the sample queue, or say what is in it."),
+    "load": ("filling", "Create or extend a queue from tables."),
+    "assess": ("filling", "Compute evidence that is lacking or outdated."),
+    "join": ("filling", "Become a reviewer."),
+    "list": ("looking", "The queue as text."),
+    "show": ("looking", "One candidate's evidence."),
+    "rule": ("ruling", "Record a ruling on one check of one candidate."),
+    "probe": ("probing", "A fit with parameters fixed or bands dropped."),
+    "review": ("ruling", "The desk: walk what needs you, in the terminal."),
+    "set": ("keeping", "Settings, with every past value."),
+    "tally": ("results", "Progress, agreement, survivors."),
+    "export": ("results", "Write the vetted list."),
+    "gather": ("keeping", "Take in what colleagues ruled in their copies."),
+    "audit": ("keeping", "Integrity of file, chains and derived states."),
+    "story": ("looking", "What happened to a candidate, in time order."),
 }
 
 
@@ -49,8 +49,13 @@ class PlainGroup(click.Group):
         """Import the module of one command."""
         if cmd_name not in COMMANDS:
             return None
-        module = importlib.import_module(f"tui.cli.{COMMANDS[cmd_name]}")
+        module = importlib.import_module(f"tui.cli.{COMMANDS[cmd_name][0]}")
         return getattr(module, f"{cmd_name}_command")
+
+    def format_commands(self, ctx: click.Context, formatter: click.HelpFormatter) -> None:
+        """List the commands from the table above, so that help imports none of them."""
+        with formatter.section("Commands"):
+            formatter.write_dl([(name, words) for name, (_, words) in COMMANDS.items()])
 
     def main(self, args: Sequence[str] | None = None, prog_name: str | None = None, **extra: Any) -> Any:
         """Run a command and leave with its exit status."""

@@ -7,7 +7,7 @@ import click
 from tui.cli.arguments import as_option, handle_or_configured, pairs, queue_argument
 
 
-@click.command("set", short_help="Settings, with every past value.")
+@click.command("set")
 @queue_argument
 @click.argument("name", required=False)
 @click.argument("value", required=False)
@@ -21,14 +21,13 @@ def set_command(queue: str, name: str | None, value: str | None, handle: str | N
         table(("setting", "value", "meaning"), setting.overview(queue))
         return 0
     if value is not None:
-        setting.write(queue, name, value, handle_or_configured(handle))
-        line(f"{name} is now {value}. Evidence that depends on it is outdated until: plainlight assess {queue}")
+        line(setting.write(queue, name, value, handle_or_configured(handle)))
         return 0
     table(("set (UTC)", "by", "value"), setting.history(queue, name))
     return 0
 
 
-@click.command("gather", short_help="Take in what colleagues ruled in their copies.")
+@click.command("gather")
 @queue_argument
 @click.argument("others", nargs=-1, required=True, type=click.Path(), metavar="OTHER...")
 @click.option("--rename", multiple=True, callback=pairs, metavar="OLD=NEW", help="Give a reviewer of OTHER another handle.")
@@ -42,7 +41,7 @@ def gather_command(queue: str, others: tuple[str, ...], rename: dict[str, str]) 
     return 0
 
 
-@click.command("audit", short_help="Integrity of file, chains and derived states.")
+@click.command("audit")
 @queue_argument
 @click.option("--receipt", metavar="RECEIPT", help="Check a receipt, or with a HANDLE print that reviewer's.")
 @click.option("--repair", is_flag=True, help="Rebuild the derived tables from the log.")

@@ -31,7 +31,7 @@ PAGE = 1000  # rows fetched at a time
 LIST_HEADINGS = ("name", "oddness", "odd_band", "odd_pull", *CHECKS, "outcome", "ruled", "to_rule")
 
 
-@click.command("list", short_help="The queue as text.")
+@click.command("list")
 @queue_argument
 @as_option
 @unresolved_option
@@ -96,7 +96,7 @@ def print_rows(rows: Iterator[QueueRow]) -> None:
         table(LIST_HEADINGS, page, numbers=(1, 3, 10, 11))
 
 
-@click.command("show", short_help="One candidate's evidence.")
+@click.command("show")
 @queue_argument
 @name_argument
 @as_option
@@ -119,7 +119,7 @@ def show_command(queue: str, name: str, handle: str | None, as_json: bool) -> in
     return 0
 
 
-@click.command("story", short_help="What happened to a candidate, in time order.")
+@click.command("story")
 @queue_argument
 @name_argument
 @as_option
@@ -135,5 +135,6 @@ def story_command(queue: str, name: str, handle: str | None) -> int:
     if not lines:
         line("Nothing has happened to it yet.")
     else:
-        table(("when (UTC)", "who", "what"), [(entry.utc, entry.who, entry.text) for entry in lines])
+        rows = [(one.utc[:19] + "Z", one.who, one.what, one.check, one.text) for one in lines]
+        table(("when (UTC)", "who", "what", "check", ""), rows)
     return 0

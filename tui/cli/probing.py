@@ -8,7 +8,7 @@ from tui.cli.arguments import check_argument, name_argument, pairs, queue_argume
 from tui.errors import InputError
 
 
-@click.command("probe", short_help="A fit with parameters fixed or bands dropped.")
+@click.command("probe")
 @queue_argument
 @name_argument
 @check_argument

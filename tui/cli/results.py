@@ -7,7 +7,7 @@ import click
 from tui.cli.arguments import controls_option, json_option, outcome_option, queue_argument, unresolved_option
 
 
-@click.command("tally", short_help="Progress, agreement, survivors.")
+@click.command("tally")
 @queue_argument
 @controls_option
 @json_option
@@ -26,7 +26,7 @@ def tally_command(queue: str, controls: str | None, as_json: bool) -> int:
     return 0
 
 
-@click.command("export", short_help="Write the vetted list.")
+@click.command("export")
 @queue_argument
 @click.argument("out", type=click.Path())
 @outcome_option

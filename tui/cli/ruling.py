@@ -17,7 +17,7 @@ NO_DESK = (
 )
 
 
-@click.command("rule", short_help="Record a ruling on one check of one candidate.")
+@click.command("rule")
 @queue_argument
 @name_argument
 @check_argument
@@ -38,7 +38,7 @@ def rule_command(queue: str, name: str, check: str, ruling: str, handle: str | N
     return 0
 
 
-@click.command("review", short_help="The desk: walk what needs you, in the terminal.")
+@click.command("review")
 @queue_argument
 @as_option
 @click.option("--thin", is_flag=True, help="For slow lines: no mouse tracking, no animation, fewer bytes.")

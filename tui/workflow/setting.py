@@ -24,6 +24,8 @@ MEANINGS = {
     "n_searched": "stars searched to make this queue; empty: not known",
 }
 
+RULES = ("quorum", "agree_share", "walk_all")  # of consensus: no evidence rests on them
+
 
 def shown(value: object) -> str:
     """A setting's value as it is typed.
@@ -52,13 +54,22 @@ def overview_rows(settings: Settings) -> Iterator[tuple[str, str, str]]:
         yield f"common.{instrument}", shown(common), "common error of the instrument, fraction"
 
 
-def write(path: str, name: str, value: str, handle: str | None) -> None:
-    """Set a value. SettingError where there is no such setting or the value is out of its range."""
+def write(path: str, name: str, value: str, handle: str | None) -> str:
+    """Set a value, as `handle` where one is given; the sentence that says so.
+
+    Raises:
+        SettingError: no such setting, or a value out of its range.
+        HandleError: nobody joined under `handle`.
+    """
     from tui.workflow.session import reviewer_named
 
     with closing(open_queue(path)) as connection:
         by = reviewer_named(connection, handle).id if handle else ""
-        write_setting(connection, name, value, utc_now(), by)
+        line = write_setting(connection, name, value, utc_now(), by)
+    text = f"{name} is now {line.value}."
+    if name in RULES:
+        return f"{text} States and outcomes follow it."
+    return text if name == "n_searched" else f"{text} Evidence that rests on it is outdated until: plainlight assess {path}"
 
 
 def history(path: str, name: str) -> list[tuple[str, str, str]]:
