@@ -118,3 +118,12 @@ def test_a_reviewer_apart_is_left_out():
     responses[3, 5:] = MISSING
     fit = dawid_skene(counted(responses, 3), 2)
     assert fit.identified.tolist() == [0, 1, 2] and np.all(np.isnan(fit.rates[3]))
+
+
+def test_a_weight_stands_for_so_many_candidates():
+    responses, _ = simulate(np.random.default_rng(8), RATES, 500)
+    kinds, repeats = np.unique(responses, axis=1, return_counts=True)
+    plain = dawid_skene(counted(responses, 3), 2)
+    weighted = dawid_skene(counted(kinds, 3), 2, weights=repeats.astype(float))
+    assert weighted.rates == pytest.approx(plain.rates, abs=1e-9)
+    assert weighted.log_likelihood == pytest.approx(plain.log_likelihood, abs=1e-6)

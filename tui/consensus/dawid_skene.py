@@ -45,6 +45,7 @@ def dawid_skene(
     classes: int,
     known: IntArray | None = None,
     *,
+    weights: FloatArray | None = None,
     tolerance: float = 1e-9,
     max_iterations: int = 5000,
 ) -> ErrorRates:
@@ -55,18 +56,20 @@ def dawid_skene(
             responses name the classes in their order, any further one (`unclear`) names none.
         classes: how many classes there are.
         known: shape (N,), the class of each control, MISSING elsewhere.
+        weights: shape (N,), how many candidates each row of `counts` stands for; one each by default.
     Raises:
         InputError: no three reviewers share MIN_COMMON candidates and no reviewer ruled on controls of every class:
             with two reviewers many sets of rates fit equally well.
     """
     known = np.full(counts.shape[1], MISSING) if known is None else known
-    identified = _identified(counts, classes, known)
+    weights = np.ones(counts.shape[1]) if weights is None else weights
+    identified = _identified(counts, classes, known, weights)
     if not len(identified):
         raise InputError(
             f"Error rates need three reviewers who ruled on the same {MIN_COMMON} candidates, "
             "or controls of every class."
         )
-    patterns, inverse, repeats = _patterns(counts[identified], known)
+    patterns, inverse, repeats = _patterns(counts[identified], known, weights)
     fit = _Fit(patterns, repeats, classes, *_start(patterns, classes))
     is_converged = fit.run(tolerance, max_iterations)
     rates = np.full((counts.shape[0], classes, counts.shape[2]), np.nan)
@@ -82,6 +85,7 @@ def rate_intervals(
     generator: Generator,
     known: IntArray | None = None,
     *,
+    weights: FloatArray | None = None,
     draws: int = 200,
     confidence: float = 0.95,
 ) -> tuple[FloatArray, FloatArray]:
@@ -90,15 +94,15 @@ def rate_intervals(
     A rate fitted as 0 or 1 has no width here: so many candidates cannot tell it from a small one.
     """
     known = np.full(counts.shape[1], MISSING) if known is None else known
-    fitted = dawid_skene(counts, classes, known)
-    chosen = counts[fitted.identified]
-    patterns, _, repeats = _patterns(chosen, known)
+    weights = np.ones(counts.shape[1]) if weights is None else weights
+    fitted = dawid_skene(counts, classes, known, weights=weights)
+    patterns, _, repeats = _patterns(counts[fitted.identified], known, weights)
     total = int(repeats.sum())
     drawn = np.full((draws, *fitted.rates.shape), np.nan)
     start = np.nan_to_num(fitted.rates[fitted.identified], nan=1.0 / counts.shape[2])
     for draw in range(draws):
-        weights = generator.multinomial(total, repeats / total).astype(float)
-        fit = _Fit(patterns, weights, classes, fitted.prevalence, 0.99 * start + 0.01 / counts.shape[2])
+        drawn_weights = generator.multinomial(total, repeats / repeats.sum()).astype(float)
+        fit = _Fit(patterns, drawn_weights, classes, fitted.prevalence, 0.99 * start + 0.01 / counts.shape[2])
         fit.run(1e-6, 500)
         drawn[draw][fitted.identified] = fit.rates
     return _quantiles(drawn, confidence)
@@ -114,12 +118,12 @@ def _quantiles(drawn: FloatArray, confidence: float) -> tuple[FloatArray, FloatA
     return low, high
 
 
-def _identified(counts: FloatArray, classes: int, known: IntArray) -> IntArray:
+def _identified(counts: FloatArray, classes: int, known: IntArray, weights: FloatArray) -> IntArray:
     """Reviewers who share enough candidates with two others, or ruled on controls of every class."""
     answered = (counts.sum(axis=2) > 0).astype(float)
     found = []
     for one in range(len(answered)):
-        together = (answered * answered[one]) @ answered.T  # candidates that `one` and both others ruled on
+        together = (answered * answered[one] * weights) @ answered.T  # candidates that `one` and both others ruled on
         together[one, :] = together[:, one] = 0
         np.fill_diagonal(together, 0)
         controls = set(known[(answered[one] > 0) & (known != MISSING)].tolist())
@@ -136,12 +140,16 @@ class _Patterns:
     known: IntArray  # (P,)
 
 
-def _patterns(counts: FloatArray, known: IntArray) -> tuple[_Patterns, IntArray, FloatArray]:
+def _patterns(
+    counts: FloatArray, known: IntArray, weights: FloatArray
+) -> tuple[_Patterns, IntArray, FloatArray]:
     reviewers, candidates, responses = counts.shape
     flat = np.column_stack([counts.transpose(1, 0, 2).reshape(candidates, -1), known])
-    rows, inverse, repeats = np.unique(flat, axis=0, return_inverse=True, return_counts=True)
+    rows, inverse = np.unique(flat, axis=0, return_inverse=True)
+    inverse = inverse.reshape(-1)
+    repeats = np.bincount(inverse, weights=weights, minlength=len(rows))
     unfolded = rows[:, :-1].reshape(-1, reviewers, responses).transpose(1, 0, 2)
-    return _Patterns(unfolded, rows[:, -1].astype(np.int64)), inverse.reshape(-1), repeats.astype(float)
+    return _Patterns(unfolded, rows[:, -1].astype(np.int64)), inverse, repeats
 
 
 def _start(patterns: _Patterns, classes: int) -> tuple[None, FloatArray]:
