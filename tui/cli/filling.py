@@ -37,7 +37,7 @@ def load_command(queue, tables, columns, source, refused, dips, neighbours, spec
             remark(f"{len(done.refused)} refused: see {refused}.")
     else:
         for row in done.refused:
-            remark(row.sentence())
+            remark(row)
     return 1 if done.refused else 0
 
 

@@ -2,19 +2,18 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from contextlib import closing
 from dataclasses import dataclass, field, fields
-from functools import cache
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
-from tui.model import Band, Candidate
 from tui.store.candidates import save_candidates
 from tui.store.connect import open_queue
 from tui.store.records import LoadCounts, LoadRecord
 from tui.workflow.basis import keep_bands, read_basis
 from tui.workflow.clock import utc_now
 from tui.workflow.safe_text import safe
+from tui.workflow.vocabulary import packaged_vocabulary
 
 if TYPE_CHECKING:
     import sqlite3
@@ -43,16 +42,6 @@ class Sidecars:
     cutouts: str | None = None  # a folder
 
 
-@dataclass(frozen=True, slots=True)
-class Vocabulary:
-    """The names that readers may meet."""
-
-    bands: Mapping[str, Band]
-    aliases: Mapping[str, str]
-    facts: Mapping[str, Any]
-    archives: Sequence[Any]
-
-
 @dataclass(slots=True)
 class Loaded:
     """What one load did."""
@@ -74,19 +63,6 @@ class Loaded:
         if not new:
             return f"{self.path}: nothing new" + (f"; {known}." if known else ".")
         return f"{self.path}: {', '.join(new)}." + (f" {known.capitalize()}." if known else "")
-
-
-@cache
-def packaged_vocabulary() -> Vocabulary:
-    """Bands, aliases, facts and archives that the program knows."""
-    from importlib.resources import files
-
-    from tui.data import load as tables
-    from tui.readers.archives import parse_archives
-
-    folder = files("tui.data.archives")
-    texts = {path.name.removesuffix(".csv"): path.read_text("utf-8") for path in folder.iterdir() if path.name.endswith(".csv")}
-    return Vocabulary(tables.bands(), tables.band_aliases(), tables.facts_table(), parse_archives(texts))
 
 
 def load(
@@ -116,7 +92,7 @@ def load(
     with closing(open_queue(path, create=bool(tables))) as connection:
         for table in tables:
             load_table(connection, table, columns, source, done, report)
-        if sidecars:
+        if sidecars and sidecars != Sidecars():
             from tui.workflow.side_tables import load_sidecars
 
             load_sidecars(connection, sidecars, source, done)
@@ -186,8 +162,3 @@ def write_refused(path: str, refused: Iterable[Refused]) -> None:
     """List what was refused in a file, one line each."""
     with open(path, "w", encoding="utf-8", newline="\n") as stream:
         stream.writelines(f"{safe(one)}\n" for one in refused)
-
-
-def only_name(name: str, **parts: Any) -> Candidate:
-    """A candidate that carries nothing but some side data."""
-    return Candidate(name, **parts)

@@ -1,0 +1,78 @@
+"""Tables into a queue: all that can be taken, twice the same adds nothing, refusals listed, bands carried."""
+
+from __future__ import annotations
+
+from contextlib import closing
+
+import pytest
+
+from tui.errors import TableError
+from tui.store.candidates import get_candidate
+from tui.store.connect import open_queue
+from tui.workflow.basis import band_from, band_text, read_basis
+from tui.workflow.loading import load, write_refused
+
+TABLE = """name,ra,dec,J_mag,J_err,W3_mag,W3_err,W3_limit,hue
+A 1,10.5,-3.25,6.9,0.02,6.45,0.02,false,red
+B 2,11.5,-4.0,7.9,0.02,7.0,0.02,true,red
+C,11.5,-4.0,nope,0.02,7.0,0.02,false,red
+,1,1,7.9,0.02,7.0,0.02,false,red
+"""
+
+
+@pytest.fixture
+def table(tmp_path):
+    path = tmp_path / "survey.csv"
+    path.write_text(TABLE)
+    return str(path)
+
+
+def test_what_can_be_taken_is_and_the_rest_is_listed(tmp_path, table):
+    path = str(tmp_path / "q.db")
+    done = load(path, [table])
+    assert (done.counts["candidates"], done.counts["measurements"]) == (3, 5)
+    assert {(one.row, one.column) for one in done.refused} == {(3, "J_mag"), (4, "name")}
+    assert any("hue" in text for text in done.remarks)
+    with closing(open_queue(path, write=False)) as connection:
+        found = get_candidate(connection, "B 2")
+    assert found.facts["dec"] == -4.0
+    assert [(one.band, one.limit, one.source) for one in found.measurements] == [("J", False, "survey"), ("W3", True, "survey")]
+
+
+def test_the_same_table_again_adds_nothing(tmp_path, table):
+    path = str(tmp_path / "q.db")
+    load(path, [table])
+    again = load(path, [table])
+    assert again.sentence().endswith("nothing new; 5 measurements were known.")
+
+
+def test_a_wrong_path_leaves_no_queue_behind(tmp_path, table):
+    with pytest.raises(FileNotFoundError):
+        load(str(tmp_path / "q.db"), [table, str(tmp_path / "none.csv")])
+    assert not (tmp_path / "q.db").exists()
+
+
+def test_a_file_that_is_no_table_is_refused_by_name(tmp_path):
+    path = tmp_path / "x.csv"
+    path.write_bytes(b"PK\x03\x04 not a table")
+    with pytest.raises(TableError, match="x.csv"):
+        load(str(tmp_path / "q.db"), [str(path)])
+
+
+def test_refusals_can_go_to_a_file(tmp_path, table):
+    done = load(str(tmp_path / "q.db"), [table])
+    write_refused(str(tmp_path / "refused.txt"), done.refused)
+    assert (tmp_path / "refused.txt").read_text().count("survey.csv, row ") == 2
+
+
+def test_a_band_of_ones_own_travels_in_the_queue(tmp_path):
+    (tmp_path / "t.csv").write_text("name,myband\nA,3.5\nB,2.5\n")
+    (tmp_path / "map.toml").write_text(
+        '[columns]\nHcont_flux = "myband"\n[units]\nHcont_flux = "mJy"\n[bands.Hcont]\npivot_um = 1.57\n'
+    )
+    path = str(tmp_path / "q.db")
+    load(path, [str(tmp_path / "t.csv")], columns=str(tmp_path / "map.toml"), source="mine")
+    with closing(open_queue(path, write=False)) as connection:
+        band = read_basis(connection).user_bands["Hcont"]
+        assert (band.pivot_um, get_candidate(connection, "A").measurements[0].flux_jy) == (1.57, 0.0035)
+    assert band_text(band_from(band_text(band))) == band_text(band)
