@@ -7,26 +7,24 @@ any state of the solve, finished or not, into a chi-square that no mixture can u
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 from scipy.special import gammaincc, ndtr
 
 from tui.model import FloatArray
-from tui.physics.generators import BLOCK, Generators
+from tui.physics.generators import Generators, Grid
 from tui.physics.nnls_batch import nnls_batch
+from tui.physics.pricing import IntArray, price, single_sources
 
-IntArray = NDArray[np.int64]
 BoolArray = NDArray[np.bool_]
 
-GAP = 0.1  # delta w.F at which a solve is finished (chi-square), or
-GAP_SHARE = 1e-4  # this share of chi-square, beyond the reach of float32 prices
-COARSE_ROUNDS, FINE_ROUNDS = 12, 8
-COARSE_BLOCK = 128  # columns of the coarse grid that send one best column a round
+GAP = 0.1  # delta w.F, in chi-square, at which a solve is finished, or
+GAP_SHARE = 0.003  # this share of chi-square, where that is larger: far beyond any doubt
+COARSE_ROUNDS, MIDDLE_ROUNDS, FINE_ROUNDS = 12, 6, 8
 ENTERING = 12  # columns that join a pool a round
 EMPTY = -1  # pool entry without a column; the unit column of band b, slack of a limit, is -2 - b
-SMALL_PRODUCT = 9.5e5  # multiplications in one product; OpenBLAS packs above 1e6, at twice the cost
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -54,9 +52,10 @@ class Bound:
     at_most: BoolArray  # a mixture was found that cannot be refused, so the solve was left there
     gap: FloatArray  # delta w.F: by about so much could a better mixture lower `feasible`; inf where not priced finely
     weights: FloatArray  # (K, B) v of the certificate, 1/Jy: v.g <= 0 for every natural source; zero where `at_most`
-    model: FloatArray  # (K, B) Jy, of the best mixture found
+    model: FloatArray  # (K, B) Jy, of the best mixture found, slack left out
     index: IntArray  # (K, m) its columns, EMPTY where none
     scale: FloatArray  # (K, m) their scales, >= 0
+    covariance: FloatArray  # (K, B, B) Jy^2, with which chi-square was taken
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -139,6 +138,9 @@ class _State:
         return _State(*(getattr(self, name)[rows] for name in self.__slots__))
 
 
+_Parts = tuple[IntArray, _State]  # rows of the batch and where they stand
+
+
 def _columns(generators: Generators, index: IntArray) -> FloatArray:
     """Columns of a pool, shape (K, B, m); zero where empty, unit where slack."""
     real = index >= 0
@@ -171,56 +173,6 @@ def _grow(state: _State, ratio: FloatArray, best: IntArray) -> tuple[IntArray, F
     return np.hstack([kept, entering]), np.hstack([scale, np.zeros(entering.shape)])
 
 
-def price(blocks: NDArray[np.float32], gradient: FloatArray, weight: FloatArray) -> tuple[FloatArray, IntArray]:
-    """Per candidate and block the largest r.g / w.g and, where that is positive, the column that has it.
-
-    Both of shape (K, blocks). One float32 product gives numerators and denominators of a few candidates at a time,
-    few enough that the product needs no packing and its result stays in cache.
-    """
-    size = np.maximum(weight.max(axis=1, keepdims=True), 1e-300)
-    numerator, denominator = (gradient / size).astype(np.float32), (weight / size).astype(np.float32)
-    value = np.empty((len(gradient), len(blocks)), dtype=np.float32)
-    place = np.zeros((len(gradient), len(blocks)), dtype=np.int64)
-    rows = max(int(SMALL_PRODUCT / (2 * blocks.shape[1] * blocks.shape[2])), 1)
-    for first in range(0, len(gradient), rows):
-        group = slice(first, first + rows)
-        stacked = np.vstack([numerator[group], denominator[group]])
-        count = len(stacked) // 2
-        product = np.empty((2 * count, blocks.shape[2]), dtype=np.float32)
-        for number, block in enumerate(blocks):
-            np.matmul(stacked, block, out=product)
-            ratio = np.divide(product[:count], product[count:], out=product[:count])
-            highest = value[group, number] = ratio.max(axis=1)
-            helps = np.flatnonzero(highest > 0)
-            if len(helps):
-                place[first + helps, number] = ratio[helps].argmax(axis=1)
-    return value.astype(np.float64), place
-
-
-def single_sources(
-    blocks: NDArray[np.float32], gradient: FloatArray, weight: FloatArray
-) -> tuple[FloatArray, IntArray]:
-    """As `price`, of the fall of chi-square by a column alone, (r.g)^2 / (w g)^2 (errors taken as independent)."""
-    size = np.maximum(weight.max(axis=1, keepdims=True), 1e-300)
-    numerator, denominator = (gradient / size).astype(np.float32), ((weight / size) ** 2).astype(np.float32)
-    value = np.empty((len(gradient), len(blocks)))
-    place = np.empty((len(gradient), len(blocks)), dtype=np.int64)
-    for number, block in enumerate(blocks):
-        fall = np.maximum(numerator @ block, 0) ** 2 / (denominator @ (block * block))
-        place[:, number] = fall.argmax(axis=1)
-        value[:, number] = fall[np.arange(len(fall)), place[:, number]]
-    return value, place
-
-
-def _coarse_blocks(generators: Generators) -> tuple[NDArray[np.float32], IntArray]:
-    """The coarse grid as blocks of its own, shape (blocks, B, COARSE_BLOCK), and their columns' indices."""
-    count = -(-generators.coarse.size // COARSE_BLOCK) * COARSE_BLOCK
-    index = np.full(count, generators.coarse[-1])
-    index[: generators.coarse.size] = generators.coarse
-    flux = generators.flux[index // BLOCK, :, index % BLOCK]
-    return np.ascontiguousarray(flux.reshape(-1, COARSE_BLOCK, flux.shape[1]).transpose(0, 2, 1)), index
-
-
 def _delta(white: _White, state: _State, ratio: FloatArray) -> FloatArray:
     """max r.g / w.g over all columns priced and all slack, not less than float32 products may have lost."""
     pull = np.abs(state.gradient) / np.where(white.weight > 0, white.weight, 1.0)
@@ -246,25 +198,24 @@ class _Solver:
         """The mixture found is already good enough."""
         return p_bound(chi2, self.white.points[rows], self.signal2[rows]) >= self.enough
 
-    def start(self, coarse: NDArray[np.float32], index: IntArray) -> _State:
+    def start(self) -> _State:
         """The best single sources, one from each part of the coarse grid, and all slack."""
-        white = self.white
+        white, grid = self.white, self.generators.coarse
         gradient = np.einsum("kab,ka->kb", white.whitener, white.target)
-        ratio, place = single_sources(coarse, gradient, white.weight)
+        ratio, place = single_sources(grid.flux, gradient, white.weight)
         width = int(white.limit.sum(axis=1).max(initial=0))
         order = np.argsort(~white.limit, axis=1, kind="stable")[:, :width]
         slack = np.where(np.take_along_axis(white.limit, order, axis=1), -2 - order, EMPTY)
         blank = _State(slack, np.zeros(slack.shape), white.flux * 0, gradient, self.signal2)
-        pool, scale = _grow(blank, ratio, index[np.arange(len(coarse)) * COARSE_BLOCK + place])
+        pool, scale = _grow(blank, ratio, grid.index[_flat(grid.flux, place)])
         return _solve_pool(self.generators, white, pool, scale)
 
-    def rounds(
-        self, state: _State, rows: IntArray, blocks: NDArray[np.float32], index: IntArray | None
-    ) -> list[tuple[IntArray, _State]]:
-        """Price and re-solve until each candidate is natural, finished, or out of rounds; in the order they end."""
+    def rounds(self, parts: _Parts, grid: Grid | None, limit: int) -> _Parts:
+        """Price and re-solve until each candidate is natural, finished, or out of rounds; None: the fine grid."""
+        rows, state = parts
         ended = []
-        fine = index is None
-        for turn in range(FINE_ROUNDS if fine else COARSE_ROUNDS):
+        blocks = self.generators.flux if grid is None else grid.flux
+        for turn in range(limit):
             stop = self.natural(rows, state.chi2)
             ended.append((rows[stop], state.take(np.flatnonzero(stop))))
             rows, state = rows[~stop], state.take(np.flatnonzero(~stop))
@@ -274,18 +225,17 @@ class _Solver:
             ratio, place = price(blocks, state.gradient, white.weight)
             delta = _delta(white, state, ratio)
             gap = delta * self.reach[rows]
-            if fine:
+            if grid is None:
                 self.certify(rows, state, delta, gap)
             stop = gap < np.maximum(GAP, GAP_SHARE * state.chi2)
-            stop |= turn == (FINE_ROUNDS if fine else COARSE_ROUNDS) - 1
+            stop |= turn == limit - 1
             ended.append((rows[stop], state.take(np.flatnonzero(stop))))
-            width = BLOCK if fine else COARSE_BLOCK
-            best = np.arange(len(blocks)) * width + place
             go = np.flatnonzero(~stop)
+            best = _flat(blocks, place[go]) if grid is None else grid.index[_flat(grid.flux, place[go])]
             rows = rows[go]
-            pool, scale = _grow(state.take(go), ratio[go], (best if fine else index[best])[go])
+            pool, scale = _grow(state.take(go), ratio[go], best)
             state = _solve_pool(self.generators, white.take(go), pool, scale)
-        return [(which, one) for which, one in ended if len(which)]
+        return _merged(ended)
 
     def certify(self, rows: IntArray, state: _State, delta: FloatArray, gap: FloatArray) -> None:
         """Keep the best proof so far."""
@@ -298,43 +248,76 @@ class _Solver:
         self.weights[rows[better]] = v[better]
         self.gap[rows] = gap
 
-    def run(self) -> Bound:
-        """Coarse grid, then the fine grid for those still not natural."""
-        coarse, index = _coarse_blocks(self.generators)
+    def run(self, pool: tuple[IntArray, FloatArray] | None, depth: str) -> Bound:
+        """Coarse grid first unless there is a pool, then the finer grids for those still not natural."""
         rows = np.arange(len(self.reach))
-        ended = self.rounds(self.start(coarse, index), rows, coarse, index)
-        parts = []
-        for which, state in ended:
-            easy = self.natural(which, state.chi2)
-            parts.append((which[easy], state.take(np.flatnonzero(easy))))
-            hard = np.flatnonzero(~easy)
-            if len(hard):
-                parts += self.rounds(state.take(hard), which[hard], self.generators.flux, None)
-        return self.bound(parts)
+        parts = rows, _solve_pool(self.generators, self.white, *pool) if pool else self.start()
+        if pool is None or depth == "coarse":
+            parts = self.rounds(parts, self.generators.coarse, COARSE_ROUNDS)
+        if depth in ("middle", "fine"):
+            parts = self.rounds(parts, self.generators.middle, MIDDLE_ROUNDS)
+        if depth == "fine":
+            parts = self.rounds(parts, None, FINE_ROUNDS)
+        return self.bound(*parts)
 
-    def bound(self, parts: list[tuple[IntArray, _State]]) -> Bound:
-        """The parts put back in order."""
-        count, size = self.white.flux.shape
-        width = max((state.index.shape[1] for _, state in parts), default=1)
-        model, chi2 = np.zeros((count, size)), np.zeros(count)
-        index, scale = np.full((count, width), EMPTY, dtype=np.int64), np.zeros((count, width))
-        for rows, state in parts:
-            model[rows], chi2[rows] = state.model, state.chi2
-            index[rows[:, None], np.arange(state.index.shape[1])] = state.index
-            scale[rows[:, None], np.arange(state.index.shape[1])] = state.scale
-        easy = self.natural(np.arange(count), chi2)
-        shown = np.where(easy, chi2, self.certified)
-        p = p_bound(shown, self.white.points, self.signal2)
-        weights = np.where(easy[:, None], 0.0, self.weights)
-        return Bound(shown, chi2, self.white.points, p, easy, self.gap, weights, model, index, scale)
+    def bound(self, rows: IntArray, state: _State) -> Bound:
+        """The candidates put back in order."""
+        order = np.argsort(rows)
+        state = state.take(order)
+        row, place = np.nonzero((state.index <= -2) & (state.scale > 0))
+        state.model[row, -2 - state.index[row, place]] -= state.scale[row, place]
+        easy = self.natural(np.arange(len(rows)), state.chi2)
+        chi2 = np.where(easy, state.chi2, self.certified)
+        return Bound(
+            chi2=chi2,
+            feasible=state.chi2,
+            points=self.white.points,
+            p=p_bound(chi2, self.white.points, self.signal2),
+            at_most=easy,
+            gap=self.gap,
+            weights=np.where(easy[:, None], 0.0, self.weights),
+            model=state.model,
+            index=state.index,
+            scale=state.scale,
+            covariance=self.fluxes.covariance,
+        )
 
 
-def mixture_bound(generators: Generators, fluxes: Fluxes, enough: float = 0.1) -> Bound:
+def _flat(blocks: NDArray[np.float32], place: IntArray) -> IntArray:
+    """Places in blocks, shape (K, blocks), as places in the list of all columns."""
+    return np.arange(blocks.shape[0]) * blocks.shape[2] + place
+
+
+def _merged(parts: list[_Parts]) -> _Parts:
+    """The parts as one, pools filled up with empty entries, so that they are priced together."""
+    width = max(state.index.shape[1] for _, state in parts)
+
+    def wide(array: NDArray, fill: float) -> NDArray:
+        return np.pad(array, ((0, 0), (0, width - array.shape[1])), constant_values=fill)
+
+    state = _State(
+        np.concatenate([wide(one.index, EMPTY) for _, one in parts]),
+        np.concatenate([wide(one.scale, 0.0) for _, one in parts]),
+        *(np.concatenate([getattr(one, name) for _, one in parts]) for name in ("model", "gradient", "chi2")),
+    )
+    return np.concatenate([rows for rows, _ in parts]), state
+
+
+def mixture_bound(
+    generators: Generators,
+    fluxes: Fluxes,
+    enough: float = 0.1,
+    pool: tuple[IntArray, FloatArray] | None = None,
+    depth: str = "fine",
+) -> Bound:
     """Bound the least chi-square of any natural mixture, for each candidate.
 
     Args:
         generators: columns on the same B bands.
         fluxes: K candidates.
         enough: a mixture whose p is at least this is not improved further.
+        pool: columns (K, m) and scales (K, m) to begin from, of an earlier `Bound`.
+        depth: "coarse" or "middle": that grid only, which finds a mixture but proves nothing (`chi2` is then 0 where
+            not `at_most`).
     """
-    return _Solver(generators, fluxes, enough).run()
+    return _Solver(generators, fluxes, enough).run(pool, depth)

@@ -1,14 +1,14 @@
 """The natural thermal sources of which the mixture bound makes its mixtures, seen through bands.
 
 A family is a list of sources times a list of foreground screens (A_V, R_V); each pair is one column, the band
-fluxes of that source behind that screen, at any scale. The fine grid has about four times the nodes of the
-coarse one along each axis and holds it, so what is solved on the coarse grid is certified on the fine one.
+fluxes of that source behind that screen, at any scale. Every second node of the fine grid's axes makes the middle
+grid, every fourth the coarse one, so what is solved on the coarse grid is certified on one four times as fine.
 """
 
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -19,6 +19,7 @@ from tui.physics.extinction import R_V_RANGE, extinction_curve
 from tui.physics.photometry import Quadrature
 from tui.physics.planck import ln_planck_jy
 
+COARSE_BLOCK, MIDDLE_BLOCK = 128, 512  # columns of those grids that send one best column a round
 BLOCK = 2048  # columns a block: a block, its right side and its product stay in the processor's cache
 NIL = 1e-25  # a column's flux in a band, over its largest, that counts as nothing (float32 holds 1e-38)
 AV_MAX = 40.0  # mag; behind more, a star's light through any band to 5 micron is that of a hotter or redder source
@@ -40,13 +41,27 @@ class Family:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
+class Grid:
+    """Some of the columns, in blocks."""
+
+    flux: NDArray[np.float32]  # shape (blocks, B, width)
+    index: NDArray[np.int64]  # shape (blocks * width,): where they are in the fine grid
+
+    def through(self, rows: NDArray[np.intp]) -> Grid:
+        """The same columns seen in some of the bands only."""
+        return Grid(np.take(self.flux, rows, axis=1), self.index)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
 class Generators:
     """Columns of the natural cone on one set of bands."""
 
     flux: NDArray[np.float32]  # shape (blocks, B, BLOCK): each column's largest band is 1
-    coarse: NDArray[np.int64]  # shape (M,), columns of the coarse grid
+    coarse: Grid
+    middle: Grid
     families: tuple[Family, ...]
     covered: NDArray[np.bool_]  # shape (B,): bands for which the photosphere source has a flux
+    star_k: NDArray[np.float32]  # shape (columns,): temperature of a photosphere or a Planck source as hot; else 0
 
     def column(self, index: NDArray[np.int64]) -> FloatArray:
         """Columns by index (any shape), bands on the last axis, float64."""
@@ -55,7 +70,13 @@ class Generators:
     def through(self, rows: Sequence[int] | NDArray[np.intp]) -> Generators:
         """The same columns seen in some of the bands only."""
         rows = np.asarray(rows, dtype=np.intp)
-        return Generators(np.take(self.flux, rows, axis=1), self.coarse, self.families, self.covered[rows])
+        return replace(
+            self,
+            flux=np.take(self.flux, rows, axis=1),
+            coarse=self.coarse.through(rows),
+            middle=self.middle.through(rows),
+            covered=self.covered[rows],
+        )
 
     def describe(self, index: int) -> dict[str, float | str]:
         """What a column is: its family, the parameters of its source, A_V and R_V."""
@@ -77,8 +98,14 @@ def refined(low: float, high: float, coarse: int, *, log: bool = True) -> FloatA
     return np.clip(space(low, high, 4 * coarse + 1), low, high)
 
 
-def screen_grid(law: str, coarse_av: int, coarse_rv: int) -> tuple[FloatArray, NDArray[np.bool_]]:
-    """Screens (S, 2) of A_V and R_V and which of them are coarse; no screen first.
+def stride(count: int, first: int = 0) -> NDArray[np.int64]:
+    """How coarse the nodes of an axis are: 4 on the coarse axis, 2 on the middle one, else 1."""
+    place = np.arange(first, first + count)
+    return np.where(place % 4 == 0, 4, np.where(place % 2 == 0, 2, 1))
+
+
+def screen_grid(law: str, coarse_av: int, coarse_rv: int) -> tuple[FloatArray, NDArray[np.int64]]:
+    """Screens (S, 2) of A_V and R_V and how coarse they are; no screen first.
 
     A_V steps grow in proportion to 3 mag + A_V; R_V is even in 1/R_V, in which the laws are linear.
     """
@@ -88,8 +115,8 @@ def screen_grid(law: str, coarse_av: int, coarse_rv: int) -> tuple[FloatArray, N
         inverse = np.array([1 / 3.1])
     r_v = np.clip(1.0 / inverse, *R_V_RANGE)
     pair = np.stack(np.meshgrid(av[1:], r_v, indexing="ij"), axis=-1).reshape(-1, 2)
-    even = (np.arange(1, av.size) % 4 == 0)[:, None] & (np.arange(r_v.size) % 4 == 0)[None, :]
-    return np.vstack([[0.0, 3.1], pair]), np.concatenate([[True], even.ravel()])
+    level = np.minimum.outer(stride(av.size - 1, 1), stride(r_v.size))
+    return np.vstack([[0.0, 3.1], pair]), np.concatenate([[4], level.ravel()])
 
 
 def transmission(rules: Sequence[Quadrature], law: str, screens: FloatArray) -> list[FloatArray]:
@@ -121,11 +148,11 @@ def drude(wave_um: FloatArray, centre_um: FloatArray, width: FloatArray) -> Floa
     return width[:, None] ** 2 / ((ratio - 1.0 / ratio) ** 2 + width[:, None] ** 2)
 
 
-def _grid(*axes: FloatArray) -> tuple[FloatArray, NDArray[np.bool_]]:
-    """All combinations of axes from `refined`, shape (N, axes), and which are coarse in every axis."""
+def _grid(*axes: FloatArray) -> tuple[FloatArray, NDArray[np.int64]]:
+    """All combinations of axes from `refined`, shape (N, axes), and how coarse they are in every axis."""
     values = np.stack(np.meshgrid(*axes, indexing="ij"), axis=-1).reshape(-1, len(axes))
-    even = np.stack(np.meshgrid(*[np.arange(axis.size) % 4 == 0 for axis in axes], indexing="ij"), axis=-1)
-    return values, even.reshape(-1, len(axes)).all(axis=1)
+    level = np.stack(np.meshgrid(*[stride(axis.size) for axis in axes], indexing="ij"), axis=-1)
+    return values, level.reshape(-1, len(axes)).min(axis=1)
 
 
 def build_generators(
@@ -162,7 +189,7 @@ def build_generators(
     return _assemble(parts, np.isfinite(ln_flux).all(axis=0))
 
 
-Screens = tuple[FloatArray, NDArray[np.bool_]]
+Screens = tuple[FloatArray, NDArray[np.int64]]
 Shape = Callable[..., FloatArray]  # (wave_um, parameter, ...) -> (N, nodes)
 
 
@@ -173,7 +200,7 @@ class _Part:
     sources: FloatArray
     screens: FloatArray
     flux: FloatArray  # shape (B, columns)
-    even: NDArray[np.bool_]  # shape (columns,)
+    level: NDArray[np.int64]  # shape (columns,): 4 coarse, 2 middle, 1 fine only
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -187,7 +214,7 @@ class _Light:
         self, name: str, keys: tuple[str, ...], axes: tuple[FloatArray, ...], screens: Screens, shape: Shape | None = None
     ) -> _Part:
         """B_nu at each temperature of the first axis times each shape made of the others."""
-        parameters, even = _grid(*axes)
+        parameters, level = _grid(*axes)
         rest = _grid(*axes[1:])[0] if shape else np.zeros((1, 0))
         rows = []
         for rule, shade in zip(self.rules, self.shades[id(screens)], strict=True):
@@ -195,7 +222,7 @@ class _Light:
             if shape:
                 source = source * shape(rule.wave_um, *rest.T)[None, :, :]
             rows.append((source.reshape(len(parameters), -1) @ shade).ravel())
-        return _Part(name, keys, parameters, screens[0], np.stack(rows), np.outer(even, screens[1]).ravel())
+        return _Part(name, keys, parameters, screens[0], np.stack(rows), np.minimum.outer(level, screens[1]).ravel())
 
     def photospheres(self, teff_k: FloatArray, ln_flux: FloatArray, screens: Screens) -> _Part:
         """Templates dimmed in each band as a Planck source of their temperature is."""
@@ -206,8 +233,8 @@ class _Light:
             source = planck_sources(rule.wave_um, teff) * rule.weight
             dimmed = (source @ shade) / source.sum(axis=1, keepdims=True)
             rows.append((np.exp(ln_band)[:, None] * dimmed).ravel())
-        even = np.outer(np.arange(teff.size) % 4 == 0, screens[1]).ravel()
-        return _Part("photosphere", ("teff",), teff[:, None], screens[0], np.nan_to_num(np.stack(rows)), even)
+        level = np.minimum.outer(stride(teff.size), screens[1]).ravel()
+        return _Part("photosphere", ("teff",), teff[:, None], screens[0], np.nan_to_num(np.stack(rows)), level)
 
     def spectrum(self, name: str, wave_um: FloatArray, flux_jy: FloatArray, screens: Screens) -> _Part:
         """One spectrum of the user's, zero outside its own range."""
@@ -224,7 +251,7 @@ def _assemble(parts: Sequence[_Part], covered: NDArray[np.bool_]) -> Generators:
     Each column has a trace of the hottest Planck source in it, which is natural too, so that none is zero in any
     set of bands; the last block is filled up with that source.
     """
-    first, families, coarse = 0, [], []
+    first, families = 0, []
     total = sum(part.flux.shape[1] for part in parts)
     hottest = parts[1].flux[:, parts[1].flux.shape[1] - len(parts[1].screens)]  # unscreened, the last temperature
     ground = (hottest / hottest.max())[:, None]
@@ -234,7 +261,31 @@ def _assemble(parts: Sequence[_Part], covered: NDArray[np.bool_]) -> Generators:
         top = part.flux.max(axis=0)
         scaled = part.flux / np.where(top > 0, top, 1.0)
         table[:, first : first + scaled.shape[1]] = np.where(scaled < NIL, 0.0, scaled) + NIL * ground
-        coarse.append(first + np.flatnonzero(part.even))
         first += scaled.shape[1]
-    blocks = table.reshape(len(covered), -1, BLOCK).transpose(1, 0, 2).copy()
-    return Generators(blocks, np.concatenate(coarse), tuple(families), covered)
+    level = np.concatenate([part.level for part in parts])
+    hot = [np.repeat(_star_k(part), len(part.screens)) for part in parts]
+    return Generators(
+        flux=_blocks(table, BLOCK),
+        coarse=_part_of(table, np.flatnonzero(level >= 4), COARSE_BLOCK),
+        middle=_part_of(table, np.flatnonzero(level >= 2), MIDDLE_BLOCK),
+        families=tuple(families),
+        covered=covered,
+        star_k=np.concatenate([*hot, np.zeros(table.shape[1] - total)]).astype(np.float32),
+    )
+
+
+def _blocks(table: NDArray[np.float32], width: int) -> NDArray[np.float32]:
+    return np.ascontiguousarray(table.reshape(len(table), -1, width).transpose(1, 0, 2))
+
+
+def _part_of(table: NDArray[np.float32], index: NDArray[np.int64], width: int) -> Grid:
+    """Some columns as blocks of their own, the last filled up with the last column."""
+    index = np.pad(index, (0, -len(index) % width), mode="edge")
+    return Grid(_blocks(table[:, index], width), index)
+
+
+def _star_k(part: _Part) -> FloatArray:
+    """Temperatures of a part's sources where they are stars or as hot, else 0."""
+    if part.name not in ("photosphere", "planck"):
+        return np.zeros(len(part.sources))
+    return np.where(part.sources[:, 0] >= HOT_K[0], part.sources[:, 0], 0.0)
