@@ -7,36 +7,17 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
+from tui.checks import star
 from tui.checks.instrument import NOTHING_LOADED, NOT_THE_DATA, assess
-from tui.model import Candidate, Evidence, Fit, Measurement, Neighbour, Param, Settings
-from tui.physics.composite import LN_T, STAR
+from tui.checks.record import fits_of
+from tui.model import Candidate, Measurement, Neighbour, Settings
+from tui.physics.composite import STAR
 from tui.physics.fitting import fit
 from tui.physics.problem import build_problem
-from tui.physics.statistics import adequate, chi2_tail
 
 SETTINGS = Settings()
 CLEAN = {"cc_flags": "0", "ph_qual": "A"}
 HALO = {"cc_flags": "h", "ph_qual": "A"}
-
-
-def record(batch):
-    """Fits of a batch's rows, as the star check makes them."""
-    fits = []
-    for row in range(len(batch.problem)):
-        named = zip(batch.problem.templates.names, batch.pulls[row].tolist(), strict=True)
-        pulls = {name: pull for name, pull in named if np.isfinite(pull)}
-        teff = float(np.exp(batch.x[row, LN_T]))
-        chi2, dof = float(batch.chi2[row]), len(pulls) - 2
-        params = {"teff": Param(teff, teff, teff, "K")}
-        fits.append(Fit("star", chi2, dof, float(chi2_tail(chi2, dof)), 0.0, 0.0, params, pulls))
-    return fits
-
-
-def star_evidence(batch):
-    return [
-        Evidence("star", 1, adequate(f.chi2, len(f.pulls), f.dof, SETTINGS.p_min), (f,), bands=tuple(f.pulls))
-        for f in record(batch)
-    ]
 
 
 @pytest.fixture
@@ -44,17 +25,17 @@ def run(templates, tables):
     def run(candidates, change=lambda evidence: evidence):
         nothing, most = np.full(len(candidates), np.nan), np.full(len(candidates), 5.0)
         batch = fit(build_problem(candidates, templates, parallaxes=(nothing, nothing), av_max=most), STAR)
-        star = [change(evidence) for evidence in star_evidence(batch)]
-        return assess(candidates, batch, star, record, tables, SETTINGS)
+        evidence = [change(one) for one in star.assess(candidates, batch, SETTINGS)]
+        return assess(candidates, batch, evidence, lambda found: fits_of(found, SETTINGS), tables, SETTINGS)
 
     return run
 
 
 @pytest.fixture
-def star(templates):
+def made(templates):
     """A 5600 K star of W1 about 10 mag; `factor` multiplies fluxes, `flags` go to bands."""
 
-    def star(factor=None, flags=None, **more):
+    def made(factor=None, flags=None, **more):
         ln_flux, _ = templates.star.at(np.array([np.log(5600.0)]))
         flux = dict(zip(templates.names, np.exp(ln_flux[0] - 44.5), strict=True))
         flux = {name: value * (factor or {}).get(name, 1.0) for name, value in flux.items()}
@@ -62,11 +43,11 @@ def star(templates):
         rows = (Measurement(name, value, 0.01 * value, flags=flags.get(name, {})) for name, value in flux.items())
         return Candidate("one", tuple(rows), **more)
 
-    return star
+    return made
 
 
-def test_flagged_band_explains(run, star):
-    (evidence,) = run([star({"W4": 3.0}, {"W4": HALO, "W3": CLEAN})])
+def test_flagged_band_explains(run, made):
+    (evidence,) = run([made({"W4": 3.0}, {"W4": HALO, "W3": CLEAN})])
     assert evidence.adequate is True
     assert evidence.facts["carrier_band"] == "W4" and evidence.facts["carrier_suspect"] is True
     assert evidence.facts["carrier_p"] < 1e-6 and evidence.facts["carrier_pull"] > 6
@@ -77,8 +58,8 @@ def test_flagged_band_explains(run, star):
     assert any("scattered light" in text for text in evidence.cautions)
 
 
-def test_carrier_without_a_flag_is_no_explanation(run, star):
-    (evidence,) = run([star({"W4": 3.0}, {"W4": CLEAN})])
+def test_carrier_without_a_flag_is_no_explanation(run, made):
+    (evidence,) = run([made({"W4": 3.0}, {"W4": CLEAN})])
     assert evidence.adequate is False
     assert evidence.facts["carrier_band"] == "W4" and evidence.facts["carrier_suspect"] is False
     assert evidence.facts["instrument_suspect_bands"] == []
@@ -86,29 +67,29 @@ def test_carrier_without_a_flag_is_no_explanation(run, star):
     assert any("end of the spectrum" in text for text in evidence.cautions)
 
 
-def test_a_flag_on_another_band_explains_nothing(run, star):
-    (evidence,) = run([star({"W4": 3.0}, {"W1": HALO, "W4": CLEAN})])
+def test_a_flag_on_another_band_explains_nothing(run, made):
+    (evidence,) = run([made({"W4": 3.0}, {"W1": HALO, "W4": CLEAN})])
     assert evidence.adequate is False
     assert evidence.facts["instrument_suspect_bands"] == ["W1"]
     assert [f.model for f in evidence.fits] == ["star", "star without W1"]
 
 
-def test_ordinary_star_stands(run, star):
-    (evidence,) = run([star(None, {"W4": CLEAN})])
+def test_ordinary_star_stands(run, made):
+    (evidence,) = run([made(None, {"W4": CLEAN})])
     assert evidence.adequate is True
     assert not any("carries" in text for text in evidence.cautions)
 
 
-def test_untestable_without_any_quality_column(run, star):
-    odd, plain = run([star({"W4": 3.0}), star()])
+def test_untestable_without_any_quality_column(run, made):
+    odd, plain = run([made({"W4": 3.0}), made()])
     assert odd.adequate is None and plain.adequate is None
     assert NOTHING_LOADED in odd.cautions
     assert odd.facts["carrier_band"] == "W4"  # the carrier is told all the same
 
 
 @pytest.mark.parametrize("cause", ["neighbour", "epoch", "aperture", "gaia"])
-def test_each_independent_evidence_counts(run, star, tables, cause):
-    odd = star({"W3": 2.0})
+def test_each_independent_evidence_counts(run, made, cause):
+    odd = made({"W3": 2.0})
     w3 = next(m for m in odd.measurements if m.band == "W3")
     rest = tuple(m for m in odd.measurements if m.band != "W3")
     if cause == "neighbour":
@@ -120,7 +101,7 @@ def test_each_independent_evidence_counts(run, star, tables, cause):
         mag = -2.5 * np.log10(w3.flux_jy / 31.674)
         odd = replace(odd, measurements=(*rest, replace(w3, flags={"w3mag": f"{mag + 0.75:.3f}", "w3sigm": "0.03"})))
     else:
-        odd = star({"Gaia_BP": 1.6}, facts={"phot_bp_rp_excess_factor": 1.7, "bp_rp": 0.8, "phot_g_mean_mag": 11.0})
+        odd = made({"Gaia_BP": 1.6}, facts={"phot_bp_rp_excess_factor": 1.7, "bp_rp": 0.8, "phot_g_mean_mag": 11.0})
     (evidence,) = run([odd])
     assert evidence.adequate is True
     expected = "Gaia_BP" if cause == "gaia" else "W3"
@@ -130,40 +111,40 @@ def test_each_independent_evidence_counts(run, star, tables, cause):
     }
 
 
-def test_a_dip_is_no_fault_of_a_band(run, star):
+def test_a_dip_is_no_fault_of_a_band(run, made):
     def dipping(evidence):
         return replace(evidence, adequate=False, facts={"dip_stands": True})
 
-    (evidence,) = run([star({"W4": 3.0}, {"W4": HALO})], dipping)
+    (evidence,) = run([made({"W4": 3.0}, {"W4": HALO})], dipping)
     assert evidence.adequate is False and NOT_THE_DATA in evidence.cautions
-    (plain,) = run([star(None, {"W4": CLEAN})], lambda e: replace(e, adequate=False))
+    (plain,) = run([made(None, {"W4": CLEAN})], lambda e: replace(e, adequate=False))
     assert plain.adequate is False and NOT_THE_DATA in plain.cautions
 
 
-def test_red_excess_says_how_high_w4_reads(run, star):
-    (evidence,) = run([star({"W3": 1.5, "W4": 12.0}, {"W4": CLEAN})])
+def test_red_excess_says_how_high_w4_reads(run, made):
+    (evidence,) = run([made({"W3": 1.5, "W4": 12.0}, {"W4": CLEAN})])
     assert evidence.facts["w4_reads_high"] > 0
     assert any("22.8 micron" in text for text in evidence.cautions)
 
 
-def test_carrier_may_be_an_instrument(run, star):
-    (evidence,) = run([star({"J": 1.5, "H": 0.7, "Ks": 1.5}, {"J": {"ph_qual": "A"}})])
+def test_carrier_may_be_an_instrument(run, made):
+    (evidence,) = run([made({"J": 1.5, "H": 0.7, "Ks": 1.5}, {"J": {"ph_qual": "A"}})])
     assert evidence.facts["carrier_band"] == "2MASS"
     assert evidence.facts["carrier_bands"] == ["J", "H", "Ks"]
 
 
-def test_candidates_of_different_bands_share_a_run(run, star):
-    few = star({"W4": 3.0}, {"W4": HALO})
+def test_candidates_of_different_bands_share_a_run(run, made):
+    few = made({"W4": 3.0}, {"W4": HALO})
     few = replace(few, measurements=tuple(m for m in few.measurements if m.band in ("J", "W3", "W4")))
-    many = star({"W4": 3.0}, {"W4": HALO})
+    many = made({"W4": 3.0}, {"W4": HALO})
     first, second = run([few, many])
     assert second.adequate is True
     assert first.facts.get("carrier_band") is None  # taking one of three away leaves nothing to test
     assert first.adequate is False  # refused as it is, and two bands test nothing
 
 
-def test_evidence_is_plain_json(run, star):
+def test_evidence_is_plain_json(run, made):
     from tui.model import canonical_json
 
-    (evidence,) = run([star({"W4": 3.0}, {"W4": HALO}, neighbours=(Neighbour(2.0, fluxes_jy={"W4": 1e-3}),))])
+    (evidence,) = run([made({"W4": 3.0}, {"W4": HALO}, neighbours=(Neighbour(2.0, fluxes_jy={"W4": 1e-3}),))])
     assert canonical_json(evidence.facts)

@@ -13,17 +13,17 @@ from tui.checks.colours import w4_red_excess, w4_sentence
 from tui.checks.doubts import sentences, suspect_bands
 from tui.checks.neighbours import measured_fluxes, neighbour_sentences
 from tui.checks.quality import Quality, all_gaia_facts, candidate_quality
+from tui.checks.record import any_stands, stands
 from tui.checks.tables import Tables
 from tui.model import Candidate, Evidence, Fit, FloatArray, Settings
 from tui.physics.composite import STAR
 from tui.physics.fitting import FitBatch, fit
 from tui.physics.removal import chi2_without
-from tui.physics.statistics import adequate
 
 KIND = "instrument"
 VERSION = 1  # raise it whenever the same candidate could get other numbers
 
-Record = Callable[[FitBatch], list[Fit]]  # how the star check turns fitted rows into fits
+Record = Callable[[FitBatch], list[Fit]]  # how fitted rows become fits
 
 
 def assess(
@@ -39,7 +39,7 @@ def assess(
     Args:
         batch: star-only fits of these candidates, one row each.
         star: their star evidence; its fit enters as it is.
-        record: makes fits of a batch's rows, with model name `star`.
+        record: makes fits of a batch's rows, as the star check does.
     """
     bands = {band.name: band for band in batch.problem.templates.bands}
     quality = [
@@ -106,7 +106,7 @@ def one_evidence(
 ) -> Evidence:
     """Put one candidate's evidence together."""
     suspects = tuple(name for name in bands if name in suspect_bands(quality.doubts) and name in star.bands)
-    stands = None if without is None else stands_alone(without, settings)
+    answer = None if without is None else stands(without, len(without.pulls), settings)
     facts = quality.as_facts()
     facts["instrument_suspect_bands"] = list(suspects)
     facts["instrument_p_without_suspects"] = None if without is None else without.p
@@ -116,7 +116,7 @@ def one_evidence(
     if red > 0:
         facts["w4_reads_high"] = red
     beyond = is_beyond_photometry(star, settings)
-    fits = (*star.fits[:1],) if without is None else order(star.fits[:1], without, star.adequate, stands)
+    fits = (*star.fits[:1],) if without is None else order(star.fits[:1], without, star.adequate, answer)
     cautions = (
         *([] if quality.is_loaded else [NOTHING_LOADED]),
         *([NOT_THE_DATA] if beyond else []),
@@ -125,8 +125,8 @@ def one_evidence(
         *neighbour_sentences(list(quality.leaks)),
         *w4_sentence(red),
     )
-    answer = combined(star.adequate, False if beyond else stands) if quality.is_loaded else None
-    return Evidence(KIND, VERSION, answer, fits, cautions, facts, bands=star.bands)
+    adequate = any_stands([star.adequate, False if beyond else answer]) if quality.is_loaded else None
+    return Evidence(KIND, VERSION, adequate, fits, cautions, facts, bands=star.bands)
 
 
 NOTHING_LOADED = (
@@ -139,21 +139,10 @@ def is_beyond_photometry(star: Evidence, settings: Settings) -> bool:
     """Whether a dip or a spectrum, which no bad band explains, refuses the star alone."""
     if star.facts.get("dip_stands") or star.facts.get("spectrum_misfits"):
         return True
-    return star.adequate is False and star.best is not None and stands_alone(star.best, settings) is True
+    found = star.best
+    return star.adequate is False and found is not None and stands(found, len(found.pulls), settings) is True
 
 
-def stands_alone(found: Fit, settings: Settings) -> bool | None:
-    """Whether a fit stands by the queue's threshold."""
-    return adequate(found.chi2, len(found.pulls), found.dof, settings.p_min)
-
-
-def combined(*answers: bool | None) -> bool | None:
-    """Yes if some fit stands, no if some was tested and none stands, else untestable."""
-    if any(answer is True for answer in answers):
-        return True
-    return False if any(answer is False for answer in answers) else None
-
-
-def order(star: tuple[Fit, ...], without: Fit, alone: bool | None, stands: bool | None) -> tuple[Fit, ...]:
+def order(star: tuple[Fit, ...], without: Fit, alone: bool | None, answer: bool | None) -> tuple[Fit, ...]:
     """The fit that decides first: their BIC cannot be compared, since they are not of the same data."""
-    return (without, *star) if stands is True and alone is not True else (*star, without)
+    return (without, *star) if answer is True and alone is not True else (*star, without)
