@@ -12,6 +12,7 @@ from tui.physics.composite import LN_T, Kit, Prediction, parallax_of
 from tui.physics.problem import Problem
 
 LN_2PI = float(np.log(2 * np.pi))
+FAR_BELOW = -30.0  # sigma
 PARALLAX_SCATTER = 0.115  # 0.25 mag of real dwarfs about the sequence, as a fraction of the distance
 
 
@@ -93,10 +94,13 @@ def residuals(problem: Problem, kit: Kit, errors: Errors, x: FloatArray, predict
 
 def limit_residual(pull: FloatArray) -> tuple[FloatArray, FloatArray]:
     """sqrt(-2 ln Phi(pull)) and its derivative with pull, pull = (limit - model)/sigma (Sawicki 2012)."""
-    ln_phi = log_ndtr(pull)
+    held = np.maximum(pull, -1e100)
+    ln_phi = log_ndtr(held)
     root = np.sqrt(-2.0 * ln_phi)
-    density = np.exp(-0.5 * pull**2 - 0.5 * LN_2PI - ln_phi)
-    return root, -density / np.maximum(root, 1e-12)
+    near = np.maximum(held, FAR_BELOW)
+    ratio = np.exp(-0.5 * near**2 - 0.5 * LN_2PI - log_ndtr(near))
+    ratio = np.where(held < FAR_BELOW, -held, ratio)  # Mills' ratio far below; exact to 1e-3 there
+    return root, -ratio / np.maximum(root, 1e-12)
 
 
 def parallax_sigma(problem: Problem) -> FloatArray:

@@ -1,0 +1,190 @@
+"""Could dust near the star, warmed by it, make these fluxes?"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import replace
+
+import numpy as np
+
+from tui.checks.prepare import fact
+from tui.checks.record import any_stands, dust_radius, fits_of, luminosity_sun, stands
+from tui.checks.remarks import common_remarks, gain_over_star, in_order
+from tui.model import Candidate, Evidence, Fit, FloatArray, Settings
+from tui.physics.composite import A2, DUST, DUST_AV, TWO_DUST, X2, kit_for, predict
+from tui.physics.context import shell_dimming, steady_state_ceiling
+from tui.physics.fitting import FitBatch, fit
+from tui.physics.problem import Problem
+from tui.physics.statistics import chi2_tail
+
+KIND = "dust"
+VERSION = 1  # raise it whenever the same candidate could get other numbers
+SUBLIMATION_K = 1500.0  # silicates; common practice, no single source
+EXTREME_F = 0.1
+NO_DISC_F = 0.5
+TRANSIENT = 1000.0  # times the steady-state ceiling; Wyatt et al. 2007
+TWO_BANDS = 5  # bands that must carry an excess before a second temperature is tried
+EXCESS_PULL = 3.0
+LIMIT_TEMPERATURES_K = (30.0, 50.0, 80.0, 120.0, 200.0, 300.0, 500.0, 800.0, 1200.0)
+ONE_SIDED_95 = 2.71
+
+
+def fit_dust(problem: Problem, star: FitBatch, settings: Settings) -> list[dict[int, tuple[FitBatch, int]]]:
+    """Batches of star + dust; the third, with two temperatures, only of the rows that ask for it."""
+    bare = fit(problem, DUST, start=star.x)
+    screened = fit(problem, DUST_AV, start=bare.x)
+    rows = asks_for_two(problem, star, screened, settings)
+    batches = [_all_rows(bare), _all_rows(screened)]
+    if rows.size:
+        two = fit(problem.take(rows), TWO_DUST)
+        batches.append({int(row): (two, place) for place, row in enumerate(rows)})
+    return batches
+
+
+def _all_rows(batch: FitBatch) -> dict[int, tuple[FitBatch, int]]:
+    return {row: (batch, row) for row in range(len(batch.problem))}
+
+
+def asks_for_two(problem: Problem, star: FitBatch, one: FitBatch, settings: Settings) -> np.ndarray:
+    """Rows whose one temperature is refused while at least five bands carry an excess."""
+    points = problem.points
+    dof = np.maximum(points - len(DUST_AV.free), 1)
+    refused = chi2_tail(one.chi2, dof) < settings.p_min
+    left = np.where(problem.detected, problem.flux_jy - one.prediction.star, 0.0) / one.errors.sigma
+    carrying = (left > EXCESS_PULL).sum(axis=1)
+    return np.flatnonzero(refused & (carrying >= TWO_BANDS) & (points > len(TWO_DUST.free)))
+
+
+def assess(
+    candidates: Sequence[Candidate],
+    problem: Problem,
+    star_batch: FitBatch,
+    star: Sequence[Evidence],
+    settings: Settings,
+) -> list[Evidence]:
+    """Dust evidence for each candidate; order kept."""
+    groups = fit_dust(problem, star_batch, settings)
+    recorded: dict[int, list[Fit]] = {}
+    for group in groups:
+        batch = next(iter(group.values()))[0]
+        fits = fits_of(batch, settings)
+        for row, (_, place) in group.items():
+            recorded.setdefault(row, []).append(fits[place])
+    limits = largest_fraction(star_batch)
+    return [
+        one_evidence(candidate, recorded[row], star[row], problem, row, limits[row], settings)
+        for row, candidate in enumerate(candidates)
+    ]
+
+
+def one_evidence(
+    candidate: Candidate,
+    fits: list[Fit],
+    star: Evidence,
+    problem: Problem,
+    row: int,
+    limits: FloatArray,
+    settings: Settings,
+) -> Evidence:
+    """Put one candidate's evidence together."""
+    if star.best is None:
+        return Evidence(KIND, VERSION, None, (), star.cautions[:1], {}, bands=star.bands)
+    parallax = float(problem.parallax_mas[row])
+    ordered = in_order([with_radius(each, parallax) for each in fits])
+    best = ordered[0]
+    told: dict[str, object] = gain_over_star(best, star.best)
+    told["limit_temperature_k"] = list(LIMIT_TEMPERATURES_K)
+    told["limit_fractional_luminosity"] = limits.tolist()
+    cautions = common_remarks(best, star.adequate, settings)
+    cautions += dust_cautions(candidate, best, parallax, told)
+    if "dust_temperature" not in best.params:
+        cautions.append(limit_sentence(limits))
+    answer = any_stands([stands(each, int(problem.points[row]), settings) for each in ordered])
+    return Evidence(KIND, VERSION, answer, ordered, tuple(cautions), told, bands=star.bands)
+
+
+def with_radius(fit_: Fit, parallax_mas: float) -> Fit:
+    """The fit with the dust's radius added, where the parallax gives the star's luminosity."""
+    temperature = fit_.params.get("dust_temperature")
+    luminosity = luminosity_sun(fit_.params["teff"].value, fit_.params["theta"].value, parallax_mas)
+    if temperature is None or not luminosity > 0:
+        return fit_
+    return replace(fit_, params={**fit_.params, "dust_radius": dust_radius(temperature, luminosity)})
+
+
+def dust_cautions(candidate: Candidate, best: Fit, parallax_mas: float, told: Mapping[str, object]) -> list[str]:
+    """Physical remarks; none of them refuses a fit."""
+    found, params = [], best.params
+    temperature, fraction = params.get("dust_temperature"), params.get("dust_fractional_luminosity")
+    if temperature is None or fraction is None:
+        return found
+    if temperature.value > SUBLIMATION_K:
+        found.append(f"Dust at {temperature.value:.0f} K: silicates are gone above about {SUBLIMATION_K:.0f} K.")
+    if fraction.value > NO_DISC_F:
+        found.append(f"f = {fraction.value:.2f}: more than a disc can take of the star's light.")
+    elif fraction.value > EXTREME_F:
+        found.append(f"f = {fraction.value:.2f}: extreme for a disc.")
+    carried = told.get("carried_by") or []
+    if len(carried) == 1:
+        found.append(f"Only {carried[0]} carries the excess: one band fixes no temperature.")
+    found += shell_remark(params)
+    found += age_remark(candidate, best, parallax_mas)
+    return found
+
+
+def shell_remark(params: Mapping[str, object]) -> list[str]:
+    """Dust all round the star would dim it by 2.5 log10(1 + f); a conflict only beyond 3 sigma of A_V."""
+    av, fraction = params.get("av"), params["dust_fractional_luminosity"]
+    dimming = float(shell_dimming(fraction.value))
+    if av is None or dimming < 0.05:
+        return []
+    upper = av.value + 3 * max(av.high - av.value, 0.02)
+    if dimming <= upper:
+        return []
+    return [f"A shell all round would dim the star by {dimming:.2f} mag, and A_V {av.value:.2f} allows {upper:.2f}."]
+
+
+def age_remark(candidate: Candidate, best: Fit, parallax_mas: float) -> list[str]:
+    """The dust against what a colliding belt of this age can keep up (Wyatt et al. 2007)."""
+    age, radius = fact(candidate, "age_myr"), best.params.get("dust_radius")
+    if radius is None or not age > 0:
+        return []
+    luminosity = luminosity_sun(best.params["teff"].value, best.params["theta"].value, parallax_mas)
+    mass = luminosity ** (1 / 3.5)  # main sequence; common practice, no single source
+    ceiling = float(steady_state_ceiling(radius.value, age, mass, luminosity))
+    ratio = best.params["dust_fractional_luminosity"].value / ceiling
+    if ratio <= TRANSIENT:
+        return []
+    return [f"f is {ratio:.0f} times what a belt of {age:g} Myr keeps up: transient dust, which is dust all the same."]
+
+
+def largest_fraction(star: FitBatch) -> FloatArray:
+    """Largest fractional luminosity (95 %) that dust at each of LIMIT_TEMPERATURES_K may have, (M, 9).
+
+    Star temperature as fitted alone, its scale free; errors of the star-only fit.
+    """
+    kit = kit_for(DUST, star.problem.templates)
+    out = np.full((len(star.problem), len(LIMIT_TEMPERATURES_K)), np.nan)
+    weight = np.where(star.problem.detected, star.errors.sigma**-2.0, 0.0)
+    left = star.problem.flux_jy - star.prediction.flux
+    ss = np.sum(weight * star.prediction.flux**2, axis=1)
+    for column, kelvin in enumerate(LIMIT_TEMPERATURES_K):
+        x = star.x.copy()
+        x[:, X2], x[:, A2] = np.log(kelvin), 1.0
+        unit = predict(kit, x).flux - star.prediction.flux
+        share = np.sum(weight * unit * star.prediction.flux, axis=1) / np.maximum(ss, 1e-300)
+        free = unit - share[:, None] * star.prediction.flux
+        size = np.sum(weight * free**2, axis=1)
+        best = np.sum(weight * free * left, axis=1) / np.maximum(size, 1e-300)
+        sigma = np.maximum(size, 1e-300) ** -0.5
+        rise = np.where(best > 0, 0.0, (best / sigma) ** 2)
+        out[:, column] = best + sigma * np.sqrt(ONE_SIDED_95 + rise)
+    return out
+
+
+def limit_sentence(limits: FloatArray) -> str:
+    """Where dust could still hide, with numbers."""
+    cold, warm = (limits[LIMIT_TEMPERATURES_K.index(kelvin)] for kelvin in (80.0, 300.0))
+    return f"No dust needed; 95 % limits on f: {warm:.1g} at 300 K, {cold:.1g} at 80 K (colder hides more)."
+
+
