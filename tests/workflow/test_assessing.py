@@ -24,7 +24,7 @@ def calls(monkeypatch, tmp_path):
     """Checks that record what they were asked for and answer at once."""
     asked = []
 
-    def assess_all(candidates, templates, settings, kinds=KINDS):
+    def assess_all(candidates, templates, settings, kinds, tables):
         asked.append((tuple(one.name for one in candidates), tuple(kinds)))
         return [{kind: Evidence(kind, tui.checks.VERSIONS[kind], False) for kind in kinds} for _ in candidates]
 

@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 
 from tui.cli.printing import NOTHING, figure, heading, line, signed, table
 from tui.model import CHECK_TITLES, CHECKS, Evidence, Fit, Measurement, Param
 from tui.workflow.showing import Dossier
 
 ADEQUATE = {True: "adequate: some fit explains the data", False: "not adequate: no fit explains the data"}
+BOUND = {True: "not refused", False: "refused", None: "not given"}
 UNTESTABLE = "untestable with these data"
 
 
@@ -44,6 +45,8 @@ def adequacy_words(evidence: Evidence | None) -> str:
     """The evidence's own state in words."""
     if evidence is None:
         return "no evidence yet"
+    if evidence.kind == "mixture":
+        return BOUND[evidence.adequate]
     return UNTESTABLE if evidence.adequate is None else ADEQUATE[evidence.adequate]
 
 
@@ -52,7 +55,7 @@ def print_measurements(found: Dossier) -> None:
     star = found.evidence.get("star")
     pulls = star.best.pulls if star and star.best else {}
     heading("measurements")
-    rows = [measurement_cells(one, pulls) for one in found.candidate.measurements]
+    rows = [measurement_cells(one, pulls) for one in found.measurements]
     table(("band", "flux (mJy)", "error", "star pull", "source", "epoch", "flags"), rows, numbers=(1, 2, 3))
 
 
@@ -78,9 +81,7 @@ def print_check(found: Dossier, check: str) -> None:
 
 def print_evidence(evidence: Evidence) -> None:
     """Fits, best first, then facts and cautions."""
-    if evidence.fits:
-        rows = [fit_cells(fit) for fit in evidence.fits]
-        table(("model", "chi2", "dof", "p", "BIC", "fitted values", "largest pull"), rows, numbers=(1, 2, 3, 4))
+    print_fits(evidence.fits)
     for name, value in evidence.facts.items():
         if isinstance(value, (str, int, float, bool)):
             line(f"{name.replace('_', ' ')}: {figure(value) if isinstance(value, float) else value}")
@@ -88,26 +89,41 @@ def print_evidence(evidence: Evidence) -> None:
         line(f"caution: {caution}")
 
 
-def fit_cells(fit: Fit) -> tuple[str, ...]:
-    """One fit as cells."""
-    values = "; ".join(param_words(name, param) for name, param in fit.params.items())
-    return (fit.model, figure(fit.chi2), str(fit.dof), figure(fit.p, 2), figure(fit.bic), values, largest_pull(fit))
+def print_fits(fits: Sequence[Fit]) -> None:
+    """How well each model fits, then what it fitted."""
+    if not fits:
+        return
+    rows = [
+        (fit.model, figure(fit.chi2), str(fit.dof), p_words(fit.p), figure(fit.bic), largest_pull(fit)) for fit in fits
+    ]
+    table(("model", "chi2", "dof", "p", "BIC", "largest pull"), rows, numbers=(1, 2, 3, 4))
+    fitted = [(fit.model, name.replace("_", " "), *param_cells(one)) for fit in fits for name, one in fit.params.items()]
+    if fitted:
+        table(("model", "fitted", "value", "low", "high", "unit"), fitted, numbers=(2, 3, 4))
 
 
-def param_words(name: str, param: Param) -> str:
-    """A fitted number with its interval, or as the limit that it is.
+def p_words(p: float) -> str:
+    """A chance probability; one too small for the machine's numbers reads as below them.
 
-    >>> param_words("teff", Param(5772.0, 5700.0, 5850.0, "K"))
-    'teff 5772 (5700 to 5850) K'
-    >>> param_words("av", Param(0.0, 0.0, 0.2, "mag", limit=True))
-    'av < 0.2000 mag (95 %)'
+    >>> p_words(0.25), p_words(0.0)
+    ('0.25', '<1e-300')
     """
-    label = name.replace("_", " ")
-    if param.limit:
-        below = param.high != param.value
-        text = f"{label} {'<' if below else '>'} {figure(param.high if below else param.low)} {param.unit}"
-        return f"{text.rstrip()} (95 %)"
-    return f"{label} {figure(param.value)} ({figure(param.low)} to {figure(param.high)}) {param.unit}".rstrip()
+    return "<1e-300" if p == 0 else figure(p, 2)
+
+
+def param_cells(param: Param) -> tuple[str, str, str, str]:
+    """A fitted number with its 68 % interval, or as the one-sided 95 % limit that it is.
+
+    >>> param_cells(Param(5772.0, 5700.0, 5850.0, "K"))
+    ('5772', '5700', '5850', 'K')
+    >>> param_cells(Param(0.0, 0.0, 0.2, "mag", limit=True))
+    ('0.000', '', '<0.2000', 'mag')
+    """
+    if not param.limit:
+        return figure(param.value), figure(param.low), figure(param.high), param.unit
+    low = f">{figure(param.low)}" if param.low != param.value else ""
+    high = f"<{figure(param.high)}" if param.high != param.value else ""
+    return figure(param.value), low, high, param.unit
 
 
 def largest_pull(fit: Fit) -> str:

@@ -16,7 +16,7 @@ from tui.errors import InputError
 @click.option("--drop", multiple=True, metavar="BAND", help="Leave a band out; repeat for more.")
 def probe_command(queue: str, name: str, check: str, fix: dict[str, str], drop: tuple[str, ...]) -> int:
     """A fit with parameters fixed or bands dropped: --fix T=450 --drop W3. Nothing is stored."""
-    from tui.cli.dossier import fit_cells
+    from tui.cli.dossier import print_fits
     from tui.cli.printing import line, signed, table
     from tui.workflow.session import Session
 
@@ -24,8 +24,7 @@ def probe_command(queue: str, name: str, check: str, fix: dict[str, str], drop: 
     with Session.open(queue, write=False) as session:
         fit, _ = session.probe(name, check, fixed, dropped_bands(drop))
     line(f"{name}: {check} by hand" + (f", without {', '.join(drop)}" if drop else ""))
-    table(("model", "chi2", "dof", "p", "BIC", "fitted values", "largest pull"), [fit_cells(fit)], numbers=(1, 2, 3, 4))
-    line()
+    print_fits([fit])
     table(("band", "pull"), [(band, signed(pull)) for band, pull in fit.pulls.items()], numbers=(1,))
     return 0
 

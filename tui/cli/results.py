@@ -14,7 +14,7 @@ from tui.cli.arguments import controls_option, json_option, outcome_option, queu
 def tally_command(queue: str, controls: str | None, as_json: bool) -> int:
     """Progress, agreement, survivors, and what they mean. This is the team's view: it looks past every seal."""
     from tui.cli import printing
-    from tui.workflow.tallies import team_tally
+    from tui.workflow.team_tally import team_tally
 
     found = team_tally(queue, controls)
     if as_json:

@@ -89,7 +89,7 @@ def compute(
 
     digests = candidate_digests(connection, names)
     candidates = get_candidates(connection, names)
-    found = assess_all(candidates, basis.templates(), basis.settings, kinds)
+    found = assess_all(candidates, basis.templates(), basis.settings, kinds, basis.tables())
     return [
         (candidate.name, replace(made, digest=made_with[kind].digest_of(digests[candidate.name])))
         for candidate, by_kind in zip(candidates, found, strict=True)

@@ -6,6 +6,7 @@ import json
 import sqlite3
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from functools import cache
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -14,6 +15,7 @@ from tui.errors import StoreError
 from tui.model import Band, Settings, canonical_json
 
 if TYPE_CHECKING:
+    from tui.checks.tables import Tables
     from tui.physics.templates import Templates
 
 BAND_KIND = "band"  # of the attachments that carry a user's band
@@ -39,11 +41,26 @@ class Basis:
 
         return templates_digest(self.settings, self.user_bands)
 
+    def tables(self) -> Tables:
+        """Flags, Gaia's loci, galaxy counts and natural classes, for the checks of data quality and surroundings."""
+        return packaged_tables()
+
     def bands(self) -> dict[str, Band]:
         """Every band by name, the packaged ones first."""
         from tui.data.load import bands
 
         return {**self.user_bands, **bands()}
+
+
+@cache
+def packaged_tables() -> Tables:
+    """The tables that the program carries for the checks."""
+    from tui.checks.tables import build_tables
+    from tui.data import load_flags as rows
+
+    return build_tables(
+        rows.flag_rows(), rows.gaia_excess_rows(), rows.gaia_scatter_rows(), rows.galaxy_count_rows(), rows.natural_class_rows()
+    )
 
 
 def read_basis(connection: sqlite3.Connection) -> Basis:

@@ -256,10 +256,12 @@ class Session:
         return views.story(self.connection, self.reader_id, name)
 
     def tally(self) -> Tally:
-        """The team's standing. Whoever shows it to a reviewer names only candidates whose seal is open to them."""
+        """The team's standing, naming only candidates whose seal is open to this reader."""
+        from tui.store.team import open_to
         from tui.workflow import tallying
 
-        return tallying.tally(self.connection, self.settings, now=utc_now())
+        found = tallying.tally(self.connection, self.settings, now=utc_now())
+        return found.seen_by(open_to(self.connection, self.reviewer.id) if self.reviewer else ())
 
     def needed_reviewer(self) -> Reviewer:
         """The reviewer; HandleError for a reader without a handle."""

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
@@ -21,6 +22,7 @@ class Dossier:
     evidence: Mapping[str, Evidence]
     view: CandidateView
     oddness: Mapping[str, Any]  # sigma, band, pull; empty where there is no evidence for `star`
+    measurements: tuple[Measurement, ...]  # by wavelength
 
     def as_dict(self) -> dict[str, Any]:
         """The document of `show --json`: JSON values only, in a fixed order of keys."""
@@ -28,7 +30,7 @@ class Dossier:
             "name": self.candidate.name,
             "outcome": self.view.outcome,
             "oddness": plain(self.oddness),
-            "measurements": [measurement_dict(one) for one in self.candidate.measurements],
+            "measurements": [measurement_dict(one) for one in self.measurements],
             "checks": {check: self.check_dict(check) for check in CHECKS},
             "mixture": evidence_dict(self.evidence.get("mixture")),
             "dips": [dip_dict(dip) for dip in self.candidate.dips],
@@ -57,7 +59,12 @@ def dossier(session: Session, name: str) -> Dossier:
     """
     candidate = session.candidate(name)
     evidence = session.evidence(name)
-    return Dossier(candidate, evidence, session.view(name), oddness_dict(evidence.get("star")))
+    bands = session.band_info()
+    measured = sorted(
+        candidate.measurements,
+        key=lambda one: (bands[one.band].pivot_um if one.band in bands else math.inf, one.band, one.source, one.epoch),
+    )
+    return Dossier(candidate, evidence, session.view(name), oddness_dict(evidence.get("star")), tuple(measured))
 
 
 def oddness_dict(star: Evidence | None) -> dict[str, Any]:
