@@ -10,7 +10,7 @@ from tui.errors import TableError
 from tui.store.candidates import get_candidate
 from tui.store.connect import open_queue
 from tui.workflow.basis import band_from, band_text, read_basis
-from tui.workflow.loading import load, write_refused
+from tui.workflow.loading import Sidecars, load, write_refused
 
 TABLE = """name,ra,dec,J_mag,J_err,W3_mag,W3_err,W3_limit,hue
 A 1,10.5,-3.25,6.9,0.02,6.45,0.02,false,red
@@ -76,3 +76,23 @@ def test_a_band_of_ones_own_travels_in_the_queue(tmp_path):
         band = read_basis(connection).user_bands["Hcont"]
         assert (band.pivot_um, get_candidate(connection, "A").measurements[0].flux_jy) == (1.57, 0.0035)
     assert band_text(band_from(band_text(band))) == band_text(band)
+
+
+def test_dips_neighbours_and_spectra_hang_on_candidates_of_the_queue(tmp_path, table):
+    path = str(tmp_path / "q.db")
+    load(path, [table])
+    (tmp_path / "dips.csv").write_text("name,event,band,depth,error\nA 1,e1,J,0.1,0.01\nNobody,e1,J,0.1,0.01\n")
+    (tmp_path / "near.csv").write_text("name,separation,J_mag,J_err\nA 1,3.5,12.0,0.1\n")
+    (tmp_path / "spectra.ecsv").write_text(
+        "# %ECSV 1.0\n# ---\n# datatype:\n# - {name: name, datatype: string}\n# - {name: wavelength, unit: um, datatype: float64}\n"
+        "# - {name: flux, unit: mJy, datatype: float64}\n# - {name: error, unit: mJy, datatype: float64}\n"
+        "name wavelength flux error\n\"A 1\" 0.5 10 1\n\"A 1\" 0.6 11 1\n"
+    )
+    sidecars = Sidecars(*((str(tmp_path / name),) for name in ("dips.csv", "near.csv", "spectra.ecsv")))
+    done = load(path, [], sidecars=sidecars)
+    assert done.counts["side_tables"] == 3 and [str(one) for one in done.refused if "Nobody" in str(one)]
+    with closing(open_queue(path, write=False)) as connection:
+        found = get_candidate(connection, "A 1")
+    assert (found.dips[0].depth, found.neighbours[0].separation_arcsec) == (0.1, 3.5)
+    assert found.spectrum.flux_jy.tolist() == [0.010, 0.011]
+    assert "nothing new" in load(path, [], sidecars=sidecars).sentence()

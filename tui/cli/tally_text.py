@@ -8,7 +8,7 @@ from tui.cli.printing import NOTHING, figure, heading, line, table
 from tui.model import CHECK_TITLES, CHECKS, OUTCOMES
 
 if TYPE_CHECKING:
-    from tui.workflow.tallying import ReviewerLine, Tally
+    from tui.workflow.tally_record import ReviewerLine, Tally
 
 STATE_HEADINGS = ("none yet", "open", "split", "explains", "falls short", "untestable", "stale")
 
@@ -29,7 +29,7 @@ def print_tally(found: Tally) -> None:
 
 def print_progress(found: Tally) -> None:
     """Is it done?"""
-    from tui.workflow.tallying import STATES_SHOWN
+    from tui.workflow.tally_record import STATES_SHOWN
 
     heading(f"1 Is it done?  {found.settled.text} of {found.candidates}, {found.under_way.text}, {found.untouched.text}")
     rows = [(CHECK_TITLES[check], *(found.progress[check][state].count for state in STATES_SHOWN)) for check in CHECKS]
@@ -40,14 +40,15 @@ def print_progress(found: Tally) -> None:
 
 def print_trust(found: Tally) -> None:
     """Can it be trusted?"""
-    from tui.workflow.tallying import trust_sentences
+    from tui.workflow.tally_record import trust_sentences
 
     heading("2 Can it be trusted?  first, sealed rulings only")
     for text in trust_sentences(found.agreement):
         line(text)
     print()
-    table(("reviewer", "rulings", "candidates", "done", "last ruling (UTC)", "hits", "false"), map(reviewer_cells, found.reviewers),
-          numbers=(1, 2, 3))  # fmt: skip
+    headings = ("reviewer", "rulings", "candidates", "done", "last ruling (UTC)", "hits", "false")
+    shown = len(headings) if found.controls else len(headings) - 2  # rates need controls
+    table(headings[:shown], (reviewer_cells(one)[:shown] for one in found.reviewers), numbers=(1, 2, 3))
 
 
 def reviewer_cells(one: ReviewerLine) -> tuple[object, ...]:

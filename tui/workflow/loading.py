@@ -48,7 +48,7 @@ class Loaded:
 
     path: str
     counts: dict[str, int] = field(default_factory=lambda: dict.fromkeys((*WORDS, "same"), 0))
-    refused: list[Refused] = field(default_factory=list)
+    refused: list[Refused | str] = field(default_factory=list)
     remarks: list[str] = field(default_factory=list)
 
     def add(self, counts: LoadCounts) -> None:
@@ -95,7 +95,7 @@ def load(
         if sidecars and sidecars != Sidecars():
             from tui.workflow.side_tables import load_sidecars
 
-            load_sidecars(connection, sidecars, source, done)
+            load_sidecars(connection, sidecars, columns, source, done)
     return done
 
 
@@ -158,7 +158,7 @@ def remarks_of(part: TableContents) -> list[str]:
     return [*unknown, *part.cautions]
 
 
-def write_refused(path: str, refused: Iterable[Refused]) -> None:
+def write_refused(path: str, refused: Iterable[Refused | str]) -> None:
     """List what was refused in a file, one line each."""
     with open(path, "w", encoding="utf-8", newline="\n") as stream:
         stream.writelines(f"{safe(one)}\n" for one in refused)

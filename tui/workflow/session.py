@@ -16,7 +16,7 @@ from tui.workflow.records import CandidateView, Filter, QueueRow, StoryLine
 
 if TYPE_CHECKING:
     from tui.checks import Curve
-    from tui.workflow.tallying import Tally
+    from tui.workflow.tally_record import Tally
 
 JOIN_HINT = "Join first: plainlight join QUEUE HANDLE."
 

@@ -11,7 +11,7 @@ from tui.workflow.clock import utc_now
 from tui.workflow.controls import read_truth
 
 if TYPE_CHECKING:
-    from tui.workflow.tallying import Tally
+    from tui.workflow.tally_record import Tally
 
 
 def team_tally(path: str, controls: str | None = None) -> Tally:
