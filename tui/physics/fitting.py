@@ -7,9 +7,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from tui.model import FloatArray
-from tui.physics.composite import A2, A3, AV, LN_T, WIDTH, X2, X3, Kit, Model, Prediction, kit_for, predict
+from tui.physics.composite import A2, A3, LN_T, WIDTH, X2, X3, Kit, Model, Prediction, kit_for, predict
 from tui.physics.descent import descend
-from tui.physics.likelihood import Errors, chi_square, errors_for, minus_2_ln_l
+from tui.physics.likelihood import Errors, chi_square, errors_for, minus_2_ln_l, residuals
 from tui.physics.problem import Problem
 from tui.physics.scan import scan
 
@@ -66,7 +66,7 @@ def fit(problem: Problem, model: Model, *, r_v: float = 3.1, start: FloatArray |
 
     Args:
         r_v: R_V of the screen where the model does not free it.
-        start: (M, 8) rows to begin from besides the scan's, for nested models; NaN rows are passed over.
+        start: (M, 8) rows to begin from besides the scan's, for nested models.
     """
     kit = kit_for(model, problem.templates, r_v)
     errors = first_errors(problem)
@@ -86,15 +86,14 @@ def fit(problem: Problem, model: Model, *, r_v: float = 3.1, start: FloatArray |
 
 def look(problem: Problem, kit: Kit, errors: Errors, extra: list[FloatArray]) -> tuple[FloatArray, FloatArray]:
     """The lowest of several descents from a scan of the whole range, errors frozen."""
-    best, best_cost = None, None
-    for rows in (*starting_rows(problem, kit, errors), *extra):
-        found = descend(problem, kit, errors, np.where(np.isfinite(rows), rows, 0.0))
-        if best is None:
-            best, best_cost = found.x, found.cost
-            continue
-        lower = found.cost < best_cost
-        best, best_cost = np.where(lower[:, None], found.x, best), np.where(lower, found.cost, best_cost)
-    return best, best_cost
+    starts = np.stack([*starting_rows(problem, kit, errors), *extra])
+    count, m = starts.shape[:2]
+    rows = np.tile(np.arange(m), count)
+    flat = starts.reshape(count * m, WIDTH)
+    found = descend(problem.take(rows), kit, errors.take(rows), flat)
+    cost = found.cost.reshape(count, m)
+    best = cost.argmin(axis=0)
+    return found.x.reshape(count, m, WIDTH)[best, np.arange(m)], cost[best, np.arange(m)]
 
 
 def starting_rows(problem: Problem, kit: Kit, errors: Errors) -> list[FloatArray]:
@@ -113,17 +112,24 @@ def starting_rows(problem: Problem, kit: Kit, errors: Errors) -> list[FloatArray
 
 def settle(problem: Problem, kit: Kit, x: FloatArray) -> tuple[Errors, FloatArray, FloatArray]:
     """Let errors and parameters follow each other until chi-square rests."""
-    before = np.full(len(problem), np.inf)
+    x, cost = x.copy(), np.empty(len(problem))
+    here = predict(kit, x)
+    errors = errors_for(problem, here.flux, here.star, x[:, LN_T])
+    live, before = np.arange(len(problem)), np.full(len(problem), np.inf)
     for _ in range(PASSES):
-        here = predict(kit, x)
-        errors = errors_for(problem, here.flux, here.star, x[:, LN_T])
-        found = descend(problem, kit, errors, x)
-        x = found.x
-        chi2 = chi_square(problem, kit, errors, x, predict(kit, x))
-        if np.all(np.abs(chi2 - before) < SETTLED):
+        some = problem.take(live)
+        here = predict(kit, x[live])
+        own = errors_for(some, here.flux, here.star, x[live, LN_T])
+        found = descend(some, kit, own, x[live])
+        x[live], cost[live] = found.x, found.cost
+        errors = replace_rows(errors, live, own)
+        chi2 = chi_square(some, kit, own, found.x, predict(kit, found.x))
+        moving = np.abs(chi2 - before[live]) >= SETTLED
+        before[live] = chi2
+        live = live[moving]
+        if not live.size:
             break
-        before = chi2
-    return errors, x, found.cost
+    return errors, x, cost
 
 
 def replace_rows(errors: Errors, rows: np.ndarray, some: Errors) -> Errors:
@@ -142,8 +148,6 @@ def finish(problem: Problem, kit: Kit, errors: Errors, x: FloatArray) -> FitBatc
     x = rested(kit, x)
     prediction = predict(kit, x)
     chi2 = chi_square(problem, kit, errors, x, prediction)
-    from tui.physics.likelihood import residuals
-
     cost = residuals(problem, kit, errors, x, prediction).cost
     return FitBatch(kit, problem, errors, x, cost, chi2, minus_2_ln_l(problem, errors, cost), prediction)
 
@@ -157,13 +161,3 @@ def rested(kit: Kit, x: FloatArray) -> FloatArray:
         gone = x[:, column_a] <= 1e-12
         x[gone, column_x], x[gone, column_a] = REST[source], 0.0
     return x
-
-
-def empty_rows(count: int) -> FloatArray:
-    """Rows of parameters that say nothing, (M, 8)."""
-    return np.full((count, WIDTH), np.nan)
-
-
-def screened(model: Model) -> bool:
-    """Whether the model has a screen of extinction."""
-    return AV in model.free

@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
+from functools import cache
 
 import numpy as np
 from numpy.polynomial.chebyshev import chebder, chebvander
@@ -80,10 +81,17 @@ class Reddening:
 
 def _basis(unit: FloatArray, count: int) -> tuple[FloatArray, FloatArray]:
     """Chebyshev polynomials of degree < count and their derivatives, each (M, count)."""
-    basis = chebvander(unit, count - 1)
+    basis = np.empty((unit.size, count))
+    basis[:, 0] = 1.0
+    if count > 1:
+        basis[:, 1] = unit
+        twice = 2.0 * unit
+    for degree in range(2, count):
+        basis[:, degree] = twice * basis[:, degree - 1] - basis[:, degree - 2]
     return basis, basis @ _derivative_matrix(count)
 
 
+@cache
 def _derivative_matrix(count: int) -> FloatArray:
     matrix = np.zeros((count, count))
     for degree in range(1, count):
