@@ -46,7 +46,8 @@ def meaning(n_searched: int | None, survivors: int, pending: int, waiting: int) 
         said.append(_limit_sentence(n_searched, survivors, pending, limit))
         said.append("A null limits only what the search could have seen.")
     if waiting:
-        said.append(f"{waiting} candidates still need reviewers; until then each counts as one that may survive.")
+        who = "1 candidate still needs reviewers" if waiting == 1 else f"{waiting} candidates still need reviewers"
+        said.append(f"{who}; until then each counts as one that may survive.")
     said.append(CAUTION)
     return Meaning(n_searched, survivors, pending, limit, CONFIDENCE, tuple(said))
 

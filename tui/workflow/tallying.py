@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 import sqlite3
 from collections import Counter
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from datetime import datetime
 
 from tui.consensus.controls import ControlRates, control_rates
@@ -47,6 +47,7 @@ def tally(
     counts = Counts()
     for row in team_standing(connection):
         counts.add(row, row.name in truth)
+    counts.add_alike()
     log = rulings.log_by_candidate(connection)
     first = [ruling for rows in log.values() for ruling in first_sealed(rows).values()]
     owing, done, further = who_is_asked(connection, team, counts)
@@ -87,50 +88,66 @@ class Counts:
         self.names: dict[str, list[str]] = {}
         self.splits: dict[int, TeamRow] = {}  # id -> pending candidate with a split
         self.fullest: dict[int, TeamRow] = {}  # id -> pending, needing people, with somebody done
+        self.alike: dict[str, tuple[TeamRow, list[str]]] = {}  # reasons -> first untouched candidate with them, names
+        self.alike_count: Counter[str] = Counter()
 
     def add(self, row: TeamRow, is_control: bool) -> None:
         """Count one candidate, unless it is a control."""
         if is_control:
             self.controls += 1
-            return
-        self.candidates += 1
-        self.count(row.outcome, row.name)
-        if row.outcome == "pending":
-            self.count("under_way" if row.touched else "untouched", row.name)
-            self.add_pending(row)
-        else:
-            self.count("settled", row.name)
+        elif row.touched:
+            self.add_keys(row, 1, [row.name])
+        else:  # nearly all of a long queue: told apart by nothing but their reasons
+            self.alike_count[row.pending_reason] += 1
+            names = self.alike.setdefault(row.pending_reason, (row, []))[1]
+            if len(names) < NAMED:
+                names.append(row.name)
+
+    def add_alike(self) -> None:
+        """Count the untouched candidates, which `add` only collected."""
+        for reasons, (row, names) in self.alike.items():
+            self.add_keys(row, self.alike_count[reasons], names)
+
+    def add_keys(self, row: TeamRow, many: int, names: list[str]) -> None:
+        """Count candidates that are all like `row`."""
+        self.candidates += many
+        for key in self.keys_of(row):
+            self.of[key] += many
+            held = self.names.setdefault(key, [])
+            held += names[: NAMED - len(held)]
+
+    def keys_of(self, row: TeamRow) -> Iterator[str]:
+        """All that one candidate counts under."""
+        yield row.outcome
+        if row.outcome != "pending":
+            yield "settled"
             if row.cause == "parted":
-                self.count("parted", row.name)
+                yield "parted"
+        else:
+            yield "under_way" if row.touched else "untouched"
+            yield from self.pending_keys(row)
         for check in CHECKS:
             counted = row.counts[check]
             is_ruled = counted.explains + counted.short + counted.unclear > 0
             state = row.states[check]
-            self.count(f"{'none' if state == 'open' and not is_ruled else state}:{check}", row.name)
+            yield f"{'none' if state == 'open' and not is_ruled else state}:{check}"
             if counted.stale:
-                self.count(f"stale:{check}", row.name)
+                yield f"stale:{check}"
         if any(row.counts[check].stale for check in CHECKS):
-            self.count("stale", row.name)
+            yield "stale"
 
-    def add_pending(self, row: TeamRow) -> None:
-        """Whether it needs people, and which."""
+    def pending_keys(self, row: TeamRow) -> Iterator[str]:
+        """Whether a pending candidate needs people, and which are to be asked after."""
         reasons = row.pending_reason.split(";")
         if all(reason.startswith("nodata:") for reason in reasons):
-            self.count("nodata", row.name)
+            yield "nodata"
             return
-        self.count("needs", row.name)
+        yield "needs"
         if any(reason.startswith("split:") for reason in reasons):
-            self.count("split", row.name)
+            yield "split"
             self.splits[row.id] = row
         if row.done:
             self.fullest[row.id] = row
-
-    def count(self, key: str, name: str) -> None:
-        """One more under a key."""
-        self.of[key] += 1
-        names = self.names.setdefault(key, [])
-        if len(names) < NAMED:
-            names.append(name)
 
     def line(self, key: str, words: str) -> Line:
         """The line of a key."""
