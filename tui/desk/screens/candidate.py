@@ -63,7 +63,7 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
         with Horizontal(id="walk-middle"):
             yield SpectrumPlot(id="walk-plot")
             yield RowsView(lambda width, height: draw_numbers(self.walk, width, height), id="walk-numbers")
-        yield RowsView(lambda width, height: page_rows(self.walk, width) if self.walk.page else [], id="walk-page")
+        yield RowsView(lambda width, height: page_rows(self.walk, width) if self.walk.page else [], scrolls=True, id="walk-page")
         yield NoteEditor(id="walk-note")
         yield RowsView(self._foot, id="walk-foot")
 
@@ -83,13 +83,14 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
 
     def lay_out(self, width: int, height: int) -> None:
         """Give every part its rows and columns."""
-        share = shares(width, height, self.walk.plot_only, advice_height(self.walk, width))
+        writing = self._draft_of is not None
+        share = shares(width, height, self.walk.plot_only, 0 if writing else advice_height(self.walk, width))
         self.query_one("#walk-head").styles.height = share.head
         self.query_one("#walk-foot").styles.height = share.foot
         self.query_one("#walk-numbers").styles.width = max(share.side, 1)
         self.set_class(self.walk.plot_only, "-plot-only")
         self.set_class(self.walk.page > 0, "-page")
-        self.set_class(self._draft_of is not None, "-writing")
+        self.set_class(writing, "-writing")
 
     def on_key(self, event: events.Key) -> None:
         """Keys typed before this page was drawn were meant for the one before: drop them."""

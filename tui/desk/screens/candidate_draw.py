@@ -6,11 +6,19 @@ from collections.abc import Mapping
 from typing import TYPE_CHECKING
 
 from tui.desk.screens.candidate_keys import offered, writing
-from tui.desk.screens.questions import caution_line, look_at, oddness_words, question
+from tui.desk.screens.questions import STRONG, caution_line, look_at, oddness_words, question
 from tui.desk.screens.walk import Walk
-from tui.desk.text import RULING_WORDS, fit, number, safe
+from tui.desk.text import RULING_WORDS, fit, number, safe, short_band, signed
 from tui.desk.widgets.check_line import check_row, title_row
-from tui.desk.widgets.numbers import WIDE, fit_rows_of, param_rows
+from tui.desk.widgets.numbers import (
+    WIDE,
+    Beside,
+    adequate_word,
+    fit_title,
+    fits_table,
+    number_rows,
+    param_rows,
+)
 from tui.desk.widgets.plot_points import point_words
 from tui.desk.widgets.rule_block import RuleFacts, advice_parts, advice_rows, key_rows, rule_row
 from tui.desk.widgets.rows import Row, fit_row, paragraph, row
@@ -27,7 +35,7 @@ def draw_head(walk: Walk, width: int, height: int, right: str) -> list[Row]:
     """Name and standing, the five checks, the question."""
     view = walk.loaded.view if walk.loaded else None
     rows = [title_row(width, walk.name, oddness_words(walk.evidence.get("star")), view, right), check_row(width, view, walk.check)]
-    asked = question(walk.check, walk.evidence) if walk.evidence else "computing the evidence ..."
+    asked = question(walk.check, walk.evidence, width - 2) if walk.evidence else "computing the evidence ..."
     if walk.trouble:
         asked = "There is no evidence for this candidate."
     lines = [[*row(" "), *line] for line in paragraph(asked, width - 2, "question")]
@@ -39,20 +47,52 @@ def draw_head(walk: Walk, width: int, height: int, right: str) -> list[Row]:
 
 
 def draw_numbers(walk: Walk, width: int, height: int) -> list[Row]:
-    """The numbers of the fit that is drawn; by hand, with what is held; with room, the other checks' fits."""
+    """The numbers of the fit that is drawn, beside another; with room, all fits and all measurements."""
+    own, shown = walk.own_evidence, walk.fit
+    if own is None:
+        return [row(("computing ..." if not walk.trouble else "no evidence", "quiet"))]
+    if shown is None:
+        return [row(("no fit", "head")), row(("adequate  ", "quiet"), adequate_word(own))]
     hand = walk.hand
-    star = walk.evidence.get("star")
-    rows = fit_rows_of(width, height, walk.own_evidence, star, walk.fit_index, hand.fit if hand else None)
-    if hand is not None and walk.fit is not None:
-        rows = rows[: len(rows) - len(walk.fit.params)] + param_rows(width, walk.fit.params, tuple(hand.fixed), hand.param)
-        rows += [[], *paragraph("= held  > the arrows change it", width, "quiet")]
-        if hand.dropped:
-            rows += paragraph("dropped: " + ", ".join(sorted(hand.dropped)), width, "quiet")
-    if walk.compared:
-        rows += [[], *_compared_rows(walk, width)]
-    if width >= WIDE and walk.loaded is not None and height - len(rows) > 8:
-        rows += [[], *_all_checks(walk, width)]
+    title = row(("by hand: ", "message"), (safe(shown.model), "head")) if hand else fit_title(width, own, walk.fit_index)
+    rows = number_rows(width, shown, title, _beside(walk), "" if hand else adequate_word(own))
+    params = param_rows(width, shown.params, tuple(hand.fixed) if hand else (), hand.param if hand else "")
+    rows += [[], *params] if len(rows) + len(params) < height else params
+    if hand is not None:
+        rows += _hand_rows(walk, width)
+    if walk.compared and walk.evidence.get(walk.compared) is not None:
+        rows += _compared_rows(walk, width)[: max(0, height - len(rows))]
+    for block in _further_blocks(walk, width):
+        if len(rows) + 1 + len(block) <= height:
+            rows += [[], *block]
     return [fit_row(line, width) for line in rows]
+
+
+def _beside(walk: Walk) -> Beside | None:
+    """What the shown fit is held against: the fit as it was, the check compared with, else the star alone."""
+    compared = walk.evidence.get(walk.compared) if walk.compared else None
+    if walk.hand is not None and walk.hand.fit is not None:
+        return Beside("as fitted", walk.own_evidence.fits[walk.fit_index])
+    if compared is not None and compared.best is not None:
+        return Beside(CHECK_TITLES[walk.compared], compared.best)
+    star = walk.evidence.get("star")
+    if walk.check != "star" and star is not None and star.best is not None:
+        return Beside("star alone", star.best)
+    return None
+
+
+def _hand_rows(walk: Walk, width: int) -> list[Row]:
+    dropped = sorted(short_band(band) for band in walk.hand.dropped)
+    return paragraph("dropped: " + ", ".join(dropped), width, "quiet") if dropped else []
+
+
+def _further_blocks(walk: Walk, width: int) -> list[list[Row]]:
+    """What a wide screen has room for, the most needed first."""
+    own = walk.own_evidence
+    if width < WIDE or walk.loaded is None:
+        return []
+    blocks = [fits_table(width, own.fits, walk.fit_index)] if len(own.fits) > 1 and walk.hand is None else []
+    return [*blocks, _all_checks(walk, width), points_table(walk, width), facts_rows(walk, width)]
 
 
 def draw_foot(
@@ -60,7 +100,7 @@ def draw_foot(
 ) -> list[Row]:
     """Advice, the ruling line, the keys that work now."""
     message, point, look, caution = advice(walk)
-    rows = advice_rows(width, height - 1 - KEY_ROWS, message, point, look, caution)
+    rows = advice_rows(width, height - 1 - KEY_ROWS, message, point, look, caution) if height > 1 + KEY_ROWS else []
     rows.append(rule_row(width, rule_facts(walk, session)))
     keys = writing() if is_writing else offered(walk, keymap)
     return [fit_row(line, width, more=" ..") for line in [*rows, *key_rows(width, keys, KEY_ROWS)]]
@@ -98,14 +138,31 @@ def rule_facts(walk: Walk, session: Session) -> RuleFacts:
 
 
 def _compared_rows(walk: Walk, width: int) -> list[Row]:
-    found = walk.evidence.get(walk.compared)
-    if found is None or found.best is None:
-        return [row((f"{walk.compared}: no fit", "quiet"))]
-    best = found.best
-    rows = [row(("+ ", "other"), (f"{CHECK_TITLES[walk.compared]}: {safe(best.model)}", "head"))]
-    if walk.fit is not None:
-        rows += paragraph(f"chi2 {best.chi2:.1f} with {best.dof} dof; BIC {best.bic - walk.fit.bic:+.1f} against this fit", width, "quiet")
-    return rows + param_rows(width, best.params)
+    """The best fit of the check compared with, whose pulls are the + marks."""
+    best = walk.evidence[walk.compared].best
+    if best is None:
+        return [[], row((f"{CHECK_TITLES[walk.compared]}: no fit", "quiet"))]
+    return [row(("+ ", "other"), (safe(best.model), "head")), *param_rows(width, best.params)]
+
+
+def points_table(walk: Walk, width: int) -> list[Row]:
+    """Every drawn point by wavelength, with its pull as a number and a bar."""
+    points = sorted(walk.plot().points, key=lambda point: point.wave_um)
+    rows = [row((f" {'band':<8}{'micron':>8}{'mJy':>12}{'error':>10}{'pull':>8}", "head"))]
+    for point in points:
+        flux = f"{'<' if point.limit else ''}{number(point.flux_jy * 1e3)}"
+        error = "limit" if point.limit else number(point.error_high_jy * 1e3, 2)
+        text = f" {fit(short_band(point.band), 8)}{number(point.wave_um):>8}{flux:>12}{error:>10}{signed(point.pull):>8}"
+        style = "dropped" if point.dropped else "limit" if point.limit else "strong" if abs(point.pull) >= STRONG else ""
+        rows.append(row((text, style), (" not fitted" if point.dropped and width >= 60 else "", "quiet")))
+    return rows
+
+
+def facts_rows(walk: Walk, width: int) -> list[Row]:
+    """The catalogues' facts in a few lines."""
+    facts = walk.loaded.candidate.facts
+    text = "   ".join(f"{safe(key)} {number(value, 6) if isinstance(value, float) else safe(value)}" for key, value in facts.items())
+    return [row((" facts", "head")), *([*row(" "), *line] for line in paragraph(text, width - 2)[:8])] if text else []
 
 
 def _all_checks(walk: Walk, width: int) -> list[Row]:

@@ -67,7 +67,7 @@ def offered(walk: Walk, keymap: Mapping[str, str]) -> list[Entry]:
         if walk.loaded is not None and walk.check in walk.loaded.view.own:
             entries.insert(place, (_keys("withdraw", keymap), "withdraw", "withdraw()"))
     if walk.compared:
-        entries.insert(0, (_keys("compare", keymap), f"without {walk.compared}", "compare()"))
+        entries = [(keys, f"without {walk.compared}" if label == "compare" else label, action) for keys, label, action in entries]
     return entries
 
 
@@ -80,14 +80,14 @@ def _hand(walk: Walk, keymap: Mapping[str, str]) -> list[Entry]:
     hand = walk.hand
     param = walk.fit.params.get(hand.param) if walk.fit and hand.param else None
     label = param_name(hand.param, param).short if param is not None else "nothing"
-    entries = [(_keys("up down", keymap), f"change {label}", "")] if param is not None else []
+    entries = [(_keys("up down", keymap), label, "")] if param is not None else []
     if len(hand.params) > 1:
-        entries.append((_keys("next_check", keymap), "other number", "next_check()"))
+        entries.append((_keys("next_check", keymap), "next number", "next_check()"))
     return [
         *entries,
+        (_keys("release", keymap), "fit it", "release()"),
         (_keys("left right", keymap), "points", ""),
-        (_keys("drop", keymap), "drop the band or take it in", "drop()"),
-        (_keys("release", keymap), "let it fit", "release()"),
+        (_keys("drop", keymap), "drop the band", "drop()"),
         (_keys("reset", keymap), "all as fitted", "reset()"),
         (_keys("hand", keymap), "leave", "hand()"),
         (_keys("help", keymap), "help", "help()"),

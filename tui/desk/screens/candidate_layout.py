@@ -18,20 +18,20 @@ def shares(width: int, height: int, plot_only: bool = False, advice: int = 2) ->
     """The plot gets what is left: 51 x 16 at 80 x 24, about 126 x 45 at 200 x 60.
 
     Args:
-        advice: rows that advice and caution would take in full; a row or so is found for them.
+        advice: rows that advice and caution would take in full; 0 while a note is written in their place.
 
     >>> shares(80, 24)
     Shares(head=3, foot=5, side=29)
     """
     head = 3 if height < 32 else 5
+    if advice == 0:
+        return Shares(head, 3, _side(width) if not plot_only else 0)
     least, most = (2, 3) if height < 32 else (3, 5) if height < 45 else (4, 7)
     foot = min(max(advice, least), most) + 3  # then the ruling line and two rows of keys
-    if plot_only:
-        return Shares(head, foot, 0)
+    return Shares(head, foot, 0 if plot_only else _side(width))
+
+
+def _side(width: int) -> int:
     if width < 100:
-        side = 29 + max(0, (width - 80) // 2)
-    elif width < 165:
-        side = 40 + (width - 100) // 4
-    else:
-        side = min(90, width - 126)
-    return Shares(head, foot, side)
+        return 29 + max(0, (width - 80) // 2)
+    return 40 + (width - 100) // 4 if width < 165 else min(90, width - 126)

@@ -35,8 +35,8 @@ def facts_page(walk: Walk, width: int) -> list[Row]:
     rows += [[], _head("other sources near it")]
     for neighbour in candidate.neighbours:
         fluxes = ", ".join(f"{short_band(band)} {number(flux * 1e3)} mJy" for band, flux in neighbour.fluxes_jy.items())
-        text = f"  {neighbour.separation_arcsec:.1f} arcsec at {neighbour.position_angle_deg:.0f} deg  {fluxes}  {safe(neighbour.source)}"
-        rows += paragraph(text, width, indent=4)
+        text = f"{neighbour.separation_arcsec:.1f} arcsec at {neighbour.position_angle_deg:.0f} deg  {fluxes}  {safe(neighbour.source)}"
+        rows += paragraph(text, width, indent=4, lead="  ")
     return rows if candidate.neighbours else [*rows, _quiet("none loaded")]
 
 
@@ -44,7 +44,9 @@ def measurements_page(walk: Walk, width: int) -> list[Row]:
     """Every measurement as given and as fitted, by wavelength."""
     bands, fitted = walk.loaded.bands, walk.own_evidence.bands if walk.own_evidence else ()
     pulls = walk.fit.pulls if walk.fit else {}
-    rows = [row(("  band        micron      flux, mJy       error     pull  source        epoch       flags and notes", "head"))]
+    roomy = width >= 100
+    head = f"  {'band':<8}{'micron':>8}{'mJy':>11}{'error':>9}{'pull':>8}  {'source':<12}{'epoch':<12}"
+    rows = [row((head if roomy else head.rstrip() + " flags", "head"), ("flags and notes" if roomy else "", "head"))]
     measurements = sorted(walk.loaded.candidate.measurements, key=lambda one: _pivot(one.band, bands))
     for one in measurements:
         rows += _measurement_rows(one, _pivot(one.band, bands), pulls.get(one.band), bool(fitted) and one.band not in fitted, width)
@@ -144,8 +146,8 @@ def story_page(walk: Walk, width: int) -> list[Row]:
         stamp = safe(line.utc[:16].replace("T", " "))
         new = "*" if line.since_mine else " "
         check = f" {CHECK_TITLES.get(line.check, safe(line.check))}" if line.check else ""
-        text = f"{new} {stamp}  {safe(line.what)}{check}  {safe(line.who)}  {line.text}"
-        rows += paragraph(text, width, "strong" if line.since_mine else "", indent=4)
+        text = f"{stamp}  {safe(line.what)}{check}  {safe(line.who)}  {line.text}"
+        rows += paragraph(text, width, "strong" if line.since_mine else "", indent=4, lead=f"{new} ")
     if any(line.since_mine for line in walk.story):
         rows += [[], _quiet("* after your newest ruling here")]
     return rows if walk.story else [*rows, _quiet("nothing yet")]
@@ -202,7 +204,7 @@ def _words(value: Any) -> str:
     if isinstance(value, bool):
         return "yes" if value else "no"
     if isinstance(value, float):
-        return number(value, 4)
+        return f"{value:.8g}"
     if isinstance(value, Mapping):
         return ", ".join(f"{safe(key)} {_words(item)}" for key, item in value.items())
     if isinstance(value, (list, tuple)):
@@ -215,14 +217,19 @@ def _pivot(band: str, bands: Mapping[str, Any]) -> float:
 
 
 def _measurement_rows(one: Measurement, pivot: float, pull: float | None, left_out: bool, width: int) -> list[Row]:
+    """One measurement; what does not fit its row goes on below it."""
     flux = f"{'<' if one.limit else ''}{number(one.flux_jy * 1e3)}"
     error = f"{one.nsigma:g} sigma" if one.limit else number(one.error_jy * 1e3, 2)
-    why = "x excluded " if one.exclude else "x not fitted " if left_out else ""
-    flags = " ".join(f"{safe(key)}={safe(text)}" for key, text in one.flags.items())
+    why = "x excluded" if one.exclude else "x not fitted" if left_out else ""
+    flags = [f"{safe(key)}={safe(text)}" for key, text in one.flags.items()]
+    further = " ".join(part for part in (why, *flags, safe(one.note)) if part)
     micron = number(pivot) if pivot < float("inf") else "?"
-    text = (f"  {fit(short_band(one.band), 10)}{micron:>8}{flux:>15}{error:>12}{signed(pull):>9}  "
-            f"{fit(safe(one.source), 13)} {fit(safe(one.epoch), 11)} {why}{flags} {safe(one.note)}")  # fmt: skip
-    return paragraph(text.rstrip(), width, "dropped" if why else "limit" if one.limit else "", indent=6) if len(text) > width else [row(text)]
+    text = (f"  {fit(short_band(one.band), 8)}{micron:>8}{flux:>11}{error:>9}{signed(pull):>8}  "
+            f"{fit(safe(one.source), 11)} {fit(safe(one.epoch), 11)} ")  # fmt: skip
+    style = "dropped" if why else "limit" if one.limit else ""
+    if len(text) + len(further) <= width:
+        return [row((text + further, style))]
+    return [row((text, style)), *paragraph(further, width, style, indent=10, lead=" " * 10)]
 
 
 def _ruling_rows(check: str, who: str, ruling: str, utc: str, note: str, stale: str, width: int) -> list[Row]:

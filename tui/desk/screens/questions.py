@@ -9,7 +9,7 @@ from tui.desk.text import listed, short_band, signed
 from tui.model import Evidence, Fit
 
 STRONG = 3.0  # sigma: from here on a band is named as leaving the model
-NAMED = 3  # bands named one by one; more are counted
+NAMED = 4  # bands named one by one; more are counted
 
 ASKS = {
     "instrument": "Could {bands} be badly measured rather than truly {way}?",
@@ -19,24 +19,27 @@ ASKS = {
 }
 ASKS_PLAIN = {
     "instrument": "No band leaves the star alone by 3 sigma. Is any of them badly measured?",
-    "extinction": "No band leaves the star alone by 3 sigma. Does extinction change these data at all?",
-    "blend": "No band leaves the star alone by 3 sigma. Is there a second source in the beam?",
+    "extinction": "No band leaves the star alone by 3 sigma. Does extinction matter at all?",
+    "blend": "No band leaves the star alone by 3 sigma. Is there a second source?",
     "dust": "No band leaves the star alone by 3 sigma. Is there warm dust at all?",
 }
 
 
-def question(check: str, evidence: Mapping[str, Evidence]) -> str:
-    """What the reviewer is asked on this check, of this candidate."""
+def question(check: str, evidence: Mapping[str, Evidence], room: int = 200) -> str:
+    """What the reviewer is asked on this check, of this candidate.
+
+    Args:
+        room: columns of one line; bands are counted instead of named until the question fits.
+    """
     star = evidence.get("star")
     fit = star.best if star else None
     if fit is None:
-        return f"Nothing could be fitted to the star alone. Does {ARTICLES[check]} explain this candidate?"
+        return f"Nothing could be fitted to the star alone. Does {ARTICLES[check]} explain it?"
     strong = strong_pulls(fit)
-    if check == "star":
-        return _star_question(fit, strong)
     if not strong:
-        return ASKS_PLAIN[check]
-    return ASKS[check].format(bands=_bands(strong), way=_way(strong))
+        return ASKS_PLAIN[check] if check != "star" else _plain_star(fit)
+    asked = [_asked(check, strong, bands) for bands in _band_words(list(strong))]
+    return next((text for text in asked if len(text) <= room), asked[-1])
 
 
 ARTICLES = {
@@ -106,19 +109,25 @@ def oddness_words(star: Evidence | None) -> str:
     return f"odd by {short_band(band)} {signed(pulls[band])}"
 
 
-def _star_question(fit: Fit, strong: Mapping[str, float]) -> str:
-    if strong:
-        verb = "is" if len(strong) == 1 else "are"
-        return f"Is it a plain star after all? {_bands(strong, start=True)} {verb} {_way(strong, more=True)} than the best star."
+def _plain_star(fit: Fit) -> str:
     worst = max((abs(pull) for pull in fit.pulls.values() if math.isfinite(pull)), default=0.0)
     return f"Is it a plain star? The best one meets every band within {worst:.1f} sigma."
 
 
-def _bands(pulls: Mapping[str, float], start: bool = False) -> str:
-    names = [short_band(band) for band in pulls]
-    if len(names) <= NAMED:
-        return listed(names)
-    return f"{names[0]}, {names[1]} and {len(names) - 2} more bands"
+def _asked(check: str, strong: Mapping[str, float], bands: str) -> str:
+    if check != "star":
+        return ASKS[check].format(bands=bands, way=_way(strong))
+    verb = "is" if len(strong) == 1 else "are"
+    start = bands[0].upper() + bands[1:] if bands.startswith("its") else bands
+    return f"Is it a plain star after all? {start} {verb} {_way(strong, more=True)}."
+
+
+def _band_words(bands: Sequence[str]) -> list[str]:
+    """The bands in words, at less and less length."""
+    names = [short_band(band) for band in bands]
+    words = [listed(names)] if len(names) <= NAMED else []
+    words += [f"{', '.join(names[:count])} and {len(names) - count} more bands" for count in (3, 2, 1) if len(names) > count + 1]
+    return [*words, f"{len(names)} bands" if len(names) > 1 else names[0]]
 
 
 def _way(pulls: Mapping[str, float], more: bool = False) -> str:

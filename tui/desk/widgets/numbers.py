@@ -43,32 +43,27 @@ NAMES: Mapping[str, ParamName] = {
 }
 
 
-def fit_rows_of(
-    width: int, height: int, evidence: Evidence | None, star: Evidence | None, index: int, held: Fit | None = None
-) -> list[Row]:
-    """The numbers of one check at a given size, the most needed first.
+@dataclass(frozen=True, slots=True)
+class Beside:
+    """A fit to hold the shown one against: the star alone, the fit before hands were laid on it, another check's."""
 
-    Args:
-        evidence: the check's; None while it is being computed.
-        star: the star-only evidence that every other check is held against.
-        index: which of the check's fits is plotted.
-        held: a fit made by hand, in place of the plotted one.
-    """
-    if evidence is None:
-        return [row(("computing ...", "quiet"))]
-    fit = held or (evidence.fits[index] if index < len(evidence.fits) else None)
-    if fit is None:
-        return [row(("no fit", "head")), row(("adequate  ", "quiet"), adequate_word(evidence))]
-    alone = star.best if star and evidence.kind != "star" else None
-    rows = [_title(width, evidence, index, held), *statistic_rows(width, fit, alone)]
-    rows += chance_rows(width, fit)
-    rows += [] if held else [row(("adequate  ", "quiet"), adequate_word(evidence))]
-    params = param_rows(width, fit.params)
-    gap: list[Row] = [[]] if len(rows) + len(params) < height else []
-    rows += gap + params
-    if width >= WIDE and len(evidence.fits) > 1:
-        rows += [[], *fits_table(width, evidence.fits, index)]
-    return rows
+    label: str
+    fit: Fit
+
+
+def number_rows(width: int, fit: Fit, title: Row, beside: Beside | None, adequate: str = "") -> list[Row]:
+    """A fit's statistics, what its p means, and what the evidence itself says."""
+    rows = [title, *statistic_rows(width, fit, beside), *chance_rows(width, fit)]
+    return rows + ([row(("adequate  ", "quiet"), adequate)] if adequate else [])
+
+
+def fit_title(width: int, evidence: Evidence, index: int) -> Row:
+    """The model's name, and which of how many fits it is."""
+    count = len(evidence.fits)
+    model = safe(evidence.fits[index].model)
+    which = f"  fit {index + 1} of {count}" if count > 1 else ""
+    short = which if len(model) + len(which) <= width else f" {index + 1}/{count}" if count > 1 else ""
+    return row((model, "head"), (short, "quiet"))
 
 
 def adequate_word(evidence: Evidence) -> str:
@@ -76,15 +71,15 @@ def adequate_word(evidence: Evidence) -> str:
     return "untestable" if evidence.adequate is None else "yes" if evidence.adequate else "no"
 
 
-def statistic_rows(width: int, fit: Fit, alone: Fit | None) -> list[Row]:
-    """chi2, dof, p and BIC, the star alone beside them."""
-    columns = [_statistics(fit)] + ([_statistics(alone)] if alone else [])
-    labels = ("chi2", "dof", "p", "BIC")
+def statistic_rows(width: int, fit: Fit, beside: Beside | None) -> list[Row]:
+    """chi2, dof, p and BIC, those of another fit beside them."""
+    columns = [_statistics(fit)] + ([_statistics(beside.fit)] if beside else [])
     room = max(8, (width - 6) // 2 if width < WIDE else 12)
-    rows = [row(" " * 6, (" this fit".rjust(room), "head"), ("star alone".rjust(room) if alone else "", "quiet"))]
-    for line, label in enumerate(labels):
+    label = beside.label if beside else ""
+    rows = [row(" " * 6, ("this fit".rjust(room), "head"), (label.rjust(room) if label else "", "quiet"))]
+    for line, name in enumerate(("chi2", "dof", "p", "BIC")):
         cells = [column[line].rjust(room) for column in columns]
-        rows.append(row((label.ljust(6), "quiet"), (cells[0], "strong"), *((cell, "quiet") for cell in cells[1:])))
+        rows.append(row((name.ljust(6), "quiet"), (cells[0], "strong"), *((cell, "quiet") for cell in cells[1:])))
     return rows
 
 
@@ -92,7 +87,9 @@ def chance_rows(width: int, fit: Fit) -> list[Row]:
     """What p means, in words."""
     if fit.p is None or math.isnan(fit.p):
         return []
-    return paragraph(f"chance alone does this {once_in(fit.p)}", width, "", indent=1)
+    odds = once_in(fit.p)
+    said = (f"chance alone does this {odds}", f"chance alone: {odds}", f"chance: {odds}")
+    return [row(next((text for text in said if len(text) <= width), said[-1]))]
 
 
 def param_rows(width: int, params: Mapping[str, Param], held: Sequence[str] = (), chosen: str = "") -> list[Row]:
@@ -103,10 +100,10 @@ def param_rows(width: int, params: Mapping[str, Param], held: Sequence[str] = ()
     names = [param_name(key, param) for key, param in params.items()]
     labels = [f"{name.label if wide else name.short}{' ' + name.unit if name.unit and not wide else ''}" for name in names]
     values, errors = [], []
-    for name, param in zip(names, params.values(), strict=True):
+    for key, name, param in zip(params, names, params.values(), strict=True):
         value, error = value_and_error(param, name.factor, wide)
-        values.append(value)
-        errors.append(error)
+        values.append(value if key not in held else number(param.value * name.factor, 4))
+        errors.append(error if key not in held else " held")
     label_width = min(max(len(label) for label in labels), 24 if wide else 11)
     rows = []
     lines = zip(params, labels, decimal_aligned(values), errors, names, strict=True)
@@ -192,19 +189,9 @@ def fits_table(width: int, fits: Sequence[Fit], shown: int) -> list[Row]:
     return rows
 
 
-def _title(width: int, evidence: Evidence, index: int, held: Fit | None) -> Row:
-    if held is not None:
-        return row(("by hand: ", "message"), (safe(held.model), "head"))
-    count = len(evidence.fits)
-    model = safe(evidence.fits[index].model)
-    which = f"  fit {index + 1} of {count}" if count > 1 else ""
-    short = which if len(model) + len(which) <= width else f" {index + 1}/{count}" if count > 1 else ""
-    return row((model, "head"), (short, "quiet"))
-
-
 def _statistics(fit: Fit) -> list[str]:
     chi2, bic = decimal_aligned([_tenth(fit.chi2), _tenth(fit.bic)])
-    return [chi2, f"{fit.dof}  ", _whole_e(number(fit.p, 1)), bic]
+    return [chi2, f"{fit.dof}  ", _whole_e(number(fit.p, 1)) if fit.p != 0 else "<1e-300", bic]
 
 
 def _whole_e(text: str) -> str:

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from tui.desk.text import number, safe, short_band, signed
+from tui.desk.text import number, safe, short_band
 from tui.desk.widgets.plot_data import PlotCurve, PlotData, PlotPoint
 from tui.model import Band, Candidate, Evidence, Fit, Measurement
 
@@ -83,9 +83,8 @@ def point_words(plot: PlotData, index: int, measurement: Measurement) -> str:
     if point.limit:
         words = f"{name} {number(point.wave_um)} micron: below {number(point.flux_jy * scale)} {unit} ({measurement.nsigma:g} sigma)"
     else:
-        words = f"{name} {number(point.wave_um)} micron: {number(point.flux_jy * scale)} {unit}"
-        if measurement.error_jy > 0:
-            words += f" +- {number(measurement.error_jy * scale, 2)}"
+        error = f" +- {number(measurement.error_jy * scale, 2)}" if measurement.error_jy > 0 else ""
+        words = f"{name} {number(point.wave_um)} micron: {number(point.flux_jy * scale)}{error} {unit}"
     if math.isfinite(point.pull):
         words += ", " + pull_words(point.pull, point.limit)
     if point.dropped:
@@ -101,7 +100,7 @@ def pull_words(pull: float, limit: bool) -> str:
         return "limit met" if pull == 0 else f"the model breaks the limit by {abs(pull):.1f} sigma"
     if abs(pull) < 0.05:
         return "on the model"
-    return f"{signed(pull)} sigma, {'above' if pull > 0 else 'below'} the model"
+    return f"{abs(pull):.1f} sigma {'above' if pull > 0 else 'below'} the model"
 
 
 def drawn_measurements(candidate: Candidate, bands: Mapping[str, Band]) -> list[Measurement]:

@@ -12,11 +12,11 @@ if TYPE_CHECKING:
     from tui.desk.widgets.plot_draw import Frame
 
 SPANS = (3.0, 5.0, 10.0)  # sigma: half heights of the strip
-INSIDE = 0.75  # share of the points that the strip must hold
+INSIDE = 0.6  # share of the points that the strip must hold: the rest may be written as numbers
 
 
 def strip_span(plot: PlotData) -> float:
-    """Half height of the strip in sigma: the smallest that holds three quarters of the points."""
+    """Half height of the strip in sigma: the smallest that holds most of the points."""
     sizes = sorted(abs(point.pull) for point in plot.points if math.isfinite(point.pull))
     if not sizes:
         return SPANS[0]
@@ -89,9 +89,16 @@ def _write_pull(canvas: Canvas, frame: Frame, point: PlotPoint, style: str) -> N
     places = ((edge, column + 1), (edge, column - len(text)), (edge + inward, column - len(text) // 2),
               (edge + inward, column + 1), (edge + inward, column - len(text)))  # fmt: skip
     for line, start in places:
-        if start >= frame.left and start + len(text) <= frame.right and canvas.is_free(line, start, len(text)):
+        if start < frame.left or start + len(text) > frame.right or not canvas.is_free(line, start, len(text)):
+            continue
+        if all(_is_clear(canvas, line, side, line == edge and side == column) for side in (start - 1, start + len(text))):
             canvas.put(line, start, text, style)
             return
+
+
+def _is_clear(canvas: Canvas, line: int, column: int, own_arrow: bool) -> bool:
+    """Whether a cell beside a number holds no text of another point."""
+    return own_arrow or not 0 <= column < canvas.width or canvas.is_free(line, column, 1)
 
 
 def _y(pull: float, span: float, top: int, rows: int) -> float:

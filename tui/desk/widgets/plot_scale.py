@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -11,7 +12,7 @@ from numpy.typing import ArrayLike
 from tui.model import FloatArray
 
 UNITS_JY = ((0, "Jy"), (-3, "mJy"), (-6, "uJy"), (-9, "nJy"))
-STEPS = (1.0, 2.0, 5.0)
+STEPS = ((1.0, 2.0, 5.0), (1.0, 3.0))  # within a decade, the finer set where it fits
 
 
 @dataclass(frozen=True, slots=True)
@@ -41,18 +42,22 @@ def ticks(low: float, high: float, room: int) -> list[float]:
     >>> ticks(-6.0, 0.0, 4)
     [1e-06, 0.0001, 0.01, 1.0]
     """
-    first, last = math.floor(low), math.ceil(high)
-    fine = [step * 10.0**power for power in range(first, last + 1) for step in STEPS]
-    fine = [value for value in fine if low <= math.log10(value) <= high]
-    if len(fine) < 2:
+    finest = _stepped(low, high, STEPS[0])
+    if len(finest) < 2:
         return _even_ticks(low, high, room)
-    if len(fine) <= room:
-        return [_round(value) for value in fine]
-    decades = [power for power in range(first, last + 1) if low <= power <= high]
+    for steps in STEPS:
+        values = _stepped(low, high, steps)
+        if len(values) <= room:
+            return values
+    decades = _stepped(low, high, (1.0,))
     if not decades:
-        return [_round(value) for value in fine[:: max(1, math.ceil(len(fine) / max(room, 1)))]]
-    every = max(1, math.ceil(len(decades) / max(room, 1)))
-    return [_round(10.0**power) for power in decades[::every]]
+        return finest[:: max(1, math.ceil(len(finest) / max(room, 1)))]
+    return decades[:: max(1, math.ceil(len(decades) / max(room, 1)))]
+
+
+def _stepped(low: float, high: float, steps: Sequence[float]) -> list[float]:
+    values = [step * 10.0**power for power in range(math.floor(low), math.ceil(high) + 1) for step in steps]
+    return [_round(value) for value in values if low <= math.log10(value) <= high]
 
 
 def _even_ticks(low: float, high: float, room: int) -> list[float]:

@@ -68,16 +68,21 @@ def fit_rows(rows: Iterable[Row], width: int, height: int) -> list[Row]:
     return fitted + [[Span(" " * width)] for _ in range(height - len(fitted))]
 
 
-def paragraph(text: str, width: int, style: str = "", indent: int = 0) -> list[Row]:
-    """`text`, made safe, as rows no wider than `width` columns; its own line ends are kept, later rows indented.
+def paragraph(text: str, width: int, style: str = "", indent: int = 0, lead: str = "") -> list[Row]:
+    """`text`, made safe, as rows no wider than `width` columns; its own line ends are kept.
 
-    >>> [row_text(line) for line in paragraph("one two three", 8)]
-    ['one two', 'three']
+    Args:
+        indent: columns by which every row but the first stands in.
+        lead: what the first row begins with, spaces mostly.
+
+    >>> [row_text(line) for line in paragraph("one two three", 9, lead="* ", indent=2)]
+    ['* one two', '  three']
     """
     rows: list[Row] = []
     for line in safe_lines(text):
-        first, *rest = wrap(line, max(1, width))
-        rows.append([Span(first, style)])
+        start = lead if not rows else " " * indent
+        first, *rest = wrap(line, max(1, width - cell_len(start)))
+        rows.append([Span(start + first, style)])
         if rest:
             rest = wrap(" ".join(rest), max(1, width - indent))
         rows += [[Span(" " * indent + part, style)] for part in rest]

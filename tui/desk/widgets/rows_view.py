@@ -30,8 +30,9 @@ class RowsView(Widget):
     COMPONENT_CLASSES = {f"rows--{name}" for name in NAMES}
     ALLOW_SELECT = True
 
-    def __init__(self, draw: Draw | None = None, *, id: str | None = None, classes: str | None = None) -> None:
-        super().__init__(id=id, classes=classes)
+    def __init__(self, draw: Draw | None = None, *, scrolls: bool = False, id: str | None = None) -> None:
+        super().__init__(id=id)
+        self._scrolls = scrolls
         self._draw = draw
         self._rows: list[Row] = []
         self._drawn_for: Size | None = None
@@ -75,7 +76,7 @@ class RowsView(Widget):
         rows = fit_rows(self._rows[self._first :], width, height)
         if height and len(self._rows) - self._first > height:
             below = len(self._rows) - self._first - height + 1
-            rows[-1] = fit_row([Span(f"-- {below} more: Down --", "key")], width)
+            rows[-1] = fit_row([Span(f"-- {below} more: Down --" if self._scrolls else "..", "key")], width)
         return rows
 
     def render_line(self, y: int) -> Strip:

@@ -61,7 +61,19 @@ def rule_row(width: int, facts: RuleFacts) -> Row:
 
 
 def key_rows(width: int, entries: Sequence[tuple[str, str, str]], lines: int = 2) -> list[Row]:
-    """Keys with what they do, (key, label, action) each, on at most `lines` rows; nothing is cut in two."""
+    """Keys with what they do, (key, label, action) each, on at most `lines` rows; nothing is cut in two.
+
+    Where there is no room for all, those before the last two go: the last two lead out and to the help.
+    """
+    entries = list(entries)
+    rows = _key_rows(width, entries)
+    while len(rows) > lines and len(entries) > 2:
+        del entries[-3]
+        rows = _key_rows(width, entries)
+    return (rows + [[] for _ in range(lines)])[:lines]
+
+
+def _key_rows(width: int, entries: Sequence[tuple[str, str, str]]) -> list[Row]:
     rows: list[Row] = [[]]
     for key, label, action in entries:
         piece = [Span(key, "key", action), Span(f" {label}", "", action)]
@@ -70,7 +82,7 @@ def key_rows(width: int, entries: Sequence[tuple[str, str, str]], lines: int = 2
             rows.append([])
             gap = Span(" ")
         rows[-1] += [gap, *piece]
-    return (rows + [[] for _ in range(lines)])[:lines]
+    return rows
 
 
 def _labelled(width: int, label: str, text: str, style: str) -> list[Row]:
