@@ -46,6 +46,15 @@ def number(text: str) -> float:
 
 
 def _text_numbers(cells: Sequence[str]) -> tuple[FloatArray, Bad]:
+    try:
+        if "_" in "".join(cells):
+            raise ValueError
+        return np.array([float(text) if text else math.nan for text in cells], dtype=np.float64), {}
+    except ValueError:
+        return _text_numbers_one_by_one(cells)
+
+
+def _text_numbers_one_by_one(cells: Sequence[str]) -> tuple[FloatArray, Bad]:
     bad: Bad = {}
     values = np.empty(len(cells))
     for index, text in enumerate(cells):
@@ -77,6 +86,9 @@ def numbers(column: Column, sentinels: tuple[float, ...] = ()) -> tuple[FloatArr
 
 
 def _text_of(value: object) -> str:
+    if isinstance(value, str):
+        text = value.strip()
+        return "" if text.lower() in EMPTY_CELLS and text != "-" else text
     if isinstance(value, float):
         return "" if math.isnan(value) else (str(int(value)) if value.is_integer() and abs(value) < 1e15 else repr(value))
     return str(value)
@@ -85,14 +97,16 @@ def _text_of(value: object) -> str:
 def texts(column: Column) -> list[str]:
     """A column as texts without blanks at the ends; "" where empty. Whole numbers have no decimal point."""
     if column.is_text:
-        cells = [text.strip() for text in column.cells]
+        cells = column.cells
     elif column.cells.dtype == np.float32:
-        cells = [_text_of(float(f"{value:.7g}")) for value in column.cells]
+        cells = [float(f"{value:.7g}") for value in column.cells]
     else:
-        cells = [_text_of(value) for value in column.cells.tolist()]
+        cells = column.cells.tolist()
+    spelled = {cell: _text_of(cell) for cell in set(cells)}  # flags repeat: each spelling is made once
+    found = [spelled[cell] for cell in cells]
     if column.mask is not None:
-        cells = ["" if masked else cell for cell, masked in zip(cells, column.mask.tolist(), strict=True)]
-    return ["" if cell.lower() in EMPTY_CELLS and cell != "-" else cell for cell in cells] if column.is_text else cells
+        return ["" if masked else cell for cell, masked in zip(found, column.mask.tolist(), strict=True)]
+    return found
 
 
 def truths(column: Column) -> tuple[np.ndarray, Bad]:

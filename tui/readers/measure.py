@@ -221,7 +221,8 @@ def letters_of(flag: FlagColumn, table: RawTable) -> list[str]:
     cells = texts(table.columns[flag.column])
     if flag.position is None:
         return cells
-    return [cell[flag.position] if len(cell) == flag.width else "" for cell in cells]
+    letter = {cell: cell[flag.position].strip() if len(cell) == flag.width else "" for cell in set(cells)}
+    return [letter[cell] for cell in cells]
 
 
 def refusals(out: Values, table: RawTable) -> list[Refused]:
