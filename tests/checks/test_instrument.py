@@ -51,8 +51,8 @@ def test_flagged_band_explains(run, made):
     assert evidence.adequate is True
     assert evidence.facts["carrier_band"] == "W4" and evidence.facts["carrier_suspect"] is True
     assert evidence.facts["carrier_p"] < 1e-6 and evidence.facts["carrier_pull"] > 6
-    assert evidence.facts["instrument_suspect_bands"] == ["W4"]
-    assert evidence.facts["instrument_p_without_suspects"] > 0.01
+    assert evidence.facts["suspect_bands"] == ["W4"]
+    assert evidence.facts["p_without_suspects"] > 0.01
     assert [f.model for f in evidence.fits] == ["star without W4", "star"]
     assert "W4" not in evidence.fits[0].pulls
     assert any("scattered light" in text for text in evidence.cautions)
@@ -62,7 +62,7 @@ def test_carrier_without_a_flag_is_no_explanation(run, made):
     (evidence,) = run([made({"W4": 3.0}, {"W4": CLEAN})])
     assert evidence.adequate is False
     assert evidence.facts["carrier_band"] == "W4" and evidence.facts["carrier_suspect"] is False
-    assert evidence.facts["instrument_suspect_bands"] == []
+    assert evidence.facts["suspect_bands"] == []
     assert any("Nothing independent" in text for text in evidence.cautions)
     assert any("end of the spectrum" in text for text in evidence.cautions)
 
@@ -70,7 +70,7 @@ def test_carrier_without_a_flag_is_no_explanation(run, made):
 def test_a_flag_on_another_band_explains_nothing(run, made):
     (evidence,) = run([made({"W4": 3.0}, {"W1": HALO, "W4": CLEAN})])
     assert evidence.adequate is False
-    assert evidence.facts["instrument_suspect_bands"] == ["W1"]
+    assert evidence.facts["suspect_bands"] == ["W1"]
     assert [f.model for f in evidence.fits] == ["star", "star without W1"]
 
 
@@ -105,7 +105,7 @@ def test_each_independent_evidence_counts(run, made, cause):
     (evidence,) = run([odd])
     assert evidence.adequate is True
     expected = "Gaia_BP" if cause == "gaia" else "W3"
-    assert expected in evidence.facts["instrument_suspect_bands"]
+    assert expected in evidence.facts["suspect_bands"]
     assert {"epoch": "epoch", "gaia": "colour excess"}.get(cause, cause) in {
         doubt["kind"] for doubt in evidence.facts["doubts"] if doubt["severity"] == "suspicion"
     }

@@ -52,7 +52,7 @@ def test_one_piece(tables):
     around = surroundings(star, {"W3": 0.012}, {"W3": 9.0}, bands(), tables, Settings(n_searched=100000))
     assert around.facts["neighbours_in_beam"] == 1 and around.facts["nearest_source"] == 2.0
     assert around.facts["match_catalogue"] == "AllWISE" and around.facts["match_p"] < 1e-6
-    assert 0 < around.facts["blend_chance_alignment"] < 1
+    assert 0 < around.facts["chance_alignment"] < 1
     text = " ".join(around.cautions)
     for word in ("leaking from neighbours", "AllWISE", "RUWE", "stars searched"):
         assert word in text
@@ -61,4 +61,4 @@ def test_one_piece(tables):
 
 def test_an_empty_candidate(tables):
     around = surroundings(Candidate("one"), {}, {}, bands(), tables, Settings())
-    assert around.cautions == () and "blend_chance_alignment" not in around.facts
+    assert around.cautions == () and "chance_alignment" not in around.facts

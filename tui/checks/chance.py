@@ -48,9 +48,9 @@ class Chance:
         return 1.0 - math.prod(1.0 - p for p in known) if known else math.nan
 
     def as_facts(self) -> dict[str, float | str]:
-        """As the evidence stores it; `blend_chance_alignment` is of either."""
+        """As the evidence stores it; `chance_alignment` is of either."""
         return {
-            "blend_chance_alignment": self.p, "chance_star": self.p_star, "chance_galaxy": self.p_galaxy,
+            "chance_alignment": self.p, "chance_star": self.p_star, "chance_galaxy": self.p_galaxy,
             "chance_band": self.band, "chance_mag": self.mag, "chance_radius": self.radius_arcsec,
             "chance_star_source": self.star_source, "chance_galaxy_source": self.galaxy_source,
         }  # fmt: skip

@@ -108,8 +108,8 @@ def one_evidence(
     suspects = tuple(name for name in bands if name in suspect_bands(quality.doubts) and name in star.bands)
     answer = None if without is None else stands(without, len(without.pulls), settings)
     facts = quality.as_facts()
-    facts["instrument_suspect_bands"] = list(suspects)
-    facts["instrument_p_without_suspects"] = None if without is None else without.p
+    facts["suspect_bands"] = list(suspects)
+    facts["p_without_suspects"] = None if without is None else without.p
     if carrier is not None:
         facts.update(carrier_facts(carrier, suspects))
     red = w4_red_excess({name: flux for name, (flux, _) in measured_fluxes(candidate).items()})
