@@ -15,6 +15,7 @@ from tui.consensus.standing import Standing
 from tui.errors import SealError
 from tui.model import CHECKS, Ruling
 from tui.store import deriving
+from tui.store.connect import snapshot
 from tui.store.drafts import drafts
 from tui.store.names import id_of
 from tui.store.records import CandidateView, RulingLine, StoryLine
@@ -24,6 +25,12 @@ from tui.store.settings import read_settings
 
 def standing_for(connection: sqlite3.Connection, reviewer_id: str | None, name: str) -> CandidateView:
     """Where a candidate stands as far as this reader may know; UnknownNameError if there is none of that name."""
+    with snapshot(connection):
+        return seen(connection, reviewer_id, name)
+
+
+def seen(connection: sqlite3.Connection, reviewer_id: str | None, name: str) -> CandidateView:
+    """The same, from one state of the file."""
     candidate_id = id_of(connection, name)
     log = deriving.rulings_on(connection, candidate_id)
     stands = deriving.stand(connection, candidate_id, read_settings(connection), rulings=log)

@@ -246,6 +246,20 @@ def immediate(connection: sqlite3.Connection) -> Iterator[None]:
         raise
 
 
+@contextmanager
+def snapshot(connection: sqlite3.Connection) -> Iterator[None]:
+    """Several reads of one state of the file, whatever others write meanwhile."""
+    if connection.in_transaction:
+        yield
+        return
+    connection.execute("BEGIN")
+    try:
+        yield
+    finally:
+        if connection.in_transaction:
+            connection.execute("ROLLBACK")
+
+
 def data_version(connection: sqlite3.Connection) -> int:
     """A number that changes when another connection has written to the queue."""
     return connection.execute("PRAGMA data_version").fetchone()[0]

@@ -242,7 +242,9 @@ DERIVED = (
     ) STRICT""",
     "CREATE INDEX queue_row_oddness ON queue_row (oddness DESC, id)",
     "CREATE INDEX queue_row_fold ON queue_row (fold)",
-    "CREATE INDEX queue_row_ring ON queue_row (done, ring) WHERE needs = 1",
+    "CREATE INDEX queue_row_band ON queue_row (odd_band DESC, oddness DESC, id)",
+    "CREATE INDEX queue_row_pull ON queue_row (odd_pull DESC, id)",
+    "CREATE INDEX queue_row_ring ON queue_row (needs, done, ring)",
     "CREATE INDEX queue_row_untestable ON queue_row (untestable) WHERE untestable > 0",
     "CREATE INDEX queue_row_touched ON queue_row (id) WHERE touched = 1",
     f"""CREATE TABLE standing (
