@@ -63,8 +63,9 @@ class Archive:
 
     @property
     def column_names(self) -> frozenset[str]:
-        """Every column name this archive knows."""
-        return frozenset(name for entry in self.entries for name in entry.columns)
+        """Every column name this archive knows, those that are only conditions included."""
+        conditions = {entry.option("with") for entry in self.entries} - {""}
+        return frozenset(name for entry in self.entries for name in entry.columns) | conditions
 
 
 def parse_archives(texts: Mapping[str, str]) -> tuple[Archive, ...]:

@@ -92,9 +92,10 @@ def _is_marked(archive: Archive, offered: Mapping[str, list[str]]) -> bool:
 
 
 def _uses(archive: Archive, name: str, offered: Mapping[str, list[str]]) -> bool:
-    """Whether some entry takes this name, given what else is there."""
+    """Whether some entry takes this name, given what else is there, or has it for a condition."""
     return any(
-        name in entry.columns and (not entry.option("with") or entry.option("with") in offered) for entry in archive.entries
+        name == entry.option("with") or (name in entry.columns and (not entry.option("with") or entry.option("with") in offered))
+        for entry in archive.entries
     )
 
 

@@ -83,5 +83,8 @@ def hint(name: str, known: Sequence[str]) -> str:
     """A likely known name for an unknown one, "" where none is near."""
     from difflib import get_close_matches
 
+    for other in known:
+        if other.lower() == name.lower():
+            return other
     near = get_close_matches(name, known, n=1, cutoff=0.85)
     return near[0] if near else ""

@@ -101,12 +101,14 @@ def read_dips(
     events, given, epochs = side.texts("event"), side.texts("band"), side.texts("epoch")
     rows: dict[str, dict[tuple[str, str, str], Dip]] = defaultdict(dict)
     for row in range(len(side.table)):
+        if not side.usable[row]:
+            continue
         band = band_name(given[row], bands, aliases)
         if not band:
             side.refuse(row, "band", f"{quoted(given[row])} is no known band")
         elif not -1 < depth[row] <= 1:
             side.refuse(row, "depth", "a depth is a fraction of the flux, from -1 to 1")
-        elif side.usable[row]:
+        else:
             event = events[row] or "1"
             sigma = error[row] if error[row] > 0 else math.nan
             mine = rows[side.names[row]]

@@ -76,7 +76,7 @@ def read_parts(
     if not plan.bands:
         wide.cautions.append(f"{table.path}: no column of any band was recognised")
     for part in wide.parts(size):
-        refused, wide.refused = wide.refused, []
+        refused, wide.refused = sorted(wide.refused, key=lambda entry: entry.row), []
         yield TableContents(part, refused, [], [], label, column_map.bands)
     known = [f"{band}_mag" for band in words.bands] + list(facts)
     likely = [(name, hint(name, known)) for name in plan.unknown[:SHOWN_COLUMNS]]
