@@ -146,6 +146,7 @@ class FakeSession:
         self.other: dict[str, list[RulingLine]] = {}
         self.log: list[Ruling] = []
         self.claims: set[str] = set()
+        self.later: list[str] = []
         self.drafts: dict[tuple[str, str], str] = {}
         self.place: tuple[str, str] | None = None
         self.fail: Exception | None = None
@@ -229,11 +230,23 @@ class FakeSession:
                 return row.name
         return None
 
+    def claim_next(self, skip=()):
+        name = self.next_for_me(skip)
+        if name is not None:
+            self.claim(name)
+        return name
+
     def claim(self, name):
         self.claims.add(name)
 
     def release(self, name):
         self.claims.discard(name)
+
+    def put_off(self, name):
+        self.later.append(name)
+
+    def take_up(self, name):
+        self.later = [one for one in self.later if one != name]
 
     # --- one candidate ---
 

@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING
 from textual import events, on
 from textual.app import ComposeResult
 from textual.containers import Horizontal
+from textual.worker import Worker, WorkerState
 
 from tui.desk.keys import bindings
 from tui.desk.screens.base import DeskScreen
@@ -100,6 +101,13 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
         elif self.walk.message:
             self.walk.message = ""
             self.draw_foot()
+
+    def on_worker_state_changed(self, event: Worker.StateChanged) -> None:
+        """What nobody foresaw ends neither the desk nor the round: a plain line, and keys count again."""
+        if event.state is WorkerState.ERROR:
+            self.walk.recording = False
+            self.say(f"Something went wrong inside the program ({event.worker.name}): {event.worker.error!r}", is_error=True)
+            self.be_ready()
 
     # --- drawing ---
 
@@ -223,7 +231,7 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
         if self._draft_of is None:
             return
         name, check = self._draft_of
-        self.walk.note = message.text
+        self.walk.notes[check] = message.text
         self.write(lambda s: s.save_draft(name, check, message.text))
 
     @on(NoteEditor.Left)

@@ -20,12 +20,12 @@ if TYPE_CHECKING:
 class OpensCandidates:
     """The part of the candidate's screen that fills a walk; a walk that was left takes nothing."""
 
-    def open(self: CandidateScreen, name: str, check: str = "") -> None:
-        """Turn to a candidate: nothing of the one before stays."""
+    def open(self: CandidateScreen, name: str, check: str = "", keep_message: bool = False) -> None:
+        """Turn to a candidate: nothing of the one before stays but what was said of it."""
         old = self.walk
         self.leave_note()
         self._ready_at = float("inf")
-        message = old.message if old.name != name else ""
+        message = old.message if old.name != name or keep_message else ""
         self.walk = Walk(name, check or CHECKS[0], message=message, plot_view=old.plot_view.fresh(), plot_only=old.plot_only)
         self.draw()
         self.load(self.walk, check)
@@ -38,7 +38,7 @@ class OpensCandidates:
             loaded = await self.reads.ask(lambda s: Loaded(s.candidate(name), s.view(name), s.band_info()))
             if not self.is_here(walk):
                 return
-            walk.loaded = loaded
+            walk.take(loaded)
             walk.go(first_check(loaded.view, check), keep_message=True)
             self.draw()
             self.be_ready()

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
 from textual import work
@@ -9,7 +10,7 @@ from textual import work
 from tui.desk.screens.walk import Loaded, Walk, next_to_rule, refusal
 from tui.desk.text import RULING_WORDS
 from tui.errors import TuiError
-from tui.model import CHECK_TITLES, Ruling
+from tui.model import CHECK_TITLES, Evidence, Ruling
 from tui.workflow.records import CandidateView
 
 if TYPE_CHECKING:
@@ -18,6 +19,12 @@ if TYPE_CHECKING:
 
 NOBODY = "Nothing else needs you. q: back to the queue."
 MORE = 400  # candidates of the list looked at for the next one, before the queue is asked
+CHANGED = "The evidence changed while you looked; this is the new one. Nothing was recorded: look, and choose again."
+
+
+def has_changed(stored: Evidence | None, shown: str) -> bool:
+    """Whether the queue holds other evidence than what is on the screen."""
+    return stored is not None and stored.digest != shown
 
 
 class RecordsRulings:
@@ -46,7 +53,7 @@ class RecordsRulings:
             self.say(self.cannot_rule() or "There is no stale ruling of yours on this check.")
             return
         walk.chosen = own.ruling
-        walk.note = walk.note or own.note
+        walk.notes[walk.check] = walk.note or own.note
         self.action_record()
 
     def cannot_rule(self: CandidateScreen) -> str:
@@ -70,32 +77,39 @@ class RecordsRulings:
 
     @work(group="record", exit_on_error=False)
     async def record(self: CandidateScreen, walk: Walk, check: str, ruling: str, note: str) -> None:
-        """Write the ruling off this thread, then go on."""
+        """Write the ruling off this thread, then go on; where the evidence has changed meanwhile, ask once more."""
         name, shown = walk.name, walk.own_evidence.digest
 
-        def job(session: Session) -> tuple[Ruling, CandidateView]:
+        def job(session: Session) -> tuple[Ruling, CandidateView] | None:
             if ruling == "withdrawn":
                 made = session.withdraw(name, check, note)
+            elif has_changed(session.stored_evidence(name).get(check), shown):
+                return None
             else:
                 made = session.rule(name, check, ruling, note, evidence_digest=shown)
             session.save_draft(name, check, "")
+            session.take_up(name)
             return made, session.view(name)
 
         try:
-            made, view = await self.writes.ask(job)
+            written = await self.writes.ask(job)
         except TuiError as error:
             walk.recording = False
             self.be_ready()
             self.say(str(error), is_error=True)
             return
         walk.recording = False
-        self.app.note_ruling(made.utc)
+        if written is None:
+            walk.message = CHANGED
+            self.open(name, check, keep_message=True)
+            return
+        self.app.note_ruling(written[0].utc)
         if self.is_here(walk):
-            await self.go_on(walk, view, check, ruling)
+            await self.go_on(walk, written[1], check, ruling)
 
     async def go_on(self: CandidateScreen, walk: Walk, view: CandidateView, check: str, ruling: str) -> None:
         """To the next check that this reviewer has to rule, else to the next candidate."""
-        walk.loaded = Loaded(walk.loaded.candidate, view, walk.loaded.bands)
+        walk.take(Loaded(walk.loaded.candidate, view, walk.loaded.bands))
         said = f"Recorded: {CHECK_TITLES[check]} {RULING_WORDS[ruling]}."
         following = None if view.done and ruling != "withdrawn" else next_to_rule(view, check)
         if ruling == "withdrawn" or following is not None:
@@ -113,18 +127,20 @@ class RecordsRulings:
     # --- going on ---
 
     def action_next_for_me(self: CandidateScreen) -> None:
-        """The next candidate that needs this reviewer."""
+        """The candidate that needs this reviewer most, wherever the list is."""
         self.walk.message = ""
-        self.turn(self.walk)
+        self.turn(self.walk, by_list=False)
 
     def action_later(self: CandidateScreen) -> None:
         """Leave this candidate for later and take the next."""
         if self.session.reviewer is None:
             self.say(self.cannot_rule())
             return
-        self.skipped.add(self.walk.name)
-        self.walk.message = f"Left for later: {self.walk.name}."
-        self.turn(self.walk)
+        name = self.walk.name
+        self.skipped.add(name)
+        self.write(lambda s: s.put_off(name))
+        self.walk.message = f"Left for later: {name}."
+        self.turn(self.walk, by_list=True)
 
     def action_last_candidate(self: CandidateScreen) -> None:
         """Back to the candidate before."""
@@ -135,16 +151,16 @@ class RecordsRulings:
         self.open(name)
 
     @work(exclusive=True, group="turn", exit_on_error=False)
-    async def turn(self: CandidateScreen, walk: Walk) -> None:
+    async def turn(self: CandidateScreen, walk: Walk, by_list: bool) -> None:
         """Find and open the next candidate."""
         self._ready_at = float("inf")
-        await self.take_next(walk)
+        await self.take_next(walk, by_list)
 
-    async def take_next(self: CandidateScreen, walk: Walk) -> None:
+    async def take_next(self: CandidateScreen, walk: Walk, by_list: bool = True) -> None:
         """Open the next candidate, or say that there is none."""
         skip = frozenset(self.skipped | {walk.name})
         try:
-            following = await self.writes.ask(lambda s: self.following(s, walk.name, skip))
+            following = await self.writes.ask(lambda s: self.following(s, walk.name, skip, by_list))
         except TuiError as error:
             walk.message, following = str(error), None
         if not self.is_here(walk):
@@ -158,17 +174,22 @@ class RecordsRulings:
         self.before.append(walk.name)
         self.open(following)
 
-    def following(self: CandidateScreen, session: Session, name: str, skip: frozenset[str]) -> str | None:
+    def following(
+        self: CandidateScreen, session: Session, name: str, skip: frozenset[str], by_list: bool
+    ) -> str | None:
         """The next candidate of the list that needs this reviewer, else what the queue says; runs in a thread."""
         if session.reviewer is None:
             return None
         session.release(name)
-        if self.order is not None and len(self.order):
-            ids = self.order
-            own = session.id_of(name) if not isinstance(ids[0], str) else name
-            place = ids.index(own) + 1 if own in ids else 0
-            ahead = [one if not isinstance(one, str) else session.id_of(one) for one in ids[place : place + MORE]]
-            for entry in session.rows(ahead):
+        if by_list and self.order is not None and len(self.order):
+            for entry in session.rows(ids_after(session, self.order, name)):
                 if entry.needs_me and entry.name not in skip:
                     return entry.name
-        return session.next_for_me(skip)
+        return session.claim_next(skip)
+
+
+def ids_after(session: Session, order: Sequence[int] | Sequence[str], name: str) -> list[int]:
+    """Ids of the next candidates of a list of ids or names; from its start where `name` is not on it."""
+    own = name if isinstance(order[0], str) else session.id_of(name)
+    place = order.index(own) + 1 if own in order else 0
+    return [session.id_of(one) if isinstance(one, str) else one for one in order[place : place + MORE]]

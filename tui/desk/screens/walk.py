@@ -62,7 +62,7 @@ class Walk:
     story: tuple[StoryLine, ...] = ()
     fit_index: int = 0
     chosen: str = ""  # ruling chosen and not yet recorded
-    note: str = ""
+    notes: dict[str, str] = field(default_factory=dict)  # check -> note begun and not recorded
     message: str = ""
     trouble: str = ""  # why there is no evidence
     page: int = 0
@@ -72,6 +72,16 @@ class Walk:
     compared: str = ""
     hand: Hand | None = None
     recording: bool = False
+
+    @property
+    def note(self) -> str:
+        """The note begun on the check on view."""
+        return self.notes.get(self.check, "")
+
+    def take(self, loaded: Loaded) -> None:
+        """Take in what the queue says of the candidate now; notes begun go with it."""
+        self.loaded = loaded
+        self.notes = {check: text for check, text in loaded.view.drafts.items() if text}
 
     @property
     def own_evidence(self) -> Evidence | None:
@@ -94,11 +104,9 @@ class Walk:
         """Turn to another check; nothing chosen, held or compared is carried over."""
         self.check = check
         self.fit_index = 0
-        self.chosen = self.note = self.compared = ""
+        self.chosen = self.compared = ""
         self.message = self.message if keep_message else ""
         self.hand, self.asking_compare = None, False
-        if self.loaded is not None:
-            self.note = self.loaded.view.drafts.get(check, "")
 
     def plot(self) -> PlotData:
         """What the plot shows now."""
