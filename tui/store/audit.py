@@ -18,7 +18,7 @@ from tui.model import CHECKS, Settings
 from tui.store import deriving
 from tui.store.candidates import refresh_inputs
 from tui.store.chains import chain_faults, receipt, receipt_faults
-from tui.store.connect import immediate, snapshot
+from tui.store.connect import immediate, in_memory, snapshot, write_copy
 from tui.store.digests import queue_digest
 from tui.store.inputs import derived_inputs, input_faults, wrong_attachments
 from tui.store.names import folded, ring
@@ -89,7 +89,7 @@ def schema_of(connection: sqlite3.Connection, schema: str) -> dict[str, tuple[st
 
 def expected_schema() -> dict[str, tuple[str, str]]:
     """The same of a queue that was just made."""
-    fresh = sqlite3.connect(":memory:", isolation_level=None)
+    fresh = in_memory()
     try:
         fresh.execute("BEGIN IMMEDIATE")
         migrate(fresh)
@@ -142,7 +142,7 @@ def kept_rows(connection: sqlite3.Connection, candidate_id: int) -> tuple[object
 def derived_fault(connection: sqlite3.Connection, candidate_id: int) -> Fault:
     """The fault of a candidate whose derived rows are wrong."""
     name = connection.execute("SELECT name FROM candidate WHERE id = ?", (candidate_id,)).fetchone()[0]
-    return Fault("derived", name, "its states in the queue do not follow from the log; mend with: plainlight audit --repair.")
+    return Fault("derived", name, "its states do not follow from the log; mend with: plainlight audit QUEUE --repair.")
 
 
 def mend(connection: sqlite3.Connection, ids: Sequence[int]) -> None:
@@ -168,12 +168,7 @@ def backup(connection: sqlite3.Connection, path: str | os.PathLike[str]) -> None
         raise StoreError(f"{path} exists and was left as it is; give another name for the backup.")
     part = f"{path}.part"
     try:
-        target = sqlite3.connect(part, isolation_level=None)
-        try:
-            connection.backup(target)  # in one step: one state of the file
-            target.execute("PRAGMA journal_mode = DELETE").fetchone()  # nothing beside the one file
-        finally:
-            target.close()
+        write_copy(connection, part)
         with open(part, "rb") as file:
             os.fsync(file.fileno())
         os.link(part, path) if hasattr(os, "link") else os.rename(part, path)

@@ -134,10 +134,10 @@ def loaded(connection: sqlite3.Connection, candidate_id: int) -> list[StoryLine]
             text = noun if table in ("candidate_version", "spectrum") else f"{count} {noun}"
             told.append(StoryLine(utc, what, source, "", text))
     query = (
-        "SELECT load.utc, source, GROUP_CONCAT(band, ' '), SUM(EXISTS (SELECT 1 FROM measurement AS old JOIN load AS first "
-        "ON first.id = old.load_id WHERE old.candidate_id = m.candidate_id AND old.band = m.band AND old.source = m.source "
-        "AND old.epoch = m.epoch AND first.utc < load.utc)) FROM measurement AS m JOIN load ON load.id = m.load_id "
-        "WHERE candidate_id = ? GROUP BY load.utc, source"
+        "SELECT load.utc, source, GROUP_CONCAT(band, ' '), SUM(EXISTS (SELECT 1 FROM measurement AS old "
+        "JOIN load AS first ON first.id = old.load_id WHERE old.candidate_id = m.candidate_id AND old.band = m.band "
+        "AND old.source = m.source AND old.epoch = m.epoch AND first.utc < load.utc)) "
+        "FROM measurement AS m JOIN load ON load.id = m.load_id WHERE candidate_id = ? GROUP BY load.utc, source"
     )
     for utc, source, bands, corrected in connection.execute(query, (candidate_id,)).fetchall():
         told.append(StoryLine(utc, "corrected" if corrected else "measured", source, "", bands))

@@ -52,7 +52,9 @@ def save_candidates(connection: sqlite3.Connection, records: Iterable[LoadRecord
     return LoadCounts(**totals)
 
 
-def save_chunk(connection: sqlite3.Connection, chunk: Sequence[LoadRecord], loads: Loads, totals: dict[str, int]) -> None:
+def save_chunk(
+    connection: sqlite3.Connection, chunk: Sequence[LoadRecord], loads: Loads, totals: dict[str, int]
+) -> None:
     """Add some records, then bring digests and derived rows of the touched candidates up to date."""
     names = [normal_name(record.candidate.name) for record in chunk]
     known = ids_of(connection, set(names))
@@ -69,13 +71,16 @@ def save_chunk(connection: sqlite3.Connection, chunk: Sequence[LoadRecord], load
         totals["versions"] += added and not is_new
         sides_added = add_sides(connection, candidate_id, record, loads)
         totals["side_tables"] += sides_added
-        measured = add_measurements(connection, candidate_id, record, series.setdefault(candidate_id, Series()), loads, totals)
+        past = series.setdefault(candidate_id, Series())
+        measured = add_measurements(connection, candidate_id, record, past, loads, totals)
         if is_new or added or sides_added or measured:
             changed.add(candidate_id)
     refresh_inputs(connection, sorted(changed))
 
 
-def add_facts(connection: sqlite3.Connection, candidate_id: int, record: LoadRecord, loads: Loads, is_new: bool) -> bool:
+def add_facts(
+    connection: sqlite3.Connection, candidate_id: int, record: LoadRecord, loads: Loads, is_new: bool
+) -> bool:
     """Add the facts as a version unless they are on file; whether they were added."""
     facts = {key: value for key, value in plain(record.candidate.facts).items() if value is not None}
     if not facts and not is_new:
@@ -131,7 +136,8 @@ def add_measurements(
 def refresh_inputs(connection: sqlite3.Connection, ids: Sequence[int]) -> None:
     """Write the current version and the input digest of some candidates, from all rows on file."""
     for page in pages(ids):
-        rows = [(versions[-1][2] if versions else "", digest, key) for key, versions, digest in input_states(connection, page)]
+        states = input_states(connection, page)
+        rows = [(versions[-1][2] if versions else "", digest, key) for key, versions, digest in states]
         connection.executemany("UPDATE candidate SET current_version = ?, input_digest = ? WHERE id = ?", rows)
 
 
@@ -224,7 +230,8 @@ def candidate_count(connection: sqlite3.Connection) -> int:
 def name_pages(connection: sqlite3.Connection, size: int = 1000) -> Iterator[list[str]]:
     """All names in runs of `size`, in order of loading, holding one run in memory; for passes over a large queue."""
     last = 0
-    while rows := connection.execute("SELECT id, name FROM candidate WHERE id > ? ORDER BY id LIMIT ?", (last, size)).fetchall():
+    query = "SELECT id, name FROM candidate WHERE id > ? ORDER BY id LIMIT ?"
+    while rows := connection.execute(query, (last, size)).fetchall():
         last = rows[-1][0]
         yield [name for _, name in rows]
 

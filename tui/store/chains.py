@@ -42,7 +42,8 @@ def chain_faults(connection: sqlite3.Connection) -> list[Fault]:
 def fault(ruling: Ruling, by: dict[str, str], text: str) -> Fault:
     """A fault of one ruling, named so that a person finds it."""
     who = by.get(ruling.reviewer_id, ruling.reviewer_id)
-    return Fault("chain", f"ruling {ruling.id}", f"{who} on {ruling.check} of {ruling.candidate}, {ruling.utc}: {text}.")
+    where = f"{who} on {ruling.check} of {ruling.candidate}, {ruling.utc}"
+    return Fault("chain", f"ruling {ruling.id}", f"{where}: {text}.")
 
 
 def links(connection: sqlite3.Connection, reviewer_id: str) -> dict[str, str]:
@@ -77,13 +78,13 @@ def receipt_faults(connection: sqlite3.Connection, receipts: Iterable[str]) -> l
         handle, number, heads = found[1], int(found[2]), [head for head in (found[3] or "").split("+") if head]
         missing = [head for head in heads if head not in owners]
         if missing:
-            faults.append(Fault("receipt", handle, f"the log lacks the ruling {missing[0][:12]}... that {handle} left last."))
+            text = f"the log lacks the ruling {missing[0][:12]}... that {handle} left last."
+            faults.append(Fault("receipt", handle, text))
             continue
         held = sum(len(before(links(connection, owner), heads)) for owner in {owners[head] for head in heads})
         if held != number:
-            faults.append(
-                Fault("receipt", handle, f"{handle} left {number} rulings up to that receipt; the log holds {held} of them.")
-            )
+            text = f"{handle} left {number} rulings up to that receipt; the log holds {held} of them."
+            faults.append(Fault("receipt", handle, text))
     return faults
 
 

@@ -7,6 +7,7 @@ candidate by name. Claims are never gathered.
 from __future__ import annotations
 
 import sqlite3
+from collections.abc import Collection
 from datetime import datetime, timedelta
 
 from tui.store.connect import immediate
@@ -53,9 +54,11 @@ def claimed(connection: sqlite3.Connection, now: str) -> dict[str, tuple[str, ..
     return found
 
 
-def claim_next(connection: sqlite3.Connection, reviewer_id: str, now: str, skip: frozenset[str] = frozenset()) -> str | None:
+def claim_next(
+    connection: sqlite3.Connection, reviewer_id: str, now: str, skip: Collection[str] = ()
+) -> str | None:
     """Find the next candidate for a reviewer and claim it in one transaction: two at once get different ones."""
-    from tui.store.views import next_for
+    from tui.store.turns import next_for
 
     with immediate(connection):
         name = next_for(connection, reviewer_id, now, skip)

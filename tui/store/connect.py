@@ -13,6 +13,7 @@ from collections.abc import Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
+from time import monotonic, sleep
 from typing import Any
 
 from tui.errors import StoreError
@@ -86,7 +87,7 @@ def sentence(path: str, error: sqlite3.Error) -> str:
     """What went wrong with the queue file, and the mend."""
     text = str(error)
     if "locked" in text or "busy" in text:
-        return f"{path} stayed locked for {BUSY_SECONDS:.0f} s; nothing was written. Try again when the other writer is done."
+        return f"{path} stayed locked for {BUSY_SECONDS:.0f} s; nothing was written. Repeat it a little later."
     if "full" in text:
         return f"{path}: the disk is full; nothing was written. Make room and repeat."
     if "readonly" in text or "read-only" in text:
@@ -117,8 +118,8 @@ def open_queue(path: str | os.PathLike[str], *, create: bool = False, write: boo
         )
     if header is None or header.user_version < SCHEMA_VERSION:
         if not write and not os.access(path, os.W_OK):
-            raise StoreError(f"{path} was made by an older Plainlight and cannot be written; copy it and open the copy.")
-        bring_up_to_date(path)
+            raise StoreError(f"{path} is of an older Plainlight and cannot be written here; copy it and open the copy.")
+        bring_up_to_date(path, is_new=header is None)
     return connected(path, write=write, shared=not kind)
 
 
@@ -184,10 +185,28 @@ def prepare(connection: QueueConnection, write: bool) -> None:
     if not write:
         connection.execute("PRAGMA query_only = ON")
     elif connection.execute("PRAGMA journal_mode").fetchone()[0] != "wal":  # a backup starts without a log
-        connection.execute("PRAGMA journal_mode = WAL").fetchone()
+        use_log(connection)
 
 
-def bring_up_to_date(path: str) -> None:
+def use_log(connection: QueueConnection) -> None:
+    """Turn on the write-ahead log; SQLite does not wait for others who do the same, so this does."""
+    deadline = monotonic() + BUSY_SECONDS
+    while True:
+        try:
+            connection.execute("PRAGMA journal_mode = WAL").fetchone()
+            return
+        except StoreError as error:
+            if not is_busy(error.__cause__) or monotonic() > deadline:
+                raise
+            sleep(0.01)
+
+
+def is_busy(error: BaseException | None) -> bool:
+    """Whether SQLite refused because somebody else holds a lock."""
+    return isinstance(error, sqlite3.Error) and getattr(error, "sqlite_errorcode", 0) & 0xFF == sqlite3.SQLITE_BUSY
+
+
+def bring_up_to_date(path: str, *, is_new: bool) -> None:
     """Create the tables, or copy an older file to NAME.vN.bak and run the migrations it lacks."""
     try:
         connection = sqlite3.connect(path, timeout=BUSY_SECONDS, isolation_level=None, factory=QueueConnection)
@@ -195,11 +214,13 @@ def bring_up_to_date(path: str) -> None:
         raise StoreError(sentence(path, error)) from error
     connection.queue_path = path
     try:
-        connection.execute("PRAGMA journal_mode = WAL").fetchone()
+        if is_new:  # on disk before the log is: whoever looks at the header meanwhile sees a queue
+            connection.execute(f"PRAGMA application_id = {APPLICATION_ID}")
+        use_log(connection)
         with immediate(connection):
             version = connection.execute("PRAGMA user_version").fetchone()[0]
             if 0 < version < SCHEMA_VERSION:
-                keep_copy(connection, path, version)
+                keep_copy(path, version)
             if version < SCHEMA_VERSION:
                 migrate(connection)
         connection.execute("PRAGMA wal_checkpoint(TRUNCATE)").fetchone()  # so that the header in the file tells
@@ -207,24 +228,42 @@ def bring_up_to_date(path: str) -> None:
         connection.close()
 
 
-def keep_copy(connection: sqlite3.Connection, path: str, version: int) -> str:
+def keep_copy(path: str, version: int) -> str:
     """Copy a queue beside itself as NAME.vN.bak, never over an earlier copy; the path of the copy."""
     copy = f"{path}.v{version}.bak"
     number = 1
     while os.path.exists(copy):
         number += 1
         copy = f"{path}.v{version}.{number}.bak"
-    source = sqlite3.connect(Path(path).absolute().as_uri() + "?mode=ro", uri=True, timeout=BUSY_SECONDS)
-    target = sqlite3.connect(copy)
+    source = read_only(path)
     try:
-        source.backup(target)
+        write_copy(source, copy)
     except sqlite3.Error as error:
         raise StoreError(f"{copy} cannot be written ({error}), so {path} was not brought up to date.") from error
     finally:
-        target.close()
         source.close()
     shutil.copymode(path, copy)
     return copy
+
+
+def read_only(path: str) -> sqlite3.Connection:
+    """A bare connection that cannot write, for copying; sqlite3.Error where the file cannot be opened."""
+    return sqlite3.connect(Path(path).absolute().as_uri() + "?mode=ro", uri=True, timeout=BUSY_SECONDS)
+
+
+def in_memory() -> sqlite3.Connection:
+    """A bare connection to nothing, for making a schema to compare with."""
+    return sqlite3.connect(":memory:", isolation_level=None)
+
+
+def write_copy(source: sqlite3.Connection, path: str) -> None:
+    """Write one state of a queue to one file of its own, while others go on writing; sqlite3.Error if it fails."""
+    target = sqlite3.connect(path, isolation_level=None)
+    try:
+        source.backup(target)  # all pages in one step: one state
+        target.execute("PRAGMA journal_mode = DELETE").fetchone()  # nothing beside the one file
+    finally:
+        target.close()
 
 
 @contextmanager

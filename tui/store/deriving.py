@@ -28,8 +28,10 @@ QUEUE_COLUMNS = (
     *("outcome", "cause", "pending_reason", "done", "needs", "touched"),
 )
 RULING_COLUMNS = (
-    'candidate, "check", reviewer_id, ruling, note, evidence_digest, seen_others, replaces, utc, id, previous_hash, hash'
+    'candidate, "check", reviewer_id, ruling, note, evidence_digest, '
+    "seen_others, replaces, utc, id, previous_hash, hash"
 )
+EVIDENCE_COLUMNS = "kind, version, digest, adequate, content"
 
 
 @dataclass(frozen=True, slots=True)
@@ -154,7 +156,7 @@ def write(connection: sqlite3.Connection, candidate_id: int, derived: Derived) -
 
 def current_of(connection: sqlite3.Connection, candidate_id: int) -> dict[str, Evidence]:
     """Kind -> today's evidence of one candidate."""
-    query = "SELECT kind, version, digest, adequate, content FROM evidence WHERE candidate_id = ? AND is_current = 1"
+    query = f"SELECT {EVIDENCE_COLUMNS} FROM evidence WHERE candidate_id = ? AND is_current = 1"
     return {row[0]: evidence_from(*row) for row in connection.execute(query, (candidate_id,)).fetchall()}
 
 
@@ -162,9 +164,7 @@ def cited_of(
     connection: sqlite3.Connection, candidate_id: int, wanted: Iterable[tuple[str, str]]
 ) -> dict[str, Evidence]:
     """Digest -> evidence, for those (check, digest) that are on file."""
-    query = (
-        "SELECT kind, version, digest, adequate, content FROM evidence WHERE candidate_id = ? AND kind = ? AND digest = ?"
-    )
+    query = f"SELECT {EVIDENCE_COLUMNS} FROM evidence WHERE candidate_id = ? AND kind = ? AND digest = ?"
     found: dict[str, Evidence] = {}
     for check, digest in sorted(wanted):
         row = connection.execute(query, (candidate_id, check, digest)).fetchone()
@@ -175,7 +175,8 @@ def cited_of(
 
 def rulings_on(connection: sqlite3.Connection, candidate_id: int) -> list[Ruling]:
     """The whole log on one candidate, in order of arrival."""
-    query = f"SELECT {RULING_COLUMNS} FROM ruling WHERE candidate = (SELECT name FROM candidate WHERE id = ?) ORDER BY seq"
+    named = "(SELECT name FROM candidate WHERE id = ?)"
+    query = f"SELECT {RULING_COLUMNS} FROM ruling WHERE candidate = {named} ORDER BY seq"
     return [ruling_from(row) for row in connection.execute(query, (candidate_id,)).fetchall()]
 
 

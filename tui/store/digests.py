@@ -12,14 +12,16 @@ import sqlite3
 # Each query gives rows of text in an order that depends on their content alone.
 PARTS = (
     "SELECT name FROM candidate ORDER BY name",
-    "SELECT name, t.source, t.digest, load.utc FROM candidate_version AS t JOIN candidate ON candidate.id = candidate_id "
-    "JOIN load ON load.id = load_id ORDER BY name, t.source, t.digest, load.utc",
+    "SELECT name, t.source, t.digest, load.utc FROM candidate_version AS t "
+    "JOIN candidate ON candidate.id = candidate_id JOIN load ON load.id = load_id "
+    "ORDER BY name, t.source, t.digest, load.utc",
     "SELECT name, band, t.source, epoch, t.digest, load.utc FROM measurement AS t "
     "JOIN candidate ON candidate.id = candidate_id JOIN load ON load.id = load_id "
     "ORDER BY name, band, t.source, epoch, t.digest, load.utc",
     *(
-        f"SELECT DISTINCT name, t.source, t.digest, load.utc FROM {table} AS t JOIN candidate ON candidate.id = candidate_id "
-        "JOIN load ON load.id = load_id ORDER BY name, t.source, t.digest, load.utc"
+        f"SELECT DISTINCT name, t.source, t.digest, load.utc FROM {table} AS t "
+        "JOIN candidate ON candidate.id = candidate_id JOIN load ON load.id = load_id "
+        "ORDER BY name, t.source, t.digest, load.utc"
         for table in ("neighbour", "dip", "spectrum", "cutout")
     ),
     "SELECT digest FROM attachment ORDER BY digest",

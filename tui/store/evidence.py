@@ -51,7 +51,10 @@ def make_current(connection: sqlite3.Connection, candidate_id: int, evidence: Ev
     """Put one evidence in the place of the current one, which goes unless a ruling cites it."""
     if not evidence.digest:
         raise StoreError(f"Evidence on {evidence.kind} without a digest cannot be kept.")
-    query = "SELECT id, digest, version, is_current FROM evidence WHERE candidate_id = ? AND kind = ? AND (is_current OR digest = ?)"
+    query = (
+        "SELECT id, digest, version, is_current FROM evidence "
+        "WHERE candidate_id = ? AND kind = ? AND (is_current = 1 OR digest = ?)"
+    )
     for row_id, digest, version, is_current in connection.execute(
         query, (candidate_id, evidence.kind, evidence.digest)
     ).fetchall():
@@ -94,8 +97,9 @@ def current_evidence_of(connection: sqlite3.Connection, names: Sequence[str]) ->
     found: dict[str, dict[str, Evidence]] = {name: {} for name in names}
     for page in pages(list(names)):
         query = (
-            "SELECT name, kind, version, digest, adequate, content FROM evidence "
-            f"JOIN candidate ON candidate.id = candidate_id WHERE is_current = 1 AND name IN ({', '.join('?' * len(page))})"
+            "SELECT name, kind, version, digest, adequate, content FROM candidate "
+            "JOIN evidence ON candidate_id = candidate.id AND is_current = 1 "
+            f"WHERE name IN ({', '.join('?' * len(page))})"
         )
         for name, kind, *row in connection.execute(query, page).fetchall():
             found[name][kind] = evidence_from(kind, *row)

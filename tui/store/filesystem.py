@@ -11,7 +11,9 @@ NETWORK_TYPES = frozenset(
     "nfs nfs3 nfs4 cifs smb smb2 smb3 smbfs ncpfs ncp afs coda ceph glusterfs lustre gpfs beegfs panfs pvfs2 orangefs "
     "ocfs2 gfs gfs2 davfs davfs2 webdav sshfs afpfs acfs".split()
 )
-NETWORK_FUSE = frozenset("sshfs s3fs rclone glusterfs cephfs davfs davfs2 smbnetfs curlftpfs gcsfuse goofys blobfuse".split())
+NETWORK_FUSE = frozenset(
+    "sshfs s3fs rclone glusterfs cephfs davfs davfs2 smbnetfs curlftpfs gcsfuse goofys blobfuse".split()
+)
 MOUNT_TABLE = "/proc/self/mounts"
 
 

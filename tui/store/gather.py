@@ -14,28 +14,32 @@ import sqlite3
 import tempfile
 from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
-from pathlib import Path
 
 from tui.errors import HandleError, StoreError, UnknownNameError
 from tui.store import deriving
 from tui.store.audit import schema_faults
 from tui.store.candidates import refresh_inputs
 from tui.store.chains import chain_faults
-from tui.store.connect import BUSY_SECONDS, immediate, open_queue, read_header
+from tui.store.connect import immediate, open_queue, read_header, read_only, write_copy
 from tui.store.filesystem import network_type
 from tui.store.inputs import input_faults
+from tui.store.measurements import COLUMNS
 from tui.store.names import later_utc
 from tui.store.records import GatherReport
 from tui.store.reviewers import checked_handle, handles
 from tui.store.settings import STANDING_NAMES, newest, settings_from, touched
 
-SAME_CANDIDATE = "JOIN other.candidate AS theirs ON theirs.id = t.candidate_id JOIN candidate AS ours ON ours.name = theirs.name"
-SAME_LOAD = "JOIN other.load AS their_load ON their_load.id = t.load_id JOIN load AS our_load ON our_load.utc = their_load.utc"
+SAME_CANDIDATE = (
+    "JOIN other.candidate AS theirs ON theirs.id = t.candidate_id JOIN candidate AS ours ON ours.name = theirs.name"
+)
+SAME_LOAD = (
+    "JOIN other.load AS their_load ON their_load.id = t.load_id JOIN load AS our_load ON our_load.utc = their_load.utc"
+)
 # table -> its own columns beside candidate and load, and those of them that tell its rows apart
 INPUTS: Mapping[str, tuple[str, str]] = {
     "candidate_version": ("source, digest, facts", "source, digest"),
     "measurement": (
-        "band, source, epoch, digest, value, value_error, unit, flux_jy, error_jy, is_limit, nsigma, flags, exclude, note",
+        COLUMNS,
         "band, source, epoch, digest",
     ),
     "neighbour": (
@@ -120,16 +124,14 @@ def private_copy(path: str) -> Iterator[str]:
 def copy_queue(path: str, copy: str) -> None:
     """Copy a queue that others may be writing; on a network filesystem byte by byte, log and all."""
     if not network_type(path):
-        source = sqlite3.connect(Path(path).absolute().as_uri() + "?mode=ro", uri=True, timeout=BUSY_SECONDS)
-        target = sqlite3.connect(copy)
+        source = read_only(path)
         try:
-            source.backup(target)
+            write_copy(source, copy)
             return
         except sqlite3.Error as error:
             if "unable to open" not in str(error):  # a directory that cannot be written: copy the bytes
                 raise StoreError(f"{path} cannot be read: {error}.") from error
         finally:
-            target.close()
             source.close()
     try:
         shutil.copyfile(path, copy)
@@ -175,7 +177,7 @@ def take_people(connection: sqlite3.Connection, path: str, rename: Mapping[str, 
     for old, new in rename.items():
         checked_handle(new)
         if old not in theirs.values():
-            raise UnknownNameError("reviewer", old, f"Nobody in {path} has that handle, so --rename {old}={new} is void.")
+            raise UnknownNameError("reviewer", old, f"Nobody in {path} has that handle; --rename {old}={new} is void.")
     people = take_rows(connection, "reviewer", "id, handle, joined_utc", "id")
     take_rows(connection, "reviewer_rename", "reviewer_id, handle, utc", "reviewer_id, handle, utc")
     for reviewer_id, handle in theirs.items():
@@ -206,7 +208,8 @@ def after_all_names(connection: sqlite3.Connection, reviewer_id: str) -> str:
 def other_handles(connection: sqlite3.Connection) -> dict[str, str]:
     """Reviewer id -> handle, in the other queue."""
     by = dict(connection.execute("SELECT id, handle FROM other.reviewer").fetchall())
-    by.update(connection.execute("SELECT reviewer_id, handle FROM other.reviewer_rename ORDER BY utc, handle").fetchall())
+    query = "SELECT reviewer_id, handle FROM other.reviewer_rename ORDER BY utc, handle"
+    by.update(connection.execute(query).fetchall())
     return by
 
 
@@ -225,8 +228,8 @@ def take_inputs(connection: sqlite3.Connection, path: str) -> tuple[int, set[int
     take_rows(connection, "load", "utc", "utc")
     take_rows(connection, "attachment", "digest, kind, name, content", "digest")
     query = (
-        "SELECT name FROM other.candidate AS o WHERE NOT EXISTS (SELECT 1 FROM candidate WHERE candidate.name = o.name) "
-        "ORDER BY o.id"
+        "SELECT name FROM other.candidate AS o "
+        "WHERE NOT EXISTS (SELECT 1 FROM candidate WHERE candidate.name = o.name) ORDER BY o.id"
     )
     changed: set[int] = set()
     for (name,) in connection.execute(query).fetchall():
@@ -258,9 +261,9 @@ def take_cited(connection: sqlite3.Connection) -> int:
     """Add the evidence that the other's rulings cite, as evidence of the past; how much was new."""
     query = (
         "INSERT INTO evidence (candidate_id, kind, version, digest, adequate, content, is_current) "
-        f"SELECT ours.id, t.kind, t.version, t.digest, t.adequate, t.content, 0 FROM other.evidence AS t {SAME_CANDIDATE} "
-        "WHERE EXISTS (SELECT 1 FROM other.ruling AS r WHERE r.candidate = theirs.name "
-        'AND r."check" = t.kind AND r.evidence_digest = t.digest) AND NOT EXISTS (SELECT 1 FROM evidence AS mine '
+        "SELECT ours.id, t.kind, t.version, t.digest, t.adequate, t.content, 0 "
+        f"FROM other.evidence AS t {SAME_CANDIDATE} WHERE EXISTS (SELECT 1 FROM other.ruling AS r "
+        'WHERE r.candidate = theirs.name AND r."check" = t.kind AND r.evidence_digest = t.digest) AND NOT EXISTS (SELECT 1 FROM evidence AS mine '
         "WHERE mine.candidate_id = ours.id AND mine.kind = t.kind AND mine.digest = t.digest)"
     )
     return connection.execute(query).rowcount

@@ -29,7 +29,8 @@ def input_faults(connection: sqlite3.Connection, ids: Sequence[int]) -> Iterator
             *wrong_sets(connection, page),
             *wrong_cutouts(connection, page),
         ):
-            yield Fault("input", names[key], f"{what} was changed after it was loaded: its digest is not that of its content.")
+            text = f"{what} was changed after it was loaded: its digest is not that of its content."
+            yield Fault("input", names[key], text)
 
 
 def wrong_versions(connection: sqlite3.Connection, ids: Sequence[int]) -> Iterator[tuple[int, str]]:

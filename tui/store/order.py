@@ -153,8 +153,8 @@ class Eyes:
         """Ranks in OUTCOME_RANKS of the outcome, `sealed` unless the reader's seal is open."""
         ranks = np.zeros(self.size, dtype=np.int8)
         query = (
-            "SELECT v.candidate_id, q.outcome FROM reviewer_row AS v CROSS JOIN queue_row AS q ON q.id = v.candidate_id "
-            "WHERE v.reviewer_id = ? AND v.seal_open = 1"
+            "SELECT v.candidate_id, q.outcome FROM reviewer_row AS v "
+            "CROSS JOIN queue_row AS q ON q.id = v.candidate_id WHERE v.reviewer_id = ? AND v.seal_open = 1"
         )
         self.overwrite(ranks, query, OUTCOME_RANKS)
         return ranks

@@ -24,7 +24,7 @@ SORTS = ("oddness", "name", "band", "pull", "outcome", "ruled", "needs", *CHECKS
 
 @dataclass(frozen=True, slots=True)
 class LoadRecord:
-    """One candidate as one table gives it: facts, measurements, neighbours, dips, spectrum (all but the name optional)."""
+    """One candidate as one table gives it; all but the name is optional."""
 
     candidate: Candidate
     source: str = ""  # label of the table, for facts and side tables; a measurement carries its own
@@ -134,7 +134,7 @@ class CandidateView:
     id: int = 0
     cause: str = ""  # what explains it, where the outcome is explained: checks, or parted
     to_rule: tuple[str, ...] = ()  # checks that the reader has still to rule, a split to rule again among them
-    own_history: list[RulingLine] = field(default_factory=list)  # the reader's rulings, in time order, replaced ones too
+    own_history: list[RulingLine] = field(default_factory=list)  # in time order, replaced ones too
 
 
 @dataclass(frozen=True, slots=True)

@@ -30,7 +30,8 @@ def add_reviewer(connection: sqlite3.Connection, handle: str, utc: str) -> Revie
     reviewer = Reviewer(secrets.token_hex(8), checked_handle(handle), checked_utc(utc))
     with immediate(connection):
         if handle in handles(connection).values():
-            raise HandleError(handle, f"{handle} has joined this queue already; review with --as {handle}, or take another.")
+            reason = f"{handle} has joined this queue already; review with --as {handle}, or take another handle."
+            raise HandleError(handle, reason)
         connection.execute("INSERT INTO reviewer VALUES (?, ?, ?)", (reviewer.id, handle, reviewer.joined_utc))
     return reviewer
 

@@ -24,6 +24,7 @@ from tui.store.measurements import finite, short_digest
 from tui.store.names import id_of
 from tui.store.records import Attachment, Cutout
 
+BySource = Mapping[str, tuple[str, str, list[tuple[Any, ...]]]]  # source -> (utc, digest, rows) of its newest set
 MAX_PIXELS = 1_000_000  # of a cutout; a larger picture is no cutout
 SET_TABLES = ("neighbour", "dip", "spectrum")
 READ = {
@@ -85,7 +86,12 @@ def side_sets(candidate: Candidate) -> dict[str, list[tuple[Any, ...]]]:
 
 
 def add_set(
-    connection: sqlite3.Connection, table: str, candidate_id: int, source: str, loads: Loads, rows: list[tuple[Any, ...]]
+    connection: sqlite3.Connection,
+    table: str,
+    candidate_id: int,
+    source: str,
+    loads: Loads,
+    rows: list[tuple[Any, ...]],
 ) -> bool:
     """Add one set unless it is on file; whether it was added."""
     key = (candidate_id, source, set_digest(rows))
@@ -101,7 +107,7 @@ def add_set(
     return True
 
 
-def all_sets(connection: sqlite3.Connection, table: str, ids: Sequence[int]) -> dict[int, dict[str, tuple[str, str, list]]]:
+def all_sets(connection: sqlite3.Connection, table: str, ids: Sequence[int]) -> dict[int, BySource]:
     """Candidate id -> source -> (utc, digest, rows) of the newest set."""
     order = "rowid" if table == "spectrum" else "position"
     query = (
@@ -114,7 +120,7 @@ def all_sets(connection: sqlite3.Connection, table: str, ids: Sequence[int]) -> 
         first_utc, rows = sets.setdefault((candidate_id, source, digest), (utc, []))
         if utc == first_utc:  # the same set from another load is the same set
             rows.append(tuple(row))
-    newest: dict[int, dict[str, tuple[str, str, list]]] = {}
+    newest: dict[int, dict[str, tuple[str, str, list[tuple[Any, ...]]]]] = {}
     for (candidate_id, source, digest), (utc, rows) in sets.items():
         by_source = newest.setdefault(candidate_id, {})
         if source not in by_source or (utc, digest) > by_source[source][:2]:
@@ -122,7 +128,7 @@ def all_sets(connection: sqlite3.Connection, table: str, ids: Sequence[int]) -> 
     return newest
 
 
-def neighbours_from(by_source: Mapping[str, tuple[str, str, list]]) -> tuple[Neighbour, ...]:
+def neighbours_from(by_source: BySource) -> tuple[Neighbour, ...]:
     """The neighbours of every source, sources in order."""
     return tuple(
         Neighbour(separation, math.nan if angle is None else angle, fluxes_from(fluxes), label)
@@ -136,7 +142,7 @@ def fluxes_from(text: str) -> dict[str, float]:
     return {band: math.nan if flux is None else float(flux) for band, flux in json.loads(text).items()}
 
 
-def dips_from(by_source: Mapping[str, tuple[str, str, list]]) -> tuple[Dip, ...]:
+def dips_from(by_source: BySource) -> tuple[Dip, ...]:
     """The dips of every source, sources in order."""
     return tuple(
         Dip(event, band, depth, math.nan if error is None else error, epoch)
@@ -145,7 +151,7 @@ def dips_from(by_source: Mapping[str, tuple[str, str, list]]) -> tuple[Dip, ...]
     )
 
 
-def spectrum_from(by_source: Mapping[str, tuple[str, str, list]]) -> Spectrum | None:
+def spectrum_from(by_source: BySource) -> Spectrum | None:
     """The newest spectrum of all sources; a candidate carries one."""
     if not by_source:
         return None
@@ -186,7 +192,8 @@ def cutouts(connection: sqlite3.Connection, name: str) -> list[Cutout]:
         "JOIN load ON load.id = load_id WHERE candidate_id = ? ORDER BY load.utc, digest"
     )
     newest: dict[tuple[str, str], Cutout] = {}
-    for band, source, height, width, scale, facts, image in connection.execute(query, (id_of(connection, name),)).fetchall():
+    rows = connection.execute(query, (id_of(connection, name),)).fetchall()
+    for band, source, height, width, scale, facts, image in rows:
         newest[band, source] = Cutout(
             band, picture(image, height, width), math.nan if scale is None else scale, source, json.loads(facts)
         )
@@ -215,7 +222,8 @@ def attach(connection: sqlite3.Connection, kind: str, name: str, content: bytes)
 
 def attachment(connection: sqlite3.Connection, digest: str) -> Attachment:
     """The file of that digest; UnknownNameError if the queue carries none."""
-    row = connection.execute("SELECT kind, name, digest, content FROM attachment WHERE digest = ?", (digest,)).fetchone()
+    query = "SELECT kind, name, digest, content FROM attachment WHERE digest = ?"
+    row = connection.execute(query, (digest,)).fetchone()
     if row is None:
         raise UnknownNameError("attachment", digest)
     return Attachment(*row)

@@ -41,7 +41,8 @@ def counts_between(connection: sqlite3.Connection, after: int, last: int) -> dic
         'SELECT candidate_id, "check", explains, short, unclear, revised, stale FROM standing '
         "WHERE candidate_id > ? AND candidate_id <= ?"
     )
-    return {(key, check): CheckCount(*rest) for key, check, *rest in connection.execute(query, (after, last)).fetchall()}
+    rows = connection.execute(query, (after, last)).fetchall()
+    return {(key, check): CheckCount(*rest) for key, check, *rest in rows}
 
 
 def team_row(connection: sqlite3.Connection, candidate_id: int) -> TeamRow | None:

@@ -60,7 +60,8 @@ def along_the_ring(connection: sqlite3.Connection, bound: dict[str, object]) -> 
         query = (
             f"SELECT q.done, q.ring, q.name FROM queue_row AS q WHERE q.needs = 1 AND q.done = :level "
             f"AND q.ring {part} :start AND NOT {ON_ANOTHER_SCREEN} AND {PUT_OFF} = :put_off AND NOT EXISTS "
-            "(SELECT 1 FROM reviewer_row AS v WHERE v.reviewer_id = :reviewer AND v.candidate_id = q.id) ORDER BY q.ring"
+            "(SELECT 1 FROM reviewer_row AS v WHERE v.reviewer_id = :reviewer AND v.candidate_id = q.id) "
+            "ORDER BY q.ring"
         )
         cursor = connection.execute(query, bound)
         while (row := cursor.fetchone()) is not None:

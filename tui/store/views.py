@@ -1,7 +1,8 @@
 """The queue as one reader may see it.
 
-The seal is kept by construction, here and in order.py. States come from `reviewer_row`, which holds only what that reviewer
-may read, or, where the reviewer has no row, read `todo` (`nodata` where the evidence is untestable);
+The seal is kept by construction, here and in order.py. States come from `reviewer_row`, which holds
+only what that reviewer may read, or, where the reviewer has no row, read `todo` (`nodata` where the
+evidence is untestable);
 the team's outcome is looked at behind `seal_open = 1` alone; a reader without a handle gets constants.
 Filters, sorts (order.py) and counts read the same rows in the same way.
 """
