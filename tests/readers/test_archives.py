@@ -29,9 +29,14 @@ def test_every_table_states_where_it_comes_from(text):
 
 @pytest.mark.parametrize(
     ("old", "new", "word"),
-    [("# label: Tycho-2\n", "", "label"), ("role,target", "rolle,target", "columns must be"), ("mag,BT", "magg,BT", "none of"),
-     ("# mark: bt_mag", "# mark: xt_mag", "mark xt_mag"), ("# null error: detection", "# null error: perhaps", "null error")],
-)  # fmt: skip
+    [
+        ("# label: Tycho-2\n", "", "label"),
+        ("role,target", "rolle,target", "columns must be"),
+        ("mag,BT", "magg,BT", "none of"),
+        ("# mark: bt_mag", "# mark: xt_mag", "mark xt_mag"),
+        ("# null error: detection", "# null error: perhaps", "null error"),
+    ],
+)
 def test_a_faulty_table_says_what_is_wrong(old, new, word):
     assert old in GOOD
     with pytest.raises(InputError, match=word):
@@ -40,8 +45,8 @@ def test_a_faulty_table_says_what_is_wrong(old, new, word):
 
 def test_gaia_errors_come_from_flux_over_error(one):
     # sigma_F = F / (flux over error); as a magnitude 2.5/ln 10 divided by it.
-    text = "source_id,ra,dec,phot_g_mean_mag,phot_g_mean_flux_over_error,ruwe\n5853498713190525696,217.4,-62.7,8.98,1000,1.05\n"
-    candidate, band, contents = one(text)
+    head = "source_id,ra,dec,phot_g_mean_mag,phot_g_mean_flux_over_error,ruwe\n"
+    candidate, band, contents = one(head + "5853498713190525696,217.4,-62.7,8.98,1000,1.05\n")
     assert candidate.name == "Gaia DR3 5853498713190525696"
     assert band["Gaia_G"].error_jy == pytest.approx(band["Gaia_G"].flux_jy / 1000)
     assert band["Gaia_G"].value_error == pytest.approx(2.5 / math.log(10) / 1000)
@@ -51,7 +56,9 @@ def test_gaia_errors_come_from_flux_over_error(one):
 
 
 def test_2mass_limits_and_flags(one):
-    text = "name,j_m,j_msigcom,h_m,h_msigcom,k_m,k_msigcom,ph_qual,rd_flg,cc_flg\nA,15.1,0.05,14.8,9.5,14.9,,AFU,220,0c0\n"
+    text = (
+        "name,j_m,j_msigcom,h_m,h_msigcom,k_m,k_msigcom,ph_qual,rd_flg,cc_flg\nA,15.1,0.05,14.8,9.5,14.9,,AFU,220,0c0\n"
+    )
     _, band, _ = one(text)
     # Explanatory Supplement II.2.a: U is the 95 % limit (one-sided 1.645 sigma); the errors of F are flags above 8.
     assert band["Ks"].limit and band["Ks"].nsigma == 1.645 and math.isnan(band["Ks"].error_jy)
@@ -90,7 +97,11 @@ def test_allwise_limits_rest_on_the_snr_where_there_is_no_flux(one):
 
 def test_allwise_limits_without_flux_and_snr_are_limits_at_two_sigma(one):
     _, band, _ = one("name,w4mpro,w4sigmpro,w4snr\nA,8.9,,\n")
-    assert band["W4"].limit and band["W4"].nsigma == 2 and band["W4"].flux_jy == pytest.approx(8.363 * 10 ** (-0.4 * 8.9), rel=1e-4)
+    assert (
+        band["W4"].limit
+        and band["W4"].nsigma == 2
+        and band["W4"].flux_jy == pytest.approx(8.363 * 10 ** (-0.4 * 8.9), rel=1e-4)
+    )
 
 
 def test_without_a_column_of_errors_nothing_is_called_a_limit(one):
@@ -103,8 +114,15 @@ def test_allwise_flags_by_band(one):
     head = "name,w1mpro,w1sigmpro,w2mpro,w2sigmpro,w1sat,w2sat,w1nm,na,nb,cc_flags,ext_flg,ph_qual,var_flg,w1mjdmean\n"
     candidate, band, _ = one(head + "A,6.1,0.04,6.2,0.02,0.12,0.0,12,0,2,dD0h,1,AABC,11nn,55386.31\n")
     assert band["W1"].flags == {
-        "w1sat": "0.12", "w1nm": "12", "na": "0", "nb": "2", "cc_flags": "d", "ext_flg": "1", "ph_qual": "A", "var_flg": "1",
-    }  # fmt: skip
+        "w1sat": "0.12",
+        "w1nm": "12",
+        "na": "0",
+        "nb": "2",
+        "cc_flags": "d",
+        "ext_flg": "1",
+        "ph_qual": "A",
+        "var_flg": "1",
+    }
     assert band["W2"].flags["cc_flags"] == "D"
     assert band["W1"].epoch == "MJD 55386.31"
     # Julian year of MJD 55386.31: 2000 + (55386.31 - 51544.5)/365.25
@@ -119,7 +137,10 @@ def test_sdss_is_read_as_asinh(one):
 
 
 def test_pan_starrs_galex_tycho(one):
-    head = "name,gMeanPSFMag,gMeanPSFMagErr,yMeanPSFMag,yMeanPSFMagErr,fuv_mag,fuv_magerr,nuv_mag,nuv_magerr,BTmag,e_BTmag,VTmag,e_VTmag\n"
+    head = (
+        "name,gMeanPSFMag,gMeanPSFMagErr,yMeanPSFMag,yMeanPSFMagErr,"
+        "fuv_mag,fuv_magerr,nuv_mag,nuv_magerr,BTmag,e_BTmag,VTmag,e_VTmag\n"
+    )
     _, band, contents = one(head + "A,14.5,0.01,14.1,0.02,-999,-999,18.2,0.05,8.163,0.016,7.992,0.011\n")
     assert set(band) == {"PS1_g", "PS1_y", "GALEX_NUV", "BT", "VT"} and contents.unknown_columns == []
     assert band["PS1_g"].flux_jy == pytest.approx(3631 * 10 ** (-0.4 * 14.5))
@@ -127,7 +148,10 @@ def test_pan_starrs_galex_tycho(one):
 
 
 def test_spitzer_akari_iras(one):
-    head = "name,i1_f_ap1,i1_df_ap1,m1_f_psf,m1_df_psf,S09,e_S09,q_S09,S18,e_S18,Fnu_12,e_Fnu_12,q_Fnu_12,Fnu_60,e_Fnu_60,q_Fnu_60\n"
+    head = (
+        "name,i1_f_ap1,i1_df_ap1,m1_f_psf,m1_df_psf,S09,e_S09,q_S09,S18,e_S18,"
+        "Fnu_12,e_Fnu_12,q_Fnu_12,Fnu_60,e_Fnu_60,q_Fnu_60\n"
+    )
     _, band, _ = one(head + "A,50000,500,2000,20,0.0653,0.0158,3,-999.9,-1000,0.27,11,3,0.40,,1\n")
     assert set(band) == {"IRAC1", "MIPS24", "AKARI_S9W", "IRAS12", "IRAS60"}
     assert band["IRAC1"].flux_jy == pytest.approx(0.05)
@@ -137,9 +161,34 @@ def test_spitzer_akari_iras(one):
 
 
 def test_vizier_names(one):
-    head = "name,RA_ICRS,DE_ICRS,Plx,e_Plx,Gmag,e_Gmag,BPmag,RPmag,Jmag,e_Jmag,Hmag,e_Hmag,Kmag,e_Kmag,Qfl,W1mag,e_W1mag,W2mag,e_W2mag,qph,ccf\n"
+    head = (
+        "name,RA_ICRS,DE_ICRS,Plx,e_Plx,Gmag,e_Gmag,BPmag,RPmag,"
+        "Jmag,e_Jmag,Hmag,e_Hmag,Kmag,e_Kmag,Qfl,W1mag,e_W1mag,W2mag,e_W2mag,qph,ccf\n"
+    )
     row = "A,10.5,-3.25,12.5,0.02,9.1,0.003,9.5,8.6,8.1,0.02,7.9,0.03,7.8,0.02,AAA,7.7,0.03,7.75,0.02,AABU,0000\n"
     candidate, band, contents = one(head + row)
     assert {"Gaia_G", "Gaia_BP", "J", "H", "Ks", "W1", "W2"} <= set(band)
     assert candidate.facts["parallax"] == 12.5 and candidate.facts["ra"] == 10.5
     assert band["W1"].flags == {"ph_qual": "A", "cc_flags": "0"} and contents.unknown_columns == []
+
+
+def test_gaia_errors_from_the_fluxes_where_nothing_else_gives_them(one):
+    head = "name,phot_g_mean_mag,phot_g_mean_flux,phot_g_mean_flux_error,phot_bp_mean_mag,phot_bp_mean_flux,"
+    _, band, _ = one(head + "phot_bp_mean_flux_error\nA,9.0,4000000,2000,,13000,130\n")
+    assert band["Gaia_G"].value == 9.0 and band["Gaia_G"].error_jy == pytest.approx(band["Gaia_G"].flux_jy / 2000)
+    # Riello et al. 2021, A&A 649, A3: one photo-electron a second in BP is 25.3385 mag.
+    expected = 13000 * bands()["Gaia_BP"].zero_point_jy * 10 ** (-0.4 * 25.3385422158)
+    assert band["Gaia_BP"].flux_jy == pytest.approx(expected)
+    assert band["Gaia_BP"].error_jy == pytest.approx(expected / 100) and "phot_bp_mean_flux" in band["Gaia_BP"].note
+
+
+def test_long_identifiers_that_lost_digits_are_no_names(read, write):
+    from tui.errors import TableError
+
+    with pytest.raises(TableError, match="last digits"):
+        read(write("source_id,phot_g_mean_mag\n5.853498713190526E+18,9\n"))
+
+
+def test_two_measurements_of_a_band_under_one_label_stay_two(one):
+    candidate, _, _ = one("name,J_mag,J_err,j_m,j_msigcom\nA,8.0,0.02,8.1,0.03\n", source="mine")
+    assert {m.source: m.value for m in candidate.measurements} == {"mine": 8.0, "mine j_m": 8.1}

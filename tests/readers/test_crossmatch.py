@@ -9,12 +9,47 @@ from astropy.table import Table, join
 
 def joined(tmp_path):
     """Gaia, 2MASS and AllWISE as astropy joins them, with the columns that two or three of them share."""
-    gaia = Table({"key": [1], "source_id": [77], "designation": ["Gaia DR3 77"], "ra": [10.0], "dec": [-5.0],
-                  "phot_g_mean_mag": [9.0], "phot_g_mean_flux_over_error": [500.0], "pmra": [100.0], "pmdec": [-50.0]})  # fmt: skip
-    mass = Table({"key": [1], "designation": ["00400000-0500000"], "ra": [10.1], "dec": [-5.1], "err_maj": [0.06],
-                  "j_m": [8.0], "j_msigcom": [0.02], "ph_qual": ["UAA"], "cc_flg": ["000"]})  # fmt: skip
-    wise = Table({"key": [1], "designation": ["J004000.00-050000.0"], "ra": [10.2], "dec": [-5.2], "sigra": [0.03],
-                  "w1mpro": [7.5], "w1sigmpro": [0.03], "cc_flags": ["0000"], "ph_qual": ["ABCU"], "sigpmra": [9.0], "pmra": [1.0]})  # fmt: skip
+    gaia = Table(
+        {
+            "key": [1],
+            "source_id": [77],
+            "designation": ["Gaia DR3 77"],
+            "ra": [10.0],
+            "dec": [-5.0],
+            "phot_g_mean_mag": [9.0],
+            "phot_g_mean_flux_over_error": [500.0],
+            "pmra": [100.0],
+            "pmdec": [-50.0],
+        }
+    )
+    mass = Table(
+        {
+            "key": [1],
+            "designation": ["00400000-0500000"],
+            "ra": [10.1],
+            "dec": [-5.1],
+            "err_maj": [0.06],
+            "j_m": [8.0],
+            "j_msigcom": [0.02],
+            "ph_qual": ["UAA"],
+            "cc_flg": ["000"],
+        }
+    )
+    wise = Table(
+        {
+            "key": [1],
+            "designation": ["J004000.00-050000.0"],
+            "ra": [10.2],
+            "dec": [-5.2],
+            "sigra": [0.03],
+            "w1mpro": [7.5],
+            "w1sigmpro": [0.03],
+            "cc_flags": ["0000"],
+            "ph_qual": ["ABCU"],
+            "sigpmra": [9.0],
+            "pmra": [1.0],
+        }
+    )
     first = join(gaia, mass, keys="key")
     both = join(first, wise, keys="key")
     both["name"] = ["A"]
@@ -61,7 +96,9 @@ def test_g_magnitudes_of_both_surveys_by_place(one):
 
 
 def test_native_tables_joined(one):
-    candidate, _, contents = one("name_1,ra_1,J_mag_1,J_err_1,name_2,ra_2,J_mag_2,J_err_2\nA,10,8.0,0.02,B,11,8.1,0.03\n", source="mine")
+    candidate, _, contents = one(
+        "name_1,ra_1,J_mag_1,J_err_1,name_2,ra_2,J_mag_2,J_err_2\nA,10,8.0,0.02,B,11,8.1,0.03\n", source="mine"
+    )
     assert candidate.name == "A" and candidate.facts["ra"] == 10
     assert {m.source: m.value for m in candidate.measurements} == {"mine 1": 8.0, "mine 2": 8.1}
     assert "name_2" in contents.unknown_columns and "ra_1: taken as ra" in contents.cautions
@@ -80,7 +117,9 @@ def test_a_star_s_own_position_is_not_taken_for_the_catalogue_s(one):
 
 def test_rows_of_a_large_join_keep_their_order(read, tmp_path):
     count = 500
-    table = Table({"name": [f"S{i}" for i in range(count)], "J_mag": np.linspace(5, 15, count), "J_err": np.full(count, 0.02)})
+    table = Table(
+        {"name": [f"S{i}" for i in range(count)], "J_mag": np.linspace(5, 15, count), "J_err": np.full(count, 0.02)}
+    )
     path = tmp_path / "many.fits"
     table.write(path)
     contents = read(path)

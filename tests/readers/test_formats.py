@@ -9,12 +9,19 @@ import pytest
 from astropy import units as u
 from astropy.table import MaskedColumn, Table
 
-FORMS = {"t.ecsv": "ascii.ecsv", "comma.ecsv": "ascii.ecsv", "t.fits": "fits", "t.vot": "votable", "t.csv": "ascii.csv", "t.tsv": "ascii.tab"}
+FORMS = {
+    "t.ecsv": "ascii.ecsv",
+    "comma.ecsv": "ascii.ecsv",
+    "t.fits": "fits",
+    "t.vot": "votable",
+    "t.csv": "ascii.csv",
+    "t.tsv": "ascii.tab",
+}
 
 
 def table():
     star = Table()
-    star["name"] = ["HD 1", "étoile, \"two\"", "=1+1", "x y z"]
+    star["name"] = ["HD 1", 'étoile, "two"', "=1+1", "x y z"]
     star["ra"] = np.array([10.0, 20.0, 30.0, 359.5]) * u.deg
     star["source_id"] = np.array([5853498713190525696, 2, 3, 4], dtype=np.int64)
     star["J_mag"] = MaskedColumn([8.0, 9.0, 10.0, 11.0], mask=[False, False, True, False], unit="mag")
@@ -44,12 +51,18 @@ def test_round_trip(read, tmp_path, name):
     names = [c.name for c in contents.candidates]
     assert names == ["HD 1", 'etoile, "two"' if name == "t.fits" else 'étoile, "two"', "=1+1", "x y z"]
     first, second, third, fourth = ({m.band: m for m in c.measurements} for c in contents.candidates)
-    assert first["J"].flux_jy == pytest.approx(1594 * 10**-3.2) and first["J"].value_error == pytest.approx(0.02, rel=1e-6)
+    assert first["J"].flux_jy == pytest.approx(1594 * 10**-3.2) and first["J"].value_error == pytest.approx(
+        0.02, rel=1e-6
+    )
     assert math.isnan(second["J"].error_jy) and second["J"].flags == {"flag": "U"}
     assert "J" not in third and third["W4"].limit
     assert all("W4" not in band for band in (first, second, fourth))
     facts = contents.candidates[0].facts
-    assert facts["source_id"] == "5853498713190525696" and facts["phot_g_n_obs"] == 200 and facts["duplicated_source"] is False
+    assert (
+        facts["source_id"] == "5853498713190525696"
+        and facts["phot_g_n_obs"] == 200
+        and facts["duplicated_source"] is False
+    )
     assert "phot_g_n_obs" not in contents.candidates[2].facts and contents.candidates[3].facts["ra"] == 359.5
 
 
@@ -78,32 +91,41 @@ def test_units_come_from_the_file(read, tmp_path):
         kept.write(path, format="votable" if name == "u.vot" else None)
         band = {m.band: m for m in read(path).candidates[0].measurements}
         assert band["W4"].flux_jy == pytest.approx(0.012), name
-        assert band["W3"].flux_jy == pytest.approx((1e-16 * u.W / u.m**2 / u.um).to_value(u.Jy, u.spectral_density(12.0728 * u.um)), rel=1e-4)
+        assert band["W3"].flux_jy == pytest.approx(
+            (1e-16 * u.W / u.m**2 / u.um).to_value(u.Jy, u.spectral_density(12.0728 * u.um)), rel=1e-4
+        )
         if name == "u.ecsv":
             assert band["J"].flux_jy == pytest.approx(3631 * 10**-3.2)
 
 
 def test_endings_do_not_matter_and_text_details(read, write):
-    text = "# a comment\r\n# another, with commas\r\nname;J_mag\r\n\"A;1\";8,0\r\n\r\nB;9.0\r\n"
+    text = '# a comment\r\n# another, with commas\r\nname;J_mag\r\n"A;1";8,0\r\n\r\nB;9.0\r\n'
     contents = read(write("\ufeff" + text, "oddly.named"))
     assert [c.name for c in contents.candidates] == ["A;1", "B"]
     assert [(entry.row, entry.column) for entry in contents.refused] == [(1, "J_mag")]
 
 
 def test_ecsv_aligned_by_hand(read, write):
-    text = "# %ECSV 1.0\n# ---\n# datatype:\n# - {name: name, datatype: string}\n# - {name: W4_flux, unit: mJy, datatype: float64}\n# schema: astropy-2.0\n"
-    contents = read(write(text + "name     W4_flux\n\"HD 1\"   12.0\nB        \"\"\n", "t.ecsv"))
+    text = (
+        "# %ECSV 1.0\n# ---\n# datatype:\n# - {name: name, datatype: string}\n"
+        "# - {name: W4_flux, unit: mJy, datatype: float64}\n# schema: astropy-2.0\n"
+    )
+    contents = read(write(text + 'name     W4_flux\n"HD 1"   12.0\nB        ""\n', "t.ecsv"))
     assert [len(c.measurements) for c in contents.candidates] == [1, 0] and contents.refused == []
 
 
 def test_the_first_of_several_tables(read, tmp_path):
     from astropy.io import fits
 
-    hdus = [fits.PrimaryHDU(np.zeros((3, 3)))] + [fits.table_to_hdu(Table({"name": [name], "J_mag": [8.0]})) for name in "AB"]
+    hdus = [fits.PrimaryHDU(np.zeros((3, 3)))] + [
+        fits.table_to_hdu(Table({"name": [name], "J_mag": [8.0]})) for name in "AB"
+    ]
     path = tmp_path / "two.fits"
     fits.HDUList(hdus).writeto(path)
     contents = read(path)
-    assert [c.name for c in contents.candidates] == ["A"] and any("first of 2 tables" in caution for caution in contents.cautions)
+    assert [c.name for c in contents.candidates] == ["A"] and any(
+        "first of 2 tables" in caution for caution in contents.cautions
+    )
 
 
 def test_arrays_in_cells_are_passed_over(read, tmp_path):
@@ -117,7 +139,9 @@ def test_parts_give_what_the_whole_gives(read, write, facts, archives):
     from tui.data.load import band_aliases, bands
     from tui.readers import read_parts
 
-    path = write("name,J_mag,J_err\n" + "".join(f"S{i % 45},{8 + i / 100:.2f},{'x' if i == 7 else 0.02}\n" for i in range(50)))
+    path = write(
+        "name,J_mag,J_err\n" + "".join(f"S{i % 45},{8 + i / 100:.2f},{'x' if i == 7 else 0.02}\n" for i in range(50))
+    )
     whole = read(path)
     parts = list(read_parts(path, bands(), band_aliases(), facts, archives, size=7))
     assert [c.name for part in parts for c in part.candidates] == [c.name for c in whole.candidates] and len(parts) == 9

@@ -13,12 +13,17 @@ from astropy.table import Table
 
 from tui.errors import TableError
 
-VOTABLE = """<?xml version="1.0"?>{prolog}<VOTABLE version="1.3" xmlns="http://www.ivoa.net/xml/VOTable/v1.3"><RESOURCE><TABLE>
+VOTABLE = """<?xml version="1.0"?>{prolog}<VOTABLE version="1.3" xmlns="http://www.ivoa.net/xml/VOTable/v1.3">
+<RESOURCE><TABLE>
 <FIELD name="name" datatype="char" arraysize="*"/><FIELD name="J_mag" datatype="double" unit="mag"/>
 <DATA>{rows}</DATA></TABLE></RESOURCE></VOTABLE>"""
-LAUGHS = "<!DOCTYPE l [<!ENTITY a '" + "x" * 50 + "'>" + "".join(
-    f"<!ENTITY {chr(98 + i)} '{('&' + chr(97 + i) + ';') * 10}'>" for i in range(9)
-) + "]>"  # fmt: skip
+LAUGHS = (
+    "<!DOCTYPE l [<!ENTITY a '"
+    + "x" * 50
+    + "'>"
+    + "".join(f"<!ENTITY {chr(98 + i)} '{('&' + chr(97 + i) + ';') * 10}'>" for i in range(9))
+    + "]>"
+)
 
 
 def fits_bytes(tmp_path, rows=100):
@@ -39,13 +44,26 @@ def refusal(read, path):
 
 @pytest.mark.parametrize(
     ("content", "word"),
-    [(b"", "empty"), (b"  \n \n", "empty"), (b"name,J_mag\nA\x00,8\n", "NUL byte"), ("name,J_mag\nA,8\n".encode("utf-16"), "UTF-16"),
-     ("name,J_mag\n\xe9toile,8\n".encode("latin-1"), "not UTF-8"), (gzip.compress(b"name\n"), "gunzip"), (b"PK\x03\x04xx", "spreadsheet"),
-     (b"SQLite format 3\x00", "gather"), (b"\x89HDF\r\n", "HDF5"), (os.urandom(5000).replace(b"\x00", b"\x01") + b"\x00", "text"),
-     (b"name,J_mag,J_mag\nA,8,9\n", "two columns"), (b"# only\n# comments\n", "column names"), (b"\x00" * 5000, "NUL byte"),
-     (b'name,J_mag\n"A,8\n' + b"x" * 200_000, "cannot be cut"), (b"," * 9000 + b"\n", "column names"), (b"%PDF-1.4 ", "PDF")],
+    [
+        (b"", "empty"),
+        (b"  \n \n", "empty"),
+        (b"name,J_mag\nA\x00,8\n", "NUL byte"),
+        ("name,J_mag\nA,8\n".encode("utf-16"), "UTF-16"),
+        ("name,J_mag\n\xe9toile,8\n".encode("latin-1"), "not UTF-8"),
+        (gzip.compress(b"name\n"), "gunzip"),
+        (b"PK\x03\x04xx", "spreadsheet"),
+        (b"SQLite format 3\x00", "gather"),
+        (b"\x89HDF\r\n", "HDF5"),
+        (os.urandom(5000).replace(b"\x00", b"\x01") + b"\x00", "text"),
+        (b"name,J_mag,J_mag\nA,8,9\n", "two columns"),
+        (b"# only\n# comments\n", "column names"),
+        (b"\x00" * 5000, "NUL byte"),
+        (b'name,J_mag\n"A,8\n' + b"x" * 200_000, "cannot be cut"),
+        (b"," * 9000 + b"\n", "column names"),
+        (b"%PDF-1.4 ", "PDF"),
+    ],
     ids=lambda value: value if isinstance(value, str) else "",
-)  # fmt: skip
+)
 def test_text_and_other_files(read, write, content, word):
     text = refusal(read, write(content))
     assert word in text or "UTF-8" in text
@@ -61,10 +79,14 @@ def test_things_that_are_no_files(read, tmp_path):
 
 
 def test_ecsv_heads(read, write):
-    for head in ("# %ECSV 1.0\n# ---\n# datatype: [\n", "# %ECSV 1.0\n# ---\n# datatype: 3\n", "# %ECSV 1.0\n# no yaml\n",
-                 "# %ECSV 1.0\n# ---\n# datatype:\n# - !!python/object/apply:os.system ['touch hacked']\n",
-                 "# %ECSV 1.0\n# ---\n# delimiter: x\n# datatype:\n# - {name: name, datatype: string}\n",
-                 "# %ECSV 1.0\n# ---\n# datatype:\n# - {nom: name}\n"):  # fmt: skip
+    for head in (
+        "# %ECSV 1.0\n# ---\n# datatype: [\n",
+        "# %ECSV 1.0\n# ---\n# datatype: 3\n",
+        "# %ECSV 1.0\n# no yaml\n",
+        "# %ECSV 1.0\n# ---\n# datatype:\n# - !!python/object/apply:os.system ['touch hacked']\n",
+        "# %ECSV 1.0\n# ---\n# delimiter: x\n# datatype:\n# - {name: name, datatype: string}\n",
+        "# %ECSV 1.0\n# ---\n# datatype:\n# - {nom: name}\n",
+    ):
         assert "ECSV" in refusal(read, write(head + "name\nA\n", "t.ecsv"))
     assert not os.path.exists("hacked")
 
@@ -77,7 +99,15 @@ def test_fits_cut_short(read, write, tmp_path, share):
 
 @pytest.mark.parametrize(
     ("card", "value"),
-    [("NAXIS2", 2**31), ("NAXIS2", 2**62), ("NAXIS1", 2**40), ("PCOUNT", 2**33), ("TFIELDS", 999), ("NAXIS2", -5), ("TFORM1", "'999999999A'")],
+    [
+        ("NAXIS2", 2**31),
+        ("NAXIS2", 2**62),
+        ("NAXIS1", 2**40),
+        ("PCOUNT", 2**33),
+        ("TFIELDS", 999),
+        ("NAXIS2", -5),
+        ("TFORM1", "'999999999A'"),
+    ],
 )
 def test_fits_headers_that_lie(read, write, tmp_path, card, value):
     whole = fits_bytes(tmp_path)
@@ -107,13 +137,20 @@ def test_fits_without_a_table_and_with_an_image_only(read, tmp_path):
 
 @pytest.mark.parametrize(
     ("prolog", "rows", "word"),
-    [(LAUGHS, "<TABLEDATA><TR><TD>&j;</TD><TD>8</TD></TR></TABLEDATA>", "entities"),
-     ("<!DOCTYPE x [<!ENTITY e SYSTEM 'file:///etc/passwd'>]>", "<TABLEDATA><TR><TD>&e;</TD><TD>8</TD></TR></TABLEDATA>", "entities"),
-     ("", "<BINARY><STREAM href='file:///etc/passwd'/></BINARY>", "another file"),
-     ("", "<BINARY><STREAM\n encoding='base64' href = 'http://127.0.0.1:1/x'/></BINARY>", "another file"),
-     ("", "<FITS><STREAM href='http://127.0.0.1:1/x.fits'/></FITS>", "another file"),
-     ("", "<TABLEDATA><TR><TD>A</TD><TD>8</TD></TR>", "damaged"), ("", "<TABLEDATA><TR><TD>A", "damaged")],
-)  # fmt: skip
+    [
+        (LAUGHS, "<TABLEDATA><TR><TD>&j;</TD><TD>8</TD></TR></TABLEDATA>", "entities"),
+        (
+            "<!DOCTYPE x [<!ENTITY e SYSTEM 'file:///etc/passwd'>]>",
+            "<TABLEDATA><TR><TD>&e;</TD><TD>8</TD></TR></TABLEDATA>",
+            "entities",
+        ),
+        ("", "<BINARY><STREAM href='file:///etc/passwd'/></BINARY>", "another file"),
+        ("", "<BINARY><STREAM\n encoding='base64' href = 'http://127.0.0.1:1/x'/></BINARY>", "another file"),
+        ("", "<FITS><STREAM href='http://127.0.0.1:1/x.fits'/></FITS>", "another file"),
+        ("", "<TABLEDATA><TR><TD>A</TD><TD>8</TD></TR>", "damaged"),
+        ("", "<TABLEDATA><TR><TD>A", "damaged"),
+    ],
+)
 def test_votables(read, write, prolog, rows, word):
     content = VOTABLE.format(prolog=prolog, rows=rows)
     if word == "damaged":

@@ -21,7 +21,11 @@ Gl 673,Gaia_G,7.167,0.014,mag,False,True,synthetic,"not on the DR3 system"
 
 def test_published_rows(read, write):
     contents = read(write(PUBLISHED))
-    assert [(c.name, len(c.measurements)) for c in contents.candidates] == [("HD 110058", 4), ("HD 115820", 1), ("Gl 673", 2)]
+    assert [(c.name, len(c.measurements)) for c in contents.candidates] == [
+        ("HD 110058", 4),
+        ("HD 115820", 1),
+        ("Gl 673", 2),
+    ]
     bt, w4, mips, akari = contents.candidates[0].measurements
     # Two surveys agree: AllWISE W4 and MIPS24 of this disc differ by less than 10 % of flux.
     assert w4.flux_jy == pytest.approx(mips.flux_jy, rel=0.10)
@@ -29,22 +33,43 @@ def test_published_rows(read, write):
     limit = contents.candidates[1].measurements[0]
     assert limit.limit and limit.nsigma == 2 and limit.flux_jy == pytest.approx(0.0147) and limit.note == "LIM"
     g, excluded = contents.candidates[2].measurements
-    assert g.flux_jy == pytest.approx(3631 * 10 ** (-0.4 * 8.117)) and excluded.exclude and excluded.note == "not on the DR3 system"
+    assert (
+        g.flux_jy == pytest.approx(3631 * 10 ** (-0.4 * 8.117))
+        and excluded.exclude
+        and excluded.note == "not on the DR3 system"
+    )
     assert contents.refused == [] and contents.unknown_columns == []
 
 
 def test_rows_that_cannot_be_taken(read, write):
     text = (
         "name,band,value,error,unit,epoch,ra\n"
-        "A,J,8.0,0.02,mag,,10\nA,Q9,8,0.02,mag,,\nA,H,7.9,0.02,,,\nA,Ks,x,0.02,mag,,\n,J,8,0.02,mag,,\nA,W1,,0.02,mag,,\n"
-        "A,W2,-99.99,0.02,mag,,\nA,W3,7,abc,mag,,\nA,J,8.1,0.02,mag,,\nA,J,8.0,0.02,mag,,\nA,J,8.2,0.02,mag,2020,\nB,W4,1,1,K,,x\n"
+        "A,J,8.0,0.02,mag,,10\nA,Q9,8,0.02,mag,,\nA,H,7.9,0.02,,,\n"
+        "A,Ks,x,0.02,mag,,\n,J,8,0.02,mag,,\nA,W1,,0.02,mag,,\n"
+        "A,W2,-99.99,0.02,mag,,\nA,W3,7,abc,mag,,\nA,J,8.1,0.02,mag,,\n"
+        "A,J,8.0,0.02,mag,,\nA,J,8.2,0.02,mag,2020,\nB,W4,1,1,K,,x\n"
     )
     contents = read(write(text))
     candidates = {c.name: c for c in contents.candidates}
-    assert [(m.band, m.value, m.epoch) for m in candidates["A"].measurements] == [("J", 8.0, ""), ("W3", 7, ""), ("J", 8.2, "2020")]
+    assert [(m.band, m.value, m.epoch) for m in candidates["A"].measurements] == [
+        ("J", 8.0, ""),
+        ("W3", 7, ""),
+        ("J", 8.2, "2020"),
+    ]
     assert candidates["A"].facts == {"ra": 10.0} and candidates["B"].measurements == ()
     rows = sorted((entry.row, entry.column) for entry in contents.refused)
-    assert rows == [(2, "band"), (3, "unit"), (4, "value"), (5, "name"), (6, "value"), (7, "value"), (8, "error"), (9, "band"), (12, "ra"), (12, "unit")]
+    assert rows == [
+        (2, "band"),
+        (3, "unit"),
+        (4, "value"),
+        (5, "name"),
+        (6, "value"),
+        (7, "value"),
+        (8, "error"),
+        (9, "band"),
+        (12, "ra"),
+        (12, "unit"),
+    ]
     assert "1 rows repeat earlier ones and add nothing" in contents.cautions
 
 

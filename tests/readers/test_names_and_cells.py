@@ -20,7 +20,9 @@ def test_names_are_stripped_and_nfc():
     assert clean_name("HD 1")[0] != clean_name("hd 1")[0]
 
 
-@pytest.mark.parametrize("name", ["", "   ", "x" * 201, "a\x00b", "a\x1b[31mb", "a\nb", "a\x85b", "a\u2028b", "a\ufffdb"])
+@pytest.mark.parametrize(
+    "name", ["", "   ", "x" * 201, "a\x00b", "a\x1b[31mb", "a\nb", "a\x85b", "a\u2028b", "a\ufffdb"]
+)
 def test_names_that_are_refused(name):
     assert clean_name(name)[1]
     assert clean_names([name, "HD 1"])[1].keys() == {0}

@@ -9,7 +9,8 @@ import pytest
 
 def test_magnitudes_fluxes_limits_and_epochs(one):
     text = (
-        "name,J_mag,J_err,W3_flux[mJy],W3_err[%],W4_flux[mJy],W4_err,W4_limit,W4_nsigma,MIPS24_flux[Jy],MIPS24_limit,J_flag,J_epoch,Ks_mag,Ks_exclude\n"
+        "name,J_mag,J_err,W3_flux[mJy],W3_err[%],W4_flux[mJy],W4_err,W4_limit,W4_nsigma,"
+        "MIPS24_flux[Jy],MIPS24_limit,J_flag,J_epoch,Ks_mag,Ks_exclude\n"
         "A,8.0,0.02,12.5,4,30,,true,3,0.5,1,ok,2001-05-03,7.9,yes\n"
     )
     _, band, contents = one(text)
@@ -53,10 +54,23 @@ def test_a_lower_case_letter_is_not_a_capital_band(one):
 
 
 def test_facts_with_units(one):
-    head = "name,ra[hourangle],dec[arcmin],parallax[arcsec],pmra,av_max,age_myr[Gyr],sp_type,duplicated_source,phot_g_n_obs,ruwe\n"
+    head = (
+        "name,ra[hourangle],dec[arcmin],parallax[arcsec],pmra,av_max,age_myr[Gyr],"
+        "sp_type,duplicated_source,phot_g_n_obs,ruwe\n"
+    )
     candidate, _, contents = one(head + "A,2.0,-90,0.0125,-3.5,0.8,4.6,M2V,False,212,1.02\n")
-    expected = {"ra": 30.0, "dec": -1.5, "parallax": 12.5, "pmra": -3.5, "av_max": 0.8, "age_myr": 4600.0,
-                "sp_type": "M2V", "duplicated_source": False, "phot_g_n_obs": 212, "ruwe": 1.02}  # fmt: skip
+    expected = {
+        "ra": 30.0,
+        "dec": -1.5,
+        "parallax": 12.5,
+        "pmra": -3.5,
+        "av_max": 0.8,
+        "age_myr": 4600.0,
+        "sp_type": "M2V",
+        "duplicated_source": False,
+        "phot_g_n_obs": 212,
+        "ruwe": 1.02,
+    }
     assert dict(candidate.facts) == pytest.approx(expected) and contents.refused == []
 
 
@@ -69,9 +83,17 @@ def test_positions_written_by_hours(one):
 
 @pytest.mark.parametrize(
     ("column", "cell"),
-    [("ra", "400"), ("dec", "-91"), ("phot_g_n_obs", "2.5"), ("parallax", "inf"), ("duplicated_source", "maybe"),
-     ("phot_g_n_obs", "1" + "0" * 400), ("sp_type", "M" * 600), ("parallax", "ten")],
-)  # fmt: skip
+    [
+        ("ra", "400"),
+        ("dec", "-91"),
+        ("phot_g_n_obs", "2.5"),
+        ("parallax", "inf"),
+        ("duplicated_source", "maybe"),
+        ("phot_g_n_obs", "1" + "0" * 400),
+        ("sp_type", "M" * 600),
+        ("parallax", "ten"),
+    ],
+)
 def test_a_fact_that_cannot_be_is_refused_alone(one, column, cell):
     candidate, band, contents = one(f"name,J_mag,{column}\nA,8.0,{cell}\n")
     assert column not in candidate.facts and "J" in band
@@ -85,10 +107,17 @@ def test_a_fact_in_a_unit_of_another_kind(one):
 
 @pytest.mark.parametrize(
     ("columns", "cells", "column"),
-    [("J_mag", "bright", "J_mag"), ("J_mag", "inf", "J_mag"), ("J_mag", "-800", "J_mag"), ("J_mag", "1e300", "J_mag"),
-     ("W4_flux[Jy]", "1e40", "W4_flux"), ("W4_flux[Jy],W4_limit", "-1,true", "W4_flux"),
-     ("W4_flux[Jy],W4_limit", "1,perhaps", "W4_limit"), ("W4_flux[Jy],W4_limit,W4_nsigma", "1,true,-3", "W4_nsigma")],
-)  # fmt: skip
+    [
+        ("J_mag", "bright", "J_mag"),
+        ("J_mag", "inf", "J_mag"),
+        ("J_mag", "-800", "J_mag"),
+        ("J_mag", "1e300", "J_mag"),
+        ("W4_flux[Jy]", "1e40", "W4_flux"),
+        ("W4_flux[Jy],W4_limit", "-1,true", "W4_flux"),
+        ("W4_flux[Jy],W4_limit", "1,perhaps", "W4_limit"),
+        ("W4_flux[Jy],W4_limit,W4_nsigma", "1,true,-3", "W4_nsigma"),
+    ],
+)
 def test_cells_that_are_no_measurement(one, columns, cells, column):
     candidate, _, contents = one(f"name,H_mag,{columns}\nA,8.0,{cells}\n")
     assert [m.band for m in candidate.measurements] == ["H"]
@@ -109,7 +138,9 @@ def test_negative_fluxes_are_measurements(one):
 def test_names_are_unique_and_rows_without_one_refused(read, write):
     contents = read(write("name,J_mag\nA,8\n A ,9\n,8\n\x01,7\n" + "B" * 201 + ",7\nC,x\n"))
     assert [c.name for c in contents.candidates] == ["A", "C"]
-    assert [(entry.row, entry.column) for entry in contents.refused if entry.column == "name"] == [(n, "name") for n in (2, 3, 4, 5)]
+    assert [(entry.row, entry.column) for entry in contents.refused if entry.column == "name"] == [
+        (n, "name") for n in (2, 3, 4, 5)
+    ]
     assert "row 1 has the same name" in contents.refused[0].reason
     assert str(contents.refused[0]).startswith(contents.refused[0].file + ", row 2, column name:")
 
@@ -126,4 +157,6 @@ def test_no_name_and_no_band(read, write):
     with pytest.raises(TableError, match="column map"):
         read(write("star,J_mag\nA,8\n"))
     contents = read(write("name,colour\nA,red\n"))
-    assert contents.unknown_columns == ["colour"] and any("no column of any band" in caution for caution in contents.cautions)
+    assert contents.unknown_columns == ["colour"] and any(
+        "no column of any band" in caution for caution in contents.cautions
+    )

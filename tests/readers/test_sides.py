@@ -18,7 +18,9 @@ def dips(path, **options):
 
 
 def test_dips(write):
-    contents = dips(write("name,event,band,depth[%],error[%],epoch\nA,e1,g,2.0,0.1,2017\nA,e1,i,1.0,,2017\nB,e1,J,-0.5,0.2,\n"))
+    contents = dips(
+        write("name,event,band,depth[%],error[%],epoch\nA,e1,g,2.0,0.1,2017\nA,e1,i,1.0,,2017\nB,e1,J,-0.5,0.2,\n")
+    )
     first, second = contents.rows["A"]
     assert (first.event, first.band, first.epoch) == ("e1", "SDSS_g", "2017")
     assert (first.depth, first.depth_error) == (pytest.approx(0.02), pytest.approx(0.001))
@@ -41,10 +43,20 @@ def test_dips_that_cannot_be_taken(write):
 
 def test_neighbours(read_near, write):
     head = "name,separation[arcmin],position_angle,source,G_mag,j_m,j_msigcom,W1_flux[mJy],other\n"
-    contents = read_near(write(head + "A,0.1,30,Gaia DR3,18.0,15,0.1,2,x\nA,0.05,,,17,,,,\nB,-1,0,,9,,,,\nC,,0,,9,,,,\n"))
+    contents = read_near(
+        write(head + "A,0.1,30,Gaia DR3,18.0,15,0.1,2,x\nA,0.05,,,17,,,,\nB,-1,0,,9,,,,\nC,,0,,9,,,,\n")
+    )
     near, far = contents.rows["A"]
-    assert (near.separation_arcsec, far.separation_arcsec, far.position_angle_deg) == (pytest.approx(3), pytest.approx(6), 30)
-    assert far.source == "Gaia DR3" and set(far.fluxes_jy) == {"Gaia_G", "J", "W1"} and far.fluxes_jy["W1"] == pytest.approx(0.002)
+    assert (near.separation_arcsec, far.separation_arcsec, far.position_angle_deg) == (
+        pytest.approx(3),
+        pytest.approx(6),
+        30,
+    )
+    assert (
+        far.source == "Gaia DR3"
+        and set(far.fluxes_jy) == {"Gaia_G", "J", "W1"}
+        and far.fluxes_jy["W1"] == pytest.approx(0.002)
+    )
     assert math.isnan(near.position_angle_deg) and set(near.fluxes_jy) == {"Gaia_G"}
     assert [entry.row for entry in contents.refused] == [3, 4] and contents.unknown_columns == ["other"]
     with pytest.raises(TableError, match="separation"):
@@ -56,12 +68,14 @@ def test_neighbours(read_near, write):
 def test_neighbours_with_a_column_map(read_near, write):
     column_map = write('[columns]\nseparation = "d"\nG_mag = "gg"\n[units]\nd = "mas"\n', "m.toml")
     contents = read_near(write("name,d,gg\nA,1500,18\n"), columns=column_map)
-    assert contents.rows["A"][0].separation_arcsec == pytest.approx(1.5) and set(contents.rows["A"][0].fluxes_jy) == {"Gaia_G"}
+    assert contents.rows["A"][0].separation_arcsec == pytest.approx(1.5) and set(contents.rows["A"][0].fluxes_jy) == {
+        "Gaia_G"
+    }
 
 
 def test_spectra(write):
-    text = "name,wavelength[nm],flux[erg/s/cm2/AA],error[erg/s/cm2/AA]\nA,1000,2e-15,1e-16\nA,900,1e-15,1e-16\nB,500,1e-15,1e-16\n"
-    contents = read_spectra(write(text))
+    head = "name,wavelength[nm],flux[erg/s/cm2/AA],error[erg/s/cm2/AA]\n"
+    contents = read_spectra(write(head + "A,1000,2e-15,1e-16\nA,900,1e-15,1e-16\nB,500,1e-15,1e-16\n"))
     spectrum = contents.rows["A"]
     assert spectrum.wave_um.tolist() == pytest.approx([0.9, 1.0])
     unit = u.erg / u.s / u.cm**2 / u.AA
@@ -71,20 +85,30 @@ def test_spectra(write):
 
 
 def test_spectra_by_frequency_and_with_bad_points(write):
-    text = "name,wavelength[GHz],flux[mJy],error[mJy]\nA,300000,2,1\nA,300000,3,1\nA,200000,-1,1\nA,1,x,1\nA,-5,1,1\nA,9,1,0\n"
-    contents = read_spectra(write(text))
+    head = "name,wavelength[GHz],flux[mJy],error[mJy]\n"
+    contents = read_spectra(write(head + "A,300000,2,1\nA,300000,3,1\nA,200000,-1,1\nA,1,x,1\nA,-5,1,1\nA,9,1,0\n"))
     assert contents.rows["A"].wave_um == pytest.approx(np.array([0.999308, 1.498962]), rel=1e-6)  # c / nu
     assert contents.rows["A"].flux_jy == pytest.approx([0.002, -0.001])
     assert sorted(entry.row for entry in contents.refused) == [2, 4, 5, 6]
 
 
-@pytest.mark.parametrize("head", ["name,wavelength,flux[Jy],error", "name,wavelength[um],flux,error", "name,wavelength[K],flux[Jy],error",
-                                  "name,wavelength[um],flux[mag],error", "name,wavelength[um],flux[Jy]"])  # fmt: skip
-def test_spectra_need_units(write, head):
+@pytest.mark.parametrize(
+    "text",
+    [
+        "name,wavelength,flux[Jy],error\nA,1,1,1\n",
+        "name,wavelength[um],flux,error\nA,1,1,1\n",
+        "name,wavelength[K],flux[Jy],error\nA,1,1,1\n",
+        "name,wavelength[um],flux[mag],error\nA,1,1,1\n",
+        "name,wavelength[um],flux[Jy]\nA,1,1\n",
+    ],
+)
+def test_spectra_need_units(write, text):
     with pytest.raises(TableError):
-        read_spectra(write(head + "\nA,1,1,1\n"[: 6 if head.endswith("[Jy]") else None] + ("\n" if head.endswith("[Jy]") else "")))
+        read_spectra(write(text))
 
 
 def test_a_column_map_gives_units(write):
     column_map = write('[units]\nwavelength = "um"\nflux = "mJy"\n', "m.toml")
-    assert read_spectra(write("name,wavelength,flux,error\nA,1,2,1\n"), columns=column_map).rows["A"].flux_jy[0] == pytest.approx(0.002)
+    assert read_spectra(write("name,wavelength,flux,error\nA,1,2,1\n"), columns=column_map).rows["A"].flux_jy[
+        0
+    ] == pytest.approx(0.002)

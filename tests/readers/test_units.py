@@ -14,12 +14,20 @@ from tui.readers.units import MAG_PER_RATIO, SOFTENING, parse_unit, relative_err
 
 BANDS = bands()
 
-# SDSS Early Data Release, Stoughton et al. 2002, AJ 123, 485, Table 21: band, b, magnitude of zero flux, magnitude at f/f0 = 10 b.
-EDR_TABLE_21 = [("u", 1.4e-10, 24.63, 22.12), ("g", 0.9e-10, 25.11, 22.60), ("r", 1.2e-10, 24.80, 22.29),
-                ("i", 1.8e-10, 24.36, 21.85), ("z", 7.4e-10, 22.83, 20.32)]  # fmt: skip
+# SDSS Early Data Release, Stoughton et al. 2002, AJ 123, 485, Table 21:
+# band, b, magnitude of zero flux, magnitude at f/f0 = 10 b.
+EDR_TABLE_21 = [
+    ("u", 1.4e-10, 24.63, 22.12),
+    ("g", 0.9e-10, 25.11, 22.60),
+    ("r", 1.2e-10, 24.80, 22.29),
+    ("i", 1.8e-10, 24.36, 21.85),
+    ("z", 7.4e-10, 22.83, 20.32),
+]
 
 
-@pytest.mark.parametrize(("letter", "b", "zero_flux_mag", "ten_b_mag"), EDR_TABLE_21, ids=[row[0] for row in EDR_TABLE_21])
+@pytest.mark.parametrize(
+    ("letter", "b", "zero_flux_mag", "ten_b_mag"), EDR_TABLE_21, ids=[row[0] for row in EDR_TABLE_21]
+)
 def test_asinh_magnitudes_of_edr_table_21(letter, b, zero_flux_mag, ten_b_mag):
     band = BANDS[f"SDSS_{letter}"]
     asinh = scale("mag(asinh)", band, is_mag=True)
@@ -44,7 +52,18 @@ def test_asinh_meets_pogson_when_bright_and_its_error_is_the_slope():
 
 @pytest.mark.parametrize(
     "unit",
-    ["Jy", "mJy", "uJy", "W m-2 Hz-1", "erg/s/cm2/Hz", "W m-2 um-1", "erg s-1 cm-2 AA-1", "mW/m2/nm", "ph/s/cm2/AA", "W/m2"],
+    [
+        "Jy",
+        "mJy",
+        "uJy",
+        "W m-2 Hz-1",
+        "erg/s/cm2/Hz",
+        "W m-2 um-1",
+        "erg s-1 cm-2 AA-1",
+        "mW/m2/nm",
+        "ph/s/cm2/AA",
+        "W/m2",
+    ],
 )
 def test_flux_densities_as_astropy_turns_them(unit):
     band = BANDS["W3"]
@@ -80,10 +99,18 @@ def test_nanomaggies():
 
 @pytest.mark.parametrize(
     ("unit", "band", "is_mag", "word"),
-    [("", "W4", False, "no unit"), ("ergs", "J", False, "no unit that astropy knows"), ("K", "J", False, "neither"),
-     ("mag(Vega)", "SDSS_g", True, "AB"), ("nmgy", "W1", False, "Vega or AB"), ("mag(asinh)", "J", True, "asinh"),
-     ("Jy" * 100, "J", False, "characters"), ("dex(Jy)", "J", False, "neither"), ("Jy(((", "J", False, "astropy knows")],
-)  # fmt: skip
+    [
+        ("", "W4", False, "no unit"),
+        ("ergs", "J", False, "no unit that astropy knows"),
+        ("K", "J", False, "neither"),
+        ("mag(Vega)", "SDSS_g", True, "AB"),
+        ("nmgy", "W1", False, "Vega or AB"),
+        ("mag(asinh)", "J", True, "asinh"),
+        ("Jy" * 100, "J", False, "characters"),
+        ("dex(Jy)", "J", False, "neither"),
+        ("Jy(((", "J", False, "astropy knows"),
+    ],
+)
 def test_no_unit_is_guessed(unit, band, is_mag, word):
     with pytest.raises(InputError, match=word):
         scale(unit, BANDS[band], is_mag=is_mag)

@@ -7,6 +7,15 @@ from tui.readers.sides import read_dips, read_neighbours, read_spectra
 from tui.readers.tables import read_parts, read_table
 
 __all__ = [
-    "Archive", "Refused", "SideContents", "TableContents", "parse_archives", "read_column_map", "read_dips", "read_neighbours",
-    "read_parts", "read_spectra", "read_table",
-]  # fmt: skip
+    "Archive",
+    "Refused",
+    "SideContents",
+    "TableContents",
+    "parse_archives",
+    "read_column_map",
+    "read_dips",
+    "read_neighbours",
+    "read_parts",
+    "read_spectra",
+    "read_table",
+]

@@ -19,7 +19,7 @@ The rows: `role,target,column,also,unit,how`. `column` is the archive's own name
 | limit           | bands        | `U at 1.645`: these letters, one a band, mark an upper limit at that many sigma |
 | flag            | bands        | `split`: one letter a band; else the whole text goes to each |
 | epoch           | bands        | `MJD` or `JD`: put before the number |
-| fact            | a fact       | `with C`: only where column C is there too; `MJD` or `JD`: turned into a Julian year |
+| fact            | a fact       | `with C`: only where column C is there; `MJD`, `JD`: turned into a Julian year |
 | name            |              | `prefix P`: names the candidate where no column `name` is |
 """
 
@@ -31,7 +31,20 @@ from dataclasses import dataclass
 
 from tui.errors import InputError
 
-ROLES = ("mag", "flux", "error", "snr", "over_error", "counts", "counts_error", "limit", "flag", "epoch", "fact", "name")
+ROLES = (
+    "mag",
+    "flux",
+    "error",
+    "snr",
+    "over_error",
+    "counts",
+    "counts_error",
+    "limit",
+    "flag",
+    "epoch",
+    "fact",
+    "name",
+)
 FIELDS = ("role", "target", "column", "also", "unit", "how")
 HEAD_KEYS = ("source", "from", "changed", "units", "label", "order", "mark", "null error")
 
@@ -105,7 +118,9 @@ def _head(name: str, lines: Iterable[str]) -> dict[str, str]:
             head[key.strip()] = value.strip()
     missing = [key for key in HEAD_KEYS if not head.get(key)]
     if missing or not head["order"].isdigit():
-        raise InputError(f"{name}: the head lacks a line {', '.join(f'# {key}:' for key in missing) or '# order: NUMBER'}.")
+        raise InputError(
+            f"{name}: the head lacks a line {', '.join(f'# {key}:' for key in missing) or '# order: NUMBER'}."
+        )
     return head
 
 
@@ -120,6 +135,10 @@ def _null_error(name: str, text: str) -> float | None:
 
 def _entry(name: str, row: Mapping[str, str | None]) -> Entry:
     if None in row or None in row.values() or row["role"] not in ROLES or not row["column"]:
-        raise InputError(f"{name}: the row {','.join(str(cell) for cell in row.values())} is none of {', '.join(ROLES)}.")
+        raise InputError(
+            f"{name}: the row {','.join(str(cell) for cell in row.values())} is none of {', '.join(ROLES)}."
+        )
     columns = (row["column"].strip(), *(row["also"] or "").split())
-    return Entry(str(row["role"]), tuple((row["target"] or "").split()), columns, str(row["unit"]), str(row["how"]).strip())
+    return Entry(
+        str(row["role"]), tuple((row["target"] or "").split()), columns, str(row["unit"]), str(row["how"]).strip()
+    )

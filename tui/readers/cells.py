@@ -90,7 +90,9 @@ def _text_of(value: object) -> str:
         text = value.strip()
         return "" if text.lower() in EMPTY_CELLS and text != "-" else text
     if isinstance(value, float):
-        return "" if math.isnan(value) else (str(int(value)) if value.is_integer() and abs(value) < 1e15 else repr(value))
+        return (
+            "" if math.isnan(value) else (str(int(value)) if value.is_integer() and abs(value) < 1e15 else repr(value))
+        )
     return str(value)
 
 

@@ -47,7 +47,10 @@ def stem_of(name: str, known: Iterable[str] = ()) -> str:
 
 
 def claim_columns(
-    names: Sequence[str], archives: Sequence[Archive], letters: Callable[[str], int], taken: frozenset[str] = frozenset()
+    names: Sequence[str],
+    archives: Sequence[Archive],
+    letters: Callable[[str], int],
+    taken: frozenset[str] = frozenset(),
 ) -> Claims:
     """Share the columns of a table out among the catalogues.
 
@@ -64,7 +67,11 @@ def claim_columns(
     cautions: list[str] = []
     for name in dict.fromkeys(name for archive in active for name in offers[archive.label]):
         columns = [column for column in _columns_of(name, active, offers) if column not in taken]
-        owners = [archive for archive in active if name in offers[archive.label] and _uses(archive, name, offers[archive.label])]
+        owners = [
+            archive
+            for archive in active
+            if name in offers[archive.label] and _uses(archive, name, offers[archive.label])
+        ]
         if columns and owners:
             cautions += _share(name, columns, owners, found, middle, place, letters)
     return Claims(tuple(found.values()), tuple(cautions))
@@ -94,7 +101,8 @@ def _is_marked(archive: Archive, offered: Mapping[str, list[str]]) -> bool:
 def _uses(archive: Archive, name: str, offered: Mapping[str, list[str]]) -> bool:
     """Whether some entry takes this name, given what else is there, or has it for a condition."""
     return any(
-        name == entry.option("with") or (name in entry.columns and (not entry.option("with") or entry.option("with") in offered))
+        name == entry.option("with")
+        or (name in entry.columns and (not entry.option("with") or entry.option("with") in offered))
         for entry in archive.entries
     )
 
@@ -108,7 +116,9 @@ def _middle(
 ) -> tuple[int, int]:
     """First and last place of the columns that only this archive can own."""
     others = {name for other in active if other is not archive for name in offers[other.label]}
-    places = [place[columns[0]] for name, columns in offers[archive.label].items() if name not in others and len(columns) == 1]
+    places = [
+        place[columns[0]] for name, columns in offers[archive.label].items() if name not in others and len(columns) == 1
+    ]
     return (min(places), max(places)) if places else (0, 0)
 
 
@@ -130,9 +140,15 @@ def _share(
     if len(columns) == len(owners):
         for archive, column in zip(in_order, columns, strict=True):
             give(archive, column)
-        return [f"{', '.join(columns)}: taken as {', '.join(a.label for a in in_order)} by their places"] if len(columns) > 1 else []
+        return (
+            [f"{', '.join(columns)}: taken as {', '.join(a.label for a in in_order)} by their places"]
+            if len(columns) > 1
+            else []
+        )
     if len(owners) == 1:
-        within = [column for column in columns if middle[owners[0].label][0] <= place[column] <= middle[owners[0].label][1]]
+        within = [
+            column for column in columns if middle[owners[0].label][0] <= place[column] <= middle[owners[0].label][1]
+        ]
         chosen = (within or columns)[0]
         give(owners[0], chosen)
         left = [column for column in columns if column != chosen]
@@ -144,7 +160,9 @@ def _share(
     if any(name in entry.columns and entry.role in MEASURED for archive in owners for entry in archive.entries):
         labels = " or ".join(archive.label for archive in owners)
         return [f"{', '.join(columns)}: may be {labels}; not read. Say which in the column map, as a band's own column"]
-    within = [archive for archive in owners if middle[archive.label][0] <= place[columns[0]] <= middle[archive.label][1]]
+    within = [
+        archive for archive in owners if middle[archive.label][0] <= place[columns[0]] <= middle[archive.label][1]
+    ]
     give((within if len(within) == 1 else owners)[0], columns[0])
     return []
 

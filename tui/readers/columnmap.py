@@ -1,15 +1,15 @@
 """The column map: a TOML file that says what a table's columns are.
 
-    [columns]
-    J_mag = "jmag"            # what it is = the file's column
-    [units]
-    W4_flux = "mJy"           # by either name
-    [source]
-    label = "my survey"       # for all bands that have no catalogue of their own
-    J = "UKIDSS"              # for one band
-    [bands.Hcont]             # a band of one's own
-    pivot_um = 1.57           # or: curve = "hcont.csv", two columns: micron, response
-    zero_point_jy = 1050.0
+[columns]
+J_mag = "jmag"            # what it is = the file's column
+[units]
+W4_flux = "mJy"           # by either name
+[source]
+label = "my survey"       # for all bands that have no catalogue of their own
+J = "UKIDSS"              # for one band
+[bands.Hcont]             # a band of one's own
+pivot_um = 1.57           # or: curve = "hcont.csv", two columns: micron, response
+zero_point_jy = 1050.0
 """
 
 from __future__ import annotations
@@ -60,7 +60,9 @@ def read_column_map(path: str | os.PathLike[str] | None) -> ColumnMap:
         raise TableError(shown, f"the column map cannot be read: {error}.") from error
     for section, entries in content.items():
         if section not in SECTIONS or not isinstance(entries, dict):
-            raise TableError(shown, f"a column map has the parts {', '.join(f'[{s}]' for s in SECTIONS)}, not {section!a}.")
+            raise TableError(
+                shown, f"a column map has the parts {', '.join(f'[{s}]' for s in SECTIONS)}, not {section!a}."
+            )
     sources = _texts(shown, "source", content)
     label = sources.pop("label", "")
     bands = {name: _band(shown, name, entry) for name, entry in content.get("bands", {}).items()}

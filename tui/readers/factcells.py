@@ -10,7 +10,7 @@ import numpy as np
 
 from tui.errors import InputError
 from tui.model import FloatArray
-from tui.readers.cells import SENTINELS, Bad, numbers, quoted, texts, truths
+from tui.readers.cells import SENTINELS, Bad, lost_digits, numbers, quoted, texts, truths
 from tui.readers.plan import FactColumn
 from tui.readers.records import Column
 from tui.readers.units import parse_unit
@@ -32,7 +32,9 @@ def fact_values(plan: FactColumn, column: Column, mapped_unit: str = "") -> tupl
     if kind == "bool":
         values, bad = truths(column)
         present = [bool(text) for text in texts(column)]
-        return [bool(v) if p and i not in bad else None for i, (v, p) in enumerate(zip(values, present, strict=True))], bad
+        return [
+            bool(v) if p and i not in bad else None for i, (v, p) in enumerate(zip(values, present, strict=True))
+        ], bad
     values, bad = _angles(plan, column) or numbers(column, SENTINELS)
     values = values * unit_factor(plan, column, mapped_unit)
     if plan.days:
@@ -67,6 +69,8 @@ def _wrong_unit(plan: FactColumn, text: str) -> float:
 
 
 def _words(column: Column) -> tuple[list[str | None], Bad]:
+    if not column.is_text and lost_digits(column):
+        raise InputError("its long numbers have lost their last digits: write it as text or whole numbers")
     bad: Bad = {}
     words: list[str | None] = []
     for index, text in enumerate(texts(column)):

@@ -1,4 +1,4 @@
-"""FITS: the first table extension with rows, read by astropy, after the header's promises are held against the file's size."""
+"""FITS: the first table extension with rows, read by astropy once its header is held against the file's size."""
 
 from __future__ import annotations
 
@@ -43,7 +43,11 @@ def _first_table(path: str, hdus: Any, size: int) -> tuple[Any, int]:
     found, others = None, 0
     for hdu in hdus:
         header = hdu.header
-        if header.get("XTENSION", "").strip() not in ("BINTABLE", "TABLE") or header.get("ZIMAGE") or header.get("ZTABLE"):
+        if (
+            header.get("XTENSION", "").strip() not in ("BINTABLE", "TABLE")
+            or header.get("ZIMAGE")
+            or header.get("ZTABLE")
+        ):
             continue
         promised = header.get("NAXIS1", 0) * header.get("NAXIS2", 0) + header.get("PCOUNT", 0)
         begins = hdu.fileinfo()["datLoc"] if hdu.fileinfo() else 0
@@ -97,5 +101,3 @@ def _column(name: str, cells: Any, definition: Any) -> Column | None:
 def _texts(cells: Any) -> list[str]:
     values = cells.tolist()
     return [value.decode("utf-8", "replace") if isinstance(value, bytes) else str(value) for value in values]
-
-

@@ -24,6 +24,7 @@ from tui.readers.units import Scale, relative_error, scale
 
 NEEDED = ("name", "band", "value")
 OPTIONAL = ("error", "unit", "error_unit", "limit", "nsigma", "flag", "epoch", "source", "exclude", "note")
+TEXTS = ("name", "band", "unit", "error_unit", "flag", "epoch", "source", "note")
 Group = tuple[str, str, str]  # band, unit, unit of the error
 
 
@@ -50,14 +51,15 @@ class LongReader:
 
     def candidates(self) -> list[Candidate]:
         """All candidates, in the order in which their names first stand."""
-        texts_of = {key: texts(self._column(key)) for key in ("name", "band", *OPTIONAL) if key in self.columns and key not in
-                    ("error", "limit", "nsigma", "exclude")}  # fmt: skip
+        texts_of = {key: texts(self._column(key)) for key in TEXTS if key in self.columns}
         names, reasons = clean_names(texts_of["name"])
         for row, why in reasons.items():
             self._refuse(row, "name", why)
         usable = np.array([row not in reasons for row in range(len(names))], dtype=bool)
         groups = self._groups(texts_of, usable)
-        found: dict[str, dict[tuple[str, str, str], tuple[int, Measurement]]] = {name: {} for row, name in enumerate(names) if usable[row]}
+        found: dict[str, dict[tuple[str, str, str], tuple[int, Measurement]]] = {
+            name: {} for row, name in enumerate(names) if usable[row]
+        }
         self._numbers = self._read_numbers()
         by_row: dict[int, Measurement] = {}
         for group, rows in groups.items():
@@ -65,7 +67,9 @@ class LongReader:
         self._keep(by_row, names, found)
         self._count_missing(by_row)
         facts = self._facts(names, usable)
-        return [Candidate(name, tuple(m for _, m in rows.values()), facts.get(name, {})) for name, rows in found.items()]
+        return [
+            Candidate(name, tuple(m for _, m in rows.values()), facts.get(name, {})) for name, rows in found.items()
+        ]
 
     def _column(self, key: str) -> Column:
         return self.table.columns[self.columns[key]]
@@ -86,10 +90,16 @@ class LongReader:
         groups: dict[Group, list[int]] = defaultdict(list)
         for row in np.flatnonzero(usable).tolist():
             given = texts_of["band"][row]
-            label = texts_of["source"][row] if "source" in texts_of else self.words.source or self.words.column_map.label
+            label = (
+                texts_of["source"][row] if "source" in texts_of else self.words.source or self.words.column_map.label
+            )
             band = band_name(given, self.words.bands, self.words.aliases, label)
             if not band:
-                why = f"{quoted(given)} is no known band: correct it, or add the band in a column map" if given else "no band is given"
+                why = (
+                    f"{quoted(given)} is no known band: correct it, or add the band in a column map"
+                    if given
+                    else "no band is given"
+                )
                 self._refuse(row, "band", why)
                 continue
             unit = (texts_of["unit"][row] if "unit" in texts_of else "") or value_unit
@@ -155,7 +165,9 @@ class LongReader:
         values, bad = self._part(key, rows)
         return values, key, bad
 
-    def _records(self, band: str, rows: list[int], out: Values, texts_of: Mapping[str, list[str]]) -> dict[int, Measurement]:
+    def _records(
+        self, band: str, rows: list[int], out: Values, texts_of: Mapping[str, list[str]]
+    ) -> dict[int, Measurement]:
         excluded, wrong = self._numbers.get("exclude", (None, {}))
         found = {}
         for place, row in enumerate(rows):
@@ -165,15 +177,28 @@ class LongReader:
                 flag = texts_of["flag"][row] if "flag" in texts_of else ""
                 note = texts_of["note"][row] if "note" in texts_of else ""
                 found[row] = Measurement(
-                    band, float(out.flux_jy[place]), float(out.error_jy[place]), bool(out.limit[place]),
-                    float(out.nsigma[place]) if out.limit[place] else 2.0, self._label(texts_of, row, band),
-                    texts_of["epoch"][row] if "epoch" in texts_of else "", {"flag": flag} if flag else {},
-                    bool(excluded[row]) if excluded is not None else False, float(out.value[place]),
-                    float(out.value_error[place]), out.unit[place], "; ".join(filter(None, (note, out.note[place]))),
-                )  # fmt: skip
+                    band,
+                    float(out.flux_jy[place]),
+                    float(out.error_jy[place]),
+                    bool(out.limit[place]),
+                    float(out.nsigma[place]) if out.limit[place] else 2.0,
+                    self._label(texts_of, row, band),
+                    texts_of["epoch"][row] if "epoch" in texts_of else "",
+                    {"flag": flag} if flag else {},
+                    bool(excluded[row]) if excluded is not None else False,
+                    float(out.value[place]),
+                    float(out.value_error[place]),
+                    out.unit[place],
+                    "; ".join(filter(None, (note, out.note[place]))),
+                )
         return found
 
-    def _keep(self, by_row: Mapping[int, Measurement], names: list[str], found: dict[str, dict[tuple[str, str, str], tuple[int, Measurement]]]) -> None:
+    def _keep(
+        self,
+        by_row: Mapping[int, Measurement],
+        names: list[str],
+        found: dict[str, dict[tuple[str, str, str], tuple[int, Measurement]]],
+    ) -> None:
         """One measurement a candidate, band, source and epoch: a second one that differs is refused."""
         repeated = 0
         for row in sorted(by_row):
@@ -186,14 +211,16 @@ class LongReader:
                 repeated += 1
             else:
                 first = int(self.table.row_numbers[mine[key][0]])
-                why = f"row {first} gives another value for the same band, source and epoch: give each its own source or epoch"
+                why = f"row {first} has another value of this band, source and epoch: give each its own source or epoch"
                 self._refuse(row, "band", why)
         if repeated:
             self.cautions.append(f"{repeated} rows repeat earlier ones and add nothing")
 
     def _count_missing(self, by_row: Mapping[int, Measurement]) -> None:
         missing = Counter(m.band for m in by_row.values() if NO_ERROR in m.note)
-        self.cautions += [f"{band}: {count} detections have no error and take the band's floor" for band, count in missing.items()]
+        self.cautions += [
+            f"{band}: {count} detections have no error and take the band's floor" for band, count in missing.items()
+        ]
 
     def _facts(self, names: list[str], usable: np.ndarray) -> dict[str, dict[str, Any]]:
         """Facts beside the measurements: the first row of a candidate that has one."""

@@ -14,8 +14,8 @@ from tui.readers.records import Column, RawTable, Refused
 from tui.readers.units import BRIGHTEST_MAG, FAINTEST_MAG, LARGEST_JY, MAG_PER_RATIO, Scale, relative_error, scale
 
 NO_ERROR = "no error given: the band's floor stands in"
-FROM_COUNTS = "no detection at the catalogue's level: flux from {}"
-FROM_SNR = "no detection at the catalogue's level: flux from the limit and its signal-to-noise"
+FROM_COUNTS = "flux from {}: the catalogue has no magnitude with an error"
+FROM_SNR = "flux from the catalogue's limit and its signal-to-noise"
 NO_ERROR_MAG = 8.0  # an error of so many mag is a flag: 2MASS ph_qual F, DAOPHOT 9.999
 
 
@@ -62,9 +62,17 @@ def start(values: FloatArray, bad: dict[int, str], column: str, unit: Scale) -> 
     values[wild] = math.nan
     flux[wild] = math.nan
     return Values(
-        flux, np.full(size, math.nan), values, np.full(size, math.nan), np.isfinite(flux), np.zeros(size, dtype=bool),
-        np.full(size, 2.0), [unit.unit] * size, [""] * size, {(row, column): why for row, why in bad.items()},
-    )  # fmt: skip
+        flux,
+        np.full(size, math.nan),
+        values,
+        np.full(size, math.nan),
+        np.isfinite(flux),
+        np.zeros(size, dtype=bool),
+        np.full(size, 2.0),
+        [unit.unit] * size,
+        [""] * size,
+        {(row, column): why for row, why in bad.items()},
+    )
 
 
 def set_errors(out: Values, unit: Scale, error: FloatArray, error_scale: Scale | None, share: float | None) -> None:
@@ -87,10 +95,14 @@ def set_errors(out: Values, unit: Scale, error: FloatArray, error_scale: Scale |
             jy = own.flux_error(np.abs(out.flux_jy), error)
         jy = np.where(np.isfinite(jy) & (jy < LARGEST_JY), jy, math.nan)
         out.error_jy = jy
-        out.value_error = jy / unit.factor_jy if unit.kind == "linear" else _mag_error(out, unit, jy, error, given, share)
+        out.value_error = (
+            jy / unit.factor_jy if unit.kind == "linear" else _mag_error(out, unit, jy, error, given, share)
+        )
 
 
-def _mag_error(out: Values, unit: Scale, jy: FloatArray, error: FloatArray, given: Scale, share: float | None) -> FloatArray:
+def _mag_error(
+    out: Values, unit: Scale, jy: FloatArray, error: FloatArray, given: Scale, share: float | None
+) -> FloatArray:
     if share is None and given.kind != "linear":
         return np.where(np.isfinite(jy), error * given.step / unit.step, math.nan)
     return MAG_PER_RATIO * jy / np.abs(out.flux_jy) / unit.step
@@ -105,6 +117,10 @@ def measure(columns: BandColumns, table: RawTable, mapped_units: dict[str, str])
             set_errors(out, unit, 1.0 / ratio, None, 1.0)
     elif columns.error:
         _errors_of_column(out, columns, table, mapped_units, unit)
+    elif columns.counts:
+        counts, sigma = (numbers(table.columns[name], SENTINELS)[0] for name in (columns.counts, columns.counts_error))
+        with np.errstate(divide="ignore", invalid="ignore"):
+            set_errors(out, unit, sigma / counts, None, 1.0)
     _limits(out, columns, table)
     _below_the_limit(out, columns, table)
     finish(out, columns.value)
@@ -113,14 +129,18 @@ def measure(columns: BandColumns, table: RawTable, mapped_units: dict[str, str])
 
 def _start_band(columns: BandColumns, table: RawTable, mapped_units: dict[str, str]) -> tuple[Values, Scale]:
     column = table.columns.get(columns.value)
-    unit = scale(unit_of(column, columns.unit, mapped_units.get(columns.value, "")), columns.band, is_mag=columns.is_mag)
+    unit = scale(
+        unit_of(column, columns.unit, mapped_units.get(columns.value, "")), columns.band, is_mag=columns.is_mag
+    )
     if column is None:
         return start(np.full(len(table), math.nan), {}, columns.counts, unit), unit
     values, bad = numbers(column, SENTINELS if unit.kind == "linear" else MAG_SENTINELS)
     return start(values, bad, columns.value, unit), unit
 
 
-def _errors_of_column(out: Values, columns: BandColumns, table: RawTable, mapped_units: dict[str, str], unit: Scale) -> None:
+def _errors_of_column(
+    out: Values, columns: BandColumns, table: RawTable, mapped_units: dict[str, str], unit: Scale
+) -> None:
     column = table.columns[columns.error]
     error, bad = numbers(column, SENTINELS)
     out.bad.update({(row, columns.error): why for row, why in bad.items()})
@@ -134,9 +154,9 @@ def _limits(out: Values, columns: BandColumns, table: RawTable) -> None:
     """Limits that the table or the catalogue's flag names."""
     if columns.limit:
         out.limit, bad = truths(table.columns[columns.limit])
-        out.bad.update({(row, columns.limit): why for row, why in bad.items()})
-        for row in bad:
-            out.present[row] = False  # a value that may be a limit is no detection
+        _drop(out, columns.limit, bad)  # a value that may be a limit is no detection
+    if columns.exclude:
+        _drop(out, columns.exclude, truths(table.columns[columns.exclude])[1])
     if columns.nsigma:
         level, bad = numbers(table.columns[columns.nsigma])
         set_levels(out, level, columns.nsigma, bad)
@@ -145,6 +165,13 @@ def _limits(out: Values, columns: BandColumns, table: RawTable) -> None:
         named = np.array([bool(letter) and letter in columns.limit_letters for letter in letters], dtype=bool)
         out.limit |= named
         out.nsigma[named] = columns.limit_nsigma
+
+
+def _drop(out: Values, column: str, bad: dict[int, str]) -> None:
+    """Take no measurement where a cell that decides its use cannot be read."""
+    for row, why in bad.items():
+        out.bad[(row, column)] = why
+        out.present[row] = False
 
 
 def set_levels(out: Values, level: FloatArray, column: str, bad: dict[int, str]) -> None:
@@ -159,7 +186,7 @@ def set_levels(out: Values, level: FloatArray, column: str, bad: dict[int, str])
 
 
 def _below_the_limit(out: Values, columns: BandColumns, table: RawTable) -> None:
-    """A null error where that means a limit: the measurement behind it where the catalogue gives one, else the limit."""
+    """A null error where that means a limit: the measurement behind it where there is one, else the limit."""
     lost = out.present & np.isnan(out.error_jy) & ~out.limit & ~out.bad_rows(columns.error)
     if columns.limit_flag is not None:  # the flag says which are limits: others are detections without an error
         lost &= np.array([not letter for letter in letters_of(columns.limit_flag, table)], dtype=bool)
@@ -205,7 +232,7 @@ def _from_snr(out: Values, columns: BandColumns, table: RawTable, lost: np.ndarr
 
 
 def finish(out: Values, column: str) -> None:
-    """What holds of every measurement in the end: limits are positive and have no error, detections without error say so."""
+    """In the end limits are positive and have no error, and detections without error say so."""
     wrong = out.present & out.limit & ~(out.flux_jy > 0)
     for row in np.flatnonzero(wrong).tolist():
         out.bad[(row, column)] = "an upper limit must be above zero"
@@ -227,7 +254,9 @@ def letters_of(flag: FlagColumn, table: RawTable) -> list[str]:
 
 def refusals(out: Values, table: RawTable) -> list[Refused]:
     """The bad cells of a band, as refusals."""
-    return [Refused(table.path, int(table.row_numbers[row]), column, why) for (row, column), why in sorted(out.bad.items())]
+    return [
+        Refused(table.path, int(table.row_numbers[row]), column, why) for (row, column), why in sorted(out.bad.items())
+    ]
 
 
 def measurements(out: Values, columns: BandColumns, table: RawTable) -> list[tuple[int, Measurement]]:
@@ -245,14 +274,23 @@ def measurements(out: Values, columns: BandColumns, table: RawTable) -> list[tup
         (
             row,
             Measurement(
-                band, flux[row], error[row], limit[row], nsigma[row] if limit[row] else 2.0,
-                (sources[row] or label) if sources else label, epochs[row] if epochs else "", flags[row] if flags else {},
-                excluded[row] if excluded else False, value[row], value_error[row], unit[row],
+                band,
+                flux[row],
+                error[row],
+                limit[row],
+                nsigma[row] if limit[row] else 2.0,
+                (sources[row] or label) if sources else label,
+                epochs[row] if epochs else "",
+                flags[row] if flags else {},
+                excluded[row] if excluded else False,
+                value[row],
+                value_error[row],
+                unit[row],
                 "; ".join(filter(None, (notes[row], note[row]))) if notes else note[row],
             ),
         )
         for row in rows
-    ]  # fmt: skip
+    ]
 
 
 def _epochs(columns: BandColumns, table: RawTable) -> list[str] | None:

@@ -69,4 +69,6 @@ class Plan:
     unknown: tuple[str, ...] = ()
     cautions: tuple[str, ...] = ()
     refused: tuple[Refused, ...] = field(default=())
-    units: dict[str, str] = field(default_factory=dict)  # column -> unit of the column map, which goes before the file's
+    units: dict[str, str] = field(
+        default_factory=dict
+    )  # column -> unit of the column map, which goes before the file's

@@ -70,7 +70,9 @@ def recognise(table: RawTable, words: Words) -> Plan:
     native += native_columns(work.free, words.bands, words.aliases, label)
     _add_native(work, native)
     name, prefix = _own_name(work, mapped)
-    claims = claim_columns(list(table.columns), words.archives, lambda column: _letters(table, column), frozenset(work.used))
+    claims = claim_columns(
+        list(table.columns), words.archives, lambda column: _letters(table, column), frozenset(work.used)
+    )
     work.cautions += claims.cautions
     for claim in claims.found:
         _add_archive(work, claim)
@@ -80,6 +82,7 @@ def recognise(table: RawTable, words: Words) -> Plan:
     _add_facts(work)
     _add_native(work, native_columns(work.free, words.bands, words.aliases, label, folded=True))
     _add_position(work, claims.found)
+    _tell_apart(work)
     return Plan(
         name, prefix, tuple(work.bands), tuple(work.facts.values()), tuple(work.free), tuple(work.cautions),
         tuple(work.refused), work.units,
@@ -100,7 +103,9 @@ def _apply_map(work: _Work) -> list[NativeColumn]:
         elif target in work.words.facts:
             work.facts[target] = FactColumn(work.words.facts[target], column)
         else:
-            raise TableError(column_map.path, f"[columns] {target!a} is neither name, a fact, nor BAND_mag, BAND_flux, BAND_err ...")
+            raise TableError(
+                column_map.path, f"[columns] {target!a} is neither name, a fact, nor BAND_mag, BAND_flux, BAND_err ..."
+            )
         work.used.add(column)
     for target, unit in column_map.units.items():
         column = column_map.columns.get(target, target)
@@ -123,7 +128,9 @@ def _archive_name(work: _Work, claims: Sequence[Claim]) -> tuple[str, str]:
             if entry.role == "name" and (column := claim.find(entry)):
                 work.cautions.append(f"there is no column name: candidates are named by {column}")
                 return column, entry.option("prefix")
-    raise TableError(work.table.path, 'there is no column "name": rename one, or say which in a column map ([columns] name = "...").')
+    raise TableError(
+        work.table.path, 'there is no column "name": rename one, or say which in a column map ([columns] name = "...").'
+    )
 
 
 def _letters(table: RawTable, column: str) -> int:
@@ -146,8 +153,12 @@ def _add_native(work: _Work, columns: Sequence[NativeColumn]) -> None:
         if "mag" in fields and "flux" in fields:
             _refuse_column(work, fields["flux"], f"{fields['mag']} gives the same band: keep one of them")
         label = work.words.label(work.table.path, band)
-        several = sum(other == band and "mag" in f or "flux" in f for (other, _), f in groups.items() if other == band) > 1
-        _add_band(work, _native_band(work.words.bands[band], fields, f"{label} {digit}" if several and digit else label))
+        several = (
+            sum(other == band and "mag" in f or "flux" in f for (other, _), f in groups.items() if other == band) > 1
+        )
+        _add_band(
+            work, _native_band(work.words.bands[band], fields, f"{label} {digit}" if several and digit else label)
+        )
 
 
 def _native_band(band: Band, fields: Mapping[str, str], label: str) -> BandColumns:
@@ -184,6 +195,15 @@ def _add_band(work: _Work, band: BandColumns) -> None:
                 return
             band = replace(band, error="")
     work.bands.append(band)
+
+
+def _tell_apart(work: _Work) -> None:
+    """Two measurements of one band under one label get the column's name into it: they are two, not two versions."""
+    met: set[tuple[str, str]] = set()
+    for index, band in enumerate(work.bands):
+        if (band.band.name, band.source) in met:
+            work.bands[index] = band = replace(band, source=f"{band.source} {band.value or band.counts}")
+        met.add((band.band.name, band.source))
 
 
 def _refuse_column(work: _Work, column: str, reason: str) -> None:

@@ -31,7 +31,9 @@ ANGLES = ("position_angle_deg", "position_angle", "pa", "posAng")
 class SideTable:
     """A side table opened: its columns by what they are, its names, and what had to be refused."""
 
-    def __init__(self, path: str | os.PathLike[str], column_map: ColumnMap, needed: Sequence[str], optional: Sequence[str]) -> None:
+    def __init__(
+        self, path: str | os.PathLike[str], column_map: ColumnMap, needed: Sequence[str], optional: Sequence[str]
+    ) -> None:
         self.table = open_table(path)
         self.refused: list[Refused] = list(self.table.refused)
         self.units = dict(column_map.units)
@@ -53,7 +55,10 @@ class SideTable:
                 if name not in self.table.columns:
                     raise TableError(column_map.path, f"[columns] {key} = {name!a}: the table has no such column.")
                 found[key] = self.table.columns[name]
-        return {key: replace(column, unit=self.units.get(key) or self.units.get(column.name) or column.unit) for key, column in found.items()}
+        return {
+            key: replace(column, unit=self.units.get(key) or self.units.get(column.name) or column.unit)
+            for key, column in found.items()
+        }
 
     @property
     def unknown(self) -> list[str]:
@@ -94,7 +99,9 @@ def read_dips(
     Raises:
         TableError: the file cannot be read or lacks a column.
     """
-    side = SideTable(path, read_column_map(columns), ("name", "band", "depth"), ("event", "error", "depth_error", "epoch"))
+    side = SideTable(
+        path, read_column_map(columns), ("name", "band", "depth"), ("event", "error", "depth_error", "epoch")
+    )
     depth = _fraction(side, "depth")
     key = "depth_error" if "depth_error" in side.columns else "error"
     error = _fraction(side, key, depth)
@@ -144,7 +151,7 @@ def read_neighbours(
     columns: str | os.PathLike[str] | None = None,
     source: str | None = None,
 ) -> SideContents:
-    """Neighbours: `name, separation` (arcsec) and `position_angle` (degrees), `source`, and bands as in any candidate table.
+    """Neighbours: `name, separation` (arcsec), `position_angle` (degrees), `source`, and bands as in any table.
 
     Raises:
         TableError: the file cannot be read or lacks a column.
@@ -201,7 +208,9 @@ def _fluxes(side: SideTable, words: Words) -> tuple[list[dict[str, float]], list
 def _map_of(column_map: ColumnMap, columns: Mapping[str, Column]) -> ColumnMap:
     """The part of a column map that speaks of these columns."""
     named = {target: column for target, column in column_map.columns.items() if column in columns}
-    units = {target: unit for target, unit in column_map.units.items() if column_map.columns.get(target, target) in columns}
+    units = {
+        target: unit for target, unit in column_map.units.items() if column_map.columns.get(target, target) in columns
+    }
     return replace(column_map, columns=named, units=units)
 
 
@@ -239,14 +248,18 @@ def _spectral_scale(side: SideTable, wave: FloatArray) -> tuple[FloatArray, Floa
         unit = parse_unit(side.columns[key].unit)
         if unit is None:
             mend = '[units] in a column map, such as wavelength = "um", flux = "mJy"'
-            raise TableError(side.table.path, f"column {side.columns[key].name} has no unit that is known: give one in {mend}.")
+            raise TableError(
+                side.table.path, f"column {side.columns[key].name} has no unit that is known: give one in {mend}."
+            )
         given[key] = unit
     try:
         wave_um = (wave * given["wavelength"]).to_value(units.um, equivalencies=units.spectral())
         at = np.where(wave_um > 0, wave_um, 1.0) * units.um
         to_jy = (np.ones_like(wave) * given["flux"]).to_value(units.Jy, equivalencies=units.spectral_density(at))
     except (units.UnitsError, TypeError) as error:
-        raise TableError(side.table.path, "the units of wavelength and flux are no length and no flux density.") from error
+        raise TableError(
+            side.table.path, "the units of wavelength and flux are no length and no flux density."
+        ) from error
     return wave_um, to_jy
 
 
@@ -260,5 +273,3 @@ def _in_order(side: SideTable, wave_um: FloatArray, places: list[int]) -> list[i
         else:
             kept.append(row)
     return kept
-
-

@@ -60,7 +60,8 @@ def read_parts(
 ) -> Iterator[TableContents]:
     """As `read_table`, some `size` rows at a time, so that a million rows need not be held at once.
 
-    Each part holds its own candidates and refusals; unknown columns and cautions come with the last. A long table is one part.
+    Each part holds its own candidates and refusals; unknown columns and cautions come with the last.
+    A long table is one part.
     """
     column_map = read_column_map(columns)
     words = Words({**bands, **column_map.bands}, aliases, facts, archives, column_map, source or "")
@@ -81,4 +82,6 @@ def read_parts(
     known = [f"{band}_mag" for band in words.bands] + list(facts)
     likely = [(name, hint(name, known)) for name in plan.unknown[:SHOWN_COLUMNS]]
     hints = [f"{name} is not read; {near} would be" for name, near in likely if near]
-    yield TableContents([], wide.refused, list(plan.unknown), [*wide.closing_cautions(), *hints], label, column_map.bands)
+    yield TableContents(
+        [], wide.refused, list(plan.unknown), [*wide.closing_cautions(), *hints], label, column_map.bands
+    )

@@ -44,7 +44,9 @@ def _decoded(path: str) -> str:
         raise TableError(path, "the text is UTF-16: save it as UTF-8.")
     if (at := raw.find(b"\0")) >= 0:
         line = raw.count(b"\n", 0, at) + 1
-        raise TableError(path, f"line {line} holds a NUL byte: this is no text table (VOTable, FITS, ECSV, CSV or TSV).")
+        raise TableError(
+            path, f"line {line} holds a NUL byte: this is no text table (VOTable, FITS, ECSV, CSV or TSV)."
+        )
     try:
         return raw.decode("utf-8-sig")
     except UnicodeDecodeError as error:
@@ -94,7 +96,9 @@ def _ecsv_head(path: str, comments: list[str]) -> tuple[str, dict[str, str]]:
 
 def _rows(path: str, body: str, delimiter: str) -> tuple[list[str], list[list[str]], list[int], list[Refused]]:
     """The head, the rows that fit it, their numbers, and those that do not."""
-    reader = csv.reader(io.StringIO(body, newline=""), delimiter=delimiter, skipinitialspace=delimiter == " ", strict=False)
+    reader = csv.reader(
+        io.StringIO(body, newline=""), delimiter=delimiter, skipinitialspace=delimiter == " ", strict=False
+    )
     rows: list[list[str]] = []
     numbers: list[int] = []
     refused: list[Refused] = []
@@ -135,5 +139,3 @@ def _columns(path: str, head: list[str], rows: list[list[str]], units: dict[str,
         if name:
             columns[name] = Column(name, texts, None, unit)
     return columns
-
-

@@ -22,7 +22,8 @@ MAG_PER_RATIO = 2.5 / math.log(10.0)
 BRIGHTEST_MAG, FAINTEST_MAG = -40.0, 60.0  # beyond: no magnitude of a star but a slip or an unknown sentinel
 LARGEST_JY = 1e20
 
-# Softening b of the SDSS asinh magnitudes: Lupton, Gunn & Szalay 1999, AJ 118, 1406; Stoughton et al. 2002, AJ 123, 485, Table 21.
+# Softening b of the SDSS asinh magnitudes: Lupton, Gunn & Szalay 1999, AJ 118, 1406;
+# Stoughton et al. 2002, AJ 123, 485, Table 21.
 SOFTENING: Mapping[str, float] = {
     "SDSS_u": 1.4e-10, "SDSS_g": 0.9e-10, "SDSS_r": 1.2e-10, "SDSS_i": 1.8e-10, "SDSS_z": 7.4e-10,
 }  # fmt: skip
@@ -82,8 +83,10 @@ def scale(unit: str, band: Band, *, is_mag: bool) -> Scale:
     if not text:
         if is_mag:
             return Scale("mag", _own_zero_point(band), "mag")
-        raise InputError('it has no unit and none is guessed: give one in the column, or in the column map under [units], '
-                         'such as "mJy"')
+        raise InputError(
+            "it has no unit and none is guessed: give one in the column, or in the column map under [units], "
+            'such as "mJy"'
+        )
     named = _named_scale(text, band)
     return named if named is not None else _parsed_scale(text, band)
 

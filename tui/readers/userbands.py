@@ -28,7 +28,8 @@ def user_band(name: str, entry: Mapping[str, Any], folder: Path) -> Band:
 
     Args:
         entry: `pivot_um` or `curve` (a table beside the map: wavelength, response), `mag_system` (Vega or AB),
-            `zero_point_jy` (needed for Vega), `response` (photon or energy; photon by default), `floor` (fraction), `instrument`, ...
+            `zero_point_jy` (needed for Vega), `response` (photon or energy; photon by default), `floor` (fraction),
+            `instrument`, `source` and what else a band has.
     Raises:
         InputError: a part is missing, unknown or out of range.
     """

@@ -18,7 +18,10 @@ from tui.readers.records import Column, RawTable
 
 FOREIGN = (
     (re.compile(rb"<!ENTITY"), "defines entities, which no table needs"),
-    (re.compile(rb"<(?:[\w.-]+:)?STREAM\b[^>]*\bhref\b"), "keeps its rows in another file or on another machine: save it in one file"),
+    (
+        re.compile(rb"<(?:[\w.-]+:)?STREAM\b[^>]*\bhref\b"),
+        "keeps its rows in another file or on another machine: save it in one file",
+    ),
     (re.compile(rb"\x00"), "holds NUL bytes: save it as UTF-8"),
 )
 
@@ -81,7 +84,9 @@ def _column(name: str, cells: Any, unit: str) -> Column | None:
         if any(isinstance(value, (np.ndarray, list, tuple)) for value in values[:50]):
             return None
         texts = [_text(value) for value in values.tolist()]
-        return Column(name, ["" if hidden else text for text, hidden in zip(texts, mask.tolist(), strict=True)], None, unit)
+        return Column(
+            name, ["" if hidden else text for text, hidden in zip(texts, mask.tolist(), strict=True)], None, unit
+        )
     if values.dtype.kind not in "biuf":
         return None
     if values.dtype.kind == "f":

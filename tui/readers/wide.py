@@ -10,7 +10,7 @@ from typing import Any
 
 import numpy as np
 
-from tui.errors import InputError
+from tui.errors import InputError, TableError
 from tui.model import Candidate, Measurement
 from tui.readers.cells import lost_digits, texts
 from tui.readers.factcells import fact_values
@@ -44,7 +44,12 @@ class WideReader:
         self._wrong_facts: set[str] = set()
         self.cautions: list[str] = [*table.cautions, *plan.cautions]
         if lost_digits(table.columns[plan.name]):
-            self.cautions.append(f"{plan.name}: long numbers in this column have lost their last digits; store them as text or integers")
+            if plan.name_prefix:
+                mend = "write the column as text or whole numbers, not through a spreadsheet"
+                raise TableError(table.path, f"the long numbers of {plan.name} have lost their last digits: {mend}.")
+            self.cautions.append(
+                f"{plan.name}: long numbers in this column have lost their last digits; store them as text or integers"
+            )
 
     def parts(self, size: int) -> Iterator[list[Candidate]]:
         """The candidates, `size` rows at a time; refusals are added as they are met."""
@@ -55,7 +60,10 @@ class WideReader:
 
     def closing_cautions(self) -> list[str]:
         """All cautions, once every part was read."""
-        counted = [f"{band}: {count} detections have no error and take the band's floor" for band, count in self.without_error.items()]
+        counted = [
+            f"{band}: {count} detections have no error and take the band's floor"
+            for band, count in self.without_error.items()
+        ]
         return [*self.cautions, *counted]
 
     def _candidates(self, table: RawTable) -> list[Candidate]:
@@ -75,7 +83,10 @@ class WideReader:
         """The names, and which rows have one that is usable and new."""
         cells = texts(table.columns[self.plan.name])
         if self.plan.name_prefix:
-            cells = [f"{self.plan.name_prefix}{'' if self.plan.name_prefix.endswith('J') else ' '}{cell}" if cell else "" for cell in cells]
+            cells = [
+                f"{self.plan.name_prefix}{'' if self.plan.name_prefix.endswith('J') else ' '}{cell}" if cell else ""
+                for cell in cells
+            ]
         names, reasons = clean_names(cells)
         keep = np.ones(len(names), dtype=bool)
         for row, name in enumerate(names):
@@ -107,7 +118,9 @@ class WideReader:
                     self._wrong_facts.add(plan.column)
                     self.refused.append(Refused(table.path, 0, plan.column, str(error)))
                 continue
-            cells = [Refused(table.path, int(table.row_numbers[row]), plan.column, why) for row, why in sorted(bad.items())]
+            cells = [
+                Refused(table.path, int(table.row_numbers[row]), plan.column, why) for row, why in sorted(bad.items())
+            ]
             self._note_refusals(cells, keep, table)
             name = plan.fact.name
             for row, value in enumerate(values):
