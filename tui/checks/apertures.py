@@ -8,17 +8,13 @@ from dataclasses import dataclass
 
 from tui.checks.brightness import band_mag
 from tui.checks.doubts import INFORMATIVE, SUSPICION, Doubt
-from tui.checks.flags import generic_column
+from tui.checks.flags import BAND_LETTERS
 from tui.model import Band, Candidate, Measurement
 
 N_SIGMA = 3.0
 LEAST_MAG = 0.1  # smaller differences are within what aperture corrections are good for; our choice
-# column of an aperture magnitude -> column of its error: native form, AllWISE, 2MASS
-APERTURE_COLUMNS = {
-    "aperture_mag": "aperture_mag_error",
-    "w?mag": "w?sigm",
-    "?_m_stdap": "?_msig_stdap",
-}
+# columns of an aperture magnitude and its error; "?" stands for the band's letter: native form, AllWISE, 2MASS
+APERTURE_COLUMNS = (("aperture_mag", "aperture_mag_error"), ("?mag", "?sigm"), ("?_m_stdap", "?_msig_stdap"))
 
 
 @dataclass(frozen=True, slots=True)
@@ -54,9 +50,13 @@ def aperture_differences(candidate: Candidate, bands: Mapping[str, Band]) -> lis
 
 
 def _difference(measurement: Measurement, band: Band) -> list[ApertureDifference]:
-    own, texts = band_mag(measurement, band), {generic_column(k, band.name): v for k, v in measurement.flags.items()}
-    for column, error_column in APERTURE_COLUMNS.items():
-        mag, error = number(texts.get(column)), number(texts.get(error_column))
+    letter = BAND_LETTERS.get(band.name, "")
+    for columns in APERTURE_COLUMNS:
+        column, error_column = (name.replace("?", letter) for name in columns)
+        if column not in measurement.flags:
+            continue
+        mag, error = number(measurement.flags[column]), number(measurement.flags.get(error_column))
+        own = band_mag(measurement, band)
         if math.isfinite(mag) and math.isfinite(own):
             profile = 1.0857 * measurement.error_jy / measurement.flux_jy
             known = [x for x in (error, profile) if math.isfinite(x)]

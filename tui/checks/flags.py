@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Any
 
 from tui.checks.doubts import INFORMATIVE, SUSPICION, Doubt
@@ -62,7 +62,8 @@ class FlagTable:
     """All meanings, found by column and band."""
 
     rows: Mapping[tuple[str, str], tuple[FlagRow, ...]]
-    columns: frozenset[str]
+    bands_of: Mapping[str, tuple[str, ...]]  # column -> bands it speaks of
+    said: dict[tuple[str, str, str], tuple[FlagReading, ...]] = field(default_factory=dict)  # codes read before
 
     def find(self, column: str, band: str) -> tuple[FlagRow, ...]:
         """Rows for a column as the catalogue names it: `w1sat` of W1 is `w?sat`."""
@@ -86,7 +87,10 @@ def flag_table(rows: Sequence[Mapping[str, str]]) -> FlagTable:
         for column in flag.columns:
             for band in flag.bands:
                 found.setdefault((column, band), []).append(flag)
-    return FlagTable({key: tuple(value) for key, value in found.items()}, frozenset(column for column, _ in found))
+    bands_of: dict[str, tuple[str, ...]] = {}
+    for column, band in found:
+        bands_of[column] = (*bands_of.get(column, ()), band)
+    return FlagTable({key: tuple(value) for key, value in found.items()}, bands_of)
 
 
 def generic_column(column: str, band: str) -> str:
@@ -103,8 +107,17 @@ def generic_column(column: str, band: str) -> str:
 
 def read_flag(column: str, band: str, text: Any, table: FlagTable) -> tuple[FlagReading, ...]:
     """Meanings of one flag of one band; empty where the value is missing or the column is not a flag."""
-    value = plain_text(text)
+    key = (column, band, text if isinstance(text, str) else str(text))
+    if key in table.said:
+        return table.said[key]
     rows = table.find(column, band)
+    readings = _readings(column, band, plain_text(text), rows)
+    if rows and all(row.test == "is" for row in rows) and len(key[2]) <= 2:  # codes are few, numbers are not
+        table.said[key] = readings
+    return readings
+
+
+def _readings(column: str, band: str, value: str, rows: tuple[FlagRow, ...]) -> tuple[FlagReading, ...]:
     if value.lower() in EMPTY_TEXTS or not rows:
         return ()
     said = [row for row in rows if row_holds(row, value)]
@@ -156,14 +169,14 @@ def candidate_flags(candidate: Candidate, table: FlagTable) -> tuple[FlagReading
 
 
 def _flag_texts(candidate: Candidate, table: FlagTable) -> Iterable[tuple[str, str, Any]]:
-    bands = tuple(dict.fromkeys(m.band for m in candidate.measurements))
+    measured = {m.band for m in candidate.measurements}
     for measurement in candidate.measurements:
         for column, text in measurement.flags.items():
             yield measurement.band, column, text
     facts = {**candidate.facts, **blend_shares(candidate.facts)}
     for column, value in facts.items():
-        if value is not None and column in table.columns:
-            yield from ((band, column, value) for band in bands)
+        if value is not None and column in table.bands_of:
+            yield from ((band, column, value) for band in table.bands_of[column] if band in measured)
 
 
 def blend_shares(facts: Mapping[str, Any]) -> dict[str, float]:

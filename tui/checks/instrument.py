@@ -10,7 +10,7 @@ import numpy as np
 from tui.checks.carrier import Carrier, find_carriers, removal_trials
 from tui.checks.carrier_words import carrier_facts, carrier_sentences
 from tui.checks.colours import w4_red_excess, w4_sentence
-from tui.checks.doubts import sentences, suspect_bands
+from tui.checks.doubts import sentences
 from tui.checks.neighbours import measured_fluxes, neighbour_sentences
 from tui.checks.quality import Quality, all_gaia_facts, candidate_quality
 from tui.checks.record import any_stands, stands
@@ -50,7 +50,7 @@ def assess(
     ]
     carriers = batch_carriers(batch)
     present = batch.problem.detected | batch.problem.limited
-    suspects = np.array([[name in suspect_bands(q.doubts) for name in bands] for q in quality], dtype=bool)
+    suspects = np.array([[name in one.suspects for name in bands] for one in quality], dtype=bool)
     suspects = suspects.reshape(present.shape) & present
     without = fits_without(batch, suspects, record)
     return [
@@ -105,7 +105,7 @@ def one_evidence(
     settings: Settings,
 ) -> Evidence:
     """Put one candidate's evidence together."""
-    suspects = tuple(name for name in bands if name in suspect_bands(quality.doubts) and name in star.bands)
+    suspects = tuple(name for name in bands if name in quality.suspects and name in star.bands)
     answer = None if without is None else stands(without, len(without.pulls), settings)
     facts = quality.as_facts()
     facts["suspect_bands"] = list(suspects)

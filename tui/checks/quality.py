@@ -8,7 +8,7 @@ from typing import Any
 
 from tui.checks.apertures import ApertureDifference, aperture_differences
 from tui.checks.brightness import brightness_doubts
-from tui.checks.doubts import Doubt
+from tui.checks.doubts import Doubt, suspect_bands
 from tui.checks.epochs import Constancy, epoch_constancy
 from tui.checks.flags import FlagReading, candidate_flags
 from tui.checks.gaia_quality import gaia_doubts, gaia_facts, gaia_numbers
@@ -27,14 +27,17 @@ class Quality:
     leaks: tuple[Leak, ...]
     gaia: Mapping[str, float]
     doubts: tuple[Doubt, ...]
+    suspects: frozenset[str]  # bands that some suspicion stands against
     is_loaded: bool  # whether any column was there that could speak against a band
 
     def as_facts(self) -> dict[str, Any]:
-        """As the evidence stores it."""
+        """As the evidence stores it: flags that say that all is well are only counted."""
+        telling = [reading for reading in self.flags if reading.cause]
         return {
             **self.gaia,
-            "flags": [reading.as_dict() for reading in self.flags],
-            "doubts": [doubt.as_dict() for doubt in self.doubts],
+            "flags": [reading.as_dict() for reading in telling],
+            "flags_fine": len(self.flags) - len(telling),
+            "doubts": [doubt.as_dict() for doubt in self.doubts if doubt.kind != "flag"],
             "epochs": {e.band: {"n": e.n, "scatter": e.scatter, "p": e.p} for e in self.epochs},
             "apertures": {a.band: {"difference": a.difference_mag, "error": a.error_mag} for a in self.apertures},
             "neighbour_leaks": [leak.as_dict() for leak in self.leaks if leak.leak_jy > 0],
@@ -60,7 +63,7 @@ def candidate_quality(
     doubts += neighbour_doubts(candidate, bands, leaks)
     has_flags = any(str(text).strip() for m in candidate.measurements for text in m.flags.values())
     is_loaded = bool(has_flags or flags or epochs or apertures or candidate.neighbours or gaia)
-    return Quality(flags, epochs, apertures, tuple(leaks), gaia, tuple(doubts), is_loaded)
+    return Quality(flags, epochs, apertures, tuple(leaks), gaia, tuple(doubts), suspect_bands(doubts), is_loaded)
 
 
 def all_gaia_facts(

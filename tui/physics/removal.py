@@ -9,7 +9,7 @@ from tui.model import FloatArray
 from tui.physics.composite import STAR
 from tui.physics.fitting import FitBatch, fit
 
-CELLS = 2_000_000  # cells of one table held in memory at a time
+PRODUCT = 250_000  # multiplications of one matrix product: what stays in cache and waits for no threads
 
 
 def chi2_without(batch: FitBatch, row: NDArray[np.intp], dropped: NDArray[np.bool_]) -> FloatArray:
@@ -29,19 +29,22 @@ def chi2_without(batch: FitBatch, row: NDArray[np.intp], dropped: NDArray[np.boo
         return fit(batch.problem.take(row).without(dropped), STAR).chi2
     ln_flux = batch.kit.star.ln_flux
     grid = np.exp(ln_flux - ln_flux.max(axis=1, keepdims=True))
-    size = max(1, CELLS // (grid.shape[0] * (grid.shape[1] if batch.problem.limited.any() else 1)))
-    parts = [_part(batch, grid, row[i : i + size], dropped[i : i + size]) for i in range(0, row.size, size)]
+    size = max(1, PRODUCT // grid.size)
+    square = grid**2
+    parts = [_part(batch, grid, square, row[i : i + size], dropped[i : i + size]) for i in range(0, row.size, size)]
     return np.concatenate(parts) if parts else np.empty(0)
 
 
-def _part(batch: FitBatch, grid: FloatArray, row: NDArray[np.intp], dropped: NDArray[np.bool_]) -> FloatArray:
+def _part(
+    batch: FitBatch, grid: FloatArray, square: FloatArray, row: NDArray[np.intp], dropped: NDArray[np.bool_]
+) -> FloatArray:
     problem, sigma = batch.problem, batch.errors.sigma[row]
     flux = problem.flux_jy[row]
     weight = np.where(problem.detected[row] & ~dropped, sigma**-2.0, 0.0)
-    own = (grid**2) @ weight.T  # (T, M)
+    own = np.maximum(square @ weight.T, 1e-300)  # (T, M)
     cross = np.maximum(grid @ (weight * flux).T, 0.0)
-    scale = cross / np.maximum(own, 1e-300)
-    chi2 = np.sum(weight * flux**2, axis=1) - cross * scale
+    scale = np.divide(cross, own, out=own)
+    chi2 = np.subtract(np.sum(weight * flux**2, axis=1), np.multiply(cross, scale, out=cross), out=cross)
     limited = problem.limited[row] & ~dropped
     for column in np.flatnonzero(limited.any(axis=0)):
         some = np.flatnonzero(limited[:, column])
