@@ -43,22 +43,20 @@ def gather_command(queue: str, others: tuple[str, ...], rename: dict[str, str]) 
 
 @click.command("audit")
 @queue_argument
-@click.option("--receipt", metavar="RECEIPT", help="Check a receipt, or with a HANDLE print that reviewer's.")
+@click.option("--receipt", "receipts", multiple=True, metavar="TEXT", help="Check a receipt, or a file of them; repeat for more.")
 @click.option("--repair", is_flag=True, help="Rebuild the derived tables from the log.")
 @click.option("--backup", type=click.Path(), metavar="FILE", help="Write a one-file copy while others work.")
-def audit_command(queue: str, receipt: str | None, repair: bool, backup: str | None) -> int:
-    """Integrity of the file, of every reviewer's chain of rulings, and of the derived states."""
-    from tui.cli.printing import line, remark
+def audit_command(queue: str, receipts: tuple[str, ...], repair: bool, backup: str | None) -> int:
+    """Integrity of the file, of every reviewer's chain of rulings, and of the derived states.
+
+    Prints each reviewer's receipt: kept elsewhere, it shows later whether a ruling was cut off.
+    """
+    from tui.cli.printing import line
     from tui.workflow import auditing
 
     if backup:
         line(auditing.write_backup(queue, backup))
-    if receipt:
-        line(auditing.check_or_print_receipt(queue, receipt))
-        return 0
-    done = auditing.audit_queue(queue, repair=repair)
-    for text in done.lines:
+    done = auditing.audit_queue(queue, repair=repair, receipts=receipts)
+    for text in (*done.faults, *done.lines):
         line(text)
-    for text in done.faults:
-        remark(text)
     return 1 if done.faults else 0

@@ -44,6 +44,7 @@ def rule_command(queue: str, name: str, check: str, ruling: str, handle: str | N
 @click.option("--thin", is_flag=True, help="For slow lines: no mouse tracking, no animation, fewer bytes.")
 def review_command(queue: str, handle: str | None, thin: bool) -> int:
     """The desk: walk the candidates that need you, in the terminal."""
+    from tui.cli.printing import line
     from tui.workflow.config import read_config
 
     config = read_config()
@@ -51,11 +52,11 @@ def review_command(queue: str, handle: str | None, thin: bool) -> int:
     refuse_without_terminal()
     from tui.workflow.session import Session
 
-    session = Session.open(queue, handle)
-    try:
-        return open_desk(session, thin=thin, theme=config.theme, keys=config.keys)
-    finally:
-        session.close()
+    with Session.open(queue, handle) as session:
+        status = open_desk(session, thin=thin, theme=config.theme, keys=config.keys)
+        line(f"Your receipt: {session.receipt()}")
+        line(f"Keep it; plainlight audit {queue} --receipt RECEIPT shows later that nothing of yours was lost.")
+    return status
 
 
 def refuse_without_terminal() -> None:

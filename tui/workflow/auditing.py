@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import os
+from collections.abc import Sequence
 from contextlib import closing
 from dataclasses import dataclass
+from pathlib import Path
 
-from tui.errors import InputError
 from tui.store.connect import open_queue
 
 CHAIN_LIMIT = (
@@ -23,16 +24,19 @@ class Audited:
     faults: tuple[str, ...]
 
 
-def audit_queue(path: str, *, repair: bool = False) -> Audited:
+def audit_queue(path: str, *, repair: bool = False, receipts: Sequence[str] = ()) -> Audited:
     """Check file, chains, references and derived tables; with `repair` the derived ones are written anew.
 
+    Args:
+        receipts: texts of receipts, or paths of files that hold one a line.
     Raises:
+        InputError: a text that is no receipt.
         StoreError: the file cannot be opened as a queue.
     """
     from tui.store.audit import audit
 
     with closing(open_queue(path, write=repair)) as connection:
-        found = audit(connection, repair=repair)
+        found = audit(connection, repair, receipt_texts(receipts))
     faults = tuple(f"{fault.kind}: {fault.place}: {fault.text}" for fault in found.faults)
     what = (("candidates", found.candidates), ("measurements", found.measurements), ("rulings", found.rulings))
     lines = [f"{path}: {', '.join(f'{count} {name}' for name, count in what)}, {found.reviewers} reviewers."]
@@ -40,20 +44,29 @@ def audit_queue(path: str, *, repair: bool = False) -> Audited:
     lines += [f"Receipt of {handle}: {receipt}" for handle, receipt in sorted(found.heads.items())]
     if repair:
         lines.append(f"{found.repaired} derived rows written anew.")
+    if receipts:
+        lines.append(f"{len(receipts)} receipts checked.")
     lines.append(f"{len(faults)} faults." if faults else "Sound: file, references, every chain, every derived state.")
     return Audited((*lines, CHAIN_LIMIT), faults)
+
+
+def receipt_texts(given: Sequence[str]) -> list[str]:
+    """Receipts as texts; a file gives every line that is not empty."""
+    texts: list[str] = []
+    for one in given:
+        lines = Path(one).read_text(encoding="utf-8").splitlines() if os.path.isfile(one) else [one]
+        texts += [line.strip() for line in lines if line.strip()]
+    return texts
 
 
 def write_backup(path: str, target: str) -> str:
     """Copy the queue to one file while others work; the sentence that says so.
 
     Raises:
-        InputError: `target` exists.
+        StoreError: `target` exists, or cannot be written.
     """
     from tui.store.audit import backup
 
-    if os.path.lexists(target):
-        raise InputError(f"{target} exists already; choose another name for the backup.")
     with closing(open_queue(path, write=False)) as connection:
         backup(connection, target)
     return f"Backup written: {target}"

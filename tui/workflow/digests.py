@@ -10,7 +10,8 @@ from tui.model import CHECKS, Settings, digest
 
 _FITS = ("photosphere", "law", "r_v", "av_prior", "p_min", "source_floor", "floors", "common")
 RELEVANT = MappingProxyType(
-    dict.fromkeys(CHECKS, (*_FITS, "ruwe_max")) | {"mixture": _FITS, "dips": (*_FITS, "ruwe_max")}
+    dict.fromkeys(CHECKS, (*_FITS, "ruwe_max"))
+    | {"blend": (*_FITS, "ruwe_max", "n_searched"), "mixture": _FITS, "dips": (*_FITS, "ruwe_max")}
 )  # kind -> the settings that can change its numbers; the rules of consensus are not among them
 
 

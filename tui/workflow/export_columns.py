@@ -6,13 +6,13 @@ import math
 import sys
 from array import array
 from collections.abc import Callable, Iterator, Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
-from tui.model import CHECK_TITLES, CHECKS, SURE, Evidence, Fit, Param
+from tui.model import CHECK_TITLES, CHECKS, KINDS, SURE, Evidence, Fit, Param
 
 FITTED_ENDS = ("low", "high")
 SHORT = 40  # characters up to which a text is likely to occur again
@@ -34,6 +34,7 @@ class VettedRow:
     oddness: Mapping[str, Any] = field(default_factory=dict)  # sigma, band, pull
     photosphere: str = ""
     law: str = ""
+    held_r_v: float | None = None  # of the settings, where R_V is not free
 
     def best(self, kind: str) -> Fit | None:
         """The best fit of one kind of evidence, or None."""
@@ -173,7 +174,7 @@ def number_columns() -> list[ExportColumn]:
         *fitted("star_teff", "star", "teff", "effective temperature, star alone", "K", "phys.temperature.effective"),
         *goodness("star"),
         *fitted("extinction_av", "extinction", "av", "extinction A(V)", "mag", "phys.absorption;em.opt.V"),
-        *fitted("extinction_r_v", "extinction", "r_v", "A(V) / E(B-V)", "", "phys.absorption;arith.ratio"),
+        *ratio_columns(),
         *fitted(
             "extinction_teff", "extinction", "teff", "effective temperature behind the extinction", "K",
             "phys.temperature.effective",
@@ -197,7 +198,7 @@ def context_columns() -> list[ExportColumn]:
     """What lies around the fits, the mixture bound, the dips, and what all of it rests on."""
     return [
         known("blend_chance_alignment", "blend", "chance_alignment", "chance of an unrelated source", "", "stat.probability"),
-        *ranged_fact("overluminosity", "blend", "overluminosity", "magnitudes above one star at that parallax", "mag"),
+        *ranged_fact("overluminosity", "blend", "over_luminosity", "magnitudes above one star at that parallax", "mag"),
         known("carrier_band", "instrument", "carrier_band", "band or instrument whose removal mends most", "", "instr.bandpass", str),
         known("carrier_p", "instrument", "carrier_p", "p of the carrier, corrected for the bands tried", "", "stat.probability"),
         known("instrument_suspect_bands", "instrument", "suspect_bands", "bands under independent suspicion", "", "instr.bandpass", str),
@@ -242,6 +243,17 @@ def interval(name: str, take: Callable[[VettedRow, str], float | None], unit: st
         )
         for end in FITTED_ENDS
     ]
+
+
+def ratio_columns() -> list[ExportColumn]:
+    """R_V where it was fitted, with its interval; where it was held, the value that was used, without."""
+    value, *ends = fitted("extinction_r_v", "extinction", "r_v", "A(V) / E(B-V)", "", "phys.absorption;arith.ratio")
+
+    def take(row: VettedRow) -> float | None:
+        found = value.take(row)
+        return row.held_r_v if found is None and row.best("extinction") else found
+
+    return [replace(value, take=take), *ends]
 
 
 def goodness(kind: str) -> list[ExportColumn]:
@@ -318,6 +330,9 @@ def fitted_bands(row: VettedRow) -> str | None:
 def all_cautions(row: VettedRow) -> str | None:
     """Every caution, each under its check, in the order of the walk."""
     found = [
-        f"{CHECK_TITLES.get(kind, kind)}: {caution}" for kind, one in row.evidence.items() for caution in one.cautions
+        f"{CHECK_TITLES.get(kind, kind)}: {caution}"
+        for kind in KINDS
+        if kind in row.evidence
+        for caution in row.evidence[kind].cautions
     ]
     return "; ".join(found) or None

@@ -12,7 +12,7 @@ from typing import Any
 from tui import __version__
 from tui.model import Settings, plain
 from tui.store.candidates import candidate_count, get_candidates
-from tui.store.connect import open_queue
+from tui.store.connect import open_queue, snapshot
 from tui.store.deriving import oddness_of
 from tui.store.evidence import current_evidence_of
 from tui.store.records import TeamRow
@@ -80,13 +80,13 @@ def export(
     writer_for(out)
     refuse_existing(out, force)
     controls = read_truth(selection.controls) if selection.controls else {}
-    with closing(open_queue(path, write=False)) as connection:
+    with closing(open_queue(path, write=False)) as connection, snapshot(connection):
         settings = read_settings(connection)
         cells, bare = Cells(columns()), 0
         for row in vetted_rows(connection, selection, controls, settings, report):
             cells.add(row)
             bare += not row.evidence
-        meta = metadata(connection, selection, settings)
+        meta = metadata(connection, selection, controls, settings)
     write_list(out, cells, meta, force=force)
     return Exported(out, len(cells), bare)
 
@@ -128,10 +128,13 @@ def page_rows(connection: sqlite3.Connection, page: Sequence[TeamRow], settings:
             oddness={"sigma": sigma, "band": band, "pull": pull} if sigma is not None else {},
             photosphere=settings.photosphere if found else "",
             law=settings.law if found else "",
+            held_r_v=None if settings.r_v == "free" else float(settings.r_v),
         )
 
 
-def metadata(connection: sqlite3.Connection, selection: Selection, settings: Settings) -> dict[str, Any]:
+def metadata(
+    connection: sqlite3.Connection, selection: Selection, controls: Mapping[str, str], settings: Settings
+) -> dict[str, Any]:
     """What a reader of the list needs to know of how it was made: JSON values."""
     from tui.checks import VERSIONS
     from tui.store.audit import queue_digest
@@ -144,14 +147,15 @@ def metadata(connection: sqlite3.Connection, selection: Selection, settings: Set
         "settings": plain(asdict(settings)),
         "thresholds": {name: getattr(settings, name) for name in ("quorum", "agree_share", "p_min", "ruwe_max")},
         "reviewers": [one.handle for one in reviewers(connection)],
-        "agreement": agreement(connection, settings),
+        "agreement": agreement(connection, settings, controls),
         "selection": {"outcome": selection.outcome, "unresolved": selection.unresolved, "controls_left_out": bool(selection.controls)},
         "caution": CAUTION,
     }  # fmt: skip
 
 
-def agreement(connection: sqlite3.Connection, settings: Settings) -> Any:
+def agreement(connection: sqlite3.Connection, settings: Settings, controls: Mapping[str, str]) -> dict[str, Any]:
     """How far reviewers agreed in first, sealed rulings, as the tally has it."""
     from tui.workflow.tallying import tally
 
-    return plain(tally(connection, settings, now=utc_now()).as_dict()["agreement"])
+    found = tally(connection, settings, now=utc_now(), truth=controls).as_dict()["agreement"]
+    return {name: plain(found[name]) for name in ("overall", "checks", "lean_followed")}

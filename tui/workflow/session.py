@@ -263,6 +263,12 @@ class Session:
         found = tallying.tally(self.connection, self.settings, now=utc_now())
         return found.seen_by(open_to(self.connection, self.reviewer.id) if self.reviewer else ())
 
+    def receipt(self) -> str:
+        """What this reviewer takes away on leaving; `plainlight audit --receipt` checks it later."""
+        from tui.store.audit import receipt
+
+        return receipt(self.connection, self.needed_reviewer().id)
+
     def needed_reviewer(self) -> Reviewer:
         """The reviewer; HandleError for a reader without a handle."""
         if self.reviewer is None:

@@ -69,7 +69,7 @@ def write(path: str, name: str, value: str, handle: str | None) -> str:
     text = f"{name} is now {line.value}."
     if name in RULES:
         return f"{text} States and outcomes follow it."
-    return text if name == "n_searched" else f"{text} Evidence that rests on it is outdated until: plainlight assess {path}"
+    return f"{text} Evidence that rests on it is outdated until: plainlight assess {path}"
 
 
 def history(path: str, name: str) -> list[tuple[str, str, str]]:
