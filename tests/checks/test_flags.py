@@ -64,6 +64,36 @@ def test_bits_are_said_one_by_one():
     assert [r.cause for r in read_flag("nuv_artifact", "GALEX_NUV", "6", TABLE)] == ["reflection", "reflection"]
 
 
+def test_long_words_keep_their_bits():
+    # SDSS flags are 64 bits: EDGE is bit 2 and a double would lose it beside bit 62
+    (reading,) = read_flag("flags_r", "SDSS_r", str(2**62 + 4), TABLE)
+    assert reading.cause == "edge"
+    assert read_flag("flags_r", "SDSS_r", str(2**18), TABLE)[0].cause == "saturation"
+    assert read_flag("flags_r", "SDSS_r", "9" * 400, TABLE) == ()
+
+
+@pytest.mark.parametrize(
+    ("column", "band", "text", "cause"),
+    [
+        ("gQfPerfect", "PS1_g", "0.5", "masked pixels"),
+        ("cirr1", "IRAS60", "7", "cirrus"),
+        ("fqual18", "AKARI_L18W", "1", "unconfirmed"),
+        ("i1_softsatflag", "IRAC1", "1", "saturation"),
+        ("fov_radius", "GALEX_NUV", "0.58", "detector rim"),
+        ("type_z", "SDSS_z", "3", "extended"),
+    ],
+)
+def test_other_archives(column, band, text, cause):
+    assert meaning(column, band, text).cause == cause
+
+
+def test_a_bare_flag_is_read_as_the_catalogue_would():
+    assert meaning("flag", "W3", "h").cause == "scattered light" and meaning("flag", "W3", "U").cause == "not detected"
+    assert meaning("flag", "Ks", "d").cause == "diffraction spike"
+    assert meaning("flag", "V", "Saturated").cause == "saturation" and meaning("flag", "W4", "blended").cause == "blend"
+    assert "does not list" in meaning("flag", "V", "q7").meaning
+
+
 def test_a_code_nobody_documented_is_shown_and_raises_nothing():
     reading = meaning("cc_flags", "W1", "x")
     assert "does not list" in reading.meaning and reading.severity == "informative"
@@ -109,7 +139,7 @@ def test_blend_shares():
 def test_every_row_is_whole():
     for row in flag_rows():
         assert row["meaning"] and row["source"] and row["catalogue"]
-        assert set(row["bands"].split()) <= set(bands())
+        assert set(row["bands"].split()) <= {*bands(), "*"}
         assert row["severity"] == "informative" or row["cause"]
 
 

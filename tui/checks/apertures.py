@@ -13,8 +13,13 @@ from tui.model import Band, Candidate, Measurement
 
 N_SIGMA = 3.0
 LEAST_MAG = 0.1  # smaller differences are within what aperture corrections are good for; our choice
-# columns of an aperture magnitude and its error; "?" stands for the band's letter: native form, AllWISE, 2MASS
-APERTURE_COLUMNS = (("aperture_mag", "aperture_mag_error"), ("?mag", "?sigm"), ("?_m_stdap", "?_msig_stdap"))
+# columns of an aperture magnitude and its error: native form, AllWISE, 2MASS, Pan-STARRS; "?" is the band's letter
+APERTURE_COLUMNS = (
+    ("aperture_mag", "aperture_mag_error"),
+    ("?mag", "?sigm"),
+    ("?_m_stdap", "?_msig_stdap"),
+    ("?MeanApMag", "?MeanApMagErr"),
+)
 
 
 @dataclass(frozen=True, slots=True)

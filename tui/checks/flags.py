@@ -11,8 +11,14 @@ from tui.checks.doubts import INFORMATIVE, SUSPICION, Doubt
 from tui.errors import InputError
 from tui.model import Candidate
 
+ANY_BAND = "*"
 TESTS = ("is", "above", "bit")
-BAND_LETTERS = {"W1": "w1", "W2": "w2", "W3": "w3", "W4": "w4", "J": "j", "H": "h", "Ks": "k"}
+BAND_LETTERS = {
+    "W1": "w1", "W2": "w2", "W3": "w3", "W4": "w4", "J": "j", "H": "h", "Ks": "k",
+    "PS1_g": "g", "PS1_r": "r", "PS1_i": "i", "PS1_z": "z", "PS1_y": "y",
+}  # fmt: skip
+LONGEST_WORD = 25  # digits of a word of flag bits; 64 bits need 20
+ANY_CASE = ("Gaia", "the table")  # catalogues whose codes are words
 EMPTY_TEXTS = ("", "nan", "none", "null", "--")
 BLEND_SHARES = {"bp": "Gaia_BP", "rp": "Gaia_RP"}
 
@@ -67,7 +73,8 @@ class FlagTable:
 
     def find(self, column: str, band: str) -> tuple[FlagRow, ...]:
         """Rows for a column as the catalogue names it: `w1sat` of W1 is `w?sat`."""
-        return self.rows.get((column, band)) or self.rows.get((generic_column(column, band), band), ())
+        own = self.rows.get((column, band)) or self.rows.get((generic_column(column, band), band), ())
+        return own + self.rows.get((column, ANY_BAND), ())
 
 
 def flag_table(rows: Sequence[Mapping[str, str]]) -> FlagTable:
@@ -133,12 +140,18 @@ def _readings(column: str, band: str, value: str, rows: tuple[FlagRow, ...]) -> 
 
 def _unknown(column: str, band: str, text: str, row: FlagRow) -> FlagReading:
     meaning = "a value that the documentation we read does not list"
-    return FlagReading(band, column, text, meaning, "", INFORMATIVE, row.catalogue, row.source)
+    return FlagReading(band, column, text, meaning, "unknown value", INFORMATIVE, row.catalogue, row.source)
 
 
 def plain_text(value: Any) -> str:
-    """A flag's value as text: whole numbers without a point, no blanks."""
+    """A flag's value as text: whole numbers without a point, no blanks.
+
+    >>> plain_text(" 2.0"), plain_text("h"), plain_text(2**63 + 1)  # no bit of a long word is lost
+    ('2', 'h', '9223372036854775809')
+    """
     text = str(value).strip()
+    if text.isdecimal():
+        return str(int(text)) if len(text) < LONGEST_WORD else text
     try:
         number = float(text)
     except ValueError:
@@ -147,16 +160,15 @@ def plain_text(value: Any) -> str:
 
 
 def row_holds(row: FlagRow, text: str) -> bool:
-    """Whether the flag's text passes the row's test; codes of Gaia are taken in either case."""
+    """Whether the flag's text passes the row's test; words are taken in either case."""
     if row.test == "is":
-        return text == row.value or (row.catalogue == "Gaia" and text.lower() == row.value)
+        return text == row.value or (row.catalogue in ANY_CASE and text.lower() == row.value)
+    if row.test == "bit":
+        return text.isdecimal() and len(text) < LONGEST_WORD and bool(int(text) & int(row.value))
     try:
-        number = float(text)
+        return float(text) > float(row.value)
     except ValueError:
         return False
-    if row.test == "above":
-        return number > float(row.value)
-    return number >= 0 and number == int(number) and bool(int(number) & int(row.value))
 
 
 def candidate_flags(candidate: Candidate, table: FlagTable) -> tuple[FlagReading, ...]:
