@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import subprocess
 import sys
 from dataclasses import replace
@@ -72,4 +73,15 @@ def test_two_processes_at_once_leave_one_good_file(cache):
     both = [subprocess.Popen([sys.executable, "-c", code], stdout=subprocess.PIPE, text=True) for _ in range(2)]
     answers = {process.communicate(timeout=120)[0] for process in both}
     assert len(answers) == 1 and all(process.returncode == 0 for process in both)
-    assert [path.name for path in cache.iterdir()] == [templates.cached_path(templates.cache_key(Settings(), {})).name]
+    (path,) = cache.iterdir()
+    assert path.name.startswith("grids-")
+
+
+def test_old_grids_make_room(cache, monkeypatch):
+    monkeypatch.setattr(templates, "KEPT_ON_DISK", 3)
+    cache.mkdir()
+    for number in range(5):
+        (cache / f"grids-{number}.bin").write_bytes(b"")
+        os.utime(cache / f"grids-{number}.bin", (number, number))
+    templates.keep("new", templates.templates_for(Settings()))
+    assert {path.name for path in cache.iterdir()} >= {"grids-new.bin"} and len(list(cache.iterdir())) == 3

@@ -22,6 +22,7 @@ if TYPE_CHECKING:
     from tui.physics.templates import Templates
 
 KEPT_IN_MEMORY = 4
+KEPT_ON_DISK = 24
 _GRID_SETTINGS = ("photosphere", "law", "r_v", "source_floor", "floors")
 _memory: OrderedDict[str, Templates] = OrderedDict()
 _lock = threading.Lock()
@@ -173,4 +174,12 @@ def keep(key: str, templates: Templates) -> Templates:
             with contextlib.suppress(OSError):
                 os.unlink(scratch)
             raise
+        make_room(target.parent)
     return templates
+
+
+def make_room(folder: Path) -> None:
+    """Remove all but the newest grids."""
+    kept = sorted(folder.glob("grids-*.bin"), key=lambda path: path.stat().st_mtime, reverse=True)
+    for path in kept[KEPT_ON_DISK:]:
+        path.unlink(missing_ok=True)
