@@ -263,7 +263,8 @@ def take_cited(connection: sqlite3.Connection) -> int:
         "INSERT INTO evidence (candidate_id, kind, version, digest, adequate, content, is_current) "
         "SELECT ours.id, t.kind, t.version, t.digest, t.adequate, t.content, 0 "
         f"FROM other.evidence AS t {SAME_CANDIDATE} WHERE EXISTS (SELECT 1 FROM other.ruling AS r "
-        'WHERE r.candidate = theirs.name AND r."check" = t.kind AND r.evidence_digest = t.digest) AND NOT EXISTS (SELECT 1 FROM evidence AS mine '
+        'WHERE r.candidate = theirs.name AND r."check" = t.kind AND r.evidence_digest = t.digest) '
+        "AND NOT EXISTS (SELECT 1 FROM evidence AS mine "
         "WHERE mine.candidate_id = ours.id AND mine.kind = t.kind AND mine.digest = t.digest)"
     )
     return connection.execute(query).rowcount
