@@ -61,7 +61,14 @@ def test_own_count_is_preferred_and_scaled(tables):
 def test_unknown_counts_stay_unknown(tables):
     found = chance({}, tables, band="GALEX_NUV", excess=1e-5)
     assert np.isnan(found.p_star) and np.isnan(found.p_galaxy) and np.isnan(found.p)
-    assert chance_sentences(found, 1000) == ()
+    assert not any("stars searched" in text for text in chance_sentences(found, 1000))
+
+
+def test_a_faint_excess_in_a_large_beam(tables):
+    (text,) = chance_sentences(chance({}, tables), None)  # W3 9.0 of a depth of 11.2, beam 6.5 arcsec
+    assert "confusion is common" in text
+    assert chance_sentences(chance({}, tables, excess=100 * EXCESS), None) == ()
+    assert chance_sentences(None, 10) == ()
 
 
 def test_no_excess_no_chance(tables):

@@ -111,6 +111,12 @@ def test_each_independent_evidence_counts(run, made, cause):
     }
 
 
+def test_few_bands_left_are_told(run, made):
+    flags = {name: HALO for name in ("W1", "W2", "W3", "W4")} | {n: {"cc_flg": "c"} for n in ("H", "Ks")}
+    (evidence,) = run([made({"W4": 3.0}, flags)])
+    assert any("4 are left to fit" in text for text in evidence.cautions)
+
+
 def test_a_dip_is_no_fault_of_a_band(run, made):
     def dipping(evidence):
         return replace(evidence, adequate=False, facts={"dip_stands": True})

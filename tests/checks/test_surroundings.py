@@ -59,6 +59,12 @@ def test_one_piece(tables):
     assert canonical_json(around.facts)
 
 
+def test_a_source_in_the_beam_without_a_flux(tables):
+    star = Candidate("one", (Measurement("W4", 0.02, 0.001),), {"twomass_prox": 8.0})
+    around = surroundings(star, {"W4": 0.012}, {"W4": 9.0, "J": 0.1}, bands(), tables, Settings())
+    assert any("8.0 arcsec away, inside the beam of W4" in text for text in around.cautions)
+
+
 def test_an_empty_candidate(tables):
     around = surroundings(Candidate("one"), {}, {}, bands(), tables, Settings())
     assert around.cautions == () and "chance_alignment" not in around.facts

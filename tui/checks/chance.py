@@ -26,6 +26,8 @@ INFRARED_UM = 1.0
 # as many of them as sources of at least the excess within FWHM/sqrt(3 ln 2).
 RADIUS_PER_FWHM = 1.0 / math.sqrt(3.0 * math.log(2.0))
 NEAREST_BAND = 0.35  # |ln wavelength ratio| up to which a count in another band serves
+LARGE_BEAM_ARCSEC = 5.0  # wider than this counts as large, and
+FAINT_MAG = 3.0  # an excess within so much of the survey's depth as faint: our choices
 LIKELY = 0.01  # above it a caution is given; our choice
 
 
@@ -40,6 +42,8 @@ class Chance:
     p_galaxy: float
     star_source: str  # where the count comes from
     galaxy_source: str
+    beam_arcsec: float
+    is_faint: bool  # the excess is within 3 mag of the survey's depth
 
     @property
     def p(self) -> float:
@@ -87,7 +91,7 @@ def chance_of(
     galaxies, galaxy_source = galaxy_density(candidate, band, mag, anchors)
     return Chance(
         name, mag, radius, float(chance_alignment(radius, stars)), float(chance_alignment(radius, galaxies)),
-        star_source, galaxy_source,
+        star_source, galaxy_source, band.beam_fwhm_arcsec, mag > band.limit_mag - FAINT_MAG,
     )  # fmt: skip
 
 
@@ -150,14 +154,20 @@ def expected_in_survey(p: Sequence[float]) -> float:
 
 def chance_sentences(chance: Chance | None, n_searched: int | None) -> tuple[str, ...]:
     """Cautions: the beam is large and the excess faint, or the search is wide enough to meet such a source."""
-    if chance is None or not math.isfinite(chance.p):
+    if chance is None:
         return ()
     said = []
+    if chance.is_faint and chance.beam_arcsec > LARGE_BEAM_ARCSEC:
+        said.append(
+            f"{chance.band}: beam {chance.beam_arcsec:.1f} arcsec and a faint excess: confusion is common "
+            "(8 of 22 white dwarfs with an excess; Dennihy et al. 2020)."
+        )
+    if not math.isfinite(chance.p):
+        return tuple(said)
     if chance.p > LIKELY:
         said.append(
             f"{chance.band}: an unrelated source as bright as the excess ({chance.mag:.1f} mag) lies within "
-            f"{chance.radius_arcsec:.1f} arcsec of {100 * chance.p:.1g} % of stars; confusion is common in large beams "
-            "(8 of 22 in Dennihy et al. 2020)."
+            f"{chance.radius_arcsec:.1f} arcsec of {100 * chance.p:.1g} % of stars."
         )
     if n_searched and n_searched * chance.p >= 1.0:
         said.append(

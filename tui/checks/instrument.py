@@ -22,6 +22,7 @@ from tui.physics.removal import chi2_without
 
 KIND = "instrument"
 VERSION = 1  # raise it whenever the same candidate could get other numbers
+FEW = 2  # degrees of freedom without the suspects, up to which a caution is given
 
 Record = Callable[[FitBatch], list[Fit]]  # how fitted rows become fits
 
@@ -123,6 +124,7 @@ def one_evidence(
         *(() if star.adequate is not False else carrier_sentences(carrier, suspects, bands, star.bands, settings)),
         *sentences(doubt for doubt in quality.doubts if doubt.band in star.bands),
         *neighbour_sentences(list(quality.leaks)),
+        *few_left(without),
         *w4_sentence(red),
     )
     adequate = any_stands([star.adequate, False if beyond else answer]) if quality.is_loaded else None
@@ -141,6 +143,13 @@ def is_beyond_photometry(star: Evidence, settings: Settings) -> bool:
         return True
     found = star.best
     return star.adequate is False and found is not None and stands(found, len(found.pulls), settings) is True
+
+
+def few_left(without: Fit | None) -> tuple[str, ...]:
+    """A caution where hardly anything is tested once the suspects are out."""
+    if without is None or without.dof > FEW:
+        return ()
+    return (f"Without the suspect bands {len(without.pulls)} are left to fit: that tests little.",)
 
 
 def order(star: tuple[Fit, ...], without: Fit, alone: bool | None, answer: bool | None) -> tuple[Fit, ...]:

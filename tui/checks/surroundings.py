@@ -3,14 +3,15 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
-from tui.checks.chance import chance_of, chance_sentences
+from tui.checks.chance import LEAST_EXCESS_SIGMA, chance_of, chance_sentences
 from tui.checks.match import catalogue_matches, match_sentences, nearest_source, worst_match
 from tui.checks.multiplicity import multiplicity
-from tui.checks.neighbours import neighbour_leaks, neighbour_sentences
+from tui.checks.neighbours import Leak, neighbour_leaks, neighbour_sentences
+from tui.checks.remarks import joined
 from tui.checks.tables import Tables
 from tui.model import Band, Candidate, Settings
 
@@ -56,8 +57,25 @@ def surroundings(
         facts.update(chance.as_facts())
     said = (
         *neighbour_sentences(leaks),
+        *beam_sentences(nearest, pulls, bands, leaks),
         *chance_sentences(chance, settings.n_searched),
         *match_sentences(matches),
         *multiple_said,
     )
     return Surroundings(facts, said)
+
+
+def beam_sentences(
+    nearest_arcsec: float, pulls: Mapping[str, float], bands: Mapping[str, Band], leaks: Sequence[Leak]
+) -> tuple[str, ...]:
+    """A source inside the beam of bands that are too bright, whose flux there is not known."""
+    told = {leak.band for leak in leaks if leak.leak_jy > 0}
+    inside = [
+        name
+        for name, pull in pulls.items()
+        if pull >= LEAST_EXCESS_SIGMA and name in bands and name not in told
+        and bands[name].beam_fwhm_arcsec > nearest_arcsec
+    ]  # fmt: skip
+    if not inside:
+        return ()
+    return (f"Another source lies {nearest_arcsec:.1f} arcsec away, inside the beam of {joined(inside)}.",)
