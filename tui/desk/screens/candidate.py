@@ -132,10 +132,12 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
     def _foot(self, width: int, height: int) -> list[Row]:
         return draw_foot(self.walk, width, height, self.app.keys_of, self.session, self._draft_of is not None)
 
-    def _right(self) -> str:
+    def _right(self) -> tuple[str, ...]:
+        """Queue, reader and the last ruling recorded, at less and less length."""
         reviewer = self.session.reviewer
+        you = f"you: {reviewer.handle}" if reviewer else "reading"
         saved = f"  saved {self.app.saved}" if self.app.saved else ""
-        return f"{PurePath(self.session.path).name}  {'you: ' + reviewer.handle if reviewer else 'reading'}{saved}"
+        return f"{PurePath(self.session.path).name}  {you}{saved}", f"{you}{saved}", you
 
     # --- checks and pages ---
 

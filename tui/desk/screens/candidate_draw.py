@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from typing import TYPE_CHECKING
 
 from tui.desk.screens.candidate_keys import offered, writing
@@ -18,6 +18,7 @@ from tui.desk.widgets.numbers import (
     fits_table,
     number_rows,
     param_rows,
+    tenth,
 )
 from tui.desk.widgets.plot_points import point_words
 from tui.desk.widgets.rule_block import RuleFacts, advice_parts, advice_rows, key_rows, rule_row
@@ -28,15 +29,16 @@ if TYPE_CHECKING:
     from tui.workflow.session import Session
 
 READER_ONLY = "you read without a handle. To rule: plainlight join QUEUE HANDLE"
+WAITING = "computing the evidence: rulings open when the numbers are here"
 KEY_ROWS = 2
 
 
-def draw_head(walk: Walk, width: int, height: int, right: str) -> list[Row]:
+def draw_head(walk: Walk, width: int, height: int, right: Sequence[str]) -> list[Row]:
     """Name and standing, the five checks, the question."""
     view = walk.loaded.view if walk.loaded else None
     rows = [title_row(width, walk.name, oddness_words(walk.evidence.get("star")), view, right), check_row(width, view, walk.check)]
     asked = question(walk.check, walk.evidence, width - 2) if walk.evidence else "computing the evidence ..."
-    if walk.trouble:
+    if walk.trouble and not walk.evidence:
         asked = "There is no evidence for this candidate."
     lines = [[*row(" "), *line] for line in paragraph(asked, width - 2, "question")]
     if height >= 5:
@@ -119,7 +121,7 @@ def advice(walk: Walk) -> tuple[str, str, tuple[str, ...], str]:
 
 def advice_height(walk: Walk, width: int) -> int:
     """Rows that advice and caution take in full."""
-    return sum(len(part) for part in advice_parts(width, *advice(walk), roomy=False))
+    return sum(len(part) for part in advice_parts(width, *advice(walk), height=2))
 
 
 def rule_facts(walk: Walk, session: Session) -> RuleFacts:
@@ -127,7 +129,7 @@ def rule_facts(walk: Walk, session: Session) -> RuleFacts:
     view = walk.loaded.view if walk.loaded else None
     return RuleFacts(
         reader_only=READER_ONLY if session.reviewer is None else "",
-        waiting=walk.own_evidence is None,
+        waiting="no evidence, so nothing can be ruled" if walk.trouble else WAITING if walk.own_evidence is None else "",
         recording=walk.recording,
         chosen=walk.chosen,
         note=walk.note,
@@ -166,15 +168,18 @@ def facts_rows(walk: Walk, width: int) -> list[Row]:
 
 
 def _all_checks(walk: Walk, width: int) -> list[Row]:
-    """One line a check: its best fit, and what the reader ruled."""
-    rows = [row((f" {'best fit of each check':<26}{'chi2':>9}{'dof':>5}{'BIC':>9}", "head"), ("  you ruled" if width >= 64 else "", "head"))]
+    """One line a check: its best fit, and, with room, what the reader ruled."""
+    ruled_too = width >= 64
+    room = min(26, width - 24)
+    head = f" {fit('best fit of each check', room)}{'chi2':>9}{'dof':>5}{'BIC':>9}"
+    rows = [row((head, "head"), ("  you ruled" if ruled_too else "", "head"))]
     for check in CHECKS:
         found = walk.evidence.get(check)
         best = found.best if found else None
         own = walk.loaded.view.own.get(check)
-        label = fit(f"{CHECK_TITLES[check]}: {safe(best.model)}" if best else f"{CHECK_TITLES[check]}: no fit", 26)
-        text = f"{best.chi2:9.1f}{best.dof:5d}{best.bic:9.1f}" if best and abs(best.chi2) < 1e6 else f"{number(best.chi2) if best else '--':>9}"
+        label = fit(f"{CHECK_TITLES[check]}: {safe(best.model)}" if best else f"{CHECK_TITLES[check]}: no fit", room)
+        text = f"{tenth(best.chi2):>9}{best.dof:5d}{tenth(best.bic):>9}" if best else f"{'--':>9}"
         mark = ">" if check == walk.check else " "
-        ruled = (f"  {RULING_WORDS[own.ruling]}", own.ruling) if own and width >= 64 else ("", "")
+        ruled = (f"  {RULING_WORDS[own.ruling]}", own.ruling) if own and ruled_too else ("", "")
         rows.append(row((f"{mark}{label}{text}", "strong" if check == walk.check else "", f"check('{check}')"), ruled))
     return rows

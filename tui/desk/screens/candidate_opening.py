@@ -16,6 +16,8 @@ if TYPE_CHECKING:
     from tui.desk.screens.candidate import CandidateScreen
     from tui.workflow.session import Session
 
+NONE = "There is no evidence on this check: q leads back; plainlight assess QUEUE computes it."
+
 
 class OpensCandidates:
     """The part of the candidate's screen that fills a walk; a walk that was left takes nothing."""
@@ -47,6 +49,8 @@ class OpensCandidates:
             if not self.is_here(walk):
                 return
             walk.evidence = dict(evidence)
+            if not all(check in evidence for check in CHECKS):
+                walk.trouble = NONE
             walk.story = tuple(await self.reads.ask(lambda s: s.story(name)))
             await self.draw_curves(walk)
         except TuiError as error:

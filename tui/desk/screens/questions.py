@@ -78,11 +78,11 @@ def look_at(check: str, evidence: Mapping[str, Evidence], index: int = 0) -> tup
     if worst is None:
         return (hint,)
     near = f"{short_band(worst[0])} {signed(worst[1])} sigma"
-    return (f"No band is off by 3 sigma; the farthest is {near}. {hint}", f"Farthest off: {near}. {hint}", hint)
+    return (f"No band is off by 3 sigma; the farthest is {near}. {hint}", f"Farthest: {near}. {hint}", f"Farthest: {near}.")
 
 
 HINTS = {
-    "star": "Do the points scatter, or lean away together?",
+    "star": "Scatter, or a common lean?",
     "instrument": "v shows flags and epochs.",
     "extinction": "Does the blue side bend with it?",
     "blend": "A second source shows first in the bands beside it.",

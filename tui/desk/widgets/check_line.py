@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 from tui.desk.summary import reason_text
 from tui.desk.text import KEY_OF_CHECK, SHORT_CHECKS, fit, outcome_text, safe, state_text
 from tui.desk.widgets.rows import Row, Span, fit_row, row_width
@@ -11,19 +13,23 @@ from tui.workflow.records import CandidateView
 ROOMY = 100  # columns from which checks stand under their full names
 
 
-def title_row(width: int, name: str, odd: str, view: CandidateView | None, right: str) -> Row:
-    """Name, why it is odd and where it stands; at the right who looks. The name gives way last."""
+def title_row(width: int, name: str, odd: str, view: CandidateView | None, right: Sequence[str]) -> Row:
+    """Name, why it is odd and where it stands; at the right who looks.
+
+    Args:
+        right: the same said at less and less length; what leaves the name whole is taken. The name gives way last.
+    """
     shown = safe(name)
     middle = [Span(f"   {odd}", "quiet")] if odd else []
     if view is not None:
         middle += [Span("   "), Span(standing_words(view), outcome_style(view.outcome))]
-    tail = [Span(f" {right} ", "quiet")] if right else []
+    taken = 1 + row_width(middle) + row_width([Span(shown)])
+    tails = [[Span(f"  {text} ", "quiet")] for text in right if taken + len(text) + 3 <= width]
+    tail = tails[0] if tails else []
     room = width - 1 - row_width(middle) - row_width(tail)
-    if room < min(len(shown), 24) and tail:
-        tail, room = [], width - 1 - row_width(middle)
-    name_span = Span(fit(shown, min(room, max(1, row_width([Span(shown)]))), cut="middle"), "name")
+    name_span = Span(fit(shown, min(room, row_width([Span(shown)])), cut="middle"), "name")
     left: Row = [Span(" "), name_span, *middle]
-    return fit_row([*fit_row(left, width - row_width(tail)), *tail], width)
+    return [*fit_row(left, width - row_width(tail)), *tail]
 
 
 def standing_words(view: CandidateView) -> str:

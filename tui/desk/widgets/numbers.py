@@ -164,7 +164,7 @@ def value_and_error(param: Param, factor: float = 1.0, wide: bool = False) -> tu
         return number(value, 3), f" +-{number(min(spread), 2)}"
     text, more, less = (f"{size:.{decimals}f}" for size in (value, up, down))
     if not (math.isfinite(up) and math.isfinite(down)):
-        return text, f"{'+' + more if math.isfinite(up) else '+?'}{'-' + less if math.isfinite(down) else '-?'}"
+        return text, f" {'+' + more if math.isfinite(up) else '+?'} {'-' + less if math.isfinite(down) else '-?'}"
     if more == less or not wide and max(spread) < 1.25 * min(spread):
         return text, f" +-{max(more, less, key=float)}"
     return text, f" +{more} -{less}"
@@ -190,7 +190,7 @@ def fits_table(width: int, fits: Sequence[Fit], shown: int) -> list[Row]:
 
 
 def _statistics(fit: Fit) -> list[str]:
-    chi2, bic = decimal_aligned([_tenth(fit.chi2), _tenth(fit.bic)])
+    chi2, bic = decimal_aligned([tenth(fit.chi2), tenth(fit.bic)])
     return [chi2, f"{fit.dof}  ", _whole_e(number(fit.p, 1)) if fit.p != 0 else "<1e-300", bic]
 
 
@@ -199,7 +199,8 @@ def _whole_e(text: str) -> str:
     return text if "." in text else f"{text}  " if "e" not in text else text
 
 
-def _tenth(value: float) -> str:
+def tenth(value: float) -> str:
+    """A statistic to a tenth, or shorter where it is huge."""
     if not math.isfinite(value):
         return NOTHING
     return f"{value:.1f}" if abs(value) < 1e6 else number(value, 3)

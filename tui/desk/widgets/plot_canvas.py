@@ -82,6 +82,12 @@ class Canvas:
             self.codes[line, start : start + len(text)] = [_code(character) for character in text]
             self.text_styles[line, start : start + len(text)] = INDEX[style]
 
+    def wipe(self, line: int, column: int, size: int) -> None:
+        """Take away whatever is drawn in these cells."""
+        column = max(column, 0)
+        self.codes[line, column : column + size] = SPACE
+        self.dots[4 * line : 4 * line + 4, 2 * column : 2 * (column + size)] = 0
+
     def is_free(self, line: int, column: int, size: int) -> bool:
         """Whether no text stands at these cells, and all of them exist."""
         if not (0 <= line < self.height and 0 <= column and column + size <= self.width):

@@ -239,8 +239,10 @@ def _draw_message(canvas: Canvas, frame: Frame, plot: PlotData) -> None:
     if not plot.message:
         return
     room = frame.right - frame.left - 2
-    for number, text in enumerate(wrap(safe(plot.message), room)[:3]):
-        canvas.put(frame.top + number, frame.left + 2 + max(0, (room - cell_len(text)) // 2), text, "label")
+    for line, text in enumerate(wrap(safe(plot.message), room)[:3], start=frame.top):
+        column = frame.left + 2 + max(0, (room - cell_len(text)) // 2)
+        canvas.wipe(line, column - 1, cell_len(text) + 2)
+        canvas.put(line, column, text, "label")
 
 
 def _draw_letters(canvas: Canvas, frame: Frame, lines: list[Line]) -> None:

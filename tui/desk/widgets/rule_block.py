@@ -17,7 +17,7 @@ class RuleFacts:
     """What the ruling line says."""
 
     reader_only: str = ""  # how to join, for who has no handle
-    waiting: bool = False  # no evidence yet
+    waiting: str = ""  # why nothing can be ruled yet
     recording: bool = False
     chosen: str = ""
     note: str = ""
@@ -30,9 +30,9 @@ def advice_rows(width: int, height: int, message: str, point: str, look: Sequenc
     """What to look at (or what was just said, or the point under the cursor), then the caution, in `height` rows.
 
     Args:
-        look: the same advice at less and less length; the first that takes one row is taken where room is short.
+        look: the same advice at less and less length; the first that fits is taken.
     """
-    first, second = advice_parts(width, message, point, look, caution, roomy=height > 4)
+    first, second = advice_parts(width, message, point, look, caution, height)
     for_first = max(1, height - len(second)) if second else height
     first = _cut(first, for_first, width)
     second = _cut(second, height - len(first), width)
@@ -40,18 +40,19 @@ def advice_rows(width: int, height: int, message: str, point: str, look: Sequenc
 
 
 def advice_parts(
-    width: int, message: str, point: str, look: Sequence[str], caution: str, *, roomy: bool
+    width: int, message: str, point: str, look: Sequence[str], caution: str, height: int
 ) -> tuple[list[Row], list[Row]]:
-    """Advice and caution in full, each in as many rows as it takes."""
+    """Advice and caution in full, each in as many rows as it takes; of `look` what leaves room in `height` rows."""
+    second = _labelled(width, "CAUTION", caution, "caution") if caution else []
     if message:
         first = _labelled(width, "", message, "message")
     elif point:
         first = _labelled(width, "POINT", point, "")
     else:
         options = [_labelled(width, "LOOK AT", text, "") for text in look if text]
-        short = [rows for rows in options if len(rows) == 1]
-        first = (options if roomy or not short else short)[0] if options else [[]]
-    return first, _labelled(width, "CAUTION", caution, "caution") if caution else []
+        short = [rows for rows in options if len(rows) <= max(1, height - len(second))]
+        first = [*short, *options[-1:], [[]]][0]
+    return first, second
 
 
 def rule_row(width: int, facts: RuleFacts) -> Row:
@@ -107,7 +108,7 @@ def _rule_words(facts: RuleFacts) -> Row:
     if facts.recording:
         return row((f"recording {RULING_WORDS.get(facts.chosen, facts.chosen)} ...", "message"))
     if facts.waiting:
-        return row(("computing the evidence: rulings open when the numbers are here", "quiet"))
+        return row((facts.waiting, "quiet"))
     if facts.chosen:
         word = "take back" if facts.chosen == "withdrawn" else RULING_WORDS[facts.chosen]
         return row((f"> {word} <", "chosen"), "   ", ("Enter", "key", "record()"), (" records it", "", "record()"))
