@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from tui.checks.dips import GREY, LAW, POWER, all_of, assess, with_dips
+from tui.checks.dips import GREY, LAW, POWER, all_of, assess, model_depths, with_dips
 from tui.data.load import bands
 from tui.model import Candidate, Dip, Evidence, Settings, canonical_json
 from tui.physics.dips import screen_depth
@@ -107,6 +107,17 @@ def test_faulty_rows_are_left_out_and_told():
     dips = (Dip("a", "nowhere", 0.1, 0.01), Dip("a", "J", 0.1, 0.0), Dip("a", "J", float("nan"), 0.1))
     (found,) = assess([Candidate("one", dips=dips)], BANDS, Settings())
     assert found.fits == () and "a nowhere" in found.cautions[0]
+
+
+def test_curves_pass_through_the_fitted_depths():
+    found = evidence(ISM_DEPTH)
+    for fit in found.fits:
+        drawn = model_depths(fit, WAVE, "g23")
+        fitted = ISM_DEPTH - np.array([fit.pulls[name] for name in NAMES]) * 0.001
+        if fit.model != GREY:  # whose errors hold the floor for limb darkening
+            assert drawn == pytest.approx(fitted, abs=2e-4)
+        else:
+            assert np.ptp(drawn) == 0.0
 
 
 def test_three_valued_and():

@@ -116,4 +116,4 @@ def test_no_gaia_columns_no_facts(tables):
 
 def test_sentences_gather_bands():
     halo = [Doubt(band, "flag", "halo", "suspicion") for band in ("W1", "W2")]
-    assert sentences([*halo, Doubt("W3", "flag", "fine")]) == ("W1, W2: halo",)
+    assert sentences([*halo, Doubt("W3", "flag", "fine")]) == ("W1, W2: halo.",)

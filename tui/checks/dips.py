@@ -12,7 +12,16 @@ import numpy as np
 from tui.checks.record import any_stands
 from tui.checks.remarks import in_order
 from tui.model import Band, Candidate, Dip, Evidence, Fit, FloatArray, Param, Settings
-from tui.physics.dips import ALPHAS, Shape, coloured_fit, grey_fit, law_curves, power_curves
+from tui.physics.dips import (
+    ALPHAS,
+    REFERENCE_UM,
+    Shape,
+    coloured_fit,
+    grey_fit,
+    law_curves,
+    power_curves,
+    screen_depth,
+)
 from tui.physics.extinction import R_V_RANGE, extinction_curve
 from tui.physics.statistics import adequate, aic, bic, chi2_tail
 
@@ -133,6 +142,20 @@ def shape_params(model: str, shape: Shape) -> dict[str, Param]:
         return {"depth": size}
     form = Param(shape.shape, shape.shape_low, shape.shape_high, "", shape.is_limit)
     return {"av": size, "r_v": form} if model == LAW else {"a_055": size, "alpha": form}
+
+
+def model_depths(found: Fit, wave_um: FloatArray, law: str) -> FloatArray:
+    """Depth (N,) that a fitted model gives at wavelengths (N,), micron: the curve to draw through the depths.
+
+    Args:
+        law: extinction law of the settings the fit was made with.
+    """
+    wave, params = np.asarray(wave_um, dtype=float), found.params
+    if "depth" in params:
+        return np.full(wave.shape, params["depth"].value)
+    if "r_v" in params:
+        return screen_depth(params["av"].value * extinction_curve(wave, law, params["r_v"].value))
+    return screen_depth(params["a_055"].value * (wave / REFERENCE_UM) ** -params["alpha"].value)
 
 
 def event_answers(event: Event, fits: Mapping[str, Fit], settings: Settings) -> dict[str, bool | None]:

@@ -35,11 +35,11 @@ def suspect_bands(doubts: Iterable[Doubt]) -> frozenset[str]:
 
 
 def sentences(doubts: Iterable[Doubt]) -> tuple[str, ...]:
-    """One sentence for each different suspicion, its bands gathered: "W1, W2: text"."""
+    """One sentence for each different suspicion, its bands gathered: "W1, W2: text.""""
     bands_of: dict[str, list[str]] = {}
     for doubt in doubts:
         if doubt.is_suspicion:
             bands = bands_of.setdefault(doubt.text, [])
             if doubt.band not in bands:
                 bands.append(doubt.band)
-    return tuple(f"{', '.join(bands)}: {text}" for text, bands in bands_of.items())
+    return tuple(f"{', '.join(bands)}: {text}." for text, bands in bands_of.items())

@@ -79,7 +79,7 @@ def transit_scatter(n_obs: FloatArray, flux_over_error: FloatArray) -> FloatArra
     """Scatter of single observations as a fraction of the flux: sqrt(n_obs) sigma_F/F.
 
     Gaia's error of the mean flux is the weighted scatter of its observations over sqrt(n_obs)
-    (Riello et al. 2021, section 5), so that a star which varies shows it here.
+    (Carrasco et al. 2016, A&A 595, A7), so that a star which varies shows it here.
     """
     count, ratio = np.broadcast_arrays(np.asarray(n_obs, dtype=float), np.asarray(flux_over_error, dtype=float))
     scatter = np.full(count.shape, np.nan)
