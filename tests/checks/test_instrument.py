@@ -26,7 +26,7 @@ def run(templates, tables):
         nothing, most = np.full(len(candidates), np.nan), np.full(len(candidates), 5.0)
         batch = fit(build_problem(candidates, templates, parallaxes=(nothing, nothing), av_max=most), STAR)
         evidence = [change(one) for one in star.assess(candidates, batch, SETTINGS)]
-        return assess(candidates, batch, evidence, lambda found: fits_of(found, SETTINGS), tables, SETTINGS)
+        return assess(candidates, batch, evidence, fits_of, tables, SETTINGS)
 
     return run
 

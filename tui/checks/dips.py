@@ -10,7 +10,6 @@ from typing import Any
 import numpy as np
 
 from tui.checks.record import any_stands
-from tui.checks.remarks import in_order
 from tui.model import Band, Candidate, Dip, Evidence, Fit, FloatArray, Param, Settings
 from tui.physics.dips import (
     ALPHAS,
@@ -68,7 +67,7 @@ def one_evidence(candidate: Candidate, bands: Mapping[str, Band], settings: Sett
     answers = {event.name: event_answers(event, fits[event.name], settings) for event in events}
     facts = dip_facts(events, fits, answers)
     said = tuple(text for event in events for text in event_sentences(event, fits[event.name], answers[event.name]))
-    ordered = tuple(fit for event in events for fit in in_order(list(fits[event.name].values())))
+    ordered = tuple(fit for event in events for fit in sorted(fits[event.name].values(), key=lambda one: one.bic))
     judged = [any_stands(answers[event.name]) for event in events if event.stands]
     used = sorted({band for event in events for band in event.bands}, key=lambda band: band.pivot_um)
     return Evidence(

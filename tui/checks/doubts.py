@@ -35,7 +35,7 @@ def suspect_bands(doubts: Iterable[Doubt]) -> frozenset[str]:
 
 
 def sentences(doubts: Iterable[Doubt]) -> tuple[str, ...]:
-    """One sentence for each different suspicion, its bands gathered: "W1, W2: text.""""
+    """One sentence for each different suspicion, its bands gathered, as in `W1, W2: text.`"""
     bands_of: dict[str, list[str]] = {}
     for doubt in doubts:
         if doubt.is_suspicion:
