@@ -111,7 +111,10 @@ def test_a_full_disk_under_standard_output_is_said():
 
 
 def test_help_starts_without_the_heavy_libraries():
-    code = "import sys; from tui.cli.group import cli\ntry: cli.main(['--help'])\nexcept SystemExit: pass\nprint(sorted(sys.modules))"
+    code = (
+        "import sys; from tui.cli.group import cli\ntry: cli.main(['--help'])\n"
+        "except SystemExit: pass\nprint(sorted(sys.modules))"
+    )
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, timeout=60)
     loaded = done.stdout.splitlines()[-1]
     for name in ("scipy", "astropy", "textual", "sqlite_utils", "pandas", "dust_extinction", "rich"):

@@ -11,10 +11,12 @@ from tui.cli.group import cli
 from tui.model import CHECKS
 
 # A Planck star of 5772 K with theta = 0.1 mas, in mJy at the bands' pivots, and ten times that in W3 and W4.
-TABLE = """name,ra,dec,parallax,parallax_error,J_flux,J_err,H_flux,H_err,Ks_flux,Ks_err,W1_flux,W1_err,W2_flux,W2_err,W3_flux,W3_err,W4_flux,W4_err
+BANDS = ("J", "H", "Ks", "W1", "W2", "W3", "W4")
+TABLE = f"""name,ra,dec,parallax,parallax_error,{",".join(f"{band}_flux,{band}_err" for band in BANDS)}
 PLAIN,10,-5,10,0.02,1360,27,1130,22,770,15,391,8,223,4.4,38,0.8,11.4,0.3
 DUSTY,11,-5,10,0.02,1360,27,1130,22,770,15,391,8,223,4.4,150,3,260,5
 """
+CHECK_KEYS = ["state", "version", "digest", "stale", "adequate", "cautions", "fits", "facts"]
 FIT_KEYS = ["model", "chi2", "dof", "p", "aic", "bic", "params", "pulls"]
 
 
@@ -24,7 +26,7 @@ def queue(tmp_path_factory):
     patch = pytest.MonkeyPatch()
     patch.setenv("PLAINLIGHT_CONFIG", str(folder / "none.toml"))
     patch.setenv("PLAINLIGHT_CACHE", str(folder / "cache"))
-    units = '[units]\n' + "".join(f'{band}_flux = "mJy"\n{band}_err = "mJy"\n' for band in ("J", "H", "Ks", "W1", "W2", "W3", "W4"))
+    units = "[units]\n" + "".join(f'{band}_flux = "mJy"\n{band}_err = "mJy"\n' for band in BANDS)
     (folder / "map.toml").write_text(units)
     (folder / "survey.csv").write_text(TABLE)
     path = str(folder / "q.db")
@@ -53,11 +55,11 @@ def test_show_json_has_the_documented_keys(queue):
     found = shown(queue, "DUSTY")
     assert list(found) == ["name", "outcome", "oddness", "measurements", "checks", "mixture", "dips"]
     assert list(found["checks"]) == list(CHECKS)
-    assert list(found["checks"]["dust"]) == ["state", "version", "digest", "stale", "adequate", "cautions", "fits", "facts"]
+    assert list(found["checks"]["dust"]) == CHECK_KEYS
     best = found["checks"]["dust"]["fits"][0]
     assert list(best) == FIT_KEYS
     assert list(next(iter(best["params"].values()))) == ["value", "low", "high", "unit", "limit"]
-    assert [one["band"] for one in found["measurements"]] == ["J", "H", "Ks", "W1", "W2", "W3", "W4"]
+    assert [one["band"] for one in found["measurements"]] == list(BANDS)
 
 
 def test_fits_come_best_first(queue):

@@ -22,12 +22,14 @@ BANDS = ("Gaia_G", "J", "H", "Ks", "W1", "W2", "W3")
 def candidate(name, scale=1.0):
     """A 5772 K black body, roughly, with an excess in W3."""
     fluxes = (0.030, 0.045, 0.040, 0.028, 0.014, 0.0077, 0.0060)
-    measured = [Measurement(band, scale * flux, 0.02 * scale * flux, source="test") for band, flux in zip(BANDS, fluxes, strict=True)]
-    return Candidate(name, tuple(measured), {"ra": 10.0, "dec": -5.5})
+    scaled = {band: scale * flux for band, flux in zip(BANDS, fluxes, strict=True)}
+    measured = tuple(Measurement(band, flux, 0.02 * flux, source="test") for band, flux in scaled.items())
+    return Candidate(name, measured, {"ra": 10.0, "dec": -5.5})
 
 
 def fit(model, p, **params):
-    return Fit(model, 20.0, 5, p, 24.0, 25.0, {k: Param(v, 0.9 * v, 1.1 * v, "K") for k, v in params.items()}, {"W3": 8.0})
+    fitted = {name: Param(value, 0.9 * value, 1.1 * value, "K") for name, value in params.items()}
+    return Fit(model, 20.0, 5, p, 24.0, 25.0, fitted, {"W3": 8.0})
 
 
 def hand_made(name, kind, version=1):

@@ -73,7 +73,8 @@ def test_a_setting_of_physics_outdates_and_one_of_consensus_does_not(queue, call
 def test_a_new_measurement_outdates_one_candidate(queue, calls):
     assessing.assess_queue(queue, jobs=1)
     with closing(open_queue(queue)) as connection:
-        save_candidates(connection, [LoadRecord(Candidate("SM-0002", facts={"ruwe": 2.0}), "gaia")], "2026-02-01T00:00:00.000000Z")
+        record = LoadRecord(Candidate("SM-0002", facts={"ruwe": 2.0}), "gaia")
+        save_candidates(connection, [record], "2026-02-01T00:00:00.000000Z")
     assessing.assess_queue(queue, jobs=1)
     assert calls[1] == (("SM-0002",), KINDS)
 
@@ -101,7 +102,8 @@ def test_a_reader_computes_and_stores_nothing(queue, calls):
 
 
 def test_every_kind_says_which_settings_it_rests_on():
-    assert set(RELEVANT) == set(KINDS) and all(hasattr(Settings(), name) for names in RELEVANT.values() for name in names)
+    assert set(RELEVANT) == set(KINDS)
+    assert all(hasattr(Settings(), name) for names in RELEVANT.values() for name in names)
 
 
 def test_the_digest_covers_kind_version_input_settings_and_templates():
@@ -109,5 +111,6 @@ def test_the_digest_covers_kind_version_input_settings_and_templates():
         return recipes((kind,), {kind: version}, settings, templates)[kind].digest_of(candidate)
 
     first = made()
-    others = [made("star"), made(version=2), made(settings=replace(Settings(), p_min=0.5)), made(templates="u"), made(candidate="d")]
+    changed = replace(Settings(), p_min=0.5)
+    others = [made("star"), made(version=2), made(settings=changed), made(templates="u"), made(candidate="d")]
     assert first == made() and len({first, *others}) == 6 and set(CHECKS) <= set(RELEVANT)

@@ -26,7 +26,13 @@ def test_handle_theme_and_keys_are_read(config):
 
 @pytest.mark.parametrize(
     ("text", "words"),
-    [("handle = 3", "quotes"), ("hande = 'x'", "hande"), ("[keys]\na = 1", "keys"), ("= broken", "cannot be read"), ("\xff", "cannot be read")],
+    [
+        ("handle = 3", "quotes"),
+        ("hande = 'x'", "hande"),
+        ("[keys]\na = 1", "keys"),
+        ("= broken", "cannot be read"),
+        ("\xff", "cannot be read"),
+    ],
 )
 def test_a_wrong_file_is_said_by_name(config, text, words):
     config.write_bytes(text.encode("latin-1"))

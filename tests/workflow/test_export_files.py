@@ -16,10 +16,12 @@ from astropy.table import Table
 from tui.errors import InputError, TableError
 from tui.model import Evidence, Fit, Param
 from tui.workflow import export_files
-from tui.workflow.export_columns import INT_NULL, Cells, VettedRow, columns
+from tui.workflow.export_columns import columns
+from tui.workflow.export_row import INT_NULL, Cells, VettedRow
 from tui.workflow.export_files import write_list
 
-HOSTILE = ["=cmd|' /C calc'!A0", "+1", "-2", "@SUM(1)", "\tx", "plain", " =lead", "[/]", "SM ünï 星", "'quoted", 'a "b", c', "007"]
+FORMULAS = ["=cmd|' /C calc'!A0", "+1", "-2", "@SUM(1)", "\tx"]
+HOSTILE = [*FORMULAS, "plain", " =lead", "[/]", "SM ünï 星", "'quoted", 'a "b", c', "007"]
 
 
 def fit(model, **params):
@@ -29,7 +31,8 @@ def fit(model, **params):
 def vetted(name, evidence=None):
     states = dict.fromkeys(("star", "instrument", "extinction", "blend", "dust"), "open")
     counts = {"dust": {"explains": 1, "short": 2, "unclear": 0}}
-    return VettedRow(name, {"ra": 10.123456789012345, "dec": -0.1}, "pending", "open:star", states, counts, {"dust": 1}, {}, evidence or {})
+    facts = {"ra": 10.123456789012345, "dec": -0.1}
+    return VettedRow(name, facts, "pending", "open:star", states, counts, {"dust": 1}, {}, evidence or {})
 
 
 def cells_of(rows):
@@ -41,7 +44,8 @@ def cells_of(rows):
 
 @pytest.fixture
 def cells():
-    star = Evidence("star", 1, False, (fit("star", teff=(5772.0, 5700.1, 5850.3, "K")),), cautions=("one",), bands=("G", "J"))
+    best = fit("star", teff=(5772.0, 5700.1, 5850.3, "K"))
+    star = Evidence("star", 1, False, (best,), cautions=("one",), bands=("G", "J"))
     rows = [vetted(name) for name in HOSTILE[:-1]] + [vetted(HOSTILE[-1], {"star": star})]
     return cells_of(rows)
 
@@ -112,7 +116,7 @@ def test_csv_makes_formula_cells_inert_says_so_and_keeps_the_rest(tmp_path, cell
     assert any("spreadsheet" in line for line in head)
     body = text[text.index("\nname,ra,") + 1 :]
     rows = list(csv.DictReader(body.splitlines(keepends=True)))
-    assert [row["name"] for row in rows] == ["'" + name if i < 5 else name for i, name in enumerate(HOSTILE)]
+    assert [row["name"] for row in rows] == ["'" + name if i < len(FORMULAS) else name for i, name in enumerate(HOSTILE)]
     assert float(rows[0]["dec"]) == -0.1 and rows[0]["dec"] == "-0.1"
     assert rows[0]["star_teff"] == "" and float(rows[-1]["star_teff_high"]) == 5850.3
     assert not any(line.startswith(("=", "+", "-", "@")) for line in text.splitlines())

@@ -41,8 +41,9 @@ def test_every_candidate_is_a_row_with_outcome_states_and_counts(ruled, tmp_path
     table = exported(ruled, tmp_path)
     rows = {row["name"]: row for row in table}
     assert list(table["name"]) == ["SM-0001", "SM-0002", "SM-0003", "SM-0004"]
-    assert [rows[name]["outcome"] for name in ("SM-0001", "SM-0002", "SM-0003")] == ["unexplained", "explained", "pending"]
-    assert (rows["SM-0001"]["dust_state"], rows["SM-0001"]["dust_short"], rows["SM-0002"]["dust_explains"]) == ("short", 2, 2)
+    assert table["outcome"].tolist()[:3] == ["unexplained", "explained", "pending"]
+    assert (rows["SM-0001"]["dust_state"], rows["SM-0001"]["dust_short"]) == ("short", 2)
+    assert (rows["SM-0002"]["dust_state"], rows["SM-0002"]["dust_explains"]) == ("explains", 2)
     assert rows["SM-0003"]["pending_reason"].startswith("open:star")
 
 

@@ -53,14 +53,16 @@ def test_a_cache_that_cannot_be_written_costs_only_time(tmp_path, monkeypatch):
 
 
 @pytest.mark.parametrize(
-    "change", [{"law": "f99"}, {"photosphere": "planck"}, {"r_v": "free"}, {"source_floor": 0.1}, {"floors": {"J": 0.2}}]
+    "change",
+    [{"law": "f99"}, {"photosphere": "planck"}, {"r_v": "free"}, {"source_floor": 0.1}, {"floors": {"J": 0.2}}],
 )
 def test_whatever_grids_depend_on_changes_their_digest(change):
     assert templates.templates_digest(Settings()) != templates.templates_digest(replace(Settings(), **change))
 
 
 def test_what_grids_do_not_depend_on_leaves_their_digest():
-    assert templates.templates_digest(Settings()) == templates.templates_digest(replace(Settings(), quorum=3, p_min=0.1))
+    others = replace(Settings(), quorum=3, p_min=0.1)
+    assert templates.templates_digest(Settings()) == templates.templates_digest(others)
 
 
 def test_a_senseless_r_v_is_refused():
@@ -69,7 +71,10 @@ def test_a_senseless_r_v_is_refused():
 
 
 def test_two_processes_at_once_leave_one_good_file(cache):
-    code = "from tui.workflow.templates import *; from tui.model import Settings; print(templates_for(Settings()).digest)"
+    code = (
+        "from tui.workflow.templates import templates_for; from tui.model import Settings; "
+        "print(templates_for(Settings()).digest)"
+    )
     both = [subprocess.Popen([sys.executable, "-c", code], stdout=subprocess.PIPE, text=True) for _ in range(2)]
     answers = {process.communicate(timeout=120)[0] for process in both}
     assert len(answers) == 1 and all(process.returncode == 0 for process in both)

@@ -17,7 +17,7 @@ unresolved_option = click.option(
 )
 outcome_option = click.option("--outcome", type=click.Choice((*OUTCOMES, "sealed")), help="Only this outcome.")
 controls_option = click.option(
-    "--controls", type=click.Path(), metavar="TRUTH", help="Table of controls (name, nature); it never enters the queue."
+    "--controls", type=click.Path(), metavar="TRUTH", help="Table of controls: name, nature."
 )
 
 

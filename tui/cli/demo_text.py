@@ -22,7 +22,7 @@ def print_summary(path: Path) -> None:
 
     with Session.open(str(path), VISITOR, write=False) as session:
         counts = session.counts()
-        line(f"Saltmarsh, an invented survey: {counts['all']} candidates, {counts['needs_me']} of them need a new reviewer.")
+        line(f"Saltmarsh, an invented survey: {counts['all']} candidates, {counts['needs_me']} need a new reviewer.")
         team = ", ".join(one.handle for one in session.reviewers() if one.handle != VISITOR)
         line(f"Reviewers so far: {team}. What they ruled stays sealed until you have ruled yourself.")
         heading(f"The {SHOWN} oddest, as a new reviewer sees them")

@@ -97,7 +97,9 @@ def print_fits(fits: Sequence[Fit]) -> None:
         (fit.model, figure(fit.chi2), str(fit.dof), p_words(fit.p), figure(fit.bic), largest_pull(fit)) for fit in fits
     ]
     table(("model", "chi2", "dof", "p", "BIC", "largest pull"), rows, numbers=(1, 2, 3, 4))
-    fitted = [(fit.model, name.replace("_", " "), *param_cells(one)) for fit in fits for name, one in fit.params.items()]
+    fitted = [
+        (fit.model, name.replace("_", " "), *param_cells(param)) for fit in fits for name, param in fit.params.items()
+    ]
     if fitted:
         table(("model", "fitted", "value", "low", "high", "unit"), fitted, numbers=(2, 3, 4))
 

@@ -178,14 +178,13 @@ def fault(error: Exception) -> int:
 
 def kept_traceback(error: Exception) -> str:
     """Write the traceback to the user's log folder; says where, or that it could not."""
-    import platformdirs
-
     try:
-        folder = platformdirs.user_log_path("plainlight", ensure_exists=True)
-        path = folder / "fault.txt"
+        import platformdirs
+
+        path = platformdirs.user_log_path("plainlight", ensure_exists=True) / "fault.txt"
         path.write_text("".join(traceback.format_exception(error)), encoding="utf-8", errors="replace")
-    except OSError as refused:
-        return f"Its details could not be kept ({refused.strerror})."
+    except (OSError, ImportError) as refused:
+        return f"Its details could not be kept ({refused})."
     return f"Please send {path} to whoever maintains it."
 
 

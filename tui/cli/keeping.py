@@ -30,7 +30,7 @@ def set_command(queue: str, name: str | None, value: str | None, handle: str | N
 @click.command("gather")
 @queue_argument
 @click.argument("others", nargs=-1, required=True, type=click.Path(), metavar="OTHER...")
-@click.option("--rename", multiple=True, callback=pairs, metavar="OLD=NEW", help="Give a reviewer of OTHER another handle.")
+@click.option("--rename", multiple=True, callback=pairs, metavar="OLD=NEW", help="Another handle for theirs.")
 def gather_command(queue: str, others: tuple[str, ...], rename: dict[str, str]) -> int:
     """Take in what colleagues ruled in their own copies; order and repetition do not matter."""
     from tui.cli.printing import line
@@ -43,7 +43,7 @@ def gather_command(queue: str, others: tuple[str, ...], rename: dict[str, str]) 
 
 @click.command("audit")
 @queue_argument
-@click.option("--receipt", "receipts", multiple=True, metavar="TEXT", help="Check a receipt, or a file of them; repeat for more.")
+@click.option("--receipt", "receipts", multiple=True, metavar="TEXT", help="Check a receipt, or a file of them.")
 @click.option("--repair", is_flag=True, help="Rebuild the derived tables from the log.")
 @click.option("--backup", type=click.Path(), metavar="FILE", help="Write a one-file copy while others work.")
 def audit_command(queue: str, receipts: tuple[str, ...], repair: bool, backup: str | None) -> int:

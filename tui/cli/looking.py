@@ -38,7 +38,7 @@ LIST_HEADINGS = ("name", "oddness", "odd_band", "odd_pull", *CHECKS, "outcome", 
 @outcome_option
 @click.option("--sort", type=click.Choice(SORTS), default="oddness", show_default=True, help="Order of the rows.")
 @click.option("--next", "only_next", is_flag=True, help="Only the name of the candidate that needs you next.")
-@click.option("--share", callback=share_of, metavar="I/N", help="Only the I-th of N equal shares, for copies worked on apart.")
+@click.option("--share", callback=share_of, metavar="I/N", help="Only the I-th of N shares, for copies kept apart.")
 def list_command(queue, handle, unresolved, outcome, sort, only_next, share) -> int:
     """The queue as text: tab-separated when it goes to a file or a program.
 

@@ -12,8 +12,8 @@ from tui.errors import InputError
 from tui.model import RULINGS
 
 NO_DESK = (
-    "The desk needs a terminal that can place text (TERM=dumb or a pipe cannot). Everything in it can be done by commands: "
-    "plainlight list QUEUE --next, show QUEUE NAME, rule QUEUE NAME CHECK RULING, story, tally, export."
+    "The desk needs a terminal that can place text (TERM=dumb or a pipe cannot). Everything in it can be done by "
+    "commands: plainlight list QUEUE --next, show QUEUE NAME, rule QUEUE NAME CHECK RULING, story, tally, export."
 )
 
 
@@ -54,8 +54,9 @@ def review_command(queue: str, handle: str | None, thin: bool) -> int:
 
     with Session.open(queue, handle) as session:
         status = open_desk(session, thin=thin, theme=config.theme, keys=config.keys)
-        line(f"Your receipt: {session.receipt()}")
-        line(f"Keep it; plainlight audit {queue} --receipt RECEIPT shows later that nothing of yours was lost.")
+        if session.has_ruled():
+            line(f"Your receipt: {session.receipt()}")
+            line(f"Keep it; plainlight audit {queue} --receipt RECEIPT shows later that nothing of yours was lost.")
     return status
 
 

@@ -31,7 +31,9 @@ def print_progress(found: Tally) -> None:
     """Is it done?"""
     from tui.workflow.tally_record import STATES_SHOWN
 
-    heading(f"1 Is it done?  {found.settled.text} of {found.candidates}, {found.under_way.text}, {found.untouched.text}")
+    heading(
+        f"1 Is it done?  {found.settled.text} of {found.candidates}, {found.under_way.text}, {found.untouched.text}"
+    )
     rows = [(CHECK_TITLES[check], *(found.progress[check][state].count for state in STATES_SHOWN)) for check in CHECKS]
     table(("check", *STATE_HEADINGS), rows, numbers=range(1, len(STATE_HEADINGS) + 1))
     for held in found.holds:

@@ -59,7 +59,11 @@ def packaged_tables() -> Tables:
     from tui.data import load_flags as rows
 
     return build_tables(
-        rows.flag_rows(), rows.gaia_excess_rows(), rows.gaia_scatter_rows(), rows.galaxy_count_rows(), rows.natural_class_rows()
+        rows.flag_rows(),
+        rows.gaia_excess_rows(),
+        rows.gaia_scatter_rows(),
+        rows.galaxy_count_rows(),
+        rows.natural_class_rows(),
     )
 
 
@@ -84,7 +88,7 @@ def keep_bands(connection: sqlite3.Connection, bands: Mapping[str, Band]) -> Non
     for name, band in bands.items():
         content = band_text(band)
         if held.get(name, content) != content:
-            raise StoreError(f"The queue has another band under the name {name}; give yours another name in the column map.")
+            raise StoreError(f"The queue has another band named {name}; give yours another name in the column map.")
         attach(connection, BAND_KIND, name, content)
 
 

@@ -2,102 +2,14 @@
 
 from __future__ import annotations
 
-import math
-import sys
-from array import array
-from collections.abc import Callable, Iterator, Mapping, Sequence
-from dataclasses import dataclass, field, replace
+from collections.abc import Callable
+from dataclasses import replace
 from typing import Any
 
-import numpy as np
-from numpy.typing import NDArray
-
-from tui.model import CHECK_TITLES, CHECKS, KINDS, SURE, Evidence, Fit, Param
+from tui.model import CHECK_TITLES, CHECKS, KINDS, SURE, Param
+from tui.workflow.export_row import ExportColumn, VettedRow, as_type, finite
 
 FITTED_ENDS = ("low", "high")
-SHORT = 40  # characters up to which a text is likely to occur again
-
-
-@dataclass(frozen=True, slots=True)
-class VettedRow:
-    """All that one row of the list is made of."""
-
-    name: str
-    facts: Mapping[str, Any]
-    outcome: str
-    pending_reason: str
-    states: Mapping[str, str]
-    counts: Mapping[str, Mapping[str, int]]  # check -> ruling -> how many current ones
-    revised: Mapping[str, int]
-    stale: Mapping[str, int]
-    evidence: Mapping[str, Evidence]
-    oddness: Mapping[str, Any] = field(default_factory=dict)  # sigma, band, pull
-    photosphere: str = ""
-    law: str = ""
-    held_r_v: float | None = None  # of the settings, where R_V is not free
-
-    def best(self, kind: str) -> Fit | None:
-        """The best fit of one kind of evidence, or None."""
-        found = self.evidence.get(kind)
-        return found.best if found else None
-
-    def fact(self, kind: str, name: str) -> Any:
-        """A fact of one kind of evidence, or None."""
-        found = self.evidence.get(kind)
-        return found.facts.get(name) if found else None
-
-
-@dataclass(frozen=True, slots=True)
-class ExportColumn:
-    """One column: `take` returns its value for a row, None where it is to be masked."""
-
-    name: str
-    kind: type  # str, int or float
-    description: str
-    take: Callable[[VettedRow], Any]
-    unit: str = ""
-    ucd: str = ""
-
-
-INT_NULL = -2147483648  # no count or number of degrees of freedom; TNULL of FITS integer columns
-
-
-class Cells:
-    """The cells of the list, column by column, as small as numbers are: a million rows fit in memory."""
-
-    def __init__(self, columns: Sequence[ExportColumn]) -> None:
-        self.columns = tuple(columns)
-        new = {float: lambda: array("d"), int: lambda: array("i"), str: list}
-        self._values: dict[str, Any] = {column.name: new[column.kind]() for column in columns}
-
-    def __len__(self) -> int:
-        return len(self._values[self.columns[0].name])
-
-    def add(self, row: VettedRow) -> None:
-        """Take one row's cells."""
-        for column in self.columns:
-            value = column.take(row)
-            if value is None:
-                value = {float: math.nan, int: INT_NULL, str: None}[column.kind]
-            elif column.kind is str:
-                value = sys.intern(value) if len(value) < SHORT else value
-            self._values[column.name].append(value)
-
-    def column(
-        self, column: ExportColumn, clean: Callable[[str], str] = str
-    ) -> tuple[NDArray[Any], NDArray[np.bool_]]:
-        """Values and mask of one column, shape (N,) each; a filler stands where masked, texts go through `clean`."""
-        raw = self._values[column.name]
-        if column.kind is str:
-            filled = np.array(["" if value is None else clean(value) for value in raw], dtype=np.str_ if raw else "U1")
-            return filled, np.array([value is None for value in raw], dtype=bool)
-        values = np.array(raw, dtype=np.float64 if column.kind is float else np.int32)
-        return values, np.isnan(values) if column.kind is float else values == INT_NULL
-
-    def rows(self) -> Iterator[list[Any]]:
-        """Each row's cells, None where masked."""
-        for values in zip(*(self._values[column.name] for column in self.columns), strict=True):
-            yield [None if value is None or value == INT_NULL or value != value else value for value in values]
 
 
 def columns() -> tuple[ExportColumn, ...]:
@@ -112,13 +24,12 @@ def columns() -> tuple[ExportColumn, ...]:
 
 def identity_columns() -> list[ExportColumn]:
     """Which star, and what became of it."""
+    outcomes = "ordinary, explained, unexplained or pending"
     return [
         ExportColumn("name", str, "candidate", lambda row: row.name, ucd="meta.id;meta.main"),
         ExportColumn("ra", float, "right ascension as loaded", fact("ra"), "deg", "pos.eq.ra;meta.main"),
         ExportColumn("dec", float, "declination as loaded", fact("dec"), "deg", "pos.eq.dec;meta.main"),
-        ExportColumn(
-            "outcome", str, "ordinary, explained, unexplained or pending", lambda row: row.outcome, ucd="meta.code.status"
-        ),
+        ExportColumn("outcome", str, outcomes, lambda row: row.outcome, ucd="meta.code.status"),
         ExportColumn("pending_reason", str, "why it is pending", lambda row: row.pending_reason, ucd="meta.note"),
     ]
 
@@ -162,63 +73,63 @@ def count_column(name: str, description: str, take: Callable[[VettedRow], int]) 
 
 def number_columns() -> list[ExportColumn]:
     """What the fits gave."""
+    teff, ratio = "phys.temperature.effective", "arith.ratio"
     return [
-        ExportColumn(
-            "oddness", float, "sigma of the star-only p, one-sided", lambda row: finite(row.oddness.get("sigma")),
-            ucd="stat.value",
-        ),
-        ExportColumn(
-            "odd_band", str, "band of the largest pull from the star alone", lambda row: row.oddness.get("band") or None,
-            ucd="instr.bandpass",
-        ),
-        *fitted("star_teff", "star", "teff", "effective temperature, star alone", "K", "phys.temperature.effective"),
+        ExportColumn("oddness", float, "sigma of the star-only p, one-sided", odd("sigma"), ucd="stat.value"),
+        ExportColumn("odd_band", str, "band farthest from the star alone", odd("band"), ucd="instr.bandpass"),
+        *fitted("star_teff", "star.teff", "effective temperature, star alone", "K", teff),
         *goodness("star"),
-        *fitted("extinction_av", "extinction", "av", "extinction A(V)", "mag", "phys.absorption;em.opt.V"),
+        *fitted("extinction_av", "extinction.av", "extinction A(V)", "mag", "phys.absorption;em.opt.V"),
         *ratio_columns(),
-        *fitted(
-            "extinction_teff", "extinction", "teff", "effective temperature behind the extinction", "K",
-            "phys.temperature.effective",
-        ),
+        *fitted("extinction_teff", "extinction.teff", "effective temperature behind the extinction", "K", teff),
         *goodness("extinction"),
-        *fitted("dust_temperature", "dust", "dust_temperature", "dust temperature", "K", "phys.temperature"),
+        *fitted("dust_temperature", "dust.dust_temperature", "dust temperature", "K", "phys.temperature"),
         *fitted(
-            "dust_fractional_luminosity", "dust", "dust_fractional_luminosity", "dust luminosity / star luminosity", "",
-            "phys.luminosity;arith.ratio",
+            "dust_fractional_luminosity",
+            "dust.dust_fractional_luminosity",
+            "dust luminosity / star luminosity",
+            "",
+            f"phys.luminosity;{ratio}",
         ),
-        *fitted("dust_radius_au", "dust", "dust_radius", "distance of black-body dust from the star", "AU", "phys.size.radius"),
+        *fitted("dust_radius_au", "dust.dust_radius", "distance of black-body dust", "AU", "phys.size.radius"),
         *goodness("dust"),
-        ExportColumn("blend_model", str, "best blend model", lambda row: model_of(row, "blend"), ucd="meta.code;meta.modelled"),
-        *fitted("blend_teff1", "blend", "teff1", "temperature of the first source", "K", "phys.temperature.effective"),
-        *fitted("blend_teff2", "blend", "teff2", "temperature of the second source", "K", "phys.temperature.effective"),
+        ExportColumn("blend_model", str, "best blend model", model_of("blend"), ucd="meta.code;meta.modelled"),
+        *fitted("blend_teff1", "blend.teff1", "temperature of the first source", "K", teff),
+        *fitted("blend_teff2", "blend.teff2", "temperature of the second source", "K", teff),
         *goodness("blend"),
-    ]  # fmt: skip
+    ]
 
 
 def context_columns() -> list[ExportColumn]:
     """What lies around the fits, the mixture bound, the dips, and what all of it rests on."""
+    p, band, made = "stat.probability", "instr.bandpass", "meta.code;meta.modelled"
+    bright = "phys.magAbs;arith.diff"
     return [
-        known("blend_chance_alignment", "blend", "chance_alignment", "chance of an unrelated source", "", "stat.probability"),
-        *ranged_fact("overluminosity", "blend", "over_luminosity", "magnitudes above one star at that parallax", "mag"),
-        known("carrier_band", "instrument", "carrier_band", "band or instrument whose removal mends most", "", "instr.bandpass", str),
-        known("carrier_p", "instrument", "carrier_p", "p of the carrier, corrected for the bands tried", "", "stat.probability"),
-        known("instrument_suspect_bands", "instrument", "suspect_bands", "bands under independent suspicion", "", "instr.bandpass", str),
-        known(
-            "instrument_p_without_suspects", "instrument", "p_without_suspects", "p of the star alone without them", "",
-            "stat.probability",
-        ),
-        known("mixture_chi2", "mixture", "chi2", "chi-square certified by the mixture bound", "", "stat.fit.chi2"),
-        known("mixture_points", "mixture", "points", "data points in the mixture bound", "", "meta.number", int),
-        known("mixture_p", "mixture", "p", "p that any natural mixture makes these fluxes, at most", "", "stat.probability"),
-        *ranged_fact("dip_slope", "dips", "slope", "alpha of depth against wavelength^-alpha", "", "stat.fit.param"),
-        ExportColumn("bands", str, "bands fitted, by wavelength", fitted_bands, ucd="instr.bandpass"),
-        ExportColumn("photosphere", str, "photosphere source", lambda row: row.photosphere or None, ucd="meta.code;meta.modelled"),
-        ExportColumn("law", str, "extinction law", lambda row: row.law or None, ucd="meta.code;meta.modelled"),
+        known("blend_chance_alignment", "blend.chance_alignment", float, "chance of an unrelated source", p),
+        *ranged("overluminosity", "blend.over_luminosity", "above one star at that parallax", "mag", bright),
+        known("carrier_band", "instrument.carrier_band", str, "band or instrument that carries the anomaly", band),
+        known("carrier_p", "instrument.carrier_p", float, "p of the carrier, corrected for the bands tried", p),
+        known("instrument_suspect_bands", "instrument.suspect_bands", str, "bands under independent suspicion", band),
+        known("instrument_p_without_suspects", "instrument.p_without_suspects", float, "p of the star without them", p),
+        known("mixture_chi2", "mixture.chi2", float, "chi-square certified by the mixture bound", "stat.fit.chi2"),
+        known("mixture_points", "mixture.points", int, "data points in the mixture bound", "meta.number"),
+        known("mixture_p", "mixture.p", float, "p that any natural mixture makes these fluxes, at most", p),
+        *ranged("dip_slope", "dips.slope", "alpha of depth as wavelength^-alpha", "", "stat.fit.param"),
+        ExportColumn("bands", str, "bands fitted, by wavelength", fitted_bands, ucd=band),
+        ExportColumn("photosphere", str, "photosphere source", lambda row: row.photosphere or None, ucd=made),
+        ExportColumn("law", str, "extinction law", lambda row: row.law or None, ucd=made),
         ExportColumn("cautions", str, "physical remarks beside the fits", all_cautions, ucd="meta.note"),
-    ]  # fmt: skip
+    ]
 
 
-def fitted(name: str, kind: str, param: str, description: str, unit: str, ucd: str) -> list[ExportColumn]:
-    """A fitted value with the ends of its interval."""
+def odd(key: str) -> Callable[[VettedRow], Any]:
+    """A part of the oddness, None where it was not computed."""
+    return lambda row: row.oddness.get(key) or None
+
+
+def fitted(name: str, source: str, description: str, unit: str, ucd: str) -> list[ExportColumn]:
+    """A fitted value with the ends of its interval; `source` is kind of evidence and parameter of its best fit."""
+    kind, param = source.split(".")
 
     def take(row: VettedRow, end: str) -> float | None:
         best = row.best(kind)
@@ -247,7 +158,7 @@ def interval(name: str, take: Callable[[VettedRow, str], float | None], unit: st
 
 def ratio_columns() -> list[ExportColumn]:
     """R_V where it was fitted, with its interval; where it was held, the value that was used, without."""
-    value, *ends = fitted("extinction_r_v", "extinction", "r_v", "A(V) / E(B-V)", "", "phys.absorption;arith.ratio")
+    value, *ends = fitted("extinction_r_v", "extinction.r_v", "A(V) / E(B-V)", "", "phys.absorption;arith.ratio")
 
     def take(row: VettedRow) -> float | None:
         found = value.take(row)
@@ -266,21 +177,19 @@ def goodness(kind: str) -> list[ExportColumn]:
     return [
         ExportColumn(f"{kind}_chi2", float, f"{title}: chi-square of the best fit", take("chi2"), ucd="stat.fit.chi2"),
         ExportColumn(f"{kind}_dof", int, f"{title}: degrees of freedom", take("dof"), ucd="stat.fit.dof"),
-        ExportColumn(f"{kind}_p", float, f"{title}: probability of so large a chi-square", take("p"), ucd="stat.probability"),
+        ExportColumn(f"{kind}_p", float, f"{title}: p of the best fit", take("p"), ucd="stat.probability"),
     ]
 
 
-def known(
-    name: str, kind: str, key: str, description: str, unit: str = "", ucd: str = "", type_: type = float
-) -> ExportColumn:
-    """A fact of some evidence."""
-    return ExportColumn(name, type_, description, lambda row: as_type(row.fact(kind, key), type_), unit, ucd)
+def known(name: str, source: str, kind_of: type, description: str, ucd: str) -> ExportColumn:
+    """A fact of some evidence; `source` is kind of evidence and name of the fact."""
+    kind, key = source.split(".")
+    return ExportColumn(name, kind_of, description, lambda row: as_type(row.fact(kind, key), kind_of), ucd=ucd)
 
 
-def ranged_fact(
-    name: str, kind: str, key: str, description: str, unit: str, ucd: str = "phys.magAbs;arith.diff"
-) -> list[ExportColumn]:
+def ranged(name: str, source: str, description: str, unit: str, ucd: str) -> list[ExportColumn]:
     """A fact with the ends of its interval, kept as `key`, `key_low`, `key_high`, or with one `key_error`."""
+    kind, key = source.split(".")
 
     def take(row: VettedRow, end: str) -> float | None:
         value = finite(row.fact(kind, key))
@@ -298,27 +207,9 @@ def ranged_fact(
     ]
 
 
-def as_type(value: Any, type_: type) -> Any:
-    """A fact as its column holds it; a list of names becomes one text."""
-    if value is None:
-        return None
-    if type_ is str:
-        return " ".join(map(str, value)) if isinstance(value, (list, tuple)) else str(value)
-    number = finite(value)
-    return None if number is None else type_(number)
-
-
-def finite(value: Any) -> Any:
-    """A number, or None where it is none or not finite; integers stay integers."""
-    if isinstance(value, bool) or not isinstance(value, (int, float)):
-        return None
-    return value if math.isfinite(value) else None
-
-
-def model_of(row: VettedRow, kind: str) -> str | None:
+def model_of(kind: str) -> Callable[[VettedRow], str | None]:
     """Name of the best model of one check."""
-    best = row.best(kind)
-    return best.model if best else None
+    return lambda row: best.model if (best := row.best(kind)) else None
 
 
 def fitted_bands(row: VettedRow) -> str | None:

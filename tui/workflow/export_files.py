@@ -14,7 +14,7 @@ from typing import TYPE_CHECKING, Any, TextIO
 import numpy as np
 
 from tui.errors import InputError, TableError
-from tui.workflow.export_columns import INT_NULL, Cells
+from tui.workflow.export_row import INT_NULL, Cells
 from tui.workflow.safe_text import safe
 
 if TYPE_CHECKING:
@@ -23,7 +23,8 @@ if TYPE_CHECKING:
 RISKY_STARTS = ("=", "+", "-", "@", "\t", "\r", "\n", "\uff1d", "\uff0b", "\uff0d", "\uff20")
 INERT = "'"
 INERT_REMARK = (
-    f"a text cell that begins with = + - @, a tab or a line end would be run by a spreadsheet: it has {INERT} put before it"
+    "a text cell that begins with = + - @, a tab or a line end would be run by a spreadsheet: "
+    f"it has {INERT} put before it"
 )
 UTF8_REMARK = "text columns are UTF-8 bytes"
 
@@ -192,4 +193,5 @@ def csv_cell(value: Any) -> str:
 
 def meta_lines(meta: Mapping[str, Any]) -> list[tuple[str, str]]:
     """The metadata as name and text; what is not text is written as JSON."""
-    return [(name, text if isinstance(text, str) else json.dumps(text, ensure_ascii=True)) for name, text in meta.items()]
+    texts = (value if isinstance(value, str) else json.dumps(value, ensure_ascii=True) for value in meta.values())
+    return list(zip(meta, texts, strict=True))

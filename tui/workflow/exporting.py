@@ -21,16 +21,17 @@ from tui.store.settings import read_settings
 from tui.store.team import team_standing
 from tui.workflow.clock import utc_now
 from tui.workflow.controls import read_truth
-from tui.workflow.export_columns import Cells, VettedRow, columns
+from tui.workflow.export_columns import columns
 from tui.workflow.export_files import refuse_existing, write_list, writer_for
+from tui.workflow.export_row import Cells, VettedRow
 
 PAGE = 250  # candidates in memory at once
 UNRESOLVED = ("open", "split")
 CAUTION = (
-    "Unexplained means only that these checks fell short with these data and models; it is no detection. Independent data "
-    "at higher resolution come next. Sources that shine in lines (nebulae, emission-line stars, quasars) are natural and "
-    "outside the thermal mixture. The numbers are no better than the photosphere source and the floors. An adequate fit is "
-    "not an explanation: free parameters absorb much."
+    "Unexplained means only that these checks fell short with these data and models; it is no detection. Independent "
+    "data at higher resolution come next. Sources that shine in lines (nebulae, emission-line stars, quasars) are "
+    "natural and outside the thermal mixture. The numbers are no better than the photosphere source and the floors. "
+    "An adequate fit is not an explanation: free parameters absorb much."
 )
 Report = Callable[[int, int], None]
 
@@ -148,9 +149,13 @@ def metadata(
         "thresholds": {name: getattr(settings, name) for name in ("quorum", "agree_share", "p_min", "ruwe_max")},
         "reviewers": [one.handle for one in reviewers(connection)],
         "agreement": agreement(connection, settings, controls),
-        "selection": {"outcome": selection.outcome, "unresolved": selection.unresolved, "controls_left_out": bool(selection.controls)},
+        "selection": {
+            "outcome": selection.outcome,
+            "unresolved": selection.unresolved,
+            "controls_left_out": bool(selection.controls),
+        },
         "caution": CAUTION,
-    }  # fmt: skip
+    }
 
 
 def agreement(connection: sqlite3.Connection, settings: Settings, controls: Mapping[str, str]) -> dict[str, Any]:

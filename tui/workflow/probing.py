@@ -19,7 +19,8 @@ POINTS = 400  # wavelengths of a curve: finer than the dots of a wall screen
 MARGIN = 1.6  # how far a curve goes beyond the shortest and longest band, as a factor
 BARE_RANGE_UM = (0.3, 30.0)  # where a candidate has no band that the program knows
 SHORT_NAMES = MappingProxyType(
-    {"T": "teff", "Teff": "teff", "A_V": "av", "AV": "av", "Av": "av", "R_V": "r_v", "RV": "r_v", "Td": "dust_temperature"}
+    {"T": "teff", "Teff": "teff", "A_V": "av", "AV": "av", "Av": "av", "R_V": "r_v", "RV": "r_v"}
+    | {"Td": "dust_temperature", "T_d": "dust_temperature", "f": "dust_fractional_luminosity"}
 )
 _OWN_T = MappingProxyType({"dust": "dust_temperature", "blend": "teff1"})  # what a bare T means in a check
 

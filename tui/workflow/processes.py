@@ -24,7 +24,11 @@ class WorkerError(TuiError):
 
 
 def in_processes(
-    work: Callable[[Any], Any], chunks: Iterable[Any], jobs: int, prepare: Callable[..., None], prepare_with: tuple[Any, ...]
+    work: Callable[[Any], Any],
+    chunks: Iterable[Any],
+    jobs: int,
+    prepare: Callable[..., None],
+    prepare_with: tuple[Any, ...],
 ) -> Iterator[Any]:
     """Yield `work(chunk)` for each chunk, in order, computed in `jobs` fresh processes.
 

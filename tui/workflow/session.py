@@ -263,6 +263,10 @@ class Session:
         found = tallying.tally(self.connection, self.settings, now=utc_now())
         return found.seen_by(open_to(self.connection, self.reviewer.id) if self.reviewer else ())
 
+    def has_ruled(self) -> bool:
+        """Whether this reviewer ever ruled anything in this queue."""
+        return bool(self.reviewer) and self.counts()["mine"] > 0
+
     def receipt(self) -> str:
         """What this reviewer takes away on leaving; `plainlight audit --receipt` checks it later."""
         from tui.store.audit import receipt

@@ -57,7 +57,9 @@ def templates_digest(settings: Settings, user_bands: Mapping[str, Band] | None =
         {
             "version": VERSION,
             "tables": packaged_digest(),
-            "bands": [[getattr(band, name) for name in Band.__slots__] for _, band in sorted((user_bands or {}).items())],
+            "bands": {
+                name: [getattr(band, part) for part in Band.__slots__] for name, band in (user_bands or {}).items()
+            },
             "settings": {name: getattr(settings, name) for name in _GRID_SETTINGS},
         }
     )
@@ -82,8 +84,8 @@ def code_digest() -> str:
     """Digest of the modules of physics and of numpy's version: grids of other code are never read."""
     import numpy as np
 
-    modules = sorted((path for path in files("tui.physics").iterdir() if path.name.endswith(".py")), key=lambda p: p.name)
-    return digest([content_digest(modules), np.__version__])
+    modules = [path for path in files("tui.physics").iterdir() if path.name.endswith(".py")]
+    return digest([content_digest(sorted(modules, key=lambda path: path.name)), np.__version__])
 
 
 def content_digest(paths: list[Any]) -> str:
