@@ -116,7 +116,7 @@ def test_csv_makes_formula_cells_inert_says_so_and_keeps_the_rest(tmp_path, cell
     assert any("spreadsheet" in line for line in head)
     body = text[text.index("\nname,ra,") + 1 :]
     rows = list(csv.DictReader(body.splitlines(keepends=True)))
-    assert [row["name"] for row in rows] == ["'" + name if i < len(FORMULAS) else name for i, name in enumerate(HOSTILE)]
+    assert [row["name"] for row in rows] == [f"'{name}" if name in FORMULAS else name for name in HOSTILE]
     assert float(rows[0]["dec"]) == -0.1 and rows[0]["dec"] == "-0.1"
     assert rows[0]["star_teff"] == "" and float(rows[-1]["star_teff_high"]) == 5850.3
     assert not any(line.startswith(("=", "+", "-", "@")) for line in text.splitlines())
