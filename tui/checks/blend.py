@@ -6,8 +6,8 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from tui.checks.record import RAD_TO_MAS, any_stands, degrees, fits_of, stands
-from tui.checks.remarks import common_remarks, gain_over_star, in_order
+from tui.checks.record import RAD_TO_MAS, Group, any_stands, ordered_fits, stands
+from tui.checks.remarks import common_remarks, gain_over_star
 from tui.model import Candidate, Evidence, Fit, Settings
 from tui.physics.composite import A2, BOUND_PAIR, COMPACT, FREE_PAIR, GALAXY, LN_S, LN_T, X2
 from tui.physics.constants import PARSEC, R_SUN
@@ -58,26 +58,19 @@ def assess(
     settings: Settings,
 ) -> list[Evidence]:
     """Blend evidence for each candidate; order kept."""
-    batches = fit_blend(problem, star_batch)
-    fits = [fits_of(batch, settings) for batch in batches]
-    points = [degrees(batch)[1] for batch in batches]
-    return [
-        one_evidence(
-            [each[row] for each in fits], [int(each[row]) for each in points], star[row], problem, row, settings
-        )
-        for row in range(len(candidates))
-    ]
+    rows = np.arange(len(problem))
+    fits = ordered_fits([Group(batch, rows) for batch in fit_blend(problem, star_batch)], len(problem))
+    return [one_evidence(fits[row], star[row], problem, row, settings) for row in range(len(candidates))]
 
 
 def one_evidence(
-    fits: list[Fit], points: list[int], star: Evidence, problem: Problem, row: int, settings: Settings
+    fits: list[tuple[Fit, int]], star: Evidence, problem: Problem, row: int, settings: Settings
 ) -> Evidence:
     """Put one candidate's evidence together."""
     if star.best is None:
         return Evidence(KIND, VERSION, None, (), star.cautions[:1], {}, bands=star.bands)
-    answer = any_stands([stands(each, n, settings) for each, n in zip(fits, points, strict=True)])
-    ordered = in_order(fits)
-    best = ordered[0]
+    answer = any_stands([stands(each, points, settings) for each, points in fits])
+    best = fits[0][0]
     told = gain_over_star(best, star.best)
     told |= {name: star.facts.get(name) for name in ("over_luminosity", "over_luminosity_error")}
     cautions = common_remarks(best, star.adequate, settings)
@@ -85,7 +78,7 @@ def one_evidence(
     cautions += compact_remark(best, float(problem.parallax_mas[row]))
     if not np.isfinite(problem.parallax_mas[row]):
         cautions.append("No usable parallax: colours alone rarely tell a pair from one star.")
-    return Evidence(KIND, VERSION, answer, ordered, tuple(cautions), told, bands=star.bands)
+    return Evidence(KIND, VERSION, answer, tuple(each for each, _ in fits), tuple(cautions), told, bands=star.bands)
 
 
 def luminosity_remark(value: object, error: object) -> list[str]:

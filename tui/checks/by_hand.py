@@ -171,10 +171,10 @@ def probe(
         problem = replace(problem, av_max=np.full(1, AV_MAX))
     model = model_with(check, fixed, problem)
     kit = kit_for(model, problem.templates, fixed_r_v(settings))
-    return conditional(problem, kit, fixed, settings)
+    return conditional(problem, kit, fixed)
 
 
-def conditional(problem: Problem, kit: Kit, fixed: Mapping[str, float], settings: Settings) -> Fit:
+def conditional(problem: Problem, kit: Kit, fixed: Mapping[str, float]) -> Fit:
     """The best fit with parameters held, errors following the model."""
     names = {told.name: column for column, told in columns_of(kit).items()}
     held = np.zeros((1, WIDTH), bool)
@@ -188,7 +188,7 @@ def conditional(problem: Problem, kit: Kit, fixed: Mapping[str, float], settings
     if not held.any():
         x, _ = look(problem, kit, errors, [])
         errors, x, _ = settle(problem, kit, x)
-        return fits_of(finish(problem, kit, errors, x), settings, with_intervals=False)[0]
+        return fits_of(finish(problem, kit, errors, x), with_intervals=False)[0]
     x, _ = look(problem, kit, errors, [])
     for _ in range(3):
         x = np.where(held, values, x)
@@ -199,7 +199,7 @@ def conditional(problem: Problem, kit: Kit, fixed: Mapping[str, float], settings
         errors = errors_of(problem, kit, x)
     x = descend(problem, kit, errors, x, held=held).x
     x = np.where(held, x, rested(kit, x))
-    return fits_of(finish(problem, kit, errors, x), settings, with_intervals=False)[0]
+    return fits_of(finish(problem, kit, errors, x), with_intervals=False)[0]
 
 
 def errors_of(problem: Problem, kit: Kit, x: FloatArray) -> Errors:

@@ -8,8 +8,8 @@ from dataclasses import replace
 import numpy as np
 
 from tui.checks.prepare import fact
-from tui.checks.record import any_stands, dust_radius, fits_of, luminosity_sun, stands
-from tui.checks.remarks import common_remarks, gain_over_star, in_order
+from tui.checks.record import Group, any_stands, dust_radius, luminosity_sun, ordered_fits, stands
+from tui.checks.remarks import common_remarks, gain_over_star
 from tui.model import Candidate, Evidence, Fit, FloatArray, Settings
 from tui.physics.composite import A2, DUST, DUST_AV, TWO_DUST, X2, kit_for, predict
 from tui.physics.context import shell_dimming, steady_state_ceiling
@@ -29,23 +29,17 @@ LIMIT_TEMPERATURES_K = (30.0, 50.0, 80.0, 120.0, 200.0, 300.0, 500.0, 800.0, 120
 ONE_SIDED_95 = 2.71
 
 
-def fit_dust(problem: Problem, star: FitBatch, settings: Settings) -> list[dict[int, tuple[FitBatch, int]]]:
-    """Batches of star + dust; the third, with two temperatures, only of the rows that ask for it."""
+def fit_dust(problem: Problem, star: FitBatch, settings: Settings) -> list[Group]:
+    """Fits of star + dust; those with two temperatures only of the rows that ask for them."""
+    everyone = np.arange(len(problem))
     bare = fit(problem, DUST, start=star.x)
     screened = fit(problem, DUST_AV, start=bare.x)
-    rows = asks_for_two(problem, star, screened, settings)
-    batches = [_all_rows(bare), _all_rows(screened)]
-    if rows.size:
-        two = fit(problem.take(rows), TWO_DUST)
-        batches.append({int(row): (two, place) for place, row in enumerate(rows)})
-    return batches
+    groups = [Group(bare, everyone), Group(screened, everyone)]
+    rows = asks_for_two(problem, screened, settings)
+    return [*groups, Group(fit(problem.take(rows), TWO_DUST), rows)] if rows.size else groups
 
 
-def _all_rows(batch: FitBatch) -> dict[int, tuple[FitBatch, int]]:
-    return {row: (batch, row) for row in range(len(batch.problem))}
-
-
-def asks_for_two(problem: Problem, star: FitBatch, one: FitBatch, settings: Settings) -> np.ndarray:
+def asks_for_two(problem: Problem, one: FitBatch, settings: Settings) -> np.ndarray:
     """Rows whose one temperature is refused while at least five bands carry an excess."""
     points = problem.points
     dof = np.maximum(points - len(DUST_AV.free), 1)
@@ -63,23 +57,17 @@ def assess(
     settings: Settings,
 ) -> list[Evidence]:
     """Dust evidence for each candidate; order kept."""
-    groups = fit_dust(problem, star_batch, settings)
-    recorded: dict[int, list[Fit]] = {}
-    for group in groups:
-        batch = next(iter(group.values()))[0]
-        fits = fits_of(batch, settings)
-        for row, (_, place) in group.items():
-            recorded.setdefault(row, []).append(fits[place])
+    fits = ordered_fits(fit_dust(problem, star_batch, settings), len(problem))
     limits = largest_fraction(star_batch)
     return [
-        one_evidence(candidate, recorded[row], star[row], problem, row, limits[row], settings)
+        one_evidence(candidate, fits[row], star[row], problem, row, limits[row], settings)
         for row, candidate in enumerate(candidates)
     ]
 
 
 def one_evidence(
     candidate: Candidate,
-    fits: list[Fit],
+    fits: list[tuple[Fit, int]],
     star: Evidence,
     problem: Problem,
     row: int,
@@ -90,7 +78,7 @@ def one_evidence(
     if star.best is None:
         return Evidence(KIND, VERSION, None, (), star.cautions[:1], {}, bands=star.bands)
     parallax = float(problem.parallax_mas[row])
-    ordered = in_order([with_radius(each, parallax) for each in fits])
+    ordered = [with_radius(each, parallax) for each, _ in fits]
     best = ordered[0]
     told: dict[str, object] = gain_over_star(best, star.best)
     told["limit_temperature_k"] = list(LIMIT_TEMPERATURES_K)
@@ -99,8 +87,8 @@ def one_evidence(
     cautions += dust_cautions(candidate, best, parallax, told)
     if "dust_temperature" not in best.params:
         cautions.append(limit_sentence(limits))
-    answer = any_stands([stands(each, int(problem.points[row]), settings) for each in ordered])
-    return Evidence(KIND, VERSION, answer, ordered, tuple(cautions), told, bands=star.bands)
+    answer = any_stands([stands(each, points, settings) for each, points in fits])
+    return Evidence(KIND, VERSION, answer, tuple(ordered), tuple(cautions), told, bands=star.bands)
 
 
 def with_radius(fit_: Fit, parallax_mas: float) -> Fit:

@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 
 import numpy as np
 
 from tui.checks.prepare import fact
-from tui.checks.record import any_stands, fits_of, stands
-from tui.checks.remarks import common_remarks, gain_over_star, in_order
+from tui.checks.record import Group, any_stands, ordered_fits, stands
+from tui.checks.remarks import common_remarks, gain_over_star
 from tui.model import Candidate, Evidence, Fit, Settings
 from tui.physics.composite import STAR_AV, STAR_AV_RV
 from tui.physics.fitting import FitBatch, fit
@@ -37,8 +38,6 @@ def fixed_r_v(settings: Settings) -> float:
 
 
 def _with_av(problem: Problem, av_max: float) -> Problem:
-    from dataclasses import replace
-
     return replace(problem, av_max=np.full(len(problem), av_max))
 
 
@@ -50,23 +49,26 @@ def assess(
     settings: Settings,
 ) -> list[Evidence]:
     """Extinction evidence for each candidate; order kept."""
-    batches = fit_extinction(problem, star_batch, settings)
-    fits = [fits_of(batch, settings) for batch in batches]
+    rows = np.arange(len(problem))
+    groups = [Group(batch, rows) for batch in fit_extinction(problem, star_batch, settings)]
+    fits = ordered_fits(groups, len(problem))
     return [
-        one_evidence(candidate, [each[row] for each in fits], star[row], problem, row, settings)
-        for row, candidate in enumerate(candidates)
+        one_evidence(candidate, fits[row], star[row], problem, row, settings) for row, candidate in enumerate(candidates)
     ]
 
 
 def one_evidence(
-    candidate: Candidate, fits: list[Fit], star: Evidence, problem: Problem, row: int, settings: Settings
+    candidate: Candidate,
+    fits: list[tuple[Fit, int]],
+    star: Evidence,
+    problem: Problem,
+    row: int,
+    settings: Settings,
 ) -> Evidence:
     """Put one candidate's evidence together."""
     if star.best is None:
         return Evidence(KIND, VERSION, None, (), star.cautions[:1], {}, bands=star.bands)
-    ordered = in_order(fits)
-    best = ordered[0]
-    points = int(problem.points[row])
+    best = fits[0][0]
     av = best.params["av"].value
     ceiling, cause = av_limit(candidate, float(problem.parallax_mas[row]))
     told = gain_over_star(best, star.best) | {"law": settings.law, "av_line_of_sight": ceiling}
@@ -78,8 +80,8 @@ def one_evidence(
             f"At A_V {av:.1f} the laws differ: G23 exceeds Wang & Chen 2019 by 14, 30, 38 % in J, H, Ks. "
             "Try the settings law wc19 before an infrared excess is believed."
         )
-    answer = any_stands([stands(one, points, settings) for one in ordered])
-    return Evidence(KIND, VERSION, answer, ordered, tuple(cautions), told, bands=star.bands)
+    answer = any_stands([stands(one, points, settings) for one, points in fits])
+    return Evidence(KIND, VERSION, answer, tuple(one for one, _ in fits), tuple(cautions), told, bands=star.bands)
 
 
 def av_limit(candidate: Candidate, parallax_mas: float) -> tuple[float, str]:

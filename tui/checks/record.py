@@ -64,8 +64,8 @@ def columns_of(kit: Kit) -> dict[int, Column]:
     return {column: table[column] for column in kit.model.free}
 
 
-def fits_of(batch: FitBatch, settings: Settings, *, with_intervals: bool = True) -> list[Fit]:
-    """One Fit per row, with profile intervals of its parameters."""
+def fits_of(batch: FitBatch, *, with_intervals: bool = True) -> list[Fit]:
+    """One Fit per row; profile intervals of its parameters, or NaN ends."""
     ends = intervals(batch) if with_intervals and len(batch.problem) else None
     dof, points = degrees(batch)
     p = chi2_tail(batch.chi2, dof)
@@ -87,6 +87,39 @@ def fits_of(batch: FitBatch, settings: Settings, *, with_intervals: bool = True)
         )
         for row in range(len(batch.problem))
     ]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Group:
+    """Fits of one model to some rows of a larger problem."""
+
+    batch: FitBatch
+    rows: np.ndarray  # (K,): which candidates
+
+    @property
+    def scores(self) -> FloatArray:
+        """BIC per row of the batch."""
+        return bic(self.batch.minus2lnl, len(self.batch.model.free), degrees(self.batch)[1])
+
+
+def ordered_fits(groups: list[Group], count: int) -> list[list[tuple[Fit, int]]]:
+    """Per candidate its fits, lowest BIC first, each with the points it was fitted to; intervals for the first only.
+
+    Intervals cost as much as fits: those of the other models are left open (NaN), and `probe` gives them.
+    """
+    best = np.full(count, np.inf)
+    for group in groups:
+        best[group.rows] = np.minimum(best[group.rows], group.scores)
+    found: list[list[tuple[Fit, int]]] = [[] for _ in range(count)]
+    for group in groups:
+        leads = group.scores <= best[group.rows]
+        points = degrees(group.batch)[1]
+        for chosen, with_intervals in ((np.flatnonzero(leads), True), (np.flatnonzero(~leads), False)):
+            if chosen.size:
+                fits = fits_of(group.batch.take(chosen), with_intervals=with_intervals)
+                for place, one in zip(chosen, fits, strict=True):
+                    found[group.rows[place]].append((one, int(points[place])))
+    return [sorted(fits, key=lambda pair: pair[0].bic) for fits in found]
 
 
 def degrees(batch: FitBatch) -> tuple[FloatArray, FloatArray]:
@@ -111,9 +144,9 @@ def params_of(batch: FitBatch, row: int, ends: Intervals | None) -> dict[str, Pa
         if amplitude in batch.model.free and x[amplitude] <= 1e-12:
             continue
         value = shown.shown(x[column])
-        low, high = (value, value) if ends is None else (ends.low[row, column], ends.high[row, column])
+        low = high = float("nan")
         if ends is not None:
-            low, high = shown.shown(low), shown.shown(high)
+            low, high = shown.shown(ends.low[row, column]), shown.shown(ends.high[row, column])
         limit = bool(ends.limit[row, column]) if ends is not None else False
         found[shown.name] = Param(value, low, high, shown.unit, limit)
     return found

@@ -31,11 +31,6 @@ def common_remarks(best: Fit | None, star_adequate: bool | None, settings: Setti
     return remarks
 
 
-def in_order(fits: Sequence[Fit]) -> tuple[Fit, ...]:
-    """Best first: lowest BIC."""
-    return tuple(sorted(fits, key=lambda fit: fit.bic))
-
-
 def joined(words: Sequence[str]) -> str:
     """`a`, `a and b`, `a, b and c`."""
     if len(words) < 2:

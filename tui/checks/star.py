@@ -42,7 +42,7 @@ def oddness(evidence: Evidence) -> Oddness:
 
 def assess(candidates: Sequence[Candidate], batch: FitBatch, settings: Settings) -> list[Evidence]:
     """Star evidence from star-only fits, one row a candidate; order kept."""
-    fits = fits_of(batch, settings)
+    fits = fits_of(batch)
     extra = over_luminosity(batch)
     return [
         one_evidence(candidate, batch, row, fits[row], extra[row], settings) for row, candidate in enumerate(candidates)

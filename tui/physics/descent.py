@@ -53,8 +53,8 @@ def descend(
     value, slopes = state.value, state.slopes
     for _ in range(steps):
         here, some_errors, lo, hi, still = local
-        step = _step(value, slopes, damping[rows], x[rows][:, free], lo, hi, still)
-        trial = x[rows].copy()
+        step, promised = _step(value, slopes, damping[rows], x[rows][:, free], lo, hi, still)
+        trial = x[rows]
         trial[:, free] = np.clip(trial[:, free] + step, lo, hi)
         new = residuals(here, kit, some_errors, trial, predict(kit, trial))
         new_cost = new.cost
@@ -63,11 +63,12 @@ def descend(
         x[rows[better]] = trial[better]
         cost[rows[better]] = new_cost[better]
         damping[rows] = np.where(better, damping[rows] * 0.1, damping[rows] * 8.0)
-        value, slopes = np.where(better[:, None], new.value, value), np.where(better[:, None, None], new.slopes, slopes)
-        going = np.where(better, gain > tolerance, damping[rows] < 1e6)
+        np.copyto(value, new.value, where=better[:, None])
+        np.copyto(slopes, new.slopes, where=better[:, None, None])
+        going = np.where(better, gain > tolerance, (promised > tolerance) & (damping[rows] < 1e6))
         if not going.any():
             break
-        if going.sum() < 0.8 * rows.size:
+        if going.sum() < 0.9 * rows.size:
             rows, value, slopes = rows[going], value[going], slopes[going]
             local = (here.take(going), some_errors.take(going), lo[going], hi[going], still[going])
     return Descent(x, cost)
@@ -81,21 +82,21 @@ def _step(
     low: FloatArray,
     high: FloatArray,
     fixed: np.ndarray,
-) -> FloatArray:
-    """One damped step (M, P); a parameter at a bound that would leave it rests."""
+) -> tuple[FloatArray, FloatArray]:
+    """One damped step (M, P) and the fall of cost it promises (M,); a parameter held by its bound rests."""
     normal = slopes @ slopes.transpose(0, 2, 1)
-    gradient = np.einsum("mpb,mb->mp", slopes, value)
+    gradient = (slopes @ value[:, :, None])[:, :, 0]
     rests = fixed | ((x <= low) & (gradient > 0)) | ((x >= high) & (gradient < 0))
-    normal = np.where(rests[:, :, None] | rests[:, None, :], 0.0, normal)
     diagonal = np.einsum("mpp->mp", normal)
     scale = np.maximum(diagonal, 1e-12 * (1e-300 + diagonal.max(axis=1, keepdims=True)))
-    scale = np.where(rests | (scale <= 0), 1.0, scale)
-    root = np.sqrt(scale)
-    matrix = normal / root[:, :, None] / root[:, None, :]
+    root = np.where(rests | (scale <= 0), 1.0, np.sqrt(scale))
+    moves = np.where(rests, 0.0, 1.0 / root)
+    matrix = normal * moves[:, :, None] * moves[:, None, :]
     place = np.arange(x.shape[1])
     matrix[:, place, place] = np.where(rests, 1.0, matrix[:, place, place] + damping[:, None] + 1e-12)
-    right = np.where(rests, 0.0, -gradient / root)
-    return np.linalg.solve(matrix, right[:, :, None])[:, :, 0] / root
+    right = -gradient * moves
+    unit = np.linalg.solve(matrix, right[:, :, None])[:, :, 0]
+    return unit / root * (moves > 0), np.sum(unit * right, axis=1)
 
 
 def curvature(state: Residuals) -> FloatArray:

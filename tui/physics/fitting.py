@@ -16,8 +16,13 @@ from tui.physics.scan import scan
 PASSES = 8
 SETTLED = 0.1  # the error model has settled once chi-square moves by less
 LOOKS = 3  # times that the whole range is scanned anew with the errors of the last pass
+MOVED = 0.1  # a scan holds while no band's error has moved by more than this fraction
 LOWER = 0.02  # a minimum found anew counts when its cost is lower by more
 SECOND_DUST_STEPS = (-1.4, -0.6, 0.6, 1.4)  # of ln T, where a second dust temperature is looked for
+HEATS = ((3, 100.0), (4, 15.0), (40, 0.0))  # steps of the starts that are left, and how far behind is hopeless
+ALIKE = 0.02  # parameters this close after a heat lead to the same minimum
+COARSE = 3e-3  # of the cost: descents on the way; the last one goes on to FINE
+FINE = 1e-5
 REST = {"dust": np.log(300.0), "star": np.log(3500.0), "compact": np.log(20000.0), "power": 1.0}
 
 
@@ -46,6 +51,20 @@ class FitBatch:
         pull = np.where(self.problem.limited, np.minimum(pull, 0.0), pull)
         return np.where(self.problem.detected | self.problem.limited, pull, np.nan)
 
+    def take(self, rows: np.ndarray) -> FitBatch:
+        """The same fits of some candidates."""
+        here = self.prediction
+        return FitBatch(
+            self.kit,
+            self.problem.take(rows),
+            self.errors.take(rows),
+            self.x[rows],
+            self.cost[rows],
+            self.chi2[rows],
+            self.minus2lnl[rows],
+            Prediction(here.flux[rows], here.star[rows], here.slopes[rows]),
+        )
+
     def at_bounds(self) -> np.ndarray:
         """Which free parameters lie at a bound, (M, P)."""
         free = list(self.model.free)
@@ -72,28 +91,52 @@ def fit(problem: Problem, model: Model, *, r_v: float = 3.1, start: FloatArray |
     errors = first_errors(problem)
     extra = [] if start is None else [start]
     x, cost = look(problem, kit, errors, extra)
+    looked = errors.sigma.copy()
     errors, x, cost = settle(problem, kit, x)
     for _ in range(LOOKS):
-        anew, anew_cost = look(problem, kit, errors, extra)
-        better = np.flatnonzero(anew_cost < cost - LOWER)
-        if not better.size:
+        moved = np.abs(errors.sigma / looked - 1.0) > MOVED
+        rows = np.flatnonzero((moved & (problem.detected | problem.limited)).any(axis=1))
+        if not rows.size:
             break
-        some, x_some, cost_some = settle(problem.take(better), kit, anew[better])
-        x[better], cost[better] = x_some, cost_some
-        errors = replace_rows(errors, better, some)
+        some, own = problem.take(rows), errors.take(rows)
+        looked[rows] = own.sigma
+        anew, anew_cost = look(some, kit, own, [each[rows] for each in extra])
+        better = anew_cost < cost[rows] - LOWER
+        if not better.any():
+            break
+        again, x_again, cost_again = settle(some.take(better), kit, anew[better])
+        x[rows[better]], cost[rows[better]] = x_again, cost_again
+        errors = replace_rows(errors, rows[better], again)
+    x = descend(problem, kit, errors, x, tolerance=FINE).x
     return finish(problem, kit, errors, x)
 
 
 def look(problem: Problem, kit: Kit, errors: Errors, extra: list[FloatArray]) -> tuple[FloatArray, FloatArray]:
-    """The lowest of several descents from a scan of the whole range, errors frozen."""
+    """The lowest of several descents from a scan of the whole range, errors frozen.
+
+    All starts go a few steps; those that are then far above the best of their candidate go no further.
+    """
     starts = np.stack([*starting_rows(problem, kit, errors), *extra])
     count, m = starts.shape[:2]
-    rows = np.tile(np.arange(m), count)
-    flat = starts.reshape(count * m, WIDTH)
-    found = descend(problem.take(rows), kit, errors.take(rows), flat)
-    cost = found.cost.reshape(count, m)
-    best = cost.argmin(axis=0)
-    return found.x.reshape(count, m, WIDTH)[best, np.arange(m)], cost[best, np.arange(m)]
+    owner = np.tile(np.arange(m), count)
+    rows = first_of_each(starts.reshape(count * m, WIDTH), owner)
+    owner, x = owner[rows], starts.reshape(count * m, WIDTH)[rows]
+    for steps, behind in HEATS:
+        heat = descend(problem.take(owner), kit, errors.take(owner), x, steps=steps, tolerance=COARSE)
+        best = np.full(m, np.inf)
+        np.minimum.at(best, owner, heat.cost)
+        order = np.lexsort((heat.cost, owner))
+        order = order[heat.cost[order] <= best[owner[order]] + behind]
+        order = order[first_of_each(np.round(heat.x[order] / ALIKE), owner[order])]
+        owner, x, cost = owner[order], heat.x[order], heat.cost[order]
+    first = np.unique(owner, return_index=True)[1]
+    return x[first], cost[first]
+
+
+def first_of_each(x: FloatArray, owner: np.ndarray) -> np.ndarray:
+    """Row numbers without the rows that repeat an earlier one of the same owner."""
+    _, first = np.unique(np.column_stack([owner, x]), axis=0, return_index=True)
+    return np.sort(first)
 
 
 def starting_rows(problem: Problem, kit: Kit, errors: Errors) -> list[FloatArray]:
@@ -120,7 +163,7 @@ def settle(problem: Problem, kit: Kit, x: FloatArray) -> tuple[Errors, FloatArra
         some = problem.take(live)
         here = predict(kit, x[live])
         own = errors_for(some, here.flux, here.star, x[live, LN_T])
-        found = descend(some, kit, own, x[live])
+        found = descend(some, kit, own, x[live], tolerance=COARSE)
         x[live], cost[live] = found.x, found.cost
         errors = replace_rows(errors, live, own)
         chi2 = chi_square(some, kit, own, found.x, predict(kit, found.x))

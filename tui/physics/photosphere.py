@@ -22,9 +22,9 @@ DWARF_SHORT_UM = 0.355  # no filling shortward of U: a star's ultraviolet is no 
 FILL_FROM = ("U", "B", "V", "Rc", "Ic", "J", "H", "Ks", "W1", "W2", "W3", "W4")  # filled between in ln wavelength
 FADE_LN_T = 0.1  # beyond its column a band's own offset from the filled value fades within this step of ln T
 PLANCK_RANGE_K = (2300.0, 60000.0)
-SMOOTH_NODES = 11  # table rows that a smoothed one looks at: the rows' temperatures scatter by 1 to 2 %, and the
+SMOOTH_NODES = 15  # table rows that a smoothed one looks at: the rows' temperatures scatter by 1 to 2 %, and the
 # wiggles that this makes (3 to 6 % from row to row) would turn one minimum of chi-square into several
-ROUND_LN_T = 0.03
+ROUND_LN_T = 0.05
 
 
 @dataclass(frozen=True, slots=True, eq=False)

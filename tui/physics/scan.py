@@ -7,17 +7,20 @@ from dataclasses import dataclass
 import numpy as np
 
 from tui.model import FloatArray
-from tui.physics.composite import A2, AV, LN_S, LN_T, RV, WIDTH, X2, Kit, parallax_of
+from tui.physics.composite import A2, AV, LN_S, LN_T, POWER_REDDENING_K, RV, WIDTH, X2, Kit, parallax_of
 from tui.physics.constants import MAG
 from tui.physics.likelihood import Errors, parallax_sigma
 from tui.physics.problem import Problem
 
 AV_NODES = np.array([0, 0.15, 0.4, 0.8, 1.4, 2.2, 3.2, 4.5, 6, 8, 10.5, 13.5, 17, 21, 25, 30.0])
 RV_NODES = np.array([2.5, 3.1, 4.0, 5.2])
-STAR_NODES = 44
-FURTHER_NODES = {"dust": 24, "star": 24, "compact": 14, "power": 14}
+STAR_NODES = 40
+FURTHER_NODES = {"dust": 22, "star": 22, "compact": 12, "power": 12}
 STARTS = 3
-SCAN_CELLS = 4_000_000  # cells of one scan kept in memory at a time
+MORE_ALONG_T = 3  # temperature and screen make a long valley with several minima
+COARSE = np.float32  # a scan only ranks places to start from
+TINY = 1e-30
+SCAN_CELLS = 40_000  # cells of one scan worked on at a time: they stay in the processor's cache
 
 
 def nodes(low: float, high: float, count: int) -> FloatArray:
@@ -27,16 +30,24 @@ def nodes(low: float, high: float, count: int) -> FloatArray:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Weighted:
-    """Data in the form that scans use: weights (B, M), weighted fluxes (B, M)."""
+    """Data in the form that scans use, fluxes in units of each candidate's brightest: weights, weighted fluxes."""
 
-    weight: FloatArray
-    weighted: FloatArray
+    weight: FloatArray  # (B, M)
+    weighted: FloatArray  # (B, M)
+    unit_jy: FloatArray  # (M,)
+
+    def take(self, rows: np.ndarray) -> Weighted:
+        """The same for some candidates."""
+        return Weighted(self.weight[:, rows], self.weighted[:, rows], self.unit_jy[rows])
 
 
 def weigh(problem: Problem, errors: Errors) -> Weighted:
     """Detections' weights; limits enter a scan as penalties."""
-    weight = np.where(problem.detected, errors.sigma**-2.0, 0.0)
-    return Weighted(np.ascontiguousarray(weight.T), np.ascontiguousarray((weight * problem.flux_jy).T))
+    flux = np.where(problem.detected, problem.flux_jy, 0.0)
+    unit = np.maximum(np.abs(flux).max(axis=1), 1e-300)
+    weight = np.where(problem.detected, (unit[:, None] / errors.sigma) ** 2, 0.0)
+    weighted = weight * flux / unit[:, None]
+    return Weighted(np.ascontiguousarray(weight.T), np.ascontiguousarray(weighted.T), unit)
 
 
 def screens(kit: Kit, problem: Problem) -> list[tuple[float, float]]:
@@ -81,6 +92,7 @@ def _scan_star(problem: Problem, kit: Kit, data: Weighted, errors: Errors, start
         a, b = (flux**2) @ data.weight, flux @ data.weighted
         scale = np.maximum(b, 0) / np.maximum(a, 1e-300)
         gain = np.maximum(b, 0) * scale
+        scale = scale * data.unit_jy
         if has_limits:
             gain = gain - _penalty(problem, errors, scale[:, :, None] * flux[:, None, :])
         gains.append(np.where(av <= problem.av_max + 1e-9, gain, -np.inf))
@@ -111,21 +123,43 @@ def _peaks(profile: FloatArray, starts: int) -> np.ndarray:
     return np.where(found, order, best)
 
 
+@dataclass(frozen=True, slots=True, eq=False)
+class _Screen:
+    """Both sources' tables behind one screen, each row in units of its largest band."""
+
+    av: float
+    rv: float
+    first: FloatArray  # (T, B)
+    second: FloatArray  # (U, B)
+    product: FloatArray  # (T U, B)
+    ln_first: FloatArray  # (T,)
+    ln_second: FloatArray  # (U,)
+
+
+def _screen(kit: Kit, t: FloatArray, u: FloatArray, av: float, rv: float) -> _Screen:
+    colour = np.full(u.shape, np.log(POWER_REDDENING_K)) if kit.model.sources[0] == "power" else u
+    first = _through(kit.star, kit.star_reddening, t, t, av, rv)
+    second = _through(kit.further[0], kit.further_reddening[0], u, colour, av, rv)
+    top1, top2 = first.max(axis=1), second.max(axis=1)
+    g1, g2 = np.exp(first - top1[:, None]).astype(COARSE), np.exp(second - top2[:, None]).astype(COARSE)
+    product = (g1[:, None, :] * g2[None]).reshape(-1, g1.shape[1])
+    return _Screen(av, rv, g1, g2, product, top1, top2)
+
+
 def _scan_two(problem: Problem, kit: Kit, data: Weighted, errors: Errors, starts: int) -> FloatArray:
     source = kit.model.sources[0]
     t = nodes(kit.star.low, kit.star.high, STAR_NODES)
     u = nodes(kit.further[0].low, kit.further[0].high, FURTHER_NODES[source])
-    places = screens(kit, problem)
+    tables = [_screen(kit, t, u, av, rv) for av, rv in screens(kit, problem)]
     size = max(1, SCAN_CELLS // (t.size * u.size))
     out = []
     for first in range(0, len(problem), size):
         rows = np.arange(first, min(first + size, len(problem)))
-        part = Weighted(data.weight[:, rows], data.weighted[:, rows])
-        out.append(_scan_two_part(problem.take(rows), kit, part, errors.take(rows), starts, t, u, places))
+        out.append(_scan_part(problem.take(rows), kit, data.take(rows), errors.take(rows), starts, t, u, tables))
     return np.concatenate(out, axis=1)
 
 
-def _scan_two_part(
+def _scan_part(
     problem: Problem,
     kit: Kit,
     data: Weighted,
@@ -133,32 +167,60 @@ def _scan_two_part(
     starts: int,
     t: FloatArray,
     u: FloatArray,
-    places: list[tuple[float, float]],
+    tables: list[_Screen],
 ) -> FloatArray:
-    count = len(problem)
-    best = np.full((u.size, count), -np.inf)
-    kept = np.zeros((4, u.size, count))  # ln T, ln scale of the star, scale of the second relative, screen
-    source = kit.model.sources[0]
-    colour = np.full(u.shape, np.log(1000.0)) if source == "power" else u
-    for number, (av, rv) in enumerate(places):
-        first = _through(kit.star, kit.star_reddening, t, t, av, rv)
-        second = _through(kit.further[0], kit.further_reddening[0], u, colour, av, rv)
-        gain, s1, s2 = _pair_gain(problem, kit, data, errors, t, u, first, second)
-        gain = np.where(av <= problem.av_max + 1e-9, gain, -np.inf)
+    """Starts of some candidates: the peaks along the second source's parameter, then those along the star's."""
+    size = len(problem)
+    along_u, along_t = _Kept(u.size, size), _Kept(t.size, size)
+    for number, table in enumerate(tables):
+        if not (table.av <= problem.av_max + 1e-9).any():
+            continue
+        gain, s1, s2 = _pair_gain(problem, kit, data, errors, t, u, table)
+        gain = np.where(table.av <= problem.av_max + 1e-9, gain, -np.inf)
         top = gain.argmax(axis=0)  # over T: (U, M)
-        value = np.take_along_axis(gain, top[None], axis=0)[0]
-        better = value > best
-        best = np.where(better, value, best)
-        pick = [t[top], *(np.take_along_axis(s, top[None], axis=0)[0] for s in (s1, s2)), np.full(top.shape, number)]
-        kept = np.where(better, np.stack(pick), kept)
-    chosen = _peaks(best, starts)
-    ln_t, ln_s1, ln_s2, screen = (np.take_along_axis(k, chosen, axis=0) for k in kept)
-    rows = np.zeros((starts, count, WIDTH))
-    rows[:, :, LN_T], rows[:, :, LN_S], rows[:, :, X2] = ln_t, ln_s1, u[chosen]
-    rows[:, :, AV] = np.array([av for av, _ in places])[screen.astype(int)]
+        along_u.better(np.take_along_axis(gain, top[None], 0)[0], top, np.arange(u.size)[:, None], (s1, s2), number)
+        top = gain.argmax(axis=1)  # over U: (T, M)
+        along_t.better(
+            np.take_along_axis(gain, top[:, None], 1)[:, 0], np.arange(t.size)[:, None], top, (s1, s2), number
+        )
+    picked = [
+        kept.picked(_peaks(kept.gain, count)) for kept, count in ((along_u, starts), (along_t, starts + MORE_ALONG_T))
+    ]
+    i, j, scale1, scale2, screen = (np.concatenate(pair) for pair in zip(*picked, strict=True))
+    rows = np.zeros((i.shape[0], size, WIDTH))
+    rows[:, :, LN_T], rows[:, :, X2] = t[i], u[j]
+    ln_first, ln_second = (np.stack([getattr(s, name) for s in tables]) for name in ("ln_first", "ln_second"))
+    with np.errstate(divide="ignore"):
+        rows[:, :, LN_S] = np.log(np.maximum(scale1 * data.unit_jy, 1e-300)) - ln_first[screen, i]
+        ln_s2 = np.log(scale2 * data.unit_jy) - ln_second[screen, j]
+    rows[:, :, AV] = np.array([table.av for table in tables])[screen]
     rows[:, :, RV] = 3.1
-    rows[:, :, A2] = _amplitude(kit, rows, ln_s2 - ln_s1)
+    rows[:, :, A2] = _amplitude(kit, rows, ln_s2 - rows[:, :, LN_S])
     return rows
+
+
+class _Kept:
+    """The best cell along one axis of a scan, so far: its gain, indices, scales and screen."""
+
+    def __init__(self, length: int, count: int) -> None:
+        shape = (length, count)
+        self.gain = np.full(shape, -np.inf)
+        self.i, self.j, self.screen = (np.zeros(shape, np.intp) for _ in range(3))
+        self.s1, self.s2 = np.zeros(shape), np.zeros(shape)
+
+    def better(
+        self, gain: FloatArray, i: np.ndarray, j: np.ndarray, scales: tuple[FloatArray, FloatArray], screen: int
+    ) -> None:
+        """Take over the cells (i, j) where their gain is larger."""
+        row, column = np.nonzero(gain > self.gain)
+        i, j = np.broadcast_to(i, gain.shape)[row, column], np.broadcast_to(j, gain.shape)[row, column]
+        self.gain[row, column] = gain[row, column]
+        self.i[row, column], self.j[row, column], self.screen[row, column] = i, j, screen
+        self.s1[row, column], self.s2[row, column] = scales[0][i, j, column], scales[1][i, j, column]
+
+    def picked(self, chosen: np.ndarray) -> tuple[np.ndarray, ...]:
+        """Indices, scales and screens of chosen places along the axis, (starts, M) each."""
+        return tuple(np.take_along_axis(part, chosen, 0) for part in (self.i, self.j, self.s1, self.s2, self.screen))
 
 
 def _amplitude(kit: Kit, rows: FloatArray, ln_ratio: FloatArray) -> FloatArray:
@@ -178,37 +240,36 @@ def _amplitude(kit: Kit, rows: FloatArray, ln_ratio: FloatArray) -> FloatArray:
 
 
 def _pair_gain(
-    problem: Problem,
-    kit: Kit,
-    data: Weighted,
-    errors: Errors,
-    t: FloatArray,
-    u: FloatArray,
-    first: FloatArray,
-    second: FloatArray,
+    problem: Problem, kit: Kit, data: Weighted, errors: Errors, t: FloatArray, u: FloatArray, table: _Screen
 ) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Fall of chi-square (T, U, M) with the best non-negative scales, and ln of both scales."""
-    top1, top2 = first.max(axis=1), second.max(axis=1)
-    g1, g2 = np.exp(first - top1[:, None]), np.exp(second - top2[:, None])
-    a11, b1 = ((g1**2) @ data.weight)[:, None, :], (g1 @ data.weighted)[:, None, :]
-    a22, b2 = ((g2**2) @ data.weight)[None], (g2 @ data.weighted)[None]
-    cross = (g1[:, None, :] * g2[None]).reshape(-1, g1.shape[1]) @ data.weight
-    a12 = cross.reshape(t.size, u.size, -1)
+    """Fall of chi-square (T, U, M) with the best non-negative scales, and both scales in the data's units."""
+    g1, g2 = table.first, table.second
+    weight, weighted = data.weight.astype(COARSE), data.weighted.astype(COARSE)
+    a11, b1 = ((g1**2) @ weight)[:, None, :], (g1 @ weighted)[:, None, :]
+    a22, b2 = ((g2**2) @ weight)[None], (g2 @ weighted)[None]
+    a12 = (table.product @ weight).reshape(t.size, u.size, -1)
     if kit.model.bound_pair:
-        s1, s2, gain = _tied(problem, kit, t, u, (top1, top2), (a11, a12, a22, b1, b2))
+        s1, s2, gain = _tied(problem, kit, t, u, table, (a11, a12, a22, b1, b2), data.unit_jy)
     else:
-        det = np.maximum(a11 * a22 - a12**2, 1e-12 * a11 * a22 + 1e-300)
-        s1, s2 = (b1 * a22 - b2 * a12) / det, (b2 * a11 - b1 * a12) / det
-        alone1, alone2 = np.maximum(b1, 0) / (a11 + 1e-300), np.maximum(b2, 0) / (a22 + 1e-300)
-        both = (s1 > 0) & (s2 > 0)
-        only1 = b1 * alone1 >= b2 * alone2
-        s1 = np.where(both, s1, np.where(only1, alone1, 1e-9 * alone1))
-        s2 = np.where(both, s2, np.where(only1, 0.0, alone2))
-        gain = s1 * b1 + s2 * b2
+        s1, s2, gain = _two_scales(a11, a12, a22, b1, b2)
     if problem.limited.any():
-        gain = gain - _pair_penalty(problem, errors, s1, s2, g1, g2)
-    with np.errstate(divide="ignore"):
-        return gain, np.log(np.maximum(s1, 1e-300)) - top1[:, None, None], np.log(s2) - top2[None, :, None]
+        gain = gain - _pair_penalty(problem, errors, s1 * data.unit_jy, s2 * data.unit_jy, g1, g2)
+    return gain, s1, s2
+
+
+def _two_scales(
+    a11: FloatArray, a12: FloatArray, a22: FloatArray, b1: FloatArray, b2: FloatArray
+) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Best scales of two sources, neither negative, and the fall of chi-square; inputs broadcast to (T, U, M)."""
+    alone1, alone2 = np.maximum(b1, 0) / (a11 + TINY), np.maximum(b2, 0) / (a22 + TINY)
+    gain1, gain2 = b1 * alone1, b2 * alone2
+    det = np.maximum(a11 * a22 - a12 * a12, 1e-5 * a11 * a22 + TINY)
+    s1, s2 = (b1 * a22 - b2 * a12) / det, (b2 * a11 - b1 * a12) / det
+    inside = (s1 > 0) & (s2 > 0)
+    only1 = gain1 >= gain2
+    s1 = np.where(inside, s1, np.where(only1, alone1, 1e-6 * alone1))
+    s2 = np.where(inside, s2, np.where(only1, 0.0, alone2))
+    return s1, s2, np.where(inside, s1 * b1 + s2 * b2, np.maximum(gain1, gain2))
 
 
 def _pair_penalty(
@@ -224,20 +285,33 @@ def _pair_penalty(
     return penalty
 
 
-def _tied(problem: Problem, kit: Kit, t: FloatArray, u: FloatArray, tops, sums):
+def _tied(
+    problem: Problem,
+    kit: Kit,
+    t: FloatArray,
+    u: FloatArray,
+    table: _Screen,
+    sums: tuple[FloatArray, FloatArray, FloatArray, FloatArray, FloatArray],
+    unit_jy: FloatArray,
+) -> tuple[FloatArray, FloatArray, FloatArray]:
     """Both stars at one distance: one scale, drawn towards what the parallax asks for."""
     a11, a12, a22, b1, b2 = sums
     own, first = kit.ln_radius2.at(u)[0][:, 0], kit.ln_radius2.at(t)[0][:, 0]
-    ratio = np.exp(own[None, :] - first[:, None] + tops[1][None, :] - tops[0][:, None])[:, :, None]
+    ln_ratio = own[None, :] - first[:, None] + table.ln_second[None, :] - table.ln_first[:, None]
+    ratio = np.exp(np.clip(ln_ratio, -40.0, 40.0)).astype(COARSE)[:, :, None]
     a = a11 + 2 * ratio * a12 + ratio**2 * a22
     b = b1 + ratio * b2
     known = np.isfinite(problem.parallax_mas)
+    if not known.any():
+        s = np.maximum(b, 0) / (a + TINY)
+        return s, s * ratio, s * b
     row = np.zeros((t.size, WIDTH))
     row[:, LN_T] = t
     unit = parallax_of(kit, row)[0]  # mas at theta = 1
-    wish = (np.where(known, problem.parallax_mas, 1.0)[None, :] / unit[:, None]) ** 2 * np.exp(tops[0])[:, None]
-    relative = np.where(known, 2 * parallax_sigma(problem) / np.where(known, problem.parallax_mas, 1.0), np.inf)
-    pull = (np.where(known, 1.0 / (np.maximum(wish, 1e-300) * relative), 0.0) ** 2)[:, None, :]
-    s = np.maximum((b + pull * wish[:, None, :]) / (a + pull), 1e-300)
-    gain = 2 * s * b - s**2 * a - pull * (s - wish[:, None, :]) ** 2
-    return s, s * ratio, gain
+    parallax = np.where(known, problem.parallax_mas, 1.0)
+    wish = (parallax[None, :] / unit[:, None]) ** 2 * np.exp(table.ln_first)[:, None] / unit_jy
+    relative = np.where(known, 2 * parallax_sigma(problem) / parallax, np.inf)
+    pull = (np.where(known, 1.0 / (np.maximum(wish, 1e-12) * relative), 0.0) ** 2)[:, None, :].astype(COARSE)
+    wish = wish[:, None, :].astype(COARSE)
+    s = np.maximum((b + pull * wish) / (a + pull), TINY)
+    return s, s * ratio, 2 * s * b - s**2 * a - pull * (s - wish) ** 2
