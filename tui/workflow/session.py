@@ -12,7 +12,7 @@ from tui.model import CHECKS, KINDS, Band, Candidate, Evidence, Fit, Reviewer, R
 from tui.store import candidates, claims, connect, drafts, evidence, reviewers, rulings, views
 from tui.workflow.basis import read_basis
 from tui.workflow.clock import utc_now
-from tui.workflow.records import CandidateView, Filter, QueueRow, StoryLine
+from tui.workflow.records import CandidateView, Cutout, Filter, QueueRow, StoryLine
 
 if TYPE_CHECKING:
     from tui.checks import Curve
@@ -95,10 +95,12 @@ class Session:
 
     # --- the queue ---
 
-    def order(self, sort: str = "oddness", descending: bool = True, where: Filter | None = None) -> array[int]:
-        """Ids of the candidates that `where` lets through, in order, as this reader may know it."""
+    def order(
+        self, sort: str = "oddness", descending: bool = True, where: Filter | None = None, limit: int | None = None
+    ) -> array[int]:
+        """Ids of the candidates that `where` lets through, in order, as this reader may know it; the first `limit`."""
         return views.view_order(
-            self.connection, self.reader_id, sort=sort, descending=descending, where=where or Filter()
+            self.connection, self.reader_id, sort=sort, descending=descending, where=where or Filter(), limit=limit
         )
 
     def rows(self, ids: Sequence[int]) -> list[QueueRow]:
@@ -163,6 +165,12 @@ class Session:
     def candidate(self, name: str) -> Candidate:
         """What was measured of a candidate."""
         return candidates.get_candidate(self.connection, name)
+
+    def cutouts(self, name: str) -> list[Cutout]:
+        """A candidate's pictures, by band; the first row of an image is its lowest."""
+        from tui.store.sides import cutouts
+
+        return cutouts(self.connection, name)
 
     def view(self, name: str) -> CandidateView:
         """Where a candidate stands, as far as this reader may know."""
