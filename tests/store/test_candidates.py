@@ -100,7 +100,8 @@ def test_facts_of_several_tables_lie_over_one_another(queue):
 
 
 def test_facts_that_are_no_number_are_left_out(queue):
-    load(queue, Candidate("SM-1", facts={"ra": np.float64(1.0), "parallax": math.nan, "sp_type": None, "binary": np.True_}))
+    facts = {"ra": np.float64(1.0), "parallax": math.nan, "sp_type": None, "binary": np.True_}
+    load(queue, Candidate("SM-1", facts=facts))
     assert get_candidate(queue, "SM-1").facts == {"ra": 1.0, "binary": True}
 
 

@@ -24,8 +24,8 @@ from tui.store.views import view_rows
 def test_every_number_comes_back_as_it_went_in():
     fit = Fit(
         "star + dust", 0.1 + 0.2, 3, 5e-324, -math.inf, math.nan,
-        {"a": Param(1 / 3, -math.inf, math.inf, "K", True), "b": Param(math.nan, 0.0, 1e300)}, {"W3": -0.0, "J": math.nan},
-        math.inf,
+        {"a": Param(1 / 3, -math.inf, math.inf, "K", True), "b": Param(math.nan, 0.0, 1e300)},
+        {"W3": -0.0, "J": math.nan}, math.inf,
     )  # fmt: skip
     given = Evidence("dust", 4, None, (fit, fit), ("é",), {"deep": {"x": [1, None, True, "t"]}}, "digest", ("J", "W3"))
     read = evidence_from("dust", 4, "digest", None, evidence_text(given))

@@ -33,8 +33,10 @@ def full_file(templates, tmp_path_factory):
     connection = open_queue(path)
     heron, curlew = (reviewer_by_handle(connection, handle) for handle in ("heron", "curlew"))
     wave = np.array([1.0, 2.0, 3.0])
-    sides = {"neighbours": (Neighbour(4.0),), "dips": (Dip("e", "J", 0.1, 0.01),), "spectrum": Spectrum(wave, wave, wave)}
-    save_candidates(connection, [LoadRecord(Candidate("SM-0001", **sides), "side")], utc(50))
+    extra = Candidate(
+        "SM-0001", neighbours=(Neighbour(4.0),), dips=(Dip("e", "J", 0.1, 0.01),), spectrum=Spectrum(wave, wave, wave)
+    )
+    save_candidates(connection, [LoadRecord(extra, "side")], utc(50))
     save_cutout(connection, "SM-0001", Cutout("J", wave.reshape(1, 3), 1.0), utc(51))
     attach(connection, "band", "mine", b"bytes")
     walk(connection, heron, "SM-0001")
@@ -90,9 +92,9 @@ def test_no_row_is_written_over(full, table, way):
 @pytest.mark.parametrize("table", ["spectrum", "cutout", "attachment", "ruling"])
 def test_no_row_is_written_over_by_its_rowid(full, table):
     names = [name for name in columns(full, table) if name != "seq"]
-    changed = ", ".join("lower(hex(randomblob(32)))" if name in ("digest", "hash", "id") else f'"{name}"' for name in names)
-    if table in ("spectrum", "cutout"):
-        changed = changed.replace("randomblob(32)", "randomblob(16)")
+    size = 16 if table in ("spectrum", "cutout") else 32
+    fresh = f"lower(hex(randomblob({size})))"
+    changed = ", ".join(fresh if name in ("digest", "hash", "id") else f'"{name}"' for name in names)
     listed = ", ".join(f'"{name}"' for name in names)
     with pytest.raises(sqlite3.IntegrityError, match="never written twice"):
         full.execute(f"REPLACE INTO {table} (rowid, {listed}) SELECT rowid, {changed} FROM {table} LIMIT 1")
@@ -101,7 +103,8 @@ def test_no_row_is_written_over_by_its_rowid(full, table):
 def test_an_upsert_changes_no_ruling(full):
     with pytest.raises(sqlite3.IntegrityError):
         full.execute(
-            "INSERT INTO ruling SELECT * FROM ruling WHERE true LIMIT 1 ON CONFLICT (id) DO UPDATE SET ruling = 'explains'"
+            "INSERT INTO ruling SELECT * FROM ruling WHERE true LIMIT 1 "
+            "ON CONFLICT (id) DO UPDATE SET ruling = 'explains'"
         )
 
 

@@ -18,7 +18,7 @@ from tui.model import CHECKS, Settings
 from tui.store import deriving
 from tui.store.candidates import refresh_inputs
 from tui.store.chains import chain_faults, receipt, receipt_faults
-from tui.store.connect import immediate, in_memory, snapshot, write_copy
+from tui.store.connect import flush, immediate, in_memory, snapshot, write_copy
 from tui.store.digests import queue_digest
 from tui.store.inputs import derived_inputs, input_faults, wrong_attachments
 from tui.store.names import folded, ring
@@ -169,8 +169,7 @@ def backup(connection: sqlite3.Connection, path: str | os.PathLike[str]) -> None
     part = f"{path}.part"
     try:
         write_copy(connection, part)
-        with open(part, "rb") as file:
-            os.fsync(file.fileno())
+        flush(part)
         os.link(part, path) if hasattr(os, "link") else os.rename(part, path)
     except FileExistsError:
         raise StoreError(f"{path} exists and was left as it is; give another name for the backup.") from None

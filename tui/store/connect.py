@@ -238,6 +238,7 @@ def keep_copy(path: str, version: int) -> str:
     source = read_only(path)
     try:
         write_copy(source, copy)
+        flush(copy)
     except sqlite3.Error as error:
         raise StoreError(f"{copy} cannot be written ({error}), so {path} was not brought up to date.") from error
     finally:
@@ -247,8 +248,16 @@ def keep_copy(path: str, version: int) -> str:
 
 
 def read_only(path: str) -> sqlite3.Connection:
-    """A bare connection that cannot write, for copying; sqlite3.Error where the file cannot be opened."""
-    return sqlite3.connect(Path(path).absolute().as_uri() + "?mode=ro", uri=True, timeout=BUSY_SECONDS)
+    """A bare connection for copying; sqlite3.Error where the file cannot be opened.
+
+    Where no log lies beside the file it may make one, so that it can clear it away again at the end.
+    """
+    folder = os.path.dirname(os.path.abspath(path))
+    leaves_nothing = not os.path.exists(path + "-wal") and os.access(path, os.W_OK) and os.access(folder, os.W_OK)
+    mode = "rw" if leaves_nothing else "ro"
+    connection = sqlite3.connect(f"{Path(path).absolute().as_uri()}?mode={mode}", uri=True, timeout=BUSY_SECONDS)
+    connection.execute("PRAGMA query_only = ON")
+    return connection
 
 
 def in_memory() -> sqlite3.Connection:
@@ -257,13 +266,23 @@ def in_memory() -> sqlite3.Connection:
 
 
 def write_copy(source: sqlite3.Connection, path: str) -> None:
-    """Write one state of a queue to one file of its own, while others go on writing; sqlite3.Error if it fails."""
+    """Write one state of a queue to one file of its own, while others go on writing; sqlite3.Error if it fails.
+
+    Whoever means to keep the file calls `flush` on it.
+    """
     target = sqlite3.connect(path, isolation_level=None)
     try:
+        target.execute("PRAGMA synchronous = OFF")
         source.backup(target)  # all pages in one step: one state
         target.execute("PRAGMA journal_mode = DELETE").fetchone()  # nothing beside the one file
     finally:
         target.close()
+
+
+def flush(path: str) -> None:
+    """Make sure that a file is on disk."""
+    with open(path, "rb") as file:
+        os.fsync(file.fileno())
 
 
 @contextmanager
