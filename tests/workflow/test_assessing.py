@@ -56,9 +56,16 @@ def test_an_unknown_kind_is_refused(queue, calls):
 
 def test_a_new_version_of_one_check_outdates_that_check_alone(queue, calls, monkeypatch):
     assessing.assess_queue(queue, jobs=1)
-    monkeypatch.setitem(tui.checks.VERSIONS, "dust", 8)
+    monkeypatch.setitem(tui.checks.VERSIONS, "instrument", 8)
     assessing.assess_queue(queue, jobs=1)
-    assert calls[1] == (("SM-0001", "SM-0002", "SM-0003"), ("dust",))
+    assert calls[1] == (("SM-0001", "SM-0002", "SM-0003"), ("instrument",))
+
+
+def test_a_new_version_outdates_what_rests_on_it_too(queue, calls, monkeypatch):
+    assessing.assess_queue(queue, jobs=1)
+    monkeypatch.setitem(tui.checks.VERSIONS, "dips", 8)
+    assessing.assess_queue(queue, jobs=1)
+    assert calls[1][1] == (*CHECKS, "dips")
 
 
 def test_a_setting_of_physics_outdates_and_one_of_consensus_does_not(queue, calls):

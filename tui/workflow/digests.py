@@ -14,19 +14,25 @@ RELEVANT = MappingProxyType(
     | {"blend": (*_FITS, "ruwe_max", "n_searched"), "mixture": _FITS, "dips": (*_FITS, "ruwe_max")}
 )  # kind -> the settings that can change its numbers; the rules of consensus are not among them
 
+_SHARED = ("star", "dips")  # a check compares with the star alone, and asks for the dips too where they stand
+RESTS_ON = MappingProxyType(
+    {"star": ("dips",), "instrument": _SHARED, "extinction": _SHARED, "blend": _SHARED, "dust": _SHARED}
+    | {"mixture": ("star", "extinction", "blend", "dust"), "dips": ()}
+)  # kind -> the other kinds whose code has a part in its numbers
+
 
 @dataclass(frozen=True, slots=True)
 class Recipe:
     """What one kind of evidence is made with, apart from the candidate."""
 
     kind: str
-    version: int
+    versions: tuple[int, ...]  # of its own code, then of the code that it rests on
     settings: str  # digest of the relevant settings
     templates: str  # digest of grids and packaged tables
 
     def digest_of(self, input_digest: str) -> str:
         """The digest of this kind of evidence for a candidate of that input digest."""
-        return digest([self.kind, self.version, input_digest, self.settings, self.templates])
+        return digest([self.kind, self.versions, input_digest, self.settings, self.templates])
 
 
 def recipes(
@@ -34,7 +40,13 @@ def recipes(
 ) -> dict[str, Recipe]:
     """The recipe of each kind."""
     return {
-        kind: Recipe(kind, versions[kind], settings_digest(kind, settings), templates_digest) for kind in kinds
+        kind: Recipe(
+            kind,
+            tuple(versions.get(one, 0) for one in (kind, *RESTS_ON[kind])),
+            settings_digest(kind, settings),
+            templates_digest,
+        )
+        for kind in kinds
     }
 
 
