@@ -41,6 +41,33 @@ def test_dips_that_cannot_be_taken(write):
         dips(write("name,band\nA,J\n"))
 
 
+def test_light_curves_with_event_windows(write):
+    generator = np.random.default_rng(3)
+    rows = ["name,band,time,flux,error,event"]
+    for band, depth in (("g", 0.04), ("i", 0.01)):
+        for time in range(400):
+            event = "e1" if 100 <= time < 120 else ""
+            flux = 50.0 * (1 - (depth if event else 0)) + generator.normal(0, 0.25)
+            rows.append(f"A,{band},{time},{flux:.5f},0.25,{event}")
+    contents = dips(write("\n".join(rows) + "\n"))
+    g, i = contents.rows["A"]
+    # Errors of 0.5 % in each point: 20 points inside give 0.112 %, 380 outside 0.026 %, together 0.115 %.
+    assert g.depth_error == pytest.approx(0.00112, rel=0.05) and g.band == "SDSS_g" and g.event == "e1"
+    assert abs(g.depth - 0.04) < 3 * g.depth_error and abs(i.depth - 0.01) < 3 * i.depth_error
+    assert contents.refused == [] and contents.unknown_columns == []
+
+
+def test_light_curves_in_magnitudes_and_too_short(write):
+    rows = (
+        "".join(f"A,J,{10 + 0.001 * (i % 2)},\n" for i in range(10))
+        + "A,J,10.7531,e\nA,H,9,e\nA,H,9,\nA,Q,9,\nA,J,,e\n"
+    )
+    contents = dips(write("name,band,mag,event\n" + rows))
+    (dip,) = contents.rows["A"]
+    assert dip.depth == pytest.approx(0.5, abs=1e-3) and 0 < dip.depth_error < 1e-3
+    assert sorted(entry.row for entry in contents.refused) == [12, 14, 15]
+
+
 def test_neighbours(read_near, write):
     head = "name,separation[arcmin],position_angle,source,G_mag,j_m,j_msigcom,W1_flux[mJy],other\n"
     contents = read_near(

@@ -116,6 +116,13 @@ def test_no_unit_is_guessed(unit, band, is_mag, word):
         scale(unit, BANDS[band], is_mag=is_mag)
 
 
+@pytest.mark.parametrize(
+    "unit", ["10^999999999 Jy", "Jy**999999999", "Jy99999999", "Jy**1e9", "(10**99)**99 Jy", "1/0", "("]
+)
+def test_units_that_would_never_end_or_are_none(unit):
+    assert parse_unit(unit) is None
+
+
 def test_percent_errors():
     assert relative_error("%") == relative_error(" percent") == 0.01
     assert relative_error("mag") is None

@@ -6,6 +6,7 @@ A magnitude is in the band's own system unless its unit says otherwise; nothing 
 from __future__ import annotations
 
 import math
+import re
 import warnings
 from collections.abc import Mapping
 from dataclasses import dataclass
@@ -29,6 +30,8 @@ SOFTENING: Mapping[str, float] = {
 }  # fmt: skip
 
 LONGEST_UNIT = 60  # characters
+# Powers that no unit has: astropy multiplies them out, which for a great one never ends.
+GREAT_POWER = re.compile(r"(\*\*|\^)\s*\(?\s*[-+]?(\d{3,}|\d*\.?\d*e|\d+\.\d{3,})|[a-z)]\s*[-+]?\d{3,}", re.IGNORECASE)
 PLAIN_MAG = frozenset({"mag", "mags", "magnitude", "magnitudes"})
 AB_MAG = frozenset({"mag(ab)", "abmag", "ab", "ab mag", "mag ab", "mag_ab", "mag (ab)", "m_ab"})
 VEGA_MAG = frozenset({"mag(vega)", "vegamag", "vega", "vega mag", "mag vega", "mag (vega)"})
@@ -145,7 +148,7 @@ def parse_unit(text: str) -> Any | None:
     """An astropy unit, read in any of the spellings tables use; None where there is no such unit."""
     from astropy import units
 
-    if not text or len(text) > LONGEST_UNIT:
+    if not text or len(text) > LONGEST_UNIT or GREAT_POWER.search(text):
         return None
     spelled = text.replace("micron", "um").replace("microJy", "uJy").replace("muJy", "uJy")
     with warnings.catch_warnings():
