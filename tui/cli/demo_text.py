@@ -27,9 +27,10 @@ def print_summary(path: Path) -> None:
         line(f"Reviewers so far: {team}. What they ruled stays sealed until you have ruled yourself.")
         heading(f"The {SHOWN} oddest, as a new reviewer sees them")
         rows = session.rows(session.order()[:SHOWN])
-        table(LIST_HEADINGS, map(list_cells, rows), numbers=(1, 3, 9, 10))
+        table(LIST_HEADINGS, map(list_cells, rows), numbers=(1, 3, 10, 11))
         heading("Where the team stands")
-        for text in session.tally().sentences():
+        newest = max((one.last_utc for one in session.tally().reviewers), default="")
+        for text in session.tally(now=newest or None).sentences():  # its reviewers are quiet since it was made
             line(text)
     heading("Go on with")
     for command, meaning in NEXT_STEPS:

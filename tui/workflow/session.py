@@ -263,12 +263,16 @@ class Session:
         """What happened to a candidate, in time order, as far as this reader may know."""
         return views.story(self.connection, self.reader_id, name)
 
-    def tally(self) -> Tally:
-        """The team's standing, naming only candidates whose seal is open to this reader."""
+    def tally(self, now: str | None = None) -> Tally:
+        """The team's standing, naming only candidates whose seal is open to this reader.
+
+        Args:
+            now: UTC to which days of quiet are counted; None: this moment.
+        """
         from tui.store.team import open_to
         from tui.workflow import tallying
 
-        found = tallying.tally(self.connection, self.settings, now=utc_now())
+        found = tallying.tally(self.connection, self.settings, now=now or utc_now())
         return found.seen_by(open_to(self.connection, self.reviewer.id) if self.reviewer else ())
 
     def has_ruled(self) -> bool:
