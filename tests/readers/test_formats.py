@@ -105,6 +105,19 @@ def test_endings_do_not_matter_and_text_details(read, write):
     assert [(entry.row, entry.column) for entry in contents.refused] == [(1, "J_mag")]
 
 
+def test_masks_written_as_columns_of_their_own(read, tmp_path):
+    star = table()
+    for column in ("J_mag", "J_err", "W4_limit", "J_flag", "phot_g_n_obs"):
+        star[column].info.serialize_method["ecsv"] = "data_mask"
+    path = tmp_path / "masks.ecsv"
+    star.write(path)
+    contents = read(path)
+    assert contents.unknown_columns == [] and contents.refused == []
+    first, second, third, _ = ({m.band: m for m in c.measurements} for c in contents.candidates)
+    assert "J" in first and math.isnan(second["J"].error_jy) and "J" not in third and third["W4"].limit
+    assert "phot_g_n_obs" not in contents.candidates[2].facts
+
+
 def test_ecsv_aligned_by_hand(read, write):
     text = (
         "# %ECSV 1.0\n# ---\n# datatype:\n# - {name: name, datatype: string}\n"

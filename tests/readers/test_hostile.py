@@ -91,6 +91,15 @@ def test_ecsv_heads(read, write):
     assert not os.path.exists("hacked")
 
 
+def test_an_ecsv_head_that_would_grow_without_end(read, write):
+    laughs = ", ".join(["a0: &a0 [x, x]"] + [f"a{i}: &a{i} [{', '.join([f'*a{i - 1}'] * 9)}]" for i in range(1, 12)])
+    head = f"# %ECSV 1.0\n# ---\n# meta: {{{laughs}}}\n# datatype:\n# - {{name: *a11, datatype: string}}\n"
+    assert "ECSV" in refusal(read, write(head + "name\nA\n", "l.ecsv"))
+    unused = head.replace("name: *a11", "name: name")
+    started = time.monotonic()
+    assert len(read(write(unused + "name\nA\n", "l.ecsv")).candidates) == 1 and time.monotonic() - started < 5
+
+
 @pytest.mark.parametrize("share", [0.02, 0.4, 0.7, 0.75])
 def test_fits_cut_short(read, write, tmp_path, share):
     whole = fits_bytes(tmp_path)

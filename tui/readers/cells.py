@@ -70,7 +70,7 @@ def numbers(column: Column, sentinels: tuple[float, ...] = ()) -> tuple[FloatArr
     """A column as float64, shape (N,); NaN where empty, where a sentinel stands, and where the cell is bad."""
     bad: Bad = {}
     if column.is_text:
-        values, bad = _text_numbers(column.cells)
+        values, bad = _text_numbers(column.cells if column.mask is None else texts(column))
     elif column.cells.dtype.kind == "c" or column.cells.ndim != 1:
         return np.full(len(column.cells), math.nan), {0: "the cells are not plain numbers"}
     else:

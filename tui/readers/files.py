@@ -4,9 +4,11 @@ from __future__ import annotations
 
 import os
 import stat
+from dataclasses import replace
 from pathlib import Path
 
 from tui.errors import TableError
+from tui.readers.cells import truths
 from tui.readers.fitstable import read_fits
 from tui.readers.records import RawTable
 from tui.readers.texttable import read_text
@@ -38,14 +40,28 @@ def open_table(path: str | os.PathLike[str]) -> RawTable:
             raise TableError(shown, f"the file {reason}.")
     try:
         if head.startswith(b"SIMPLE  ="):
-            return read_fits(shown)
+            return with_masks(read_fits(shown))
         if head.removeprefix(b"\xef\xbb\xbf").lstrip().startswith((b"<?xml", b"<VOTABLE", b"<!--", b"<!DOCTYPE")):
-            return read_votable(shown)
-        return read_text(shown)
+            return with_masks(read_votable(shown))
+        return with_masks(read_text(shown))
     except MemoryError as error:
         raise TableError(shown, "the table needs more memory than there is: split it.") from error
     except OSError as error:
         raise TableError(shown, f"the file cannot be read ({error.strerror or error}).") from error
+
+
+def with_masks(table: RawTable) -> RawTable:
+    """The table with astropy's `X.mask` columns, where there are some, made the masks of the columns `X`."""
+    columns = dict(table.columns)
+    for name in table.columns:
+        base = name.removesuffix(".mask")
+        if base != name and base in columns:
+            hidden, bad = truths(columns.pop(name))
+            if bad:
+                raise TableError(table.path, f"column {name} must hold true or false only.")
+            own = columns[base].mask
+            columns[base] = replace(columns[base], mask=hidden if own is None else hidden | own)
+    return replace(table, columns=columns)
 
 
 def _head(shown: str) -> bytes:

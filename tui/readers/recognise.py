@@ -19,7 +19,7 @@ from tui.readers.units import relative_error, scale
 
 SAMPLE_ROWS = 200  # rows looked at to see how many letters a flag has
 VALUE_ROLES = ("mag", "flux")
-NAME_SPELLINGS = ("name", "Name", "NAME", "name_1", "Name_1")
+NAME_SPELLINGS = ("name", "Name", "NAME", "main_id", "MAIN_ID", "name_1", "Name_1")
 
 
 @dataclass(frozen=True, slots=True)

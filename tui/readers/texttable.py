@@ -85,13 +85,24 @@ def _ecsv_head(path: str, comments: list[str]) -> tuple[str, dict[str, str]]:
         with warnings.catch_warnings():
             warnings.simplefilter("ignore")
             head = meta.get_header_from_yaml(yaml_lines)
-        fields = [(str(field["name"]), str(field.get("unit") or "")) for field in head["datatype"]]
-        delimiter = str(head.get("delimiter", " "))
+        fields = [(_plain(field["name"]), _plain(field.get("unit") or "")) for field in head["datatype"]]
+        delimiter = _plain(head.get("delimiter", " "))
     except Exception as error:  # the YAML reader raises what it likes; it loads plain values only
         raise TableError(path, f"the ECSV head cannot be read ({type(error).__name__}).") from error
     if delimiter not in (" ", ","):
         raise TableError(path, "an ECSV table is cut by blanks or commas, this one is not.")
     return delimiter, dict(fields)
+
+
+def _plain(value: object) -> str:
+    """A YAML value as text; a collection, which may be of any size once written out, is none.
+
+    Raises:
+        TypeError: it is a collection.
+    """
+    if isinstance(value, (list, tuple, dict, set)):
+        raise TypeError(type(value).__name__)
+    return str(value)
 
 
 def _rows(path: str, body: str, delimiter: str) -> tuple[list[str], list[list[str]], list[int], list[Refused]]:
