@@ -145,7 +145,7 @@ def predict(kit: Kit, x: FloatArray) -> Prediction:
     for number in range(len(model.sources)):
         total = total + _add_source(kit, number, x, ratio, reddened, slopes)
     slopes[:, LN_S] = total
-    return Prediction(total, star, slopes[:, list(model.free)])
+    return Prediction(total, star, slopes[:, model.free])
 
 
 def _add_source(

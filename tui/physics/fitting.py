@@ -19,10 +19,12 @@ LOOKS = 3  # times that the whole range is scanned anew with the errors of the l
 MOVED = 0.1  # a scan holds while no band's error has moved by more than this fraction
 LOWER = 0.02  # a minimum found anew counts when its cost is lower by more
 SECOND_DUST_STEPS = (-1.4, -0.6, 0.6, 1.4)  # of ln T, where a second dust temperature is looked for
-HEATS = ((3, 100.0), (4, 15.0), (40, 0.0))  # steps of the starts that are left, and how far behind is hopeless
+HEATS = ((3, 100.0), (4, 15.0), (25, 0.0))  # steps of the starts that are left, and how far behind is hopeless
 ALIKE = 0.02  # parameters this close after a heat lead to the same minimum
+SETTLE_STEPS = 10
 COARSE = 3e-3  # of the cost: descents on the way; the last one goes on to FINE
 FINE = 1e-5
+FINE_STEPS = 20
 REST = {"dust": np.log(300.0), "star": np.log(3500.0), "compact": np.log(20000.0), "power": 1.0}
 
 
@@ -107,7 +109,7 @@ def fit(problem: Problem, model: Model, *, r_v: float = 3.1, start: FloatArray |
         again, x_again, cost_again = settle(some.take(better), kit, anew[better])
         x[rows[better]], cost[rows[better]] = x_again, cost_again
         errors = replace_rows(errors, rows[better], again)
-    x = descend(problem, kit, errors, x, tolerance=FINE).x
+    x = descend(problem, kit, errors, x, steps=FINE_STEPS, tolerance=FINE).x
     return finish(problem, kit, errors, x)
 
 
@@ -163,7 +165,7 @@ def settle(problem: Problem, kit: Kit, x: FloatArray) -> tuple[Errors, FloatArra
         some = problem.take(live)
         here = predict(kit, x[live])
         own = errors_for(some, here.flux, here.star, x[live, LN_T])
-        found = descend(some, kit, own, x[live], tolerance=COARSE)
+        found = descend(some, kit, own, x[live], steps=SETTLE_STEPS, tolerance=COARSE)
         x[live], cost[live] = found.x, found.cost
         errors = replace_rows(errors, live, own)
         chi2 = chi_square(some, kit, own, found.x, predict(kit, found.x))

@@ -61,7 +61,10 @@ def errors_for(problem: Problem, total: FloatArray, star: FloatArray, ln_t: Floa
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Residuals:
-    """Residuals (M, B + 1) whose squares sum to -2 ln L less its constant, and derivatives (M, P, B + 1)."""
+    """Residuals (M, R) whose squares sum to -2 ln L less its constant, and derivatives (M, P, R).
+
+    R is the number of bands, and one more for a bound pair's parallax.
+    """
 
     value: FloatArray
     slopes: FloatArray
@@ -75,7 +78,9 @@ class Residuals:
 def residuals(problem: Problem, kit: Kit, errors: Errors, x: FloatArray, prediction: Prediction) -> Residuals:
     """Detections, limits and, for a bound pair, the parallax."""
     m, b = problem.flux_jy.shape
-    value, slopes = np.zeros((m, b + 1)), np.zeros((m, prediction.slopes.shape[1], b + 1))
+    width = b + kit.model.bound_pair
+    value = np.empty((m, width))
+    slopes = np.empty((m, prediction.slopes.shape[1], width))
     pull = (problem.flux_jy - prediction.flux) / errors.sigma
     value[:, :b] = np.where(problem.detected, pull, 0.0)
     gain = np.where(problem.detected, -1.0 / errors.sigma, 0.0)
@@ -83,7 +88,7 @@ def residuals(problem: Problem, kit: Kit, errors: Errors, x: FloatArray, predict
         root, dpull = limit_residual(pull[problem.limited])
         value[:, :b][problem.limited] = root
         gain[problem.limited] = -dpull / errors.sigma[problem.limited]
-    slopes[:, :, :b] = prediction.slopes * gain[:, None, :]
+    np.multiply(prediction.slopes, gain[:, None, :], out=slopes[:, :, :b])
     if errors.whiten is not None:
         value[:, :b] = np.einsum("mbc,mc->mb", errors.whiten, value[:, :b])
         slopes[:, :, :b] = np.einsum("mbc,mpc->mpb", errors.whiten, slopes[:, :, :b])
@@ -113,6 +118,7 @@ def _add_parallax(problem: Problem, kit: Kit, x: FloatArray, value: FloatArray, 
     model, slope_t = parallax_of(kit, x)
     sigma = np.where(known, parallax_sigma(problem), 1.0)
     value[:, -1] = np.where(known, (problem.parallax_mas - model) / sigma, 0.0)
+    slopes[:, :, -1] = 0.0
     relative = np.where(known, -model / sigma, 0.0)
     for place, column in enumerate(kit.model.free):
         if column == LN_T:

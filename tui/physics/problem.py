@@ -62,6 +62,8 @@ def combine(measurements: Sequence[Measurement]) -> Combined:
     A detection without error counts as one with 10 % error, since its true one is unknown.
     """
     detections = [m for m in measurements if not m.limit]
+    if len(detections) == 1 and detections[0].error_jy > 0:
+        return Combined(detections[0].flux_jy, detections[0].error_jy, False, 1, np.nan)
     if not detections:
         best = min(measurements, key=lambda m: m.flux_jy)
         return Combined(best.flux_jy, best.flux_jy / best.nsigma, True, len(measurements), np.nan)

@@ -102,7 +102,7 @@ class _Ray:
         held = np.zeros((some.size, WIDTH), bool)
         held[place, column] = True
         part, errors = self.batch.problem.take(row), self.batch.errors.take(row)
-        cost = descend(part, self.batch.kit, errors, start, held=held, steps=12, tolerance=1e-2).cost
+        cost = descend(part, self.batch.kit, errors, start, held=held, steps=6, tolerance=1e-2).cost
         return np.sqrt(np.maximum(cost - self.batch.cost[row], 0.0) / self.goal[some])
 
 

@@ -64,15 +64,15 @@ class Reddening:
         bt, dbt = _basis(t_unit, self.coefficients.shape[0])
         ba, dba = _basis(a_unit, self.coefficients.shape[1])
         if self.coefficients.shape[2] == 1:
-            shape, dt, da = (_tensor(left, right, self.coefficients[:, :, 0]) for left, right in ((bt, ba), (dbt, ba), (bt, dba)))
+            lefts, rights = (bt, dbt, bt), (ba, ba, dba)
+            shape, dt, da = _tensors(lefts, rights, self.coefficients[:, :, 0])
             dr = None
         else:
             low, high = self.inverse_rv
             br, dbr = _basis(np.clip(_unit(1.0 / r_v, low, high), -1, 1), self.coefficients.shape[2])
-            shape, dt, da, dr = (
-                _tensor3(left, middle, right, self.coefficients)
-                for left, middle, right in ((bt, ba, br), (dbt, ba, br), (bt, dba, br), (bt, ba, dbr))
-            )
+            pairs = [_outer(*pair) for pair in ((bt, ba), (dbt, ba), (bt, dba))]
+            merged = self.coefficients.reshape(pairs[0].shape[1], *self.coefficients.shape[2:])
+            shape, dt, da, dr = _tensors((*pairs, pairs[0]), (br, br, br, dbr), merged)
             dr = av[:, None] * dr * (-2.0 / (high - low) / r_v**2)[:, None]
         width_t = 2.0 / (self.ln_t[1] - self.ln_t[0])
         width_a = (2.0 / top / (AV_SCALE + av))[:, None]
@@ -102,14 +102,17 @@ def _derivative_matrix(count: int) -> FloatArray:
     return matrix
 
 
-def _tensor(left: FloatArray, right: FloatArray, coefficients: FloatArray) -> FloatArray:
-    product = (left[:, :, None] * right[:, None, :]).reshape(left.shape[0], -1)
-    return product @ coefficients.reshape(product.shape[1], -1)
+def _outer(left: FloatArray, right: FloatArray) -> FloatArray:
+    """Row by row products, (M, L R)."""
+    return (left[:, :, None] * right[:, None, :]).reshape(left.shape[0], -1)
 
 
-def _tensor3(left: FloatArray, middle: FloatArray, right: FloatArray, coefficients: FloatArray) -> FloatArray:
-    pair = (left[:, :, None] * middle[:, None, :]).reshape(left.shape[0], -1)
-    return _tensor(pair, right, coefficients.reshape(pair.shape[1], right.shape[1], -1))
+def _tensors(lefts: Sequence[FloatArray], rights: Sequence[FloatArray], coefficients: FloatArray) -> list[FloatArray]:
+    """Sums of left_i right_j c_ij, (M, B) for each pair of bases, in one matrix product."""
+    count, m = len(lefts), lefts[0].shape[0]
+    product = np.concatenate([_outer(left, right) for left, right in zip(lefts, rights, strict=True)])
+    summed = product @ coefficients.reshape(product.shape[1], -1)
+    return list(summed.reshape(count, m, -1))
 
 
 def expand_reddening(

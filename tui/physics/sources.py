@@ -4,13 +4,14 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from functools import cached_property
 
 import numpy as np
 
 from tui.model import FloatArray
 
 
-@dataclass(frozen=True, slots=True, eq=False)
+@dataclass(frozen=True, eq=False)
 class SourceGrid:
     """ln of band flux density per squared angular radius over an even grid of ln T (or of a slope).
 
@@ -35,17 +36,23 @@ class SourceGrid:
             self, ln_flux=np.ascontiguousarray(self.ln_flux[:, index]), slope=np.ascontiguousarray(self.slope[:, index])
         )
 
+    @cached_property
+    def pieces(self) -> FloatArray:
+        """Cubic coefficients of every piece, shape (N - 1, 4 B): constant, linear, square, cube."""
+        y0, y1, m0, m1 = self.ln_flux[:-1], self.ln_flux[1:], self.slope[:-1], self.slope[1:]
+        rise = y1 - y0
+        return np.concatenate([y0, m0, 3 * rise - 2 * m0 - m1, m0 + m1 - 2 * rise], axis=1)
+
     def at(self, x: FloatArray) -> tuple[FloatArray, FloatArray]:
         """ln flux and its derivative with x, each (M, B), at x (M,); x is held inside the table."""
-        place = np.clip((x - self.low) / self.step, 0.0, self.ln_flux.shape[0] - 1.000001)
+        last = self.ln_flux.shape[0] - 1.000001
+        place = np.minimum(np.maximum((x - self.low) / self.step, 0.0), last)
         left = place.astype(np.intp)
         t = (place - left)[:, None]
-        y0, y1 = self.ln_flux[left], self.ln_flux[left + 1]
-        m0, m1 = self.slope[left], self.slope[left + 1]
-        rise = y1 - y0
-        a, b = 3 * rise - 2 * m0 - m1, m0 + m1 - 2 * rise
-        value = y0 + t * (m0 + t * (a + t * b))
-        return value, (m0 + t * (2 * a + 3 * t * b)) / self.step
+        c0, c1, c2, c3 = self.pieces[left].reshape(x.size, 4, -1).transpose(1, 0, 2)
+        cube = t * c3
+        value = c0 + t * (c1 + t * (c2 + cube))
+        return value, (c1 + t * (2.0 * c2 + 3.0 * cube)) / self.step
 
 
 def source_grid(name: str, x: FloatArray, ln_flux: FloatArray) -> SourceGrid:
