@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 
 from tui.cli.printing import NOTHING, figure, heading, line, signed, table
-from tui.model import CHECK_TITLES, CHECKS, Evidence, Fit, Measurement, Param
+from tui.model import CHECK_TITLES, CHECKS, Dip, Evidence, Fit, Measurement, Neighbour, Param
 from tui.workflow.showing import Dossier
 
 ADEQUATE = {True: "adequate: some fit explains the data", False: "not adequate: no fit explains the data"}
@@ -18,6 +18,7 @@ def print_dossier(found: Dossier) -> None:
     line(f"{found.candidate.name}   outcome: {found.view.outcome}   {place(found.candidate.facts)}".rstrip())
     line(oddness_sentence(found.oddness))
     print_measurements(found)
+    print_neighbours(found.candidate.neighbours)
     for check in CHECKS:
         print_check(found, check)
     for kind, title in (("mixture", "mixture bound"), ("dips", "dips")):
@@ -25,6 +26,33 @@ def print_dossier(found: Dossier) -> None:
         if evidence is not None and (evidence.fits or evidence.cautions or evidence.facts):
             heading(f"{title}: {adequacy_words(evidence)}")
             print_evidence(evidence)
+            print_depths(found.candidate.dips if kind == "dips" else ())
+
+
+def print_neighbours(neighbours: Sequence[Neighbour]) -> None:
+    """One row a neighbouring source, nearest first."""
+    if not neighbours:
+        return
+    heading("neighbours")
+    rows = [
+        (figure(one.separation_arcsec, 3), figure(one.position_angle_deg, 3), one.source or NOTHING, fluxes_words(one))
+        for one in neighbours
+    ]
+    table(("separation (arcsec)", "position angle (deg)", "source", "flux (mJy)"), rows, numbers=(0, 1))
+
+
+def fluxes_words(one: Neighbour) -> str:
+    """The neighbour's flux densities by band."""
+    return "; ".join(f"{band} {figure(1000.0 * flux)}" for band, flux in one.fluxes_jy.items()) or NOTHING
+
+
+def print_depths(dips: Sequence[Dip]) -> None:
+    """One row a band of a dimming event: the share of the flux lost."""
+    if dips:
+        rows = [
+            (one.event, one.band, figure(one.depth), figure(one.depth_error, 2), one.epoch or NOTHING) for one in dips
+        ]
+        table(("event", "band", "depth", "error", "epoch"), rows, numbers=(2, 3))
 
 
 def place(facts: Mapping[str, object]) -> str:
@@ -84,9 +112,20 @@ def print_evidence(evidence: Evidence) -> None:
     print_fits(evidence.fits)
     for name, value in evidence.facts.items():
         if isinstance(value, (str, int, float, bool)):
-            line(f"{name.replace('_', ' ')}: {figure(value) if isinstance(value, float) else value}")
+            line(f"{name.replace('_', ' ')}: {fact_words(value)}")
     for caution in evidence.cautions:
         line(f"caution: {caution}")
+
+
+def fact_words(value: object) -> str:
+    """A fact as text.
+
+    >>> fact_words(True), fact_words(0.25), fact_words(3)
+    ('yes', '0.2500', '3')
+    """
+    if isinstance(value, bool):
+        return "yes" if value else "no"
+    return figure(value) if isinstance(value, float) else str(value)
 
 
 def print_fits(fits: Sequence[Fit]) -> None:

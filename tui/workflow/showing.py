@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
@@ -12,6 +12,8 @@ from tui.workflow.records import CandidateView
 
 if TYPE_CHECKING:
     from tui.workflow.session import Session
+
+DIP_PARTS = ("band", "depth", "depth_error", "epoch")
 
 
 @dataclass(frozen=True, slots=True)
@@ -33,7 +35,7 @@ class Dossier:
             "measurements": [measurement_dict(one) for one in self.measurements],
             "checks": {check: self.check_dict(check) for check in CHECKS},
             "mixture": evidence_dict(self.evidence.get("mixture")),
-            "dips": [dip_dict(dip) for dip in self.candidate.dips],
+            "dips": dip_dicts(self.candidate.dips, self.evidence.get("dips")),
         }
 
     def check_dict(self, check: str) -> dict[str, Any]:
@@ -68,13 +70,11 @@ def dossier(session: Session, name: str) -> Dossier:
 
 
 def oddness_dict(star: Evidence | None) -> dict[str, Any]:
-    """Oddness in sigma beside the band of the largest pull and that pull."""
-    if star is None:
-        return {}
-    from tui.checks import oddness
+    """Oddness in sigma beside the band of the largest pull and that pull, as the queue lists them."""
+    from tui.store.deriving import oddness_of
 
-    found = oddness(star)
-    return {"sigma": found.sigma, "band": found.band, "pull": found.pull}
+    sigma, band, pull = oddness_of(star)
+    return {} if sigma is None else {"sigma": sigma, "band": band, "pull": pull}
 
 
 def evidence_dict(evidence: Evidence | None) -> dict[str, Any]:
@@ -120,6 +120,25 @@ def measurement_dict(one: Measurement) -> dict[str, Any]:
     return {name: plain(getattr(one, name)) for name in names}
 
 
-def dip_dict(dip: Dip) -> dict[str, Any]:
-    """One dimming event in one band, NaN as null."""
-    return {name: plain(getattr(dip, name)) for name in ("event", "band", "depth", "depth_error", "epoch")}
+def dip_dicts(dips: Iterable[Dip], evidence: Evidence | None) -> list[dict[str, Any]]:
+    """One object an event: its depths, its fits, and, for the most significant, the facts of the evidence."""
+    events: dict[str, list[Dip]] = {}
+    for dip in dips:
+        events.setdefault(dip.event, []).append(dip)
+    names = evidence.facts.get("events", []) if evidence else []
+    ordered = [name for name in names if name in events] + [name for name in events if name not in names]
+    return [event_dict(name, events[name], evidence, ordered) for name in ordered]
+
+
+def event_dict(name: str, dips: Iterable[Dip], evidence: Evidence | None, events: Sequence[str]) -> dict[str, Any]:
+    """One dimming event."""
+    label = f" ({name})" if len(events) > 1 else ""
+    fits = [fit_dict(fit) for fit in evidence.fits if fit.model.endswith(label)] if evidence else []
+    return {
+        "event": name,
+        "stands": bool(evidence) and name in evidence.facts.get("standing_events", []),
+        "depths": [plain({part: getattr(dip, part) for part in DIP_PARTS}) for dip in dips],
+        "fits": [fit | {"model": fit["model"].removesuffix(label)} for fit in fits],
+        "cautions": [text for text in evidence.cautions if text.startswith(f"{name}:")] if evidence else [],
+        "facts": plain(evidence.facts) if evidence and name == events[0] else {},
+    }
