@@ -146,7 +146,7 @@ class FakeSession:
         self.other: dict[str, list[RulingLine]] = {}
         self.log: list[Ruling] = []
         self.claims: set[str] = set()
-        self.later: list[str] = []
+        self.later: set[str] = set()
         self.drafts: dict[tuple[str, str], str] = {}
         self.place: tuple[str, str] | None = None
         self.fail: Exception | None = None
@@ -172,7 +172,7 @@ class FakeSession:
 
     # --- the queue ---
 
-    def order(self, sort="oddness", descending=True, where=None):
+    def order(self, sort="oddness", descending=True, where=None, limit=None):
         if self.fail:
             raise self.fail
         self.ordered_in.append(threading.get_ident())
@@ -181,7 +181,7 @@ class FakeSession:
         keys = {"oddness": lambda row: row.oddness, "name": lambda row: row.name, "ruled": lambda row: row.ruled,
                 "outcome": lambda row: row.outcome}  # fmt: skip
         rows.sort(key=keys[sort], reverse=descending)
-        return array("q", [row.id for row in rows])
+        return array("q", [row.id for row in rows[:limit]])
 
     def lets_through(self, row: QueueRow, where: Filter) -> bool:
         if where.unresolved and row.states[where.unresolved] not in {"open", "split", "todo"}:
@@ -233,20 +233,24 @@ class FakeSession:
     def claim_next(self, skip=()):
         name = self.next_for_me(skip)
         if name is not None:
-            self.claim(name)
+            self.claims.add(name)
         return name
 
     def claim(self, name):
         self.claims.add(name)
+        return True
+
+    def release_all(self):
+        self.claims.clear()
+
+    def put_off(self, name):
+        self.later.add(name)
+
+    def take_up(self, name):
+        self.later.discard(name)
 
     def release(self, name):
         self.claims.discard(name)
-
-    def put_off(self, name):
-        self.later.append(name)
-
-    def take_up(self, name):
-        self.later = [one for one in self.later if one != name]
 
     # --- one candidate ---
 
@@ -343,9 +347,9 @@ class MillionSession(FakeSession):
         super().__init__([])
         self.fetched = 0
 
-    def order(self, sort="oddness", descending=True, where=None):
-        ids = array("q", range(self.COUNT))
-        return ids if descending else array("q", reversed(ids))
+    def order(self, sort="oddness", descending=True, where=None, limit=None):
+        ids = range(limit or self.COUNT)
+        return array("q", ids if descending else reversed(ids))
 
     def rows(self, ids):
         self.fetched += len(ids)

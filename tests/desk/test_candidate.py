@@ -13,6 +13,14 @@ from tui.model import CHECKS
 NAME = "SM-0001"
 
 
+@pytest.fixture(autouse=True)
+def any_terminal(monkeypatch):
+    """A terminal that can draw braille, whatever the tests run in."""
+    monkeypatch.delenv("LC_ALL", raising=False)
+    monkeypatch.setenv("LC_CTYPE", "C.UTF-8")
+    monkeypatch.setenv("TERM", "xterm-256color")
+
+
 @pytest.fixture
 def on_candidate(drive, settled):
     """Run steps on a candidate's page: `on_candidate(session, steps, name=..., keys=...)`."""
@@ -110,7 +118,7 @@ def test_later_skips_for_good_and_says_when_nothing_is_left(fake_session, on_can
     async def steps(app, screen, press):
         await press("l")
         assert screen.walk.name == "SM-0002"
-        assert fake_session.later == [NAME]
+        assert list(fake_session.later) == [NAME]
         await press("l")
         assert screen.walk.name == "SM-0002" and "Nothing else needs you" in screen_text(app)
 

@@ -11,6 +11,14 @@ from tui.desk.screens.candidate import CandidateScreen
 SIZES = ((80, 24), (120, 40), (200, 60))
 
 
+@pytest.fixture(autouse=True)
+def any_terminal(monkeypatch):
+    """A terminal that can draw braille, whatever the tests run in."""
+    monkeypatch.delenv("LC_ALL", raising=False)
+    monkeypatch.setenv("LC_CTYPE", "C.UTF-8")
+    monkeypatch.setenv("TERM", "xterm-256color")
+
+
 @pytest.fixture
 def page(drive, settled, screen_text):
     """`page(session, name, keys, size) -> text` of the candidate's page after some keys."""
@@ -106,3 +114,9 @@ def test_mouse_picks_a_point_a_check_and_a_ruling(fake_session, drive, settled, 
         assert screen.walk.chosen == "unclear"
 
     drive(fake_session, steps)
+
+
+def test_bare_console_is_drawn_in_plain_letters(fake_session, page, monkeypatch):
+    monkeypatch.setenv("TERM", "linux")
+    text = page(fake_session, "SM-0001", ["d"])
+    assert text.isascii() and "aaa star" in text

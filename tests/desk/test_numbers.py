@@ -25,7 +25,7 @@ NAN = math.nan
         (Param(2e-5, 1e-5, 3e-5), "0.000020 +-0.000010"),
         (Param(5000.0, NAN, NAN), "5000"),
         (Param(NAN, NAN, NAN), "--"),
-        (Param(1.0, -math.inf, 2.0), "1.0 +1.0-?"),
+        (Param(1.0, -math.inf, 2.0), "1.0 +1.0 -?"),
     ],
 )
 def test_value_is_written_as_far_as_its_error_reaches(param, text):

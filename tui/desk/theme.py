@@ -40,6 +40,13 @@ _GROUNDS = {
     "contrast": dict(background="#000000", surface="#000000", panel="#101010", foreground="#ffffff"),
     "terminal": dict.fromkeys(("background", "surface", "panel", "foreground"), "ansi_default"),
 }
+_ANSI = {  # what Textual's own style sheets ask of a theme of sixteen colours
+    "ansi-background": "ansi_default",
+    "ansi-foreground": "ansi_default",
+    "border-blurred": "ansi_default",
+    "block-cursor-background": "ansi_blue",
+    "block-cursor-foreground": "ansi_default",
+}
 _DESCRIPTIONS = MappingProxyType(
     {
         "dark": "lamplight on slate",
@@ -96,4 +103,4 @@ def _text_entry(colours: dict[str, str], ansi: bool) -> dict[str, str]:
         "scrollbar-hover": colours["quiet"],
         "scrollbar-active": colours["attention"],
         "scrollbar-background": "ansi_default" if ansi else "transparent",
-    }
+    } | (_ANSI if ansi else {})

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Sequence
 from dataclasses import replace
 from pathlib import PurePath
@@ -25,7 +26,7 @@ from tui.desk.session_thread import SessionThread
 from tui.desk.widgets.note import NoteEditor
 from tui.desk.widgets.rows import Row
 from tui.desk.widgets.rows_view import RowsView
-from tui.desk.widgets.spectrum_plot import SpectrumPlot
+from tui.desk.widgets.spectrum_plot import SpectrumPlot, braille_works
 
 if TYPE_CHECKING:
     from tui.workflow.session import Session
@@ -62,7 +63,7 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
         """Checks and question, plot and numbers (or a further page), note, ruling and keys."""
         yield RowsView(lambda width, height: draw_head(self.walk, width, height, self._right()), id="walk-head")
         with Horizontal(id="walk-middle"):
-            yield SpectrumPlot(id="walk-plot")
+            yield SpectrumPlot(unicode=braille_works(os.environ), id="walk-plot")
             yield RowsView(lambda width, height: draw_numbers(self.walk, width, height), id="walk-numbers")
         yield RowsView(lambda width, height: page_rows(self.walk, width) if self.walk.page else [], scrolls=True, id="walk-page")
         yield NoteEditor(id="walk-note")
@@ -113,11 +114,16 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
 
     def draw(self) -> None:
         """Everything, from the state of the walk."""
-        walk = self.walk
+        plot = self.walk.redrawn()
         self.lay_out(*self.size)
-        self.query_one("#walk-plot", SpectrumPlot).show(walk.plot(), walk.plot_view)
+        self.query_one("#walk-plot", SpectrumPlot).show(plot, self.walk.plot_view)
         for part in ("#walk-head", "#walk-numbers", "#walk-page", "#walk-foot"):
             self.query_one(part, RowsView).redraw()
+
+    def draw_view(self) -> None:
+        """Another part of the plot, or another point of it: the numbers stay."""
+        self.query_one("#walk-plot", SpectrumPlot).show(self.walk.drawn, self.walk.plot_view)
+        self.draw_foot()
 
     def draw_foot(self) -> None:
         """The last lines only, with as many rows as they need now."""
@@ -220,7 +226,7 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
     def pick_point(self, message: SpectrumPlot.PointPicked) -> None:
         """The mouse puts the cursor on a point."""
         self.walk.plot_view = replace(self.walk.plot_view, cursor=message.index)
-        self.draw()
+        self.draw_view()
 
     @on(SpectrumPlot.Zoomed)
     def zoom_by_wheel(self, message: SpectrumPlot.Zoomed) -> None:

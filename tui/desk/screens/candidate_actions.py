@@ -27,24 +27,24 @@ class MovesThroughPlot:
     def action_point(self: CandidateScreen, step: int) -> None:
         """The neighbouring point, told in words."""
         if self.walk.page == 0:
-            self.walk.plot_view = self.walk.plot_view.stepped(self.walk.plot(), step)
-            self.draw()
+            self.walk.plot_view = self.walk.plot_view.stepped(self.walk.drawn, step)
+            self.draw_view()
 
     def action_zoom(self: CandidateScreen, direction: int) -> None:
         """Nearer or farther, about the cursor."""
         factor = NEARER if direction > 0 else 1 / NEARER
-        self.walk.plot_view = self.walk.plot_view.zoomed(self.walk.plot(), factor)
-        self.draw()
+        self.walk.plot_view = self.walk.plot_view.zoomed(self.walk.drawn, factor)
+        self.draw_view()
 
     def action_pan(self: CandidateScreen, direction: int) -> None:
         """Along the wavelengths, when zoomed."""
-        self.walk.plot_view = self.walk.plot_view.panned(self.walk.plot(), PAN * direction)
-        self.draw()
+        self.walk.plot_view = self.walk.plot_view.panned(self.walk.drawn, PAN * direction)
+        self.draw_view()
 
     def action_quantity(self: CandidateScreen) -> None:
         """F_nu or nu F_nu."""
         self.walk.plot_view = replace(self.walk.plot_view, nu_fnu=not self.walk.plot_view.nu_fnu)
-        self.draw()
+        self.draw_view()
 
     def action_plot(self: CandidateScreen) -> None:
         """The plot alone; from a page, the plot with the numbers."""

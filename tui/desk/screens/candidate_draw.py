@@ -30,6 +30,7 @@ if TYPE_CHECKING:
 
 READER_ONLY = "you read without a handle. To rule: plainlight join QUEUE HANDLE"
 WAITING = "computing the evidence: rulings open when the numbers are here"
+SPLIT = "The rulings on this check are split: page 8 shows them side by side, and you may rule once more."
 KEY_ROWS = 2
 
 
@@ -113,10 +114,12 @@ def advice(walk: Walk) -> tuple[str, str, tuple[str, ...], str]:
     point = ""
     measurement = walk.measurement_under_cursor()
     if measurement is not None and walk.plot_view.cursor is not None and walk.page == 0:
-        point = point_words(walk.plot(), walk.plot_view.cursor, measurement)
+        point = point_words(walk.drawn, walk.plot_view.cursor, measurement)
     stale = walk.loaded.view.stale.get(walk.check, "") if walk.loaded else ""
-    caution = f"Your ruling is stale: {stale}." if stale else caution_line(walk.check, walk.evidence)
-    return walk.message, point, look_at(walk.check, walk.evidence, walk.fit_index), caution
+    is_split = walk.loaded is not None and walk.loaded.view.states.get(walk.check) == "split"
+    caution = f"Your ruling is stale: {stale}." if stale else SPLIT if is_split else caution_line(walk.check, walk.evidence)
+    look = look_at(walk.check, walk.fit) if walk.own_evidence is not None else ("",)
+    return walk.message, point, look, caution
 
 
 def advice_height(walk: Walk, width: int) -> int:
@@ -149,7 +152,7 @@ def _compared_rows(walk: Walk, width: int) -> list[Row]:
 
 def points_table(walk: Walk, width: int) -> list[Row]:
     """Every drawn point by wavelength, with its pull as a number and a bar."""
-    points = sorted(walk.plot().points, key=lambda point: point.wave_um)
+    points = sorted(walk.drawn.points, key=lambda point: point.wave_um)
     rows = [row((f" {'band':<8}{'micron':>8}{'mJy':>12}{'error':>10}{'pull':>8}", "head"))]
     for point in points:
         flux = f"{'<' if point.limit else ''}{number(point.flux_jy * 1e3)}"

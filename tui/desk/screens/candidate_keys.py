@@ -7,6 +7,7 @@ from collections.abc import Mapping
 from tui.desk.keys import PLACES, shown
 from tui.desk.screens.walk import Walk
 from tui.desk.widgets.numbers import param_name
+from tui.model import CHECK_TITLES
 
 Entry = tuple[str, str, str]  # keys, what they do, the action of a click
 
@@ -67,7 +68,7 @@ def offered(walk: Walk, keymap: Mapping[str, str]) -> list[Entry]:
         if walk.loaded is not None and walk.check in walk.loaded.view.own:
             entries.insert(place, (_keys("withdraw", keymap), "withdraw", "withdraw()"))
     if walk.compared:
-        entries = [(keys, f"without {walk.compared}" if label == "compare" else label, action) for keys, label, action in entries]
+        entries = [(keys, f"without {CHECK_TITLES[walk.compared]}" if label == "compare" else label, action) for keys, label, action in entries]
     return entries
 
 

@@ -57,18 +57,15 @@ def strong_pulls(fit: Fit) -> dict[str, float]:
     return dict(sorted(strong.items(), key=lambda item: -abs(item[1])))
 
 
-def look_at(check: str, evidence: Mapping[str, Evidence], index: int = 0) -> tuple[str, ...]:
-    """Where the plotted fit is weakest, or where it would show first: a place to look, never a verdict.
+def look_at(check: str, fit: Fit | None) -> tuple[str, ...]:
+    """Where the drawn fit is weakest, or where it would show first: a place to look, never a verdict.
 
     Returns:
         The same said at less and less length, for whoever has less room.
     """
-    own = evidence.get(check)
-    if own is None:
-        return ("",)
-    if not own.fits or index >= len(own.fits):
+    if fit is None:
         return ("the measurements themselves: nothing could be fitted here.",)
-    fit, hint = own.fits[index], HINTS[check]
+    hint = HINTS[check]
     strong = strong_pulls(fit)
     if strong:
         named = [f"{short_band(band)} {signed(pull)}" for band, pull in strong.items()]

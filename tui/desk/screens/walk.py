@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 from tui.desk.widgets.plot_data import PlotData, PlotView
 from tui.desk.widgets.plot_points import fit_of, plot_curves, plot_points, spectrum_curve
-from tui.model import CHECKS, Band, Candidate, Evidence, Fit, Measurement, Param
+from tui.model import CHECK_TITLES, CHECKS, Band, Candidate, Evidence, Fit, Measurement, Param
 from tui.workflow.records import CandidateView, StoryLine
 
 if TYPE_CHECKING:
@@ -72,6 +72,7 @@ class Walk:
     compared: str = ""
     hand: Hand | None = None
     recording: bool = False
+    drawn: PlotData = field(default_factory=PlotData)  # what the plot shows, as `redrawn` last made it
 
     @property
     def note(self) -> str:
@@ -108,10 +109,12 @@ class Walk:
         self.message = self.message if keep_message else ""
         self.hand, self.asking_compare = None, False
 
-    def plot(self) -> PlotData:
-        """What the plot shows now."""
-        if self.loaded is None:
-            return PlotData(message="reading ...")
+    def redrawn(self) -> PlotData:
+        """What the plot is to show now."""
+        self.drawn = self._plot() if self.loaded is not None else PlotData(message="reading ...")
+        return self.drawn
+
+    def _plot(self) -> PlotData:
         own = self.own_evidence
         curve = self.hand.curve if self.hand and self.hand.curve else self.curves.get((self.check, self.fit_index))
         other = self.evidence.get(self.compared) if self.compared else None
@@ -123,7 +126,7 @@ class Walk:
             dropped=self.hand.dropped if self.hand else (),
             other=other.best if other else None,
         )
-        curves = plot_curves(curve, self.curves.get((self.compared, 0)), self.compared) + spectrum_curve(self.loaded.candidate)
+        curves = plot_curves(curve, self.curves.get((self.compared, 0)), CHECK_TITLES.get(self.compared, "")) + spectrum_curve(self.loaded.candidate)
         return PlotData(points, curves, self._plot_message(own))
 
     def measurement_under_cursor(self) -> Measurement | None:

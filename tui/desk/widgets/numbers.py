@@ -179,8 +179,8 @@ def fits_table(width: int, fits: Sequence[Fit], shown: int) -> list[Row]:
     columns = [[f"{fit.chi2:.1f}" for fit in fits], [str(fit.dof) for fit in fits],
                [number(fit.p, 1) for fit in fits], [f"{fit.bic:.1f}" for fit in fits]]  # fmt: skip
     aligned = [decimal_aligned(column) for column in columns]
-    room = max(12, min(24, width - 33))
-    rows = [row((f" {'fits of this check':<{room}}{'chi2':>9}{'dof':>5}{'p':>8}{'BIC':>9}", "head"))]
+    room = max(8, min(24, width - 33))
+    rows = [row((f" {('fits of this check' if room >= 18 else 'its fits'):<{room}}{'chi2':>9}{'dof':>5}{'p':>8}{'BIC':>9}", "head"))]
     for line, fit in enumerate(fits):
         cells = "".join(cell[line].rjust(size) for cell, size in zip(aligned, (9, 5, 8, 9), strict=True))
         mark = ">" if line == shown else " "

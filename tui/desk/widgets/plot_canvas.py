@@ -14,12 +14,12 @@ from tui.model import FloatArray
 # Order is weight: where two things fall on one cell, the later one gives the cell its style.
 STYLES = (
     "plain", "grid", "axis", "zero", "spectrum", "component-a", "component-b", "component-c", "component-d", "other",
-    "total", "width", "bar", "stem", "label", "limit", "dropped", "point", "far", "cursor",
+    "total", "width", "bar", "stem", "cursor-line", "label", "limit", "dropped", "point", "far", "cursor",
 )  # fmt: skip
 INDEX = {name: index for index, name in enumerate(STYLES)}
 PLAIN_MARKS = {"grid": ".", "axis": "|", "zero": "-", "spectrum": ",", "component-a": "a", "component-b": "b",
                "component-c": "c", "component-d": "d", "other": ":", "total": ".", "width": "-", "bar": "|",
-               "stem": "|", "cursor": ":"}  # fmt: skip
+               "stem": "|", "cursor-line": ":"}  # fmt: skip
 BITS = np.array([[0x01, 0x08], [0x02, 0x10], [0x04, 0x20], [0x40, 0x80]], dtype=np.uint32)  # Unicode 15, braille block
 BRAILLE = 0x2800
 SPACE = 32

@@ -141,7 +141,7 @@ def _draw_cursor(canvas: Canvas, frame: Frame, plot: PlotData, view: PlotView) -
     x_dot = frame.x_dot(plot.points[view.cursor].wave_um)
     if frame.holds(int((x_dot + 0.5) // 2)):
         bottom = frame.strip + frame.strip_rows
-        canvas.vertical(x_dot, 4 * frame.top, 4 * bottom - 1, "cursor", frame.top, bottom, 2)
+        canvas.vertical(x_dot, 4 * frame.top, 4 * bottom - 1, "cursor-line", frame.top, bottom, 2)
 
 
 def _lines(canvas: Canvas, frame: Frame, plot: PlotData, view: PlotView) -> list[Line]:

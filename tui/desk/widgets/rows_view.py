@@ -18,7 +18,7 @@ Draw = Callable[[int, int], list[Row]]
 # Style name -> component class of the style sheet. The order is that of importance only.
 NAMES = (
     "grid", "axis", "zero", "spectrum", "component-a", "component-b", "component-c", "component-d", "other", "total",
-    "width", "bar", "stem", "label", "limit", "dropped", "point", "far", "cursor", "name", "now", "explains", "short",
+    "width", "bar", "stem", "label", "limit", "dropped", "point", "far", "cursor", "cursor-line", "name", "now", "explains", "short",
     "unclear", "split", "open", "todo", "nodata", "sealed", "question", "quiet", "caution", "head", "key", "chosen",
     "strong", "message",
 )  # fmt: skip
@@ -88,7 +88,7 @@ class RowsView(Widget):
             self._strips_for = key
         if y >= len(self._strips):
             return Strip.blank(self.size.width, self.rich_style)
-        return self._selected(self._strips[y], y).apply_offsets(0, y)
+        return self._selected(self._strips[y], y).apply_offsets(0, y) if self.ALLOW_SELECT else self._strips[y]
 
     def _strip(self, spans: Row) -> Strip:
         return Strip([Segment(span.text, self.style_of(span)) for span in spans], self.size.width)

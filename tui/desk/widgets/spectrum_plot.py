@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 from textual import events
@@ -12,9 +13,24 @@ from tui.desk.widgets.plot_draw import draw_spectrum, point_at
 from tui.desk.widgets.rows import Row
 from tui.desk.widgets.rows_view import RowsView
 
+PLAIN_TERMINALS = frozenset({"linux", "vt100", "vt102", "vt220", "ansi", "cons25"})
+
+
+def braille_works(environ: Mapping[str, str]) -> bool:
+    """Whether this terminal says that it can show more than plain letters; a bare console's font has no braille.
+
+    >>> braille_works({"LANG": "en_GB.UTF-8", "TERM": "xterm-256color"}), braille_works({"LANG": "C"})
+    (True, False)
+    """
+    locale = environ.get("LC_ALL") or environ.get("LC_CTYPE") or environ.get("LANG") or "utf-8"
+    is_utf8 = "utf-8" in locale.lower() or "utf8" in locale.lower()
+    return is_utf8 and environ.get("TERM", "") not in PLAIN_TERMINALS
+
 
 class SpectrumPlot(RowsView):
     """Draws what it is given; never computes or queries."""
+
+    ALLOW_SELECT = False  # dots are nothing to copy, and every span would carry its place
 
     @dataclass
     class PointPicked(Message):
