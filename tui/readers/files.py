@@ -4,11 +4,13 @@ from __future__ import annotations
 
 import os
 import stat
+from collections.abc import Callable
 from dataclasses import replace
 from pathlib import Path
 
 from tui.errors import TableError
 from tui.readers.cells import truths
+from tui.readers.collector import collector_at_rest
 from tui.readers.fitstable import read_fits
 from tui.readers.records import RawTable
 from tui.readers.texttable import read_text
@@ -39,15 +41,19 @@ def open_table(path: str | os.PathLike[str]) -> RawTable:
         if head.startswith(magic):
             raise TableError(shown, f"the file {reason}.")
     try:
-        if head.startswith(b"SIMPLE  ="):
-            return with_masks(read_fits(shown))
-        if head.removeprefix(b"\xef\xbb\xbf").lstrip().startswith((b"<?xml", b"<VOTABLE", b"<!--", b"<!DOCTYPE")):
-            return with_masks(read_votable(shown))
-        return with_masks(read_text(shown))
+        with collector_at_rest():
+            return with_masks(_reader(head)(shown))
     except MemoryError as error:
         raise TableError(shown, "the table needs more memory than there is: split it.") from error
     except OSError as error:
         raise TableError(shown, f"the file cannot be read ({error.strerror or error}).") from error
+
+
+def _reader(head: bytes) -> Callable[[str], RawTable]:
+    if head.startswith(b"SIMPLE  ="):
+        return read_fits
+    begins = head.removeprefix(b"\xef\xbb\xbf").lstrip()
+    return read_votable if begins.startswith((b"<?xml", b"<VOTABLE", b"<!--", b"<!DOCTYPE")) else read_text
 
 
 def with_masks(table: RawTable) -> RawTable:

@@ -7,6 +7,7 @@ from collections.abc import Iterator, Mapping, Sequence
 
 from tui.model import Band
 from tui.readers.archives import Archive
+from tui.readers.collector import collector_at_rest
 from tui.readers.columnmap import read_column_map
 from tui.readers.files import open_table
 from tui.readers.long import LongReader, long_columns
@@ -69,7 +70,8 @@ def read_parts(
     label = words.label(table.path)
     if (long := long_columns(table, words)) is not None:
         reader = LongReader(table, long, words)
-        found = reader.candidates()
+        with collector_at_rest():
+            found = reader.candidates()
         yield TableContents(found, reader.refused, reader.unknown, reader.cautions, label, column_map.bands)
         return
     plan = recognise(table, words)

@@ -2,10 +2,8 @@
 
 from __future__ import annotations
 
-import gc
 from collections import Counter
 from collections.abc import Iterator
-from contextlib import contextmanager
 from typing import Any
 
 import numpy as np
@@ -13,23 +11,12 @@ import numpy as np
 from tui.errors import InputError, TableError
 from tui.model import Candidate, Measurement
 from tui.readers.cells import lost_digits, texts
+from tui.readers.collector import collector_at_rest
 from tui.readers.factcells import fact_values
 from tui.readers.measure import NO_ERROR, measure, measurements, refusals
 from tui.readers.names import clean_names
 from tui.readers.plan import Plan
 from tui.readers.records import RawTable, Refused
-
-
-@contextmanager
-def collector_at_rest() -> Iterator[None]:
-    """No garbage collection inside: a million new records hold no cycles, and looking for some doubles the time."""
-    was_on = gc.isenabled()
-    gc.disable()
-    try:
-        yield
-    finally:
-        if was_on:
-            gc.enable()
 
 
 class WideReader:
