@@ -28,12 +28,13 @@ class Basis:
 
     settings: Settings = field(default_factory=Settings)
     user_bands: Mapping[str, Band] = field(default_factory=dict)
+    queue: str = ""  # path of the file that carries the spectra of a grid
 
     def templates(self) -> Templates:
         """The template grids; from memory or the disk cache where they are there."""
         from tui.workflow.templates import templates_for
 
-        return templates_for(self.settings, self.user_bands)
+        return templates_for(self.settings, self.user_bands, self.queue)
 
     def templates_digest(self) -> str:
         """Digest of all that the grids are made of."""
@@ -73,7 +74,7 @@ def read_basis(connection: sqlite3.Connection) -> Basis:
     from tui.store.sides import attachments
 
     newest = {one.name: band_from(one.content) for one in attachments(connection, BAND_KIND)}
-    return Basis(read_settings(connection), newest)
+    return Basis(read_settings(connection), newest, getattr(connection, "queue_path", ""))
 
 
 def keep_bands(connection: sqlite3.Connection, bands: Mapping[str, Band]) -> None:

@@ -59,14 +59,20 @@ def write(path: str, name: str, value: str, handle: str | None) -> str:
 
     Raises:
         SettingError: no such setting, or a value out of its range.
+        TableError: the spectra of `grid DIR` cannot be used.
         HandleError: nobody joined under `handle`.
     """
     from tui.workflow.session import reviewer_named
 
     with closing(open_queue(path)) as connection:
         by = reviewer_named(connection, handle).id if handle else ""
-        line = write_setting(connection, name, value, utc_now(), by)
-    text = f"{name} is now {line.value}."
+        if name == "photosphere" and value.startswith("grid "):
+            from tui.workflow.grid_photosphere import keep_grid
+
+            value = keep_grid(connection, value.removeprefix("grid ").strip())
+        write_setting(connection, name, value, utc_now(), by)
+        now = dict(row[:2] for row in overview_rows(read_settings(connection)))
+    text = f"{name} is now {now.get(name, 'the default')}."
     if name in RULES:
         return f"{text} States and outcomes follow it."
     return f"{text} Evidence that rests on it is outdated until: plainlight assess {path}"

@@ -19,6 +19,7 @@ from tui.model import Band, Settings, digest
 from tui.workflow.grid_file import DamagedError, pack, unpack
 
 if TYPE_CHECKING:
+    from tui.physics.photosphere import Photosphere
     from tui.physics.templates import Templates
 
 KEPT_IN_MEMORY = 4
@@ -28,10 +29,13 @@ _memory: OrderedDict[str, Templates] = OrderedDict()
 _lock = threading.Lock()
 
 
-def templates_for(settings: Settings, user_bands: Mapping[str, Band] | None = None) -> Templates:
+def templates_for(settings: Settings, user_bands: Mapping[str, Band] | None = None, queue: str = "") -> Templates:
     """The grids for some settings: from memory, else from the disk cache, else built and kept.
 
     Safe under threads and under several processes; a damaged file is built again.
+
+    Args:
+        queue: path of the queue that carries the user's spectra, where `photosphere` names some.
 
     Raises:
         SettingError: R_V is neither a number nor `free`.
@@ -41,7 +45,7 @@ def templates_for(settings: Settings, user_bands: Mapping[str, Band] | None = No
     with _lock:
         found = _memory.get(key)
         if found is None:
-            found = read_cached(key) or keep(key, build(settings, user_bands or {}))
+            found = read_cached(key) or keep(key, build(settings, user_bands or {}, queue))
             _memory[key] = found
         _memory.move_to_end(key)
         while len(_memory) > KEPT_IN_MEMORY:
@@ -96,14 +100,14 @@ def content_digest(paths: list[Any]) -> str:
     return total.hexdigest()
 
 
-def build(settings: Settings, user_bands: Mapping[str, Band]) -> Templates:
-    """Build the grids from the packaged tables; seconds."""
+def build(settings: Settings, user_bands: Mapping[str, Band], queue: str = "") -> Templates:
+    """Build the grids from the packaged tables and, for a grid, the queue's spectra; seconds."""
     from tui.data import load
-    from tui.physics.templates import Spread, build_photosphere, build_templates
+    from tui.physics.templates import Spread, build_templates
 
     packaged = load.bands()
     bands = [*packaged.values(), *(band for name, band in user_bands.items() if name not in packaged)]
-    photosphere = build_photosphere(settings.photosphere, load.dwarfs(), bands, packaged)
+    photosphere = photosphere_of(settings.photosphere, bands, queue)
     spreads = [
         Spread(
             row["photosphere"],
@@ -121,6 +125,21 @@ def build(settings: Settings, user_bands: Mapping[str, Band]) -> Templates:
         source_floor=settings.source_floor,
         floors=settings.floors,
     )
+
+
+def photosphere_of(source: str, bands: list[Band], queue: str) -> Photosphere:
+    """The photosphere source of the settings, through `bands`."""
+    from tui.data import load
+    from tui.physics.templates import build_photosphere
+
+    if not source.startswith("grid"):
+        return build_photosphere(source, load.dwarfs(), bands, load.bands())
+    from tui.store.connect import open_queue
+    from tui.workflow.grid_photosphere import grid_photosphere, kept_spectra
+
+    with contextlib.closing(open_queue(queue, write=False)) as connection:
+        spectra = kept_spectra(connection, source)
+    return grid_photosphere(source, spectra, bands)
 
 
 def fixed_r_v(settings: Settings) -> float | None:
