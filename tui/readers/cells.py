@@ -70,7 +70,7 @@ def numbers(column: Column, sentinels: tuple[float, ...] = ()) -> tuple[FloatArr
     """A column as float64, shape (N,); NaN where empty, where a sentinel stands, and where the cell is bad."""
     bad: Bad = {}
     if column.is_text:
-        values, bad = _text_numbers(column.cells if column.mask is None else texts(column))
+        values, bad = _text_numbers(column.texts if column.mask is None else texts(column))
     elif column.cells.dtype.kind == "c" or column.cells.ndim != 1:
         return np.full(len(column.cells), math.nan), {0: "the cells are not plain numbers"}
     else:
@@ -99,7 +99,7 @@ def _text_of(value: object) -> str:
 def texts(column: Column) -> list[str]:
     """A column as texts without blanks at the ends; "" where empty. Whole numbers have no decimal point."""
     if column.is_text:
-        cells = column.cells
+        cells = column.texts
     elif column.cells.dtype == np.float32:
         cells = [float(f"{value:.7g}") for value in column.cells]
     else:
@@ -132,7 +132,7 @@ def truths(column: Column) -> tuple[np.ndarray, Bad]:
 def lost_digits(column: Column) -> bool:
     """Whether integers of this column were rounded on the way: decimal numbers beyond 2^53."""
     if column.is_text:
-        return any("e+" in cell.lower() for cell in column.cells[:1000])
+        return any("e+" in cell.lower() for cell in column.part(0, 1000).texts)
     if column.cells.dtype.kind != "f":
         return False
     with np.errstate(invalid="ignore"):

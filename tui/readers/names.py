@@ -5,7 +5,6 @@ from __future__ import annotations
 import unicodedata
 
 LONGEST_NAME = 200  # characters
-SHOWN = 40  # characters of a refused name that a message repeats
 
 
 def clean_name(text: str) -> tuple[str, str]:

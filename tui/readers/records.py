@@ -26,7 +26,7 @@ class FactRow(Protocol):
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Column:
-    """One column of a file: N cells, either a list of texts ("" where empty) or a numeric array with a mask."""
+    """One column of a file: N cells, either texts ("" where empty) or a numeric array with a mask."""
 
     name: str
     cells: Sequence[str] | np.ndarray
@@ -36,7 +36,12 @@ class Column:
     @property
     def is_text(self) -> bool:
         """Whether the cells are texts, as all cells of CSV files are."""
-        return not isinstance(self.cells, np.ndarray)
+        return not isinstance(self.cells, np.ndarray) or self.cells.dtype.kind == "T"
+
+    @property
+    def texts(self) -> list[str]:
+        """The cells of a column of texts, as they lie."""
+        return self.cells.tolist() if isinstance(self.cells, np.ndarray) else list(self.cells)
 
     def part(self, start: int, stop: int) -> Column:
         """The rows from `start` up to `stop`."""
