@@ -27,7 +27,8 @@ def surface(teff_k):
 
 def write_text(folder, teff_k, flux=None, head="# wavelength: um\n# flux: Jy\n", name=None):
     path = folder / (name or f"star_{teff_k:05.0f}.dat")
-    rows = "".join(f"{w:.8g} {f:.8g}\n" for w, f in zip(WAVE_UM, surface(teff_k) if flux is None else flux, strict=True))
+    given = surface(teff_k) if flux is None else flux
+    rows = "".join(f"{w:.8g} {f:.8g}\n" for w, f in zip(WAVE_UM, given, strict=True))
     path.write_text(head + rows)
     return path
 
@@ -41,8 +42,8 @@ def folder(tmp_path):
     table = Table({"wavelength": WAVE_UM * 1e4, "flux": surface(TEFF_K[2])}, meta={"teff": TEFF_K[2]})
     table["wavelength"].unit, table["flux"].unit = "Angstrom", "Jy"
     table.write(place / "third.ecsv")
-    columns = [fits.Column("W", "D", unit="um", array=WAVE_UM), fits.Column("F", "D", unit="Jy", array=surface(TEFF_K[3]))]
-    hdu = fits.BinTableHDU.from_columns(columns)
+    wave = fits.Column("W", "D", unit="um", array=WAVE_UM)
+    hdu = fits.BinTableHDU.from_columns([wave, fits.Column("F", "D", unit="Jy", array=surface(TEFF_K[3]))])
     hdu.header["TEFF"] = TEFF_K[3]
     hdu.writeto(place / "fourth.fits")
     return place

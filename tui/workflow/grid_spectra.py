@@ -41,7 +41,7 @@ def read_spectra(folder: str) -> list[SurfaceSpectrum]:
     """All spectra of a folder, coolest first.
 
     Raises:
-        TableError: no folder; fewer than three spectra; a file without temperature, unit or sense; two of one temperature.
+        TableError: no folder; too few spectra; a file without temperature, unit or sense; two of one temperature.
     """
     place = Path(folder).expanduser()
     if not place.is_dir():
@@ -138,7 +138,7 @@ def surface_spectrum(path: Path, header: Mapping[str, Any], wave: Any, flux: Any
     if not LIGHT_RANGE[0] <= share <= LIGHT_RANGE[1]:
         raise TableError(
             str(path),
-            f"its light is {share:.3g} of a {teff_k:g} K surface's: give the flux at the surface, over most of its light.",
+            f"its light is {share:.3g} of a {teff_k:g} K surface's: give the surface flux, over most of the light.",
         )
     return SurfaceSpectrum(teff_k, wave_um, flux_jy)
 
