@@ -78,14 +78,6 @@ def test_allwise_limits_rest_on_the_flux_where_there_is_one(one):
     assert (band["W4"].value, band["W4"].value_error) == (-12.5, 40)
 
 
-def test_allwise_flux_scale_agrees_with_its_own_magnitudes():
-    # w?mpro = z - 2.5 log10(w?flux): a source of 100 DN in W1 has 15.5 mag; Explanatory Supplement IV.4.
-    from tui.readers.units import scale
-
-    w1 = bands()["W1"]
-    assert scale("mag", w1, is_mag=True).flux(15.5) == pytest.approx(w1.zero_point_jy * 10 ** (-0.4 * 20.5) * 100)
-
-
 def test_allwise_limits_rest_on_the_snr_where_there_is_no_flux(one):
     _, band, _ = one("name,w3mpro,w3sigmpro,w3snr,w4mpro,w4sigmpro,w4snr\nA,12.0,,1.2,8.9,,-0.7\n")
     # sigma = F_lim / (max(snr, 0) + 2), F = snr sigma: the catalogue's limit is the flux, if above zero, plus 2 sigma.

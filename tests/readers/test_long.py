@@ -6,7 +6,7 @@ import math
 
 import pytest
 
-# Mann et al. 2015, ApJ 804, 64 (Gl 15A), Tycho-2, AllWISE and Spitzer archival photometry of HD 110058 and HD 115820.
+# Tycho-2, AllWISE, AKARI and Spitzer photometry of HD 110058 and HD 115820; Mann et al. 2015, ApJ 804, 64 for Gl 673.
 PUBLISHED = """\
 name,band,value,error,unit,limit,exclude,source,note
 HD 110058,BT,8.163,0.016,mag,False,False,"Tycho-2, Hog et al. 2000, A&A 355, L27",
@@ -14,8 +14,8 @@ HD 110058,W4,3.913,0.022,mag,False,False,"AllWISE, Cutri et al. 2013",
 HD 110058,MIPS24,222.9,0.139,mJy,False,False,Spitzer archival photometry,
 HD 110058,AKARI_S9W,0.06533,0.0158,Jy,False,False,"AKARI/IRC, Ishihara et al. 2010, A&A 514, A1",
 HD 115820,MIPS70,14.7,,mJy,True,False,Spitzer archival photometry,LIM
-Gl 673,SDSS_g,8.117,0.03,mag(AB),False,False,synthetic,
-Gl 673,Gaia_G,7.167,0.014,mag,False,True,synthetic,"not on the DR3 system"
+Gl 673,SDSS_g,8.306,0.02,mag(AB),False,False,Mann 2015,
+Gl 673,Gaia_G,7.167,0.014,mag,False,True,Mann 2015,"synthetic, not on the DR2/DR3 system"
 """
 
 
@@ -34,9 +34,9 @@ def test_published_rows(read, write):
     assert limit.limit and limit.nsigma == 2 and limit.flux_jy == pytest.approx(0.0147) and limit.note == "LIM"
     g, excluded = contents.candidates[2].measurements
     assert (
-        g.flux_jy == pytest.approx(3631 * 10 ** (-0.4 * 8.117))
+        g.flux_jy == pytest.approx(3631 * 10 ** (-0.4 * 8.306))
         and excluded.exclude
-        and excluded.note == "not on the DR3 system"
+        and excluded.note == "synthetic, not on the DR2/DR3 system"
     )
     assert contents.refused == [] and contents.unknown_columns == []
 
