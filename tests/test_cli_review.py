@@ -112,3 +112,16 @@ def test_a_dumb_terminal_is_refused_in_one_sentence(queue):
     terminal = Terminal("review", queue, "--as", "heron", TERM="dumb")
     assert terminal.status() == 2
     assert b"plainlight list QUEUE" in terminal.raw.replace(b"\r\n", b"") and b"\x1b[?1049h" not in terminal.raw
+
+
+def test_list_at_a_terminal_fits_80_columns_and_cuts_no_name(queue):
+    terminal = Terminal("list", queue, "--as", "heron")
+    assert terminal.status() == 0
+    shown = [line.rstrip() for line in terminal.screen.display if line.strip()]
+    assert shown[0].split() == "name odd most in star instr extin blend wdust outcome yours".split()
+    assert shown[1].split()[0] == NAME.replace("星", "星 ").strip() and shown[1].endswith("0/5") and len(shown) == 2
+
+
+def test_no_colour_is_shown_where_none_is_wanted(queue):
+    terminal = Terminal("list", queue, "--as", "heron", NO_COLOR="1")
+    assert terminal.status() == 0 and b"\x1b[3" not in terminal.raw

@@ -4,8 +4,8 @@ from __future__ import annotations
 
 from pathlib import Path
 
-from tui.cli.looking import LIST_HEADINGS, list_cells
-from tui.cli.printing import heading, line, table
+from tui.cli.looking import print_short
+from tui.cli.printing import heading, line
 
 SHOWN = 10  # oddest candidates listed
 NEXT_STEPS = (
@@ -26,8 +26,7 @@ def print_summary(path: Path) -> None:
         team = ", ".join(one.handle for one in session.reviewers() if one.handle != VISITOR)
         line(f"Reviewers so far: {team}. What they ruled stays sealed until you have ruled yourself.")
         heading(f"The {SHOWN} oddest, as a new reviewer sees them")
-        rows = session.rows(session.order()[:SHOWN])
-        table(LIST_HEADINGS, map(list_cells, rows), numbers=(1, 3, 10, 11))
+        print_short(session.rows(session.order()[:SHOWN]))
         heading("Where the team stands")
         newest = max((one.last_utc for one in session.tally().reviewers), default="")
         for text in session.tally(now=newest or None).sentences():  # its reviewers are quiet since it was made

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+import math
+from collections.abc import Iterable, Iterator
 from itertools import islice
 from typing import TYPE_CHECKING
 
@@ -28,6 +29,17 @@ if TYPE_CHECKING:
 
 UPWARD = ("name", "band", "outcome", "ruled", *CHECKS)  # sorts that begin with the smallest
 PAGE = 1000  # rows fetched at a time
+SHORT_HEADINGS = ("name", "odd", "most in", "star", "instr", "extin", "blend", "wdust", "outcome", "yours")
+SHORT_STATES = {  # sign and word together: the sign compares the model with the data
+    "explains": "=expl",
+    "short": "<short",
+    "unclear": "~uncl",
+    "split": "/split",
+    "open": ":open",
+    "todo": ".todo",
+    "nodata": "-nodat",
+    "sealed": ".seal",
+}
 LIST_HEADINGS = ("name", "oddness", "odd_band", "odd_pull", *CHECKS, "outcome", "ruled", "to_rule")
 
 
@@ -40,9 +52,10 @@ LIST_HEADINGS = ("name", "oddness", "odd_band", "odd_pull", *CHECKS, "outcome", 
 @click.option("--next", "only_next", is_flag=True, help="Only the name of the candidate that needs you next.")
 @click.option("--share", callback=share_of, metavar="I/N", help="Only the I-th of N shares, for copies kept apart.")
 def list_command(queue, handle, unresolved, outcome, sort, only_next, share) -> int:
-    """The queue as text: tab-separated when it goes to a file or a program.
+    """The queue as text: tab-separated with whole words when it goes to a file or a program.
 
-    Without --as, states and outcome read sealed. A trailing * marks a stale ruling.
+    At a terminal: =expl explains, <short falls short, ~uncl unclear, /split split, :open open, .todo not ruled by
+    you, -nodat untestable. A trailing * marks a stale ruling. Without --as, states and outcome read sealed.
     """
     from tui.cli.printing import line, remark
     from tui.workflow.session import Session
@@ -84,16 +97,33 @@ def list_cells(row: QueueRow) -> tuple[str, ...]:
     return (row.name, *numbers, *states, row.outcome, str(row.ruled), str(row.to_rule))
 
 
+def short_cells(row: QueueRow) -> tuple[str, ...]:
+    """The same in the words that fit a terminal of 80 columns, as cells of SHORT_HEADINGS."""
+    from tui.cli.printing import NOTHING, signed
+
+    most = f"{row.odd_band} {signed(row.odd_pull)}" if row.odd_band else NOTHING
+    words = {check: SHORT_STATES.get(row.states.get(check, ""), NOTHING) for check in CHECKS}
+    states = (word + ("*" if check in row.stale else "") for check, word in words.items())
+    odd = f"{row.oddness:.1f}" if math.isfinite(row.oddness) else NOTHING
+    return (row.name, odd, most, *states, row.outcome, "done" if row.done else f"{row.ruled}/{row.to_rule}")
+
+
 def print_rows(rows: Iterator[QueueRow]) -> None:
     """Tables of a page each at a terminal, tab-separated rows elsewhere; either way as they come."""
-    from tui.cli.printing import is_terminal, tab_rows, table
+    from tui.cli.printing import is_terminal, tab_rows
 
-    cells = map(list_cells, rows)
     if not is_terminal():
-        tab_rows(LIST_HEADINGS, cells)
+        tab_rows(LIST_HEADINGS, map(list_cells, rows))
         return
-    while page := list(islice(cells, PAGE)):
-        table(LIST_HEADINGS, page, numbers=(1, 3, 10, 11))
+    while page := list(islice(rows, PAGE)):
+        print_short(page)
+
+
+def print_short(rows: Iterable[QueueRow]) -> None:
+    """Some rows as a table for people; only a name may be folded."""
+    from tui.cli.printing import table
+
+    table(SHORT_HEADINGS, map(short_cells, rows), numbers=(1,), folding=(0,), gap=1)
 
 
 @click.command("show")

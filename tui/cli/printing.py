@@ -16,6 +16,7 @@ if TYPE_CHECKING:
     from rich.console import Console
 
 WIDE = 10_000  # columns, where no terminal sets a width: nothing is ever cut or folded there
+NARROWEST = 40  # columns: shorter lines never need folding
 NOTHING = "-"  # a cell without a value
 
 
@@ -34,8 +35,13 @@ def console() -> Console:
 
 
 def line(text: object = "") -> None:
-    """One line of text, safe; the terminal wraps it where it must."""
-    print(safe(text))
+    """One line of text, safe; at a terminal it is folded between words."""
+    if not is_terminal() or len(safe(text)) < NARROWEST:
+        print(safe(text))
+        return
+    from rich.text import Text
+
+    console().print(Text(safe(text)))
 
 
 def heading(text: str) -> None:
@@ -46,19 +52,29 @@ def heading(text: str) -> None:
     console().print(Text(safe(text), style="bold"))
 
 
-def table(headings: Sequence[str], rows: Iterable[Sequence[object]], numbers: Iterable[int] = ()) -> None:
+def table(
+    headings: Sequence[str],
+    rows: Iterable[Sequence[object]],
+    numbers: Iterable[int] = (),
+    folding: Iterable[int] | None = None,
+    gap: int = 2,
+) -> None:
     """A table that folds long cells at a terminal and never cuts one; plain aligned columns elsewhere.
 
     Args:
         numbers: columns to set flush right.
+        folding: columns that may be folded where the terminal is narrow; None: all.
+        gap: blanks between columns.
     """
     from rich.table import Table
     from rich.text import Text
 
     right = frozenset(numbers)
-    drawn = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), show_edge=False, header_style="bold")
+    fold = frozenset(range(len(headings)) if folding is None else folding)
+    drawn = Table(box=None, pad_edge=False, padding=(0, gap, 0, 0), show_edge=False, header_style="bold")
     for index, title in enumerate(headings):
-        drawn.add_column(Text(title), justify="right" if index in right else "left", overflow="fold")
+        side = "right" if index in right else "left"
+        drawn.add_column(Text(title), justify=side, overflow="fold", no_wrap=index not in fold)
     for row in rows:
         drawn.add_row(*(Text(safe(cell)) for cell in row))
     target = console()
