@@ -25,6 +25,7 @@ LN_T, LN_S, AV, RV, X2, A2, X3, A3 = range(8)
 WIDTH = 8
 POWER_REDDENING_K = 1000.0  # a power law is reddened as a source of this colour
 A_MAX = 1e6
+A_GALAXY = 30.0  # of the star's flux at 3.4 micron: a brighter one would not be called the star's background
 NEAR = 1e-6  # a parameter this close to a bound, as a fraction of its range, lies at it
 
 
@@ -76,7 +77,7 @@ class Kit:
         low[:, RV], high[:, RV] = R_V_RANGE
         for column, grid in zip((X2, X3), self.further, strict=False):
             low[:, column], high[:, column] = grid.low, grid.high
-        high[:, A2] = high[:, A3] = A_MAX
+        high[:, A2] = high[:, A3] = A_GALAXY if "power" in self.model.sources else A_MAX
         return low, high
 
     def near(self, av_max: FloatArray) -> FloatArray:

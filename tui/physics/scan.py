@@ -17,7 +17,7 @@ RV_NODES = np.array([2.5, 3.1, 4.0, 5.2])
 STAR_NODES = 40
 FURTHER_NODES = {"dust": 22, "star": 22, "compact": 12, "power": 12}
 STARTS = 3
-MORE_ALONG_T = 3  # temperature and screen make a long valley with several minima
+PARTS_ALONG_T = 10  # temperature and screen make a long valley with several minima: a start from each part of it
 COARSE = np.float32  # a scan only ranks places to start from
 TINY = 1e-30
 SCAN_CELLS = 40_000  # cells of one scan worked on at a time: they stay in the processor's cache
@@ -68,7 +68,7 @@ def _through(grid, reddening, x: FloatArray, colour: FloatArray, av: float, rv: 
 
 
 def scan(problem: Problem, kit: Kit, errors: Errors, starts: int = STARTS) -> FloatArray:
-    """Up to `starts` starting rows per candidate, best first, shape (starts, M, 8); repeats where fewer."""
+    """Starting rows, shape (S, M, 8): up to `starts` peaks of the scan, and one from each part of the star's range."""
     data = weigh(problem, errors)
     if not kit.model.sources:
         return _scan_star(problem, kit, data, errors, starts)
@@ -101,8 +101,10 @@ def _scan_star(problem: Problem, kit: Kit, data: Weighted, errors: Errors, start
     best_screen = gain.argmax(axis=1)
     profile = np.take_along_axis(gain, best_screen[:, None], axis=1)[:, 0]
     chosen = _peaks(profile, starts)  # (starts, M)
+    if len(places) > 1:
+        chosen = np.concatenate([chosen, _best_of_parts(profile, PARTS_ALONG_T)])
     m = np.arange(len(problem))
-    rows = np.zeros((starts, len(problem), WIDTH))
+    rows = np.zeros((chosen.shape[0], len(problem), WIDTH))
     screen = best_screen[chosen, m]
     rows[:, :, LN_T] = t[chosen]
     rows[:, :, LN_S] = scale[chosen, screen, m]
@@ -146,6 +148,12 @@ def _screen(kit: Kit, t: FloatArray, u: FloatArray, av: float, rv: float) -> _Sc
     return _Screen(av, rv, g1, g2, product, top1, top2)
 
 
+def _best_of_parts(profile: FloatArray, parts: int) -> np.ndarray:
+    """Index (parts, M) of the highest value in each of several stretches along the first axis."""
+    edges = np.linspace(0, profile.shape[0], parts + 1).astype(int)
+    return np.stack([low + profile[low:high].argmax(axis=0) for low, high in zip(edges[:-1], edges[1:], strict=True)])
+
+
 def _scan_two(problem: Problem, kit: Kit, data: Weighted, errors: Errors, starts: int) -> FloatArray:
     source = kit.model.sources[0]
     t = nodes(kit.star.low, kit.star.high, STAR_NODES)
@@ -183,9 +191,7 @@ def _scan_part(
         along_t.better(
             np.take_along_axis(gain, top[:, None], 1)[:, 0], np.arange(t.size)[:, None], top, (s1, s2), number
         )
-    picked = [
-        kept.picked(_peaks(kept.gain, count)) for kept, count in ((along_u, starts), (along_t, starts + MORE_ALONG_T))
-    ]
+    picked = [along_u.picked(_peaks(along_u.gain, starts)), along_t.picked(_best_of_parts(along_t.gain, PARTS_ALONG_T))]
     i, j, scale1, scale2, screen = (np.concatenate(pair) for pair in zip(*picked, strict=True))
     rows = np.zeros((i.shape[0], size, WIDTH))
     rows[:, :, LN_T], rows[:, :, X2] = t[i], u[j]

@@ -26,7 +26,7 @@ VERSION = 1  # raise when the same tables would give other grids
 STAR_STEP = 0.01  # of ln T
 DUST_RANGE_K = (20.0, 2000.0)
 COMPACT_RANGE_K = (5000.0, 100000.0)
-SLOPE_RANGE = (-1.0, 4.0)  # F_nu ~ wavelength^slope, galaxies and nuclei in the infrared
+SLOPE_RANGE = (0.0, 4.0)  # F_nu ~ wavelength^slope: galaxies and nuclei redder than any star in the infrared
 SLOPE_SPLIT_UM = 3.4  # the power law is 1 here
 
 
