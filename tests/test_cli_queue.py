@@ -128,3 +128,11 @@ def test_a_reader_who_stops_early_costs_nothing(queue):
     with process.stderr:
         assert process.stderr.read() == b""
     assert process.wait(timeout=60) == 0
+
+
+def test_a_configured_handle_of_other_queues_does_not_hinder_looking(queue, tmp_path, monkeypatch):
+    (tmp_path / "config.toml").write_text('handle = "stranger"')
+    monkeypatch.setenv("PLAINLIGHT_CONFIG", str(tmp_path / "config.toml"))
+    assert run("list", queue).exit_code == run("story", queue, "SM-1").exit_code == 0
+    assert run("set", queue, "quorum", "3").exit_code == 0
+    assert run("list", queue, "--next").exit_code == run("list", queue, "--as", "nobody").exit_code == 2

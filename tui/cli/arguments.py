@@ -2,10 +2,15 @@
 
 from __future__ import annotations
 
+from typing import TYPE_CHECKING
+
 import click
 
 from tui.errors import HandleError
 from tui.model import CHECKS, OUTCOMES
+
+if TYPE_CHECKING:
+    from tui.workflow.session import Session
 
 queue_argument = click.argument("queue", type=click.Path())
 name_argument = click.argument("name")
@@ -21,18 +26,29 @@ controls_option = click.option(
 )
 
 
-def handle_or_configured(handle: str | None) -> str | None:
-    """The handle given, else the one of the user's config file, else none."""
-    if handle:
-        return handle
-    from tui.workflow.config import read_config
+def reader(queue: str, handle: str | None, *, write: bool = True) -> Session:
+    """The queue opened by the handle given, else by the config file's if it joined this queue, else by nobody.
 
-    return read_config().handle
+    Raises:
+        HandleError: nobody joined under the handle given.
+    """
+    from tui.workflow.config import read_config
+    from tui.workflow.session import Session
+
+    configured = None if handle else read_config().handle
+    if configured:
+        try:
+            return Session.open(queue, configured, write=write)
+        except HandleError:  # it is of other queues
+            return Session.open(queue, write=write)
+    return Session.open(queue, handle, write=write)
 
 
 def needed_handle(handle: str | None) -> str:
     """The handle to rule as; HandleError, saying how to give one, where there is none."""
-    found = handle_or_configured(handle)
+    from tui.workflow.config import read_config
+
+    found = handle or read_config().handle
     if not found:
         raise HandleError("", "Say who you are: --as HANDLE, or handle = \"...\" in your config file.")
     return found

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import click
 
-from tui.cli.arguments import as_option, handle_or_configured, pairs, queue_argument
+from tui.cli.arguments import as_option, pairs, queue_argument, reader
 
 
 @click.command("set")
@@ -21,7 +21,9 @@ def set_command(queue: str, name: str | None, value: str | None, handle: str | N
         table(("setting", "value", "meaning"), setting.overview(queue))
         return 0
     if value is not None:
-        line(setting.write(queue, name, value, handle_or_configured(handle)))
+        with reader(queue, handle, write=False) as session:
+            by = session.reviewer.handle if session.reviewer else None
+        line(setting.write(queue, name, value, by))
         return 0
     table(("set (UTC)", "by", "value"), setting.history(queue, name))
     return 0

@@ -11,12 +11,12 @@ import click
 
 from tui.cli.arguments import (
     as_option,
-    handle_or_configured,
     json_option,
     name_argument,
     needed_handle,
     outcome_option,
     queue_argument,
+    reader,
     share_of,
     unresolved_option,
 )
@@ -58,10 +58,8 @@ def list_command(queue, handle, unresolved, outcome, sort, only_next, share) -> 
     you, -nodat untestable. A trailing * marks a stale ruling. Without --as, states and outcome read sealed.
     """
     from tui.cli.printing import line, remark
-    from tui.workflow.session import Session
 
-    handle = needed_handle(handle) if only_next else handle_or_configured(handle)
-    with Session.open(queue, handle, write=only_next) as session:
+    with reader(queue, needed_handle(handle) if only_next else handle, write=only_next) as session:
         if only_next:
             name = session.claim_next() if share is None else next_in_share(session, share)
             line(name) if name else remark("Nothing needs you now.")
@@ -132,11 +130,10 @@ def print_short(rows: Iterable[QueueRow]) -> None:
 @as_option
 @json_option
 def show_command(queue: str, name: str, handle: str | None, as_json: bool) -> int:
-    """The evidence of one candidate; lacking evidence is computed first."""
-    from tui.workflow.session import Session
+    """The evidence of one candidate; what lacks is computed for the occasion and not stored."""
     from tui.workflow.showing import dossier
 
-    with Session.open(queue, handle_or_configured(handle)) as session:
+    with reader(queue, handle, write=False) as session:
         found = dossier(session, name)
     if as_json:
         from tui.cli.printing import as_json as print_json
@@ -156,9 +153,8 @@ def show_command(queue: str, name: str, handle: str | None, as_json: bool) -> in
 def story_command(queue: str, name: str, handle: str | None) -> int:
     """What happened to a candidate, in time order; others' rulings only where your seal is open."""
     from tui.cli.printing import line, remark, table
-    from tui.workflow.session import Session
 
-    with Session.open(queue, handle_or_configured(handle), write=False) as session:
+    with reader(queue, handle, write=False) as session:
         lines = session.story(name)
         if not session.view(name).seal_open:
             remark("Others' rulings stay sealed until your walk of this candidate ends.")
