@@ -64,7 +64,10 @@ def replacing(path: str, force: bool) -> Iterator[str]:
     target = Path(path)
     if not target.parent.is_dir():
         raise TableError(path, f"there is no folder {target.parent}.")
-    handle, scratch = tempfile.mkstemp(prefix=f".{target.name[:60]}.", suffix=target.suffix, dir=target.parent)
+    try:
+        handle, scratch = tempfile.mkstemp(prefix=f".{target.name[:60]}.", suffix=target.suffix, dir=target.parent)
+    except OSError as error:
+        raise OSError(error.errno, error.strerror, path) from error
     os.close(handle)
     try:
         yield scratch
