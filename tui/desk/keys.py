@@ -78,10 +78,13 @@ QUEUE = (
 TALLY = (
     Key("tally.up", "up,k", "up", "up", "The line above.", 0),
     Key("tally.down", "down,j", "down", "down", "The line below.", 0),
+    Key("tally.left", "left", "left", "left", "The count to the left.", 0),
+    Key("tally.right", "right", "right", "right", "The count to the right.", 0),
     Key("tally.list", "enter", "list", "list what a line counts",
         "Show the candidates that the line counts, in the queue.", 1),
     Key("tally.reviewers", "r", "reviewers", "reviewers", "What each reviewer has done. There is no ranking.", 2),
-    Key("tally.write", "w", "write_out", "write out", "Where to find the command that writes the vetted list.", 2),
+    Key("tally.write", "w", "write_out", "write out",
+        "Write the team's vetted list to a file: past every seal, for everyone's eyes.", 2),
 )
 SPLIT = (
     Key("split.explains", "e", "choose('explains')", "explains",
@@ -140,6 +143,8 @@ CANDIDATE = (
     Key("candidate.views", "v", "views", "views", "The next page: facts, measurements, all fits, mixture, dips, pictures, story.", 2),
     Key("candidate.views_back", "V", "views_back", "page before", "The page before.", 0),
     *(Key(f"candidate.page_{n}", str(n), f"page({n})", "page", f"Page {n}.", 0) for n in range(1, 10)),
+    Key("candidate.stretch", "t", "stretch", "stretch", "Pictures: the faint, the middle or the bright parts.", 0),
+    Key("candidate.swap", "n", "swap", "other bands", "Pictures: another band in the same place, to see what moves or fades.", 0),
     Key("candidate.hand", "h", "hand", "by hand", "Change numbers by hand: the curve and chi-square follow.", 2),
     Key("candidate.drop", "space", "drop", "drop",
         "By hand: leave the band under the cursor out of the fit, or take it in again.", 0),

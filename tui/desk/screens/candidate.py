@@ -23,6 +23,7 @@ from tui.desk.screens.candidate_ruling import RecordsRulings
 from tui.desk.screens.pages import PAGES, page_rows
 from tui.desk.screens.walk import Walk, step_check
 from tui.desk.session_thread import SessionThread
+from tui.desk.widgets.cutout import STRETCHES
 from tui.desk.widgets.note import NoteEditor
 from tui.desk.widgets.rows import Row
 from tui.desk.widgets.rows_view import RowsView
@@ -65,7 +66,7 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
         with Horizontal(id="walk-middle"):
             yield SpectrumPlot(unicode=braille_works(os.environ), id="walk-plot")
             yield RowsView(lambda width, height: draw_numbers(self.walk, width, height), id="walk-numbers")
-        yield RowsView(lambda width, height: page_rows(self.walk, width) if self.walk.page else [], scrolls=True, id="walk-page")
+        yield RowsView(lambda width, height: page_rows(self.walk, width, height) if self.walk.page else [], scrolls=True, id="walk-page")
         yield NoteEditor(id="walk-note")
         yield RowsView(self._foot, id="walk-foot")
 
@@ -189,6 +190,16 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
         self.walk.page = number if 0 <= number <= len(PAGES) else 0
         self.walk.hand = None
         self.query_one("#walk-page", RowsView).to_top()
+        self.draw()
+
+    def action_stretch(self) -> None:
+        """The pictures' next stretch: faint, middle, bright."""
+        self.walk.stretch = (self.walk.stretch + 1) % len(STRETCHES)
+        self.draw()
+
+    def action_swap(self) -> None:
+        """Other bands' pictures first: two of them under one eye, in turn."""
+        self.walk.first_cutout = (self.walk.first_cutout + 1) % max(1, len(self.walk.cutouts))
         self.draw()
 
     def action_back(self) -> None:

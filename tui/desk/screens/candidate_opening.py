@@ -52,6 +52,7 @@ class OpensCandidates:
             if not all(check in evidence for check in CHECKS):
                 walk.trouble = NONE
             walk.story = tuple(await self.reads.ask(lambda s: s.story(name)))
+            walk.cutouts = tuple(await self.reads.ask(lambda s: s.cutouts(name)))
             await self.draw_curves(walk)
         except TuiError as error:
             walk.trouble = walk.message = str(error)

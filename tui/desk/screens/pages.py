@@ -2,26 +2,29 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from typing import Any
 
 from tui.desk.screens.walk import Walk
 from tui.desk.text import RULING_WORDS, clock, fit, number, safe, short_band, signed
+from tui.desk.widgets.cutout import cutout_rows
 from tui.desk.widgets.numbers import adequate_word, param_rows, statistic_rows
 from tui.desk.widgets.rows import Row, paragraph, row
+from tui.desk.widgets.spectrum_plot import braille_works
 from tui.model import CHECK_TITLES, CHECKS, Measurement
 
 
 @dataclass(frozen=True, slots=True)
 class Page:
-    """One page: its title on the tab line, and what draws it at a width."""
+    """One page: its title on the tab line, and what draws it at a width, knowing the rows in sight."""
 
     title: str
-    draw: Callable[[Walk, int], list[Row]]
+    draw: Callable[[Walk, int, int], list[Row]]
 
 
-def facts_page(walk: Walk, width: int) -> list[Row]:
+def facts_page(walk: Walk, width: int, height: int) -> list[Row]:
     """What the catalogues say of the star, and what this check found beside its fits."""
     candidate = walk.loaded.candidate
     rows = [_head("facts of the catalogues")]
@@ -40,7 +43,7 @@ def facts_page(walk: Walk, width: int) -> list[Row]:
     return rows if candidate.neighbours else [*rows, _quiet("none loaded")]
 
 
-def measurements_page(walk: Walk, width: int) -> list[Row]:
+def measurements_page(walk: Walk, width: int, height: int) -> list[Row]:
     """Every measurement as given and as fitted, by wavelength."""
     bands, fitted = walk.loaded.bands, walk.own_evidence.bands if walk.own_evidence else ()
     pulls = walk.fit.pulls if walk.fit else {}
@@ -53,7 +56,7 @@ def measurements_page(walk: Walk, width: int) -> list[Row]:
     return rows or [_quiet("nothing was measured")]
 
 
-def mixture_page(walk: Walk, width: int) -> list[Row]:
+def mixture_page(walk: Walk, width: int, height: int) -> list[Row]:
     """Could any mixture of natural thermal sources make these fluxes, and which bands say no?"""
     found = walk.evidence.get("mixture")
     rows = [_head("mixture bound: could any mixture of natural thermal sources make these fluxes?"), []]
@@ -70,7 +73,7 @@ def mixture_page(walk: Walk, width: int) -> list[Row]:
     return [*rows, [], *paragraph("Outside this family: sources that shine in lines, and stars unlike the templates.", width - 2, "quiet")]
 
 
-def fits_page(walk: Walk, width: int) -> list[Row]:
+def fits_page(walk: Walk, width: int, height: int) -> list[Row]:
     """All checks side by side: their fits, the best parameters, and what the reader ruled."""
     rows: list[Row] = []
     for check in CHECKS:
@@ -87,7 +90,7 @@ def fits_page(walk: Walk, width: int) -> list[Row]:
     return rows
 
 
-def others_page(walk: Walk, width: int) -> list[Row]:
+def others_page(walk: Walk, width: int, height: int) -> list[Row]:
     """What the others ruled, once the seal is open to the reader; the reader's own rulings in any case."""
     view = walk.loaded.view
     rows = [_head("your rulings")]
@@ -105,12 +108,17 @@ def others_page(walk: Walk, width: int) -> list[Row]:
     return rows if view.others else [*rows, _quiet("none so far")]
 
 
-def pictures_page(walk: Walk, width: int) -> list[Row]:
-    """Where cutouts hang."""
-    return [_head("pictures"), _quiet("no cutouts were loaded: plainlight load QUEUE TABLE --cutouts DIR")]
+def pictures_page(walk: Walk, width: int, height: int) -> list[Row]:
+    """Cutouts side by side in one of three stretches; a key swaps which come first."""
+    if not walk.cutouts:
+        return [_head("pictures"), _quiet("no cutouts were loaded: plainlight load QUEUE TABLE --cutouts DIR")]
+    bands = walk.loaded.bands
+    pictures = cutout_rows(width, height - 1, walk.cutouts, bands, walk.stretch, walk.first_cutout, braille_works(os.environ))
+    return [row(("t ", "key", "stretch()"), ("stretch   ", "", "stretch()"), ("n ", "key", "swap()"), ("other bands", "", "swap()"),
+                ("   north as in the file", "quiet")), *pictures]  # fmt: skip
 
 
-def dips_page(walk: Walk, width: int) -> list[Row]:
+def dips_page(walk: Walk, width: int, height: int) -> list[Row]:
     """Dimming events by band, and what their fits say."""
     rows = [_head("dips")]
     dips = walk.loaded.candidate.dips
@@ -130,7 +138,7 @@ def dips_page(walk: Walk, width: int) -> list[Row]:
     return rows
 
 
-def lookalikes_page(walk: Walk, width: int) -> list[Row]:
+def lookalikes_page(walk: Walk, width: int, height: int) -> list[Row]:
     """Candidates whose pulls share a pattern with this one's."""
     found = walk.own_evidence.facts.get("look_alikes") if walk.own_evidence else None
     rows = [_head("look-alikes: candidates whose pulls share a pattern with this one's")]
@@ -139,7 +147,7 @@ def lookalikes_page(walk: Walk, width: int) -> list[Row]:
     return [*rows, *paragraph(_words(found), width - 2)]
 
 
-def story_page(walk: Walk, width: int) -> list[Row]:
+def story_page(walk: Walk, width: int, height: int) -> list[Row]:
     """What happened to the candidate, in time order, as far as the reader may know."""
     rows = [_head("story")]
     for line in walk.story:
@@ -166,7 +174,7 @@ PAGES = (
 )
 
 
-def page_rows(walk: Walk, width: int) -> list[Row]:
+def page_rows(walk: Walk, width: int, height: int) -> list[Row]:
     """The page on view under the line of all titles; `walk.page` counts from 1, 0 being the plot."""
     full = sum(len(page.title) + 5 for page in PAGES) + 3 <= width
     tabs = row(" ", ("v", "key", "views()"), " ")
@@ -175,7 +183,7 @@ def page_rows(walk: Walk, width: int) -> list[Row]:
         text = f"[{number_} {page.title}]" if here else f" {number_} {page.title} " if full else f" {number_} "
         tabs += row((text, "now" if here else "quiet", f"page({number_})"))
     inner = max(20, width - 2)
-    body = PAGES[walk.page - 1].draw(walk, inner) if walk.loaded else [_quiet("reading ...")]
+    body = PAGES[walk.page - 1].draw(walk, inner, height - 2) if walk.loaded else [_quiet("reading ...")]
     return [tabs, [], *([*row(" "), *line] for line in body)]
 
 

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 from tui.desk.widgets.plot_data import PlotData, PlotView
 from tui.desk.widgets.plot_points import fit_of, plot_curves, plot_points, spectrum_curve
 from tui.model import CHECK_TITLES, CHECKS, Band, Candidate, Evidence, Fit, Measurement, Param
-from tui.workflow.records import CandidateView, StoryLine
+from tui.workflow.records import CandidateView, Cutout, StoryLine
 
 if TYPE_CHECKING:
     from tui.checks import Curve
@@ -60,6 +60,9 @@ class Walk:
     evidence: dict[str, Evidence] = field(default_factory=dict)
     curves: dict[tuple[str, int], Curve | None] = field(default_factory=dict)
     story: tuple[StoryLine, ...] = ()
+    cutouts: tuple[Cutout, ...] = ()
+    stretch: int = 1
+    first_cutout: int = 0
     fit_index: int = 0
     chosen: str = ""  # ruling chosen and not yet recorded
     notes: dict[str, str] = field(default_factory=dict)  # check -> note begun and not recorded

@@ -7,6 +7,7 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 from tui.desk.text import decimal_aligned, number, once_in, safe
+from tui.desk.text import fit as cut
 from tui.desk.widgets.rows import Row, Span, paragraph, row
 from tui.model import Evidence, Fit, Param
 
@@ -181,10 +182,10 @@ def fits_table(width: int, fits: Sequence[Fit], shown: int) -> list[Row]:
     aligned = [decimal_aligned(column) for column in columns]
     room = max(8, min(24, width - 33))
     rows = [row((f" {('fits of this check' if room >= 18 else 'its fits'):<{room}}{'chi2':>9}{'dof':>5}{'p':>8}{'BIC':>9}", "head"))]
-    for line, fit in enumerate(fits):
+    for line, one in enumerate(fits):
         cells = "".join(cell[line].rjust(size) for cell, size in zip(aligned, (9, 5, 8, 9), strict=True))
         mark = ">" if line == shown else " "
-        text = f"{mark}{safe(fit.model)[:room]:<{room}}{cells}"
+        text = f"{mark}{cut(safe(one.model), room)}{cells}"
         rows.append([Span(text, "chosen" if line == shown else "", f"fit({line})")])
     return rows
 

@@ -22,9 +22,9 @@ def header(width: int, plot: PlotData, view: PlotView, high_y: float, unicode: b
     line: Row = [Span(name, "axis")]
     entries = [*_lines(plot, unicode), *_marks(plot)]
     needed = row_width(line) + sum(row_width(entry) + len(GAP) for entry in entries)
-    gap = GAP if needed <= width else " "
+    gap = GAP if needed < width else " "
     for entry in entries:
-        if row_width(line) + len(gap) + row_width(entry) > width:
+        if row_width(line) + len(gap) + row_width(entry) >= width:
             break
         line += [Span(gap), *entry]
     return fit_row(line, width)

@@ -107,8 +107,12 @@ class RowsView(Widget):
         style = self._styles.get(span.style)
         if style is None:
             base = self.rich_style
-            known = span.style in NAMES
-            style = base + self.get_component_rich_style(f"rows--{span.style}", partial=True) if known else base
+            if span.style.startswith("#"):  # a colour by itself: a pixel of a picture
+                style = base + Style.parse(span.style)
+            elif span.style in NAMES:
+                style = base + self.get_component_rich_style(f"rows--{span.style}", partial=True)
+            else:
+                style = base
             self._styles[span.style] = style
         return style + Style(meta={"@click": f"screen.{span.action}"}) if span.action else style
 
