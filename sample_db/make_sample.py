@@ -36,7 +36,7 @@ def make_tables() -> int:
     for old in (FOLDER / "cutouts").glob("*.fits"):
         old.unlink()
     write_all(FOLDER, stars, Observer(sky, packaged_tables(), rng))
-    write_practice(FOLDER / "practice.toml", Observer(sky, packaged_tables(), np.random.default_rng(STATE + 1)))
+    write_practice(FOLDER / "practice.toml", Observer(sky, packaged_tables(), np.random.default_rng(STATE + 4)))
     return len(stars)
 
 

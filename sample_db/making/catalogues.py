@@ -22,8 +22,23 @@ FIRST_SOURCE_ID = 9_000_000_000_000_000_000  # above every identifier that Gaia 
 GAIA_YR, TWOMASS_YR, WISE_YR = 2016.0, 1999.4, 2010.55
 TWOMASS_JD, WISE_MJD = 2451324.8, 55397.3
 LIMIT_SIGMA = {"2MASS": 10.0, "WISE": 5.0, "SDSS": 5.0}  # at which the bands' usual depths are quoted
-FAINT_JY = {"IRAC1": 2e-5, "IRAC2": 2e-5, "IRAC3": 5e-5, "IRAC4": 5e-5, "MIPS24": 2e-4, "AKARI_S9W": 1.2e-2, "AKARI_L18W": 3e-2,
-            "PACS70": 2e-3, "PACS100": 3e-3, "PACS160": 6e-3, "GALEX_NUV": 4e-7, "B": 1e-5, "V": 1e-5, "Rc": 1e-5, "Ic": 1e-5}  # fmt: skip
+FAINT_JY = {
+    "IRAC1": 2e-5,
+    "IRAC2": 2e-5,
+    "IRAC3": 5e-5,
+    "IRAC4": 5e-5,
+    "MIPS24": 2e-4,
+    "AKARI_S9W": 1.2e-2,
+    "AKARI_L18W": 3e-2,
+    "PACS70": 2e-3,
+    "PACS100": 3e-3,
+    "PACS160": 6e-3,
+    "GALEX_NUV": 4e-7,
+    "B": 1e-5,
+    "V": 1e-5,
+    "Rc": 1e-5,
+    "Ic": 1e-5,
+}
 
 
 class Observer:
@@ -39,13 +54,17 @@ class Observer:
         flux = self.sky.flux(star, band)
         beam = self.sky.bands[band].beam_fwhm_arcsec
         if np.isfinite(beam):
-            flux += sum(leak_fraction(near[0], beam) * self.neighbour_flux(star, near, band) for near in star.neighbours)
+            flux += sum(
+                leak_fraction(near[0], beam) * self.neighbour_flux(star, near, band) for near in star.neighbours
+            )
         return float(flux) * 10 ** (-0.4 * star.offset_mag.get(band, 0.0))
 
     def neighbour_flux(self, star: Star, near: tuple[float, float, float, float], band: str) -> float:
         """Flux of a neighbour in a band, Jy."""
         _, _, teff, fainter = near
-        theta2 = self.sky.bands["Ks"].zero_point_jy * 10 ** (-0.4 * (star.ks_mag + fainter)) / self.sky.surface("Ks", teff)
+        theta2 = (
+            self.sky.bands["Ks"].zero_point_jy * 10 ** (-0.4 * (star.ks_mag + fainter)) / self.sky.surface("Ks", teff)
+        )
         return theta2 * self.sky.surface(band, teff)
 
     def seen(self, star: Star, band: str) -> tuple[float, float]:
@@ -71,14 +90,25 @@ class Observer:
         excess, scatter = odd.pop("excess", 0.0), odd.pop("scatter", 1.0)
         ra, dec = self.position(star)
         row: dict[str, Any] = {
-            "source_id": FIRST_SOURCE_ID + 1000 * number + int(rng.integers(1000)), "ref_epoch": GAIA_YR,
-            "ra": ra, "dec": dec, "ra_error": 0.02, "dec_error": 0.02,
-            **self.parallax(star), "pmra_error": 0.03, "pmdec_error": 0.03,
-            "ruwe": round(float(abs(rng.normal(1.01, 0.06))), 3), "ipd_frac_multi_peak": int(rng.integers(0, 3)),
-            "ipd_gof_harmonic_amplitude": round(float(rng.uniform(0.01, 0.05)), 4), "duplicated_source": False,
-            "non_single_star": 0, "phot_variable_flag": "NOT_AVAILABLE", "phot_proc_mode": 0,
-            "teff_gspphot": round(float(star.teff_k * rng.normal(1, 0.02)), 1), "logg_gspphot": round(float(rng.normal(4.4, 0.1)), 3),
-        }  # fmt: skip
+            "source_id": FIRST_SOURCE_ID + 1000 * number + int(rng.integers(1000)),
+            "ref_epoch": GAIA_YR,
+            "ra": ra,
+            "dec": dec,
+            "ra_error": 0.02,
+            "dec_error": 0.02,
+            **self.parallax(star),
+            "pmra_error": 0.03,
+            "pmdec_error": 0.03,
+            "ruwe": round(float(abs(rng.normal(1.01, 0.06))), 3),
+            "ipd_frac_multi_peak": int(rng.integers(0, 3)),
+            "ipd_gof_harmonic_amplitude": round(float(rng.uniform(0.01, 0.05)), 4),
+            "duplicated_source": False,
+            "non_single_star": 0,
+            "phot_variable_flag": "NOT_AVAILABLE",
+            "phot_proc_mode": 0,
+            "teff_gspphot": round(float(star.teff_k * rng.normal(1, 0.02)), 1),
+            "logg_gspphot": round(float(rng.normal(4.4, 0.1)), 3),
+        }
         row.update(self.gaia_photometry(star, excess, scatter))
         return row | {key: round(value, 4) if isinstance(value, float) else value for key, value in odd.items()}
 
@@ -94,9 +124,11 @@ class Observer:
         scatter = 10 ** (-0.2 * self.rng.normal(0, 0.12))  # of real dwarfs about their sequence
         motion = self.rng.normal(0, 2.5 * true, 2) + star.motion_mas_yr
         return {
-            "parallax": round(float(true * scatter - 0.017 + error * self.rng.standard_normal()), 4), "parallax_error": error,
-            "pmra": round(float(motion[0]), 3), "pmdec": round(float(motion[1]), 3),
-        }  # fmt: skip
+            "parallax": round(float(true * scatter - 0.017 + error * self.rng.standard_normal()), 4),
+            "parallax_error": error,
+            "pmra": round(float(motion[0]), 3),
+            "pmdec": round(float(motion[1]), 3),
+        }
 
     def gaia_photometry(self, star: Star, excess: float, scatter: float) -> dict[str, Any]:
         """Magnitudes of G, BP, RP, their errors, counts of transits and the excess factor."""
@@ -112,22 +144,41 @@ class Observer:
             if letter == "g":
                 quiet = float(quiet_scatter(np.array([mags["g"]]), self.tables.quiet)[0])
                 ratio = np.sqrt(counts["g"]) / (quiet * scatter * rng.uniform(0.85, 1.2))
-            row |= {f"phot_{letter}_mean_mag": round(mags[letter], 5), f"phot_{letter}_mean_flux_over_error": round(float(ratio), 2)}
+            row |= {
+                f"phot_{letter}_mean_mag": round(mags[letter], 5),
+                f"phot_{letter}_mean_flux_over_error": round(float(ratio), 2),
+            }
         for letter, count in counts.items():
             row[f"phot_{letter}_n_obs"] = count
         for letter in ("bp", "rp"):
-            row |= {f"phot_{letter}_n_blended_transits": int(rng.integers(0, 2)), f"phot_{letter}_n_contaminated_transits": 0}
+            row |= {
+                f"phot_{letter}_n_blended_transits": int(rng.integers(0, 2)),
+                f"phot_{letter}_n_contaminated_transits": 0,
+            }
         if len(mags) == 3:
             colour, g = np.array([mags["bp"] - mags["rp"]]), np.array([mags["g"]])
-            usual = expected_excess(colour, self.tables.excess) + excess_sigma(g, self.tables.excess) * rng.standard_normal()
+            usual = (
+                expected_excess(colour, self.tables.excess)
+                + excess_sigma(g, self.tables.excess) * rng.standard_normal()
+            )
             row |= {"bp_rp": round(float(colour[0]), 5), "phot_bp_rp_excess_factor": round(float(usual[0] + excess), 5)}
         return row
 
     def twomass(self, star: Star, gaia: dict[str, Any]) -> dict[str, Any]:
         """Columns of the 2MASS point source catalogue."""
         ra, dec = self.moved(gaia, TWOMASS_YR, 0.07)
-        row: dict[str, Any] = {"ra": ra, "dec": dec, "err_maj": 0.07, "jdate": TWOMASS_JD, "gal_contam": 0, "mp_flg": 0,
-                               "prox": round(float(self.rng.uniform(12, 60)), 1), "cc_flg": "000", "bl_flg": "", "rd_flg": ""}  # fmt: skip
+        row: dict[str, Any] = {
+            "ra": ra,
+            "dec": dec,
+            "err_maj": 0.07,
+            "jdate": TWOMASS_JD,
+            "gal_contam": 0,
+            "mp_flg": 0,
+            "prox": round(float(self.rng.uniform(12, 60)), 1),
+            "cc_flg": "000",
+            "bl_flg": "",
+            "rd_flg": "",
+        }
         quality = ""
         for letter, band in TWOMASS_BANDS.items():
             if band in star.absent:
@@ -151,9 +202,19 @@ class Observer:
         ra, dec = self.moved(gaia, WISE_YR, 0.05, star.wise_offset_arcsec)
         odd = dict(star.wise)
         offsets = {band: odd.pop(f"{band.lower()}mag_offset", 0.0) for band in WISE_BANDS}
-        row: dict[str, Any] = {"ra": ra, "dec": dec, "sigra": 0.05, "sigdec": 0.05, "nb": 1, "na": 0, "cc_flags": "0000",
-                               "ext_flg": 0, "var_flg": f"{self.rng.integers(0, 4)}{self.rng.integers(0, 4)}nn",
-                               "moon_lev": "0000", "w1mjdmean": WISE_MJD}  # fmt: skip
+        row: dict[str, Any] = {
+            "ra": ra,
+            "dec": dec,
+            "sigra": 0.05,
+            "sigdec": 0.05,
+            "nb": 1,
+            "na": 0,
+            "cc_flags": "0000",
+            "ext_flg": 0,
+            "var_flg": f"{self.rng.integers(0, 4)}{self.rng.integers(0, 4)}nn",
+            "moon_lev": "0000",
+            "w1mjdmean": WISE_MJD,
+        }
         quality = ""
         for band in WISE_BANDS:
             if band in star.absent:
@@ -174,16 +235,25 @@ class Observer:
         letter = "A" if ratio > 10 else "B" if ratio > 3 else "C" if found else "U"
         aperture = mag + aperture_offset + (0.6 * sigma * self.rng.standard_normal() if found else 0.0)
         return letter, {
-            f"{key}mpro": round(mag, 3), f"{key}sigmpro": sigma, f"{key}snr": round(float(ratio), 1) + 0.0,
-            f"{key}sat": round(saturated, 3), f"{key}rchi2": round(float(self.rng.normal(1.0, 0.08)), 2),
-            f"{key}mag": round(float(aperture), 3) if found else None, f"{key}sigm": sigma,
-        }  # fmt: skip
+            f"{key}mpro": round(mag, 3),
+            f"{key}sigmpro": sigma,
+            f"{key}snr": round(float(ratio), 1) + 0.0,
+            f"{key}sat": round(saturated, 3),
+            f"{key}rchi2": round(float(self.rng.normal(1.0, 0.08)), 2),
+            f"{key}mag": round(float(aperture), 3) if found else None,
+            f"{key}sigm": sigma,
+        }
 
-    def moved(self, gaia: dict[str, Any], year: float, sigma: float, offset: tuple[float, float] = (0.0, 0.0)) -> tuple[float, float]:
+    def moved(
+        self, gaia: dict[str, Any], year: float, sigma: float, offset: tuple[float, float] = (0.0, 0.0)
+    ) -> tuple[float, float]:
         """Where another catalogue saw the star at its own epoch, degrees."""
         years = year - GAIA_YR
-        east, north = (gaia[key] * years / 1000.0 + off + sigma * self.rng.standard_normal() for key, off in zip(("pmra", "pmdec"), offset, strict=True))
+        east, north = (
+            gaia[key] * years / 1000.0 + off + sigma * self.rng.standard_normal()
+            for key, off in zip(("pmra", "pmdec"), offset, strict=True)
+        )
         return (
-            round(float(gaia["ra"] + east / 3600.0 / np.cos(np.radians(gaia["dec"]))), 7), round(float(gaia["dec"] + north / 3600.0), 7),
-        )  # fmt: skip
-
+            round(float(gaia["ra"] + east / 3600.0 / np.cos(np.radians(gaia["dec"]))), 7),
+            round(float(gaia["dec"] + north / 3600.0), 7),
+        )

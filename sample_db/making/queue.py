@@ -39,18 +39,18 @@ class Habit:
     doubts: float  # chance of `unclear` where a fit is adequate and another explanation is at hand
 
 
-TEAM = (Habit("heron", 0.62, 0.04, 0.05), Habit("plover", 0.55, 0.10, 0.05), Habit("curlew", 0.45, 0.06, 0.20))
+TEAM = (Habit("heron", 0.54, 0.04, 0.05), Habit("plover", 0.46, 0.10, 0.05), Habit("curlew", 0.38, 0.06, 0.20))
 
 
 class Clock:
     """Stands in for the wall clock: each look is a little later than the last."""
 
-    def __init__(self, begin: datetime) -> None:
-        self.moment = begin
+    def __init__(self, begin: datetime, dice: random.Random) -> None:
+        self.moment, self.dice = begin, dice
 
     def now(self, zone: object = None) -> datetime:
-        """The moment, and half a minute more for the next."""
-        self.moment += timedelta(seconds=31, microseconds=412_007)
+        """The moment, some seconds to a minute after the last."""
+        self.moment += timedelta(seconds=self.dice.uniform(7, 55))
         return self.moment
 
 
@@ -68,7 +68,7 @@ def make_queue(folder: Path) -> str:
     for old in folder.glob(f"{QUEUE}*"):
         old.unlink()
     key = {row["name"]: row for row in csv.DictReader((folder / "key.csv").open(encoding="utf-8"))}
-    clock, dice = Clock(BEGIN), random.Random(20140901)
+    clock, dice = Clock(BEGIN, random.Random(20261109)), random.Random(20140901)
     with own_time_and_ids(clock, dice):
         done = load_tables(str(path), folder)
         for habit in TEAM:
@@ -89,9 +89,11 @@ def make_queue(folder: Path) -> str:
 def load_tables(path: str, folder: Path) -> Loaded:
     """Load all tables but the late one."""
     sides = Sidecars(
-        dips=(str(folder / "dips.csv"),), neighbours=(str(folder / "neighbours.ecsv"),), spectra=(str(folder / "spectra.fits"),),
+        dips=(str(folder / "dips.csv"),),
+        neighbours=(str(folder / "neighbours.ecsv"),),
+        spectra=(str(folder / "spectra.fits"),),
         cutouts=str(folder / "cutouts"),
-    )  # fmt: skip
+    )
     return load(path, [str(folder / table) for table in TABLES], sidecars=sides)
 
 

@@ -72,7 +72,9 @@ class Sky:
         """Flux of one photosphere behind the star's screens, Jy."""
         rule = self.rules[band]
         bare = self.spectrum_of(teff_k, rule.wave_um) * rule.weight
-        return theta2 * self.surface(band, teff_k) * float(np.sum(bare * self.passes(star, rule.wave_um)) / np.sum(bare))
+        return (
+            theta2 * self.surface(band, teff_k) * float(np.sum(bare * self.passes(star, rule.wave_um)) / np.sum(bare))
+        )
 
     def passes(self, star: Star, wave_um: FloatArray) -> FloatArray:
         """Share of the light that extinction and the screen let through."""

@@ -8,9 +8,9 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
-from astropy.io import fits
 from astropy.table import Table
-from making.catalogues import GAIA_YR, Observer
+from making.catalogues import Observer
+from making.pictures import picture
 from making.sky import extinction, magnitude
 from making.star import Star
 
@@ -20,12 +20,35 @@ DIP_BANDS = ("B", "V", "Rc", "Ic", "J")
 LATER_BANDS = ("IRAC1", "IRAC2", "IRAC3", "IRAC4", "MIPS24")
 EPOCHS_MJD = (56800.0, 57500.0, 58250.0)
 SPECTRUM_UM = np.geomspace(0.42, 2.3, 36)
-NATIVE_FACTS = ("av_max", "age_myr", "sp_type", "otype", "density_galaxy", "density_galaxy_band", "density_galaxy_mag",
-                "density_galaxy_slope")  # fmt: skip
-UNITS = {"ra": "deg", "dec": "deg", "ra_error": "mas", "dec_error": "mas", "parallax": "mas", "parallax_error": "mas",
-         "pmra": "mas / yr", "pmdec": "mas / yr", "pmra_error": "mas / yr", "pmdec_error": "mas / yr", "teff_gspphot": "K",
-         "err_maj": "arcsec", "sigra": "arcsec", "sigdec": "arcsec", "av_max": "mag", "age_myr": "Myr", "ref_epoch": "yr"}  # fmt: skip
-PIXELS, SCALE_ARCSEC = 25, 1.375  # of a picture; AllWISE's own pixels
+NATIVE_FACTS = (
+    "av_max",
+    "age_myr",
+    "sp_type",
+    "otype",
+    "density_galaxy",
+    "density_galaxy_band",
+    "density_galaxy_mag",
+    "density_galaxy_slope",
+)
+UNITS = {
+    "ra": "deg",
+    "dec": "deg",
+    "ra_error": "mas",
+    "dec_error": "mas",
+    "parallax": "mas",
+    "parallax_error": "mas",
+    "pmra": "mas / yr",
+    "pmdec": "mas / yr",
+    "pmra_error": "mas / yr",
+    "pmdec_error": "mas / yr",
+    "teff_gspphot": "K",
+    "err_maj": "arcsec",
+    "sigra": "arcsec",
+    "sigdec": "arcsec",
+    "av_max": "mag",
+    "age_myr": "Myr",
+    "ref_epoch": "yr",
+}
 SHARED = ("designation", "ra", "dec", "ph_qual")
 
 
@@ -51,18 +74,62 @@ def crossmatch(stars: Sequence[Star], observer: Observer) -> Table:
 
 def without(row: dict[str, Any], star: Star) -> dict[str, Any]:
     """A row of a star that some catalogue has not seen at all: that catalogue's columns are empty."""
-    for wanted, keep in (({"J", "H", "Ks"}, TWOMASS_COLUMNS), ({"W1", "W2", "W3", "W4"}, WISE_COLUMNS), ({"Gaia_G"}, GAIA_COLUMNS)):
+    for wanted, keep in (
+        ({"J", "H", "Ks"}, TWOMASS_COLUMNS),
+        ({"W1", "W2", "W3", "W4"}, WISE_COLUMNS),
+        ({"Gaia_G"}, GAIA_COLUMNS),
+    ):
         if wanted <= set(star.absent):
             row = {key: None if key in keep else value for key, value in row.items()}
     return row
 
 
-TWOMASS_COLUMNS = ("ra_2", "dec_2", "err_maj", "jdate", "gal_contam", "mp_flg", "prox", "cc_flg", "bl_flg", "rd_flg", "ph_qual_2")
-WISE_COLUMNS = ("ra_3", "dec_3", "sigra", "sigdec", "nb", "na", "cc_flags", "ext_flg", "var_flg", "moon_lev", "w1mjdmean", "ph_qual_3")
-GAIA_COLUMNS = ("source_id", "ruwe", "ipd_frac_multi_peak", "ipd_gof_harmonic_amplitude", "duplicated_source", "non_single_star",
-                "phot_variable_flag", "phot_proc_mode", "phot_g_n_obs", "phot_bp_n_obs", "phot_rp_n_obs",
-                "phot_bp_n_blended_transits", "phot_rp_n_blended_transits", "phot_bp_n_contaminated_transits",
-                "phot_rp_n_contaminated_transits", "teff_gspphot", "logg_gspphot")  # fmt: skip
+TWOMASS_COLUMNS = (
+    "ra_2",
+    "dec_2",
+    "err_maj",
+    "jdate",
+    "gal_contam",
+    "mp_flg",
+    "prox",
+    "cc_flg",
+    "bl_flg",
+    "rd_flg",
+    "ph_qual_2",
+)
+WISE_COLUMNS = (
+    "ra_3",
+    "dec_3",
+    "sigra",
+    "sigdec",
+    "nb",
+    "na",
+    "cc_flags",
+    "ext_flg",
+    "var_flg",
+    "moon_lev",
+    "w1mjdmean",
+    "ph_qual_3",
+)
+GAIA_COLUMNS = (
+    "source_id",
+    "ruwe",
+    "ipd_frac_multi_peak",
+    "ipd_gof_harmonic_amplitude",
+    "duplicated_source",
+    "non_single_star",
+    "phot_variable_flag",
+    "phot_proc_mode",
+    "phot_g_n_obs",
+    "phot_bp_n_obs",
+    "phot_rp_n_obs",
+    "phot_bp_n_blended_transits",
+    "phot_rp_n_blended_transits",
+    "phot_bp_n_contaminated_transits",
+    "phot_rp_n_contaminated_transits",
+    "teff_gspphot",
+    "logg_gspphot",
+)
 
 
 def table_of(rows: Sequence[Mapping[str, Any]]) -> Table:
@@ -104,7 +171,10 @@ def sdss_rows(stars: Sequence[Star], observer: Observer) -> Iterable[dict[str, A
             mag = -2.5 / np.log(10) * (np.arcsinh(ratio) + np.log(softening))
             sigma = 2.5 / np.log(10) * error / zero / np.hypot(flux / zero, 2 * softening)
             missing = number % 7 == 0 and band == "SDSS_u"
-            row |= {f"psfMag_{band[-1]}": -9999.0 if missing else round(float(mag), 4), f"psfMagErr_{band[-1]}": -9999.0 if missing else round(float(sigma), 4)}
+            row |= {
+                f"psfMag_{band[-1]}": -9999.0 if missing else round(float(mag), 4),
+                f"psfMagErr_{band[-1]}": -9999.0 if missing else round(float(sigma), 4),
+            }
         yield row | {"type": 6, "clean": 1}
 
 
@@ -124,11 +194,28 @@ def long_rows(stars: Sequence[Star], observer: Observer) -> Iterable[list[Any]]:
 def measured(observer: Observer, star: Star, number: int, band: str) -> list[Any]:
     """One row of the long table: mJy, or magnitudes for what is measured so; a 3 sigma limit where nothing was seen."""
     flux, error = observer.seen(star, band)
-    source = {"IRAC": "Spitzer", "MIPS": "Spitzer", "AKARI": "AKARI", "PACS": "Herschel", "Johnson": "Saltmarsh 0.6 m", "GALEX": "GALEX"}
+    source = {
+        "IRAC": "Spitzer",
+        "MIPS": "Spitzer",
+        "AKARI": "AKARI",
+        "PACS": "Herschel",
+        "Johnson": "Saltmarsh 0.6 m",
+        "GALEX": "GALEX",
+    }
     row = observer.sky.bands[band]
     label = source[row.instrument]
     if row.instrument == "Johnson":
-        return [name_of(number), band, round(magnitude(flux, row), 3), round(1.0857 * error / flux, 3), "mag", "", "", label, "2014-06-11"]
+        return [
+            name_of(number),
+            band,
+            round(magnitude(flux, row), 3),
+            round(1.0857 * error / flux, 3),
+            "mag",
+            "",
+            "",
+            label,
+            "2014-06-11",
+        ]
     if flux < 3 * error:
         return [name_of(number), band, round(1e3 * (max(flux, 0) + 3 * error), 5), "", "mJy", "true", 3, label, ""]
     return [name_of(number), band, round(1e3 * flux, 5), round(1e3 * error, 5), "mJy", "", "", label, ""]
@@ -160,9 +247,15 @@ def neighbour_table(stars: Sequence[Star], observer: Observer) -> Table:
     rows = []
     for number, star in enumerate(stars, 1):
         for near in star.neighbours:
-            row: dict[str, Any] = {"name": name_of(number), "separation": round(near[0], 2), "position_angle": round(near[1], 1)}
+            row: dict[str, Any] = {
+                "name": name_of(number),
+                "separation": round(near[0], 2),
+                "position_angle": round(near[1], 1),
+            }
             for band in ("Gaia_G", "J", "Ks", "W1", "W2", "W3", "W4"):
-                row[f"{band}_mag"] = round(magnitude(observer.neighbour_flux(star, near, band), observer.sky.bands[band]), 3)
+                row[f"{band}_mag"] = round(
+                    magnitude(observer.neighbour_flux(star, near, band), observer.sky.bands[band]), 3
+                )
             rows.append(row)
     table = table_of(rows)
     table["separation"].unit, table["position_angle"].unit = "arcsec", "deg"
@@ -177,39 +270,17 @@ def spectra_table(stars: Sequence[Star], observer: Observer) -> Table:
             flux = 1e3 * observer.sky.spectrum(star, SPECTRUM_UM)
             seen = flux * (1 + 0.02 * observer.rng.standard_normal(flux.size))
             rows += [
-                {"name": name_of(number), "wavelength": round(float(w), 4), "flux": float(f"{f:.5g}"), "error": float(f"{0.02 * t:.4g}")}
+                {
+                    "name": name_of(number),
+                    "wavelength": round(float(w), 4),
+                    "flux": float(f"{f:.5g}"),
+                    "error": float(f"{0.02 * t:.4g}"),
+                }
                 for w, f, t in zip(SPECTRUM_UM, seen, flux, strict=True)
             ]
     table = table_of(rows)
     table["wavelength"].unit, table["flux"].unit, table["error"].unit = "um", "mJy", "mJy"
     return table
-
-
-def picture(star: Star, band: str, observer: Observer, ra: float, dec: float) -> fits.PrimaryHDU:
-    """A small image of the star and its neighbours in one band, mJy a pixel."""
-    beam = observer.sky.bands[band].beam_fwhm_arcsec
-    middle = (PIXELS - 1) / 2
-    y, x = np.mgrid[:PIXELS, :PIXELS]
-    sources = [(0.0, 0.0, observer.seen(star, band)[0])]
-    for near in star.neighbours:
-        angle = np.radians(near[1])
-        sources.append((near[0] * np.sin(angle), near[0] * np.cos(angle), observer.neighbour_flux(star, near, band)))
-    image = np.zeros((PIXELS, PIXELS))
-    for east, north, flux in sources:
-        square = ((x - middle) + east / SCALE_ARCSEC) ** 2 + ((y - middle) - north / SCALE_ARCSEC) ** 2
-        profile = np.exp(-4 * np.log(2) * square * SCALE_ARCSEC**2 / beam**2)
-        image += 1e3 * flux * profile / (np.pi * beam**2 / (4 * np.log(2)) / SCALE_ARCSEC**2)
-    if star.recipe.startswith("spike"):
-        image += 0.35 * image.max() * np.exp(-0.5 * (((x - middle) - (y - middle)) / 1.3) ** 2)
-    if star.recipe.startswith("nebula"):
-        image += 0.30 * image.max() * np.exp(-0.5 * ((x - middle - 4) ** 2 + (y - middle + 2) ** 2) / 5.0**2)
-    image += 0.015 * image.max() * observer.rng.standard_normal(image.shape)
-    hdu = fits.PrimaryHDU(image.astype(np.float32))
-    cards = {"OBJECT": "Saltmarsh", "BAND": band, "BUNIT": "mJy", "CTYPE1": "RA---TAN", "CTYPE2": "DEC--TAN", "CRVAL1": ra, "CRVAL2": dec,
-             "CRPIX1": middle + 1, "CRPIX2": middle + 1, "CDELT1": -SCALE_ARCSEC / 3600, "CDELT2": SCALE_ARCSEC / 3600, "EQUINOX": 2000.0,
-             "EPOCH-YR": GAIA_YR}  # fmt: skip
-    hdu.header.update({key[:8]: value for key, value in cards.items()})
-    return hdu
 
 
 def write_csv(path: Path, head: Sequence[str], rows: Iterable[Sequence[Any]]) -> None:
@@ -231,7 +302,9 @@ def write_all(folder: Path, stars: Sequence[Star], observer: Observer) -> None:
     write_csv(folder / "further_bands.csv", head, long_rows(stars, observer))
     write_csv(folder / "spitzer_later.csv", head, later_rows(stars, observer))
     pivots = {name: band.pivot_um for name, band in observer.sky.bands.items()}
-    write_csv(folder / "dips.csv", ["name", "event", "band", "depth", "error", "epoch"], dip_rows(stars, observer.rng, pivots))
+    write_csv(
+        folder / "dips.csv", ["name", "event", "band", "depth", "error", "epoch"], dip_rows(stars, observer.rng, pivots)
+    )
     neighbour_table(stars, observer).write(folder / "neighbours.ecsv", overwrite=True)
     spectra_table(stars, observer).write(folder / "spectra.fits", overwrite=True)
     pictures = folder / "cutouts"
@@ -240,6 +313,8 @@ def write_all(folder: Path, stars: Sequence[Star], observer: Observer) -> None:
         for band in star.pictures:
             where = (float(matched["ra"][number - 1]), float(matched["dec"][number - 1]))
             picture(star, band, observer, *where).writeto(pictures / f"{name_of(number)}_{band}.fits", overwrite=True)
-    write_csv(folder / "truth.csv", ["name", "nature"], [[name_of(n), s.nature] for n, s in enumerate(stars, 1) if s.control])
+    write_csv(
+        folder / "truth.csv", ["name", "nature"], [[name_of(n), s.nature] for n, s in enumerate(stars, 1) if s.control]
+    )
     key = [[name_of(n), s.nature, s.recipe, s.shows, "yes" if s.later else ""] for n, s in enumerate(stars, 1)]
     write_csv(folder / "key.csv", ["name", "nature", "recipe", "shows", "late"], key)

@@ -1,0 +1,190 @@
+"""Each nature of the sample is recovered plausibly, and each item of evidence shows where it was built to show."""
+
+from __future__ import annotations
+
+import csv
+import shutil
+from collections import defaultdict
+from pathlib import Path
+
+import numpy as np
+import pytest
+
+from tui.checks.lookalikes import look_alikes, pulls_table, ready
+from tui.workflow.session import Session
+
+SAMPLE = Path(__file__).parent.parent / "sample_db"
+
+
+@pytest.fixture(scope="module")
+def key():
+    with (SAMPLE / "key.csv").open(encoding="utf-8") as stream:
+        return list(csv.DictReader(stream))
+
+
+@pytest.fixture(scope="module")
+def copy(tmp_path_factory):
+    """Path of a copy of the sample queue."""
+    return shutil.copyfile(SAMPLE / "saltmarsh.db", tmp_path_factory.mktemp("sample") / "saltmarsh.db").as_posix()
+
+
+@pytest.fixture(scope="module")
+def evidence(copy, key):
+    """Name -> stored evidence by kind."""
+    with Session.open(copy, write=False) as session:
+        return {row["name"]: session.stored_evidence(row["name"]) for row in key}
+
+
+# recipe -> check -> what `adequate` must be for every star of it (M dwarfs, giants, hot stars: plain or not, a star)
+RECOVERED = {
+    "plain hot star": {"star": True},
+    "plain M dwarf": {"star": True},
+    "giant": {"star": True},
+    "equal pair": {"star": True, "blend": True},
+    "hot subdwarf with a cool star": {"star": False, "blend": True},
+    "M dwarf with white dwarf": {"star": False, "blend": True, "extinction": False, "dust": False},
+    "galaxy in the beam": {"star": False, "blend": True, "extinction": False},
+    "fast star matched to a galaxy": {"star": False, "blend": True, "extinction": False},
+    "neighbour in the WISE beam": {"star": False, "instrument": True},
+    "warm disc": {"star": False, "dust": True, "extinction": False, "instrument": False},
+    "cold disc": {"star": False, "dust": True, "extinction": False, "instrument": False},
+    "hot dust": {"star": False, "dust": True, "instrument": False},
+    "two belts": {"star": False, "dust": True, "extinction": False, "blend": False},
+    "old star with much warm dust": {"star": False, "dust": True},
+    "spike or halo in W3 and W4": {"star": False, "instrument": True},
+    "moonlit W3 and W4": {"star": False, "instrument": True},
+    "saturated in W1 and W2": {"star": False, "instrument": True},
+    "BP holds a neighbour's light": {"star": False, "instrument": True},
+    "W1 and W2 caught in a flare": {"star": False, "instrument": True},
+    "nebula in W3 and W4": {"star": False, "instrument": True},
+    "variable while Gaia looked": {"star": False, "instrument": True},
+    "two detections joined by Gaia": {"star": False, "instrument": True},
+    "on one strip of warm detector": {"star": False, "instrument": False, "dust": True},
+    "much reddened star": {"extinction": True},
+    "reddened dwarf": {"extinction": True},
+    "deep in a cloud": {"star": False, "extinction": True},
+    "two bands only": {"star": None, "extinction": None, "dust": None},
+    "no flags loaded": {"instrument": None, "extinction": True},
+    "coloured dip": {"star": False, "instrument": False, "blend": False, "dust": True},
+    "grey dip": {"star": False, "instrument": False, "extinction": False, "blend": True},
+}
+
+
+@pytest.mark.parametrize("recipe", RECOVERED)
+def test_a_recipe_is_recovered(recipe, key, evidence):
+    names = [row["name"] for row in key if row["recipe"] == recipe]
+    assert names
+    for name in names:
+        assert {check: evidence[name][check].adequate for check in RECOVERED[recipe]} == RECOVERED[recipe], name
+
+
+def test_plain_dwarfs_are_refused_no_more_often_than_p_min_allows(key, evidence):
+    """18 stars at p_min 0.01: two refused ones would be a chance of 1.4 %."""
+    refused = [
+        row["name"] for row in key if row["recipe"] == "plain dwarf" and not evidence[row["name"]]["star"].adequate
+    ]
+    assert len(refused) < 2
+
+
+def test_screens_are_unexplained_by_every_check_and_by_any_mixture(key, evidence):
+    for row in key:
+        if row["nature"] == "none":
+            found = evidence[row["name"]]
+            assert [found[check].adequate for check in ("star", "instrument", "extinction", "blend", "dust")] == [
+                False
+            ] * 5
+            assert found["mixture"].adequate is False and found["mixture"].facts["p"] < 1e-6, row["name"]
+
+
+def test_no_ordinary_star_is_refused_by_the_mixture_bound(key, evidence):
+    refused = [
+        row["name"]
+        for row in key
+        if row["nature"] in ("star", "extinction", "dust", "blend")
+        and evidence[row["name"]]["mixture"].adequate is False
+    ]
+    assert refused == []
+
+
+# item of evidence -> the kind of evidence where it speaks, and words that a reviewer then reads
+SPOKEN = {
+    "contamination flag": ("instrument", "cc_flags"),
+    "saturation": ("instrument", "saturation limit"),
+    "2MASS confusion flag": ("instrument", "cc_flg c"),
+    "2MASS blend flag": ("instrument", "bl_flg 2"),
+    "2MASS read flag": ("instrument", "rd_flg 4"),
+    "C*": ("instrument", "C* ="),
+    "moonlight flag": ("instrument", "moon_lev"),
+    "epochs": ("instrument", "epochs disagree"),
+    "Gaia scatter": ("instrument", "times an ordinary star"),
+    "aperture": ("instrument", "aperture minus profile"),
+    "duplicated source": ("instrument", "duplicated_source"),
+    "no quality column": ("instrument", "nothing could speak against a band"),
+    "wrong match": ("blend", "from where the star was at that epoch"),
+    "RUWE": ("blend", "RUWE 3.1"),
+    "non-single flag": ("blend", "a solution for more than one star"),
+    "chance alignment": ("blend", "confusion is common"),
+    "neighbour leak": ("blend", "light leaking from neighbours makes"),
+    "laws differ": ("extinction", "the laws differ"),
+    "line of sight": ("extinction", "more than its line of sight allows"),
+    "too cold to see": ("dust", "95 % limits on f"),
+    "steady-state ceiling": ("dust", "keeps up: transient dust"),
+    "natural class": ("dust", "Catalogued as young"),
+    "log g": ("dust", "log g"),
+    "coloured dip": ("dips", "refused are grey"),
+    "grey dip": ("dips", "refused are A(lambda)"),
+}
+
+
+@pytest.mark.parametrize("item", SPOKEN)
+def test_an_item_changes_what_a_reviewer_reads(item, key, evidence):
+    kind, words = SPOKEN[item]
+    built = [row["name"] for row in key if row["shows"] == item and not row["late"]]  # late ones got further bands
+    silent = [name for name in built if not any(words in said for said in evidence[name][kind].cautions)]
+    assert built and not silent, f"{kind} says nothing of {item} for {silent}"
+    plain = [row["name"] for row in key if row["recipe"] == "plain dwarf"]
+    spoken = [name for name in plain if any(words in said for said in evidence[name][kind].cautions)]
+    assert item == "too cold to see" or not spoken
+
+
+def test_over_luminosity_tells_twins_from_single_stars(key, evidence):
+    """An equal pair is 0.753 mag above the sequence, whose scatter is 0.25 mag; by mean over four and over 18 stars."""
+    by_recipe = defaultdict(list)
+    for row in key:
+        value = evidence[row["name"]]["blend"].facts.get("over_luminosity")
+        if row["recipe"] in ("equal pair", "plain dwarf") and value is not None:
+            by_recipe[row["recipe"]].append(value)
+    twins, single = (sum(by_recipe[name]) / len(by_recipe[name]) for name in ("equal pair", "plain dwarf"))
+    assert twins - single == pytest.approx(0.753, abs=0.25)
+
+
+def test_a_second_temperature_is_asked_for_where_there_are_two_belts(key, evidence):
+    for row in key:
+        if row["shows"] == "second temperature":
+            assert evidence[row["name"]]["dust"].best.model == "star + two dusts, A_V"
+
+
+def test_neighbours_that_leak_make_their_bands_suspect(key, evidence):
+    for row in key:
+        if row["shows"] == "neighbour leak":
+            assert {"W1", "W2"} <= set(evidence[row["name"]]["instrument"].facts["suspect_bands"])
+
+
+def test_stars_on_the_strip_look_alike_and_lie_together(key, evidence):
+    """From one candidate: the strip's five share a pattern more often than chance gives, and a place on the sky."""
+    names = [row["name"] for row in key]
+    pulls = [dict(evidence[name]["star"].best.pulls) for name in names]
+    bands = ("Gaia_BP", "Gaia_G", "Gaia_RP", "J", "H", "Ks", "W1", "W2", "W3", "W4")
+    strip = {place for place, row in enumerate(key) if row["shows"] == "look-alikes"}
+    place = min(strip)
+    found = look_alikes(place, ready(pulls_table(pulls, bands)), np.random.default_rng(1))
+    assert strip - {place} <= set(found.rows.tolist()) and len(found.rows) > 4 * found.expected
+
+
+def test_spectra_and_pictures_hang_on_their_stars(key, copy):
+    with Session.open(copy, write=False) as session:
+        carrying = {row["name"] for row in key if session.candidate(row["name"]).spectrum is not None}
+    assert {row["recipe"] for row in key if row["shows"] == "spectrum"} == {"plain dwarf with a spectrum"}
+    assert {row["name"] for row in key if row["shows"] == "spectrum"} < carrying and len(carrying) == 3
+    pictures = {path.stem.partition("_")[0] for path in (SAMPLE / "cutouts").glob("*.fits")}
+    assert len(pictures) >= 4 and pictures <= {row["name"] for row in key}
