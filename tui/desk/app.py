@@ -3,20 +3,19 @@
 from __future__ import annotations
 
 import asyncio
-import os
 import signal
-import sys
 from collections.abc import Mapping
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from textual import events
 from textual.app import App
 from textual.binding import Binding
+from textual.screen import Screen
 
 from tui.desk.keys import checked_keymap
 from tui.desk.text import clock
 from tui.desk.theme import DEFAULT_THEME, THEME_NAMES, describe, theme_name, themes
-from tui.errors import SettingError, TuiError
+from tui.errors import SettingError
 
 if TYPE_CHECKING:
     from tui.workflow.session import Session
@@ -28,9 +27,8 @@ class Desk(App[None], inherit_bindings=False):
     """Everything a reader sees; what a key does to the queue is the session's work."""
 
     TITLE = "Plainlight"
-    CSS_PATH = "desk.tcss"
+    CSS_PATH = ["desk.tcss", "screens/queue.tcss"]  # the first screen's too: one parsing before the first rows, not two
     ENABLE_COMMAND_PALETTE = False
-    HORIZONTAL_BREAKPOINTS = [(0, "-narrow"), (165, "-wide"), (230, "-widest")]
     BINDINGS = [  # these two do what they always do in a terminal
         Binding("ctrl+c", "quit", show=False, priority=True),
         Binding("ctrl+z", "suspend_process", show=False, priority=True),
@@ -69,14 +67,17 @@ class Desk(App[None], inherit_bindings=False):
         self.theme = theme_name(theme or DEFAULT_THEME)
         self.set_keymap(self.keys_of)
 
-    def on_mount(self) -> None:
-        """Show the queue, and end in order when the line is cut."""
+    def get_default_screen(self) -> Screen[None]:
+        """The queue lies under everything else."""
         from tui.desk.screens.queue import QueueScreen
 
+        return QueueScreen(self.session)
+
+    def on_mount(self) -> None:
+        """End in order when the line is cut."""
         loop = asyncio.get_running_loop()
         for number in (signal.SIGTERM, signal.SIGHUP):
             loop.add_signal_handler(number, self.exit)
-        self.push_screen(QueueScreen(self.session))
 
     def on_resize(self, event: events.Resize) -> None:
         """Below the smallest size a plain sentence stands in for everything, until there is room again."""
@@ -87,6 +88,10 @@ class Desk(App[None], inherit_bindings=False):
             self.push_screen(SmallScreen())
         elif not is_small and isinstance(self.screen, SmallScreen):
             self.pop_screen()
+
+    def run(self, **options: Any) -> None:
+        """Run in this terminal; on a slow line without following the mouse."""
+        super().run(**{"mouse": not self.thin} | options)
 
     def next_theme(self) -> str:
         """Take the next set of colours; returns what it is, in words."""
@@ -99,28 +104,3 @@ class Desk(App[None], inherit_bindings=False):
         """A ruling was recorded at `utc`."""
         self.saved = clock(utc)
         self.rulings_made += 1
-
-
-def run_desk(
-    session: Session, *, thin: bool = False, theme: str | None = None, keys: Mapping[str, str] | None = None
-) -> None:
-    """Run the desk in this terminal until the reader leaves.
-
-    Raises:
-        TuiError: this is no terminal that the desk can draw on.
-        SettingError: as `Desk`.
-    """
-    if not sys.stdin.isatty() or not sys.stdout.isatty():
-        raise TuiError("The desk needs a terminal. Without one, use plainlight list, show, rule.")
-    if os.environ.get("TERM", "dumb") in {"dumb", "unknown", ""}:
-        raise TuiError("This terminal (TERM=dumb) cannot be drawn on. Use plainlight list, show, rule.")
-    desk = Desk(session, thin=thin, theme=theme, keys=keys)
-    start_helpers()
-    desk.run(mouse=not thin)
-
-
-def start_helpers() -> None:
-    """Start what worker processes will need, before the app owns the terminal's files."""
-    from multiprocessing import resource_tracker
-
-    resource_tracker.ensure_running()

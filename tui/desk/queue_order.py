@@ -10,6 +10,15 @@ if TYPE_CHECKING:
     from tui.desk.queue_view import QueueView
     from tui.workflow.session import Session
 
+BEGINNING = 200  # lines shown at once, while a long queue is still being ordered
+
+
+def beginning(session: Session, view: QueueView) -> array[int] | None:
+    """The first lines of a view where an index gives them at once; None where the whole must be ordered first."""
+    if not view.is_whole or not view.descending:
+        return None
+    return session.order(view.sort, view.descending, view.where, limit=BEGINNING)
+
 
 def ordered(session: Session, view: QueueView) -> Iterator[tuple[array[int], bool]]:
     """Ids for a view, and whether they are all.
@@ -19,11 +28,11 @@ def ordered(session: Session, view: QueueView) -> Iterator[tuple[array[int], boo
     if not view.find:
         yield session.order(view.sort, view.descending, view.where), True
         return
-    beginning = session.find(view.find)
-    yield beginning, False
-    known = set(beginning)
+    start = session.find(view.find)
+    yield start, False
+    known = set(start)
     inside = (found for found in session.find(view.find, substring=True) if found not in known)
-    yield beginning + array("q", inside), True
+    yield start + array("q", inside), True
 
 
 def line_of(ids: array[int], candidate_id: int | None, otherwise: int) -> int:

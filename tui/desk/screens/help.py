@@ -23,6 +23,7 @@ class HelpScreen(DeskScreen[str | None]):
     """The help of one place; dismissed with the action that was chosen, if any."""
 
     PLACE = "help"
+    CSS_PATH = "rows.tcss"
     BINDINGS = bindings("help")
 
     def __init__(self, place: str) -> None:
@@ -109,9 +110,7 @@ def found_rows(wanted: str, place: str, keymap: dict[str, str], width: int) -> l
     words = wanted.casefold().split()
     rows: list[PickRow] = []
     for other in (place, *(name for name in PLACES if name != place)):
-        hits = [key for key in PLACES[other] if all(word in f"{key.id} {key.label} {key.why}".casefold() for word in words)]
-        if other != place:
-            hits = [key for key in hits if key not in PLACES[place]]
+        hits = [key for key in PLACES[other] if _speaks_of(key, words) and (other == place or key not in PLACES[place])]
         if hits:
             where = "here" if other == place else f"in {PLACE_TITLES[other]}"
             rows += [PickRow(), PickRow(row((f" {where}", "head")))]
@@ -124,6 +123,11 @@ def elsewhere_rows(place: str) -> list[PickRow]:
     """Where the rest is told."""
     others = ", ".join(title for name, title in PLACE_TITLES.items() if name not in {place, "help"})
     return [PickRow(row((f" Each place has its own help: {others}.", "quiet")))]
+
+
+def _speaks_of(key: Key, words: list[str]) -> bool:
+    text = f"{key.id} {key.label} {key.why}".casefold()
+    return all(word in text for word in words)
 
 
 def _key_rows(key: Key, keymap: dict[str, str], width: int, target: Key | None) -> list[PickRow]:

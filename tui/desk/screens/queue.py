@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from pathlib import PurePath
 from typing import TYPE_CHECKING
@@ -12,7 +13,7 @@ from textual.containers import Horizontal, Vertical
 from textual.geometry import Offset
 from textual.message import Message
 from textual.timer import Timer
-from textual.widgets import Input, Static
+from textual.widgets import Static
 
 from tui.desk.keys import bindings
 from tui.desk.screens.base import MovesThroughList
@@ -20,15 +21,18 @@ from tui.desk.screens.queue_background import POLL_S, POLL_THIN_S, QueueBackgrou
 from tui.desk.summary import oddness_sentence, standing_sentence
 from tui.desk.text import KEY_OF_CHECK, safe
 from tui.desk.widgets.candidate_list import CandidateList
-from tui.desk.widgets.find_line import FindLine
-from tui.desk.widgets.peek import Peek
+from tui.desk.widgets.described import Described
 from tui.desk.widgets.queue_head import ColumnHead, HeadFacts, QueueTitle
 from tui.errors import TuiError
 
 if TYPE_CHECKING:
+    from textual.widgets import Input
+
+    from tui.model import Evidence
     from tui.workflow.records import QueueRow
     from tui.workflow.session import Session
 
+PEEK_FROM = 165  # columns: below it the list needs them all
 SETTLE_S = 0.04  # a candidate is described once the cursor has rested on it so long
 SIGN_WORDS = ".todo not ruled by you   .sealed opens when you are done   * stale"
 
@@ -37,7 +41,6 @@ class QueueScreen(MovesThroughList, QueueBackground):
     """Every candidate, one a line."""
 
     PLACE = "queue"
-    CSS_PATH = "queue.tcss"
     BINDINGS = bindings("queue")
 
     @dataclass
@@ -57,13 +60,9 @@ class QueueScreen(MovesThroughList, QueueBackground):
             with Vertical(id="left"):
                 yield ColumnHead()
                 yield CandidateList(self.session.rows, id="list")
-            yield Peek(id="peek")
-        yield Static("", id="chosen", markup=False)
-        yield Static("", id="standing", markup=False)
+        yield Described(id="described")
         yield Static("", id="orientation", markup=False)
-        yield FindLine(id="find")
         yield Static("", id="message", markup=False)
-        yield Static(SIGN_WORDS, id="signs", markup=False)
         yield self.key_line(2)
 
     def on_mount(self) -> None:
@@ -83,7 +82,6 @@ class QueueScreen(MovesThroughList, QueueBackground):
         line = self.query_one("#orientation", Static)
         line.update("\n".join(ORIENTATION if self.session.reviewer else (READER_LINE,)))
         line.display = is_new or self.session.reviewer is None
-        self.query_one("#signs").display = not line.display
 
     # --- the chosen candidate ---
 
@@ -98,24 +96,42 @@ class QueueScreen(MovesThroughList, QueueBackground):
 
     def describe(self, row: QueueRow | None) -> None:
         """One sentence on why it is odd, one on where it stands, its data beside the list if there is room."""
-        chosen, standing = self.query_one("#chosen", Static), self.query_one("#standing", Static)
-        peek = self.query_one(Peek)
         if row is None:
-            chosen.update("")
-            standing.update("")
-            peek.show(None, {}, {})
+            self.query_one(Described).say([])
             return
         try:
             evidence = self.session.stored_evidence(row.name)
             view = self.session.view(row.name) if row.seal_open else None
-            candidate = self.session.candidate(row.name) if peek.display else None
         except TuiError as error:
             self.say(str(error), is_error=True)
             return
-        chosen.update(safe(f"{row.name}  {oddness_sentence(row, evidence)}"))
-        standing.update(safe(standing_sentence(row, view)) if self.session.reviewer else "")
-        if candidate is not None:
-            peek.show(candidate, evidence, self.session.band_info())
+        said = [(safe(f"{row.name}  {oddness_sentence(row, evidence)}"), "plain")]
+        said += [(safe(standing_sentence(row, view)), "quiet")] if self.session.reviewer else []
+        self.query_one(Described).say([*said, (SIGN_WORDS, "quiet")])
+        if self.has_room:
+            self.peek(row.name, evidence)
+
+    @property
+    def has_room(self) -> bool:
+        """Whether the chosen candidate's data fit beside the list."""
+        return self.size.width >= PEEK_FROM and not self.app.thin
+
+    def peek(self, name: str, evidence: Mapping[str, Evidence]) -> None:
+        """Show the candidate's data beside the list."""
+        from tui.desk.widgets.peek import Peek
+
+        if not self.query(Peek):
+            self.query_one("#middle").mount(Peek(id="peek"))
+        try:
+            self.query_one(Peek).show(self.session.candidate(name), evidence, self.session.band_info())
+        except TuiError as error:
+            self.say(str(error), is_error=True)
+
+    def on_resize(self) -> None:
+        """More room shows more, less takes it away."""
+        for peek in self.query("#peek"):
+            peek.display = self.has_room
+        self.describe(self.query_one(CandidateList).chosen)
 
     def place_terminal_cursor(self) -> None:
         """The terminal's own cursor follows the choice, for those who read by it."""
@@ -183,19 +199,21 @@ class QueueScreen(MovesThroughList, QueueBackground):
         """List just these candidates, which a line of the tally counted."""
         self.look(replace(self.view.whole(), names=names, counted=words))
 
-    def action_find(self) -> None:
+    async def action_find(self) -> None:
         """Open the line to search in."""
+        from tui.desk.widgets.find_line import FindLine
+
+        if not self.query(FindLine):
+            await self.mount(FindLine(id="find"), before="#message")
         self.query_one(FindLine).open(self.view.find)
 
-    @on(Input.Changed)
-    def find_as_typed(self, message: Input.Changed) -> None:
+    def on_input_changed(self, message: Input.Changed) -> None:
         """List what matches so far; typing never waits for it."""
         message.stop()
         if message.value != self.view.find:
             self.look(replace(self.view.whole(), find=message.value))
 
-    @on(FindLine.Left)
-    def leave_find(self) -> None:
+    def on_find_line_left(self) -> None:
         """Letters are keys again."""
         self.set_focus(None)
         self.place_terminal_cursor()
@@ -223,9 +241,7 @@ class QueueScreen(MovesThroughList, QueueBackground):
         """Runs in a thread: finds and claims; only posts."""
         try:
             with self.session.clone() as session:
-                name = session.next_for_me()
-                if name is not None:
-                    session.claim(name)
+                name = session.claim_next()
         except TuiError as error:
             self.post_message(self.Failed(str(error)))
         else:

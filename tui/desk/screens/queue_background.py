@@ -11,7 +11,7 @@ from textual import on, work
 from textual.message import Message
 from textual.worker import get_current_worker
 
-from tui.desk.queue_order import line_of, ordered
+from tui.desk.queue_order import beginning, line_of, ordered
 from tui.desk.queue_view import QueueView
 from tui.desk.screens.base import DeskScreen
 from tui.desk.widgets.candidate_list import CandidateList
@@ -69,7 +69,18 @@ class QueueBackground(DeskScreen[None]):
         self.is_ordering = True
         self._asked_at = monotonic()
         self.tell_head()
+        if self.view != self._listed:
+            self.list_beginning()
         self.make_order(self.view)
+
+    def list_beginning(self) -> None:
+        """Show the first lines while a long queue is ordered; a millisecond's work."""
+        try:
+            ids = beginning(self.session, self.view)
+        except TuiError:
+            return  # the thread meets the same fault and says so
+        if ids:
+            self.query_one(CandidateList).show(ids, line_of(ids, self._kept_id(), 0))
 
     @work(thread=True, exclusive=True, group="order", exit_on_error=False)
     def make_order(self, view: QueueView) -> None:

@@ -31,7 +31,7 @@ class SplitScreen(DeskScreen[None]):
     """One check of one candidate whose seal is open to the reader."""
 
     PLACE = "split"
-    CSS_PATH = "split.tcss"
+    CSS_PATH = ["rows.tcss", "split.tcss"]
     BINDINGS = bindings("split")
 
     @dataclass

@@ -86,8 +86,8 @@ def number_rows(evidence: Evidence | None, width: int) -> list[Row]:
     name_wide = max(len(safe(found.model)) for found in fits) + 2
     chi2 = decimal_aligned([f"{found.chi2:.1f}" for found in fits])
     bic = decimal_aligned([f"{found.bic:.1f}" for found in fits])
-    head = f" {fit('fit', name_wide)}{fit('chi2', len(chi2[0]), align='right')}   dof  {fit('BIC', len(bic[0]), align='right')}"
-    rows: list[Row] = [row((head + "  chance alone", "quiet"))]
+    heads = fit("chi2", len(chi2[0]), align="right"), fit("BIC", len(bic[0]), align="right")
+    rows: list[Row] = [row((f" {fit('fit', name_wide)}{heads[0]}   dof  {heads[1]}  chance alone", "quiet"))]
     for place, found in enumerate(fits):
         text = f" {fit(safe(found.model), name_wide)}{chi2[place]}  {found.dof:>4}  {bic[place]}  {once_in(found.p)}"
         rows.append([Span(text, "strong" if place == 0 else "")])
@@ -148,6 +148,5 @@ def foot_row(width: int, chosen: str, note: str, is_recording: bool, can_rule: b
 def _params(evidence: Evidence) -> str:
     best = evidence.fits[0]
     return "   ".join(
-        f"{safe(name)} {number(param.value)} ({number(param.low)} to {number(param.high)}) {param.unit}".rstrip()
-        for name, param in best.params.items()
+        f"{param_name(name, param).label} {' +- '.join(value_and_error(param))}" for name, param in best.params.items()
     )

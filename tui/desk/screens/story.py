@@ -25,6 +25,7 @@ class StoryScreen(DeskScreen[None]):
     """One line or more for each thing that happened."""
 
     PLACE = "story"
+    CSS_PATH = "rows.tcss"
     BINDINGS = bindings("story")
 
     def __init__(self, session: Session, name: str) -> None:

@@ -49,6 +49,11 @@ class FindLine(Horizontal):
         entry.cursor_position = len(text)
         entry.focus()
 
+    @property
+    def text(self) -> str:
+        """What stands in the line."""
+        return self.query_one(FindInput).value
+
     def close(self) -> None:
         """Hide it."""
         self.display = False

@@ -77,6 +77,7 @@ class PickRows(RowsView):
             self._made, self._made_for = self.make(width), width
             if self.target is None:
                 self.line = next((i for i, made in enumerate(self._made) if made.target is not None), 0)
+                self._made = self.make(width)  # a row may look otherwise once it is the chosen one
         return [self._marked(i, made, width) for i, made in enumerate(self._made)]
 
     def _marked(self, line: int, made: PickRow, width: int) -> Row:
@@ -84,4 +85,4 @@ class PickRows(RowsView):
             return made.spans
         if line != self.line:
             return [Span("  "), *made.spans]
-        return [Span("> ", "chosen"), *(Span(s.text, s.style or "strong") for s in fit_row(made.spans, width - 2))]
+        return [Span("> ", "chosen"), *fit_row(made.spans, width - 2)]

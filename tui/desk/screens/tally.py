@@ -1,0 +1,183 @@
+"""The tally: how far the team is, whether it can be trusted, what is left, what it means; names under the seal."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from pathlib import PurePath
+from typing import TYPE_CHECKING
+
+from textual import on, work
+from textual.app import ComposeResult
+from textual.message import Message
+from textual.widgets import Input, Static
+
+from tui.desk.keys import bindings
+from tui.desk.screens.base import DeskScreen
+from tui.desk.screens.tally_rows import Choice, chosen_line, reviewer_rows, tally_rows, title_row
+from tui.desk.text import safe
+from tui.desk.widgets.find_line import FindLine
+from tui.desk.widgets.pick_rows import PickRow, PickRows
+from tui.desk.widgets.rows import Row, row
+from tui.desk.widgets.rows_view import RowsView
+from tui.errors import TuiError
+
+if TYPE_CHECKING:
+    from tui.workflow.session import Session
+    from tui.workflow.tally_record import Tally
+
+Counted = tuple[frozenset[str], str]
+
+
+class TallyScreen(DeskScreen[Counted | None]):
+    """Dismissed with the names that a line counts, to be listed in the queue."""
+
+    PLACE = "tally"
+    CSS_PATH = "rows.tcss"
+    BINDINGS = bindings("tally")
+
+    @dataclass
+    class Made(Message):
+        """The tally is ready."""
+
+        tally: Tally
+
+    @dataclass
+    class Said(Message):
+        """Something in the background ended, well or not."""
+
+        text: str
+        is_error: bool = False
+
+    def __init__(self, session: Session) -> None:
+        super().__init__()
+        self.session = session
+        self.tally: Tally | None = None
+        self.column = 0
+        self.shows_reviewers = False
+
+    def compose(self) -> ComposeResult:
+        """Title, the tally, where to write, keys."""
+        yield RowsView(self.draw_title, id="title")
+        yield PickRows(self.make_rows, id="rows")
+        yield FindLine(" write the team's vetted list to ", "  .ecsv .fits .vot .csv; empty: none ", id="find")
+        yield Static("", id="message", markup=False)
+        yield self.key_line(1)
+
+    def on_mount(self) -> None:
+        """Count in the background."""
+        self.count()
+
+    @work(thread=True, exclusive=True, group="tally", exit_on_error=False)
+    def count(self) -> None:
+        """Runs in a thread; only posts."""
+        try:
+            with self.session.clone() as session:
+                self.post_message(self.Made(session.tally()))
+        except TuiError as error:
+            self.post_message(self.Said(str(error), is_error=True))
+
+    @on(Made)
+    def show_tally(self, message: Made) -> None:
+        """Show it."""
+        self.tally = message.tally
+        self.redraw()
+
+    def redraw(self) -> None:
+        """Draw all again."""
+        self.query_one("#title", RowsView).rows_from(self.draw_title)
+        self.query_one(PickRows).renew()
+
+    def draw_title(self, width: int, height: int) -> list[Row]:
+        """The first line."""
+        return [title_row(PurePath(self.session.path).name, self.tally, width)]
+
+    def make_rows(self, width: int) -> list[PickRow]:
+        """The tally, or what each reviewer has done."""
+        if self.tally is None:
+            return [PickRow(), PickRow(row((" counting ...", "quiet")))]
+        if self.shows_reviewers:
+            return reviewer_rows(self.tally, width)
+        return tally_rows(self.tally, width, Choice(self.query_one("#rows", PickRows).line, self.column))
+
+    # --- keys ---
+
+    def action_up(self) -> None:
+        """The line above."""
+        self.query_one(PickRows).move(-1)
+        self.query_one(PickRows).renew()
+
+    def action_down(self) -> None:
+        """The line below."""
+        self.query_one(PickRows).move(1)
+        self.query_one(PickRows).renew()
+
+    def action_left(self) -> None:
+        """The count to the left."""
+        self.column = max(0, min(self.column, self.cells - 1) - 1)
+        self.query_one(PickRows).renew()
+
+    def action_right(self) -> None:
+        """The count to the right."""
+        self.column = max(0, min(self.cells - 1, self.column + 1))
+        self.query_one(PickRows).renew()
+
+    @property
+    def cells(self) -> int:
+        """Counts on the chosen row."""
+        target = self.query_one(PickRows).target
+        return len(target) if isinstance(target, tuple) else 0
+
+    @on(PickRows.Picked)
+    def action_list(self) -> None:
+        """List what the chosen line counts."""
+        line = chosen_line(self.query_one(PickRows).target, self.column)
+        if line is None:
+            return
+        if line.names:
+            self.dismiss((frozenset(line.names), line.text))
+        elif line.unnamed:
+            self.say(f"{line.text}: all of them are still sealed to you and not named.")
+        else:
+            self.say("It counts no candidate.")
+
+    def action_reviewers(self) -> None:
+        """What each reviewer has done; again for the tally."""
+        self.shows_reviewers = not self.shows_reviewers
+        self.query_one(PickRows).to_top()
+        self.redraw()
+
+    def action_write_out(self) -> None:
+        """Ask where to."""
+        self.say("The vetted list is the team's: it holds everyone's rulings and every outcome, past your seal.")
+        stem = PurePath(self.session.path).stem
+        self.query_one(FindLine).open(f"{stem}-vetted.ecsv")
+
+    @on(Input.Changed)
+    def keep_quiet(self, message: Input.Changed) -> None:
+        """Typing a file's name does nothing yet."""
+        message.stop()
+
+    @on(FindLine.Left)
+    def write(self) -> None:
+        """Write to the file that was named."""
+        line = self.query_one(FindLine)
+        self.set_focus(None)
+        line.close()
+        if line.text.strip():
+            self.say(f"Writing {line.text.strip()} ...")
+            self.export(line.text.strip())
+
+    @work(thread=True, exclusive=True, group="export", exit_on_error=False)
+    def export(self, out: str) -> None:
+        """Runs in a thread; only posts."""
+        from tui.workflow.exporting import export
+
+        try:
+            self.post_message(self.Said(export(self.session.path, out).sentence()))
+        except (TuiError, OSError) as error:
+            self.post_message(self.Said(str(error), is_error=True))
+
+    @on(Said)
+    def say_said(self, message: Said) -> None:
+        """A quiet plain line."""
+        self.say(safe(message.text), is_error=message.is_error)
