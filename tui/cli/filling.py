@@ -44,14 +44,14 @@ def load_command(queue, tables, columns, source, refused, dips, neighbours, spec
 @click.command("assess")
 @queue_argument
 @click.option("--only", type=click.Choice(KINDS), multiple=True, metavar="CHECK", help="Only this kind of evidence.")
-@click.option("--jobs", type=click.IntRange(1, 256), default=None, metavar="N", help="Processes; default 1.")
+@click.option("--jobs", type=click.IntRange(1, 256), default=None, metavar="N", help="Processes; default: as many as a long queue is worth.")
 def assess_command(queue: str, only: tuple[str, ...], jobs: int | None) -> int:
     """Compute the evidence that is lacking or outdated."""
     from tui.cli.printing import line, progress
     from tui.workflow.assessing import assess_queue
 
     with progress("assessing") as report:
-        done = assess_queue(queue, kinds=only or KINDS, jobs=jobs or 1, report=report)
+        done = assess_queue(queue, kinds=only or KINDS, jobs=jobs, report=report)
     line(done.sentence())
     return 0
 
