@@ -44,7 +44,7 @@ def load_command(queue, tables, columns, source, refused, dips, neighbours, spec
 @click.command("assess")
 @queue_argument
 @click.option("--only", type=click.Choice(KINDS), multiple=True, metavar="CHECK", help="Only this kind of evidence.")
-@click.option("--jobs", type=click.IntRange(1, 256), default=None, metavar="N", help="Processes; default: as many as a long queue is worth.")
+@click.option("--jobs", type=click.IntRange(1, 256), metavar="N", help="Processes; by default as a long queue needs.")
 def assess_command(queue: str, only: tuple[str, ...], jobs: int | None) -> int:
     """Compute the evidence that is lacking or outdated."""
     from tui.cli.printing import line, progress
