@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import replace
 
 import numpy as np
 
 from tui.checks.prepare import fact
-from tui.checks.record import Group, any_stands, ordered_fits, stands
+from tui.checks.record import Group, any_stands, fits_of, ordered_fits, stands
 from tui.checks.remarks import common_remarks, gain_over_star
 from tui.model import Candidate, Evidence, Fit, Settings
 from tui.physics.composite import STAR_AV, STAR_AV_RV
@@ -21,6 +21,8 @@ VERSION = 1  # raise it whenever the same candidate could get other numbers
 DISC_HEIGHT_KPC = 0.1
 AV_PER_KPC = 1.8  # mag; Whittet 2003
 LAWS_DIFFER_AV = 2.0  # beyond this the laws' own differences reach several per cent in the infrared
+EXCESS_SIGMA = 3.0
+INFRARED_UM = 2.0
 
 
 def fit_extinction(problem: Problem, star: FitBatch, settings: Settings) -> list[FitBatch]:
@@ -52,9 +54,44 @@ def assess(
     rows = np.arange(len(problem))
     groups = [Group(batch, rows) for batch in fit_extinction(problem, star_batch, settings)]
     fits = ordered_fits(groups, len(problem))
-    return [
+    evidence = [
         one_evidence(candidate, fits[row], star[row], problem, row, settings) for row, candidate in enumerate(candidates)
     ]
+    return try_other_law(evidence, problem, settings)
+
+
+def try_other_law(evidence: list[Evidence], problem: Problem, settings: Settings) -> list[Evidence]:
+    """Say of each infrared excess behind much extinction whether it survives another law."""
+    pivot = dict(zip(problem.templates.names, problem.templates.pivot_um, strict=True))
+    excess = {row: band for row, one in enumerate(evidence) if (band := infrared_excess(one, pivot))}
+    if not excess:
+        return evidence
+    rows = np.array(sorted(excess))
+    again = fits_of(fit(_with_av(problem.take(rows), AV_MAX), STAR_AV, other_law=True), with_intervals=False)
+    law = problem.templates.other_law
+    for row, other in zip(rows, again, strict=True):
+        evidence[row] = with_other_law(evidence[row], excess[row], other, law, int(problem.points[row]), settings)
+    return evidence
+
+
+def infrared_excess(one: Evidence, pivot_um: Mapping[str, float]) -> str:
+    """The infrared band brightest above a refused fit behind more than 2 mag; empty where there is none."""
+    if one.adequate is not False or one.best is None or one.best.params["av"].value <= LAWS_DIFFER_AV:
+        return ""
+    pulls = {band: pull for band, pull in one.best.pulls.items() if pivot_um[band] > INFRARED_UM and pull > EXCESS_SIGMA}
+    return max(pulls, key=lambda band: pulls[band], default="")
+
+
+def with_other_law(one: Evidence, band: str, other: Fit, law: str, points: int, settings: Settings) -> Evidence:
+    """The evidence with what another law makes of its excess."""
+    survives = other.pulls[band] > EXCESS_SIGMA and stands(other, points, settings) is not True
+    verb = "survives" if survives else "does not survive"
+    remark = (
+        f"The excess in {band} ({one.best.pulls[band]:+.1f} sigma) {verb} the law {law}: "
+        f"there {other.pulls[band]:+.1f} sigma, p = {other.p:.2g}, A_V {other.params['av'].value:.2f}."
+    )
+    facts = {**one.facts, "other_law": law, "other_law_p": other.p, "excess_survives_other_law": survives}
+    return replace(one, cautions=(*one.cautions, remark), facts=facts)
 
 
 def one_evidence(
@@ -77,8 +114,7 @@ def one_evidence(
         cautions.append(f"A_V {av:.2f} mag is more than {cause} allows ({ceiling:.2f} mag).")
     if av > LAWS_DIFFER_AV:
         cautions.append(
-            f"At A_V {av:.1f} the laws differ: G23 exceeds Wang & Chen 2019 by 14, 30, 38 % in J, H, Ks. "
-            "Try the settings law wc19 before an infrared excess is believed."
+            f"At A_V {av:.1f} the laws themselves differ: G23 exceeds Wang & Chen 2019 by 14, 30, 38 % in J, H, Ks."
         )
     answer = any_stands([stands(one, points, settings) for one, points in fits])
     return Evidence(KIND, VERSION, answer, tuple(one for one, _ in fits), tuple(cautions), told, bands=star.bands)

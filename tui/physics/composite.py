@@ -94,8 +94,12 @@ def one_column(grid: SourceGrid, column: FloatArray) -> SourceGrid:
     return replace(grid, ln_flux=table, slope=np.gradient(table, axis=0))
 
 
-def kit_for(model: Model, templates: Templates, r_v: float = 3.1) -> Kit:
-    """Collect the tables of a model; R_V is fixed where the model does not free it."""
+def kit_for(model: Model, templates: Templates, r_v: float = 3.1, *, other_law: bool = False) -> Kit:
+    """Collect the tables of a model; R_V is fixed where the model does not free it.
+
+    Args:
+        other_law: redden the star by the templates' other law (for a star behind a screen alone).
+    """
     free_rv = RV in model.free
 
     def screen(reddening: Reddening) -> Reddening:
@@ -108,7 +112,7 @@ def kit_for(model: Model, templates: Templates, r_v: float = 3.1) -> Kit:
     return Kit(
         model=model,
         star=templates.star,
-        star_reddening=screen(templates.star_reddening),
+        star_reddening=templates.other_reddening if other_law else screen(templates.star_reddening),
         further=tuple(getattr(templates, source) for source in model.sources),
         further_reddening=tuple(screen(screens[source]) for source in model.sources),
         ratio=one_column(templates.star, templates.ln_ks),

@@ -82,14 +82,17 @@ def first_errors(problem: Problem) -> Errors:
     return errors_for(problem, flux, flux, middle)
 
 
-def fit(problem: Problem, model: Model, *, r_v: float = 3.1, start: FloatArray | None = None) -> FitBatch:
+def fit(
+    problem: Problem, model: Model, *, r_v: float = 3.1, start: FloatArray | None = None, other_law: bool = False
+) -> FitBatch:
     """Best fit of `model` to every candidate of `problem`.
 
     Args:
         r_v: R_V of the screen where the model does not free it.
         start: (M, 8) rows to begin from besides the scan's, for nested models.
+        other_law: behind a screen by the templates' other law.
     """
-    kit = kit_for(model, problem.templates, r_v)
+    kit = kit_for(model, problem.templates, r_v, other_law=other_law)
     errors = first_errors(problem)
     extra = [] if start is None else [start]
     x, cost = look(problem, kit, errors, extra)

@@ -57,6 +57,8 @@ class Templates:
     star_reddening: Reddening
     dust_reddening: Reddening
     compact_reddening: Reddening
+    other_law: str  # a law that differs most from `law` in the infrared, to see what rests on the choice
+    other_reddening: Reddening  # of the star, by the other law
     spread: FloatArray  # shape (N, B), on the star's grid
     radius_m: FloatArray  # shape (N,), on the star's grid; NaN where the source gives no radius
     ln_ks: FloatArray  # shape (N,), ln of the star's flux at 2.16 micron, on the star's grid
@@ -87,6 +89,7 @@ class Templates:
             raise TemplateError(f"The template grids lack the band {missing[0]}; add it to the queue's bands.")
         columns = [place[name] for name in names]
         parts = ("star", "dust", "compact", "power", "star_reddening", "dust_reddening", "compact_reddening")
+        parts = (*parts, "other_reddening")
         return replace(
             self,
             bands=tuple(self.bands[column] for column in columns),
@@ -165,13 +168,13 @@ def build_templates(
     single = law == "wc19" or r_v is not None
     rv_range = (r_v or 3.1, r_v or 3.1) if single else R_V_RANGE
 
-    def curve(wave_um: FloatArray, ratio: float) -> FloatArray:
-        return extinction_curve(wave_um, law, ratio)
+    other = "g23" if law == "wc19" else "wc19"
 
-    def reddening(low_k: float, high_k: float) -> Reddening:
-        return expand_reddening(thin, curve, (low_k, high_k), rv_range)
+    def reddening(low_k: float, high_k: float, by: str = law, ratios: tuple[float, float] = rv_range) -> Reddening:
+        return expand_reddening(thin, lambda wave, ratio: extinction_curve(wave, by, ratio), (low_k, high_k), ratios)
 
     star_table = photosphere.ln_flux[:, order]
+    star_range = (float(photosphere.teff_k[0]), float(photosphere.teff_k[-1]))
     known = np.isfinite(star_table).all(axis=0)
 
     def star_at(wave_um: float) -> FloatArray:
@@ -186,9 +189,11 @@ def build_templates(
         dust=source_grid("dust", dust_x, ln_planck_bands(np.exp(dust_x), rules)),
         compact=source_grid("compact", compact_x, ln_planck_bands(np.exp(compact_x), rules)),
         power=source_grid("power", slope_x, power_law_bands(slope_x, rules)),
-        star_reddening=reddening(float(photosphere.teff_k[0]), float(photosphere.teff_k[-1])),
+        star_reddening=reddening(*star_range),
         dust_reddening=reddening(*DUST_RANGE_K),
         compact_reddening=reddening(*COMPACT_RANGE_K),
+        other_law=other,
+        other_reddening=reddening(*star_range, other, (3.1, 3.1)),
         spread=spread_table(spreads, photosphere, bands, source_floor)[:, order],
         radius_m=photosphere.radius_m,
         ln_ks=star_at(2.16),
