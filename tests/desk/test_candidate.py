@@ -435,3 +435,31 @@ def test_unforeseen_failure_in_the_background_is_a_quiet_line(fake_session, on_c
         assert app.screen is not screen
 
     on_candidate(fake_session, steps)
+
+
+def test_pasted_note_keeps_its_lines_and_steers_nothing(fake_session, on_candidate, screen_text):
+    from textual import events
+
+    fake_session.save_draft(NAME, "star", "kept \x1b[31m")
+
+    async def steps(app, screen, press):
+        await press("a")
+        app.post_message(events.Paste(" one\r\ntwo\x1b[2J \u202e [/] \tend"))
+        await press("right", "tab")
+        note = fake_session.drafts[NAME, "star"]
+        assert note.split("\n")[0] == "kept \ufffd[31m one" and note.split("\n")[1].startswith("two\ufffd[2J \ufffd [/]")
+        assert all(line.isprintable() for line in screen_text(app).split("\n"))
+
+    on_candidate(fake_session, steps)
+
+
+def test_very_long_note_is_cut_not_refused(fake_session, on_candidate):
+    from textual import events
+
+    async def steps(app, screen, press):
+        await press("a")
+        app.post_message(events.Paste("x" * 9000))
+        await press("right", "tab")
+        assert len(fake_session.drafts[NAME, "star"]) == 4000
+
+    on_candidate(fake_session, steps)

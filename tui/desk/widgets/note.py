@@ -8,6 +8,8 @@ from textual import events
 from textual.message import Message
 from textual.widgets import TextArea
 
+from tui.workflow.safe_text import safe
+
 MOST = 4000  # characters of one note
 
 
@@ -29,9 +31,7 @@ class NoteEditor(TextArea):
 
     def open(self, text: str) -> None:
         """Show a note to go on with, the cursor at its end."""
-        with self.prevent(TextArea.Changed):
-            self.load_text(text)
-        self.move_cursor(self.document.end)
+        self._show(tame(text))
         self.focus()
 
     async def _on_key(self, event: events.Key) -> None:
@@ -43,10 +43,24 @@ class NoteEditor(TextArea):
         await super()._on_key(event)
 
     def on_text_area_changed(self, event: TextArea.Changed) -> None:
-        """Tell at every keystroke, paste included."""
+        """Tell at every keystroke, paste included; what could steer a terminal is made visible at once."""
         event.stop()
-        if len(self.text) > MOST:
-            with self.prevent(TextArea.Changed):
-                self.load_text(self.text[:MOST])
-            self.move_cursor(self.document.end)
-        self.post_message(self.Typed(self.text))
+        tamed = tame(self.text)
+        if tamed != self.text:
+            self._show(tamed)
+        self.post_message(self.Typed(tamed))
+
+    def _show(self, text: str) -> None:
+        with self.prevent(TextArea.Changed):
+            self.load_text(text)
+        self.move_cursor(self.document.end)
+
+
+def tame(text: str) -> str:
+    """A note fit for a terminal: its line ends kept, tabs as spaces, control characters shown, not too long.
+
+    >>> tame("one\\r\\ntwo\\tthree\\x1b[2J")
+    'one\\ntwo three�[2J'
+    """
+    lines = text.replace("\r\n", "\n").replace("\r", "\n").expandtabs(4)
+    return safe(lines, newlines=True)[:MOST]
