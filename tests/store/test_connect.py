@@ -17,7 +17,7 @@ from tui.errors import StoreError
 from tui.store import connect
 from tui.store.candidates import candidate_count, candidate_names
 from tui.store.connect import data_version, immediate, open_queue, read_header
-from tui.store.reviewers import add_reviewer
+from tui.store.reviewers import add_reviewer, reviewer_by_handle
 from tui.store.schema import APPLICATION_ID, MIGRATIONS, SCHEMA_VERSION, migrate
 
 
@@ -221,3 +221,25 @@ def test_processes_that_make_one_queue_at_once(path):
     running = [subprocess.Popen([sys.executable, "-c", code], stderr=subprocess.PIPE) for _ in range(6)]
     assert [(process.communicate()[1], process.returncode) for process in running] == [(b"", 0)] * 6
     assert not os.path.exists(path + ".v1.bak")
+
+
+CLOSER = "from tui.store.connect import open_queue; import sys; open_queue(sys.argv[1]).close()"
+
+
+def test_opening_a_queue_again_does_not_drop_the_locks_of_the_first_connection(filled, path):
+    """Else the other process, taking itself for the last, clears away the log that is still written here."""
+    heron = reviewer_by_handle(filled, "heron")
+    rule(filled, heron, "SM-0001", "star")
+    open_queue(path).close()
+    subprocess.run([sys.executable, "-c", CLOSER, path], check=True, cwd=Path.cwd())
+    assert os.path.exists(path + "-wal")
+    rule(filled, heron, "SM-0002", "star")
+    other = plain(path)
+    assert other.execute("SELECT COUNT(*) FROM ruling").fetchone() == (2,)
+    other.close()
+
+
+def test_a_queue_that_became_newer_while_it_is_open_is_refused(queue, path):
+    queue.execute(f"PRAGMA user_version = {SCHEMA_VERSION + 1}")
+    with pytest.raises(StoreError, match="newer"):
+        open_queue(path)

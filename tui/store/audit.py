@@ -116,11 +116,11 @@ def wrong_rows(connection: sqlite3.Connection, ids: Iterable[int]) -> Iterator[i
 
 def wanted_rows(connection: sqlite3.Connection, candidate_id: int, settings: Settings) -> tuple[object, ...]:
     """The derived rows of a candidate, computed."""
-    derived = deriving.derive(connection, candidate_id, settings)
+    ground = deriving.ground_of(connection, candidate_id)
+    derived = deriving.derive(ground, settings)
     name = connection.execute("SELECT name FROM candidate WHERE id = ?", (candidate_id,)).fetchone()[0]
     stands = sorted(derived.standing)
-    opened = frozenset(deriving.opened_on(connection, candidate_id))
-    return (name, folded(name), ring(name), *derived.queue), stands, sorted(derived.reviewers), derived.opened <= opened
+    return (name, folded(name), ring(name), *derived.queue), stands, sorted(derived.reviewers), derived.opened <= ground.opened
 
 
 def kept_rows(connection: sqlite3.Connection, candidate_id: int) -> tuple[object, ...]:

@@ -32,8 +32,8 @@ def standing_for(connection: sqlite3.Connection, reviewer_id: str | None, name: 
 def seen(connection: sqlite3.Connection, reviewer_id: str | None, name: str) -> CandidateView:
     """The same, from one state of the file."""
     candidate_id = id_of(connection, name)
-    log = deriving.rulings_on(connection, candidate_id)
-    stands = deriving.stand(connection, candidate_id, read_settings(connection), rulings=log)
+    ground = deriving.ground_of(connection, candidate_id)
+    stands = deriving.stand(ground, read_settings(connection))
     seal_open = is_open(stands, reviewer_id)
     by = handles(connection)
     own = {check: ruling for (check, owner), ruling in stands.current.items() if owner == reviewer_id}
@@ -47,12 +47,12 @@ def seen(connection: sqlite3.Connection, reviewer_id: str | None, name: str) -> 
         done=reviewer_id in stands.done,
         needs_me=reviewer_id is not None and stands.needs(reviewer_id),
         own={check: own[check] for check in CHECKS if check in own},
-        others=lines(log, stands, by, lambda owner: owner != reviewer_id) if seal_open else [],
+        others=lines(ground.rulings, stands, by, lambda owner: owner != reviewer_id) if seal_open else [],
         drafts=drafts(connection, reviewer_id, name) if reviewer_id is not None else {},
         id=candidate_id,
         cause=stands.cause if seal_open else "",
         to_rule=stands.to_rule(reviewer_id) if reviewer_id is not None else (),
-        own_history=lines(log, stands, by, lambda owner: owner == reviewer_id),
+        own_history=lines(ground.rulings, stands, by, lambda owner: owner == reviewer_id),
     )
 
 

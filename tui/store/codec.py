@@ -5,6 +5,7 @@ from __future__ import annotations
 import json
 import math
 from collections.abc import Mapping
+from functools import lru_cache
 from typing import Any
 
 from tui.model import Evidence, Fit, Param, plain
@@ -52,8 +53,9 @@ def param_list(param: Param) -> list[Any]:
     return [number(param.value), number(param.low), number(param.high), param.unit, bool(param.limit)]
 
 
+@lru_cache(maxsize=512)
 def evidence_from(kind: str, version: int, digest: str, adequate: int | None, text: str) -> Evidence:
-    """The evidence of one row."""
+    """The evidence of one row; the same object for the same row, which nobody changes."""
     content: Mapping[str, Any] = json.loads(text)
     return Evidence(
         kind=kind,

@@ -13,8 +13,11 @@ from collections.abc import Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
+from random import random
+from threading import RLock
 from time import monotonic, sleep
 from typing import Any
+from weakref import WeakSet
 
 from tui.errors import StoreError
 from tui.store.filesystem import network_type
@@ -22,6 +25,14 @@ from tui.store.schema import APPLICATION_ID, SCHEMA_VERSION, migrate
 
 MAGIC = b"SQLite format 3\x00"  # sqlite.org/fileformat2.html, section 1.3; the two numbers: offsets 60 and 68
 BUSY_SECONDS = 60.0
+LONGEST_PAUSE_S, SHORTEST_PAUSE_S = 0.008, 0.0005  # between two tries for the write lock; a ruling holds it for some ms
+
+
+# Closing any descriptor of a file drops all locks that the process holds on it (POSIX; "How To Corrupt An SQLite
+# Database File", sqlite.org, section 2.2), and then another process may clear away the log that we still write.
+# So a file that this process has open as a queue is never opened and closed beside it: its header was read before.
+OPENING = RLock()
+OPEN: dict[tuple[int, int], WeakSet[QueueConnection]] = {}  # device and inode -> connections of this process
 
 
 @dataclass(frozen=True, slots=True)
@@ -56,6 +67,12 @@ class QueueConnection(sqlite3.Connection):
     """A connection to a queue; errors of SQLite arrive as StoreError."""
 
     queue_path = ""
+
+    def close(self) -> None:
+        with OPENING:
+            super().close()
+            for held in OPEN.values():
+                held.discard(self)
 
     def cursor(self, factory: type[sqlite3.Cursor] = Cursor) -> sqlite3.Cursor:
         return super().cursor(factory)
@@ -109,7 +126,12 @@ def open_queue(path: str | os.PathLike[str], *, create: bool = False, write: boo
         StoreError: no such file, no queue, newer than the program, or, for writing, on a network filesystem.
     """
     path = os.fspath(path)
-    header = read_header(path, create)
+    with OPENING:
+        return opened(path, read_header(path, create), write)
+
+
+def opened(path: str, header: Header | None, write: bool) -> QueueConnection:
+    """The rest of `open_queue`, once the header is known."""
     kind = network_type(path)
     if kind and write:
         raise StoreError(
@@ -130,8 +152,11 @@ def read_header(path: str, create: bool = False) -> Header | None:
         StoreError: it is missing (and not to be created), unreadable, no queue, or newer than the program.
     """
     try:
-        with open(path, "rb") as file:
-            head = file.read(100)
+        with OPENING:
+            if is_held_open(path):  # read when it was opened; `prepare` sees whether it is still of this version
+                return Header(APPLICATION_ID, SCHEMA_VERSION)
+            with open(path, "rb") as file:
+                head = file.read(100)
     except FileNotFoundError:
         if not create:
             raise StoreError(f"There is no queue {path}. Make one with: plainlight load {path} TABLE.") from None
@@ -145,6 +170,20 @@ def read_header(path: str, create: bool = False) -> Header | None:
     header = Header(int.from_bytes(head[68:72], "big"), int.from_bytes(head[60:64], "big"))
     if len(head) < 100 or not head.startswith(MAGIC) or header.application_id != APPLICATION_ID:
         raise StoreError(f"{path} is not a Plainlight queue; it was left untouched.")
+    return not_newer(path, header)
+
+
+def is_held_open(path: str) -> bool:
+    """Whether this process has a connection to the file, in whatever thread."""
+    try:
+        found = os.stat(path)
+    except OSError:
+        return False
+    return bool(OPEN.get((found.st_dev, found.st_ino)))
+
+
+def not_newer(path: str, header: Header) -> Header:
+    """The header itself; StoreError if it is of a newer program."""
     if header.user_version > SCHEMA_VERSION:
         raise StoreError(
             f"{path} was written by a newer Plainlight (file version {header.user_version}, this program knows "
@@ -168,6 +207,8 @@ def connected(path: str, *, write: bool, shared: bool = True) -> QueueConnection
     except sqlite3.Error as error:
         raise StoreError(sentence(path, error)) from error
     connection.queue_path = path
+    found = os.stat(path)
+    OPEN.setdefault((found.st_dev, found.st_ino), WeakSet()).add(connection)
     try:
         prepare(connection, write)
     except BaseException:
@@ -177,7 +218,9 @@ def connected(path: str, *, write: bool, shared: bool = True) -> QueueConnection
 
 
 def prepare(connection: QueueConnection, write: bool) -> None:
-    """Set what every connection to a queue keeps to."""
+    """Set what every connection to a queue keeps to; StoreError where another program made it newer meanwhile."""
+    version = connection.execute("PRAGMA user_version").fetchone()[0]
+    not_newer(connection.queue_path, Header(APPLICATION_ID, version))
     connection.execute("PRAGMA foreign_keys = ON")
     connection.execute("PRAGMA recursive_triggers = ON")
     connection.execute("PRAGMA synchronous = FULL")
@@ -294,7 +337,7 @@ def immediate(connection: sqlite3.Connection) -> Iterator[None]:
     if connection.in_transaction:
         yield
         return
-    connection.execute("BEGIN IMMEDIATE")
+    begin(connection)
     try:
         yield
         connection.execute("COMMIT")
@@ -302,6 +345,28 @@ def immediate(connection: sqlite3.Connection) -> Iterator[None]:
         if connection.in_transaction:  # a full disk may have rolled it back already
             connection.execute("ROLLBACK")
         raise
+
+
+def begin(connection: sqlite3.Connection) -> None:
+    """BEGIN IMMEDIATE, in a fairer order than SQLite's own waiting gives.
+
+    SQLite's busy handler sleeps the longer the longer it has waited, so that late comers overtake and
+    a few wait for seconds. Here who has waited longer asks more often.
+    """
+    start = monotonic()
+    connection.execute("PRAGMA busy_timeout = 0")
+    try:
+        while True:
+            try:
+                connection.execute("BEGIN IMMEDIATE")
+                return
+            except StoreError as error:
+                waited = monotonic() - start
+                if not is_busy(error.__cause__) or waited > BUSY_SECONDS:
+                    raise
+            sleep(random() * max(LONGEST_PAUSE_S - waited / 10, SHORTEST_PAUSE_S))
+    finally:
+        connection.execute(f"PRAGMA busy_timeout = {BUSY_SECONDS * 1000:.0f}")
 
 
 @contextmanager

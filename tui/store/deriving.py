@@ -62,45 +62,48 @@ def refresh(connection: sqlite3.Connection, ids: Iterable[int], settings: Settin
     """Write the derived rows of some candidates anew, within the caller's transaction."""
     settings = settings or settings_log.read_settings(connection)
     for candidate_id in ids:
-        write(connection, candidate_id, derive(connection, candidate_id, settings))
+        write(connection, candidate_id, derive(ground_of(connection, candidate_id), settings))
 
 
-def derive(connection: sqlite3.Connection, candidate_id: int, settings: Settings) -> Derived:
-    """Compute the derived rows of one candidate from the log, the evidence and the seals on file."""
+@dataclass(frozen=True, slots=True)
+class Ground:
+    """What the file says of one candidate, from which its derived rows follow."""
+
+    evidence: dict[str, Evidence]  # kind -> today's
+    rulings: list[Ruling]  # the whole log, in order of arrival
+    cited: dict[str, Evidence]  # digest -> evidence that rulings cite and that is not today's
+    opened: frozenset[str]  # reviewers whose seal is known to be open
+
+
+def ground_of(connection: sqlite3.Connection, candidate_id: int) -> Ground:
+    """Read the ground of one candidate."""
     evidence = current_of(connection, candidate_id)
-    mask = untestable_mask(evidence)
-    odd = oddness_of(evidence.get("star"))
     rulings = rulings_on(connection, candidate_id)
-    opened = opened_on(connection, candidate_id)
-    if not rulings and not opened:
-        return Derived((*odd, mask, *queue_values(untouched(mask)), 0), [], [], opened)
-    stands = stand(connection, candidate_id, settings, evidence, rulings, opened)
-    readers = sorted({ruling.reviewer_id for ruling in rulings} | stands.opened)
+    today = {one.digest for one in evidence.values()}
+    wanted = {(one.check, one.evidence_digest) for one in rulings if one.evidence_digest not in today}
+    return Ground(evidence, rulings, cited_of(connection, candidate_id, wanted), opened_on(connection, candidate_id))
+
+
+def stand(ground: Ground, settings: Settings) -> Standing:
+    """The standing of one candidate, seal and all: for this package's own use, never handed to one reader whole."""
+    checks = {check: ground.evidence[check] for check in CHECKS if check in ground.evidence}
+    return standing(ground.rulings, checks, ground.cited, settings, ground.opened)
+
+
+def derive(ground: Ground, settings: Settings) -> Derived:
+    """Compute the derived rows of one candidate."""
+    mask = untestable_mask(ground.evidence)
+    odd = oddness_of(ground.evidence.get("star"))
+    if not ground.rulings and not ground.opened:
+        return Derived((*odd, mask, *queue_values(untouched(mask)), 0), [], [], ground.opened)
+    stands = stand(ground, settings)
+    readers = sorted({ruling.reviewer_id for ruling in ground.rulings} | stands.opened)
     return Derived(
         (*odd, mask, *queue_values(stands), 1),
         [standing_values(stands, check) for check in CHECKS],
         [reviewer_values(stands, reader) for reader in readers],
         stands.opened,
     )
-
-
-def stand(
-    connection: sqlite3.Connection,
-    candidate_id: int,
-    settings: Settings,
-    evidence: dict[str, Evidence] | None = None,
-    rulings: list[Ruling] | None = None,
-    opened: frozenset[str] | None = None,
-) -> Standing:
-    """The standing of one candidate, seal and all: for this package's own use, never handed to one reader whole."""
-    evidence = current_of(connection, candidate_id) if evidence is None else evidence
-    rulings = rulings_on(connection, candidate_id) if rulings is None else rulings
-    opened = opened_on(connection, candidate_id) if opened is None else opened
-    today = {one.digest for one in evidence.values()}
-    wanted = {(one.check, one.evidence_digest) for one in rulings if one.evidence_digest not in today}
-    cited = cited_of(connection, candidate_id, wanted)
-    checks = {check: evidence[check] for check in CHECKS if check in evidence}
-    return standing(rulings, checks, cited, settings, opened)
 
 
 def queue_values(stands: Standing) -> tuple[Any, ...]:

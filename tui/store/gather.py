@@ -20,7 +20,7 @@ from tui.store import deriving
 from tui.store.audit import schema_faults
 from tui.store.candidates import refresh_inputs
 from tui.store.chains import chain_faults
-from tui.store.connect import immediate, open_queue, read_header, read_only, write_copy
+from tui.store.connect import immediate, is_held_open, open_queue, read_header, read_only, write_copy
 from tui.store.filesystem import network_type
 from tui.store.inputs import input_faults
 from tui.store.measurements import COLUMNS
@@ -123,7 +123,7 @@ def private_copy(path: str) -> Iterator[str]:
 
 def copy_queue(path: str, copy: str) -> None:
     """Copy a queue that others may be writing; on a network filesystem byte by byte, log and all."""
-    if not network_type(path):
+    if not network_type(path) or is_held_open(path):
         source = read_only(path)
         try:
             write_copy(source, copy)

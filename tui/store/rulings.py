@@ -60,12 +60,14 @@ def append_ruling(connection: sqlite3.Connection, ruling: Ruling) -> Ruling:
     """
     checked_words(ruling)
     name = findable(ruling.candidate)
+    deriving.ground_of(connection, id_of(connection, name))  # decodes evidence before the lock is held, not under it
     with immediate(connection):
         candidate_id = id_of(connection, name)
         if not connection.execute("SELECT 1 FROM reviewer WHERE id = ?", (ruling.reviewer_id,)).fetchone():
             raise UnknownNameError("reviewer", ruling.reviewer_id, "Join first: plainlight join QUEUE HANDLE.")
         settings = read_settings(connection)
-        before = deriving.stand(connection, candidate_id, settings)
+        ground = deriving.ground_of(connection, candidate_id)
+        before = deriving.stand(ground, settings)
         head = newest_of(connection, name, ruling.check, ruling.reviewer_id)
         checked_against(before, ruling, head)
         chained = replace(
@@ -82,7 +84,10 @@ def append_ruling(connection: sqlite3.Connection, ruling: Ruling) -> Ruling:
         chained = replace(chained, hash=ruling_hash(chained))
         insert_ruling(connection, chained)
         forget_draft(connection, candidate_id, chained)
-        deriving.refresh(connection, [candidate_id], settings)
+        rulings = [*ground.rulings, chained]
+        cited = ground.cited | deriving.cited_of(connection, candidate_id, [(ruling.check, chained.evidence_digest)])
+        after = deriving.derive(replace(ground, rulings=rulings, cited=cited), settings)
+        deriving.write(connection, candidate_id, after)
     return chained
 
 
