@@ -1,4 +1,4 @@
-"""How fast the desk is on a long queue: python tests/bench/bench_desk.py [ROWS]; prints a table, writes only to a temporary folder.
+"""How fast the desk is on a long queue: python tests/bench/bench_desk.py [ROWS]; writes only to a temporary folder.
 
 Times of the first rows are those of a whole process on a pseudo-terminal, against an empty app's; times of keys are
 taken under Textual's pilot, from the key to the end of the repaint, a search's from the last letter to its list.

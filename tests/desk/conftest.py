@@ -206,6 +206,7 @@ class FakeSession:
     def counts(self):
         rows = self.rows(range(len(self.names)))
         counted = {"all": len(rows), "needs_me": sum(row.needs_me for row in rows)}
+        counted["mine"] = len({name for name, _ in self.own})
         for check in CHECKS:
             counted[f"unresolved:{check}"] = sum(row.states[check] in {"open", "split", "todo"} for row in rows)
         return counted
@@ -463,7 +464,8 @@ def make_queue(path: Path) -> str:
     connection = connect.open_queue(str(path), create=True)
     records = [LoadRecord(make_candidate(name, i), "archive") for i, name in enumerate(names)]
     candidates.save_candidates(connection, records, FIXED_UTC)
-    evidence.save_evidence(connection, [(name, one) for i, name in enumerate(names) for one in make_evidence(i).values()])
+    computed = [(name, one) for i, name in enumerate(names) for one in make_evidence(i).values()]
+    evidence.save_evidence(connection, computed)
     for number, handle in enumerate(("heron", "plover", "curlew")):
         reviewers.add_reviewer(connection, handle, f"2026-03-0{number + 1}T00:00:00.000000Z")
     connection.close()

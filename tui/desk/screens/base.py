@@ -29,7 +29,11 @@ class DeskScreen(Screen[Result]):
 
     def key_line(self, lines: int = 1) -> KeyLine:
         """The line that shows this place's keys as they are bound now."""
-        return KeyLine(PLACES[self.PLACE], self.app.keys_of, lines)
+        return KeyLine(PLACES[self.PLACE], self.app.keys_of, lines, self.offers)
+
+    def offers(self, action_id: str) -> bool:
+        """Whether a key does something as things stand; the key line shows no other."""
+        return True
 
     def say(self, text: str, *, is_error: bool = False) -> None:
         """A quiet plain line; it goes with the next key."""

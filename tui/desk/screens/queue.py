@@ -22,6 +22,7 @@ from tui.desk.summary import oddness_sentence, standing_sentence
 from tui.desk.text import KEY_OF_CHECK, safe
 from tui.desk.widgets.candidate_list import CandidateList
 from tui.desk.widgets.described import Described
+from tui.desk.widgets.key_line import KeyLine
 from tui.desk.widgets.queue_head import ColumnHead, HeadFacts, QueueTitle
 from tui.errors import TuiError
 
@@ -94,7 +95,7 @@ class QueueScreen(MovesThroughList, QueueBackground):
         self._settle = self.set_timer(SETTLE_S, lambda: self.describe(message.row))
         self.place_terminal_cursor()
 
-    def describe(self, row: QueueRow | None) -> None:
+    async def describe(self, row: QueueRow | None) -> None:
         """One sentence on why it is odd, one on where it stands, its data beside the list if there is room."""
         if row is None:
             self.query_one(Described).say([])
@@ -109,19 +110,19 @@ class QueueScreen(MovesThroughList, QueueBackground):
         said += [(safe(standing_sentence(row, view)), "quiet")] if self.session.reviewer else []
         self.query_one(Described).say([*said, (SIGN_WORDS, "quiet")])
         if self.has_room:
-            self.peek(row.name, evidence)
+            await self.peek(row.name, evidence)
 
     @property
     def has_room(self) -> bool:
         """Whether the chosen candidate's data fit beside the list."""
         return self.size.width >= PEEK_FROM and not self.app.thin
 
-    def peek(self, name: str, evidence: Mapping[str, Evidence]) -> None:
+    async def peek(self, name: str, evidence: Mapping[str, Evidence]) -> None:
         """Show the candidate's data beside the list."""
         from tui.desk.widgets.peek import Peek
 
         if not self.query(Peek):
-            self.query_one("#middle").mount(Peek(id="peek"))
+            await self.query_one("#middle").mount(Peek(id="peek"))
         try:
             self.query_one(Peek).show(self.session.candidate(name), evidence, self.session.band_info())
         except TuiError as error:
@@ -131,7 +132,17 @@ class QueueScreen(MovesThroughList, QueueBackground):
         """More room shows more, less takes it away."""
         for peek in self.query("#peek"):
             peek.display = self.has_room
-        self.describe(self.query_one(CandidateList).chosen)
+        self.call_later(self.describe, self.query_one(CandidateList).chosen)
+
+    def offers(self, action_id: str) -> bool:
+        """A split is offered where there is one, `all` where not all is listed, and a reader is not offered work."""
+        row = self.query_one(CandidateList).chosen if self.query("#list") else None
+        return {
+            "queue.split": row is not None and "split" in row.states.values(),
+            "queue.all": not self.view.is_whole,
+            "queue.next": self.session.reviewer is not None,
+            "queue.needs_me": self.session.reviewer is not None,
+        }.get(action_id, True)
 
     def place_terminal_cursor(self) -> None:
         """The terminal's own cursor follows the choice, for those who read by it."""
@@ -155,6 +166,7 @@ class QueueScreen(MovesThroughList, QueueBackground):
         )
         self.query_one(QueueTitle).show(facts)
         self.query_one(ColumnHead).show(replace(facts, line=0, listed=0, is_ordering=False))
+        self.query_one(KeyLine).renew()
 
     def _letters(self) -> dict[str, str]:
         """The key that filters by each check."""

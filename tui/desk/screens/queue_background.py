@@ -61,6 +61,9 @@ class QueueBackground(DeskScreen[None]):
         self._refreshed_at = 0.0
         self.wanted: str | None = None  # name to choose when the next list arrives
 
+    def orient(self, is_new: bool) -> None:
+        """Whether the reader has yet to be told what this is."""
+
     def tell_head(self) -> None:
         """The lines above the list have something new to show."""
 
@@ -127,6 +130,8 @@ class QueueBackground(DeskScreen[None]):
         """The counts beside the filters."""
         self.counts = message.counts
         self.tell_head()
+        if message.counts.get("mine"):
+            self.orient(is_new=False)
 
     @on(Failed)
     def say_failed(self, message: Failed) -> None:

@@ -6,7 +6,8 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
-from tui.desk.text import RULING_WORDS, SIGNS, decimal_aligned, fit, number, once_in, safe, short_band, signed, wrap
+from tui.desk.text import RULING_WORDS, SIGNS, decimal_aligned, fit, once_in, safe, short_band, signed, wrap
+from tui.desk.widgets.numbers import param_name, value_and_error
 from tui.desk.widgets.rows import Row, Span, fit_row, paragraph, row
 from tui.model import CHECK_TITLES, Evidence
 
@@ -108,10 +109,11 @@ def column_rows(handle: str, lines: list[RulingLine], width: int, is_reader: boo
     rows: list[Row] = [row((f"{safe(handle)}{' (you)' if is_reader else ''}", "head"))]
     for line in lines:
         word = RULING_WORDS.get(line.ruling, safe(line.ruling))
-        how = "with others in view" if line.seen_others else "sealed"
+        how = "with the others in view" if line.seen_others else "before the seal opened"
         when = safe(line.utc[:10])
         style = line.ruling if line.current else "quiet"
-        rows.append(row((f"{SIGNS.get(line.ruling, '')}{word}", style), (f"  {how}, {when}", "quiet")))
+        rows.append(row((f"{SIGNS.get(line.ruling, '')}{word}", style), (f"  {when}", "quiet")))
+        rows.append(row((how, "quiet")))
         if line.stale:
             rows += paragraph(f"stale: {safe(line.stale)}", width, "caution")
         for text in line.note.splitlines():
@@ -146,7 +148,9 @@ def foot_row(width: int, chosen: str, note: str, is_recording: bool, can_rule: b
 
 
 def _params(evidence: Evidence) -> str:
-    best = evidence.fits[0]
-    return "   ".join(
-        f"{param_name(name, param).label} {' +- '.join(value_and_error(param))}" for name, param in best.params.items()
-    )
+    said = []
+    for key, param in evidence.fits[0].params.items():
+        name = param_name(key, param)
+        value, error = value_and_error(param, name.factor)
+        said.append(f"{name.label} {value} {error.strip()} {name.unit}".rstrip())
+    return "   ".join(said)

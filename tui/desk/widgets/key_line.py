@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 
 from rich.cells import cell_len
@@ -75,10 +75,32 @@ class KeyLine(Widget):
     COMPONENT_CLASSES = {"key-line--key", "key-line--label"}
     DEFAULT_CSS = "KeyLine { height: auto; padding: 0 1; }"
 
-    def __init__(self, keys: tuple[Key, ...], keymap: Mapping[str, str], lines: int = 2) -> None:
+    def __init__(
+        self,
+        keys: tuple[Key, ...],
+        keymap: Mapping[str, str],
+        lines: int = 2,
+        offers: Callable[[str], bool] = lambda action: True,
+    ) -> None:
+        """Made for the keys of a place.
+
+        Args:
+            lines: at most so many.
+            offers: whether an action, by its id, does something as things stand.
+        """
         super().__init__()
-        self.pieces = entries(keys, keymap)
-        self.lines = lines
+        self.keys, self.keymap, self.lines, self.offers = keys, keymap, lines, offers
+        self.pieces = self._pieces_now()
+
+    def renew(self) -> None:
+        """Things may stand differently now."""
+        pieces = self._pieces_now()
+        if pieces != self.pieces:
+            self.pieces = pieces
+            self.refresh(layout=len(self.placed()) != self.size.height)
+
+    def _pieces_now(self) -> list[Entry]:
+        return entries(tuple(key for key in self.keys if self.offers(key.id)), self.keymap)
 
     def get_content_height(self, container: Size, viewport: Size, width: int) -> int:
         """As many lines as the keys take at this width, up to the most allowed."""

@@ -85,4 +85,4 @@ class PickRows(RowsView):
             return made.spans
         if line != self.line:
             return [Span("  "), *made.spans]
-        return [Span("> ", "chosen"), *fit_row(made.spans, width - 2)]
+        return [Span("> ", "key"), *fit_row(made.spans, width - 2)]
