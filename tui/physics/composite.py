@@ -10,6 +10,7 @@ Every model shares one row of parameters; a model frees some of its columns:
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -133,60 +134,69 @@ class Prediction:
 def predict(kit: Kit, x: FloatArray) -> Prediction:
     """Fluxes of parameter rows `x` (M, 8) in Jy, with derivatives."""
     model = kit.model
+    place = {column: index for index, column in enumerate(model.free)}
     value, slope = kit.star.at(x[:, LN_T])
-    reddened = AV in model.free
-    ratio = x[:, RV] if RV in model.free else None
-    slopes = np.zeros((x.shape[0], WIDTH, value.shape[1]))
-    if reddened:
-        a, da_t, da_av, da_rv = kit.star_reddening.at(x[:, LN_T], x[:, AV], ratio)
-        value, slope = value - MAG * a, slope - MAG * da_t
+    ratio = x[:, RV] if RV in place else None
+    slopes = np.empty((x.shape[0], len(place), value.shape[1]))
+    screen = None
+    if AV in place:
+        screen = kit.star_reddening.at(x[:, LN_T], x[:, AV], ratio)
+        value = value - MAG * screen[0]
+        slope = slope - MAG * screen[1]
     star = np.exp(value + x[:, LN_S, None])
-    slopes[:, LN_T] = star * slope
-    if reddened:
-        slopes[:, AV] = -MAG * star * da_av
-        if da_rv is not None:
-            slopes[:, RV] = -MAG * star * da_rv
+    np.multiply(star, slope, out=slopes[:, place[LN_T]])
+    if screen is not None:
+        np.multiply(star, screen[2], out=slopes[:, place[AV]])
+        if screen[3] is not None:
+            np.multiply(star, screen[3], out=slopes[:, place[RV]])
     total = star
     for number in range(len(model.sources)):
-        total = total + _add_source(kit, number, x, ratio, reddened, slopes)
-    slopes[:, LN_S] = total
-    return Prediction(total, star, slopes[:, model.free])
+        total = total + _add_source(kit, number, x, ratio, place, slopes)
+    for column in (AV, RV):
+        if column in place:
+            slopes[:, place[column]] *= -MAG
+    slopes[:, place[LN_S]] = total
+    return Prediction(total, star, slopes)
 
 
 def _add_source(
-    kit: Kit, number: int, x: FloatArray, ratio: FloatArray | None, reddened: bool, slopes: FloatArray
+    kit: Kit, number: int, x: FloatArray, ratio: FloatArray | None, place: Mapping[int, int], slopes: FloatArray
 ) -> FloatArray:
-    """Flux of a further source; its derivatives are added to `slopes`."""
+    """Flux of a further source; its derivatives go into `slopes`, those with the screen not yet times -0.4 ln 10."""
     column_x, column_a = ((X2, A2), (X3, A3))[number]
     source = kit.model.sources[number]
     value, slope = kit.further[number].at(x[:, column_x])
-    if reddened:
+    screen = None
+    if AV in place:
         colour = np.full(x.shape[0], np.log(POWER_REDDENING_K)) if source == "power" else x[:, column_x]
-        a, da_t, da_av, da_rv = kit.further_reddening[number].at(colour, x[:, AV], ratio)
-        value = value - MAG * a
-        slope = slope if source == "power" else slope - MAG * da_t
+        screen = kit.further_reddening[number].at(colour, x[:, AV], ratio)
+        value = value - MAG * screen[0]
+        slope = slope if source == "power" else slope - MAG * screen[1]
     ln_h, dh_star, dh_own = _norm(kit, source, x[:, LN_T], x[:, column_x])
-    if kit.model.bound_pair:
-        own, down = kit.ln_radius2.at(x[:, column_x])
-        first, dfirst = kit.ln_radius2.at(x[:, LN_T])
-        amplitude = np.ones(x.shape[0])
-        ln_h, dh_star, dh_own = (own - first)[:, 0], -dfirst[:, 0], down[:, 0]
-    else:
-        amplitude = x[:, column_a]
     unit = np.exp(value + (ln_h + x[:, LN_S])[:, None])
-    flux = amplitude[:, None] * unit
-    slopes[:, LN_T] += flux * dh_star[:, None]
-    slopes[:, column_x] = flux * (slope + dh_own[:, None])
-    slopes[:, column_a] = unit
-    if reddened:
-        slopes[:, AV] -= MAG * flux * da_av
-        if da_rv is not None:
-            slopes[:, RV] -= MAG * flux * da_rv
+    if kit.model.bound_pair:
+        flux = unit
+    else:
+        flux = x[:, column_a, None] * unit
+        slopes[:, place[column_a]] = unit
+    if dh_star is not None:
+        slopes[:, place[LN_T]] += flux * dh_star[:, None]
+    np.multiply(flux, slope if dh_own is None else slope + dh_own[:, None], out=slopes[:, place[column_x]])
+    if screen is not None:
+        slopes[:, place[AV]] += flux * screen[2]
+        if screen[3] is not None:
+            slopes[:, place[RV]] += flux * screen[3]
     return flux
 
 
-def _norm(kit: Kit, source: str, ln_t: FloatArray, own: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """ln of what an amplitude of 1 means, and its derivatives with ln T and with the source's parameter."""
+def _norm(
+    kit: Kit, source: str, ln_t: FloatArray, own: FloatArray
+) -> tuple[FloatArray, FloatArray | None, FloatArray | None]:
+    """ln of what an amplitude of 1 means, and its derivatives with ln T and the source's parameter (None: zero)."""
+    if kit.model.bound_pair:
+        second, dsecond = kit.ln_radius2.at(own)
+        first, dfirst = kit.ln_radius2.at(ln_t)
+        return (second - first)[:, 0], -dfirst[:, 0], dsecond[:, 0]
     if source == "dust":
         return 4 * ln_t - 4 * own, np.full(ln_t.shape, 4.0), np.full(ln_t.shape, -4.0)
     if source == "star":
@@ -195,8 +205,8 @@ def _norm(kit: Kit, source: str, ln_t: FloatArray, own: FloatArray) -> tuple[Flo
         return (first - second)[:, 0], dfirst[:, 0], -dsecond[:, 0]
     if source == "power":
         first, dfirst = kit.infrared.at(ln_t)
-        return first[:, 0], dfirst[:, 0], np.zeros(ln_t.shape)
-    return np.zeros(ln_t.shape), np.zeros(ln_t.shape), np.zeros(ln_t.shape)
+        return first[:, 0], dfirst[:, 0], None
+    return np.zeros(ln_t.shape), None, None
 
 
 def parallax_of(kit: Kit, x: FloatArray) -> tuple[FloatArray, FloatArray]:

@@ -21,7 +21,7 @@ from tui.physics.planck import ln_planck_jy
 
 AV_MAX = 30.0
 AV_SCALE = 3.0
-DEGREES = (7, 8, 3)
+DEGREES = (5, 6, 3)
 Law = Callable[[FloatArray, float], FloatArray]  # (wave_um, r_v) -> A(wave)/A(V)
 
 
@@ -64,15 +64,14 @@ class Reddening:
         bt, dbt = _basis(t_unit, self.coefficients.shape[0])
         ba, dba = _basis(a_unit, self.coefficients.shape[1])
         if self.coefficients.shape[2] == 1:
-            lefts, rights = (bt, dbt, bt), (ba, ba, dba)
-            shape, dt, da = _tensors(lefts, rights, self.coefficients[:, :, 0])
+            shape, dt, da = _products((bt, dbt), (ba, dba), self.coefficients[:, :, 0])
             dr = None
         else:
             low, high = self.inverse_rv
             br, dbr = _basis(np.clip(_unit(1.0 / r_v, low, high), -1, 1), self.coefficients.shape[2])
-            pairs = [_outer(*pair) for pair in ((bt, ba), (dbt, ba), (bt, dba))]
-            merged = self.coefficients.reshape(pairs[0].shape[1], *self.coefficients.shape[2:])
-            shape, dt, da, dr = _tensors((*pairs, pairs[0]), (br, br, br, dbr), merged)
+            own, slid = (_fold(basis, self.coefficients) for basis in (br, dbr))
+            shape, dt, da = _folded((bt, dbt), (ba, dba), own)
+            dr = _folded((bt, dbt), (ba, dba), slid)[0]
             dr = av[:, None] * dr * (-2.0 / (high - low) / r_v**2)[:, None]
         width_t = 2.0 / (self.ln_t[1] - self.ln_t[0])
         width_a = (2.0 / top / (AV_SCALE + av))[:, None]
@@ -102,17 +101,31 @@ def _derivative_matrix(count: int) -> FloatArray:
     return matrix
 
 
-def _outer(left: FloatArray, right: FloatArray) -> FloatArray:
-    """Row by row products, (M, L R)."""
-    return (left[:, :, None] * right[:, None, :]).reshape(left.shape[0], -1)
+Bases = tuple[FloatArray, FloatArray]  # polynomials and their derivatives, each (M, count)
 
 
-def _tensors(lefts: Sequence[FloatArray], rights: Sequence[FloatArray], coefficients: FloatArray) -> list[FloatArray]:
-    """Sums of left_i right_j c_ij, (M, B) for each pair of bases, in one matrix product."""
-    count, m = len(lefts), lefts[0].shape[0]
-    product = np.concatenate([_outer(left, right) for left, right in zip(lefts, rights, strict=True)])
-    summed = product @ coefficients.reshape(product.shape[1], -1)
-    return list(summed.reshape(count, m, -1))
+def _products(t: Bases, a: Bases, coefficients: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Sum over both polynomials of coefficients (T, A, B), and its derivatives with either, each (M, B)."""
+    count_t, count_a, bands = coefficients.shape
+    table = np.ascontiguousarray(coefficients.transpose(1, 0, 2)).reshape(count_a, -1)
+    both = np.concatenate(a) @ table
+    plain, slid = both.reshape(2, -1, count_t, bands)
+    pair = np.stack(t, axis=1) @ plain  # (M, 2, B)
+    return pair[:, 0], pair[:, 1], (t[0][:, None, :] @ slid)[:, 0]
+
+
+def _fold(r: FloatArray, coefficients: FloatArray) -> FloatArray:
+    """Coefficients (T, A, R, B) with each source's R_V put in, (M, T, A, B)."""
+    count_t, count_a, count_r, bands = coefficients.shape
+    table = np.ascontiguousarray(coefficients.transpose(2, 0, 1, 3)).reshape(count_r, -1)
+    return (r @ table).reshape(-1, count_t, count_a, bands)
+
+
+def _folded(t: Bases, a: Bases, own: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """As _products, with coefficients (M, T, A, B) of each source's own."""
+    plain, slid = (np.matmul(basis[:, None, None, :], own)[:, :, 0] for basis in a)
+    pair = np.stack(t, axis=1) @ plain
+    return pair[:, 0], pair[:, 1], (t[0][:, None, :] @ slid)[:, 0]
 
 
 def expand_reddening(
