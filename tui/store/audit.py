@@ -14,7 +14,7 @@ from collections.abc import Iterable, Iterator, Sequence
 from pathlib import Path
 
 from tui.errors import StoreError
-from tui.model import CHECKS, Settings
+from tui.model import Settings
 from tui.store import deriving
 from tui.store.candidates import refresh_inputs
 from tui.store.chains import chain_faults, receipt, receipt_faults
@@ -120,22 +120,16 @@ def wanted_rows(connection: sqlite3.Connection, candidate_id: int, settings: Set
     derived = deriving.derive(ground, settings)
     name = connection.execute("SELECT name FROM candidate WHERE id = ?", (candidate_id,)).fetchone()[0]
     stands = sorted(derived.standing)
-    return (name, folded(name), ring(name), *derived.queue), stands, sorted(derived.reviewers), derived.opened <= ground.opened
+    queue = (name, folded(name), ring(name), *derived.queue)
+    return queue, stands, sorted(derived.reviewers), derived.opened <= ground.opened
 
 
 def kept_rows(connection: sqlite3.Connection, candidate_id: int) -> tuple[object, ...]:
     """The derived rows of a candidate, as they lie in the file."""
     columns = ", ".join(("name", "fold", "ring", *deriving.QUEUE_COLUMNS))
     queue = connection.execute(f"SELECT {columns} FROM queue_row WHERE id = ?", (candidate_id,)).fetchone()
-    stands = connection.execute(
-        'SELECT "check", state, explains, short, unclear, revised, stale FROM standing WHERE candidate_id = ?',
-        (candidate_id,),
-    ).fetchall()
-    readers = connection.execute(
-        f"SELECT reviewer_id, {', '.join(CHECKS)}, stale, ruled, done, seal_open, needs_me FROM reviewer_row "
-        "WHERE candidate_id = ?",
-        (candidate_id,),
-    ).fetchall()
+    queries = [f"SELECT {kept.columns} FROM {kept.table} WHERE candidate_id = ?" for kept in deriving.KEPT]
+    stands, readers = (connection.execute(query, (candidate_id,)).fetchall() for query in queries)
     return queue, sorted(stands), sorted(readers), True
 
 

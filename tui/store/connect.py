@@ -22,9 +22,9 @@ from weakref import WeakSet
 from tui.errors import StoreError
 from tui.store.filesystem import network_type
 from tui.store.schema import APPLICATION_ID, SCHEMA_VERSION, migrate
+from tui.store.sentences import BUSY_SECONDS, is_busy, plainly, sentence
 
 MAGIC = b"SQLite format 3\x00"  # sqlite.org/fileformat2.html, section 1.3; the two numbers: offsets 60 and 68
-BUSY_SECONDS = 60.0
 LONGEST_PAUSE_S, SHORTEST_PAUSE_S = 0.008, 0.0005  # between two tries for the write lock; a ruling holds it for some ms
 
 
@@ -82,38 +82,6 @@ class QueueConnection(sqlite3.Connection):
 
     def executemany(self, *args: Any) -> sqlite3.Cursor:
         return self.cursor().executemany(*args)
-
-
-class plainly:  # noqa: N801 - reads as a word at its use
-    """Turn an error of SQLite into a StoreError; cheaper than a generator, as it wraps every statement."""
-
-    def __init__(self, connection: sqlite3.Connection) -> None:
-        self.connection = connection
-
-    def __enter__(self) -> None:
-        return None
-
-    def __exit__(self, kind: type[BaseException] | None, error: BaseException | None, trace: object) -> None:
-        if isinstance(error, sqlite3.Error):
-            raise StoreError(sentence(getattr(self.connection, "queue_path", ""), error)) from error
-        if isinstance(error, UnicodeEncodeError):
-            raise StoreError("Text with half a surrogate pair cannot be stored; mend its encoding.") from error
-
-
-def sentence(path: str, error: sqlite3.Error) -> str:
-    """What went wrong with the queue file, and the mend."""
-    text = str(error)
-    if "locked" in text or "busy" in text:
-        return f"{path} stayed locked for {BUSY_SECONDS:.0f} s; nothing was written. Repeat it a little later."
-    if "full" in text:
-        return f"{path}: the disk is full; nothing was written. Make room and repeat."
-    if "readonly" in text or "read-only" in text:
-        return f"{path} cannot be written here; check its permissions and its directory's."
-    if "malformed" in text or "not a database" in text or "disk image" in text:
-        return f"{path} is damaged ({text}). Keep it, and start again from a backup."
-    if "unable to open" in text:
-        return f"{path} cannot be opened; check that it exists and may be read."
-    return f"{path} refused: {text}."
 
 
 def open_queue(path: str | os.PathLike[str], *, create: bool = False, write: bool = True) -> QueueConnection:
@@ -242,11 +210,6 @@ def use_log(connection: QueueConnection) -> None:
             if not is_busy(error.__cause__) or monotonic() > deadline:
                 raise
             sleep(0.01)
-
-
-def is_busy(error: BaseException | None) -> bool:
-    """Whether SQLite refused because somebody else holds a lock."""
-    return isinstance(error, sqlite3.Error) and getattr(error, "sqlite_errorcode", 0) & 0xFF == sqlite3.SQLITE_BUSY
 
 
 def bring_up_to_date(path: str, *, is_new: bool) -> None:

@@ -35,6 +35,20 @@ EVIDENCE_COLUMNS = "kind, version, digest, adequate, content"
 
 
 @dataclass(frozen=True, slots=True)
+class Kept:
+    """A derived table with several rows a candidate."""
+
+    table: str
+    columns: str  # beside the candidate
+
+
+KEPT = (
+    Kept("standing", '"check", state, explains, short, unclear, revised, stale'),
+    Kept("reviewer_row", f"reviewer_id, {', '.join(CHECKS)}, stale, ruled, done, seal_open, needs_me"),
+)
+
+
+@dataclass(frozen=True, slots=True)
 class Derived:
     """The derived rows of one candidate."""
 
@@ -136,25 +150,39 @@ def reviewer_values(stands: Standing, reviewer_id: str) -> tuple[Any, ...]:
 
 
 def write(connection: sqlite3.Connection, candidate_id: int, derived: Derived) -> None:
-    """Put the derived rows of one candidate in the place of the old ones; opened seals are kept for good."""
-    sets = ", ".join(f"{column} = ?" for column in QUEUE_COLUMNS)
-    connection.execute(f"UPDATE queue_row SET {sets} WHERE id = ?", (*derived.queue, candidate_id))
+    """Bring the derived rows of one candidate up to date, touching what differs; opened seals are kept for good."""
+    query = f"SELECT {', '.join(QUEUE_COLUMNS)} FROM queue_row WHERE id = ?"
+    old = connection.execute(query, (candidate_id,)).fetchone()
+    changed = {
+        column: value
+        for column, value, was in zip(QUEUE_COLUMNS, derived.queue, old, strict=True)
+        if value != was
+    }
+    if changed:
+        sets = ", ".join(f"{column} = ?" for column in changed)
+        connection.execute(f"UPDATE queue_row SET {sets} WHERE id = ?", (*changed.values(), candidate_id))
     if not derived.queue[-1]:
         return
-    connection.execute("DELETE FROM standing WHERE candidate_id = ?", (candidate_id,))
-    connection.executemany(
-        "INSERT INTO standing VALUES (?, ?, ?, ?, ?, ?, ?, ?)", [(candidate_id, *row) for row in derived.standing]
-    )
-    connection.execute("DELETE FROM reviewer_row WHERE candidate_id = ?", (candidate_id,))
-    connection.executemany(
-        f"INSERT INTO reviewer_row VALUES (?, ?{', ?' * 10})",
-        [(reviewer_id, candidate_id, *row) for reviewer_id, *row in derived.reviewers],
-    )
+    for kept in KEPT:
+        write_rows(connection, kept, candidate_id, derived.standing if kept.table == "standing" else derived.reviewers)
     connection.executemany(
         "INSERT INTO seal_opened (reviewer_id, candidate_id) SELECT ?1, ?2 WHERE NOT EXISTS "
         "(SELECT 1 FROM seal_opened WHERE reviewer_id = ?1 AND candidate_id = ?2)",
         [(reviewer_id, candidate_id) for reviewer_id in sorted(derived.opened)],
     )
+
+
+def write_rows(connection: sqlite3.Connection, kept: Kept, candidate_id: int, rows: list[tuple[Any, ...]]) -> None:
+    """Bring a candidate's rows of one derived table up to date; the first column of a row tells it from the others."""
+    names = kept.columns.split(", ")
+    query = f"SELECT {kept.columns} FROM {kept.table} WHERE candidate_id = ?"
+    old = {row[0]: row for row in connection.execute(query, (candidate_id,)).fetchall()}
+    gone = old.keys() - {row[0] for row in rows}
+    delete = f"DELETE FROM {kept.table} WHERE candidate_id = ? AND {names[0]} = ?"
+    connection.executemany(delete, [(candidate_id, key) for key in sorted(gone)])
+    marks = ", ".join("?" * (len(names) + 1))
+    insert = f"INSERT OR REPLACE INTO {kept.table} (candidate_id, {kept.columns}) VALUES ({marks})"
+    connection.executemany(insert, [(candidate_id, *row) for row in rows if old.get(row[0]) != row])
 
 
 def current_of(connection: sqlite3.Connection, candidate_id: int) -> dict[str, Evidence]:
