@@ -46,8 +46,19 @@ def on_candidate(drive, settled):
 def test_page_shows_question_plot_numbers_and_keys(fake_session, on_candidate, screen_text):
     async def steps(app, screen, press):
         text = screen_text(app)
-        for words in ("SM-0001", "[STAR .todo]", "Is it a plain star", "F_nu", "micron", "chi2", "T star K", "LOOK AT", "RULE",
-                      "e explains", "? help"):  # fmt: skip
+        for words in (
+            "SM-0001",
+            "[STAR .todo]",
+            "Is it a plain star",
+            "F_nu",
+            "micron",
+            "chi2",
+            "T star K",
+            "LOOK AT",
+            "RULE",
+            "e explains",
+            "? help",
+        ):
             assert words in text
 
     on_candidate(fake_session, steps)
@@ -364,7 +375,17 @@ def test_up_and_down_draw_the_other_fits(fake_session, on_candidate, screen_text
 
 def test_pages_go_round_and_q_leads_back_to_the_plot(fake_session, on_candidate, screen_text):
     async def steps(app, screen, press):
-        for title in ("facts", "measured", "all fits", "mixture", "dips", "pictures", "look-alikes", "rulings", "story"):
+        for title in (
+            "facts",
+            "measured",
+            "all fits",
+            "mixture",
+            "dips",
+            "pictures",
+            "look-alikes",
+            "rulings",
+            "story",
+        ):
             await press("v")
             assert title in screen_text(app)
         await press("v")
@@ -380,7 +401,9 @@ def test_pages_go_round_and_q_leads_back_to_the_plot(fake_session, on_candidate,
 def test_others_stay_sealed_until_done(fake_session, on_candidate, screen_text):
     from tui.workflow.records import RulingLine
 
-    line = RulingLine("x", "dust", "plover", "r-plover", "explains", "a secret note", "2026-03-01T10:00:00Z", False, True, "")
+    line = RulingLine(
+        "x", "dust", "plover", "r-plover", "explains", "a secret note", "2026-03-01T10:00:00Z", False, True, ""
+    )
     fake_session.other = {NAME: [line], "SM-0003": [line]}
 
     async def steps(app, screen, press):
@@ -447,7 +470,9 @@ def test_pasted_note_keeps_its_lines_and_steers_nothing(fake_session, on_candida
         app.post_message(events.Paste(" one\r\ntwo\x1b[2J \u202e [/] \tend"))
         await press("right", "tab")
         note = fake_session.drafts[NAME, "star"]
-        assert note.split("\n")[0] == "kept \ufffd[31m one" and note.split("\n")[1].startswith("two\ufffd[2J \ufffd [/]")
+        assert note.split("\n")[0] == "kept \ufffd[31m one" and note.split("\n")[1].startswith(
+            "two\ufffd[2J \ufffd [/]"
+        )
         assert all(line.isprintable() for line in screen_text(app).split("\n"))
 
     on_candidate(fake_session, steps)

@@ -21,7 +21,11 @@ def evidence_of(check: str = "star", cautions: tuple[str, ...] = (), **pulls: fl
     [
         ("dust", {"J": 0.2, "W3": 8.2, "W4": 6.9}, "Can warm dust near the star make W3 and W4 this bright?"),
         ("blend", {"SDSS_u": -5.0, "J": 1.0}, "Can a second source in the beam make u this faint?"),
-        ("extinction", {"Gaia_BP": -4.0, "W4": 4.5}, "Can extinction on the way to us leave W4 and BP this bright or faint?"),
+        (
+            "extinction",
+            {"Gaia_BP": -4.0, "W4": 4.5},
+            "Can extinction on the way to us leave W4 and BP this bright or faint?",
+        ),
         ("instrument", {"W3": 9.0}, "Could W3 be badly measured rather than truly bright?"),
         ("star", {"W3": 9.0, "W4": 4.0}, "Is it a plain star after all? W3 and W4 are brighter."),
         ("star", {"J": 0.3, "H": -1.2}, "Is it a plain star? The best one meets every band within 1.2 sigma."),

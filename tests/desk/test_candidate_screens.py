@@ -45,27 +45,49 @@ def is_tame(text: str, width: int) -> bool:
     return all(line.isprintable() and cell_len(line) <= width for line in text.split("\n"))
 
 
-@pytest.mark.parametrize("name", HOSTILE_NAMES)
-def test_hostile_names_leave_the_page_whole(fake_session, page, name):
-    for candidate in fake_session.names:
-        fake_session.drafts[candidate, "star"] = f"[bold]{name}[/] \x1b[2J\x07 日本 \u202e x"
-    text = page(fake_session, name, ["right", "f"])
-    assert is_tame(text, 80)
-    lines = text.split("\n")
-    assert "[STAR" in lines[1] and "RULE" in text and "? help" in lines[23] + lines[22]
-    assert ("> falls short <" in text or "no evidence" in text) and "note: [bold]" in text
+def test_hostile_names_and_notes_leave_the_page_whole(fake_session, drive, settled, screen_text):
+    for name in fake_session.names:
+        fake_session.drafts[name, "star"] = f"[bold]{name}[/] \x1b[2J\x07 日本 \u202e x"
+
+    async def steps(app, pilot):
+        screen = CandidateScreen(fake_session, "SM-0001")
+        app.push_screen(screen)
+        await settled(app, pilot)
+        for name in HOSTILE_NAMES:
+            screen.open(name)
+            await settled(app, pilot)
+            await pilot.press("right", "f")
+            await settled(app, pilot)
+            text = screen_text(app)
+            lines = text.split("\n")
+            assert is_tame(text, 80), name
+            assert "[STAR" in lines[1] and "? help" in lines[22] + lines[23], name
+            assert ("> falls short <" in text or "no evidence" in text) and "note: [bold]" in text, name
+
+    drive(fake_session, steps)
 
 
-@pytest.mark.parametrize("key", "0123456789phc")
 @pytest.mark.parametrize("size", [(80, 24), (200, 60)])
-def test_every_page_and_mode_is_tame_and_shows_its_keys(fake_session, page, key, size):
-    text = page(fake_session, "[@click=app.exit]leave[/]", ["d", key], size)
-    assert is_tame(text, size[0])
-    assert "RULE" in text and "?" in text.rstrip().split("\n")[-1] + text.rstrip().split("\n")[-2] or key == "c"
+def test_every_page_and_mode_is_tame_and_shows_its_keys(fake_session, drive, settled, screen_text, size):
+    async def steps(app, pilot):
+        screen = CandidateScreen(fake_session, "[@click=app.exit]leave[/]")
+        app.push_screen(screen)
+        await settled(app, pilot)
+        for key in ("d", "p", "p", "h", "h", "c", *"b123456789", "0"):
+            await pilot.press(key)
+            await settled(app, pilot)
+            text = screen_text(app)
+            assert is_tame(text, size[0]), key
+            assert "RULE" in text, key
+            assert "help" in "".join(text.rstrip().split("\n")[-2:]) or key == "c"
+
+    drive(fake_session, steps, size=size)
 
 
 @pytest.mark.parametrize("size", SIZES)
-@pytest.mark.parametrize(("title", "name", "keys"), [("page", "SM-0001", ["d"]), ("hostile", "\x1b[2J\x1b[31mred", ["b", "right", "e"])])
+@pytest.mark.parametrize(
+    ("title", "name", "keys"), [("page", "SM-0001", ["d"]), ("hostile", "\x1b[2J\x1b[31mred", ["b", "right", "e"])]
+)
 def test_snapshot(fake_session, page, snapshot, size, title, name, keys):
     text = page(fake_session, name, keys, size)
     snapshot(f"candidate-{title}-{size[0]}x{size[1]}", text)

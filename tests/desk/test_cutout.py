@@ -40,10 +40,17 @@ def test_shrinking_takes_means():
 
 @pytest.mark.parametrize(
     "image",
-    [np.full((5, 5), np.nan), np.zeros((0, 0)), np.zeros((3, 3)), np.full((4, 4), np.inf), np.zeros((2, 2, 2)), np.ones((1, 400)),
-     np.array([[np.nan, 1.0], [np.inf, -np.inf]])],
+    [
+        np.full((5, 5), np.nan),
+        np.zeros((0, 0)),
+        np.zeros((3, 3)),
+        np.full((4, 4), np.inf),
+        np.zeros((2, 2, 2)),
+        np.ones((1, 400)),
+        np.array([[np.nan, 1.0], [np.inf, -np.inf]]),
+    ],
     ids=["nan", "empty", "flat", "infinite", "cube", "line", "mixed"],
-)  # fmt: skip
+)
 def test_damaged_pictures_cost_a_plain_line_at_most(image):
     for unicode in (True, False):
         rows = picture_rows(30, 12, Cutout("J[/]\x1b", image, float("nan")), BAND, STRETCHES[0], unicode)

@@ -42,7 +42,10 @@ def test_decimal_points_stand_under_one_another(width):
     }
     rows = [row_text(line) for line in param_rows(width, params)]
     assert all(len(line) <= width for line in rows)
-    starts = {line.index(value) + len(value.split(".")[0]) for line, value in zip(rows, ("5612", "0.12", "0.021", "12.3"), strict=True)}
+    starts = {
+        line.index(value) + len(value.split(".")[0])
+        for line, value in zip(rows, ("5612", "0.12", "0.021", "12.3"), strict=True)
+    }
     assert len(starts) == 1
 
 
@@ -52,12 +55,17 @@ def test_unknown_parameter_keeps_its_name_and_unit_made_safe():
 
 
 def test_held_number_shows_that_it_is_held_and_chosen():
-    rows = param_rows(40, {"teff": Param(5000.0, 4900.0, 5100.0, "K"), "av": Param(0.5, 0.4, 0.6, "mag")}, ("teff",), "teff")
+    rows = param_rows(
+        40, {"teff": Param(5000.0, 4900.0, 5100.0, "K"), "av": Param(0.5, 0.4, 0.6, "mag")}, ("teff",), "teff"
+    )
     assert "held" in row_text(rows[0]) and row_text(rows[0]).startswith(">")
     assert "held" not in row_text(rows[1])
 
 
-@pytest.mark.parametrize(("p", "words"), [(8e-24, "once in 1e23"), (0.002, "once in 500"), (0.9, "nearly always"), (0.0, "practically never")])
+@pytest.mark.parametrize(
+    ("p", "words"),
+    [(8e-24, "once in 1e23"), (0.002, "once in 500"), (0.9, "nearly always"), (0.0, "practically never")],
+)
 def test_chance_is_told_in_words_at_any_width(p, words):
     for width in (28, 70):
         (line,) = chance_rows(width, Fit("m", 1.0, 1, p, 1.0, 1.0))

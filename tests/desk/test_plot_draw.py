@@ -16,8 +16,18 @@ from tui.desk.widgets.rows import row_text
 WAVE = np.geomspace(0.1, 200, 400)
 STAR = WAVE**-3 / np.expm1(14387.77 / (WAVE * 5600.0)) * 2.0
 DUST = WAVE**-3 / np.expm1(14387.77 / (WAVE * 300.0)) * 2200
-PIVOTS = {"SDSS_u": 0.36, "Gaia_BP": 0.51, "Gaia_G": 0.62, "J": 1.235, "H": 1.65, "Ks": 2.16, "W1": 3.37, "W2": 4.62,
-          "W3": 12.1, "W4": 22.2}  # fmt: skip
+PIVOTS = {
+    "SDSS_u": 0.36,
+    "Gaia_BP": 0.51,
+    "Gaia_G": 0.62,
+    "J": 1.235,
+    "H": 1.65,
+    "Ks": 2.16,
+    "W1": 3.37,
+    "W2": 4.62,
+    "W3": 12.1,
+    "W4": 22.2,
+}
 PULLS = {"W3": 8.2, "W4": 6.9, "SDSS_u": -5.3}
 SIZES = [(30, 10), (51, 15), (54, 16), (80, 24), (126, 45), (150, 45), (260, 80)]
 
@@ -25,13 +35,25 @@ SIZES = [(30, 10), (51, 15), (54, 16), (80, 24), (126, 45), (150, 45), (260, 80)
 def make_plot(**changes) -> PlotData:
     total = STAR + DUST
     points = [
-        PlotPoint(band, wave, 0.85 * wave, 1.15 * wave, flux := float(np.interp(wave, WAVE, total)), 0.03 * flux, 0.03 * flux,
-                  dropped=band == "H", pull=PULLS.get(band, 0.4))
+        PlotPoint(
+            band,
+            wave,
+            0.85 * wave,
+            1.15 * wave,
+            flux := float(np.interp(wave, WAVE, total)),
+            0.03 * flux,
+            0.03 * flux,
+            dropped=band == "H",
+            pull=PULLS.get(band, 0.4),
+        )
         for band, wave in PIVOTS.items()
-    ]  # fmt: skip
+    ]
     points.append(PlotPoint("MIPS70", 71.4, 62.0, 82.0, 0.01, limit=True, pull=0.0))
-    curves = (PlotCurve("star", WAVE, STAR, letter="a"), PlotCurve("dust", WAVE, DUST, letter="b"),
-              PlotCurve("total", WAVE, total, "total"))  # fmt: skip
+    curves = (
+        PlotCurve("star", WAVE, STAR, letter="a"),
+        PlotCurve("dust", WAVE, DUST, letter="b"),
+        PlotCurve("total", WAVE, total, "total"),
+    )
     return replace(PlotData(tuple(points), curves), **changes)
 
 
@@ -171,7 +193,10 @@ def test_negative_flux_is_marked_below_the_scale():
 
 
 def test_message_stands_in_the_plot_when_there_is_no_curve():
-    assert any("computing the evidence" in line for line in drawn(54, 16, make_plot(curves=(), message="computing the evidence ...")))
+    assert any(
+        "computing the evidence" in line
+        for line in drawn(54, 16, make_plot(curves=(), message="computing the evidence ..."))
+    )
 
 
 def test_click_finds_the_point_and_misses_politely():

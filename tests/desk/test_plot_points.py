@@ -17,10 +17,16 @@ NAN = math.nan
 
 def band(name: str, pivot: float, wave=None, response=None) -> Band:
     wave = np.array([pivot]) if wave is None else np.array(wave)
-    return Band(name, pivot, "Vega", 1.0, 0.02, "any", wave, np.ones(wave.size) if response is None else np.array(response))
+    return Band(
+        name, pivot, "Vega", 1.0, 0.02, "any", wave, np.ones(wave.size) if response is None else np.array(response)
+    )
 
 
-BANDS = {"J": band("J", 1.235), "W3": band("W3", 12.07, [7.0, 9.0, 12.0, 16.0, 18.0], [0.0, 0.6, 1.0, 0.6, 0.0]), "W4": band("W4", 22.2)}
+BANDS = {
+    "J": band("J", 1.235),
+    "W3": band("W3", 12.07, [7.0, 9.0, 12.0, 16.0, 18.0], [0.0, 0.6, 1.0, 0.6, 0.0]),
+    "W4": band("W4", 22.2),
+}
 CANDIDATE = Candidate(
     "SM-1",
     (
@@ -65,7 +71,11 @@ def test_curves_have_letters_by_component_and_one_total():
     two = SimpleNamespace(wave_um=wave, total_jy=wave, components={"star": wave, "dust\x1b": wave})
     lines = plot_curves(two, two, "warm dust")
     assert [(line.role, line.letter, line.label) for line in lines] == [
-        ("component", "a", "star"), ("component", "b", "dust\ufffd"), ("total", "", "total"), ("other", "", "warm dust")]  # fmt: skip
+        ("component", "a", "star"),
+        ("component", "b", "dust\ufffd"),
+        ("total", "", "total"),
+        ("other", "", "warm dust"),
+    ]
     alone = SimpleNamespace(wave_um=wave, total_jy=wave, components={"star": wave})
     assert [line.role for line in plot_curves(alone)] == ["total"]
     assert plot_curves(None) == ()

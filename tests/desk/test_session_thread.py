@@ -69,7 +69,10 @@ def test_close_waits_for_what_must_be_finished():
 
     async def begin():
         thread = SessionThread(OneThread(), "test")
-        asking = [asyncio.ensure_future(thread.ask(lambda s: gate.wait(20))), asyncio.ensure_future(thread.ask(lambda s: done.append(1)))]
+        asking = [
+            asyncio.ensure_future(thread.ask(lambda s: gate.wait(20))),
+            asyncio.ensure_future(thread.ask(lambda s: done.append(1))),
+        ]
         await asyncio.sleep(0)
         gate.set()
         thread.close(finish=True)

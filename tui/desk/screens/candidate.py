@@ -32,6 +32,7 @@ from tui.desk.widgets.spectrum_plot import SpectrumPlot, braille_works
 if TYPE_CHECKING:
     from tui.workflow.session import Session
 
+
 class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesByHand, DeskScreen[None]):
     """One candidate; evidence is computed off the interface's thread, and never drawn under another's name."""
 
@@ -66,7 +67,11 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
         with Horizontal(id="walk-middle"):
             yield SpectrumPlot(unicode=braille_works(os.environ), id="walk-plot")
             yield RowsView(lambda width, height: draw_numbers(self.walk, width, height), id="walk-numbers")
-        yield RowsView(lambda width, height: page_rows(self.walk, width, height) if self.walk.page else [], scrolls=True, id="walk-page")
+        yield RowsView(
+            lambda width, height: page_rows(self.walk, width, height) if self.walk.page else [],
+            scrolls=True,
+            id="walk-page",
+        )
         yield NoteEditor(id="walk-note")
         yield RowsView(self._foot, id="walk-foot")
 
@@ -81,8 +86,9 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
         self.writes.close(finish=True)
 
     def on_resize(self, event: events.Resize) -> None:
-        """Share the terminal anew."""
-        self.lay_out(event.size.width, event.size.height)
+        """Share the terminal anew, once there is something to share it among."""
+        if self.query("#walk-foot"):
+            self.lay_out(event.size.width, event.size.height)
 
     def lay_out(self, width: int, height: int) -> None:
         """Give every part its rows and columns."""
@@ -108,7 +114,9 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
         """What nobody foresaw ends neither the desk nor the round: a plain line, and keys count again."""
         if event.state is WorkerState.ERROR:
             self.walk.recording = False
-            self.say(f"Something went wrong inside the program ({event.worker.name}): {event.worker.error!r}", is_error=True)
+            self.say(
+                f"Something went wrong inside the program ({event.worker.name}): {event.worker.error!r}", is_error=True
+            )
             self.be_ready()
 
     # --- drawing ---

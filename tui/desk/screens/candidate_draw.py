@@ -37,7 +37,10 @@ KEY_ROWS = 2
 def draw_head(walk: Walk, width: int, height: int, right: Sequence[str]) -> list[Row]:
     """Name and standing, the five checks, the question."""
     view = walk.loaded.view if walk.loaded else None
-    rows = [title_row(width, walk.name, oddness_words(walk.evidence.get("star")), view, right), check_row(width, view, walk.check)]
+    rows = [
+        title_row(width, walk.name, oddness_words(walk.evidence.get("star")), view, right),
+        check_row(width, view, walk.check),
+    ]
     asked = question(walk.check, walk.evidence, width - 2) if walk.evidence else "computing the evidence ..."
     if walk.trouble and not walk.evidence:
         asked = "There is no evidence for this candidate."
@@ -57,7 +60,9 @@ def draw_numbers(walk: Walk, width: int, height: int) -> list[Row]:
     if shown is None:
         return [row(("no fit", "head")), row(("adequate  ", "quiet"), adequate_word(own))]
     hand = walk.hand
-    title = row(("by hand: ", "message"), (safe(shown.model), "head")) if hand else fit_title(width, own, walk.fit_index)
+    title = (
+        row(("by hand: ", "message"), (safe(shown.model), "head")) if hand else fit_title(width, own, walk.fit_index)
+    )
     rows = number_rows(width, shown, title, _beside(walk), "" if hand else adequate_word(own))
     params = param_rows(width, shown.params, tuple(hand.fixed) if hand else (), hand.param if hand else "")
     rows += [[], *params] if len(rows) + len(params) < height else params
@@ -117,7 +122,9 @@ def advice(walk: Walk) -> tuple[str, str, tuple[str, ...], str]:
         point = point_words(walk.drawn, walk.plot_view.cursor, measurement)
     stale = walk.loaded.view.stale.get(walk.check, "") if walk.loaded else ""
     is_split = walk.loaded is not None and walk.loaded.view.states.get(walk.check) == "split"
-    caution = f"Your ruling is stale: {stale}." if stale else SPLIT if is_split else caution_line(walk.check, walk.evidence)
+    caution = (
+        f"Your ruling is stale: {stale}." if stale else SPLIT if is_split else caution_line(walk.check, walk.evidence)
+    )
     look = look_at(walk.check, walk.fit) if walk.own_evidence is not None else ("",)
     return walk.message, point, look, caution
 
@@ -132,7 +139,9 @@ def rule_facts(walk: Walk, session: Session) -> RuleFacts:
     view = walk.loaded.view if walk.loaded else None
     return RuleFacts(
         reader_only=READER_ONLY if session.reviewer is None else "",
-        waiting="no evidence, so nothing can be ruled" if walk.trouble else WAITING if walk.own_evidence is None else "",
+        waiting=(
+            "no evidence, so nothing can be ruled" if walk.trouble else WAITING if walk.own_evidence is None else ""
+        ),
         recording=walk.recording,
         chosen=walk.chosen,
         note=walk.note,
@@ -157,8 +166,12 @@ def points_table(walk: Walk, width: int) -> list[Row]:
     for point in points:
         flux = f"{'<' if point.limit else ''}{number(point.flux_jy * 1e3)}"
         error = "limit" if point.limit else number(point.error_high_jy * 1e3, 2)
-        text = f" {fit(short_band(point.band), 8)}{number(point.wave_um):>8}{flux:>12}{error:>10}{signed(point.pull):>8}"
-        style = "dropped" if point.dropped else "limit" if point.limit else "strong" if abs(point.pull) >= STRONG else ""
+        text = (
+            f" {fit(short_band(point.band), 8)}{number(point.wave_um):>8}{flux:>12}{error:>10}{signed(point.pull):>8}"
+        )
+        style = (
+            "dropped" if point.dropped else "limit" if point.limit else "strong" if abs(point.pull) >= STRONG else ""
+        )
         rows.append(row((text, style), (" not fitted" if point.dropped and width >= 60 else "", "quiet")))
     return rows
 
@@ -166,7 +179,9 @@ def points_table(walk: Walk, width: int) -> list[Row]:
 def facts_rows(walk: Walk, width: int) -> list[Row]:
     """The catalogues' facts in a few lines."""
     facts = walk.loaded.candidate.facts
-    text = "   ".join(f"{safe(key)} {number(value, 6) if isinstance(value, float) else safe(value)}" for key, value in facts.items())
+    text = "   ".join(
+        f"{safe(key)} {number(value, 6) if isinstance(value, float) else safe(value)}" for key, value in facts.items()
+    )
     return [row((" facts", "head")), *([*row(" "), *line] for line in paragraph(text, width - 2)[:8])] if text else []
 
 

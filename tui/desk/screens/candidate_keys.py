@@ -51,7 +51,10 @@ PLOT = (
 def offered(walk: Walk, keymap: Mapping[str, str]) -> list[Entry]:
     """The entries of the key line, as things stand."""
     if walk.asking_compare:
-        return [(_keys("checks", keymap), "draw that check's best fit too", ""), (_keys("compare", keymap), "none", "compare()")]
+        return [
+            (_keys("checks", keymap), "draw that check's best fit too", ""),
+            (_keys("compare", keymap), "none", "compare()"),
+        ]
     if walk.hand is not None:
         return _hand(walk, keymap)
     if walk.page:
@@ -68,13 +71,20 @@ def offered(walk: Walk, keymap: Mapping[str, str]) -> list[Entry]:
         if walk.loaded is not None and walk.check in walk.loaded.view.own:
             entries.insert(place, (_keys("withdraw", keymap), "withdraw", "withdraw()"))
     if walk.compared:
-        entries = [(keys, f"without {CHECK_TITLES[walk.compared]}" if label == "compare" else label, action) for keys, label, action in entries]
+        entries = [
+            (keys, f"without {CHECK_TITLES[walk.compared]}" if label == "compare" else label, action)
+            for keys, label, action in entries
+        ]
     return entries
 
 
 def writing() -> list[Entry]:
     """While a note is being written."""
-    return [("Tab", "leaves the note", ""), ("Enter", "begins a new line", ""), ("", "kept as you type; recorded with the ruling", "")]
+    return [
+        ("Tab", "leaves the note", ""),
+        ("Enter", "begins a new line", ""),
+        ("", "kept as you type; recorded with the ruling", ""),
+    ]
 
 
 def _hand(walk: Walk, keymap: Mapping[str, str]) -> list[Entry]:

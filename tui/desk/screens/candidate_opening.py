@@ -1,4 +1,4 @@
-"""Opening a candidate: what was measured and ruled, then the evidence and its curves, all off the interface's thread."""
+"""Opening a candidate: what was measured and ruled, then evidence and curves, off the interface's thread."""
 
 from __future__ import annotations
 
@@ -28,7 +28,9 @@ class OpensCandidates:
         self.leave_note()
         self._ready_at = float("inf")
         message = old.message if old.name != name or keep_message else ""
-        self.walk = Walk(name, check or CHECKS[0], message=message, plot_view=old.plot_view.fresh(), plot_only=old.plot_only)
+        self.walk = Walk(
+            name, check or CHECKS[0], message=message, plot_view=old.plot_view.fresh(), plot_only=old.plot_only
+        )
         self.draw()
         self.load(self.walk, check)
 
@@ -93,6 +95,7 @@ class OpensCandidates:
 
     def be_ready(self: CandidateScreen) -> None:
         """From the next painted frame on, keys count."""
+
         def ready() -> None:
             self._ready_at = monotonic()
 

@@ -38,7 +38,8 @@ def facts_page(walk: Walk, width: int, height: int) -> list[Row]:
     rows += [[], _head("other sources near it")]
     for neighbour in candidate.neighbours:
         fluxes = ", ".join(f"{short_band(band)} {number(flux * 1e3)} mJy" for band, flux in neighbour.fluxes_jy.items())
-        text = f"{neighbour.separation_arcsec:.1f} arcsec at {neighbour.position_angle_deg:.0f} deg  {fluxes}  {safe(neighbour.source)}"
+        place = f"{neighbour.separation_arcsec:.1f} arcsec at {neighbour.position_angle_deg:.0f} deg"
+        text = f"{place}  {fluxes}  {safe(neighbour.source)}"
         rows += paragraph(text, width, indent=4, lead="  ")
     return rows if candidate.neighbours else [*rows, _quiet("none loaded")]
 
@@ -52,7 +53,9 @@ def measurements_page(walk: Walk, width: int, height: int) -> list[Row]:
     rows = [row((head if roomy else head.rstrip() + " flags", "head"), ("flags and notes" if roomy else "", "head"))]
     measurements = sorted(walk.loaded.candidate.measurements, key=lambda one: _pivot(one.band, bands))
     for one in measurements:
-        rows += _measurement_rows(one, _pivot(one.band, bands), pulls.get(one.band), bool(fitted) and one.band not in fitted, width)
+        rows += _measurement_rows(
+            one, _pivot(one.band, bands), pulls.get(one.band), bool(fitted) and one.band not in fitted, width
+        )
     return rows or [_quiet("nothing was measured")]
 
 
@@ -70,7 +73,13 @@ def mixture_page(walk: Walk, width: int, height: int) -> list[Row]:
         rows += [[], _head("witness"), *paragraph(_words(witness), width - 2)]
     rows += [[], *_pairs({key: value for key, value in found.facts.items() if key != "witness"}, width)]
     rows += [line for caution in found.cautions for line in paragraph(caution, width - 2, "caution")]
-    return [*rows, [], *paragraph("Outside this family: sources that shine in lines, and stars unlike the templates.", width - 2, "quiet")]
+    return [
+        *rows,
+        [],
+        *paragraph(
+            "Outside this family: sources that shine in lines, and stars unlike the templates.", width - 2, "quiet"
+        ),
+    ]
 
 
 def fits_page(walk: Walk, width: int, height: int) -> list[Row]:
@@ -102,7 +111,12 @@ def others_page(walk: Walk, width: int, height: int) -> list[Row]:
     rows += [] if view.own else [_quiet("none yet")]
     rows += [[], _head("rulings of others")]
     if not view.seal_open:
-        return [*rows, *paragraph("Sealed until you have been done with this candidate once: so that nobody steers you.", width, "quiet")]
+        return [
+            *rows,
+            *paragraph(
+                "Sealed until you have been done with this candidate once: so that nobody steers you.", width, "quiet"
+            ),
+        ]
     for line in view.others:
         rows += _ruling_rows(line.check, line.handle, line.ruling, line.utc, line.note, line.stale, width)
     return rows if view.others else [*rows, _quiet("none so far")]
@@ -113,9 +127,12 @@ def pictures_page(walk: Walk, width: int, height: int) -> list[Row]:
     if not walk.cutouts:
         return [_head("pictures"), _quiet("no cutouts were loaded: plainlight load QUEUE TABLE --cutouts DIR")]
     bands = walk.loaded.bands
-    pictures = cutout_rows(width, height - 1, walk.cutouts, bands, walk.stretch, walk.first_cutout, braille_works(os.environ))
-    return [row(("t ", "key", "stretch()"), ("stretch   ", "", "stretch()"), ("n ", "key", "swap()"), ("other bands", "", "swap()"),
-                ("   north as in the file", "quiet")), *pictures]  # fmt: skip
+    pictures = cutout_rows(
+        width, height - 1, walk.cutouts, bands, walk.stretch, walk.first_cutout, braille_works(os.environ)
+    )
+    keys = row(("t ", "key", "stretch()"), ("stretch   ", "", "stretch()"), ("n ", "key", "swap()"))
+    keys += row(("other bands", "", "swap()"), ("   north as in the file", "quiet"))
+    return [keys, *pictures]
 
 
 def dips_page(walk: Walk, width: int, height: int) -> list[Row]:
@@ -132,7 +149,8 @@ def dips_page(walk: Walk, width: int, height: int) -> list[Row]:
     if found is not None:
         rows += [[], *_pairs(found.facts, width)]
         for fitted in found.fits:
-            rows.append(row(f"  {fit(safe(fitted.model), 24)} chi2 {fitted.chi2:8.1f}  dof {fitted.dof:3d}  p {number(fitted.p, 1)}"))
+            numbers = f"chi2 {fitted.chi2:8.1f}  dof {fitted.dof:3d}  p {number(fitted.p, 1)}"
+            rows.append(row(f"  {fit(safe(fitted.model), 24)} {numbers}"))
             rows += param_rows(width, fitted.params)
         rows += [line for caution in found.cautions for line in paragraph(caution, width - 2, "caution")]
     return rows

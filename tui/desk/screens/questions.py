@@ -75,7 +75,11 @@ def look_at(check: str, fit: Fit | None) -> tuple[str, ...]:
     if worst is None:
         return (hint,)
     near = f"{short_band(worst[0])} {signed(worst[1])} sigma"
-    return (f"No band is off by 3 sigma; the farthest is {near}. {hint}", f"Farthest: {near}. {hint}", f"Farthest: {near}.")
+    return (
+        f"No band is off by 3 sigma; the farthest is {near}. {hint}",
+        f"Farthest: {near}. {hint}",
+        f"Farthest: {near}.",
+    )
 
 
 HINTS = {
@@ -123,7 +127,11 @@ def _band_words(bands: Sequence[str]) -> list[str]:
     """The bands in words, at less and less length."""
     names = [short_band(band) for band in bands]
     words = [listed(names)] if len(names) <= NAMED else []
-    words += [f"{', '.join(names[:count])} and {len(names) - count} more bands" for count in (3, 2, 1) if len(names) > count + 1]
+    words += [
+        f"{', '.join(names[:count])} and {len(names) - count} more bands"
+        for count in (3, 2, 1)
+        if len(names) > count + 1
+    ]
     return [*words, f"{len(names)} bands" if len(names) > 1 else names[0]]
 
 

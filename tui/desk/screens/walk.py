@@ -129,7 +129,9 @@ class Walk:
             dropped=self.hand.dropped if self.hand else (),
             other=other.best if other else None,
         )
-        curves = plot_curves(curve, self.curves.get((self.compared, 0)), CHECK_TITLES.get(self.compared, "")) + spectrum_curve(self.loaded.candidate)
+        curves = plot_curves(
+            curve, self.curves.get((self.compared, 0)), CHECK_TITLES.get(self.compared, "")
+        ) + spectrum_curve(self.loaded.candidate)
         return PlotData(points, curves, self._plot_message(own))
 
     def measurement_under_cursor(self) -> Measurement | None:

@@ -1,4 +1,4 @@
-"""The lines on top of a candidate: its name and standing, the five checks as their reader may see them, the question."""
+"""The lines on top of a candidate: name and standing, the five checks as their reader may see them."""
 
 from __future__ import annotations
 
@@ -36,7 +36,9 @@ def standing_words(view: CandidateView) -> str:
     """Outcome and the reader's own progress, or why it is pending."""
     if not view.seal_open:
         count = len(view.own)
-        return f"{outcome_text(view.outcome)}" + (f", {count} of {count + len(view.to_rule)} ruled" if count or view.to_rule else "")
+        return f"{outcome_text(view.outcome)}" + (
+            f", {count} of {count + len(view.to_rule)} ruled" if count or view.to_rule else ""
+        )
     reason = f": {safe(reason_text(view.pending_reason))}" if view.pending_reason else ""
     reason = reason or (f" by {safe(reason_text(view.cause))}" if view.cause else "")
     return outcome_text(view.outcome) + reason
@@ -44,7 +46,9 @@ def standing_words(view: CandidateView) -> str:
 
 def outcome_style(outcome: str) -> str:
     """Style name of an outcome."""
-    return {"explained": "explains", "ordinary": "explains", "unexplained": "short", "pending": "open"}.get(outcome, "sealed")
+    return {"explained": "explains", "ordinary": "explains", "unexplained": "short", "pending": "open"}.get(
+        outcome, "sealed"
+    )
 
 
 def check_row(width: int, view: CandidateView | None, current: str, pages: str = "") -> Row:

@@ -33,7 +33,13 @@ STRETCHES = (Stretch("faint", 5.0, 98.0, 30.0), Stretch("middle", 1.0, 99.7, 8.0
 
 
 def cutout_rows(
-    width: int, height: int, cutouts: Sequence[Cutout], bands: Mapping[str, Band], stretch: int, first: int, unicode: bool
+    width: int,
+    height: int,
+    cutouts: Sequence[Cutout],
+    bands: Mapping[str, Band],
+    stretch: int,
+    first: int,
+    unicode: bool,
 ) -> list[Row]:
     """As many pictures side by side as fit, from the `first` on, each with its band, scale and beam."""
     if not cutouts:
@@ -69,7 +75,9 @@ def picture_rows(
 def _head_words(cutout: Cutout, beam_arcsec: float, stretch: Stretch, columns: int) -> str:
     said = f"{short_band(cutout.band)} {stretch.name}"
     if math.isfinite(cutout.arcsec_per_pixel) and cutout.arcsec_per_pixel > 0 and cutout.image.ndim == 2:
-        said += f' {number(cutout.arcsec_per_pixel * cutout.image.shape[1], 2)}" {"wide" if columns >= 30 else ""}'.rstrip()
+        said += (
+            f' {number(cutout.arcsec_per_pixel * cutout.image.shape[1], 2)}" {"wide" if columns >= 30 else ""}'.rstrip()
+        )
     return said + (f' beam {beam_arcsec:g}"' if math.isfinite(beam_arcsec) else "")
 
 
@@ -108,7 +116,9 @@ def _blocks(levels: FloatArray, ring: float) -> list[Row]:
         grey[np.abs(away - ring) < 0.5] = RING
     rows: list[Row] = []
     for line in range(0, levels.shape[0], 2):
-        rows.append(_joined([(_hex(upper), _hex(lower)) for upper, lower in zip(grey[line], grey[line + 1], strict=True)]))
+        rows.append(
+            _joined([(_hex(upper), _hex(lower)) for upper, lower in zip(grey[line], grey[line + 1], strict=True)])
+        )
     return rows
 
 

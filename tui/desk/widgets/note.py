@@ -27,7 +27,9 @@ class NoteEditor(TextArea):
         """The reviewer is done writing."""
 
     def __init__(self, *, id: str | None = None) -> None:
-        super().__init__(id=id, soft_wrap=True, show_line_numbers=False, tab_behavior="focus", highlight_cursor_line=False)
+        super().__init__(
+            id=id, soft_wrap=True, show_line_numbers=False, tab_behavior="focus", highlight_cursor_line=False
+        )
 
     def open(self, text: str) -> None:
         """Show a note to go on with, the cursor at its end."""

@@ -99,7 +99,9 @@ def param_rows(width: int, params: Mapping[str, Param], held: Sequence[str] = ()
         return []
     wide = width >= WIDE
     names = [param_name(key, param) for key, param in params.items()]
-    labels = [f"{name.label if wide else name.short}{' ' + name.unit if name.unit and not wide else ''}" for name in names]
+    labels = [
+        f"{name.label if wide else name.short}{' ' + name.unit if name.unit and not wide else ''}" for name in names
+    ]
     values, errors = [], []
     for key, name, param in zip(params, names, params.values(), strict=True):
         value, error = value_and_error(param, name.factor, wide)
@@ -113,7 +115,9 @@ def param_rows(width: int, params: Mapping[str, Param], held: Sequence[str] = ()
         style = "chosen" if key == chosen else "quiet"
         tail = f" {name.unit}" if wide else ""
         error = squeezed(error, width - label_width - 2 - len(value) - len(tail))
-        rows.append(row((f"{mark}{label[:label_width].ljust(label_width)}", style), (f" {value}", "strong"), f"{error}{tail}"))
+        rows.append(
+            row((f"{mark}{label[:label_width].ljust(label_width)}", style), (f" {value}", "strong"), f"{error}{tail}")
+        )
     return rows
 
 
@@ -181,7 +185,14 @@ def fits_table(width: int, fits: Sequence[Fit], shown: int) -> list[Row]:
                [number(fit.p, 1) for fit in fits], [f"{fit.bic:.1f}" for fit in fits]]  # fmt: skip
     aligned = [decimal_aligned(column) for column in columns]
     room = max(8, min(24, width - 33))
-    rows = [row((f" {('fits of this check' if room >= 18 else 'its fits'):<{room}}{'chi2':>9}{'dof':>5}{'p':>8}{'BIC':>9}", "head"))]
+    rows = [
+        row(
+            (
+                f" {'fits of this check' if room >= 18 else 'its fits':<{room}}{'chi2':>9}{'dof':>5}{'p':>8}{'BIC':>9}",
+                "head",
+            )
+        )
+    ]
     for line, one in enumerate(fits):
         cells = "".join(cell[line].rjust(size) for cell, size in zip(aligned, (9, 5, 8, 9), strict=True))
         mark = ">" if line == shown else " "

@@ -52,7 +52,9 @@ class Canvas:
             on &= (length % sum(dash)) < dash[0]
         self._mark(slice(4 * top, 4 * bottom), slice(None), on, style)
 
-    def vertical(self, x_dot: float, y_one: float, y_two: float, style: str, top: int, bottom: int, every: int = 1) -> None:
+    def vertical(
+        self, x_dot: float, y_one: float, y_two: float, style: str, top: int, bottom: int, every: int = 1
+    ) -> None:
         """A line down one dot column between two places in dots, kept to cell rows top <= row < bottom."""
         column = int(round(x_dot))
         if not 0 <= column < self.dots.shape[1]:
@@ -134,4 +136,8 @@ def _clip(value: float) -> int:
 def _runs(codes: np.ndarray, styles: np.ndarray) -> Row:
     text = codes.tobytes().decode("utf-32-le" if sys.byteorder == "little" else "utf-32-be")
     edges = [0, *(np.flatnonzero(np.diff(styles)) + 1).tolist(), len(text)]
-    return [Span(text[start:end], STYLES[styles[start]]) for start, end in zip(edges, edges[1:], strict=False) if end > start]
+    return [
+        Span(text[start:end], STYLES[styles[start]])
+        for start, end in zip(edges, edges[1:], strict=False)
+        if end > start
+    ]

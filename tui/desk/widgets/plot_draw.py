@@ -71,7 +71,9 @@ def draw_spectrum(width: int, height: int, plot: PlotData, view: PlotView, unico
         unicode: braille dots; without them letters and plain marks that any terminal has.
     """
     if width < LEAST[0] or height < LEAST[1]:
-        return fit_rows(paragraph(f"The plot needs {LEAST[0]} columns and {LEAST[1]} rows.", width, "label"), width, height)
+        return fit_rows(
+            paragraph(f"The plot needs {LEAST[0]} columns and {LEAST[1]} rows.", width, "label"), width, height
+        )
     frame = _frame(width, height, plot, view)
     canvas = Canvas(width, height - 1, unicode)
     _draw_axes(canvas, frame, view)
@@ -131,8 +133,12 @@ def _draw_wavelengths(canvas: Canvas, frame: Frame) -> None:
         if start + len(text) < canvas.width - len(unit) and canvas.is_free(line, start - 1, len(text) + 2):
             canvas.put(line, start, text, "axis")
             if frame.bottom - frame.top >= 16:
-                canvas.vertical(frame.x_dot(value), 4 * frame.top, 4 * frame.bottom - 1, "grid", frame.top, frame.bottom, 4)
-            canvas.vertical(frame.x_dot(value), 4 * last_strip + 3, 4 * last_strip + 3, "axis", last_strip, last_strip + 1)
+                canvas.vertical(
+                    frame.x_dot(value), 4 * frame.top, 4 * frame.bottom - 1, "grid", frame.top, frame.bottom, 4
+                )
+            canvas.vertical(
+                frame.x_dot(value), 4 * last_strip + 3, 4 * last_strip + 3, "axis", last_strip, last_strip + 1
+            )
 
 
 def _draw_cursor(canvas: Canvas, frame: Frame, plot: PlotData, view: PlotView) -> None:

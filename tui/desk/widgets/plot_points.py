@@ -53,7 +53,9 @@ def plot_curves(curve: Curve | None, other: Curve | None = None, other_label: st
         if len(curve.components) > 1:
             for letter, (label, flux) in zip(LETTERS, curve.components.items(), strict=False):
                 lines.append(PlotCurve(safe(label), curve.wave_um, np.asarray(flux), "component", letter))
-        lines.append(PlotCurve("total" if len(curve.components) > 1 else "model", curve.wave_um, curve.total_jy, "total"))
+        lines.append(
+            PlotCurve("total" if len(curve.components) > 1 else "model", curve.wave_um, curve.total_jy, "total")
+        )
     if other is not None:
         lines.append(PlotCurve(other_label, other.wave_um, other.total_jy, "other"))
     return tuple(lines)
@@ -81,7 +83,8 @@ def point_words(plot: PlotData, index: int, measurement: Measurement) -> str:
     name = short_band(point.band)
     unit, scale = ("mJy", 1e3) if abs(point.flux_jy) < 1 else ("Jy", 1.0)
     if point.limit:
-        words = f"{name} {number(point.wave_um)} micron: below {number(point.flux_jy * scale)} {unit} ({measurement.nsigma:g} sigma)"
+        ceiling = f"{number(point.flux_jy * scale)} {unit} ({measurement.nsigma:g} sigma)"
+        words = f"{name} {number(point.wave_um)} micron: below {ceiling}"
     else:
         error = f" +- {number(measurement.error_jy * scale, 2)}" if measurement.error_jy > 0 else ""
         words = f"{name} {number(point.wave_um)} micron: {number(point.flux_jy * scale)}{error} {unit}"

@@ -33,7 +33,9 @@ def draw_residuals(canvas: Canvas, frame: Frame, plot: PlotData, view: PlotView)
     canvas.horizontal(4 * middle + 1.5, 2 * frame.left, 2 * frame.right - 1, "zero", every=2)
     for inner in (-span, span):
         canvas.horizontal(_y(inner, span, top, rows), 2 * frame.left, 2 * frame.right - 1, "grid", every=6)
-    order = sorted(range(len(plot.points)), key=lambda index: (index == view.cursor, abs(_finite(plot.points[index].pull))))
+    order = sorted(
+        range(len(plot.points)), key=lambda index: (index == view.cursor, abs(_finite(plot.points[index].pull)))
+    )
     for index in order:
         point = plot.points[index]
         if frame.holds(frame.column(point.wave_um)):
@@ -66,7 +68,9 @@ def _draw_pull(canvas: Canvas, frame: Frame, point: PlotPoint, span: float, styl
     if not math.isfinite(point.pull):
         return
     if abs(point.pull) > span:
-        canvas.vertical(frame.x_dot(point.wave_um), middle_dot, _y(point.pull, span, top, rows), "stem", top, top + rows)
+        canvas.vertical(
+            frame.x_dot(point.wave_um), middle_dot, _y(point.pull, span, top, rows), "stem", top, top + rows
+        )
         canvas.put(top if point.pull > 0 else top + rows - 1, column, "^" if point.pull > 0 else "_", style or "far")
         return
     canvas.vertical(frame.x_dot(point.wave_um), middle_dot, _y(point.pull, span, top, rows), "stem", top, top + rows)
@@ -91,7 +95,9 @@ def _write_pull(canvas: Canvas, frame: Frame, point: PlotPoint, style: str) -> N
     for line, start in places:
         if start < frame.left or start + len(text) > frame.right or not canvas.is_free(line, start, len(text)):
             continue
-        if all(_is_clear(canvas, line, side, line == edge and side == column) for side in (start - 1, start + len(text))):
+        if all(
+            _is_clear(canvas, line, side, line == edge and side == column) for side in (start - 1, start + len(text))
+        ):
             canvas.put(line, start, text, style)
             return
 

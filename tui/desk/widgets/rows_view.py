@@ -18,7 +18,8 @@ Draw = Callable[[int, int], list[Row]]
 # Style name -> component class of the style sheet. The order is that of importance only.
 NAMES = (
     "grid", "axis", "zero", "spectrum", "component-a", "component-b", "component-c", "component-d", "other", "total",
-    "width", "bar", "stem", "label", "limit", "dropped", "point", "far", "cursor", "cursor-line", "name", "now", "explains", "short",
+    "width", "bar", "stem", "label", "limit", "dropped", "point", "far", "cursor", "cursor-line", "name", "now",
+    "explains", "short",
     "unclear", "split", "open", "todo", "nodata", "sealed", "question", "quiet", "caution", "head", "key", "chosen",
     "strong", "message",
 )  # fmt: skip

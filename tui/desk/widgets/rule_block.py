@@ -112,18 +112,32 @@ def _rule_words(facts: RuleFacts) -> Row:
     if facts.chosen:
         word = "take back" if facts.chosen == "withdrawn" else RULING_WORDS[facts.chosen]
         return row((f"> {word} <", "chosen"), "   ", ("Enter", "key", "record()"), (" records it", "", "record()"))
-    choices = row(("e", "key", "choose('explains')"), (" explains   ", "", "choose('explains')"),
-                  ("f", "key", "choose('short')"), (" falls short   ", "", "choose('short')"),
-                  ("u", "key", "choose('unclear')"), (" unclear", "", "choose('unclear')"))  # fmt: skip
+    choices = row(
+        ("e", "key", "choose('explains')"),
+        (" explains   ", "", "choose('explains')"),
+        ("f", "key", "choose('short')"),
+        (" falls short   ", "", "choose('short')"),
+        ("u", "key", "choose('unclear')"),
+        (" unclear", "", "choose('unclear')"),
+    )
     if facts.is_nodata:
         return row(("no data test this check, nothing need be ruled", "quiet"), "   ", *choices[4:])
     if facts.own is not None and facts.stale:
-        return row((f"your {RULING_WORDS[facts.own.ruling]} is stale", "caution"), "   ", ("r", "key", "reaffirm()"),
-                   (" it stands   ", "", "reaffirm()"), *choices)  # fmt: skip
+        return row(
+            (f"your {RULING_WORDS[facts.own.ruling]} is stale", "caution"),
+            "   ",
+            ("r", "key", "reaffirm()"),
+            (" it stands   ", "", "reaffirm()"),
+            *choices,
+        )
     if facts.own is not None:
         when = clock(facts.own.utc)
-        return row(("you ruled ", "quiet"), (RULING_WORDS[facts.own.ruling], "strong"), (f" {when}   " if when else "   ", "quiet"),
-                   *choices)  # fmt: skip
+        return row(
+            ("you ruled ", "quiet"),
+            (RULING_WORDS[facts.own.ruling], "strong"),
+            (f" {when}   " if when else "   ", "quiet"),
+            *choices,
+        )
     return [*choices, Span("     choose, then Enter records", "quiet")]
 
 
