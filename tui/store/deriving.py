@@ -10,7 +10,7 @@ from __future__ import annotations
 
 import math
 import sqlite3
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from functools import lru_cache
 from statistics import NormalDist
@@ -102,6 +102,38 @@ def stand(ground: Ground, settings: Settings) -> Standing:
     """The standing of one candidate, seal and all: for this package's own use, never handed to one reader whole."""
     checks = {check: ground.evidence[check] for check in CHECKS if check in ground.evidence}
     return standing(ground.rulings, checks, ground.cited, settings, ground.opened)
+
+
+def refresh_after_evidence(
+    connection: sqlite3.Connection, ids: Sequence[int], stars: Mapping[int, Evidence]
+) -> None:
+    """The same as `refresh` after evidence came in, faster where nobody ruled, which is nearly everywhere.
+
+    Args:
+        stars: candidate id -> star evidence that came in; the others keep their oddness.
+    """
+    settings = settings_log.read_settings(connection)
+    masks, touched = dict.fromkeys(ids, 0), set()
+    for start in range(0, len(ids), 500):
+        page = list(ids[start : start + 500])
+        marks = ", ".join("?" * len(page))
+        query = f"SELECT id FROM queue_row WHERE touched = 1 AND id IN ({marks})"
+        touched |= {row[0] for row in connection.execute(query, page).fetchall()}
+        query = (
+            "SELECT candidate_id, kind FROM evidence "
+            f"WHERE is_current = 1 AND adequate IS NULL AND candidate_id IN ({marks})"
+        )
+        for candidate_id, kind in connection.execute(query, page).fetchall():
+            masks[candidate_id] |= mask_of([kind]) if kind in CHECKS else 0
+    query = "SELECT oddness, odd_band, odd_pull FROM queue_row WHERE id = ?"
+    for candidate_id, mask in masks.items():
+        if candidate_id in touched:
+            write(connection, candidate_id, derive(ground_of(connection, candidate_id), settings))
+            continue
+        is_new = candidate_id in stars
+        odd = oddness_of(stars[candidate_id]) if is_new else connection.execute(query, (candidate_id,)).fetchone()
+        values = (*odd, mask, *queue_values(untouched(mask)), 0)
+        write(connection, candidate_id, Derived(values, [], [], frozenset()))
 
 
 def derive(ground: Ground, settings: Settings) -> Derived:

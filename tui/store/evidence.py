@@ -20,6 +20,7 @@ IS_CITED = (
     "SELECT 1 FROM ruling JOIN candidate ON candidate.name = ruling.candidate "
     'WHERE candidate.id = ? AND ruling."check" = ? AND ruling.evidence_digest = ? LIMIT 1'
 )
+Held = tuple[int, str, int, int]  # row id, digest, version, is_current
 
 
 def save_evidence(connection: sqlite3.Connection, rows: Iterable[tuple[str, Evidence]]) -> None:
@@ -35,55 +36,73 @@ def save_evidence(connection: sqlite3.Connection, rows: Iterable[tuple[str, Evid
     with immediate(connection):
         names = {name: findable(name) for name, _ in rows}
         ids = ids_of(connection, set(names.values()))
-        texts = []
+        newest: dict[tuple[int, str], Evidence] = {}
         for name, evidence in rows:
             if names[name] not in ids:
                 raise UnknownNameError("candidate", name)
-            if evidence.kind not in KINDS:
-                raise UnknownNameError("kind of evidence", evidence.kind)
-            texts.append((ids[names[name]], evidence))
-        for candidate_id, evidence in texts:
-            make_current(connection, candidate_id, evidence)
-        deriving.refresh(connection, dict.fromkeys(candidate_id for candidate_id, _ in texts))
+            newest[ids[names[name]], checked(evidence).kind] = evidence
+        touched = list({candidate_id for candidate_id, _ in newest})
+        held = held_evidence(connection, touched)
+        fresh = [
+            (candidate_id, evidence)
+            for (candidate_id, kind), evidence in newest.items()
+            if make_room(connection, candidate_id, evidence, held.get((candidate_id, kind), []))
+        ]
+        insert_evidence(connection, fresh)
+        stars = {candidate_id: evidence for (candidate_id, kind), evidence in newest.items() if kind == "star"}
+        deriving.refresh_after_evidence(connection, touched, stars)
 
 
-def make_current(connection: sqlite3.Connection, candidate_id: int, evidence: Evidence) -> None:
-    """Put one evidence in the place of the current one, which goes unless a ruling cites it."""
+def checked(evidence: Evidence) -> Evidence:
+    """The evidence itself; refused where it cannot be kept."""
+    if evidence.kind not in KINDS:
+        raise UnknownNameError("kind of evidence", evidence.kind)
     if not evidence.digest:
         raise StoreError(f"Evidence on {evidence.kind} without a digest cannot be kept.")
-    query = (
-        "SELECT id, digest, version, is_current FROM evidence "
-        "WHERE candidate_id = ? AND kind = ? AND (is_current = 1 OR digest = ?)"
-    )
-    for row_id, digest, version, is_current in connection.execute(
-        query, (candidate_id, evidence.kind, evidence.digest)
-    ).fetchall():
+    return evidence
+
+
+def held_evidence(connection: sqlite3.Connection, ids: Sequence[int]) -> dict[tuple[int, str], list[Held]]:
+    """(candidate id, kind) -> (row id, digest, version, is_current) of all evidence on file."""
+    held: dict[tuple[int, str], list[Held]] = {}
+    for page in pages(ids):
+        query = (
+            "SELECT candidate_id, kind, id, digest, version, is_current FROM evidence "
+            f"WHERE candidate_id IN ({', '.join('?' * len(page))})"
+        )
+        for candidate_id, kind, *row in connection.execute(query, page).fetchall():
+            held.setdefault((candidate_id, kind), []).append(tuple(row))
+    return held
+
+
+def make_room(connection: sqlite3.Connection, candidate_id: int, evidence: Evidence, held: Sequence[Held]) -> bool:
+    """Retire the current row, which goes unless a ruling cites it; whether the new one has still to be added."""
+    again = [row_id for row_id, digest, _, _ in held if digest == evidence.digest]
+    for row_id, digest, version, is_current in held:
         if digest == evidence.digest:
             if version != evidence.version:
                 raise StoreError(f"Evidence on {evidence.kind} has one digest for two versions; the digest must tell.")
             if is_current:
-                return
-        elif not connection.execute(IS_CITED, (candidate_id, evidence.kind, digest)).fetchone():
+                return False
+        elif is_current and not connection.execute(IS_CITED, (candidate_id, evidence.kind, digest)).fetchone():
             connection.execute("DELETE FROM evidence WHERE id = ?", (row_id,))
-        else:
+        elif is_current:
             connection.execute("UPDATE evidence SET is_current = 0 WHERE id = ?", (row_id,))
-    key = (candidate_id, evidence.kind, evidence.digest)
-    again = "UPDATE evidence SET is_current = 1 WHERE candidate_id = ? AND kind = ? AND digest = ?"
-    if connection.execute(again, key).rowcount:
-        return
-    insert_evidence(connection, candidate_id, evidence, is_current=True)
+    if again:
+        connection.execute("UPDATE evidence SET is_current = 1 WHERE id = ?", again)
+    return not again
 
 
-def insert_evidence(connection: sqlite3.Connection, candidate_id: int, evidence: Evidence, *, is_current: bool) -> None:
-    """Add one row."""
-    adequate = None if evidence.adequate is None else int(evidence.adequate)
-    connection.execute(
+def insert_evidence(connection: sqlite3.Connection, rows: Iterable[tuple[int, Evidence]]) -> None:
+    """Add rows of (candidate id, evidence), each the current one of its kind."""
+    connection.executemany(
         "INSERT INTO evidence (candidate_id, kind, version, digest, adequate, content, is_current) "
-        "VALUES (?, ?, ?, ?, ?, ?, ?)",
-        (
-            *(candidate_id, evidence.kind, evidence.version, evidence.digest, adequate),
-            *(evidence_text(evidence), int(is_current)),
-        ),
+        "VALUES (?, ?, ?, ?, ?, ?, 1)",
+        [
+            (candidate_id, one.kind, one.version, one.digest, None if one.adequate is None else int(one.adequate),
+             evidence_text(one))
+            for candidate_id, one in rows
+        ],  # fmt: skip
     )
 
 
