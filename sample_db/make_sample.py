@@ -11,8 +11,6 @@ import argparse
 import sys
 from pathlib import Path
 
-import numpy as np
-
 FOLDER = Path(__file__).resolve().parent
 sys.path[:0] = [str(FOLDER), str(FOLDER.parent)]
 STATE = 20140611
@@ -30,13 +28,12 @@ def make_tables() -> int:
     from tui.workflow.basis import packaged_tables
     from tui.workflow.templates import templates_for
 
-    rng = np.random.default_rng(STATE)
-    stars = all_stars(rng)
+    stars = all_stars(STATE)
     sky = Sky(templates_for(Settings()))
     for old in (FOLDER / "cutouts").glob("*.fits"):
         old.unlink()
-    write_all(FOLDER, stars, Observer(sky, packaged_tables(), rng))
-    write_practice(FOLDER / "practice.toml", Observer(sky, packaged_tables(), np.random.default_rng(STATE + 4)))
+    write_all(FOLDER, stars, Observer(sky, packaged_tables(), STATE))
+    write_practice(FOLDER / "practice.toml", Observer(sky, packaged_tables(), STATE))
     return len(stars)
 
 

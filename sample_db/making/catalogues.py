@@ -42,10 +42,15 @@ FAINT_JY = {
 
 
 class Observer:
-    """Sees stars through the catalogues, with one random state."""
+    """Sees stars through the catalogues; every star and table has a random state of its own, made from one."""
 
-    def __init__(self, sky: Sky, tables: Tables, rng: np.random.Generator) -> None:
-        self.sky, self.tables, self.rng = sky, tables, rng
+    def __init__(self, sky: Sky, tables: Tables, state: int) -> None:
+        self.sky, self.tables, self.state = sky, tables, state
+        self.rng = np.random.default_rng(state)
+
+    def turn_to(self, star: Star, table: int) -> None:
+        """Begin to observe a star for one of the tables."""
+        self.rng = np.random.default_rng([self.state, *star.stream, table])
 
     # --- flux densities ---
 

@@ -101,6 +101,18 @@ def discs(rng: np.random.Generator) -> Iterator[Star]:
         facts={"age_myr": 4.0, "otype": "TT*", "sp_type": "K4Ve"},
     )
     yield Star("dust that takes a third of the light", "dust", 6100, 9.3, "shell test", parts=(Dust(350, 0.33),))
+    yield Star(
+        "reddened star with a disc",
+        "dust",
+        9600,
+        8.8,
+        "another law",
+        av_mag=3.2,
+        place=MARSH,
+        parts=(Dust(290, 4e-3),),
+        facts={"av_max": 8.0},
+        further=("V",),
+    )
 
 
 def dips(rng: np.random.Generator) -> Iterator[Star]:

@@ -153,7 +153,7 @@ def numbers(candidate: Candidate, evidence: Mapping[str, Evidence], check: str) 
     """What a note may quote."""
     star, own = evidence["star"], evidence[check]
     params = dict(own.best.params) if own.best else {}
-    suspects = evidence["instrument"].facts.get("suspect_bands") or ["the photometry"]
+    suspects = evidence["instrument"].facts.get("suspect_bands") or ["?"]
 
     def value(name: str, form: str) -> str:
         return format(params[name].value, form) if name in params else "?"

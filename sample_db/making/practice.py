@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from tempfile import TemporaryDirectory
 from typing import Any
@@ -36,6 +36,7 @@ KEPT_FACTS = (
     "phot_bp_n_obs",
     "phot_bp_n_blended_transits",
 )
+PRACTICE = 104  # a family number that the survey does not use
 KEPT_FLAGS = ("ph_qual", "cc_flags", "cc_flg", "ext_flg")
 
 
@@ -132,7 +133,8 @@ LESSONS = (
 
 def write_practice(path: Path, observer: Observer) -> None:
     """Observe the practice stars and write them with their answers."""
-    found = candidates([lesson.star for lesson in LESSONS], observer)
+    stars = [replace(lesson.star, stream=(PRACTICE, place)) for place, lesson in enumerate(LESSONS)]
+    found = candidates(stars, observer)
     path.write_text(HEAD + "".join(lesson_text(*pair) for pair in zip(LESSONS, found, strict=True)), encoding="utf-8")
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
+from dataclasses import replace
 
 import numpy as np
 from making.beams import compact, galaxies, leaks, pairs, wrong_matches
@@ -11,7 +12,7 @@ from making.records import instrument, sparse
 from making.star import MARSH, Star
 
 
-def all_stars(rng: np.random.Generator) -> list[Star]:
+def all_stars(state: int) -> list[Star]:
     """Every star, in the order in which the survey numbers them: shuffled, so that a number tells nothing."""
     families = (
         ordinary,
@@ -28,8 +29,12 @@ def all_stars(rng: np.random.Generator) -> list[Star]:
         screens,
         sparse,
     )
-    stars = [star for family in families for star in family(rng)]
-    return [stars[place] for place in rng.permutation(len(stars))]
+    stars = [
+        replace(star, stream=(family, place))
+        for family, make in enumerate(families)
+        for place, star in enumerate(make(np.random.default_rng([state, family])))
+    ]
+    return [stars[place] for place in np.random.default_rng(state).permutation(len(stars))]
 
 
 def ordinary(rng: np.random.Generator) -> Iterator[Star]:

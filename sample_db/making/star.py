@@ -82,3 +82,4 @@ class Star:
     pictures: tuple[str, ...] = ()
     control: bool = False
     later: bool = False  # a correction of its photometry arrives after the first rulings
+    stream: tuple[int, int] = (0, 0)  # family and place in it: its own random states, whatever other stars there are

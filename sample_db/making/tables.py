@@ -61,6 +61,7 @@ def crossmatch(stars: Sequence[Star], observer: Observer) -> Table:
     """Gaia DR3, 2MASS and AllWISE, one row a candidate; columns that two of them share carry _2 and _3."""
     rows = []
     for number, star in enumerate(stars, 1):
+        observer.turn_to(star, 0)
         gaia = observer.gaia(star, number)
         others = (observer.twomass(star, gaia), observer.wise(star, gaia))
         row: dict[str, Any] = {"name": name_of(number), **gaia}
@@ -163,6 +164,7 @@ def sdss_rows(stars: Sequence[Star], observer: Observer) -> Iterable[dict[str, A
     for number, star in enumerate(stars, 1):
         if not star.sdss:
             continue
+        observer.turn_to(star, 1)
         row: dict[str, Any] = {"name": name_of(number)}
         for band, softening in zip(SDSS_BANDS, SDSS_SOFTENING, strict=True):
             flux, error = observer.seen(star, band)
@@ -181,6 +183,7 @@ def sdss_rows(stars: Sequence[Star], observer: Observer) -> Iterable[dict[str, A
 def long_rows(stars: Sequence[Star], observer: Observer) -> Iterable[list[Any]]:
     """Further bands and epochs, a row a measurement."""
     for number, star in enumerate(stars, 1):
+        observer.turn_to(star, 2)
         for band in star.further:
             yield measured(observer, star, number, band)
         for band, offsets in star.epochs.items():
@@ -225,20 +228,24 @@ def later_rows(stars: Sequence[Star], observer: Observer) -> Iterable[list[Any]]
     """Spitzer's photometry of a few stars, which arrived after the first rulings."""
     for number, star in enumerate(stars, 1):
         if star.later:
+            observer.turn_to(star, 3)
             for band in LATER_BANDS:
                 yield measured(observer, star, number, band)
 
 
-def dip_rows(stars: Sequence[Star], rng: np.random.Generator, pivots: Mapping[str, float]) -> Iterable[list[Any]]:
+def dip_rows(stars: Sequence[Star], observer: Observer, pivots: Mapping[str, float]) -> Iterable[list[Any]]:
     """Depths of dimming events, a row a band."""
     wave = np.array([pivots[band] for band in DIP_BANDS])
     for number, star in enumerate(stars, 1):
         kind, size = star.dip
         if not kind:
             continue
+        observer.turn_to(star, 4)
         depth = 1 - 10 ** (-0.4 * size * extinction(wave, 3.1)) if kind == "coloured" else np.full(wave.size, size)
         error = np.full(wave.size, 0.004)
-        for band, value, sigma in zip(DIP_BANDS, depth + error * rng.standard_normal(wave.size), error, strict=True):
+        for band, value, sigma in zip(
+            DIP_BANDS, depth + error * observer.rng.standard_normal(wave.size), error, strict=True
+        ):
             yield [name_of(number), "2014 June", band, round(float(value), 4), sigma, "2014-06-11"]
 
 
@@ -267,6 +274,7 @@ def spectra_table(stars: Sequence[Star], observer: Observer) -> Table:
     rows = []
     for number, star in enumerate(stars, 1):
         if star.spectrum:
+            observer.turn_to(star, 5)
             flux = 1e3 * observer.sky.spectrum(star, SPECTRUM_UM)
             seen = flux * (1 + 0.02 * observer.rng.standard_normal(flux.size))
             rows += [
@@ -303,13 +311,14 @@ def write_all(folder: Path, stars: Sequence[Star], observer: Observer) -> None:
     write_csv(folder / "spitzer_later.csv", head, later_rows(stars, observer))
     pivots = {name: band.pivot_um for name, band in observer.sky.bands.items()}
     write_csv(
-        folder / "dips.csv", ["name", "event", "band", "depth", "error", "epoch"], dip_rows(stars, observer.rng, pivots)
+        folder / "dips.csv", ["name", "event", "band", "depth", "error", "epoch"], dip_rows(stars, observer, pivots)
     )
     neighbour_table(stars, observer).write(folder / "neighbours.ecsv", overwrite=True)
     spectra_table(stars, observer).write(folder / "spectra.fits", overwrite=True)
     pictures = folder / "cutouts"
     pictures.mkdir(exist_ok=True)
     for number, star in enumerate(stars, 1):
+        observer.turn_to(star, 6)
         for band in star.pictures:
             where = (float(matched["ra"][number - 1]), float(matched["dec"][number - 1]))
             picture(star, band, observer, *where).writeto(pictures / f"{name_of(number)}_{band}.fits", overwrite=True)
