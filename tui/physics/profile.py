@@ -14,7 +14,7 @@ from tui.physics.likelihood import residuals
 
 RISE_68 = 1.0  # of -2 ln L, two-sided 68.3 % (Wilks 1938)
 RISE_95 = 2.71  # one-sided 95 % at a bound
-TRIES = 7
+TRIES = 6
 CLOSE = 0.03  # of the square root of the rise
 FARTHER = (1.6, 2.6, 4.5)  # times the first crossing: where a further dip is looked for
 
@@ -102,7 +102,7 @@ class _Ray:
         held = np.zeros((some.size, WIDTH), bool)
         held[place, column] = True
         part, errors = self.batch.problem.take(row), self.batch.errors.take(row)
-        cost = descend(part, self.batch.kit, errors, start, held=held, steps=6, tolerance=1e-2).cost
+        cost = descend(part, self.batch.kit, errors, start, held=held, steps=5, tolerance=1e-2).cost
         return np.sqrt(np.maximum(cost - self.batch.cost[row], 0.0) / self.goal[some])
 
 
@@ -110,20 +110,21 @@ def _reach(ray: _Ray, room: FloatArray, scale: FloatArray) -> FloatArray:
     """Distance (K,) from the best value beyond which the profile stays above the goal, or `room`."""
     guess = np.where(np.isfinite(scale) & (scale > 0), scale * np.sqrt(ray.goal), room / 20)
     everyone = np.arange(room.size)
-    zero, nothing = np.zeros(room.size), np.full(room.size, np.nan)
-    step = _cross(ray, everyone, np.minimum(guess, room), (zero, zero), (nothing, nothing), room)
-    for factor in FARTHER:  # chi-square may dip again beyond: the interval is the hull of all that is allowed
-        far = np.minimum(step * factor, room)
-        some = np.flatnonzero(far > step * 1.05)
-        if not some.size:
-            continue
-        root = ray.root(some, far[some])
-        inside = root < 1.0
-        some, root = some[inside], root[inside]
-        if some.size:
-            edge = np.full(some.size, np.nan)
-            onward = np.minimum(far[some] * 1.3, room[some])
-            step[some] = _cross(ray, some, onward, (far[some], root), (edge, edge), room[some])
+    zero, unknown = np.zeros(room.size), np.full(room.size, np.nan)
+    step = _cross(ray, everyone, np.minimum(guess, room), (zero, zero), (unknown, unknown), room)
+    far = np.minimum(step * np.array(FARTHER)[:, None], room)  # (F, K)
+    asked = np.flatnonzero((far > step * 1.05).ravel())
+    if not asked.size:
+        return step
+    root = np.full(far.shape, np.inf)
+    root.ravel()[asked] = ray.root(asked % room.size, far.ravel()[asked])
+    inside = root < 1.0
+    some = np.flatnonzero(inside.any(axis=0))  # chi-square dips again beyond: the interval is the hull of what is allowed
+    if some.size:
+        last = len(FARTHER) - 1 - inside[::-1, some].argmax(axis=0)
+        start, nothing = far[last, some], np.full(some.size, np.nan)
+        onward = np.minimum(start * 1.3, room[some])
+        step[some] = _cross(ray, some, onward, (start, root[last, some]), (nothing, nothing), room[some])
     return step
 
 
