@@ -18,7 +18,15 @@ from tui.model import Candidate, plain
 from tui.store import deriving, sides
 from tui.store.connect import immediate
 from tui.store.loads import Loads
-from tui.store.measurements import Row, Series, all_series, insert_measurements, measurement_values, short_digest
+from tui.store.measurements import (
+    Row,
+    Series,
+    all_series,
+    insert_measurements,
+    measured,
+    measurement_values,
+    short_digest,
+)
 from tui.store.names import id_of, normal_name
 from tui.store.records import LoadCounts, LoadRecord
 
@@ -72,10 +80,10 @@ def save_chunk(
         sides_added = add_sides(connection, candidate_id, record, loads)
         totals["side_tables"] += sides_added
         past = series.setdefault(candidate_id, Series())
-        measured = add_measurements(connection, candidate_id, record, past, loads, totals)
-        if is_new or added or sides_added or measured:
+        new = add_measurements(connection, candidate_id, record, past, loads, totals)
+        if is_new or added or sides_added or new:
             changed.add(candidate_id)
-    refresh_inputs(connection, sorted(changed))
+    refresh_inputs(connection, sorted(changed), series)
 
 
 def add_facts(
@@ -118,7 +126,8 @@ def add_measurements(
     for measurement in record.candidate.measurements:
         values = measurement_values(measurement)
         digest = values[3]
-        verdict = series.verdict(measurement, digest)
+        what = measured(measurement)
+        verdict = series.verdict(measurement, digest, what)
         counted = {"new": "measurements", "correction": "corrections", "repeat": "repeats", "same": "same"}[verdict]
         totals[counted] += 1
         if verdict == "same":
@@ -127,30 +136,38 @@ def add_measurements(
         past = series.newest.get((measurement.band, measurement.source, measurement.epoch))
         if past is not None and past.load_id in loads.ids:  # two versions in one load: the later line is the newer
             load_id = loads.id_at(loads.ids.index(past.load_id) + 1)
-        series.add(Row(loads.utc, load_id, digest, measurement))
+        series.add(Row(loads.utc, load_id, digest, measurement), what)
         rows.append((candidate_id, load_id, *values))
     insert_measurements(connection, rows)
     return len(rows)
 
 
-def refresh_inputs(connection: sqlite3.Connection, ids: Sequence[int]) -> None:
-    """Write the current version and the input digest of some candidates, from all rows on file."""
+def refresh_inputs(
+    connection: sqlite3.Connection, ids: Sequence[int], series: Mapping[int, Series] | None = None
+) -> None:
+    """Write the current version and the input digest of some candidates, from all rows on file.
+
+    Args:
+        series: the measurements of all of them, where they are at hand; else they are read.
+    """
     for page in pages(ids):
-        states = input_states(connection, page)
+        states = input_states(connection, page, series)
         rows = [(versions[-1][2] if versions else "", digest, key) for key, versions, digest in states]
         connection.executemany("UPDATE candidate SET current_version = ?, input_digest = ? WHERE id = ?", rows)
 
 
-def input_states(connection: sqlite3.Connection, ids: Sequence[int]) -> Iterator[tuple[int, list[tuple], str]]:
+def input_states(
+    connection: sqlite3.Connection, ids: Sequence[int], series: Mapping[int, Series] | None = None
+) -> Iterator[tuple[int, list[tuple], str]]:
     """(id, versions of facts in order, input digest) of some candidates."""
     versions = versions_of(connection, ids)
-    series = all_series(connection, ids)
+    series = all_series(connection, ids) if series is None else series
     sets = {table: sides.all_sets(connection, table, ids) for table in sides.SET_TABLES}
     for candidate_id in ids:
-        measured = series[candidate_id].current() if candidate_id in series else []
+        today = series[candidate_id].current() if candidate_id in series else []
         content: dict[str, Any] = {
             "facts": merged_facts(versions.get(candidate_id, [])),
-            "measurements": [row.digest for row in measured],
+            "measurements": [row.digest for row in today],
         }
         for table, found in sets.items():
             by_source = found.get(candidate_id, {})

@@ -21,7 +21,9 @@ from tui.model import Measurement
 COLUMNS = (
     "band, source, epoch, digest, value, value_error, unit, flux_jy, error_jy, is_limit, nsigma, flags, exclude, note"
 )
-SAME_DIGITS = 9  # of flux and error: other units, same measurement, differ by rounding in the last bits only
+SAME_STEPS = 1e9  # of flux and error: other units, same measurement, differ by rounding in the last bits only
+SORTED = json.JSONEncoder(sort_keys=True)
+COMPACT = json.JSONEncoder(sort_keys=True, separators=(",", ":"), allow_nan=False)
 
 
 @dataclass(frozen=True, slots=True)
@@ -48,24 +50,25 @@ class Series:
         self.digests: set[str] = set()
         self.owners: dict[tuple[Any, ...], str] = {}  # what was measured -> the source that had it first
         for row in sorted(rows, key=lambda row: (row.utc, row.measurement.source, row.digest)):
-            if self.verdict(row.measurement, row.digest) != "same":
-                self.add(row)
+            what = measured(row.measurement)
+            if self.verdict(row.measurement, row.digest, what) != "same":
+                self.add(row, what)
 
-    def verdict(self, measurement: Measurement, digest: str) -> str:
-        """What it is to the rows there: `same`, `correction`, `repeat` or `new`."""
-        owner = self.owners.get(measured(measurement), measurement.source)
+    def verdict(self, measurement: Measurement, digest: str, what: tuple[Any, ...]) -> str:
+        """What it is to the rows there: `same`, `correction`, `repeat` or `new`; `what` is `measured` of it."""
+        owner = self.owners.get(what, measurement.source)
         if digest in self.digests or owner != measurement.source:
             return "same"
         if (measurement.band, measurement.source, measurement.epoch) in self.newest:
             return "correction"
         return "repeat" if measurement.band in self.bands else "new"
 
-    def add(self, row: Row) -> None:
+    def add(self, row: Row, what: tuple[Any, ...]) -> None:
         """Take in a row that is not the same as an earlier one."""
         self.newest[row.key] = row
         self.bands.add(row.measurement.band)
         self.digests.add(row.digest)
-        self.owners.setdefault(measured(row.measurement), row.measurement.source)
+        self.owners.setdefault(what, row.measurement.source)
 
     def current(self) -> list[Row]:
         """Today's measurements, by band, source and epoch."""
@@ -83,9 +86,12 @@ def measured(measurement: Measurement) -> tuple[Any, ...]:
     )
 
 
-def rounded(value: float) -> str:
-    """A number to the digits that tell measurements apart; NaN is equal to NaN here."""
-    return f"{value:.{SAME_DIGITS - 1}e}"
+def rounded(value: float) -> tuple[int, int] | None:
+    """A number to the precision that tells measurements apart; NaN is equal to NaN here."""
+    if not math.isfinite(value):
+        return None
+    mantissa, exponent = math.frexp(value)
+    return round(mantissa * SAME_STEPS), exponent
 
 
 def measurement_values(measurement: Measurement) -> tuple[Any, ...]:
@@ -98,7 +104,7 @@ def measurement_values(measurement: Measurement) -> tuple[Any, ...]:
         raise InputError(f"The flux in {measurement.band or 'a band'} is not a finite number; leave it out.")
     if not measurement.band:
         raise InputError("A measurement needs a band; this one has none.")
-    flags = json.dumps({str(key): str(text) for key, text in measurement.flags.items()}, sort_keys=True)
+    flags = SORTED.encode({str(key): str(text) for key, text in measurement.flags.items()})
     rest = (
         finite(measurement.value),
         finite(measurement.value_error),
@@ -122,8 +128,7 @@ def finite(value: float) -> float | None:
 
 def short_digest(value: Any) -> str:
     """The first 128 bits of the SHA-256 of a value's JSON text, 32 hex digits."""
-    text = json.dumps(value, sort_keys=True, separators=(",", ":"), allow_nan=False)
-    return hashlib.sha256(text.encode("ascii")).hexdigest()[:32]
+    return hashlib.sha256(COMPACT.encode(value).encode("ascii")).hexdigest()[:32]
 
 
 def from_row(row: Sequence[Any]) -> Row:
