@@ -31,6 +31,7 @@ if TYPE_CHECKING:
 READER_ONLY = "you read without a handle. To rule: plainlight join QUEUE HANDLE"
 WAITING = "computing the evidence: rulings open when the numbers are here"
 SPLIT = "The rulings on this check are split: page 8 shows them side by side, and you may rule once more."
+FACTS = ("ra", "dec", "parallax", "parallax_error", "ruwe", "sp_type", "otype", "age_myr", "logg", "av_max")
 KEY_ROWS = 2
 
 
@@ -177,12 +178,15 @@ def points_table(walk: Walk, width: int) -> list[Row]:
 
 
 def facts_rows(walk: Walk, width: int) -> list[Row]:
-    """The catalogues' facts in a few lines."""
+    """The facts that are asked for most, in a few lines; the others stand on their own page."""
     facts = walk.loaded.candidate.facts
-    text = "   ".join(
-        f"{safe(key)} {number(value, 6) if isinstance(value, float) else safe(value)}" for key, value in facts.items()
-    )
-    return [row((" facts", "head")), *([*row(" "), *line] for line in paragraph(text, width - 2)[:8])] if text else []
+    said = [
+        f"{safe(key)} {number(facts[key], 6) if isinstance(facts[key], float) else safe(facts[key])}"
+        for key in FACTS
+        if facts.get(key) not in (None, "")
+    ]
+    lines = paragraph("   ".join(said), width - 2)[:6] if said else []
+    return [row((" facts", "head")), *([*row(" "), *line] for line in lines)] if lines else []
 
 
 def _all_checks(walk: Walk, width: int) -> list[Row]:

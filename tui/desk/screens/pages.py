@@ -25,23 +25,26 @@ class Page:
 
 
 def facts_page(walk: Walk, width: int, height: int) -> list[Row]:
-    """What the catalogues say of the star, and what this check found beside its fits."""
-    candidate = walk.loaded.candidate
-    rows = [_head("facts of the catalogues")]
-    rows += _pairs(candidate.facts, width) or [_quiet("none beside the measurements")]
+    """What this check found beside its fits, other sources near the star, and what the catalogues say of it."""
+    rows: list[Row] = []
     own = walk.own_evidence
     if own is not None:
-        rows += [[], _head(f"what the check {CHECK_TITLES[walk.check]} found"), *_pairs(own.facts, width)]
+        rows += [_head(f"what the check {CHECK_TITLES[walk.check]} found")]
         rows.append(row(("  adequate  ", "quiet"), adequate_word(own)))
         for caution in own.cautions:
-            rows += [[*row(("  caution  ", "caution")), *line] for line in paragraph(caution, width - 12)]
-    rows += [[], _head("other sources near it")]
-    for neighbour in candidate.neighbours:
+            rows += [[*row(("  caution   ", "caution")), *line] for line in paragraph(caution, width - 12)]
+        rows += [*_pairs(own.facts, width), []]
+    rows += [_head("other sources near it"), *_neighbour_rows(walk, width), [], _head("facts of the catalogues")]
+    return rows + (_pairs(walk.loaded.candidate.facts, width) or [_quiet("none beside the measurements")])
+
+
+def _neighbour_rows(walk: Walk, width: int) -> list[Row]:
+    rows: list[Row] = []
+    for neighbour in sorted(walk.loaded.candidate.neighbours, key=lambda one: one.separation_arcsec):
         fluxes = ", ".join(f"{short_band(band)} {number(flux * 1e3)} mJy" for band, flux in neighbour.fluxes_jy.items())
         place = f"{neighbour.separation_arcsec:.1f} arcsec at {neighbour.position_angle_deg:.0f} deg"
-        text = f"{place}  {fluxes}  {safe(neighbour.source)}"
-        rows += paragraph(text, width, indent=4, lead="  ")
-    return rows if candidate.neighbours else [*rows, _quiet("none loaded")]
+        rows += paragraph(f"{place}  {fluxes}  {safe(neighbour.source)}", width, indent=4, lead="  ")
+    return rows or [_quiet("none loaded")]
 
 
 def measurements_page(walk: Walk, width: int, height: int) -> list[Row]:
@@ -68,10 +71,10 @@ def mixture_page(walk: Walk, width: int, height: int) -> list[Row]:
     if found.best is not None:
         rows += [*statistic_rows(width, found.best, None), []]
         rows += [_quiet("p is an upper bound: a refusal holds for every such mixture")]
-    witness = found.facts.get("witness")
-    if witness:
-        rows += [[], _head("witness"), *paragraph(_words(witness), width - 2)]
-    rows += [[], *_pairs({key: value for key, value in found.facts.items() if key != "witness"}, width)]
+    for key in ("sentence", "witness"):
+        if found.facts.get(key):
+            rows += [*paragraph(_words(found.facts[key]), width - 2, "strong" if key == "sentence" else ""), []]
+    rows += _pairs({key: value for key, value in found.facts.items() if key not in ("sentence", "witness")}, width)
     rows += [line for caution in found.cautions for line in paragraph(caution, width - 2, "caution")]
     return [
         *rows,
@@ -215,11 +218,13 @@ def _quiet(text: str) -> Row:
 
 def _pairs(facts: Mapping[str, Any], width: int) -> list[Row]:
     """Facts by name, in as many columns as fit."""
-    lines = [(safe(key).replace("_", " "), _words(value)) for key, value in facts.items() if value not in (None, "")]
+    lines = [
+        (safe(key).replace("_", " "), _words(value)) for key, value in facts.items() if value not in (None, "", [], {})
+    ]
     size = max((len(key) for key, _ in lines), default=0)
     rows: list[Row] = []
     for key, text in lines:
-        block = paragraph(text, max(10, width - size - 4))
+        block = paragraph(text, max(10, width - size - 4), indent=2)
         heads = [f"  {key:<{size}}  "] + [" " * (size + 4)] * (len(block) - 1)
         rows += [[*row((head, "quiet")), *line] for head, line in zip(heads, block, strict=True)]
     return rows
@@ -231,10 +236,13 @@ def _words(value: Any) -> str:
         return "yes" if value else "no"
     if isinstance(value, float):
         return f"{value:.8g}"
+    if isinstance(value, Mapping) and "meaning" in value:
+        told = [_words(item) for key, item in value.items() if key != "meaning" and item not in (None, "")]
+        return f"{safe(value['meaning'])} ({', '.join(told)})"
     if isinstance(value, Mapping):
         return ", ".join(f"{safe(key)} {_words(item)}" for key, item in value.items())
     if isinstance(value, (list, tuple)):
-        return ", ".join(_words(item) for item in value)
+        return ("\n" if any(isinstance(item, Mapping) for item in value) else ", ").join(_words(item) for item in value)
     return safe(value)
 
 

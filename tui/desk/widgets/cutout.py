@@ -16,7 +16,7 @@ from tui.workflow.records import Cutout
 HALF_BLOCK = "\u2580"
 DENSITY = " .:-=+*#%@"
 RING = (242, 207, 99)
-MOST = 48  # columns of one picture: larger shows nothing more of a small cutout
+MOST = 96  # columns of one picture: larger shows nothing more of a small cutout
 
 
 @dataclass(frozen=True, slots=True)
