@@ -9,9 +9,9 @@ import numpy as np
 
 from tui.model import Candidate, Evidence, FloatArray, Settings
 from tui.physics.cone import Bound, p_bound, whiten
-from tui.physics.cone_errors import ErrorModel, consistent_bound
+from tui.physics.cone_errors import ErrorModel, consistent_bound, widened, widened
 from tui.physics.generators import Generators, build_generators
-from tui.physics.photometry import quadrature
+from tui.physics.photometry import is_narrow, quadrature
 from tui.physics.problem import Problem, build_problem
 from tui.physics.templates import Templates
 
@@ -91,7 +91,7 @@ def assess_problem(
         columns = np.flatnonzero(used[rows].any(axis=0))
         place = {name: index for index, name in enumerate(templates.names)}
         generators = _through(templates, tuple(place[problem.templates.names[column]] for column in columns))
-        bound = consistent_bound(generators, _narrow(errors, rows, columns), enough)
+        bound = consistent_bound(generators, _narrow(errors, rows, columns), settings.p_min, enough)
         for turn, row in enumerate(rows):
             out[row] = _solved(problem, row, columns, bound, turn, generators, settings, notes[row])
     return [one for one in out if one is not None]
@@ -100,7 +100,7 @@ def assess_problem(
 @lru_cache(maxsize=2)
 def generators_for(templates: Templates) -> Generators:
     """All columns through the bands of `templates`; about a second, kept for the last two templates."""
-    rules = [quadrature(band, NODES) for band in templates.bands]
+    rules = [quadrature(band, None if is_narrow(band) else NODES) for band in templates.bands]
     star = templates.star
     teff_k = np.exp(star.low + star.step * np.arange(star.ln_flux.shape[0]))
     return build_generators(rules, teff_k, star.ln_flux, templates.law)
@@ -120,7 +120,7 @@ def error_model(problem: Problem) -> ErrorModel:
         detected=problem.detected,
         limited=problem.limited,
         floor=templates.floor,
-        spread=np.nan_to_num(templates.spread),
+        spread=widened(np.nan_to_num(templates.spread), templates.star.step),
         ln_t=(templates.star.low, templates.star.step),
         common=problem.common,
     )

@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from tui.model import FloatArray
-from tui.physics.cone import EMPTY, BoolArray, Bound, Fluxes, mixture_bound, p_bound, whiten
+from tui.physics.cone import EMPTY, BoolArray, Bound, Fluxes, certificate, mixture_bound, p_bound, whiten
 from tui.physics.generators import Generators
 from tui.physics.pricing import IntArray
 
@@ -15,6 +16,8 @@ PASSES = 8
 SETTLED = 0.1  # chi-square by which the last change of the errors may still have moved the mixture, or
 SETTLED_SHARE = 0.003  # this share of chi-square, where that is larger: far beyond any doubt
 MONOTONE = 3  # from this pass on errors only grow, so that none swing
+WIDEN = 1.25  # in temperature, the reach of each star's spread towards hotter ones
+WIDEN = 1.25  # in temperature, the reach of each star's spread towards hotter ones
 FIRST_K = 6000.0  # temperature whose spread is taken before any mixture is known
 
 
@@ -56,10 +59,10 @@ class ErrorModel:
             covariance = covariance + np.einsum("kib,kic->kbc", shared, shared)
         return Fluxes(np.where(used, self.flux, 0.0), covariance, used, self.limited)
 
-    def first(self) -> Fluxes:
-        """Before any mixture: the measured fluxes are the model, and all of them starlight."""
+    def first(self, temperature_k: float = FIRST_K) -> Fluxes:
+        """Before any mixture: the measured fluxes are the model, and all of them light of such stars."""
         model = np.where(self.detected, np.maximum(self.flux, 0.0), 0.0)
-        return self.fluxes(model, model * self.spread_at(np.array(FIRST_K)))
+        return self.fluxes(model, model * self.spread_at(np.array(temperature_k)))
 
 
 def spread_flux(generators: Generators, errors: ErrorModel, index: IntArray, scale: FloatArray) -> FloatArray:
@@ -69,28 +72,52 @@ def spread_flux(generators: Generators, errors: ErrorModel, index: IntArray, sca
     return np.einsum("kmb,kmb,km->kb", generators.column(real), errors.spread_at(star_k), scale)
 
 
-def consistent_bound(generators: Generators, errors: ErrorModel, enough: float) -> Bound:
+def widened(spread: FloatArray, step: float) -> FloatArray:
+    """Spread over ln T, each value the largest down to T/WIDEN: dust makes a cool star pass for one so much hotter."""
+    count = int(round(np.log(WIDEN) / step)) + 1
+    padded = np.pad(spread, ((count - 1, 0), (0, 0)), mode="edge")
+    return np.lib.stride_tricks.sliding_window_view(padded, count, axis=0).max(axis=2)
+
+
+def cool_limits(errors: ErrorModel) -> list[float]:
+    """Temperatures (K) above which the spread of some band is lower by a third or more, the coolest first."""
+    before, after = errors.spread[:-1], errors.spread[1:]
+    steps = np.flatnonzero((after < before * (2 / 3)).any(axis=1))
+    return [float(np.exp(errors.ln_t[0] + step * errors.ln_t[1])) for step in steps]
+
+
+def widened(spread: FloatArray, step: float) -> FloatArray:
+    """Spread over ln T, each value the largest down to T/WIDEN: dust makes a cool star pass for one so much hotter."""
+    count = int(round(np.log(WIDEN) / step)) + 1
+    padded = np.pad(spread, ((count - 1, 0), (0, 0)), mode="edge")
+    return np.lib.stride_tricks.sliding_window_view(padded, count, axis=0).max(axis=2)
+
+
+def cool_limits(errors: ErrorModel) -> list[float]:
+    """Temperatures (K) above which the spread of some band is lower by a third or more, the coolest first."""
+    before, after = errors.spread[:-1], errors.spread[1:]
+    steps = np.flatnonzero((after < before * (2 / 3)).any(axis=1))
+    return [float(np.exp(errors.ln_t[0] + step * errors.ln_t[1])) for step in steps]
+
+
+def consistent_bound(generators: Generators, errors: ErrorModel, refuse: float, enough: float) -> Bound:
     """`mixture_bound` with the errors of its own best mixture, iterated until chi-square moves by less than 0.1.
 
-    A candidate is left as natural (`at_most`) as soon as one mixture, with its own errors, has p >= `enough`.
+    A candidate is left as natural (`at_most`) as soon as one mixture, with its own errors, has p >= `enough`. What a
+    mixture's errors are depends on its stars, so for those with p < `refuse` mixtures of cool stars, which scatter
+    more, are tried too, unless the proof found holds with such errors as well.
     """
-    rows = np.arange(len(errors.flux))
     work = _Work(generators, errors, enough)
-    work.solve(rows, errors.first(), None, "coarse")
-    for depth in ("coarse", "middle", "fine"):
-        open_rows = np.flatnonzero(~work.natural)
-        for number in range(PASSES):
-            if not len(open_rows):
-                break
-            fluxes = work.errors_of(open_rows, grow=number >= MONOTONE)
-            chi2, natural = work.judge(open_rows, fluxes)
-            moved = np.abs(chi2 - work.bound.feasible[open_rows]) >= np.maximum(SETTLED, SETTLED_SHARE * chi2)
-            again = ~natural & (moved | ((depth != "coarse") & (number == 0)))
-            work.natural[open_rows[~again & work.left[open_rows]]] = True
-            open_rows = open_rows[again]
-            if len(open_rows):
-                work.solve(open_rows, fluxes.take(again), work.pool(open_rows), depth)
-    work.natural |= work.left & ~np.isfinite(work.bound.gap)
+    work.settle(errors.first(), ("coarse", "middle", "fine"))
+    for limit_k in cool_limits(errors):
+        rows = np.flatnonzero(~work.natural & (work.bound.p < refuse))
+        fluxes = errors.take(rows).first(limit_k)
+        rows = rows[work.proven(rows, fluxes) >= refuse]
+        if len(rows):
+            local = errors.take(rows)
+            again = _Work(generators.cooler(limit_k), local, enough)
+            again.settle(local.first(limit_k), ("coarse", "middle"), hopeless=refuse)
+            work.adopt(rows, again)
     return work.bound
 
 
@@ -110,6 +137,76 @@ class _Work:
             zero + np.inf, np.zeros((count, size)), np.zeros((count, size)),
             np.full((count, 1), EMPTY), np.zeros((count, 1)), errors.first().covariance,
         )  # fmt: skip
+
+    def proven(self, rows: IntArray, fluxes: Fluxes) -> FloatArray:
+        """p by the weights found, which hold for every mixture, with other errors."""
+        white = whiten(fluxes)
+        chi2, _ = certificate(white.flux, fluxes.covariance, self.bound.weights[rows], white.weight, np.zeros(len(rows)))
+        return p_bound(chi2, white.points, np.sum(white.target**2, axis=1))
+
+    def settle(self, fluxes: Fluxes, depths: Sequence[str], hopeless: float = 0.0) -> None:
+        """Solve on each grid in turn until the errors no longer move chi-square.
+
+        A candidate is given up where half the chi-square of a coarser grid would still have p < `hopeless`.
+        """
+        self.solve(np.arange(len(self.natural)), fluxes, None, "coarse")
+        for depth in depths:
+            rows = np.flatnonzero(~self.natural)
+            if hopeless and depth != "coarse":
+                rows = rows[p_bound(self.bound.feasible[rows] / 2, self.bound.points[rows], np.inf) >= hopeless]
+            for number in range(PASSES):
+                if not len(rows):
+                    break
+                fluxes = self.errors_of(rows, grow=number >= MONOTONE)
+                chi2, natural = self.judge(rows, fluxes)
+                moved = np.abs(chi2 - self.bound.feasible[rows]) >= np.maximum(SETTLED, SETTLED_SHARE * chi2)
+                again = ~natural & (moved | ((depth != "coarse") & (number == 0)))
+                self.natural[rows[~again & self.left[rows]]] = True
+                rows = rows[again]
+                if len(rows):
+                    self.solve(rows, fluxes.take(again), self.pool(rows), depth)
+        self.natural |= self.left & ~np.isfinite(self.bound.gap)
+
+    def adopt(self, rows: IntArray, other: _Work) -> None:
+        """Take over those of another solve of `rows` that came out natural."""
+        found = np.flatnonzero(other.natural)
+        self.natural[rows[found]] = True
+        self.put(rows[found], other.bound, found)
+
+    def proven(self, rows: IntArray, fluxes: Fluxes) -> FloatArray:
+        """p by the weights found, which hold for every mixture, with other errors."""
+        white = whiten(fluxes)
+        chi2, _ = certificate(white.flux, fluxes.covariance, self.bound.weights[rows], white.weight, np.zeros(len(rows)))
+        return p_bound(chi2, white.points, np.sum(white.target**2, axis=1))
+
+    def settle(self, fluxes: Fluxes, depths: Sequence[str], hopeless: float = 0.0) -> None:
+        """Solve on each grid in turn until the errors no longer move chi-square.
+
+        A candidate is given up where half the chi-square of a coarser grid would still have p < `hopeless`.
+        """
+        self.solve(np.arange(len(self.natural)), fluxes, None, "coarse")
+        for depth in depths:
+            rows = np.flatnonzero(~self.natural)
+            if hopeless and depth != "coarse":
+                rows = rows[p_bound(self.bound.feasible[rows] / 2, self.bound.points[rows], np.inf) >= hopeless]
+            for number in range(PASSES):
+                if not len(rows):
+                    break
+                fluxes = self.errors_of(rows, grow=number >= MONOTONE)
+                chi2, natural = self.judge(rows, fluxes)
+                moved = np.abs(chi2 - self.bound.feasible[rows]) >= np.maximum(SETTLED, SETTLED_SHARE * chi2)
+                again = ~natural & (moved | ((depth != "coarse") & (number == 0)))
+                self.natural[rows[~again & self.left[rows]]] = True
+                rows = rows[again]
+                if len(rows):
+                    self.solve(rows, fluxes.take(again), self.pool(rows), depth)
+        self.natural |= self.left & ~np.isfinite(self.bound.gap)
+
+    def adopt(self, rows: IntArray, other: _Work) -> None:
+        """Take over those of another solve of `rows` that came out natural."""
+        found = np.flatnonzero(other.natural)
+        self.natural[rows[found]] = True
+        self.put(rows[found], other.bound, found)
 
     def pool(self, rows: IntArray) -> tuple[IntArray, FloatArray]:
         """The columns in use, to begin the next solve from."""
@@ -144,16 +241,18 @@ class _Work:
     def solve(self, rows: IntArray, fluxes: Fluxes, pool: tuple[IntArray, FloatArray] | None, depth: str) -> None:
         """Solve some candidates anew and note where they stand."""
         new = mixture_bound(self.generators, fluxes, self.enough, pool, depth)
+        self.left[rows] = new.at_most
+        self.put(rows, new, np.arange(len(rows)))
+
+    def put(self, rows: IntArray, new: Bound, places: IntArray) -> None:
+        """Note what `new` says of its `places` as that of `rows`."""
         old = self.bound
         width = max(old.index.shape[1], new.index.shape[1])
         index = np.pad(old.index, ((0, 0), (0, width - old.index.shape[1])), constant_values=EMPTY)
         scale = np.pad(old.scale, ((0, 0), (0, width - old.scale.shape[1])))
         index[rows], scale[rows] = EMPTY, 0.0
-        index[rows[:, None], np.arange(new.index.shape[1])] = new.index
-        scale[rows[:, None], np.arange(new.index.shape[1])] = new.scale
-        self.left[rows] = new.at_most
+        index[rows[:, None], np.arange(new.index.shape[1])] = new.index[places]
+        scale[rows[:, None], np.arange(new.index.shape[1])] = new.scale[places]
         for name in ("chi2", "feasible", "p", "gap", "weights", "model", "covariance"):
-            getattr(old, name)[rows] = getattr(new, name)
-        self.bound = Bound(
-            old.chi2, old.feasible, old.points, old.p, self.natural, old.gap, old.weights, old.model, index, scale, old.covariance
-        )
+            getattr(old, name)[rows] = getattr(new, name)[places]
+        self.bound = replace(old, at_most=self.natural, index=index, scale=scale)

@@ -1,0 +1,128 @@
+"""The mixture bound on candidates: what nature can make is not refused, what it cannot make is."""
+
+from __future__ import annotations
+
+import json
+
+import numpy as np
+import pytest
+
+from tests.bench.natural_mixtures import FOURTEEN, S1, Sky, in_order, observed, random_mixture
+from tui.checks import mixture
+from tui.model import Candidate, Evidence, Fit, Measurement, Settings, Spectrum, canonical_json
+from tui.physics.generators import drude
+from tui.physics.planck import planck_jy
+from tui.workflow.templates import build
+
+
+@pytest.fixture(scope="module")
+def templates():
+    return build(Settings(), {})
+
+
+@pytest.fixture(scope="module")
+def sky(templates):
+    return Sky(templates, in_order(templates, FOURTEEN))
+
+
+def plain_candidate(sky, flux, error=0.01, **more):
+    rows = tuple(Measurement(name, one, error * one) for name, one in zip(sky.names, flux, strict=True))
+    return Candidate("c", rows, **more)
+
+
+def notched(sky):
+    """A 5772 K star with two thirds of its light gone in H."""
+    return sky.star(5772.0) * np.where(np.array(sky.names) == "H", 1 / 3, 1.0)
+
+
+@pytest.mark.parametrize("common", [{}, {"Gaia": 0.02, "2MASS": 0.02, "WISE": 0.03}], ids=["floors", "common errors"])
+@pytest.mark.parametrize("names", [S1, FOURTEEN], ids=["ten bands", "fourteen bands"])
+def test_random_natural_mixtures_are_refused_no_more_than_nominal(templates, names, common):
+    sky, rng = Sky(templates, in_order(templates, names)), np.random.default_rng(2026)
+    stars = [
+        observed(rng, sky, *random_mixture(rng, sky), depth=10.0 ** rng.uniform(-4, -1.3), common=common) for _ in range(150)
+    ]
+    assert any(one.limit for star in stars for one in star.measurements)
+    evidence = mixture.assess(stars, templates, Settings(common=common))
+    refused = sum(one.adequate is False for one in evidence)
+    assert refused <= 5  # nominal 1.5 of 150; more than 5 has probability 0.004
+
+
+def test_ordinary_discs_are_not_refused(templates, sky):
+    star = sky.star(5772.0)
+    spectra = [
+        lambda w: planck_jy(w, 200.0) * np.minimum(1, 10 / w),  # beta 1
+        lambda w: planck_jy(w, 300.0) * (0.3 + 2 * drude(w, np.array([9.7]), np.array([0.25]))[0]),  # silicates
+        lambda w: planck_jy(w, 350.0) * (0.1 + drude(w, np.array([11.3]), np.array([0.03]))[0]),  # PAH
+    ]
+    discs = [star + 6 * star[-1] * flux / flux[-1] for flux in map(sky.seen, spectra)]
+    evidence = mixture.assess([plain_candidate(sky, flux) for flux in discs], templates, Settings())
+    assert [one.adequate for one in evidence] == [True, True, True]
+
+
+def test_a_notch_is_refused_with_its_witness(templates, sky):
+    flux = notched(sky)
+    (found,) = mixture.assess([plain_candidate(sky, flux)], templates, Settings())
+    facts = found.facts
+    assert found.adequate is False and found.kind == "mixture" and found.bands == sky.names
+    assert facts["points"] == 14 and facts["p"] < 1e-4 and not facts["at_most"]
+    assert facts["chi2"] <= facts["chi2_found"]
+    assert min(facts["witness"], key=facts["witness"].get) == "H"
+    assert "too bright against H" in facts["sentence"]
+    assert "no mixture of dwarf photospheres and (modified) black bodies" in facts["sentence"]
+    assert json.loads(canonical_json(facts))["parts"]
+
+
+def test_weights_add_up_to_the_root_of_chi_square():
+    covariance = np.array([[0.04, 0.01], [0.01, 0.09]])
+    v = np.array([2.0, -1.0])
+    weights = mixture.witness(["J", "H"], v, covariance)
+    flux, sigma = np.array([5.0, 1.0]), np.sqrt(np.diag(covariance))
+    total = sum(weights[name] * one / s for name, one, s in zip(["J", "H"], flux, sigma, strict=True))
+    assert total == pytest.approx(v @ flux / np.sqrt(v @ covariance @ v))
+
+
+def test_a_fit_that_lies_in_the_cone_saves_the_solve(templates, sky):
+    (found,) = mixture.assess([plain_candidate(sky, notched(sky))], templates, Settings(), [9.5])
+    assert found.adequate is True and found.facts["at_most"] and found.facts["chi2"] == 9.5
+    assert "at most 9.5" in found.facts["sentence"] and found.facts["witness"] == {}
+
+
+def test_only_fits_made_of_natural_thermal_sources_count_as_known():
+    def evidence(model, chi2):
+        return Evidence("dust", 1, True, fits=(Fit(model, chi2, 5, 0.5, 0.0, 0.0),))
+
+    known = mixture.known_from({"dust": evidence("star + dust", 8.0), "blend": evidence("star + galaxy", 2.0)})
+    assert known == 8.0
+    assert np.isnan(mixture.known_from({"blend": evidence("star + galaxy", 2.0)}))
+
+
+def test_one_band_tests_nothing(templates):
+    lone = Candidate("c", (Measurement("J", 1.0, 0.02),))
+    (found,) = mixture.assess([lone], templates, Settings())
+    assert found.adequate is None and "1" in found.facts["sentence"] and "chi2" not in found.facts
+
+
+def test_order_and_mates_do_not_matter(templates, sky):
+    stars = [plain_candidate(sky, notched(sky)), plain_candidate(sky, sky.star(4000.0, 2.0)), Candidate("none")]
+    together = mixture.assess(stars, templates, Settings())
+    alone = [mixture.assess([star], templates, Settings())[0] for star in stars]
+    assert [one.adequate for one in together] == [False, True, None] == [one.adequate for one in alone]
+    assert together[0].facts["chi2"] == pytest.approx(alone[0].facts["chi2"], rel=0.01)
+
+
+def test_a_limit_can_be_what_refuses(templates, sky):
+    flux = sky.star(5772.0)
+    rows = [
+        Measurement(name, one / 4, np.nan, limit=True, nsigma=3.0) if name == "H" else Measurement(name, one, 0.01 * one)
+        for name, one in zip(sky.names, flux, strict=True)
+    ]
+    (found,) = mixture.assess([Candidate("c", tuple(rows))], templates, Settings())
+    assert found.adequate is False and "the limit in H" in found.facts["sentence"] and found.cautions
+
+
+def test_a_spectrum_is_left_out_and_said_so(templates, sky):
+    wave = np.linspace(0.5, 0.6, 5)
+    star = plain_candidate(sky, sky.star(5772.0), spectrum=Spectrum(wave, wave, wave))
+    (found,) = mixture.assess([star], templates, Settings(), [1.0])
+    assert any("spectrum" in caution for caution in found.cautions)
