@@ -2,14 +2,309 @@
 
 from __future__ import annotations
 
+import threading
+from array import array
+
+import pytest
+from rich.cells import cell_len
+
 from tui.desk.widgets.candidate_list import CandidateList
+from tui.desk.widgets.described import Described
+from tui.errors import StoreError
+from tui.model import CHECKS
+
+SIZES = [(80, 24), (120, 40), (200, 60)]
 
 
-def test_first_screen_lists_every_candidate_most_odd_first(fake_session, drive, screen_text):
+def lines_of(text: str) -> list[str]:
+    """The lines that list a candidate."""
+    return [line for line in text.splitlines() if ".sealed" in line and (" 0/5" in line or " 0/4" in line)]
+
+
+@pytest.mark.parametrize("size", SIZES, ids=str)
+def test_the_queue_looks_so(fake_session, drive, screen_text, snapshot, size):
+    fake_session.place = ("SM-0003", "blend")
+
     async def steps(app, pilot):
-        print(screen_text(app))
+        app.screen._settle.stop()
+        await app.screen.describe(app.screen.query_one(CandidateList).chosen)
+        await pilot.pause()
+        snapshot(f"queue-{size[0]}x{size[1]}", screen_text(app))
+
+    drive(fake_session, steps, size=size)
+
+
+@pytest.mark.parametrize("size", [(80, 24), (300, 90)], ids=str)
+def test_hostile_and_wide_names_keep_the_columns_in_line(fake_session, drive, screen_text, settled, size):
+    async def steps(app, pilot):
+        await pilot.press("end")
+        await settled(app, pilot)
+        rows = lines_of(screen_text(app))
+        assert len(rows) >= 8
+        starts = {cell_len(row[: row.index(".sealed")]) for row in rows}
+        assert len(starts) == 1
+        assert not any(ord(character) < 32 or 0x7F <= ord(character) < 0xA0 for row in rows for character in row)
+
+    drive(fake_session, steps, size=size)
+
+
+def test_markup_in_a_name_is_text_and_does_nothing(fake_session, drive, screen_text, settled):
+    async def steps(app, pilot):
+        await pilot.press("slash", *"click")
+        await settled(app, pilot)
+        await pilot.press("enter")
+        assert "[@click=app.exit]leave[/]" in screen_text(app) or "[@..eave[/]" in screen_text(app)
+        await pilot.click(CandidateList, offset=(4, 0))
+        assert app.is_running
+
+    drive(fake_session, steps)
+
+
+@pytest.mark.parametrize(("key", "check"), list(zip("sixbd", CHECKS, strict=True)))
+def test_a_checks_key_filters_by_it_and_once_more_shows_all(fake_session, drive, settled, key, check):
+    async def steps(app, pilot):
+        await pilot.press(key)
+        await settled(app, pilot)
+        listed = [row.states[check] for row in fake_session.rows(app.screen.query_one(CandidateList).ids)]
+        assert listed and set(listed) <= {"open", "split", "todo"}
+        await pilot.press(key)
+        await settled(app, pilot)
+        assert len(app.screen.query_one(CandidateList).ids) == len(fake_session.names)
+
+    drive(fake_session, steps)
+
+
+def test_counts_stand_over_the_columns_and_the_active_one_in_brackets(fake_session, drive, screen_text, settled):
+    async def steps(app, pilot):
+        wanted = fake_session.counts()
+        await pilot.press("x")
+        await settled(app, pilot)
         text = screen_text(app)
-        assert "> SM-0001" in text
-        assert "60" in text
+        assert f"[{wanted['unresolved:extinction']}]" in text
+        assert f"{wanted['needs_me']} NEED YOU" in text
+
+    drive(fake_session, steps)
+
+
+def test_a_filter_that_lists_nothing_says_the_way_out(fake_session, drive, screen_text, settled):
+    fake_session.lets_through = lambda row, where: where.unresolved is None
+
+    async def steps(app, pilot):
+        await pilot.press("b")
+        await settled(app, pilot)
+        assert "Nothing to list: blend unresolved. 0 shows every candidate." in screen_text(app)
+        await pilot.press("0")
+        await settled(app, pilot)
+        assert "> SM-0001" in screen_text(app)
+
+    drive(fake_session, steps)
+
+
+def test_search_lists_names_that_begin_with_the_text_before_those_that_hold_it(fake_session, drive, settled):
+    fake_session.names[:0] = ["Z-0042", "0042-A"]
+
+    async def steps(app, pilot):
+        await pilot.press("slash", *"0042")
+        await settled(app, pilot)
+        found = [fake_session.names[i] for i in app.screen.query_one(CandidateList).ids]
+        assert found[:2] == ["0042-A", "Z-0042"] and "SM-0042" in found
+        await pilot.press("enter", "down", "down")
+        assert app.screen.query_one(CandidateList).chosen.name == "SM-0042"
+
+    drive(fake_session, steps)
+
+
+def test_letters_are_keys_again_after_a_search(fake_session, drive, settled):
+    async def steps(app, pilot):
+        await pilot.press("slash", *"sixbdq", "enter")
+        await settled(app, pilot)
+        assert app.screen.view.find == "sixbdq"
+        await pilot.press("s")
+        await settled(app, pilot)
+        assert app.screen.view.unresolved == "star" and not app.screen.view.find
+
+    drive(fake_session, steps)
+
+
+def test_orders_come_in_turn_and_can_be_turned_around(fake_session, drive, settled):
+    async def steps(app, pilot):
+        await pilot.press("o")
+        await settled(app, pilot)
+        names = [fake_session.names[i] for i in app.screen.query_one(CandidateList).ids]
+        assert names == sorted(names)
+        await pilot.press("O")
+        await settled(app, pilot)
+        names = [fake_session.names[i] for i in app.screen.query_one(CandidateList).ids]
+        assert names == sorted(names, reverse=True)
+
+    drive(fake_session, steps)
+
+
+def test_the_cursor_stays_on_its_candidate_when_the_order_changes(fake_session, drive, settled):
+    async def steps(app, pilot):
+        await pilot.press("down", "down", "down")
+        name = app.screen.query_one(CandidateList).chosen.name
+        await pilot.press("o")
+        await settled(app, pilot)
+        assert app.screen.query_one(CandidateList).chosen.name == name
+
+    drive(fake_session, steps)
+
+
+def test_ordering_is_done_in_another_thread(fake_session, drive):
+    async def steps(app, pilot):
+        assert fake_session.ordered_in[-1] != threading.get_ident()
+
+    drive(fake_session, steps)
+
+
+def test_others_rulings_show_within_a_second_or_so(fake_session, drive, settled):
+    async def steps(app, pilot):
+        for check in CHECKS:
+            fake_session.rule("SM-0001", check, "short")
+        fake_session.version += 1
+        app.screen.ordering_s = 0.0
+        app.screen.poll()
+        await settled(app, pilot)
+        assert app.screen.query_one(CandidateList).row_at(0).done
+
+    drive(fake_session, steps)
+
+
+def test_a_candidate_is_told_in_one_sentence(fake_session, drive):
+    async def steps(app, pilot):
+        row = app.screen.query_one(CandidateList).chosen
+        await app.screen.describe(row)
+        said = [text for text, _ in app.screen.query_one(Described).said]
+        assert said[0] == "SM-0001  9.1 sigma: W3 and W4 brighter than the star alone; 8 bands agree."
+        assert "What others ruled opens when you are done" in said[1]
+
+    drive(fake_session, steps)
+
+
+def test_next_for_me_claims_and_opens(fake_session, drive, settled):
+    opened = []
+
+    async def steps(app, pilot):
+        app.screen.open_candidate = opened.append
+        await pilot.press("m")
+        await settled(app, pilot)
+        assert opened == ["SM-0001"] and fake_session.claims == {"SM-0001"}
+
+    drive(fake_session, steps)
+
+
+def test_when_nothing_needs_me_it_says_so(fake_session, drive, screen_text, settled):
+    fake_session.claim_next = lambda skip=(): None
+
+    async def steps(app, pilot):
+        await pilot.press("m")
+        await settled(app, pilot)
+        assert "Nothing needs you now" in screen_text(app)
+
+    drive(fake_session, steps)
+
+
+def test_a_reader_without_a_handle_is_offered_no_work(reader_session, drive, screen_text, settled):
+    async def steps(app, pilot):
+        assert "next for me" not in screen_text(app) and "You are reading without a handle" in screen_text(app)
+        await pilot.press("m")
+        await settled(app, pilot)
+        assert "Without a handle nothing can need you. Join first" in screen_text(app)
+
+    drive(reader_session, steps)
+
+
+def test_a_fault_of_the_store_is_a_plain_line(fake_session, drive, screen_text, settled):
+    async def steps(app, pilot):
+        fake_session.fail = StoreError("saltmarsh.db is locked [/]; try again.")
+        await pilot.press("o")
+        await settled(app, pilot)
+        assert "saltmarsh.db is locked [/]; try again." in screen_text(app)
+        fake_session.fail = None
+        await pilot.press("o")
+        await settled(app, pilot)
+        assert "locked" not in screen_text(app)
+
+    drive(fake_session, steps)
+
+
+def test_the_queue_resumes_where_the_reviewer_was(fake_session, drive):
+    fake_session.place = ("SM-0030", "dust")
+
+    async def steps(app, pilot):
+        assert app.screen.query_one(CandidateList).chosen.name == "SM-0030"
+
+    drive(fake_session, steps)
+
+
+def test_the_first_run_is_told_what_this_is_and_later_ones_are_not(fake_session, drive, screen_text):
+    async def first(app, pilot):
+        assert "try to explain it away" in screen_text(app)
+
+    async def later(app, pilot):
+        assert "try to explain it away" not in screen_text(app)
+
+    drive(fake_session, first)
+    fake_session.place = ("SM-0001", "star")
+    drive(fake_session, later)
+
+
+def test_the_mouse_chooses_and_the_second_click_opens(fake_session, drive, settled):
+    opened = []
+
+    async def steps(app, pilot):
+        app.screen.open_candidate = opened.append
+        await pilot.click(CandidateList, offset=(5, 2))
+        assert app.screen.query_one(CandidateList).cursor == 2 and not opened
+        await pilot.click(CandidateList, offset=(5, 2))
+        await settled(app, pilot)
+        assert opened == ["SM-0003"]
+        await pilot.click("ColumnHead", offset=(29, 0))
+        await settled(app, pilot)
+        assert app.screen.view.unresolved == "star"
+
+    drive(fake_session, steps)
+
+
+def test_a_million_rows_are_drawn_line_by_line(million_session, drive, screen_text, settled):
+    async def steps(app, pilot):
+        candidates = app.screen.query_one(CandidateList)
+        assert len(candidates.ids) == 1_000_000
+        for key in ("end", "up", "home", "pagedown", "end"):
+            await pilot.press(key)
+            await settled(app, pilot)
+        assert "SM-0999999" in screen_text(app) and "1,000,000 of 1,000,000" in screen_text(app)
+        assert million_session.fetched < 2000
+
+    drive(million_session, steps)
+
+
+def test_typing_is_never_held_up_by_a_slow_search(million_session, drive, settled):
+    gate = threading.Event()
+
+    def slow(text, substring=False):
+        gate.wait(10)
+        return array("q", [7])
+
+    million_session.find = slow
+
+    async def steps(app, pilot):
+        await pilot.press("slash", *"sm")
+        assert app.screen.query_one("FindInput").value == "sm"
+        gate.set()
+        await settled(app, pilot)
+        assert list(app.screen.query_one(CandidateList).ids) == [7]
+
+    drive(million_session, steps)
+
+
+def test_a_row_gone_from_the_queue_is_a_plain_line(fake_session, drive, screen_text, settled):
+    async def steps(app, pilot):
+        candidates = app.screen.query_one(CandidateList)
+        candidates.fetch = lambda ids: []
+        candidates.forget_rows()
+        await settled(app, pilot)
+        assert "gone from the queue" in screen_text(app)
 
     drive(fake_session, steps)

@@ -59,6 +59,7 @@ class QueueBackground(DeskScreen[None]):
         self._listed: QueueView | None = None
         self._version = session.data_version()
         self._refreshed_at = 0.0
+        self._was_left = False
         self.wanted: str | None = None  # name to choose when the next list arrives
 
     def orient(self, is_new: bool) -> None:
@@ -161,5 +162,10 @@ class QueueBackground(DeskScreen[None]):
 
     def on_screen_resume(self) -> None:
         """Back from a candidate: what was ruled there shows here."""
-        if self.query("#list"):
+        if self._was_left:
+            self._was_left = False
             self.refresh_all()
+
+    def on_screen_suspend(self) -> None:
+        """Another screen lies over this one."""
+        self._was_left = True

@@ -1,0 +1,190 @@
+"""The app around the screens: keys, colours, sizes, help."""
+
+from __future__ import annotations
+
+import pytest
+from textual.color import Color
+
+from tui.desk.app import Desk
+from tui.desk.keys import PLACES, RESERVED, checked_keymap
+from tui.desk.screens.help import HelpScreen
+from tui.desk.screens.small import SmallScreen
+from tui.desk.theme import THEME_NAMES, theme_name, themes
+from tui.desk.widgets.candidate_list import CandidateList
+from tui.desk.widgets.pick_rows import PickRows
+from tui.errors import SettingError
+
+
+@pytest.mark.parametrize("name", THEME_NAMES)
+def test_every_theme_draws_every_screen(fake_session, drive, settled, name):
+    async def steps(app, pilot):
+        assert app.theme == theme_name(name)
+        for keys in (("down", "down", "v", "q"), ("y", "q"), ("question_mark", "q")):
+            await pilot.press(*keys)
+            await settled(app, pilot)
+
+    drive(fake_session, steps, theme=name)
+
+
+def test_colours_are_changed_by_a_key_and_named(fake_session, drive, screen_text):
+    async def steps(app, pilot):
+        await pilot.press("T")
+        await pilot.pause()
+        assert app.theme == theme_name("light") and "Colours: light" in screen_text(app)
+
+    drive(fake_session, steps)
+
+
+def contrast(one: Color, other: Color) -> float:
+    """WCAG 2.1, section 1.4.3: contrast ratio of two colours."""
+
+    def luminance(colour: Color) -> float:
+        parts = [part / 12.92 if part <= 0.03928 else ((part + 0.055) / 1.055) ** 2.4 for part in colour.normalized]
+        return 0.2126 * parts[0] + 0.7152 * parts[1] + 0.0722 * parts[2]
+
+    light, dark = sorted((luminance(one), luminance(other)), reverse=True)
+    return (light + 0.05) / (dark + 0.05)
+
+
+@pytest.mark.parametrize("theme", [theme for theme in themes() if not theme.ansi], ids=lambda theme: theme.name)
+def test_every_word_stands_out_from_every_ground(theme):
+    """WCAG 2.1, 1.4.3: 4.5 for text; 7 (1.4.6) in the theme of high contrast."""
+    words = {key: value for key, value in theme.variables.items()
+             if key.startswith(("state-", "attention", "quiet", "pull-", "series-"))}  # fmt: skip
+    grounds = (theme.background, theme.surface, theme.variables["cursor-row"])
+    for ground in grounds:
+        for key, colour in words.items():
+            ratio = contrast(Color.parse(colour), Color.parse(ground))
+            assert ratio >= (7 if theme.name == theme_name("contrast") else 4.5), (key, ground, ratio)
+
+
+def test_no_colour_leaves_every_meaning(fake_session, drive, screen_text, monkeypatch):
+    monkeypatch.setenv("NO_COLOR", "1")
+
+    async def steps(app, pilot):
+        text = screen_text(app)
+        assert "> SM-0001" in text and "/split" in text and "<short" in text and "=expl" in text
+
+    drive(fake_session, steps)
+
+
+@pytest.mark.parametrize("size", [(79, 24), (80, 23), (20, 5), (1, 1)], ids=str)
+def test_a_terminal_too_small_gets_a_plain_sentence_and_everything_comes_back(fake_session, drive, screen_text, size):
+    async def steps(app, pilot):
+        await pilot.press("down", "down")
+        await pilot.resize_terminal(*size)
+        await pilot.pause()
+        assert isinstance(app.screen, SmallScreen)
+        if size[0] > 60:
+            assert "The desk needs 80 by 24" in " ".join(screen_text(app).split())
+        await pilot.resize_terminal(100, 30)
+        await pilot.pause()
+        assert app.screen.query_one(CandidateList).cursor == 2
+
+    drive(fake_session, steps)
+
+
+def test_a_desk_started_too_small_waits(fake_session, drive):
+    async def steps(app, pilot):
+        assert isinstance(app.screen, SmallScreen)
+        await pilot.resize_terminal(80, 24)
+        await pilot.pause()
+        assert app.screen.query_one(CandidateList).chosen.name == "SM-0001"
+
+    drive(fake_session, steps, size=(40, 10))
+
+
+def test_keys_can_be_given_by_file_and_every_line_says_so(fake_session, drive, screen_text, settled):
+    async def steps(app, pilot):
+        assert "j next for me" in screen_text(app)
+        await pilot.press("7")
+        await settled(app, pilot)
+        assert app.screen.view.unresolved == "dust"
+        await pilot.press("question_mark")
+        await settled(app, pilot)
+        assert "j            next for me" in screen_text(app)
+
+    drive(fake_session, steps, keys={"queue.next": "j", "queue.down": "down", "queue.unresolved_dust": "7"})
+
+
+@pytest.mark.parametrize(
+    ("keys", "reason"),
+    [
+        ({"queue.fly": "f"}, "no such action"),
+        ({"queue.next": "q"}, "already"),
+        ({"queue.next": "ctrl+c"}, "terminal's"),
+        ({"queue.next": ""}, "cannot be used"),
+    ],
+)
+def test_keys_that_cannot_be_had_are_refused(keys, reason):
+    with pytest.raises(SettingError, match=reason):
+        checked_keymap(keys)
+
+
+def test_no_place_has_two_actions_on_one_key_or_takes_the_terminals():
+    checked_keymap({})
+    for entries in PLACES.values():
+        assert not RESERVED.intersection(key for entry in entries for key in entry.keys.split(","))
+
+
+def test_an_unknown_theme_is_refused(fake_session):
+    with pytest.raises(SettingError, match="dark, light"):
+        Desk(fake_session, theme="sepia")
+
+
+@pytest.mark.parametrize("key", ["q", "ctrl+c"])
+def test_leaving(fake_session, drive, key):
+    async def steps(app, pilot):
+        await pilot.press(key)
+        await pilot.pause()
+        assert not app.is_running or app._exit
+
+    drive(fake_session, steps)
+
+
+@pytest.mark.parametrize("key", sorted(RESERVED - {"ctrl+c", "ctrl+z"}))
+def test_the_terminals_own_keys_do_nothing(fake_session, drive, screen_text, key):
+    async def steps(app, pilot):
+        before = screen_text(app)
+        await pilot.press(key)
+        await pilot.pause()
+        assert screen_text(app) == before and app.is_running
+
+    drive(fake_session, steps)
+
+
+def test_help_finds_an_action_by_name_and_does_it(fake_session, drive, settled):
+    async def steps(app, pilot):
+        await pilot.press("question_mark", "slash", *"dust", "enter", "enter")
+        await settled(app, pilot)
+        assert not isinstance(app.screen, HelpScreen)
+        assert app.screen.view.unresolved == "dust"
+
+    drive(fake_session, steps)
+
+
+def test_help_names_actions_of_other_places_without_doing_them(fake_session, drive, screen_text, settled):
+    async def steps(app, pilot):
+        await pilot.press("question_mark", "slash", *"withdraw", "enter")
+        await settled(app, pilot)
+        assert "in Candidate" in screen_text(app)
+        assert app.screen.query_one(PickRows).target is None
+
+    drive(fake_session, steps)
+
+
+@pytest.mark.parametrize("size", [(80, 24), (120, 40), (200, 60)], ids=str)
+def test_help_looks_so(fake_session, drive, screen_text, snapshot, size):
+    async def steps(app, pilot):
+        await pilot.press("question_mark")
+        await pilot.pause()
+        snapshot(f"help-{size[0]}x{size[1]}", screen_text(app))
+
+    drive(fake_session, steps, size=size)
+
+
+def test_thin_leaves_out_what_a_slow_line_need_not_carry(fake_session, drive):
+    async def steps(app, pilot):
+        assert app.animation_level == "none" and not app.screen.has_room
+
+    drive(fake_session, steps, size=(200, 60), thin=True)
