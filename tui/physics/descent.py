@@ -12,6 +12,7 @@ from tui.physics.likelihood import Errors, Residuals, residuals
 from tui.physics.problem import Problem
 
 STEPS = 40
+SHORT_STEP = 1e-2  # damping above which steps are short
 BLOCK = 400  # rows that go down together: their arrays stay in the processor's cache, which is worth a factor of 4
 TOLERANCE = 1e-5  # of the cost: a thousandth of what an interval or a ruling could feel
 
@@ -85,10 +86,11 @@ def _descend(
         damping[rows] = np.where(better, damping[rows] * 0.1, damping[rows] * 8.0)
         np.copyto(value, new.value, where=better[:, None])
         np.copyto(slopes, new.slopes, where=better[:, None, None])
-        going = np.where(better, gain > tolerance, (promised > tolerance) & (damping[rows] < 1e6))
+        short = damping[rows] > SHORT_STEP  # a small gain by a short step says little
+        going = np.where(better, (gain > tolerance) | short, (promised > tolerance) & (damping[rows] < 1e6))
         if not going.any():
             break
-        if going.sum() < 0.9 * rows.size:
+        if not going.all():
             rows, value, slopes = rows[going], value[going], slopes[going]
             local = (here.take(going), some_errors.take(going), lo[going], hi[going], still[going])
     return Descent(x, cost)

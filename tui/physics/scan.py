@@ -15,7 +15,7 @@ from tui.physics.problem import Problem
 AV_NODES = np.array([0, 0.15, 0.4, 0.8, 1.4, 2.2, 3.2, 4.5, 6, 8, 10.5, 13.5, 17, 21, 25, 30.0])
 RV_NODES = np.array([2.5, 3.1, 4.0, 5.2])
 STAR_NODES = 40
-FURTHER_NODES = {"dust": 22, "star": 22, "compact": 12, "power": 12}
+FURTHER_NODES = {"dust": 22, "star": 22, "compact": 18, "power": 12}
 STARTS = 3
 PARTS_ALONG_T = 10  # temperature and screen make a long valley with several minima: a start from each part of it
 COARSE = np.float32  # a scan only ranks places to start from
@@ -44,20 +44,23 @@ class Weighted:
 def weigh(problem: Problem, errors: Errors) -> Weighted:
     """Detections' weights; limits enter a scan as penalties."""
     flux = np.where(problem.detected, problem.flux_jy, 0.0)
-    unit = np.maximum(np.abs(flux).max(axis=1), 1e-300)
+    unit = np.maximum(np.abs(flux).max(axis=1, initial=0.0), 1e-300)
     weight = np.where(problem.detected, (unit[:, None] / errors.sigma) ** 2, 0.0)
     weighted = weight * flux / unit[:, None]
     return Weighted(np.ascontiguousarray(weight.T), np.ascontiguousarray(weighted.T), unit)
 
 
-def screens(kit: Kit, problem: Problem) -> list[tuple[float, float]]:
-    """(A_V, R_V) nodes worth a look for these candidates."""
+def screens(kit: Kit) -> list[tuple[float, float]]:
+    """(A_V, R_V) nodes; the same for every candidate, so that none depends on its company."""
     if AV not in kit.model.free:
         return [(0.0, 3.1)]
-    top = float(problem.av_max.max())
-    values = [*AV_NODES[AV_NODES < top], top]
     ratios = RV_NODES if RV in kit.model.free else [3.1]
-    return [(float(av), float(rv)) for av in values for rv in (ratios if av > 0 else [3.1])]
+    return [(float(av), float(rv)) for av in AV_NODES for rv in (ratios if av > 0 else [3.1])]
+
+
+def reach(av_max: FloatArray) -> FloatArray:
+    """The highest A_V node that a candidate looks at: the first at or above its largest A_V, (M,)."""
+    return AV_NODES[np.minimum(np.searchsorted(AV_NODES, av_max - 1e-9), AV_NODES.size - 1)]
 
 
 def _through(grid, reddening, x: FloatArray, colour: FloatArray, av: float, rv: float) -> FloatArray:
@@ -83,8 +86,9 @@ def _penalty(problem: Problem, errors: Errors, model: FloatArray) -> FloatArray:
 
 def _scan_star(problem: Problem, kit: Kit, data: Weighted, errors: Errors, starts: int) -> FloatArray:
     t = nodes(kit.star.low, kit.star.high, 3 * STAR_NODES)
-    gains, scales, places = [], [], screens(kit, problem)
-    has_limits = bool(problem.limited.any())
+    gains, scales, places = [], [], screens(kit)
+    has_limits, ceiling = bool(problem.limited.any()), reach(problem.av_max)
+    places = [(av, rv) for av, rv in places if av <= ceiling.max()]
     for av, rv in places:
         ln_flux = _through(kit.star, kit.star_reddening, t, t, av, rv)
         top = ln_flux.max(axis=1, keepdims=True)
@@ -95,7 +99,7 @@ def _scan_star(problem: Problem, kit: Kit, data: Weighted, errors: Errors, start
         scale = scale * data.unit_jy
         if has_limits:
             gain = gain - _penalty(problem, errors, scale[:, :, None] * flux[:, None, :])
-        gains.append(np.where(av <= problem.av_max + 1e-9, gain, -np.inf))
+        gains.append(np.where(av <= ceiling, gain, -np.inf))
         scales.append(np.log(np.maximum(scale, 1e-300)) - top)
     gain, scale = np.stack(gains, axis=1), np.stack(scales, axis=1)  # (T, screens, M)
     best_screen = gain.argmax(axis=1)
@@ -158,7 +162,8 @@ def _scan_two(problem: Problem, kit: Kit, data: Weighted, errors: Errors, starts
     source = kit.model.sources[0]
     t = nodes(kit.star.low, kit.star.high, STAR_NODES)
     u = nodes(kit.further[0].low, kit.further[0].high, FURTHER_NODES[source])
-    tables = [_screen(kit, t, u, av, rv) for av, rv in screens(kit, problem)]
+    top = reach(problem.av_max).max()
+    tables = [_screen(kit, t, u, av, rv) for av, rv in screens(kit) if av <= top]
     size = max(1, SCAN_CELLS // (t.size * u.size))
     out = []
     for first in range(0, len(problem), size):
@@ -180,11 +185,12 @@ def _scan_part(
     """Starts of some candidates: the peaks along the second source's parameter, then those along the star's."""
     size = len(problem)
     along_u, along_t = _Kept(u.size, size), _Kept(t.size, size)
+    ceiling = reach(problem.av_max)
     for number, table in enumerate(tables):
-        if not (table.av <= problem.av_max + 1e-9).any():
+        if not (table.av <= ceiling).any():
             continue
         gain, s1, s2 = _pair_gain(problem, kit, data, errors, t, u, table)
-        gain = np.where(table.av <= problem.av_max + 1e-9, gain, -np.inf)
+        gain = np.where(table.av <= ceiling, gain, -np.inf)
         top = gain.argmax(axis=0)  # over T: (U, M)
         along_u.better(np.take_along_axis(gain, top[None], 0)[0], top, np.arange(u.size)[:, None], (s1, s2), number)
         top = gain.argmax(axis=1)  # over U: (T, M)
@@ -318,6 +324,6 @@ def _tied(
     wish = (parallax[None, :] / unit[:, None]) ** 2 * np.exp(table.ln_first)[:, None] / unit_jy
     relative = np.where(known, 2 * parallax_sigma(problem) / parallax, np.inf)
     pull = (np.where(known, 1.0 / (np.maximum(wish, 1e-12) * relative), 0.0) ** 2)[:, None, :].astype(COARSE)
-    wish = wish[:, None, :].astype(COARSE)
+    wish = np.minimum(wish, 1e15)[:, None, :].astype(COARSE)  # nothing detected: no scale to draw towards
     s = np.maximum((b + pull * wish) / (a + pull), TINY)
     return s, s * ratio, 2 * s * b - s**2 * a - pull * (s - wish) ** 2
