@@ -201,7 +201,10 @@ class Settings:
 
 
 def plain(value: Any) -> Any:
-    """`value` as JSON can hold it: NaN and infinities become None, mappings plain dicts, numpy scalars Python's."""
+    """`value` as JSON can hold it: NaN and infinities become None, mappings plain dicts, numpy scalars Python's.
+
+    A minus zero becomes zero, as it does in an SQLite column.
+    """
     if isinstance(value, Mapping):
         return {str(key): plain(item) for key, item in value.items()}
     if isinstance(value, np.ndarray):
@@ -210,8 +213,8 @@ def plain(value: Any) -> Any:
         return [plain(item) for item in value]
     if isinstance(value, (np.bool_, np.integer, np.floating)):
         value = value.item()
-    if isinstance(value, float) and not math.isfinite(value):
-        return None
+    if isinstance(value, float):
+        return value + 0.0 if math.isfinite(value) else None
     return value
 
 

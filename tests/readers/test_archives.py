@@ -22,6 +22,19 @@ def test_every_table_names_bands_and_facts_that_exist(archives, facts):
     assert [archive.order for archive in archives] == list(range(1, len(archives) + 1))
 
 
+def test_the_error_of_a_declination_is_known_and_of_no_use(one):
+    text = "designation,ra,dec,sigra,sigdec,w1mpro,w1sigmpro\nJ000000.00+000000.0,0,0,0.04,0.04,10,0.02\n"
+    candidate, found, contents = one(text)
+    assert set(found) == {"W1"} and contents.unknown_columns == [] and candidate.facts["wise_position_error"] == 0.04
+
+
+def test_a_table_of_facts_alone_is_no_cause_for_a_caution(read, write):
+    facts = read(write("name,age_myr,sp_type\nA,12,K4V\n"))
+    assert facts.candidates[0].facts == {"age_myr": 12.0, "sp_type": "K4V"} and facts.cautions == []
+    missed = read(write("name,age_myr,jmagg\nA,12,10.2\n"))
+    assert any("no column of any band" in said for said in missed.cautions)
+
+
 @pytest.mark.parametrize("text", archive_texts().values(), ids=archive_texts())
 def test_every_table_states_where_it_comes_from(text):
     assert [line.split(":")[0] for line in text.splitlines()[:4]] == ["# source", "# from", "# changed", "# units"]

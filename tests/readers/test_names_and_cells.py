@@ -65,3 +65,10 @@ def test_long_integers_kept_as_decimals_are_noticed():
     assert lost_digits(Column("source_id", np.array([5.853498713190525e18])))
     assert lost_digits(Column("source_id", ["5.85E+18"]))
     assert not lost_digits(Column("source_id", ["5853498713190525696"]))
+
+
+def test_a_zero_has_no_sign():
+    """SQLite keeps no minus zero in a column of numbers: what was read must equal what is kept."""
+    for column in (Column("pm", ["-0.0", "-0", "1"]), Column("pm", np.array([-0.0, -0.0, 1.0]))):
+        values, bad = numbers(column)
+        assert not bad and not np.signbit(values).any()

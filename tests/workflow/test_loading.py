@@ -9,6 +9,7 @@ import pytest
 from tui.errors import TableError
 from tui.store.candidates import get_candidate
 from tui.store.connect import open_queue
+from tui.workflow.auditing import audit_queue
 from tui.workflow.basis import band_from, band_text, read_basis
 from tui.workflow.loading import Sidecars, load, write_refused
 
@@ -77,6 +78,17 @@ def test_a_band_of_ones_own_travels_in_the_queue(tmp_path):
         band = read_basis(connection).user_bands["Hcont"]
         assert (band.pivot_um, get_candidate(connection, "A").measurements[0].flux_jy) == (1.57, 0.0035)
     assert band_text(band_from(band_text(band))) == band_text(band)
+
+
+def test_a_minus_zero_in_any_table_leaves_the_audit_content(tmp_path):
+    path = str(tmp_path / "q.db")
+    (tmp_path / "t.csv").write_text("name,ra,dec,pmra,J_mag,J_err\nA,-0.0,0.0,-0.0,-0.0,0.02\n")
+    (tmp_path / "dips.csv").write_text("name,event,band,depth,error\nA,e1,J,-0.0,0.01\n")
+    (tmp_path / "near.csv").write_text("name,separation,position_angle,J_mag,J_err\nA,-0.0,-0.0,-0.0,0.1\n")
+    sidecars = Sidecars((str(tmp_path / "dips.csv"),), (str(tmp_path / "near.csv"),))
+    done = load(path, [str(tmp_path / "t.csv")], sidecars=sidecars)
+    assert done.counts["side_tables"] == 2
+    assert audit_queue(path).faults == ()
 
 
 def test_dips_neighbours_and_spectra_hang_on_candidates_of_the_queue(tmp_path, table):

@@ -21,6 +21,7 @@ The rows: `role,target,column,also,unit,how`. `column` is the archive's own name
 | epoch           | bands        | `MJD` or `JD`: put before the number |
 | fact            | a fact       | `with C`: only where column C is there; `MJD`, `JD`: turned into a Julian year |
 | name            |              | `prefix P`: names the candidate where no column `name` is |
+| ignored         |              | known, of no use here: not listed as unknown |
 """
 
 from __future__ import annotations
@@ -44,6 +45,7 @@ ROLES = (
     "epoch",
     "fact",
     "name",
+    "ignored",
 )
 FIELDS = ("role", "target", "column", "also", "unit", "how")
 HEAD_KEYS = ("source", "from", "changed", "units", "label", "order", "mark", "null error")

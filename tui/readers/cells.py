@@ -67,7 +67,10 @@ def _text_numbers_one_by_one(cells: Sequence[str]) -> tuple[FloatArray, Bad]:
 
 
 def numbers(column: Column, sentinels: tuple[float, ...] = ()) -> tuple[FloatArray, Bad]:
-    """A column as float64, shape (N,); NaN where empty, where a sentinel stands, and where the cell is bad."""
+    """A column as float64, shape (N,); NaN where empty, where a sentinel stands, and where the cell is bad.
+
+    A minus zero comes out as zero: SQLite keeps no other, and digests must be those of what is kept.
+    """
     bad: Bad = {}
     if column.is_text:
         values, bad = _text_numbers(column.texts if column.mask is None else texts(column))
@@ -82,7 +85,7 @@ def numbers(column: Column, sentinels: tuple[float, ...] = ()) -> tuple[FloatArr
     for index in np.flatnonzero(np.isinf(values)).tolist():
         values[index] = math.nan
         bad[index] = "the number is infinite"
-    return values, bad
+    return values + 0.0, bad
 
 
 def _text_of(value: object) -> str:

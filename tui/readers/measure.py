@@ -232,13 +232,15 @@ def _from_snr(out: Values, columns: BandColumns, table: RawTable, lost: np.ndarr
 
 
 def finish(out: Values, column: str) -> None:
-    """In the end limits are positive and have no error, and detections without error say so."""
+    """In the end limits are positive and have no error, detections without error say so, and no zero has a sign."""
     wrong = out.present & out.limit & ~(out.flux_jy > 0)
     for row in np.flatnonzero(wrong).tolist():
         out.bad[(row, column)] = "an upper limit must be above zero"
     out.present &= ~wrong
     out.error_jy[out.limit] = math.nan
     out.value_error[out.limit] = math.nan
+    out.flux_jy += 0.0
+    out.value += 0.0
     for row in np.flatnonzero(out.present & ~out.limit & np.isnan(out.error_jy)).tolist():
         out.note[row] = out.note[row] or NO_ERROR
 

@@ -66,7 +66,7 @@ def read_dips(
             if (event, band, epochs[row]) in mine:
                 side.refuse(row, "event", "an earlier row gives the same event, band and epoch")
             else:
-                mine[event, band, epochs[row]] = Dip(event, band, float(depth[row]), float(sigma), epochs[row])
+                mine[event, band, epochs[row]] = Dip(event, band, float(depth[row]) + 0.0, float(sigma), epochs[row])
     found = {name: tuple(dips.values()) for name, dips in rows.items() if dips}
     return SideContents(found, side.refused, side.unknown)
 

@@ -76,7 +76,7 @@ def read_parts(
         return
     plan = recognise(table, words)
     wide = WideReader(table, plan)
-    if not plan.bands:
+    if not plan.bands and (plan.unknown or not plan.facts):  # a table of facts alone is what it is
         wide.cautions.append(f"{table.path}: no column of any band was recognised")
     for part in wide.parts(size):
         refused, wide.refused = sorted(wide.refused, key=lambda entry: entry.row), []
