@@ -10,6 +10,7 @@ import numpy as np
 from tui.checks.extinction import fixed_r_v
 from tui.checks.prepare import prepare
 from tui.checks.record import RAD_TO_MAS, columns_of, fits_of
+from tui.checks.spectra import as_measured, own_settings
 from tui.errors import InputError
 from tui.model import Candidate, Fit, FloatArray, Settings
 from tui.physics.composite import (
@@ -41,13 +42,16 @@ from tui.physics.composite import (
 from tui.physics.constants import MAG
 from tui.physics.descent import descend
 from tui.physics.extinction import extinction_curve
-from tui.physics.fitting import finish, first_errors, look, rested, settle
+from tui.physics.fitting import finish, first_errors, rested, starting_rows
 from tui.physics.likelihood import Errors, errors_for
 from tui.physics.planck import planck_jy
 from tui.physics.problem import Problem
 from tui.physics.reddening import AV_MAX
+from tui.physics.spectral import INSTRUMENT, is_point
 from tui.physics.templates import SLOPE_SPLIT_UM, Templates
 
+SEED = 1e-3
+HAND_PASSES, HAND_STEPS, HAND_SETTLED = 8, 25, 0.002
 CHECK_MODELS: Mapping[str, tuple[Model, ...]] = {
     "star": (STAR,),
     "instrument": (STAR,),
@@ -164,7 +168,8 @@ def probe(
     Raises:
         InputError: no model of the check has these parameters, or no band is left.
     """
-    problem = dropped_bands(prepare([candidate], templates, settings), dropped)
+    settings = own_settings(settings, templates)
+    problem = dropped_bands(prepare([as_measured(candidate, templates)], templates, settings), dropped)
     if not problem.detected.any():
         raise InputError(f"No band of {candidate.name} is left to fit.")
     if check == "extinction":
@@ -177,29 +182,26 @@ def probe(
 def conditional(problem: Problem, kit: Kit, fixed: Mapping[str, float]) -> Fit:
     """The best fit with parameters held, errors following the model."""
     names = {told.name: column for column, told in columns_of(kit).items()}
-    held = np.zeros((1, WIDTH), bool)
-    values = np.zeros(WIDTH)
+    held, values = np.zeros(WIDTH, bool), np.zeros(WIDTH)
     low, high = kit.bounds(problem.av_max)
     for name, value in fixed.items():
         column = names[name]
-        held[0, column] = True
+        held[column] = True
         values[column] = np.clip(inner_value(name, value), low[0, column], high[0, column])
     errors = first_errors(problem)
-    if not held.any():
-        x, _ = look(problem, kit, errors, [])
-        errors, x, _ = settle(problem, kit, x)
-        return fits_of(finish(problem, kit, errors, x), with_intervals=False)[0]
-    x, _ = look(problem, kit, errors, [])
-    for _ in range(3):
-        x = np.where(held, values, x)
-        if A2 in kit.model.free and not held[0, A2] and x[0, A2] <= 1e-9:
-            x[0, A2] = 1e-3
-        found = descend(problem, kit, errors, x, held=held)
-        x = found.x
-        errors = errors_of(problem, kit, x)
-    x = descend(problem, kit, errors, x, held=held).x
+    x = np.where(held, values, np.concatenate(starting_rows(problem, kit, errors)))
+    if A2 in kit.model.free and not held[A2] and (held[X2] or held[X3]):
+        x[:, A2] = np.maximum(x[:, A2], SEED)  # a source that was not there has no slope to come back by
+    for _ in range(HAND_PASSES):
+        rows = np.zeros(x.shape[0], np.intp)
+        still = np.tile(held, (x.shape[0], 1))
+        found = descend(problem.take(rows), kit, errors.take(rows), x, held=still, steps=HAND_STEPS)
+        x = found.x[[found.cost.argmin()]]
+        last, errors = errors, errors_of(problem, kit, x)
+        if np.all(np.abs(errors.sigma / last.sigma - 1.0) < HAND_SETTLED):
+            break
     x = np.where(held, x, rested(kit, x))
-    return fits_of(finish(problem, kit, errors, x), with_intervals=False)[0]
+    return fits_of(finish(problem, kit, last, x), with_intervals=False)[0]
 
 
 def errors_of(problem: Problem, kit: Kit, x: FloatArray) -> Errors:
@@ -209,8 +211,9 @@ def errors_of(problem: Problem, kit: Kit, x: FloatArray) -> Errors:
 
 
 def dropped_bands(problem: Problem, dropped: frozenset[str]) -> Problem:
-    """The problem without some bands."""
-    mask = np.array([[name in dropped for name in problem.templates.names]])
+    """The problem without some bands; `spectrum` stands for all points of one."""
+    whole = INSTRUMENT in dropped
+    mask = np.array([[name in dropped or (whole and is_point(name)) for name in problem.templates.names]])
     return problem.without(np.broadcast_to(mask, problem.detected.shape))
 
 
