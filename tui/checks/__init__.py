@@ -11,6 +11,7 @@ from tui.checks.by_hand import Curve, curve, probe
 from tui.checks.cautions import natural_cautions
 from tui.checks.prepare import prepare
 from tui.checks.record import fits_of
+from tui.checks.spectra import as_measured, asks_for_more, narrowed, own_settings, used_bands, with_spectrum
 from tui.checks.star import Oddness, oddness
 from tui.checks.surroundings import surroundings
 from tui.checks.tables import Tables
@@ -52,25 +53,29 @@ def assess_all(
     wanted = [kind for kind in KINDS if kind in set(kinds) and kind in VERSIONS]
     if not candidates:
         return []
+    loaded, candidates = candidates, [as_measured(one, templates) for one in candidates]
+    settings = own_settings(settings, templates)
     bands = {band.name: band for band in templates.bands}
     problem = prepare(candidates, templates, settings)
     alone = fit(problem, STAR)
     found: Found = {"dips": dips.assess(candidates, bands, settings)}
-    found["star"] = [
-        with_dips("star", *pair) for pair in zip(star.assess(candidates, alone, settings), found["dips"], strict=True)
-    ]
+    plain = star.assess(candidates, alone, settings)
+    plain = [with_spectrum(*row, templates, settings) for row in zip(plain, loaded, candidates, strict=True)]
+    found["star"] = [with_dips("star", *pair) for pair in zip(plain, found["dips"], strict=True)]
     if "instrument" in wanted:
         found["instrument"] = instrument.assess(candidates, alone, found["star"], fits_of, tables, settings)
     for module in (extinction, blend, dust):
         if module.KIND in wanted:
             plain = module.assess(candidates, problem, alone, found["star"], settings)
+            plain = [asks_for_more(*pair, templates) for pair in zip(plain, found["star"], strict=True)]
             found[module.KIND] = [
                 with_dips(module.KIND, *pair) for pair in zip(plain, found["dips"], strict=True)
             ]
     add_context(candidates, alone, found, bands, tables, settings)
     if "mixture" in wanted:
         known = [mixture.known_from({kind: rows[row] for kind, rows in found.items()}) for row in range(len(candidates))]
-        found["mixture"] = mixture.assess(candidates, templates, settings, known)
+        narrow = narrowed(templates, used_bands(candidates, templates)) if templates.points else templates
+        found["mixture"] = mixture.assess(candidates, narrow, settings, known)
     return [{kind: found[kind][row] for kind in wanted if kind in found} for row in range(len(candidates))]
 
 

@@ -13,6 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from tui.model import FloatArray
+from tui.physics.spectral import is_point
 from tui.physics.statistics import chi2_tail, ln_chi2_tail
 
 BoolArray = NDArray[np.bool_]
@@ -51,6 +52,8 @@ class Carrier:
 def removal_trials(present: BoolArray, bands: Sequence[str], instruments: Sequence[str]) -> Trials:
     """Each band present, and each instrument with two or more of them, wherever more than two bands would remain.
 
+    The points of a spectrum stand or fall together, as one instrument.
+
     Args:
         present: shape (N, B), band fitted for this candidate.
         bands: length B, names.
@@ -59,12 +62,14 @@ def removal_trials(present: BoolArray, bands: Sequence[str], instruments: Sequen
     rows, masks, names = [], [], []
     sets = [(name, np.arange(len(bands)) == column) for column, name in enumerate(bands)]
     owner = np.asarray(instruments)
+    sets = [pair for pair in sets if not is_point(pair[0])]
+    singles = len(sets)
     sets += [(str(name), owner == name) for name in dict.fromkeys(instruments)]
     count = present.sum(axis=1)
     for number, (name, members) in enumerate(sets):
         dropped = present & members
         size = dropped.sum(axis=1)
-        least = 1 if number < len(bands) else 2
+        least = 1 if number < singles else 2
         tried = np.flatnonzero((size >= least) & (count - size > STAR_PARAMETERS))
         rows.append(tried)
         masks.append(dropped[tried])

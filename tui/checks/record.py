@@ -7,12 +7,14 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from tui.checks.spectra import parts
 from tui.model import Fit, FloatArray, Param, Settings
 from tui.physics.composite import A2, A3, AV, LN_S, LN_T, RV, X2, X3, Kit
 from tui.physics.constants import L_SUN, PARSEC, T_EQUILIBRIUM_1AU_K
 from tui.physics.fitting import FitBatch
 from tui.physics.planck import surface_flux
 from tui.physics.profile import Intervals, intervals
+from tui.physics.shared import shown_pulls
 from tui.physics.statistics import adequate, aic, bic, chi2_tail
 
 RAD_TO_MAS = 180.0 * 3600e3 / np.pi
@@ -72,7 +74,7 @@ def fits_of(batch: FitBatch, *, with_intervals: bool = True) -> list[Fit]:
     k = len(batch.model.free)
     scores = (aic(batch.minus2lnl, k), bic(batch.minus2lnl, k, points))
     names = batch.problem.templates.names
-    pulls = batch.pulls
+    pulls = shown_pulls(batch)
     return [
         Fit(
             model=batch.model.name,
@@ -173,8 +175,10 @@ def dust_radius(temperature: Param, luminosity: float) -> Param:
 
 
 def stands(fit: Fit, points: int, settings: Settings) -> bool | None:
-    """Whether a fit is adequate by the queue's threshold."""
-    return adequate(fit.chi2, points, fit.dof, settings.p_min)
+    """Whether a fit is adequate by the queue's threshold; with a spectrum, that and the bands each by themselves too."""
+    answer = adequate(fit.chi2, points, fit.dof, settings.p_min)
+    refused = any(float(chi2_tail(chi2, count)) < settings.p_min for chi2, count in parts(fit))
+    return False if refused else answer
 
 
 def any_stands(answers: Mapping[str, bool | None] | list[bool | None]) -> bool | None:

@@ -10,6 +10,7 @@ import numpy as np
 from tui.checks.prepare import fact
 from tui.checks.record import fits_of, stands
 from tui.checks.remarks import common_remarks, joined
+from tui.checks.spectra import ln_p_of_parts, named
 from tui.model import Candidate, Evidence, Fit, Settings
 from tui.physics.composite import LN_S, LN_T
 from tui.physics.constants import PARSEC
@@ -21,6 +22,7 @@ VERSION = 1  # raise it whenever the same candidate could get other numbers
 SEQUENCE_SCATTER_MAG = 0.25  # of real dwarfs about the mean sequence
 EVOLVED_MAG = 1.3  # more than any triple of equals (1.193 mag) explains
 DIM_MAG = -0.5
+CERTAIN_LN_P = -1e-15  # a p of 1 would have no finite sigma
 EDGE = 0.02  # of ln T: this near to the end of the source's range counts as at it
 
 
@@ -74,7 +76,8 @@ def one_evidence(
 def odd_facts(fit: Fit, points: int) -> dict[str, object]:
     """Oddness of a star-only fit; where no degree of freedom is left, by all its points."""
     dof = fit.dof if fit.dof > 0 else points
-    sigma = float(sigma_of_ln_p(ln_chi2_tail(fit.chi2, dof)))
+    ln_p = min(float(ln_chi2_tail(fit.chi2, dof)), ln_p_of_parts(fit), CERTAIN_LN_P)
+    sigma = float(sigma_of_ln_p(ln_p))
     band = max(fit.pulls, key=lambda name: abs(fit.pulls[name]), default="")
     return {"oddness": sigma, "odd_band": band, "odd_pull": fit.pulls.get(band, 0.0)}
 
@@ -86,7 +89,7 @@ def silent_bands(candidate: Candidate, batch: FitBatch) -> list[str]:
     if not measured:
         return []
     source = batch.problem.templates.photosphere
-    return [f"Not fitted: {joined(sorted(measured))}; the photosphere source {source} says nothing there."]
+    return [f"Not fitted: {joined(named(sorted(measured)))}; the photosphere source {source} says nothing there."]
 
 
 def range_remarks(batch: FitBatch, row: int) -> list[str]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from functools import cache
 
 import numpy as np
@@ -83,3 +84,19 @@ def extinction_curve(wave_um: FloatArray, law: str = "g23", r_v: float = 3.1) ->
         short = np.array([WC19_SHORT_UM])
         curve = np.where(wave < WC19_SHORT_UM, g23 * (_wc19(short) / _g23(short, r_v)), curve)
     return curve.reshape(np.shape(wave_um))
+
+
+class BandCurves:
+    """One law at the wavelengths of many bands, evaluated for all bands at once: a call costs more than a band."""
+
+    def __init__(self, waves_um: Sequence[FloatArray], law: str) -> None:
+        self.waves_um, self.law = tuple(waves_um), law
+        self._place = {id(wave): number for number, wave in enumerate(self.waves_um)}
+        self._curves: dict[float, list[FloatArray]] = {}
+
+    def __call__(self, wave_um: FloatArray, r_v: float) -> FloatArray:
+        """A(wavelength)/A(V) at one of the arrays of wavelengths that this was made with."""
+        if r_v not in self._curves:
+            ends = np.cumsum([wave.size for wave in self.waves_um])[:-1]
+            self._curves[r_v] = np.split(extinction_curve(np.concatenate(self.waves_um), self.law, r_v), ends)
+        return self._curves[r_v][self._place[id(wave_um)]]

@@ -21,7 +21,7 @@ class Errors:
     """Errors of one pass, frozen while parameters move."""
 
     sigma: FloatArray  # (M, B) Jy, total, 1 where nothing
-    whiten: FloatArray | None = None  # (M, B, B): inverse Cholesky factor where instruments share an error
+    whiten: FloatArray | None = None  # (M, B, B): inverse root of the correlations where instruments share an error
     ln_det: FloatArray | None = None  # (M,): ln determinant of the detections' covariance
 
     def take(self, rows: np.ndarray) -> Errors:
@@ -53,10 +53,23 @@ def errors_for(problem: Problem, total: FloatArray, star: FloatArray, ln_t: Floa
     if not problem.common.size:
         return Errors(sigma, None, ln_det)
     shared = problem.common[None] * np.where(problem.detected, total, 0.0)[:, None, :] / sigma[:, None, :]
-    covariance = np.eye(sigma.shape[1]) + np.einsum("mkb,mkc->mbc", shared, shared)
-    factor = np.linalg.cholesky(covariance)
-    ln_det = ln_det + 2 * np.sum(np.log(np.diagonal(factor, axis1=1, axis2=2)), axis=1)
-    return Errors(sigma, np.linalg.inv(factor), ln_det)
+    whiten, ln_det_shared = whitener(shared)
+    return Errors(sigma, whiten, ln_det + ln_det_shared)
+
+
+def whitener(shared: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Inverse root of I + sum of s s' over instruments, (M, B, B), and the ln of its determinant, (M,).
+
+    As no band belongs to two instruments, each term has its own bands and the root is closed:
+    (I + s s')^(-1/2) = I - (1 - 1/sqrt(1 + s.s)) s s'/s.s.
+
+    Args:
+        shared: shape (M, K, B), common errors in units of sigma; no band in two of the K rows.
+    """
+    size = np.einsum("mkb,mkb->mk", shared, shared)
+    share = (1.0 - 1.0 / np.sqrt(1.0 + size)) / np.maximum(size, 1e-300)
+    root = np.eye(shared.shape[2]) - np.einsum("mkb,mk,mkc->mbc", shared, share, shared, optimize=True)
+    return root, np.log1p(size).sum(axis=1)
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -14,6 +14,7 @@ from tui.physics.planck import planck_jy
 
 AB_ZERO_JY = 3631.0  # Oke & Gunn 1983, ApJ 266, 713
 NODES = 240  # quadrature nodes a band; 120 gives the same to 2e-5 for Planck sources above 20 K
+BOX_NODES, NARROW = 10, 1.25  # of a flat response whose ends lie closer than this ratio: a point of a spectrum
 
 
 def flux_from_mag(mag: ArrayLike, zero_point_jy: float) -> FloatArray:
@@ -40,7 +41,7 @@ class Quadrature:
     weight: FloatArray
 
 
-def quadrature(band: Band, nodes: int = NODES) -> Quadrature:
+def quadrature(band: Band, nodes: int | None = None) -> Quadrature:
     """Nodes and weights that give the catalogue's flux density of a spectrum in `band`.
 
     The average is int(F_nu S dw/w) / int(G S dw/w), S the photon response, G the reference spectrum that the
@@ -55,6 +56,8 @@ def quadrature(band: Band, nodes: int = NODES) -> Quadrature:
         return Quadrature(band.wave_um, np.ones(1))
     if band.wave_um.shape != band.response.shape or not np.all(np.diff(band.wave_um) > 0):
         raise InputError(f"The response of {band.name} needs increasing wavelengths, one value each.")
+    if nodes is None:
+        nodes = BOX_NODES if is_narrow(band) else NODES
     edges = np.interp(np.linspace(0, 1, nodes // 2 + 1), np.linspace(0, 1, band.wave_um.size), band.wave_um)
     wave = np.sort(np.concatenate([edges, (edges[:-1] + edges[1:]) / 2]))
     step = np.diff(edges)
@@ -64,6 +67,11 @@ def quadrature(band: Band, nodes: int = NODES) -> Quadrature:
     simpson[1::2] += 4 * step / 6
     weight = simpson * np.interp(wave, band.wave_um, band.response) / wave
     return Quadrature(wave, weight / np.sum(weight * reference_shape(band, wave)))
+
+
+def is_narrow(band: Band) -> bool:
+    """Whether a band is flat between two close ends, as a point of a spectrum is."""
+    return band.wave_um.size == 2 and bool(band.wave_um[1] < NARROW * band.wave_um[0])
 
 
 def reference_shape(band: Band, wave_um: FloatArray) -> FloatArray:

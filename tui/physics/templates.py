@@ -10,7 +10,7 @@ import numpy as np
 
 from tui.errors import TemplateError
 from tui.model import Band, FloatArray, digest
-from tui.physics.extinction import R_V_RANGE, extinction_curve
+from tui.physics.extinction import R_V_RANGE, BandCurves
 from tui.physics.photometry import Quadrature, quadrature
 from tui.physics.photosphere import (
     PLANCK_RANGE_K,
@@ -65,6 +65,8 @@ class Templates:
     ln_infrared: FloatArray  # shape (N,), the same at 3.4 micron
     silent: tuple[str, ...]  # bands the photosphere source says nothing about
     digest: str = ""
+    broad: Templates | None = None  # the same source in the wide bands that spectra are compared in
+    points: str = ""  # wavelength grid of the spectra whose points are among the bands
 
     @property
     def names(self) -> tuple[str, ...]:
@@ -161,7 +163,6 @@ def build_templates(
     order = np.argsort([band.pivot_um for band in bands], kind="stable")
     chosen = tuple(replace(bands[i], floor=(floors or {}).get(bands[i].name, bands[i].floor)) for i in order)
     rules = [quadrature(band) for band in chosen]
-    thin = [quadrature(band, 80) for band in chosen]
     star_x = np.log(photosphere.teff_k)
     dust_x, compact_x = even_grid(*np.log(DUST_RANGE_K), 0.02), even_grid(*np.log(COMPACT_RANGE_K), 0.02)
     slope_x = even_grid(*SLOPE_RANGE, 0.05)
@@ -171,7 +172,8 @@ def build_templates(
     other = "g23" if law == "wc19" else "wc19"
 
     def reddening(low_k: float, high_k: float, by: str = law, ratios: tuple[float, float] = rv_range) -> Reddening:
-        return expand_reddening(thin, lambda wave, ratio: extinction_curve(wave, by, ratio), (low_k, high_k), ratios)
+        curves = BandCurves([rule.wave_um for rule in rules], by)
+        return expand_reddening(rules, curves, (low_k, high_k), ratios)
 
     star_table = photosphere.ln_flux[:, order]
     star_range = (float(photosphere.teff_k[0]), float(photosphere.teff_k[-1]))

@@ -86,13 +86,15 @@ def compute(
     never current when it is not.
     """
     from tui.checks import assess_all
+    from tui.workflow.spectral_grids import groups
 
     digests = candidate_digests(connection, names)
-    candidates = get_candidates(connection, names)
-    found = assess_all(candidates, basis.templates(), basis.settings, kinds, basis.tables())
     return [
         (candidate.name, replace(made, digest=made_with[kind].digest_of(digests[candidate.name])))
-        for candidate, by_kind in zip(candidates, found, strict=True)
+        for some, templates in groups(get_candidates(connection, names), basis)
+        for candidate, by_kind in zip(
+            some, assess_all(some, templates, basis.settings, kinds, basis.tables()), strict=True
+        )
         for kind, made in by_kind.items()
     ]
 

@@ -11,6 +11,7 @@ import numpy as np
 from tui.errors import InputError, UnknownNameError
 from tui.model import Candidate, Evidence, Fit, FloatArray
 from tui.workflow.basis import Basis
+from tui.workflow.spectral_grids import templates_of
 
 if TYPE_CHECKING:
     from tui.checks import Curve
@@ -18,6 +19,7 @@ if TYPE_CHECKING:
 POINTS = 400  # wavelengths of a curve: finer than the dots of a wall screen
 MARGIN = 1.6  # how far a curve goes beyond the shortest and longest band, as a factor
 BARE_RANGE_UM = (0.3, 30.0)  # where a candidate has no band that the program knows
+SPECTRUM = "spectrum"  # to drop all points of one
 SHORT_NAMES = MappingProxyType(
     {"T": "teff", "Teff": "teff", "A_V": "av", "AV": "av", "Av": "av", "R_V": "r_v", "RV": "r_v"}
     | {"Td": "dust_temperature", "T_d": "dust_temperature", "f": "dust_fractional_luminosity"}
@@ -41,6 +43,8 @@ def band_name(candidate: Candidate, typed: str) -> str:
     from tui.data.load import band_aliases
 
     measured = {one.band for one in candidate.measurements}
+    if typed == SPECTRUM and candidate.spectrum is not None:
+        return typed
     for name in (typed, band_aliases().get(typed, typed)):
         if name in measured:
             return name
@@ -66,7 +70,7 @@ def probe(
     left = {one.band for one in candidate.measurements if not one.exclude} - without
     if not left:
         raise InputError(f"No band of {candidate.name} is left to fit.")
-    templates = basis.templates()
+    templates = templates_of(candidate, basis)
     fit = checks.probe(candidate, check, held, without, templates, basis.settings)
     return fit, checks.curve(candidate, fit, check, templates, basis.settings, curve_wavelengths(candidate, basis))
 
@@ -79,7 +83,7 @@ def fit_curve(candidate: Candidate, evidence: Evidence, fit_index: int, basis: B
 
     fit = evidence.fits[fit_index]
     wave_um = curve_wavelengths(candidate, basis)
-    return checks.curve(candidate, fit, evidence.kind, basis.templates(), basis.settings, wave_um)
+    return checks.curve(candidate, fit, evidence.kind, templates_of(candidate, basis), basis.settings, wave_um)
 
 
 def curve_wavelengths(candidate: Candidate, basis: Basis) -> FloatArray:

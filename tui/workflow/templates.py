@@ -10,6 +10,7 @@ import threading
 from collections import OrderedDict
 from collections.abc import Mapping
 from functools import cache
+from dataclasses import replace
 from importlib.resources import files
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -103,10 +104,19 @@ def content_digest(paths: list[Any]) -> str:
 def build(settings: Settings, user_bands: Mapping[str, Band], queue: str = "") -> Templates:
     """Build the grids from the packaged tables and, for a grid, the queue's spectra; seconds."""
     from tui.data import load
-    from tui.physics.templates import Spread, build_templates
+    from tui.physics.spectral import INSTRUMENT, POINT_FLOOR, broad_bands
 
     packaged = load.bands()
     bands = [*packaged.values(), *(band for name, band in user_bands.items() if name not in packaged)]
+    wide = list(broad_bands(settings.floors.get(INSTRUMENT, POINT_FLOOR)))
+    return replace(grids_through(bands, settings, queue), broad=grids_through(wide, settings, queue))
+
+
+def grids_through(bands: list[Band], settings: Settings, queue: str = "") -> Templates:
+    """The grids through some bands."""
+    from tui.data import load
+    from tui.physics.templates import Spread, build_templates
+
     photosphere = photosphere_of(settings.photosphere, bands, queue)
     spreads = [
         Spread(
