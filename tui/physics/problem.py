@@ -104,7 +104,8 @@ def build_problem(
     """
     values = [fitted_bands(candidate) for candidate in candidates]
     used = {band for row in values for band in row} - set(templates.silent)
-    names = [name for name in templates.names if name in used]
+    spoken = [name for name in templates.names if name not in templates.silent]
+    names = [name for name in spoken if name in used] or spoken[:1]  # never no column at all
     local = templates.take([*names, *sorted(used - set(names))])
     place = {name: column for column, name in enumerate(local.names)}
     shape = (len(candidates), len(place))

@@ -325,5 +325,5 @@ def _tied(
     relative = np.where(known, 2 * parallax_sigma(problem) / parallax, np.inf)
     pull = (np.where(known, 1.0 / (np.maximum(wish, 1e-12) * relative), 0.0) ** 2)[:, None, :].astype(COARSE)
     wish = np.minimum(wish, 1e15)[:, None, :].astype(COARSE)  # nothing detected: no scale to draw towards
-    s = np.maximum((b + pull * wish) / (a + pull), TINY)
+    s = np.maximum((b + pull * wish) / (a + pull + TINY), TINY)
     return s, s * ratio, 2 * s * b - s**2 * a - pull * (s - wish) ** 2
