@@ -34,16 +34,17 @@ class Sky:
 
     def __post_init__(self):
         self.local = self.templates.take(self.names)
-        self.rules = [quadrature(band) for band in self.local.bands]
+        rules = [quadrature(band, 120) for band in self.local.bands]
+        self.wave, self.weight = (np.concatenate([getattr(rule, name) for rule in rules]) for name in ("wave_um", "weight"))
+        self.starts = np.cumsum([0, *(rule.wave_um.size for rule in rules)])[:-1]
+        ends = [extinction_curve(self.wave, self.templates.law, r_v) for r_v in (2.5, 5.0)]
+        self.slope = (ends[0] - ends[1]) / (1 / 2.5 - 1 / 5.0)  # G23 is linear in 1/R_V (Gordon et al. 2023, eq. 1)
+        self.at_five = ends[1]
 
-    def seen(self, spectrum, av=0.0, r_v=3.1, law="g23"):
+    def seen(self, spectrum, av=0.0, r_v=3.1):
         """Band fluxes of a function of wavelength behind a screen."""
-        return np.array(
-            [
-                np.sum(rule.weight * spectrum(rule.wave_um) * np.exp(-MAG * av * extinction_curve(rule.wave_um, law, r_v)))
-                for rule in self.rules
-            ]
-        )
+        curve = self.at_five + self.slope * (1 / r_v - 1 / 5.0)
+        return np.add.reduceat(self.weight * spectrum(self.wave) * np.exp(-MAG * av * curve), self.starts)
 
     def star(self, teff_k, av=0.0, r_v=3.1):
         """A template at any temperature, dimmed as a Planck source of that temperature is."""

@@ -126,3 +126,11 @@ def test_a_spectrum_is_left_out_and_said_so(templates, sky):
     star = plain_candidate(sky, sky.star(5772.0), spectrum=Spectrum(wave, wave, wave))
     (found,) = mixture.assess([star], templates, Settings(), [1.0])
     assert any("spectrum" in caution for caution in found.cautions)
+
+
+def test_points_of_a_spectrum_stay_out_where_the_photospheres_have_no_lines(templates, sky):
+    star = plain_candidate(sky, sky.star(5772.0))
+    point = Measurement("spectrum:0.55", 1e-9, 1e-12)
+    (found,) = mixture.assess([Candidate("c", (*star.measurements, point))], templates, Settings())
+    assert found.adequate is True and found.facts["points"] == 14
+    assert found.cautions == (mixture.SPECTRUM_CAUTION,)

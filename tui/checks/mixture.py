@@ -3,16 +3,18 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 from functools import lru_cache
 
 import numpy as np
 
-from tui.model import Candidate, Evidence, FloatArray, Settings
+from tui.model import Candidate, Evidence, FloatArray, Settings, Spectrum
 from tui.physics.cone import Bound, p_bound, whiten
 from tui.physics.cone_errors import ErrorModel, consistent_bound, widened, widened
 from tui.physics.generators import Generators, build_generators
 from tui.physics.photometry import is_narrow, quadrature
 from tui.physics.problem import Problem, build_problem
+from tui.physics.spectral import is_point
 from tui.physics.templates import Templates
 
 KIND = "mixture"
@@ -28,6 +30,8 @@ INSIDE = frozenset(
         "bound pair", "free pair", "star + compact",
     }
 )  # fmt: skip  # models made of the cone's own sources: their chi-square is never below the best mixture's
+BROAD = ("dwarfs", "planck")  # sources that do not know a star's lines
+NO_SPECTRUM = Spectrum(np.empty(0), np.empty(0), np.empty(0))  # marks that there was one
 SPECTRUM_CAUTION = (
     "The spectrum is not in the mixture bound: without photosphere spectra at its resolution "
     "an ordinary star's own lines would be refused."
@@ -50,12 +54,22 @@ def assess(
     Raises:
         TemplateError: `templates` lacks a band that some candidate has.
     """
+    if templates.photosphere in BROAD:
+        candidates = [_broad(candidate) for candidate in candidates]
     nothing = np.full(len(candidates), np.nan)
     problem = build_problem(
         candidates, templates, parallaxes=(nothing, nothing), av_max=nothing, common=settings.common
     )
     cautions = [(SPECTRUM_CAUTION,) if one.spectrum is not None else () for one in candidates]
     return assess_problem(problem, templates, settings, known_chi2, cautions)
+
+
+def _broad(candidate: Candidate) -> Candidate:
+    """The candidate without the points of its spectrum."""
+    kept = tuple(one for one in candidate.measurements if not is_point(one.band))
+    if len(kept) == len(candidate.measurements):
+        return candidate
+    return replace(candidate, measurements=kept, spectrum=NO_SPECTRUM)
 
 
 def known_from(evidence: Mapping[str, Evidence]) -> float:

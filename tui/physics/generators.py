@@ -251,7 +251,7 @@ class _Part:
     keys: tuple[str, ...]
     sources: FloatArray
     screens: FloatArray
-    flux: FloatArray  # shape (B, columns)
+    flux: NDArray[np.floating]  # shape (B, columns)
     level: NDArray[np.int64]  # shape (columns,): 4 coarse, 2 middle, 1 fine only
 
 
@@ -273,18 +273,19 @@ class _Light:
             source = planck_sources(rule.wave_um, axes[0])[:, None, :] * rule.weight
             if shape:
                 source = source * shape(rule.wave_um, *rest.T)[None, :, :]
-            rows.append((source.reshape(len(parameters), -1) @ shade).ravel())
+            rows.append((source.reshape(len(parameters), -1) @ shade).ravel().astype(np.float32))
         return _Part(name, keys, parameters, screens[0], np.stack(rows), np.minimum.outer(level, screens[1]).ravel())
 
     def photospheres(self, teff_k: FloatArray, ln_flux: FloatArray, screens: Screens) -> _Part:
         """Templates dimmed in each band as a Planck source of their temperature is."""
         step = -(-teff_k.size // TEMPLATES_MAX)
         teff = teff_k[::step]
+        top = np.nanmax(ln_flux)
         rows = []
         for rule, shade, ln_band in zip(self.rules, self.shades[id(screens)], ln_flux[::step].T, strict=True):
             source = planck_sources(rule.wave_um, teff) * rule.weight
             dimmed = (source @ shade) / source.sum(axis=1, keepdims=True)
-            rows.append((np.exp(ln_band)[:, None] * dimmed).ravel())
+            rows.append((np.exp(ln_band - top)[:, None] * dimmed).ravel().astype(np.float32))
         level = np.minimum.outer(stride(teff.size), screens[1]).ravel()
         return _Part("photosphere", ("teff",), teff[:, None], screens[0], np.nan_to_num(np.stack(rows)), level)
 
