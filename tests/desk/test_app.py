@@ -188,3 +188,17 @@ def test_thin_leaves_out_what_a_slow_line_need_not_carry(fake_session, drive):
         assert app.animation_level == "none" and not app.screen.has_room
 
     drive(fake_session, steps, size=(200, 60), thin=True)
+
+
+def test_a_long_round_is_told_of_a_break_once(fake_session, drive, monkeypatch):
+    now = [1000.0]
+    monkeypatch.setattr("tui.desk.app.monotonic", lambda: now[0])
+
+    async def steps(app, pilot):
+        assert app.break_line() == ""
+        app.note_ruling("2026-03-04T05:06:07.000000Z")
+        now[0] += 51 * 60
+        assert app.break_line().startswith("51 minutes without a break.")
+        assert app.break_line() == ""
+
+    drive(fake_session, steps)

@@ -3,8 +3,11 @@
 from __future__ import annotations
 
 import asyncio
+import os
 import signal
+import threading
 from collections.abc import Mapping
+from time import monotonic
 from typing import TYPE_CHECKING, Any
 
 from textual import events
@@ -12,6 +15,7 @@ from textual.app import App
 from textual.binding import Binding
 from textual.screen import Screen
 
+from tui.desk.help import BREAK_AFTER_S, BREAK_LINE
 from tui.desk.keys import checked_keymap
 from tui.desk.text import clock
 from tui.desk.theme import DEFAULT_THEME, THEME_NAMES, describe, theme_name, themes
@@ -21,6 +25,7 @@ if TYPE_CHECKING:
     from tui.workflow.session import Session
 
 SMALLEST = (80, 24)
+GRACE_S = 2.0  # after a signal, for putting the terminal back as it was
 
 
 class Desk(App[None], inherit_bindings=False):
@@ -59,7 +64,9 @@ class Desk(App[None], inherit_bindings=False):
         self.session = session
         self.thin = thin
         self.saved = ""  # hours and minutes of the last ruling recorded here
-        self.rulings_made = 0
+        self._is_small = False
+        self._watch: threading.Timer | None = None
+        self._sat_down: float | None = None  # monotonic seconds; None before the first ruling
         if thin:
             self.animation_level = "none"
         for one in themes():
@@ -77,21 +84,36 @@ class Desk(App[None], inherit_bindings=False):
         """End in order when the line is cut."""
         loop = asyncio.get_running_loop()
         for number in (signal.SIGTERM, signal.SIGHUP):
-            loop.add_signal_handler(number, self.exit)
+            loop.add_signal_handler(number, self.leave_at_once, number)
+
+    def leave_at_once(self, number: int) -> None:
+        """Leave in order; where the terminal is gone and its writer would wait for ever, leave without.
+
+        Whatever was ruled or typed is in the file already.
+        """
+        self._watch = threading.Timer(GRACE_S, os._exit, (128 + number,))
+        self._watch.daemon = True
+        self._watch.start()
+        self.exit()
 
     def on_resize(self, event: events.Resize) -> None:
         """Below the smallest size a plain sentence stands in for everything, until there is room again."""
-        from tui.desk.screens.small import SmallScreen
-
         is_small = event.size.width < SMALLEST[0] or event.size.height < SMALLEST[1]
-        if is_small and not isinstance(self.screen, SmallScreen):
+        if is_small and not self._is_small:
+            from tui.desk.screens.small import SmallScreen
+
             self.push_screen(SmallScreen())
-        elif not is_small and isinstance(self.screen, SmallScreen):
+        elif self._is_small and not is_small:
             self.pop_screen()
+        self._is_small = is_small
 
     def run(self, **options: Any) -> None:
         """Run in this terminal; on a slow line without following the mouse."""
-        super().run(**{"mouse": not self.thin} | options)
+        try:
+            super().run(**{"mouse": not self.thin} | options)
+        finally:
+            if self._watch is not None:
+                self._watch.cancel()
 
     def next_theme(self) -> str:
         """Take the next set of colours; returns what it is, in words."""
@@ -103,4 +125,13 @@ class Desk(App[None], inherit_bindings=False):
     def note_ruling(self, utc: str) -> None:
         """A ruling was recorded at `utc`."""
         self.saved = clock(utc)
-        self.rulings_made += 1
+        if self._sat_down is None:
+            self._sat_down = monotonic()
+
+    def break_line(self) -> str:
+        """Once in a long round, a word about a break; else empty."""
+        sat = 0.0 if self._sat_down is None else monotonic() - self._sat_down
+        if sat < BREAK_AFTER_S:
+            return ""
+        self._sat_down = None
+        return BREAK_LINE.format(minutes=round(sat / 60))

@@ -165,6 +165,7 @@ class QueueBackground(DeskScreen[None]):
         if self._was_left:
             self._was_left = False
             self.refresh_all()
+            self.say(self.app.break_line())
 
     def on_screen_suspend(self) -> None:
         """Another screen lies over this one."""
