@@ -84,6 +84,7 @@ def test_survey_expectation(tables):
     assert expected_in_survey([0.1, float("nan")]) == pytest.approx(0.1)
     found = chance({"ra": 192.86, "dec": 27.13}, tables)
     assert any("stars searched" in text for text in chance_sentences(found, 1_000_000))
+    assert any("searched about one meets such" in text for text in chance_sentences(found, round(1.1 / found.p)))
     assert not any("stars searched" in text for text in chance_sentences(found, None))
 
 

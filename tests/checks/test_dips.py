@@ -84,6 +84,22 @@ def test_no_dip_asks_nothing(kind, answer):
         assert with_dips(kind, answer, dips) is answer
 
 
+def test_a_grey_dip_is_no_coloured_dust():
+    """A power law of slope zero is grey under another name; so is one that is redder than grey."""
+    grey, red = evidence(GREY_DEPTH), evidence(REVERSED)
+    for found in (grey, red):
+        assert found.facts["coloured_adequate"] is False and with_dips("dust", True, found) is False
+    assert any("is no colour" in text for text in grey.cautions)
+    assert any("deeper in the red" in text for text in red.cautions)
+
+
+def test_shallow_colours_that_the_errors_allow_to_be_grey_are_said_to_tell_nothing():
+    found = evidence(ISM_DEPTH, error=0.2 * ISM_DEPTH.max())
+    assert found.facts["stands"] is True
+    assert found.facts["grey_adequate"] is True and found.facts["coloured_adequate"] is True
+    assert any("cannot tell a grey body from dust" in text for text in found.cautions)
+
+
 def test_one_band_tests_nothing():
     found = evidence([0.05], names=("SDSS_r",))
     assert found.adequate is None and found.facts["stands"] is True

@@ -12,6 +12,7 @@ from tui.checks.brightness import brightness_doubts
 from tui.checks.colours import w4_red_excess, w4_sentence
 from tui.checks.doubts import Doubt, sentences, suspect_bands
 from tui.checks.gaia_quality import gaia_doubts, gaia_facts, gaia_numbers
+from tui.checks.quality import candidate_quality
 from tui.data.load import bands
 from tui.model import Candidate, Measurement
 from tui.physics.gaia import expected_excess, quiet_scatter
@@ -43,6 +44,17 @@ def test_brightness(band, mag, kind, is_suspicion):
 def test_ordinary_brightness_and_limits_say_nothing():
     ordinary = (at_mag("W1", 10.0), at_mag("Gaia_G", 12.0), at_mag("W4", 9.5, limit=True), Measurement("B", -1.0, 1.0))
     assert brightness_doubts(Candidate("one", ordinary), BANDS) == []
+
+
+@pytest.mark.parametrize("more", [{"error": 0.7}, {"flags": {"ph_qual": "U"}}], ids=["1.4 sigma", "U"])
+def test_depth_says_nothing_of_what_was_not_detected(more):
+    assert brightness_doubts(Candidate("one", (at_mag("W4", 12.2, **more),)), BANDS) == []
+
+
+def test_what_says_that_all_is_well_is_only_counted(tables):
+    columns = {"w3mag": "9.42", "w3sigm": "0.05"}
+    found = candidate_quality(Candidate("one", (at_mag("W3", 9.42, flags=columns),)), BANDS, tables, {}, {})
+    assert found.as_facts()["doubts"] == [] and found.as_facts()["doubts_fine"] == 1
 
 
 def test_bright_gaia_names_the_correction():

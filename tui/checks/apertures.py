@@ -39,7 +39,7 @@ class ApertureDifference:
         """The difference as evidence about the band."""
         number = f"{self.difference_mag:+.2f} +- {self.error_mag:.2f} mag"
         if not self.is_odd:
-            return Doubt(self.band, "aperture", f"aperture and profile magnitudes agree ({number})", INFORMATIVE)
+            return Doubt(self.band, "aperture", f"aperture and profile magnitudes agree ({number})", INFORMATIVE, is_fine=True)
         why = "light beside the star" if self.difference_mag < 0 else "the profile fit took in too much"
         return Doubt(self.band, "aperture", f"aperture minus profile magnitude {number}: {why}", SUSPICION)
 

@@ -15,7 +15,7 @@ from tui.physics.fitting import FitBatch, finish, fit
 from tui.physics.problem import Problem
 
 KIND = "blend"
-VERSION = 1  # raise it whenever the same candidate could get other numbers
+VERSION = 2  # raise it whenever the same candidate could get other numbers
 COMPACT_RADIUS = (0.005, 0.3)  # R_sun: white dwarfs and hot subdwarfs
 EQUAL_PAIR_MAG = 0.753
 MODELS = (BOUND_PAIR, FREE_PAIR, COMPACT, GALAXY)

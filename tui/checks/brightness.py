@@ -10,6 +10,7 @@ from tui.model import Band, Candidate, Measurement
 from tui.physics.gaia import BRIGHT_G_RANGE, bright_correction
 
 NEAR_SATURATION_MAG = 0.5  # fainter than the limit by less than this: the detector may not be linear; our choice
+DETECTED_SIGMA = 2.0  # AllWISE calls what lies below it an upper limit (ph_qual U); Explanatory Supplement II.1.a
 FAINT_BP_MAG = 20.3  # beyond it BP of red sources is too bright (Riello et al. 2021, A&A 649, A3, section 8.1)
 
 
@@ -20,6 +21,13 @@ def band_mag(measurement: Measurement, band: Band) -> float:
     return -2.5 * math.log10(measurement.flux_jy / band.zero_point_jy)
 
 
+def is_detected(measurement: Measurement) -> bool:
+    """Whether the catalogue saw the star in this band, and did not just measure its place on the sky."""
+    if measurement.limit or measurement.flags.get("ph_qual", "").strip() == "U":
+        return False
+    return not measurement.flux_jy < DETECTED_SIGMA * measurement.error_jy
+
+
 def brightness_doubts(candidate: Candidate, bands: Mapping[str, Band]) -> list[Doubt]:
     """Saturation (suspicion), nearness to it, and detections below the survey's depth, for each measured band."""
     doubts: list[Doubt] = []
@@ -28,7 +36,7 @@ def brightness_doubts(candidate: Candidate, bands: Mapping[str, Band]) -> list[D
         mag = math.nan if band is None else band_mag(measurement, band)
         if math.isfinite(mag):
             doubts.extend(_bright(band, mag))
-            doubts.extend(_faint(band, mag))
+            doubts.extend(_faint(band, mag) if is_detected(measurement) else [])
     return list(dict.fromkeys(doubts))
 
 

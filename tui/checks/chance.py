@@ -170,9 +170,9 @@ def chance_sentences(chance: Chance | None, n_searched: int | None) -> tuple[str
             f"{chance.radius_arcsec:.1f} arcsec of {100 * chance.p:.1g} % of stars."
         )
     if n_searched and n_searched * chance.p >= 1.0:
-        said.append(
-            f"Among the {n_searched} stars searched some {n_searched * chance.p:.0f} meet such a source by chance."
-        )
+        met = round(n_searched * chance.p)
+        who = "about one meets" if met == 1 else f"some {met} meet"
+        said.append(f"Among the {n_searched} stars searched {who} such a source by chance.")
     return tuple(said)
 
 

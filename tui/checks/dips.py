@@ -25,8 +25,9 @@ from tui.physics.extinction import R_V_RANGE, extinction_curve
 from tui.physics.statistics import adequate, aic, bic, chi2_tail
 
 KIND = "dips"
-VERSION = 1  # raise it whenever the same candidate could get other numbers
+VERSION = 2  # raise it whenever the same candidate could get other numbers
 GREY, LAW, POWER = "grey", "A(lambda), R_V", "lambda^-alpha"
+COLOURED_SIGMA = 2.0  # a slope above zero by this much counts as colour; our choice
 STANDS_SIGMA = 3.0  # a dip stands where some band's depth is at least this significant
 R_V = np.linspace(*R_V_RANGE, 34)
 LN_2PI = float(np.log(2 * np.pi))
@@ -181,8 +182,29 @@ def dip_facts(
         "refused": [model for model, answer in answers[main.name].items() if answer is False],
         "grey_adequate": all_of([answers[name][GREY] for name in standing]),
         "law_adequate": all_of([answers[name][LAW] for name in standing]),
-        "coloured_adequate": all_of([any_stands([answers[name][LAW], answers[name][POWER]]) for name in standing]),
+        "coloured_adequate": all_of([coloured_answer(fits[name], answers[name]) for name in standing]),
     }  # fmt: skip
+
+
+def is_coloured(fits: Mapping[str, Fit], answers: Mapping[str, bool | None]) -> bool:
+    """Whether a dip is deeper in the blue than a grey body's: its slope is above zero, or grey is refused for it.
+
+    Large grains dim all bands alike and are grey here; a slope below zero is none of small grains.
+    """
+    alpha = fits[POWER].params["alpha"]
+    if not alpha.value > 0:
+        return False
+    if answers[GREY] is False:
+        return True
+    return alpha.low > 0 if alpha.limit else alpha.value > COLOURED_SIGMA * (alpha.value - alpha.low)
+
+
+def coloured_answer(fits: Mapping[str, Fit], answers: Mapping[str, bool | None]) -> bool | None:
+    """Whether small grains explain a dip: by the law, or by a power law that is one and not flat."""
+    power = answers[POWER]
+    if power is True and not is_coloured(fits, answers):
+        power = False
+    return any_stands([answers[LAW], power])
 
 
 def event_sentences(event: Event, fits: Mapping[str, Fit], answers: Mapping[str, bool | None]) -> list[str]:
@@ -201,6 +223,13 @@ def event_sentences(event: Event, fits: Mapping[str, Fit], answers: Mapping[str,
         said.append(
             f"{name}: deeper in the red than in the blue (alpha {alpha.value:.1f}); small grains do the opposite."
         )
+    elif answers[POWER] is True and not is_coloured(fits, answers):
+        said.append(
+            f"{name}: alpha {alpha.value:.1f} ({alpha.low:.1f} to {alpha.high:.1f}) is no colour: what is grey is an "
+            "opaque body or large grains (see blend), and small grains are not needed."
+        )
+    if answers[GREY] is True and answers[LAW] is True:
+        said.append(f"{name}: these depths cannot tell a grey body from dust.")
     if any(answers[model] is None for model in (GREY, LAW, POWER)):
         said.append(f"{name}: {event.depth.size} bands are too few to test every model.")
     return said

@@ -18,6 +18,7 @@ class Doubt:
     kind: str  # one of DOUBT_KINDS
     text: str
     severity: str = INFORMATIVE
+    is_fine: bool = False  # it says that nothing is wrong: counted, and not told again
 
     @property
     def is_suspicion(self) -> bool:

@@ -8,9 +8,9 @@ from dataclasses import replace
 import numpy as np
 
 from tui.checks.prepare import fact
-from tui.checks.record import Group, any_stands, dust_radius, luminosity_sun, ordered_fits, stands
+from tui.checks.record import Group, any_stands, dust_radius, fits_of, luminosity_sun, ordered_fits, stands
 from tui.checks.remarks import common_remarks, gain_over_star
-from tui.model import Candidate, Evidence, Fit, FloatArray, Settings
+from tui.model import Candidate, Evidence, Fit, FloatArray, Param, Settings
 from tui.physics.composite import A2, DUST, DUST_AV, TWO_DUST, X2, kit_for, predict
 from tui.physics.context import shell_dimming, steady_state_ceiling
 from tui.physics.fitting import FitBatch, fit
@@ -18,7 +18,7 @@ from tui.physics.problem import Problem
 from tui.physics.statistics import chi2_tail
 
 KIND = "dust"
-VERSION = 1  # raise it whenever the same candidate could get other numbers
+VERSION = 2  # raise it whenever the same candidate could get other numbers
 SUBLIMATION_K = 1500.0  # silicates; common practice, no single source
 EXTREME_F = 0.1
 NO_DISC_F = 0.5
@@ -27,6 +27,9 @@ TWO_BANDS = 5  # bands that must carry an excess before a second temperature is 
 EXCESS_PULL = 3.0
 LIMIT_TEMPERATURES_K = (30.0, 50.0, 80.0, 120.0, 200.0, 300.0, 500.0, 800.0, 1200.0)
 ONE_SIDED_95 = 2.71
+DUST_PARAMETERS = 2  # its temperature and its fraction: degrees of freedom of what dust gains
+LEAST_DIMMING_MAG = 0.05  # of a shell: less than that no A_V contradicts
+LEAST_AV_SIGMA = 0.02  # mag
 
 
 def fit_dust(problem: Problem, star: FitBatch, settings: Settings) -> list[Group]:
@@ -57,12 +60,28 @@ def assess(
     settings: Settings,
 ) -> list[Evidence]:
     """Dust evidence for each candidate; order kept."""
-    fits = ordered_fits(fit_dust(problem, star_batch, settings), len(problem))
+    groups = fit_dust(problem, star_batch, settings)
+    fits = ordered_fits(groups, len(problem))
     limits = largest_fraction(star_batch)
+    screens = screens_of(groups[1], [row for row, found in enumerate(fits) if asks_for_screen(found[0][0])])
     return [
-        one_evidence(candidate, fits[row], star[row], problem, row, limits[row], settings)
+        one_evidence(candidate, fits[row], star[row], problem, row, limits[row], screens.get(row), settings)
         for row, candidate in enumerate(candidates)
     ]
+
+
+def asks_for_screen(best: Fit) -> bool:
+    """Whether dust all round would dim the star by what an A_V can contradict, and the best fit has no A_V."""
+    fraction = best.params.get("dust_fractional_luminosity")
+    return fraction is not None and "av" not in best.params and shell_dimming(fraction.value) >= LEAST_DIMMING_MAG
+
+
+def screens_of(screened: Group, rows: Sequence[int]) -> dict[int, Param]:
+    """Row -> A_V of its fit behind a screen, with its interval."""
+    if not rows:
+        return {}
+    found = fits_of(screened.batch.take(np.array(rows)))
+    return {row: one.params["av"] for row, one in zip(rows, found, strict=True)}
 
 
 def one_evidence(
@@ -72,9 +91,14 @@ def one_evidence(
     problem: Problem,
     row: int,
     limits: FloatArray,
+    screen: Param | None,
     settings: Settings,
 ) -> Evidence:
-    """Put one candidate's evidence together."""
+    """Put one candidate's evidence together.
+
+    Remarks about the dust stand only beside a fit that is not refused and is better than the star alone by more than
+    chance: where nothing asks for dust, its numbers mean nothing.
+    """
     if star.best is None:
         return Evidence(KIND, VERSION, None, (), star.cautions[:1], {}, bands=star.bands)
     parallax = float(problem.parallax_mas[row])
@@ -82,10 +106,13 @@ def one_evidence(
     best = ordered[0]
     told: dict[str, object] = gain_over_star(best, star.best)
     told["limit_temperature_k"] = list(LIMIT_TEMPERATURES_K)
-    told["limit_fractional_luminosity"] = limits.tolist()
+    told["limit_fractional_luminosity"] = [float(f"{limit:.4g}") for limit in limits]
     cautions = common_remarks(best, star.adequate, settings)
-    cautions += dust_cautions(candidate, best, parallax, told)
-    if "dust_temperature" not in best.params:
+    is_better = float(chi2_tail(max(star.best.chi2 - best.chi2, 0.0), DUST_PARAMETERS)) < settings.p_min
+    if is_better and stands(*fits[0], settings) is not False:
+        av = best.params.get("av", screen)
+        cautions += dust_cautions(candidate, best, parallax, told, av, float(problem.av_max[row]))
+    if "dust_temperature" not in best.params or (star.adequate and not is_better):
         cautions.append(limit_sentence(limits))
     answer = any_stands([stands(each, points, settings) for each, points in fits])
     return Evidence(KIND, VERSION, answer, tuple(ordered), tuple(cautions), told, bands=star.bands)
@@ -100,8 +127,20 @@ def with_radius(fit_: Fit, parallax_mas: float) -> Fit:
     return replace(fit_, params={**fit_.params, "dust_radius": dust_radius(temperature, luminosity)})
 
 
-def dust_cautions(candidate: Candidate, best: Fit, parallax_mas: float, told: Mapping[str, object]) -> list[str]:
-    """Physical remarks; none of them refuses a fit."""
+def dust_cautions(
+    candidate: Candidate,
+    best: Fit,
+    parallax_mas: float,
+    told: Mapping[str, object],
+    av: Param | None,
+    av_ceiling: float,
+) -> list[str]:
+    """Physical remarks; none of them refuses a fit.
+
+    Args:
+        av: A_V of the best fit, or of the one behind a screen where the best has none.
+        av_ceiling: mag, the most extinction that the line of sight allows.
+    """
     found, params = [], best.params
     temperature, fraction = params.get("dust_temperature"), params.get("dust_fractional_luminosity")
     if temperature is None or fraction is None:
@@ -115,21 +154,28 @@ def dust_cautions(candidate: Candidate, best: Fit, parallax_mas: float, told: Ma
     carried = told.get("carried_by") or []
     if len(carried) == 1:
         found.append(f"Only {carried[0]} carries the excess: one band fixes no temperature.")
-    found += shell_remark(params)
+    found += shell_remark(fraction, av, av_ceiling)
     found += age_remark(candidate, best, parallax_mas)
     return found
 
 
-def shell_remark(params: Mapping[str, object]) -> list[str]:
-    """Dust all round the star would dim it by 2.5 log10(1 + f); a conflict only beyond 3 sigma of A_V."""
-    av, fraction = params.get("av"), params["dust_fractional_luminosity"]
+def shell_remark(fraction: Param, av: Param | None, av_ceiling: float) -> list[str]:
+    """Dust all round the star would dim it by 2.5 log10(1 + f); a conflict only beyond 3 sigma of A_V.
+
+    Where no A_V was fitted, only more than the line of sight allows is a conflict; at its ceiling A_V contradicts none.
+    """
     dimming = float(shell_dimming(fraction.value))
-    if av is None or dimming < 0.05:
+    if dimming < LEAST_DIMMING_MAG:
         return []
-    upper = av.value + 3 * max(av.high - av.value, 0.02)
-    if dimming <= upper:
+    if av is None or not np.isfinite(av.high):
+        upper, what = av_ceiling, f"and the line of sight allows {av_ceiling:.2f}"
+    elif av.limit and not av.high > av.value:
         return []
-    return [f"A shell all round would dim the star by {dimming:.2f} mag, and A_V {av.value:.2f} allows {upper:.2f}."]
+    else:
+        sigma = (av.high - av.value) / (ONE_SIDED_95**0.5 if av.limit else 1.0)
+        upper = av.value + 3 * max(sigma, LEAST_AV_SIGMA)
+        what = f"and A_V {av.value:.2f} allows {upper:.2f}"
+    return [] if dimming <= upper else [f"A shell all round would dim the star by {dimming:.2f} mag, {what}."]
 
 
 def age_remark(candidate: Candidate, best: Fit, parallax_mas: float) -> list[str]:

@@ -35,7 +35,7 @@ class Constancy:
         """The outcome as evidence about the band."""
         if self.is_constant:
             text = f"{self.n} epochs agree, scatter {100 * self.scatter:.1f} %"
-            return Doubt(self.band, "epoch", text, INFORMATIVE)
+            return Doubt(self.band, "epoch", text, INFORMATIVE, is_fine=True)
         text = f"{self.n} epochs disagree: scatter {100 * self.scatter:.1f} %, p {self.p:.1g}"
         return Doubt(self.band, "epoch", text, SUSPICION)
 

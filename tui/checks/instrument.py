@@ -21,7 +21,7 @@ from tui.physics.fitting import FitBatch, fit
 from tui.physics.removal import chi2_without
 
 KIND = "instrument"
-VERSION = 1  # raise it whenever the same candidate could get other numbers
+VERSION = 2  # raise it whenever the same candidate could get other numbers
 FEW = 2  # degrees of freedom without the suspects, up to which a caution is given
 
 Record = Callable[[FitBatch], list[Fit]]  # how fitted rows become fits

@@ -31,15 +31,20 @@ class Quality:
     is_loaded: bool  # whether any column was there that could speak against a band
 
     def as_facts(self) -> dict[str, Any]:
-        """As the evidence stores it: flags that say that all is well are only counted."""
+        """As the evidence stores it: what says that all is well is only counted."""
         telling = [reading for reading in self.flags if reading.cause]
+        others = [doubt for doubt in self.doubts if doubt.kind != "flag"]
         return {
             **self.gaia,
             "flags": [reading.as_dict() for reading in telling],
             "flags_fine": len(self.flags) - len(telling),
-            "doubts": [doubt.as_dict() for doubt in self.doubts if doubt.kind != "flag"],
-            "epochs": {e.band: {"n": e.n, "scatter": e.scatter, "p": e.p} for e in self.epochs},
-            "apertures": {a.band: {"difference": a.difference_mag, "error": a.error_mag} for a in self.apertures},
+            "doubts": [doubt.as_dict() for doubt in others if not doubt.is_fine],
+            "doubts_fine": sum(doubt.is_fine for doubt in others),
+            "epochs": {e.band: {"n": e.n, "scatter": round(e.scatter, 6), "p": e.p} for e in self.epochs},
+            "apertures": {
+                a.band: {"difference": round(a.difference_mag, 4), "error": round(a.error_mag, 4)}
+                for a in self.apertures
+            },
             "neighbour_leaks": [leak.as_dict() for leak in self.leaks if leak.leak_jy > 0],
         }
 
