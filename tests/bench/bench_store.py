@@ -1,4 +1,4 @@
-"""What the store costs: python tests/bench/bench_store.py [rulings] [long]; prints tables, writes to a temporary folder.
+"""What the store costs: python tests/bench/bench_store.py [rulings] [long]; prints tables, writes to temporary folders.
 
 `rulings`: eight reviewers, each a process, 2,000 rulings each on one file, with a person's pause shrunk
 to 20 ms and without any pause; `long`: a queue of a million rows.
@@ -83,8 +83,9 @@ def bench_rulings() -> None:
             kept = sum(1 for _ in ruling_log(connection))
             print(
                 f"pause {pause_ms:4.0f} ms: {len(took)} acknowledged, {kept} kept, "
-                f"{len(chain_faults(connection))} chain faults, {'errors: ' + errors if errors else 'no error'}; {len(took) / seconds:.0f} a second; "
-                f"median {statistics.median(took):.1f}, p99 {took[int(0.99 * len(took))]:.1f}, longest {took[-1]:.0f} ms"
+                f"{len(chain_faults(connection))} chain faults, {'errors: ' + errors if errors else 'no error'}; "
+                f"{len(took) / seconds:.0f} a second; median {statistics.median(took):.1f}, "
+                f"p99 {took[int(0.99 * len(took))]:.1f}, longest {took[-1]:.0f} ms"
             )
             connection.close()
 

@@ -67,7 +67,7 @@ def test_a_missing_queue_is_refused_and_not_made(path):
     assert not os.path.exists(path)
 
 
-@pytest.mark.parametrize("text", [b"name,ra\nSM-1,2\n", b"SQLite format 3\x00", b"\0" * 4096], ids=["csv", "cut", "nil"])
+@pytest.mark.parametrize("text", [b"name,ra\nSM-1,2\n", b"SQLite format 3\x00", b"\0" * 4096], ids=("csv", "cut", "0"))
 def test_what_is_no_queue_is_left_untouched(tmp_path, text):
     path = tmp_path / "not.db"
     path.write_bytes(text)

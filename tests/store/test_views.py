@@ -123,7 +123,7 @@ def everything_readable(connection, reviewer_id):
     return (
         view_rows(connection, reviewer_id, ids),
         view_counts(connection, reviewer_id),
-        [list(view_order(connection, reviewer_id, sort=sort, descending=way)) for sort in SORTS for way in (False, True)],
+        [view_order(connection, reviewer_id, sort=sort, descending=way) for sort in SORTS for way in (False, True)],
         [list(view_order(connection, reviewer_id, where=where)) for where in filters],
         [standing_for(connection, reviewer_id, name) for name in names(connection, ids)],
         [story(connection, reviewer_id, name) for name in names(connection, ids)],

@@ -13,8 +13,7 @@ import sqlite3
 from collections.abc import Iterator
 from dataclasses import replace
 
-from tui.consensus.seal import has_others_in_view
-from tui.consensus.standing import Standing
+from tui.consensus.history import current_rulings
 from tui.errors import StoreError, UnknownNameError
 from tui.model import CHECKS, RULINGS, Ruling, digest
 from tui.store import deriving
@@ -67,15 +66,14 @@ def append_ruling(connection: sqlite3.Connection, ruling: Ruling) -> Ruling:
             raise UnknownNameError("reviewer", ruling.reviewer_id, "Join first: plainlight join QUEUE HANDLE.")
         settings = read_settings(connection)
         ground = deriving.ground_of(connection, candidate_id)
-        before = deriving.stand(ground, settings)
         head = newest_of(connection, name, ruling.check, ruling.reviewer_id)
-        checked_against(before, ruling, head)
+        checked_against(ground, ruling, head)
         chained = replace(
             ruling,
             candidate=name,
             id=ruling.id or secrets.token_hex(16),
             evidence_digest=cited_digest(connection, candidate_id, ruling),
-            seen_others=has_others_in_view(before, ruling.reviewer_id),
+            seen_others=has_others_in_view(ground, ruling.reviewer_id),
             replaces=head.id if head else "",
             utc=later_utc(checked_utc(ruling.utc), head.utc if head else ""),
             previous_hash=last_hash(connection, ruling.reviewer_id),
@@ -103,11 +101,23 @@ def checked_words(ruling: Ruling) -> None:
         raise StoreError("The note holds a NUL character, which cannot be kept; take it out.")
 
 
-def checked_against(before: Standing, ruling: Ruling, head: Ruling | None) -> None:
+def has_others_in_view(ground: deriving.Ground, reviewer_id: str) -> bool:
+    """Whether a ruling made now has others' in view: the seal is open, and someone else has ruled here.
+
+    Every standing that was written kept its open seals, so those on file are all.
+    """
+    if reviewer_id not in ground.opened:
+        return False
+    return any(owner != reviewer_id for _, owner in current_rulings(ground.rulings))
+
+
+def checked_against(ground: deriving.Ground, ruling: Ruling, head: Ruling | None) -> None:
     """Refuse what the rules of the log do not allow at this moment."""
     if ruling.ruling == "withdrawn" and (head is None or head.ruling == "withdrawn"):
         raise StoreError(f"There is no ruling on {ruling.check} of {ruling.candidate} to withdraw.")
-    if before.states[ruling.check] == "nodata" and ruling.ruling not in ("unclear", "withdrawn"):
+    evidence = ground.evidence.get(ruling.check)
+    is_untestable = evidence is not None and evidence.adequate is None
+    if is_untestable and ruling.ruling not in ("unclear", "withdrawn"):
         raise StoreError(
             f"{ruling.check} of {ruling.candidate} cannot be tested with these data; only unclear can be ruled there."
         )
