@@ -7,6 +7,7 @@ from typing import Any
 
 from tui.checks.carrier import Carrier
 from tui.model import Settings
+from tui.physics.spectral import INSTRUMENT
 
 
 def carrier_facts(carrier: Carrier, suspects: Sequence[str]) -> dict[str, Any]:
@@ -38,6 +39,7 @@ def carrier_sentences(
         return tuple(said)
     said.append(f"Nothing independent speaks against {carrier.name}: a bad value and a real one look the same here.")
     spread = [name for name in bands if name in fitted]
-    if carrier.bands[0] == spread[0] or carrier.bands[-1] == spread[-1]:
+    at_end = carrier.bands[0] == spread[0] or carrier.bands[-1] == spread[-1]
+    if at_end and carrier.name != INSTRUMENT:
         said.append(f"{carrier.name} lies at the end of the spectrum: no band beyond it can tell which it is.")
     return tuple(said)

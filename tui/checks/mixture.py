@@ -14,6 +14,7 @@ from tui.physics.cone_errors import ErrorModel, consistent_bound, widened, widen
 from tui.physics.generators import Generators, build_generators
 from tui.physics.photometry import is_narrow, quadrature
 from tui.physics.problem import Problem, build_problem
+from tui.physics.spectral import is_point, stretches
 from tui.physics.spectral import is_point
 from tui.physics.templates import Templates
 
@@ -23,6 +24,7 @@ ENOUGH = 0.1  # a mixture with p of at least this (or p_min, if larger) is not i
 CHUNK = 512  # candidates solved together
 NODES = 120  # quadrature nodes a band; 240 give the same to 2e-5
 TOLD = 0.25  # bands whose weight is at least this share of the largest are named in the sentence
+STRETCHES = 2  # of a spectrum that are named
 PART_SHARE = 0.005  # smallest share of the light of a mixture's part that is listed
 INSIDE = frozenset(
     {
@@ -227,13 +229,20 @@ def refusal_sentence(facts: Mapping[str, object], limited: set[str]) -> str:
     """The witness in one sentence."""
     weights = facts["witness"]
     least = TOLD * max((abs(u) for u in weights.values()), default=0.0)
-    bright = _listed([name for name, u in weights.items() if u >= least], set())
-    faint = _listed([name for name, u in weights.items() if u <= -least], limited)
+    among = [name for name in weights if is_point(name)]
+    bright = _listed(_gathered([name for name, u in weights.items() if u >= least], among), set())
+    faint = _listed(_gathered([name for name, u in weights.items() if u <= -least], among), limited)
     verb = "is" if " and " not in bright else "are"
     return (
         f"{bright} {verb} too bright against {faint}: no mixture of {facts['family']} comes nearer than "
         f"chi-square {facts['chi2']:.1f} in {facts['points']} bands (p at most {facts['p']:.2g})."
     )
+
+
+def _gathered(names: Sequence[str], among: list[str]) -> list[str]:
+    """Band names, those of points of a spectrum as the longest stretches that they make."""
+    plain = [name for name in names if not is_point(name)]
+    return plain + stretches([name for name in names if is_point(name)], among)[:STRETCHES]
 
 
 def _listed(names: Sequence[str], limited: set[str]) -> str:

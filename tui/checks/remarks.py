@@ -10,6 +10,21 @@ TOO_GOOD = 0.99
 CARRIES = 1.0  # a band carries an improvement where its squared pull falls by more than this
 
 
+def source_named(photosphere: str) -> str:
+    """A photosphere source as sentences call it: a grid without the digits of its digest.
+
+    >>> source_named("dwarfs"), source_named("grid:0123456789abcdef mygrid (4000-7000 K)")
+    ('dwarfs', 'grid mygrid (4000-7000 K)')
+    """
+    kind, colon, rest = photosphere.partition(":")
+    return f"{kind} {rest.partition(' ')[2]}".strip() if colon else photosphere
+
+
+def source_remark(photosphere: str) -> list[str]:
+    """Which photosphere source the fits rest on, where it is not the usual one."""
+    return [] if photosphere == "dwarfs" else [f"Photosphere source: {source_named(photosphere)}."]
+
+
 def gain_over_star(fit: Fit, star: Fit) -> dict[str, object]:
     """How much better than the star alone a fit is, and which bands carry that."""
     falls = {

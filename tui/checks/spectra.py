@@ -8,6 +8,7 @@ from functools import lru_cache
 
 import numpy as np
 
+from tui.checks.remarks import source_named
 from tui.model import Candidate, Evidence, Fit, FloatArray, Measurement, Settings
 from tui.physics.spectral import (
     INSTRUMENT,
@@ -102,7 +103,7 @@ def with_spectrum(
         return evidence
     inside = measured.spectrum is None
     told = own_shape(candidate, best, templates, inside)
-    remarks = [] if inside else [NOT_FITTED.format(source=templates.photosphere)]
+    remarks = [] if inside else [NOT_FITTED.format(source=source_named(templates.photosphere))]
     if inside and templates.photosphere == "planck":
         remarks = [NO_LINES]
     if told is None:
@@ -164,7 +165,7 @@ def asks_for_more(evidence: Evidence, star: Evidence, templates: Templates) -> E
     """A natural check's evidence with the remark that the spectrum, which is not in its fits, misfits."""
     if not star.facts.get("spectrum_misfits") or templates.points:
         return evidence
-    remark = HAS_TO_BE_EXPLAINED.format(source=templates.photosphere)
+    remark = HAS_TO_BE_EXPLAINED.format(source=source_named(templates.photosphere))
     return replace(evidence, cautions=(*evidence.cautions, remark))
 
 

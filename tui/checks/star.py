@@ -9,7 +9,7 @@ import numpy as np
 
 from tui.checks.prepare import fact
 from tui.checks.record import fits_of, stands
-from tui.checks.remarks import common_remarks, joined
+from tui.checks.remarks import common_remarks, joined, source_named, source_remark
 from tui.checks.spectra import ln_p_of_parts, named
 from tui.model import Candidate, Evidence, Fit, Settings
 from tui.physics.composite import LN_S, LN_T
@@ -18,7 +18,7 @@ from tui.physics.fitting import FitBatch
 from tui.physics.statistics import ln_chi2_tail, sigma_of_ln_p
 
 KIND = "star"
-VERSION = 1  # raise it whenever the same candidate could get other numbers
+VERSION = 2  # raise it whenever the same candidate could get other numbers
 SEQUENCE_SCATTER_MAG = 0.25  # of real dwarfs about the mean sequence
 EVOLVED_MAG = 1.3  # more than any triple of equals (1.193 mag) explains
 DIM_MAG = -0.5
@@ -69,6 +69,7 @@ def one_evidence(
         *luminosity_remarks(*extra),
         *parallax_remarks(candidate, batch, row, settings),
         *left_out,
+        *source_remark(batch.problem.templates.photosphere),
     ]
     return Evidence(KIND, VERSION, adequate, (fit,), tuple(cautions), told, bands=bands)
 
@@ -88,7 +89,7 @@ def silent_bands(candidate: Candidate, batch: FitBatch) -> list[str]:
     measured = {m.band for m in candidate.measurements if not m.exclude} & silent
     if not measured:
         return []
-    source = batch.problem.templates.photosphere
+    source = source_named(batch.problem.templates.photosphere)
     return [f"Not fitted: {joined(named(sorted(measured)))}; the photosphere source {source} says nothing there."]
 
 
@@ -98,7 +99,7 @@ def range_remarks(batch: FitBatch, row: int) -> list[str]:
     ends = [name for name, edge in (("coolest", star.low), ("hottest", star.high)) if abs(ln_t - edge) < EDGE]
     if not ends:
         return []
-    source = batch.problem.templates.photosphere
+    source = source_named(batch.problem.templates.photosphere)
     return [f"The fit lies at the {ends[0]} template of {source} ({np.exp(ln_t):.0f} K): the star may lie outside it."]
 
 

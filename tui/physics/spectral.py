@@ -40,6 +40,27 @@ def is_point(band: str) -> bool:
     return band.startswith(PREFIX)
 
 
+def stretches(points: list[str], among: list[str]) -> list[str]:
+    """Where some points of a spectrum lie, neighbours as one stretch, longest first.
+
+    Args:
+        points, among: names of points by wavelength; `among` all there are.
+
+    >>> all_points = [f"spectrum:{wave}" for wave in (0.5, 0.6, 0.7, 0.8)]
+    >>> stretches([all_points[0], all_points[1], all_points[3]], all_points)
+    ['the spectrum at 0.5 to 0.6 micron', 'the spectrum at 0.8 micron']
+    """
+    place = [among.index(point) for point in points]
+    runs: list[list[str]] = []
+    for number, point in enumerate(points):
+        if number and place[number] == place[number - 1] + 1:
+            runs[-1].append(point)
+        else:
+            runs.append([point])
+    ends = [[run[0].removeprefix(PREFIX), run[-1].removeprefix(PREFIX)] for run in sorted(runs, key=len, reverse=True)]
+    return [f"the spectrum at {' to '.join(dict.fromkeys(pair))} micron" for pair in ends]
+
+
 def grid_key(spectrum: Spectrum) -> str:
     """Name of a wavelength grid: spectra of one key share their narrow bands."""
     return digest(np.round(np.log(spectrum.wave_um), 9))[:16]
@@ -74,9 +95,22 @@ def point_edges(wave_um: FloatArray) -> tuple[FloatArray, FloatArray]:
 def points_of(spectrum: Spectrum, floor: float = POINT_FLOOR) -> Points:
     """A spectrum's points, each a top-hat between the midpoints to its neighbours."""
     short = thinned(spectrum)
-    ends = zip(short.wave_um, *point_edges(short.wave_um), strict=True)
-    bands = tuple(top_hat(f"{PREFIX}{wave:.7g}", low, high, floor, wave) for wave, low, high in ends)
+    ends = zip(point_names(short.wave_um), *point_edges(short.wave_um), short.wave_um, strict=True)
+    bands = tuple(top_hat(name, low, high, floor, wave) for name, low, high, wave in ends)
     return Points(bands, short.flux_jy, short.error_jy)
+
+
+def point_names(wave_um: FloatArray) -> list[str]:
+    """A band's name for each point, with as many digits as tell them apart.
+
+    >>> point_names(np.array([0.5, 0.55]))
+    ['spectrum:0.5', 'spectrum:0.55']
+    """
+    for digits in range(4, 17):
+        names = [f"{PREFIX}{wave:.{digits}g}" for wave in wave_um]
+        if len(set(names)) == len(names):
+            break
+    return names
 
 
 def top_hat(name: str, low_um: float, high_um: float, floor: float, pivot_um: float | None = None) -> Band:

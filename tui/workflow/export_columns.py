@@ -213,9 +213,13 @@ def model_of(kind: str) -> Callable[[VettedRow], str | None]:
 
 
 def fitted_bands(row: VettedRow) -> str | None:
-    """Bands that the star alone was fitted to."""
+    """Bands that the star alone was fitted to; the points of a spectrum as one."""
+    from tui.physics.spectral import INSTRUMENT, is_point
+
     star = row.evidence.get("star")
-    return " ".join(star.bands) if star and star.bands else None
+    if not star or not star.bands:
+        return None
+    return " ".join(dict.fromkeys(INSTRUMENT if is_point(band) else band for band in star.bands))
 
 
 def all_cautions(row: VettedRow) -> str | None:

@@ -1,7 +1,8 @@
-"""The user's photosphere spectra: a folder of FITS, ECSV or two-column files, one spectrum a temperature.
+"""The user's photosphere spectra: a folder of FITS, ECSV or two-column files, one spectrum each.
 
-A file says its effective temperature in its header (`teff`) or its name (`t05772.dat`), its wavelengths' and fluxes'
-units in its columns or header, and gives the flux at the star's surface, so that theta keeps its meaning.
+A file says its effective temperature in its header or its name (see `grid_names`), its wavelengths' and fluxes' units
+in its columns or header, and gives the flux at the star's surface, per wavelength or per frequency, or `scale`: what
+its numbers are to be multiplied by to become that.
 """
 
 from __future__ import annotations
@@ -9,7 +10,6 @@ from __future__ import annotations
 import re
 import warnings
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
@@ -17,63 +17,52 @@ import numpy as np
 
 from tui.errors import TableError
 from tui.model import FloatArray
+from tui.physics.grid import SurfaceSpectrum
+from tui.physics.planck import surface_flux
+from tui.workflow.grid_choice import GivenSpectrum
+from tui.workflow.grid_names import atmosphere
 
 ENDINGS = (".fits", ".fit", ".ecsv", ".txt", ".dat", ".csv")
-TEFF_NAMES = ("teff", "t_eff", "phxteff")
-TEFF_IN_NAME = re.compile(r"(?<![0-9.])([0-9]{4,6})(?![0-9.])")
 TEFF_RANGE_K = (500.0, 200_000.0)
-UNIT_IN_TEXT = re.compile(r"^#\s*(teff|wavelength|flux)\s*[:=]\s*(.+?)\s*$", re.IGNORECASE)
-LEAST_SPECTRA = 3
-MOST_POINTS = 2_000_000  # of all spectra together
+TOLD_IN_TEXT = re.compile(r"^#\s*([\w/\[\]. ]+?)\s*[:=]\s*(.+?)\s*$")
+UNITS = ("wavelength", "flux")
+LEAST_POINTS = 10
+MOST_POINTS = 4_000_000  # of all spectra together
 LIGHT_RANGE = (0.2, 1.2)  # a spectrum's integral over sigma T^4: less, it is cut short; more, it is no surface flux
+HOLE, HOLE_LN = 10.0, 0.01  # a step this many times both of its neighbours', and wider than this in ln wavelength
+SPEED_OF_LIGHT = 299_792_458.0  # m/s
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class SurfaceSpectrum:
-    """One photosphere: shape (N,) each, wavelength in micron increasing, surface flux density in Jy at theta = 1."""
-
-    teff_k: float
-    wave_um: FloatArray
-    flux_jy: FloatArray
-
-
-def read_spectra(folder: str) -> list[SurfaceSpectrum]:
-    """All spectra of a folder, coolest first.
+def read_spectra(folder: str) -> list[GivenSpectrum]:
+    """All spectra of a folder, in order of file name.
 
     Raises:
-        TableError: no folder; too few spectra; a file without temperature, unit or sense; two of one temperature.
+        TableError: no such folder; a file without temperature, unit or sense; far too many points.
     """
     place = Path(folder).expanduser()
     if not place.is_dir():
         raise TableError(folder, "there is no such folder of spectra.")
-    paths = sorted(path for path in place.iterdir() if path.suffix.lower() in ENDINGS)
-    found: dict[float, tuple[Path, SurfaceSpectrum]] = {}
-    points = 0
-    for path in paths:
-        one = read_spectrum(path)
-        points += one.wave_um.size
-        if points > MOST_POINTS:
+    found: list[GivenSpectrum] = []
+    for path in sorted(path for path in place.iterdir() if path.suffix.lower() in ENDINGS):
+        found.append(read_spectrum(path))
+        if sum(one.spectrum.wave_um.size for one in found) > MOST_POINTS:
             raise TableError(folder, f"the spectra hold more than {MOST_POINTS} points; bin them to bands' needs.")
-        if one.teff_k in found:
-            other = found[one.teff_k][0].name
-            raise TableError(str(path), f"{other} has {one.teff_k:g} K too; keep one log g and [M/H] in a folder.")
-        found[one.teff_k] = (path, one)
-    if len(found) < LEAST_SPECTRA:
-        raise TableError(folder, f"there are {len(found)} spectra ({' '.join(ENDINGS)}); a grid needs {LEAST_SPECTRA}.")
-    return [found[teff][1] for teff in sorted(found)]
+    if not found:
+        raise TableError(folder, f"there is no spectrum in it (a file that ends in {' '.join(ENDINGS)}).")
+    return found
 
 
-def read_spectrum(path: Path) -> SurfaceSpectrum:
+def read_spectrum(path: Path) -> GivenSpectrum:
     """One file. TableError, naming it, where it cannot be used."""
     reader: Callable[[Path], tuple[Mapping[str, Any], Any, Any]] = read_table if is_table(path) else read_text
     try:
         with warnings.catch_warnings():
             warnings.simplefilter("ignore")
             header, wave, flux = reader(path)
-            return surface_spectrum(path, header, wave, flux)
+            return given_spectrum(path, header, wave, flux)
     except TableError:
         raise
-    except (OSError, ValueError, TypeError, KeyError, IndexError, MemoryError) as error:
+    except (OSError, ValueError, TypeError, KeyError, IndexError, MemoryError, OverflowError) as error:
         raise TableError(str(path), f"the spectrum cannot be read ({str(error)[:120]}).") from error
 
 
@@ -83,20 +72,36 @@ def is_table(path: Path) -> bool:
 
 
 def read_table(path: Path) -> tuple[Mapping[str, Any], Any, Any]:
-    """Header, wavelengths and fluxes, with units, of the first two columns of a FITS or ECSV table."""
+    """Header, wavelengths and fluxes, with units, of the first two columns of a FITS or ECSV table, or of an image."""
+    from astropy.io import fits
     from astropy.table import Table
 
-    form = "ascii.ecsv" if path.suffix.lower() == ".ecsv" else "fits"
-    table = Table.read(path, format=form)
-    header = {str(name).lower(): value for name, value in table.meta.items()}
-    if form == "fits":
-        from astropy.io import fits
-
-        header = {name.lower(): value for name, value in fits.getheader(path).items()} | header
+    header: dict[str, Any] = {}
+    if path.suffix.lower() != ".ecsv":
+        with fits.open(path) as hdus:
+            header = {name.lower(): value for name, value in hdus[0].header.items() if name}
+            if not any(isinstance(hdu, fits.BinTableHDU | fits.TableHDU) for hdu in hdus):
+                return header, *read_image(path, hdus[0])
+    table = Table.read(path, format="ascii.ecsv" if path.suffix.lower() == ".ecsv" else "fits")
+    header |= {str(name).lower(): value for name, value in table.meta.items()}
     wave, flux = (table[name] for name in table.colnames[:2])
     if wave.unit is None or flux.unit is None:
         raise TableError(str(path), "a column has no unit: wavelength and surface flux need one each.")
     return header, wave.quantity, flux.quantity
+
+
+def read_image(path: Path, hdu: Any) -> tuple[Any, Any]:
+    """Wavelengths and fluxes, with units, of a FITS image of one axis, whose header tells CRVAL1, CDELT1 and units."""
+    from astropy import units
+
+    head = hdu.header
+    lacking = [name for name in ("CRVAL1", "CDELT1", "CUNIT1", "BUNIT") if name not in head]
+    if hdu.data is None or np.ndim(hdu.data) != 1 or lacking:
+        why = f"its header lacks {lacking[0]}" if lacking else "it is no image of one axis"
+        raise TableError(str(path), f"there is no table in it, and {why}: give a table of wavelength and flux.")
+    pixel = np.arange(hdu.data.size) + 1.0 - float(head.get("CRPIX1", 1.0))
+    wave = float(head["CRVAL1"]) + float(head["CDELT1"]) * pixel
+    return wave * units.Unit(head["CUNIT1"]), np.asarray(hdu.data, dtype=np.float64) * units.Unit(head["BUNIT"])
 
 
 def read_text(path: Path) -> tuple[Mapping[str, Any], Any, Any]:
@@ -108,9 +113,9 @@ def read_text(path: Path) -> tuple[Mapping[str, Any], Any, Any]:
         for line in stream:
             if not line.startswith("#"):
                 break
-            if told := UNIT_IN_TEXT.match(line):
+            if told := TOLD_IN_TEXT.match(line[:500]):
                 header[told[1].lower()] = told[2]
-    for name in ("wavelength", "flux"):
+    for name in UNITS:
         if name not in header:
             raise TableError(str(path), f"no line says '# {name}: UNIT' at the top; both units are needed.")
     delimiter = "," if path.suffix.lower() == ".csv" else None
@@ -118,45 +123,55 @@ def read_text(path: Path) -> tuple[Mapping[str, Any], Any, Any]:
     return header, columns[0] * units.Unit(header["wavelength"]), columns[1] * units.Unit(header["flux"])
 
 
-def surface_spectrum(path: Path, header: Mapping[str, Any], wave: Any, flux: Any) -> SurfaceSpectrum:
+def given_spectrum(path: Path, header: Mapping[str, Any], wave: Any, flux: Any) -> GivenSpectrum:
     """A spectrum in micron and Jy, checked to be the flux at a surface of its temperature."""
-    from astropy import units
-
-    from tui.physics.planck import surface_flux
-
-    wave_um = np.asarray(wave.to_value(units.um), dtype=np.float64)
-    try:
-        flux_jy = np.asarray(flux.to_value(units.Jy, equivalencies=units.spectral_density(wave)), dtype=np.float64)
-    except units.UnitsError as error:
-        raise TableError(str(path), f"the unit {flux.unit} is no flux density.") from error
-    order = np.argsort(wave_um)
-    wave_um, flux_jy = wave_um[order], flux_jy[order]
-    if wave_um.size < 10 or not np.all(np.diff(wave_um) > 0) or not np.isfinite(flux_jy).all() or (flux_jy < 0).any():
-        raise TableError(str(path), "a spectrum needs ten or more different wavelengths and no gap or negative flux.")
-    teff_k = temperature(path, header)
-    share = light(wave_um, flux_jy) / float(surface_flux(teff_k))
+    told = atmosphere(path.stem, header)
+    if told.teff_k is None or not TEFF_RANGE_K[0] <= told.teff_k <= TEFF_RANGE_K[1]:
+        raise TableError(str(path), "no temperature: put teff (K) in the header or four to six digits in the name.")
+    wave_um, flux_jy = in_order(path, *in_own_units(path, wave, flux * told.scale))
+    share = light(wave_um, flux_jy) / float(surface_flux(told.teff_k))
     if not LIGHT_RANGE[0] <= share <= LIGHT_RANGE[1]:
         raise TableError(
             str(path),
-            f"its light is {share:.3g} of a {teff_k:g} K surface's: give the surface flux, over most of the light.",
+            f"its light is {share:.3g} of a {told.teff_k:g} K surface's: give the surface flux over most of the light, "
+            "or in the header the scale that makes it so.",
         )
-    return SurfaceSpectrum(teff_k, wave_um, flux_jy)
+    return GivenSpectrum(path, SurfaceSpectrum(told.teff_k, wave_um, flux_jy), told.logg, told.mh)
 
 
-def temperature(path: Path, header: Mapping[str, Any]) -> float:
-    """Effective temperature from the header, else from the file's name. TableError where neither says it."""
-    named = next((header[name] for name in TEFF_NAMES if name in header), None)
-    told = named if named is not None else next(iter(TEFF_IN_NAME.findall(path.stem)), None)
+def in_own_units(path: Path, wave: Any, flux: Any) -> tuple[FloatArray, FloatArray]:
+    """Wavelengths in micron and fluxes in Jy. TableError where the units are of neither."""
+    from astropy import units
+
     try:
-        teff_k = float(str(told).split()[0])
-    except (ValueError, IndexError):
-        teff_k = float("nan")
-    if not TEFF_RANGE_K[0] <= teff_k <= TEFF_RANGE_K[1]:
-        raise TableError(str(path), "no temperature: put teff (K) in the header or four to six digits in the name.")
-    return teff_k
+        wave_um = np.asarray(wave.to_value(units.um), dtype=np.float64)
+    except units.UnitsError as error:
+        raise TableError(str(path), f"the unit {wave.unit} is no wavelength.") from error
+    try:
+        flux_jy = flux.to_value(units.Jy, equivalencies=units.spectral_density(wave))
+    except units.UnitsError as error:
+        raise TableError(str(path), f"the unit {flux.unit} is no flux density.") from error
+    return wave_um, np.asarray(flux_jy, dtype=np.float64)
+
+
+def in_order(path: Path, wave_um: FloatArray, flux_jy: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """By wavelength. TableError where values or wavelengths are missing in between."""
+    order = np.argsort(wave_um, kind="stable")
+    wave_um, flux_jy = wave_um[order], flux_jy[order]
+    fault = ~np.isfinite(flux_jy) | ~np.isfinite(wave_um) | (flux_jy < 0) | (wave_um <= 0)
+    if fault.any():
+        raise TableError(str(path), f"it has no flux, or a negative one, at {wave_um[fault][0]:.6g} micron.")
+    if wave_um.size < LEAST_POINTS or not np.all(np.diff(wave_um) > 0):
+        raise TableError(str(path), f"a spectrum needs {LEAST_POINTS} wavelengths or more, none of them twice.")
+    step = np.diff(np.log(wave_um))
+    hole = (step[1:-1] > HOLE * np.maximum(step[:-2], step[2:])) & (step[1:-1] > HOLE_LN)
+    if hole.any():
+        first = int(np.flatnonzero(hole)[0]) + 1
+        raise TableError(str(path), f"there is a gap between {wave_um[first]:.6g} and {wave_um[first + 1]:.6g} micron.")
+    return wave_um, flux_jy
 
 
 def light(wave_um: FloatArray, flux_jy: FloatArray) -> float:
     """Integral of F_nu over frequency, W m-2, of a spectrum linear in frequency between its points."""
-    frequency = 299_792_458.0 / (wave_um * 1e-6)  # Hz
+    frequency = SPEED_OF_LIGHT / (wave_um * 1e-6)  # Hz
     return float(np.trapezoid(flux_jy[::-1] * 1e-26, frequency[::-1]))

@@ -144,8 +144,9 @@ def photosphere_of(source: str, bands: list[Band], queue: str) -> Photosphere:
 
     if not source.startswith("grid"):
         return build_photosphere(source, load.dwarfs(), bands, load.bands())
+    from tui.physics.grid import grid_photosphere
     from tui.store.connect import open_queue
-    from tui.workflow.grid_photosphere import grid_photosphere, kept_spectra
+    from tui.workflow.grid_photosphere import kept_spectra
 
     with contextlib.closing(open_queue(queue, write=False)) as connection:
         spectra = kept_spectra(connection, source)
