@@ -14,6 +14,7 @@ from tui.store import evidence as kept
 from tui.store.candidates import candidate_digests, candidate_id, candidate_name, get_candidates, name_pages
 from tui.store.connect import open_queue
 from tui.workflow.basis import Basis, read_basis
+from tui.workflow.compact import compact
 from tui.workflow.digests import Recipe, recipes
 from tui.workflow.processes import in_processes, spare_processes
 
@@ -90,7 +91,7 @@ def compute(
 
     digests = candidate_digests(connection, names)
     return [
-        (candidate.name, replace(made, digest=made_with[kind].digest_of(digests[candidate.name])))
+        (candidate.name, replace(compact(made), digest=made_with[kind].digest_of(digests[candidate.name])))
         for some, templates in groups(get_candidates(connection, names), basis)
         for candidate, by_kind in zip(
             some, assess_all(some, templates, basis.settings, kinds, basis.tables()), strict=True
