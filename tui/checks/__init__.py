@@ -11,7 +11,7 @@ from tui.checks.by_hand import Curve, curve, probe
 from tui.checks.cautions import natural_cautions
 from tui.checks.prepare import prepare
 from tui.checks.record import fits_of
-from tui.checks.spectra import as_measured, asks_for_more, narrowed, own_settings, used_bands, with_spectrum
+from tui.checks.spectra import as_measured, asks_for_more, bound_templates, own_settings, with_spectrum
 from tui.checks.star import Oddness, oddness
 from tui.checks.surroundings import surroundings
 from tui.checks.tables import Tables
@@ -74,8 +74,7 @@ def assess_all(
     add_context(candidates, alone, found, bands, tables, settings)
     if "mixture" in wanted:
         known = [mixture.known_from({kind: rows[row] for kind, rows in found.items()}) for row in range(len(candidates))]
-        narrow = narrowed(templates, used_bands(candidates, templates)) if templates.points else templates
-        found["mixture"] = mixture.assess(candidates, narrow, settings, known)
+        found["mixture"] = mixture.assess(candidates, bound_templates(candidates, templates), settings, known)
     return [{kind: found[kind][row] for kind in wanted if kind in found} for row in range(len(candidates))]
 
 

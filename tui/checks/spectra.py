@@ -27,8 +27,8 @@ from tui.physics.templates import Templates
 NEAR_LN_T = 0.2  # the star that makes the spectrum may differ by this in ln T from the one that the bands ask for
 SOURCE_LABEL = "spectrum"
 NO_LINES = (
-    "The photosphere source planck has no lines: a star's own lines count against it, in fits and bound, where "
-    "its spectrum is fitted. Give spectra of stars (grid DIR)."
+    "The photosphere source planck has no lines: where a spectrum is fitted, a star's own lines count against it. "
+    "Give spectra of stars (grid DIR)."
 )
 NOT_FITTED = "The spectrum is not in the fits: {source} does not know stars at its resolution. Give spectra (grid DIR)."
 MISFITS = "The candidate's own spectrum is no plain star's ({points} {what}, chi-square {chi2:.1f}, p = {p:.2g})."
@@ -64,10 +64,13 @@ def narrowed(templates: Templates, names: tuple[str, ...]) -> Templates:
     return templates.take(names)
 
 
-def used_bands(candidates: Sequence[Candidate], templates: Templates) -> tuple[str, ...]:
-    """Bands that some candidate has, in the templates' order."""
+def bound_templates(candidates: Sequence[Candidate], templates: Templates) -> Templates:
+    """The bands that the mixture bound needs where templates hold points: those measured, points only with a grid."""
+    if not templates.points:
+        return templates
     used = {one.band for candidate in candidates for one in candidate.measurements}
-    return tuple(name for name in templates.names if name in used)
+    plain = templates.photosphere == "planck"
+    return narrowed(templates, tuple(name for name in templates.names if name in used and not (plain and is_point(name))))
 
 
 def parts(fit: Fit) -> list[tuple[float, int]]:
