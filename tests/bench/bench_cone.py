@@ -24,7 +24,7 @@ from tui.model import Candidate, Measurement, Settings
 from tui.physics.cone import Fluxes, certificate, mixture_bound
 from tui.physics.generators import build_generators, drude
 from tui.physics.photometry import Quadrature, quadrature
-from tui.physics.planck import ln_planck_jy, planck_jy
+from tui.physics.planck import planck_jy
 from tui.workflow.templates import build
 
 INFRARED = ("V", "J", "H", "Ks", "W1", "W2", "W3", "W4", "MIPS24", "PACS70", "PACS160")
@@ -46,8 +46,8 @@ def false_refusals(templates, count):
         truth = [random_mixture(rng, sky) for _ in range(count)]
         for common in ({}, COMMON):
             stars = [
-                observed(rng, sky, *one, depth=10.0 ** rng.uniform(-4, -1.3), noise=rng.choice([0.005, 0.02]), common=common)
-                for one in truth
+                observed(rng, sky, *one, depth=10.0 ** rng.uniform(-4, -1.3), noise=noise, common=common)
+                for one, noise in zip(truth, rng.choice([0.005, 0.02], count), strict=True)
             ]
             start = time.process_time()
             share, _ = refused(stars, templates, Settings(common=common))
@@ -81,22 +81,24 @@ def discs(templates, count):
         flux = disc(5.0, spectrum)
         stars = [observed(rng, sky, flux, star * sky.spread(5772.0)) for _ in range(count)]
         share, evidence = refused(stars, templates)
-        print(f"{name:<24} refused {share:.4f}, median chi-square found {np.median([e.facts['chi2'] for e in evidence]):.1f}")
+        middle = np.median([one.facts["chi2"] for one in evidence])
+        print(f"{name:<24} refused {share:.4f}, median chi-square found {middle:.1f}")
 
 
 def doppler(templates, count):
     """Planck sources in motion: the shifted spectrum is a Planck source of another temperature."""
     sky, rng = Sky(templates, in_order(templates, S2)), np.random.default_rng(13)
-    worst = 0.0
     stars = []
     for _ in range(count):
         temperature, shift = np.exp(rng.uniform(np.log(300), np.log(30000))), np.exp(rng.uniform(-0.7, 0.7))
         flux = sky.seen(lambda w: shift**3 * planck_jy(w * shift, temperature))  # nu' = shift nu
         flux = np.maximum(flux, 1e-8 * flux.max())
-        stars.append(Candidate("c", tuple(Measurement(b, f, 0.03 * f + 1e-7 * flux.max()) for b, f in zip(sky.names, flux))))
+        least = 1e-7 * flux.max()
+        rows = (Measurement(band, one, 0.03 * one + least) for band, one in zip(sky.names, flux, strict=True))
+        stars.append(Candidate("c", tuple(rows)))
     share, evidence = refused(stars, templates)
     worst = max(one.facts["chi2"] for one in evidence)
-    print(f"\nDoppler-shifted Planck sources without noise: {count}, refused {share:.4f}, largest chi-square {worst:.2f}")
+    print(f"\nDoppler-shifted Planck sources without noise: {count}, refused {share:.4f}, chi-square to {worst:.2f}")
 
 
 SCREENS = {
@@ -129,7 +131,7 @@ def yardstick_sets(templates):
     for name, bands, extra in (("S1", S1, False), ("S2", S2, False), ("S3", S1, True)):
         local = templates.take(in_order(templates, bands))
         rules = [quadrature(band, 120) for band in local.bands] + (points if extra else [])
-        planck = np.stack([np.log(np.exp(ln_planck_jy(r.wave_um[None], teff[:, None])) @ r.weight) for r in rules], axis=1)
+        planck = np.stack([np.log(planck_jy(r.wave_um[None], teff[:, None]) @ r.weight) for r in rules], axis=1)
         stars = np.hstack([local.star.ln_flux, black + np.log(np.pi)]) if extra else local.star.ln_flux
         one = np.argmin(np.abs(teff - 5772.0))
         wide = [fine_rule(band) for band in local.bands] + (points if extra else [])
@@ -145,7 +147,7 @@ def screened(rules, ratio, teff, passes, depth):
 
 
 def screens(templates, count):
-    """Share of draws refused at p < 0.01, by depth, as the yardstick of the literature of this bound: 3 % errors."""
+    """Share of draws refused at p < 0.01, by depth of the screen, all errors 3 %."""
     print(f"\nScreens before a 5772 K star, 3 % errors, {count} draws: share refused at p < 0.01 by depth")
     print(f"{'screen':<20}{'set':<4}" + "".join(f"{depth:>6}" for depth in DEPTHS) + "   90 % at   yardstick S1/S2/S3")
     sets, rng = yardstick_sets(templates), np.random.default_rng(14)
@@ -185,8 +187,10 @@ def certificates(templates, count):
             violations += chi2[0] > least * (1 + 1e-9) + 1e-9
             closeness.append(chi2[0] / max(least, 1e-12))
             tried += 1
-    print(f"\nCertificate on unfinished solves: {tried} tried, {violations} above the least chi-square, median share of it "
-          f"{np.median(closeness):.2f}")  # fmt: skip
+    print(
+        f"\nCertificate on unfinished solves: {tried} tried, {violations} above the least chi-square, "
+        f"median share of it {np.median(closeness):.2f}"
+    )
 
 
 def speed(templates, count):
@@ -199,10 +203,12 @@ def speed(templates, count):
     fluxes, spreads = zip(*[random_mixture(rng, sky) for _ in range(min(count, 500))], strict=True)
     pivots = sky.local.pivot_um
     sun = sky.star(5772.0)
+    passed = sun * np.where(np.abs(pivots - 0.55) < 0.1, 1, 0.4)
+    notched = sun * np.where(np.abs(pivots - 1.65) < 0.1, 0.6, 1)
     sets = {
         "natural": [observed(rng, sky, *one) for one in zip(fluxes, spreads, strict=True)] * max(count // 500, 1),
-        "hard: pass band": [observed(rng, sky, sun * np.where(np.abs(pivots - 0.55) < 0.1, 1, 0.4), 0.03 * sun) for _ in range(count)],
-        "hard: notch in H": [observed(rng, sky, sun * np.where(np.abs(pivots - 1.65) < 0.1, 0.6, 1), 0.03 * sun) for _ in range(count)],
+        "hard: pass band": [observed(rng, sky, passed, 0.03 * sun) for _ in range(count)],
+        "hard: notch in H": [observed(rng, sky, notched, 0.03 * sun) for _ in range(count)],
     }
     for name, stars in sets.items():
         known = np.full(len(stars), np.nan)

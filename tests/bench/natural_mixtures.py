@@ -35,7 +35,8 @@ class Sky:
     def __post_init__(self):
         self.local = self.templates.take(self.names)
         rules = [quadrature(band, 120) for band in self.local.bands]
-        self.wave, self.weight = (np.concatenate([getattr(rule, name) for rule in rules]) for name in ("wave_um", "weight"))
+        self.wave = np.concatenate([rule.wave_um for rule in rules])
+        self.weight = np.concatenate([rule.weight for rule in rules])
         self.starts = np.cumsum([0, *(rule.wave_um.size for rule in rules)])[:-1]
         ends = [extinction_curve(self.wave, self.templates.law, r_v) for r_v in (2.5, 5.0)]
         self.slope = (ends[0] - ends[1]) / (1 / 2.5 - 1 / 5.0)  # G23 is linear in 1/R_V (Gordon et al. 2023, eq. 1)
@@ -79,10 +80,12 @@ def random_source(rng, sky, kind):
         temperature = np.exp(rng.uniform(np.log(30.0), np.log(1e5)))
         flux = sky.seen(lambda wave: planck_jy(wave, temperature), av, r_v)
     elif kind == "grains":
-        t, beta, edge = np.exp(rng.uniform(np.log(40.0), np.log(1800.0))), rng.uniform(0.5, 2.0), np.exp(rng.uniform(0, np.log(300.0)))
+        t, beta = np.exp(rng.uniform(np.log(40.0), np.log(1800.0))), rng.uniform(0.5, 2.0)
+        edge = np.exp(rng.uniform(0, np.log(300.0)))
         flux = sky.seen(lambda wave: planck_jy(wave, t) * np.minimum(1.0, edge / wave) ** beta, av, r_v)
     else:
-        t, centre, width = rng.uniform(150.0, 850.0), np.array([rng.uniform(3.3, 38.0)]), np.array([rng.uniform(0.02, 0.3)])
+        t, centre = rng.uniform(150.0, 850.0), np.array([rng.uniform(3.3, 38.0)])
+        width = np.array([rng.uniform(0.02, 0.3)])
         flux = sky.seen(lambda wave: planck_jy(wave, t) * cone_sources.drude(wave, centre, width)[0], av, r_v)
     return flux / flux.max(), np.zeros_like(flux)
 

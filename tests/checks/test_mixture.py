@@ -40,7 +40,8 @@ def notched(sky):
 def test_random_natural_mixtures_are_refused_no_more_than_nominal(templates, names, common):
     sky, rng = Sky(templates, in_order(templates, names)), np.random.default_rng(2026)
     stars = [
-        observed(rng, sky, *random_mixture(rng, sky), depth=10.0 ** rng.uniform(-4, -1.3), common=common) for _ in range(150)
+        observed(rng, sky, *random_mixture(rng, sky), depth=10.0 ** rng.uniform(-4, -1.3), common=common)
+        for _ in range(150)
     ]
     assert any(one.limit for star in stars for one in star.measurements)
     evidence = mixture.assess(stars, templates, Settings(common=common))
@@ -113,11 +114,9 @@ def test_order_and_mates_do_not_matter(templates, sky):
 
 def test_a_limit_can_be_what_refuses(templates, sky):
     flux = sky.star(5772.0)
-    rows = [
-        Measurement(name, one / 4, np.nan, limit=True, nsigma=3.0) if name == "H" else Measurement(name, one, 0.01 * one)
-        for name, one in zip(sky.names, flux, strict=True)
-    ]
-    (found,) = mixture.assess([Candidate("c", tuple(rows))], templates, Settings())
+    rows = {name: Measurement(name, one, 0.01 * one) for name, one in zip(sky.names, flux, strict=True)}
+    rows["H"] = Measurement("H", rows["H"].flux_jy / 4, np.nan, limit=True, nsigma=3.0)
+    (found,) = mixture.assess([Candidate("c", tuple(rows.values()))], templates, Settings())
     assert found.adequate is False and "the limit in H" in found.facts["sentence"] and found.cautions
 
 
@@ -134,3 +133,23 @@ def test_points_of_a_spectrum_stay_out_where_the_photospheres_have_no_lines(temp
     (found,) = mixture.assess([Candidate("c", (*star.measurements, point))], templates, Settings())
     assert found.adequate is True and found.facts["points"] == 14
     assert found.cautions == (mixture.SPECTRUM_CAUTION,)
+
+
+def test_no_real_star_is_refused(templates, real_stars):
+    # stars with discs, without excess, reddened, and pairs: all natural, whatever the other checks make of them
+    chosen = [star for star in real_stars if star.group in "abcd" and not star.doubtful]
+    evidence = mixture.assess([star.candidate for star in chosen], templates, Settings())
+    assert len(chosen) > 35
+    assert [star.name for star, one in zip(chosen, evidence, strict=True) if one.adequate is False] == []
+
+
+@pytest.mark.parametrize("values", [(0.0, np.nan), (-1e-3, 1e-3), (1e-30, 1e-33), (1e6, 1.0)], ids=str)
+def test_strange_fluxes_give_plain_answers(templates, sky, values):
+    flux = sky.star(5772.0) / sky.star(5772.0).max()
+    rows = [Measurement(name, one, 0.02 * one) for name, one in zip(sky.names, flux, strict=True)]
+    rows[3] = Measurement(sky.names[3], *values)
+    (found,) = mixture.assess([Candidate("c", tuple(rows))], templates, Settings())
+    assert found.adequate in (True, False) and 0 <= found.facts["p"] <= 1
+    dark = [Measurement(name, 0.0, np.nan) for name in sky.names]
+    (found,) = mixture.assess([Candidate("c", tuple(dark))], templates, Settings())
+    assert found.adequate is True

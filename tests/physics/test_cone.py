@@ -50,7 +50,8 @@ def test_batch_agrees_with_scipy_nnls_on_random_cones(bands, columns):
 
 def test_batch_starts_from_any_feasible_point():
     rng = np.random.default_rng(3)
-    matrix, target, start = rng.random((20, 6, 15)), rng.random((20, 6)), rng.random((20, 15)) * (rng.random((20, 15)) < 0.3)
+    matrix, target = rng.random((20, 6, 15)), rng.random((20, 6))
+    start = rng.random((20, 15)) * (rng.random((20, 15)) < 0.3)
     again = np.einsum("kbm,km->kb", matrix, nnls_batch(matrix, target, start))
     fresh = np.einsum("kbm,km->kb", matrix, nnls_batch(matrix, target))
     assert np.sum((again - target) ** 2, axis=1) == pytest.approx(np.sum((fresh - target) ** 2, axis=1), abs=1e-6)
@@ -69,7 +70,8 @@ def test_bound_brackets_the_least_chi_square_over_all_columns(generators):
     for row in range(len(flux)):
         sigma = 0.05 * flux[row]
         columns = every_column(generators) / sigma[:, None]
-        pool = np.unique(np.concatenate([found.index[row][found.index[row] >= 0], rng.integers(0, columns.shape[1], 4000)]))
+        used = found.index[row][found.index[row] >= 0]
+        pool = np.unique(np.concatenate([used, rng.integers(0, columns.shape[1], 4000)]))
         least = nnls(columns[:, pool], flux[row] / sigma, maxiter=50_000)[1] ** 2
         assert found.chi2[row] <= least + 1e-6
         assert found.feasible[row] >= found.chi2[row] - 1e-9

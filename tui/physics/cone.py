@@ -48,7 +48,7 @@ class Bound:
     chi2: FloatArray  # certified lower bound of the least chi-square; where `at_most`, an upper bound
     feasible: FloatArray  # chi-square of the best mixture found
     points: IntArray  # bands counted, n
-    p: FloatArray  # upper bound of the chance that a natural mixture comes out so badly; where `at_most`, p is at least this
+    p: FloatArray  # the chance that a natural mixture comes out so badly, at most; at least this where `at_most`
     at_most: BoolArray  # a mixture was found that cannot be refused, so the solve was left there
     gap: FloatArray  # delta w.F: by about so much could a better mixture lower `feasible`; inf where not priced finely
     weights: FloatArray  # (K, B) v of the certificate, 1/Jy: v.g <= 0 for every natural source; zero where `at_most`

@@ -16,7 +16,9 @@ PASSES = 8
 SETTLED = 0.1  # chi-square by which the last change of the errors may still have moved the mixture, or
 SETTLED_SHARE = 0.003  # this share of chi-square, where that is larger: far beyond any doubt
 MONOTONE = 3  # from this pass on errors only grow, so that none swing
+LEAST_ERROR = 1e-12  # of the brightest band: a value of 0 without an error must not outweigh all else
 WIDEN = 1.25  # in temperature, the reach of each star's spread towards hotter ones
+LEAST_ERROR = 1e-12  # of the brightest band: a value of 0 without an error must not outweigh all else
 WIDEN = 1.25  # in temperature, the reach of each star's spread towards hotter ones
 FIRST_K = 6000.0  # temperature whose spread is taken before any mixture is known
 
@@ -52,7 +54,8 @@ class ErrorModel:
         """Fluxes with the covariance for a model and the spread of its starlight, both (K, B) in Jy."""
         used = self.detected | self.limited
         floor = self.floor * np.maximum(np.where(self.detected, self.flux, 0.0), model)
-        variance = np.where(used, self.error**2 + floor**2 + spread_flux**2, 1.0)
+        least = LEAST_ERROR * np.max(np.where(used, np.abs(self.flux), 0.0), axis=1, initial=1e-290)[:, None]
+        variance = np.where(used, self.error**2 + floor**2 + spread_flux**2 + least**2, 1.0)
         covariance = variance[:, :, None] * np.eye(self.flux.shape[1])
         if len(self.common):
             shared = self.common[None] * np.where(self.detected, model, 0.0)[:, None, :]
@@ -141,7 +144,8 @@ class _Work:
     def proven(self, rows: IntArray, fluxes: Fluxes) -> FloatArray:
         """p by the weights found, which hold for every mixture, with other errors."""
         white = whiten(fluxes)
-        chi2, _ = certificate(white.flux, fluxes.covariance, self.bound.weights[rows], white.weight, np.zeros(len(rows)))
+        weights = self.bound.weights[rows]
+        chi2, _ = certificate(white.flux, fluxes.covariance, weights, white.weight, np.zeros(len(rows)))
         return p_bound(chi2, white.points, np.sum(white.target**2, axis=1))
 
     def settle(self, fluxes: Fluxes, depths: Sequence[str], hopeless: float = 0.0) -> None:
@@ -165,42 +169,7 @@ class _Work:
                 rows = rows[again]
                 if len(rows):
                     self.solve(rows, fluxes.take(again), self.pool(rows), depth)
-        self.natural |= self.left & ~np.isfinite(self.bound.gap)
-
-    def adopt(self, rows: IntArray, other: _Work) -> None:
-        """Take over those of another solve of `rows` that came out natural."""
-        found = np.flatnonzero(other.natural)
-        self.natural[rows[found]] = True
-        self.put(rows[found], other.bound, found)
-
-    def proven(self, rows: IntArray, fluxes: Fluxes) -> FloatArray:
-        """p by the weights found, which hold for every mixture, with other errors."""
-        white = whiten(fluxes)
-        chi2, _ = certificate(white.flux, fluxes.covariance, self.bound.weights[rows], white.weight, np.zeros(len(rows)))
-        return p_bound(chi2, white.points, np.sum(white.target**2, axis=1))
-
-    def settle(self, fluxes: Fluxes, depths: Sequence[str], hopeless: float = 0.0) -> None:
-        """Solve on each grid in turn until the errors no longer move chi-square.
-
-        A candidate is given up where half the chi-square of a coarser grid would still have p < `hopeless`.
-        """
-        self.solve(np.arange(len(self.natural)), fluxes, None, "coarse")
-        for depth in depths:
-            rows = np.flatnonzero(~self.natural)
-            if hopeless and depth != "coarse":
-                rows = rows[p_bound(self.bound.feasible[rows] / 2, self.bound.points[rows], np.inf) >= hopeless]
-            for number in range(PASSES):
-                if not len(rows):
-                    break
-                fluxes = self.errors_of(rows, grow=number >= MONOTONE)
-                chi2, natural = self.judge(rows, fluxes)
-                moved = np.abs(chi2 - self.bound.feasible[rows]) >= np.maximum(SETTLED, SETTLED_SHARE * chi2)
-                again = ~natural & (moved | ((depth != "coarse") & (number == 0)))
-                self.natural[rows[~again & self.left[rows]]] = True
-                rows = rows[again]
-                if len(rows):
-                    self.solve(rows, fluxes.take(again), self.pool(rows), depth)
-        self.natural |= self.left & ~np.isfinite(self.bound.gap)
+        self.natural |= self.left
 
     def adopt(self, rows: IntArray, other: _Work) -> None:
         """Take over those of another solve of `rows` that came out natural."""
@@ -226,7 +195,8 @@ class _Work:
     def judge(self, rows: IntArray, fluxes: Fluxes) -> tuple[FloatArray, BoolArray]:
         """Chi-square of the best mixture with its own errors, and whether that cannot be refused."""
         white = whiten(fluxes)
-        left = np.where(white.limit, np.minimum(white.flux - self.bound.model[rows], 0.0), white.flux - self.bound.model[rows])
+        left = white.flux - self.bound.model[rows]
+        left = np.where(white.limit, np.minimum(left, 0.0), left)
         chi2 = np.sum(np.einsum("kab,kb->ka", white.whitener, left) ** 2, axis=1)
         p = p_bound(chi2, white.points, np.sum(white.target**2, axis=1))
         natural = p >= self.enough

@@ -263,7 +263,12 @@ class _Light:
     shades: Mapping[int, Sequence[FloatArray]]  # id of a screen grid -> per band (nodes, S)
 
     def thermal(
-        self, name: str, keys: tuple[str, ...], axes: tuple[FloatArray, ...], screens: Screens, shape: Shape | None = None
+        self,
+        name: str,
+        keys: tuple[str, ...],
+        axes: tuple[FloatArray, ...],
+        screens: Screens,
+        shape: Shape | None = None,
     ) -> _Part:
         """B_nu at each temperature of the first axis times each shape made of the others."""
         parameters, level = _grid(*axes)

@@ -66,7 +66,13 @@ def _descend(gram: FloatArray, slope: FloatArray, x: FloatArray, barred: BoolArr
 
 
 def _step_back(
-    x: FloatArray, free: FloatArray, bad: BoolArray, passive: BoolArray, barred: BoolArray, entered: NDArray, rows: NDArray
+    x: FloatArray,
+    free: FloatArray,
+    bad: BoolArray,
+    passive: BoolArray,
+    barred: BoolArray,
+    entered: NDArray[np.int64],
+    rows: NDArray[np.int64],
 ) -> None:
     """Go from x towards the free solution until the first coefficient reaches zero; drop it.
 

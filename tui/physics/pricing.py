@@ -8,6 +8,7 @@ from numpy.typing import NDArray
 from tui.model import FloatArray
 
 IntArray = NDArray[np.int64]
+SMALLEST = np.float32(1e-37)  # the square of a trace may be less than a float32 holds
 SMALL_PRODUCT = 9.5e5  # multiplications in one product; OpenBLAS packs above 1e6, at twice the cost
 
 
@@ -46,7 +47,7 @@ def single_sources(
     value = np.empty((len(gradient), len(blocks)))
     place = np.empty((len(gradient), len(blocks)), dtype=np.int64)
     for number, block in enumerate(blocks):
-        fall = np.maximum(numerator @ block, 0) ** 2 / (denominator @ (block * block))
+        fall = np.maximum(numerator @ block, 0) ** 2 / np.maximum(denominator @ (block * block), SMALLEST)
         place[:, number] = fall.argmax(axis=1)
         value[:, number] = fall[np.arange(len(fall)), place[:, number]]
     return value, place
