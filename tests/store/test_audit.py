@@ -12,6 +12,7 @@ from tests.store.making import rule, utc, walk
 from tui.errors import InputError, StoreError
 from tui.model import Candidate, Dip, Neighbour
 from tui.store.audit import audit, backup
+from tui.store.candidate_view import standing_for
 from tui.store.candidates import candidate_count, save_candidates
 from tui.store.chains import receipt
 from tui.store.connect import open_queue
@@ -233,3 +234,14 @@ def test_a_backup_goes_over_no_file(ruled, tmp_path):
     with pytest.raises(StoreError, match="cannot be written"):
         backup(ruled, tmp_path / "no" / "folder.db")
     assert (tmp_path / "mine").read_text() == "precious"
+
+
+def test_evidence_that_cannot_be_read_is_found(ruled, path):
+    tamper(
+        path,
+        "UPDATE evidence SET content = '{}' WHERE candidate_id = 9 AND kind = 'dust'",
+        unguarded="evidence_no_update",
+    )
+    assert [(fault.kind, fault.place) for fault in audit(ruled).faults] == [("input", "SM-0009")]
+    with pytest.raises(StoreError, match="damaged"):
+        standing_for(ruled, None, "SM-0009")

@@ -5,6 +5,7 @@ from __future__ import annotations
 import os
 import shutil
 import sqlite3
+from dataclasses import replace
 from pathlib import Path
 
 import pytest
@@ -24,7 +25,7 @@ from tui.store.evidence import current_evidence, save_evidence
 from tui.store.gather import gather
 from tui.store.records import LoadRecord
 from tui.store.reviewers import add_reviewer, reviewer_by_handle, reviewers
-from tui.store.rulings import append_ruling, ruling_log
+from tui.store.rulings import append_ruling, insert_ruling, ruling_hash, ruling_log
 from tui.store.settings import read_settings, setting_history, write_setting
 from tui.store.team import team_standing
 
@@ -198,7 +199,8 @@ def refused(ours, path, match):
     with pytest.raises(StoreError, match=match):
         gather(ours, path)
     assert queue_digest(ours) == digest
-    assert ours.execute("PRAGMA database_list").fetchall()[1:] == []  # nothing left attached
+    assert "other" not in {row[1] for row in ours.execute("PRAGMA database_list").fetchall()}
+    assert ours.execute("SELECT name FROM temp.sqlite_master").fetchall() == []
 
 
 def test_what_cannot_be_gathered_is_refused_whole(copies, tmp_path):
@@ -225,8 +227,30 @@ def test_what_cannot_be_gathered_is_refused_whole(copies, tmp_path):
             "changed after it was loaded",
         ),
         (["INSERT INTO candidate (name) VALUES ('A' || char(0x30a) || 'ngstrom')"], "NFC"),
+        (["INSERT INTO load (utc) VALUES ('2026-01-01Tsome dayZ')"], "not a time"),
+        (["INSERT INTO load (utc) VALUES ('9999-12-31T23:59:59.999999Z')"], "not a time"),
+        (["INSERT INTO attachment VALUES (printf('%064x', 1), 'grid', 'evil', x'00')"], "attachment"),
+        (
+            [
+                "UPDATE evidence SET is_current = 0 WHERE kind = 'dust'",
+                "INSERT INTO evidence (candidate_id, kind, version, digest, content, is_current) "
+                "VALUES (1, 'dust', 1, 'evil', '{\"fits\": [3]}', 1)",
+            ],
+            None,
+        ),
+        (
+            [
+                "INSERT INTO load (id, utc) VALUES (77, '2026-01-01T00:00:00.000000Z')",
+                "INSERT INTO candidate_version VALUES (1, 'evil', printf('%032x', 1), 77, "
+                "replace(hex(zeroblob(900)), '00', '[') || replace(hex(zeroblob(900)), '00', ']'))",
+            ],
+            "cannot be trusted",
+        ),
     ],
-    ids=["unguarded", "trigger", "view", "setting", "measurement", "name"],
+    ids=[
+        *("unguarded", "trigger", "view", "setting", "measurement", "name", "time", "far time", "attachment"),
+        *("uncited evidence", "nested facts"),
+    ],
 )
 def test_a_file_that_was_tampered_with_is_refused_whole(copies, statements, match):
     ours, theirs, _ = copies
@@ -236,10 +260,35 @@ def test_a_file_that_was_tampered_with_is_refused_whole(copies, statements, matc
         plain.execute(statement)
     plain.close()
     digest = queue_digest(ours)
+    if match is None:  # what nothing cites is not taken in, damaged or not
+        assert gather(ours, theirs.queue_path).rulings == 5
+        assert current_evidence(ours, "SM-0001")["dust"].digest == "dust-first"
+        return
     with pytest.raises(Exception, match=match) as caught:
         gather(ours, theirs.queue_path)
     assert isinstance(caught.value, (StoreError, ValueError))
     assert queue_digest(ours) == digest
+
+
+@pytest.mark.parametrize(
+    "content",
+    ['{"fits": [3]}', "[]", "7", '{"fits":[],"cautions":[7],"facts":{},"bands":[]}', '{"fits":{},"cautions":[]}'],
+)
+def test_damaged_evidence_that_is_cited_is_refused(copies, content):
+    ours, theirs, _ = copies
+    plain = sqlite3.connect(theirs.queue_path, isolation_level=None)
+    plain.execute("UPDATE evidence SET is_current = 0 WHERE candidate_id = 1 AND kind = 'dust'")
+    plain.execute(
+        "INSERT INTO evidence (candidate_id, kind, version, digest, content, is_current) "
+        "VALUES (1, 'dust', 1, 'evil', ?, 0)",
+        (content,),
+    )
+    plain.close()
+    rule(theirs, person(theirs), "SM-0002", "star")
+    made = replace(next(ruling_log(theirs)), id="feedfacefeedface", candidate="SM-0001", check="dust")
+    made = replace(made, evidence_digest="evil", previous_hash=made.hash)
+    insert_ruling(theirs, replace(made, hash=ruling_hash(made)))
+    refused(ours, theirs.queue_path, "damaged")
 
 
 def test_an_edited_ruling_in_the_other_file_is_refused(copies):

@@ -20,7 +20,7 @@ from tui.store.candidates import refresh_inputs
 from tui.store.chains import chain_faults, receipt, receipt_faults
 from tui.store.connect import flush, immediate, in_memory, snapshot, write_copy
 from tui.store.digests import queue_digest
-from tui.store.inputs import derived_inputs, input_faults, wrong_attachments
+from tui.store.inputs import derived_inputs, input_faults, wrong_attachments, wrong_evidence, wrong_times
 from tui.store.names import folded, ring
 from tui.store.records import AuditReport, Fault
 from tui.store.reviewers import reviewers
@@ -43,7 +43,8 @@ def audit(connection: sqlite3.Connection, repair: bool = False, receipts: Sequen
         faults = [*file_faults(connection), *schema_faults(connection), *reference_faults(connection)]
         faults += [*chain_faults(connection), *receipt_faults(connection, receipts)]
         ids = [row[0] for row in connection.execute("SELECT id FROM candidate ORDER BY id").fetchall()]
-        faults += [*input_faults(connection, ids), *wrong_attachments(connection)]
+        faults += [*wrong_times(connection), *input_faults(connection, ids), *wrong_attachments(connection)]
+        faults += wrong_evidence(connection)
         wrong = dict.fromkeys([*derived_inputs(connection, ids), *wrong_rows(connection, ids)])
         if repair and wrong:
             mend(connection, list(wrong))
@@ -110,7 +111,11 @@ def wrong_rows(connection: sqlite3.Connection, ids: Iterable[int]) -> Iterator[i
     """Ids of the candidates whose derived rows do not follow from log, evidence and settings."""
     settings = read_settings(connection)
     for candidate_id in ids:
-        if kept_rows(connection, candidate_id) != wanted_rows(connection, candidate_id, settings):
+        try:
+            wanted = wanted_rows(connection, candidate_id, settings)
+        except StoreError:  # evidence that cannot be read, which is a fault of its own
+            continue
+        if kept_rows(connection, candidate_id) != wanted:
             yield candidate_id
 
 

@@ -13,6 +13,7 @@ from collections.abc import Iterable
 
 from tui.errors import InputError
 from tui.model import Ruling
+from tui.store.names import is_time
 from tui.store.records import Fault
 from tui.store.reviewers import handles
 from tui.store.rulings import ruling_hash, ruling_log
@@ -27,6 +28,8 @@ def chain_faults(connection: sqlite3.Connection) -> list[Fault]:
     reviewer_of: dict[str, str] = {}  # hash -> reviewer id
     place_of: dict[str, tuple[str, str, str]] = {}  # ruling id -> candidate, check, reviewer id
     for ruling in ruling_log(connection):
+        if not is_time(ruling.utc):
+            faults.append(fault(ruling, by, "has a time that is not in the form of the log"))
         if ruling_hash(ruling) != ruling.hash:
             faults.append(fault(ruling, by, "was changed after it was written: its hash is not that of its content"))
         if ruling.previous_hash and reviewer_of.get(ruling.previous_hash) != ruling.reviewer_id:

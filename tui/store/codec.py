@@ -4,10 +4,11 @@ from __future__ import annotations
 
 import json
 import math
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from functools import lru_cache
 from typing import Any
 
+from tui.errors import StoreError
 from tui.model import Evidence, Fit, Param, plain
 
 ENCODER = json.JSONEncoder(separators=(",", ":"), ensure_ascii=True, allow_nan=False)
@@ -75,8 +76,19 @@ def param_list(param: Param) -> list[Any]:
 
 @lru_cache(maxsize=512)
 def evidence_from(kind: str, version: int, digest: str, adequate: int | None, text: str) -> Evidence:
-    """The evidence of one row; the same object for the same row, which nobody changes."""
-    content: Mapping[str, Any] = json.loads(text)
+    """The evidence of one row; the same object for the same row, which nobody changes.
+
+    Raises:
+        StoreError: the text is not as `evidence_text` writes it.
+    """
+    try:
+        return decoded(kind, version, digest, adequate, json.loads(text))
+    except (AttributeError, KeyError, TypeError, ValueError, RecursionError) as error:
+        raise StoreError(f"The evidence on {kind} is damaged; find the candidate with: plainlight audit QUEUE.") from error
+
+
+def decoded(kind: str, version: int, digest: str, adequate: int | None, content: Mapping[str, Any]) -> Evidence:
+    """The evidence of one row whose text was parsed."""
     return Evidence(
         kind=kind,
         version=version,
@@ -87,6 +99,19 @@ def evidence_from(kind: str, version: int, digest: str, adequate: int | None, te
         digest=digest,
         bands=tuple(content["bands"]),
     )
+
+
+def is_sound(row: Sequence[Any]) -> bool:
+    """Whether a row (kind, version, digest, adequate, content), maybe from elsewhere, is as this module writes it."""
+    try:
+        evidence = evidence_from(*row)
+        words = [*evidence.cautions, *evidence.bands]
+        for fit in evidence.fits:
+            words += [fit.model, *(param.unit for param in fit.params.values())]
+        again = json.loads(evidence_text(evidence))
+        return all(isinstance(word, str) for word in words) and again == json.loads(row[4])
+    except (AttributeError, TypeError, ValueError, StoreError):
+        return False
 
 
 def fit_from(fit: list[Any]) -> Fit:

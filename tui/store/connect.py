@@ -215,7 +215,8 @@ def use_log(connection: QueueConnection) -> None:
 def bring_up_to_date(path: str, *, is_new: bool) -> None:
     """Create the tables, or copy an older file to NAME.vN.bak and run the migrations it lacks."""
     try:
-        connection = sqlite3.connect(path, timeout=BUSY_SECONDS, isolation_level=None, factory=QueueConnection)
+        where = os.path.abspath(path)  # so that no name of a file has a meaning of its own to SQLite
+        connection = sqlite3.connect(where, timeout=BUSY_SECONDS, isolation_level=None, factory=QueueConnection)
     except sqlite3.Error as error:
         raise StoreError(sentence(path, error)) from error
     connection.queue_path = path

@@ -285,8 +285,8 @@ def oddness_of(star: Evidence | None) -> tuple[float | None, str, float | None]:
     sigma = star.facts.get("oddness")
     if sigma is None:
         sigma = sigma_of(star.best.p)
-    band = str(star.facts.get("odd_band", band))
-    return number(sigma), band, number(star.facts.get("odd_pull", pull))
+    told = {name: star.facts[name] for name in ("odd_band", "odd_pull") if star.facts.get(name) is not None}
+    return number(sigma), str(told.get("odd_band", band)), number(told.get("odd_pull", pull))
 
 
 def sigma_of(p: float) -> float | None:

@@ -12,7 +12,7 @@ import os
 import shutil
 import sqlite3
 import tempfile
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping
 from contextlib import contextmanager
 
 from tui.errors import HandleError, StoreError, UnknownNameError
@@ -20,12 +20,13 @@ from tui.store import deriving
 from tui.store.audit import schema_faults
 from tui.store.candidates import refresh_inputs
 from tui.store.chains import chain_faults
+from tui.store.codec import is_sound
 from tui.store.connect import immediate, is_held_open, open_queue, read_header, read_only, write_copy
 from tui.store.filesystem import network_type
-from tui.store.inputs import input_faults
+from tui.store.inputs import input_faults, wrong_attachments, wrong_times
 from tui.store.measurements import COLUMNS
 from tui.store.names import later_utc
-from tui.store.records import GatherReport
+from tui.store.records import Fault, GatherReport
 from tui.store.reviewers import checked_handle, handles
 from tui.store.settings import STANDING_NAMES, newest, settings_from, touched
 
@@ -72,15 +73,16 @@ def gather(
     if os.path.exists(path) and os.path.samefile(path, getattr(connection, "queue_path", "") or path + "/"):
         raise StoreError(f"{path} is this queue itself; there is nothing to gather.")
     with private_copy(path) as copy, attached(connection, copy), immediate(connection):
+        refuse(path, wrong_times(connection, "other"))
         refuse_conflicts(connection, path)
         people = take_people(connection, path, rename or {})
         settings_before = newest(connection)
         settings_taken = take_rows(connection, "setting", "id, name, value, utc, reviewer_id", "id")
         settings = settings_from(newest(connection))
         candidates, changed, measurements = take_inputs(connection, path)
-        evidence = take_cited(connection)
+        evidence = take_cited(connection, path)
         rulings, ruled = take_rulings(connection)
-        ruled |= adopt_current(connection) | take_seals(connection)
+        ruled |= adopt_current(connection, path) | take_seals(connection)
         settings_now = newest(connection)
         if any(settings_before.get(name) != settings_now.get(name) for name in STANDING_NAMES):
             ruled |= set(touched(connection))
@@ -110,12 +112,7 @@ def private_copy(path: str) -> Iterator[str]:
             faults = [*schema_faults(connection)]
             if not faults and connection.execute("PRAGMA quick_check(1)").fetchone()[0] != "ok":
                 raise StoreError(f"{path} is damaged; nothing was gathered. Start again from a backup of it.")
-            faults = faults or chain_faults(connection)
-            if faults:
-                raise StoreError(
-                    f"{path} cannot be trusted, so nothing was gathered: {faults[0].place}: {faults[0].text} "
-                    f"See: plainlight audit {path}."
-                )
+            refuse(path, faults or chain_faults(connection))
         finally:
             connection.close()
         yield copy
@@ -139,6 +136,19 @@ def copy_queue(path: str, copy: str) -> None:
             shutil.copyfile(path + "-wal", copy + "-wal")
     except OSError as error:
         raise StoreError(f"{path} cannot be read: {error.strerror}.") from error
+
+
+def refuse(path: str, faults: Iterable[Fault]) -> None:
+    """StoreError that names the first fault, if there is any."""
+    try:
+        found = next(iter(faults), None)
+    except RecursionError:
+        found = Fault("input", "facts", "are nested too deep.")
+    if found is not None:
+        raise StoreError(
+            f"{path} cannot be trusted, so nothing was gathered: {found.place}: {found.text} "
+            f"See: plainlight audit {path}."
+        )
 
 
 @contextmanager
@@ -251,43 +261,61 @@ def take_inputs(connection: sqlite3.Connection, path: str) -> tuple[int, set[int
             f"INSERT INTO {table} (candidate_id, load_id, {columns}) SELECT ours.id, our_load.id, {theirs} {new}"
         ).rowcount
         measurements += added if table == "measurement" else 0
-    for fault in input_faults(connection, sorted(changed)):
-        raise StoreError(f"{path} cannot be trusted, so nothing was gathered: {fault.place}: {fault.text}")
+    refuse(path, input_faults(connection, sorted(changed)))
+    refuse(path, wrong_attachments(connection))
     refresh_inputs(connection, sorted(changed))
     return candidates, changed, measurements
 
 
-def take_cited(connection: sqlite3.Connection) -> int:
+def take_cited(connection: sqlite3.Connection, path: str) -> int:
     """Add the evidence that the other's rulings cite, as evidence of the past; how much was new."""
-    query = (
-        "INSERT INTO evidence (candidate_id, kind, version, digest, adequate, content, is_current) "
-        "SELECT ours.id, t.kind, t.version, t.digest, t.adequate, t.content, 0 "
+    cited = (
         f"FROM other.evidence AS t {SAME_CANDIDATE} WHERE EXISTS (SELECT 1 FROM other.ruling AS r "
         'WHERE r.candidate = theirs.name AND r."check" = t.kind AND r.evidence_digest = t.digest) '
         "AND NOT EXISTS (SELECT 1 FROM evidence AS mine "
         "WHERE mine.candidate_id = ours.id AND mine.kind = t.kind AND mine.digest = t.digest)"
     )
-    return connection.execute(query).rowcount
+    return take_evidence(connection, path, cited, is_current=0)[1]
 
 
-def adopt_current(connection: sqlite3.Connection) -> set[int]:
+def adopt_current(connection: sqlite3.Connection, path: str) -> set[int]:
     """Make the other's current evidence ours where we have none and the inputs are the same; ids of the candidates."""
-    adopted = (
-        f"FROM other.evidence AS t {SAME_CANDIDATE} WHERE ours.input_digest = theirs.input_digest AND t.is_current = 1 "
-        "AND NOT EXISTS (SELECT 1 FROM evidence AS mine "
+    none_here = (
+        "ours.input_digest = theirs.input_digest AND t.is_current = 1 AND NOT EXISTS (SELECT 1 FROM evidence AS mine "
         "WHERE mine.candidate_id = ours.id AND mine.kind = t.kind AND mine.is_current = 1)"
     )
-    changed = {row[0] for row in connection.execute(f"SELECT DISTINCT ours.id {adopted}").fetchall()}
     held = (
-        "SELECT held.id FROM evidence AS held JOIN (SELECT ours.id AS candidate_id, t.kind, t.digest "
-        f"{adopted}) AS wanted USING (candidate_id, kind, digest)"
+        f"FROM other.evidence AS t {SAME_CANDIDATE} JOIN evidence AS held ON held.candidate_id = ours.id "
+        f"AND held.kind = t.kind AND held.digest = t.digest WHERE {none_here}"
     )
-    connection.execute(f"UPDATE evidence SET is_current = 1 WHERE id IN ({held})")
-    connection.execute(
-        "INSERT INTO evidence (candidate_id, kind, version, digest, adequate, content, is_current) "
-        f"SELECT ours.id, t.kind, t.version, t.digest, t.adequate, t.content, 1 {adopted}"
-    )
-    return changed
+    found = connection.execute(f"SELECT held.id, ours.id {held}").fetchall()
+    connection.executemany("UPDATE evidence SET is_current = 1 WHERE id = ?", [(row_id,) for row_id, _ in found])
+    adopted = f"FROM other.evidence AS t {SAME_CANDIDATE} WHERE {none_here}"
+    return {candidate_id for _, candidate_id in found} | take_evidence(connection, path, adopted, is_current=1)[0]
+
+
+def take_evidence(connection: sqlite3.Connection, path: str, which: str, *, is_current: int) -> tuple[set[int], int]:
+    """Add the other's evidence that `which` gives, each read first; ids of the candidates, and how many were added."""
+    changed: set[int] = set()
+    count = 0
+    query = f"SELECT ours.id, t.kind, t.version, t.digest, t.adequate, t.content {which}"
+    connection.execute(f"CREATE TEMP TABLE taken AS {query}")
+    try:
+        cursor = connection.execute("SELECT * FROM temp.taken")
+        while rows := cursor.fetchmany(1000):
+            wrong = (Fault("input", f"evidence on {row[1]}", "is damaged.") for row in rows if not is_sound(row[1:]))
+            refuse(path, wrong)
+            changed |= {row[0] for row in rows}
+            count += len(rows)
+            connection.executemany(
+                "INSERT INTO evidence (candidate_id, kind, version, digest, adequate, content, is_current) "
+                f"VALUES (?, ?, ?, ?, ?, ?, {is_current})",
+                rows,
+            )
+    finally:
+        cursor.close()
+        connection.execute("DROP TABLE temp.taken")
+    return changed, count
 
 
 def take_rulings(connection: sqlite3.Connection) -> tuple[int, set[int]]:

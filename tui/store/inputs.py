@@ -10,8 +10,9 @@ from typing import Any
 
 from tui.store import sides
 from tui.store.candidates import input_states, pages
+from tui.store.codec import is_sound
 from tui.store.measurements import COLUMNS, from_row, measurement_values, short_digest
-from tui.store.names import normal_name
+from tui.store.names import is_time, normal_name
 from tui.store.records import Fault
 
 
@@ -94,6 +95,28 @@ def wrong_attachments(connection: sqlite3.Connection) -> Iterator[Fault]:
         content = connection.execute("SELECT content FROM attachment WHERE digest = ?", (digest,)).fetchone()[0]
         if hashlib.sha256(content).hexdigest() != digest:
             yield Fault("input", name, "this attachment was changed: its digest is not that of its content.")
+
+
+def wrong_times(connection: sqlite3.Connection, schema: str = "main") -> Iterator[Fault]:
+    """Times that are not in the form in which logs keep them."""
+    for table, column in (("load", "utc"), ("setting", "utc"), ("reviewer", "joined_utc"), ("reviewer_rename", "utc")):
+        for (utc,) in connection.execute(f"SELECT DISTINCT {column} FROM {schema}.{table}").fetchall():
+            if not is_time(utc):
+                yield Fault("input", table, f"{utc[:40]!r} is not a time in the form of the log.")
+
+
+def wrong_evidence(connection: sqlite3.Connection) -> Iterator[Fault]:
+    """Evidence that cannot be read back; its numbers are proved by computing it again, not here."""
+    last = 0
+    query = (
+        "SELECT evidence.id, name, kind, version, digest, adequate, content FROM evidence "
+        "JOIN candidate ON candidate.id = candidate_id WHERE evidence.id > ? ORDER BY evidence.id LIMIT 1000"
+    )
+    while rows := connection.execute(query, (last,)).fetchall():
+        last = rows[-1][0]
+        for _, name, kind, *rest in rows:
+            if not is_sound((kind, *rest)):
+                yield Fault("input", name, f"its evidence on {kind} is not as the program writes it.")
 
 
 def marks(ids: Sequence[int]) -> str:

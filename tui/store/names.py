@@ -9,6 +9,7 @@ from datetime import datetime, timedelta
 
 from tui.errors import InputError, UnknownNameError
 
+LAST_YEAR = 8999  # so that there is always a later time
 MAX_NAME = 200  # characters
 RING_STEPS = 1 << 64
 UTC_FORM = "%Y-%m-%dT%H:%M:%S.%fZ"
@@ -67,10 +68,20 @@ def later_utc(utc: str, than: str) -> str:
     return (datetime.strptime(than, UTC_FORM) + timedelta(microseconds=1)).strftime(UTC_FORM)
 
 
+def is_time(utc: str) -> bool:
+    """Whether a text is a time as the logs keep it."""
+    try:
+        return checked_utc(utc) == utc
+    except InputError:
+        return False
+
+
 def checked_utc(utc: str) -> str:
     """`utc` itself; InputError unless it is like 2026-01-31T23:59:59.000000Z, which sorts as text."""
     try:
         moment = datetime.strptime(utc, UTC_FORM)
+        if moment.year > LAST_YEAR:
+            raise ValueError(utc)
     except ValueError:
         raise InputError(f"A time is written like 2026-01-31T23:59:59.000000Z, not {utc!r}.") from None
     return moment.strftime(UTC_FORM)
