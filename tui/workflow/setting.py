@@ -14,7 +14,7 @@ MEANINGS = {
     "quorum": "sure rulings that settle a check",
     "agree_share": "share of them that must agree",
     "walk_all": "every check must be ruled even after one explains",
-    "photosphere": "dwarfs, planck, or grid DIR",
+    "photosphere": "dwarfs, planck, or grid DIR (logg=4.5 mh=0 behind it choose among its spectra)",
     "law": "extinction law: g23, f99, ccm89, wc19",
     "r_v": "A(V)/E(B-V), a number or free",
     "av_prior": "largest A(V) in mag; empty: av_max of the candidate, else 1.8 mag/kpc, else 5 mag",
