@@ -28,7 +28,7 @@ from tui.store.views import (
     view_rows,
 )
 
-TODO = dict.fromkeys(CHECKS, "todo")
+NOT_RULED = dict.fromkeys(CHECKS, "todo")
 SEALED = dict.fromkeys(CHECKS, "sealed")
 
 
@@ -43,7 +43,7 @@ def odd(name, pull):
 
 def test_a_row_before_anybody_ruled(filled, team):
     (row,) = view_rows(filled, team[0].id, [1])
-    assert (row.name, row.states, row.outcome, row.ruled, row.to_rule) == ("SM-0001", TODO, "sealed", 0, 5)
+    assert (row.name, row.states, row.outcome, row.ruled, row.to_rule) == ("SM-0001", NOT_RULED, "sealed", 0, 5)
     assert (row.needs_me, row.done, row.seal_open, row.stale) == (True, False, False, frozenset())
 
 
@@ -142,7 +142,7 @@ def test_nothing_readable_tells_what_one_other_did(filled, team, word):
             rule(filled, plover, name, check, word, 200 + number, note="secret")
     assert [everything_readable(filled, reader) for reader in (heron.id, None)] == before
     save_evidence(filled, [("SM-0003", evidence("dust", True, "new"))])  # makes plover's rulings no less sealed
-    assert view_rows(filled, heron.id, [3])[0].states == TODO
+    assert view_rows(filled, heron.id, [3])[0].states == NOT_RULED
 
 
 def test_that_a_candidate_needs_nobody_is_all_that_the_seal_lets_out(filled, team):

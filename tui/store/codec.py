@@ -84,7 +84,7 @@ def evidence_from(kind: str, version: int, digest: str, adequate: int | None, te
     try:
         return decoded(kind, version, digest, adequate, json.loads(text))
     except (AttributeError, KeyError, TypeError, ValueError, RecursionError) as error:
-        raise StoreError(f"The evidence on {kind} is damaged; find the candidate with: plainlight audit QUEUE.") from error
+        raise StoreError(f"Evidence on {kind} is damaged; find the candidate with: plainlight audit QUEUE.") from error
 
 
 def decoded(kind: str, version: int, digest: str, adequate: int | None, content: Mapping[str, Any]) -> Evidence:

@@ -17,15 +17,15 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from tui.consensus.seal import SEALED, TODO
 from tui.errors import InputError, UnknownNameError
 from tui.model import CHECKS, OUTCOMES
 from tui.store.connect import snapshot
 from tui.store.names import RING_STEPS, folded
-from tui.store.records import SORTS, Filter
+from tui.store.records import NOT_RULED, SEALED, SORTS, Filter
 
-UNRESOLVED = ("open", "split", TODO, SEALED)
-STATE_RANKS = (SEALED, TODO, "open", "split", "unclear", "short", "explains", "nodata")  # order of states in a sort
+UNRESOLVED = ("open", "split", NOT_RULED, SEALED)
+# the order of states in a sort
+STATE_RANKS = (SEALED, NOT_RULED, "open", "split", "unclear", "short", "explains", "nodata")
 OUTCOME_RANKS = (SEALED, "pending", "unexplained", "explained", "ordinary")
 INDEXED = {  # sorts that are the order of an index
     "oddness": "oddness DESC, id",
@@ -142,7 +142,7 @@ class Eyes:
         """Ranks in STATE_RANKS of what the reader sees on a check."""
         if self.reviewer_id is None:
             return np.zeros(self.size, dtype=np.int8)
-        ranks = np.full(self.size, STATE_RANKS.index(TODO), dtype=np.int8)
+        ranks = np.full(self.size, STATE_RANKS.index(NOT_RULED), dtype=np.int8)
         untestable = f"SELECT id FROM queue_row WHERE untestable > 0 AND untestable >> {CHECKS.index(check)} & 1"
         ranks[ids_from(self.connection, untestable)] = STATE_RANKS.index("nodata")
         query = f"SELECT candidate_id, {check} FROM reviewer_row WHERE reviewer_id = ?"

@@ -10,15 +10,17 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 
-from tui.consensus.seal import SEALED, TODO
 from tui.consensus.standing import CheckCount
 from tui.model import CHECKS, Candidate, FloatArray, Ruling
 
 __all__ = [
-    "SEALED", "TODO", "SORTS", "Attachment", "AuditReport", "CandidateView", "CheckCount", "Cutout", "Fault", "Filter",
-    "GatherReport", "LoadCounts", "LoadRecord", "QueueRow", "RulingLine", "SettingLine", "StoryLine", "TeamRow",
+    "NOT_RULED", "SEALED", "SORTS", "Attachment", "AuditReport", "CandidateView", "CheckCount", "Cutout", "Fault",
+    "Filter", "GatherReport", "LoadCounts", "LoadRecord", "QueueRow", "RulingLine", "SettingLine", "StoryLine",
+    "TeamRow",
 ]  # fmt: skip
 
+SEALED = "sealed"  # what the outcome reads before the seal opens
+NOT_RULED = "todo"  # what a check reads that the reader has not ruled, before the seal opens
 SORTS = ("oddness", "name", "band", "pull", "outcome", "ruled", "needs", *CHECKS)
 
 

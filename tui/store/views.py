@@ -16,14 +16,13 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
-from tui.consensus.seal import SEALED, TODO
 from tui.model import CHECKS, OUTCOMES
 from tui.store.candidate_view import standing_for, story
 from tui.store.connect import snapshot
 from tui.store.deriving import checks_of
 from tui.store.names import folded
 from tui.store.order import UNRESOLVED, ids_from, view_order
-from tui.store.records import QueueRow
+from tui.store.records import NOT_RULED, SEALED, QueueRow
 from tui.store.team import team_standing
 from tui.store.turns import next_for
 
@@ -57,7 +56,7 @@ def sight(reviewer_id: str | None) -> Sight:
         sealed = f"'{SEALED}'"
         return Sight("queue_row AS q", (), dict.fromkeys(CHECKS, sealed), sealed, *["0"] * 5)
     states = {
-        check: f"COALESCE(v.{check}, CASE WHEN q.untestable >> {bit} & 1 THEN 'nodata' ELSE '{TODO}' END)"
+        check: f"COALESCE(v.{check}, CASE WHEN q.untestable >> {bit} & 1 THEN 'nodata' ELSE '{NOT_RULED}' END)"
         for bit, check in enumerate(CHECKS)
     }
     return Sight(
