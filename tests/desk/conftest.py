@@ -211,11 +211,11 @@ class FakeSession:
             counted[f"unresolved:{check}"] = sum(row.states[check] in {"open", "split", "todo"} for row in rows)
         return counted
 
-    def find(self, text, substring=False):
+    def find(self, text, substring=False, limit=-1):
         wanted = text.casefold()
         hits = [i for i, name in enumerate(self.names)
                 if (wanted in name.casefold() if substring else name.casefold().startswith(wanted))]  # fmt: skip
-        return array("q", hits)
+        return array("q", hits if limit < 0 else hits[:limit])
 
     def id_of(self, name):
         if name not in self.names:
@@ -287,6 +287,12 @@ class FakeSession:
 
     def cutouts(self, name):
         return []
+
+    def dip_curves(self, name):
+        return []
+
+    def look_alikes(self, name, star=None):
+        return None
 
     def curve(self, name, check, fit_index=0):
         wave = np.geomspace(0.3, 30, 200)

@@ -7,7 +7,7 @@ seen by W4 share one. This is a fact of the queue: it enters no digest and no `a
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -114,11 +114,27 @@ def look_alikes(
     order = found[np.argsort(-cosine[found], kind="stable")]
     counts = chance_counts(target, queue, rng, permutations)
     p = tail(counts, found.size, permutations)
+    alike = Alike(order, cosine[order], float(counts.mean()) if counts.size else 0.0, p, {})
+    return with_shared(alike, row, rng, quantities or {}, permutations)
+
+
+def with_shared(
+    alike: Alike,
+    row: int,
+    rng: np.random.Generator,
+    quantities: Mapping[str, FloatArray],
+    permutations: int = PERMUTATIONS,
+) -> Alike:
+    """The same look-alikes with what else they share; quantities as in `look_alikes`.
+
+    They may be known (not NaN) of the look-alikes and a random sample of the queue only.
+    """
+    rows = np.append(alike.rows, row)
     shared = {
-        name: closeness_p(np.append(order, row), np.asarray(values, dtype=float), rng, permutations)
-        for name, values in (quantities or {}).items()
+        name: closeness_p(rows, np.asarray(values, dtype=float), rng, permutations)
+        for name, values in quantities.items()
     }
-    return Alike(order, cosine[order], float(counts.mean()) if counts.size else 0.0, p, shared)
+    return replace(alike, shared=shared)
 
 
 def chance_counts(
@@ -243,10 +259,22 @@ def sentence(found: Alike) -> str:
     """What the look-alikes of one candidate mean."""
     if not found.rows.size:
         return "No candidate of the queue looks like this one."
-    start = f"{found.rows.size} candidates share this pattern of pulls, chance alone gives {found.expected:.3g}"
+    one = found.rows.size == 1
+    who = "One candidate shares" if one else f"{found.rows.size} candidates share"
+    start = f"{who} this pattern of pulls, chance alone gives {found.expected:.3g}"
     near = [name for name, p in found.shared.items() if p <= P_SHARED]
     if found.p > P_SHARED:
         return f"{start}: no more than chance."
     if not near:
-        return f"{start}. They share neither magnitude, epoch nor place: a class of stars does that as well."
-    return f"{start}. They share {' and '.join(near)} too, as a fault of calibration would."
+        lacking = listed(list(found.shared), "nor") if found.shared else "magnitude, epoch nor place"
+        return f"{start}. They share neither {lacking}: a class of stars does that as well."
+    return f"{start}. They share {listed(near, 'and')} too, as a fault of calibration would."
+
+
+def listed(words: Sequence[str], last: str) -> str:
+    """Words in a row.
+
+    >>> listed(["magnitude", "epoch", "place"], "nor")
+    'magnitude, epoch nor place'
+    """
+    return f" {last} ".join(filter(None, (", ".join(words[:-1]), words[-1])))

@@ -6,10 +6,12 @@ from collections.abc import Mapping, Sequence
 
 from tui.cli.printing import NOTHING, figure, heading, line, signed, table
 from tui.model import CHECK_TITLES, CHECKS, Dip, Evidence, Fit, Measurement, Neighbour, Param
+from tui.workflow.lookalikes import LookAlikes
 from tui.workflow.showing import Dossier
 
 ADEQUATE = {True: "adequate: some fit explains the data", False: "not adequate: no fit explains the data"}
 BOUND = {True: "not refused", False: "refused", None: "not given"}
+MOST_ALIKE = 10  # look-alikes listed
 UNTESTABLE = "untestable with these data"
 
 
@@ -27,6 +29,7 @@ def print_dossier(found: Dossier) -> None:
             heading(f"{title}: {adequacy_words(evidence)}")
             print_evidence(evidence)
             print_depths(found.candidate.dips if kind == "dips" else ())
+    print_look_alikes(found.look_alikes)
 
 
 def print_neighbours(neighbours: Sequence[Neighbour]) -> None:
@@ -53,6 +56,23 @@ def print_depths(dips: Sequence[Dip]) -> None:
             (one.event, one.band, figure(one.depth), figure(one.depth_error, 2), one.epoch or NOTHING) for one in dips
         ]
         table(("event", "band", "depth", "error", "epoch"), rows, numbers=(2, 3))
+
+
+def print_look_alikes(found: LookAlikes | None) -> None:
+    """What the candidates with a like pattern of pulls mean, and the most alike of them."""
+    if found is None:
+        return
+    heading(f"look-alikes among {found.searched} candidates")
+    line(found.sentence)
+    if found.shared:
+        line("p by chance: " + ", ".join(f"{name} {figure(p, 2)}" for name, p in found.shared.items()))
+    if found.candidates:
+        rows = [
+            (one.name, figure(one.cosine, 3), signed(one.pull), figure(one.mag), figure(one.apart_deg, 3), one.epoch)
+            for one in found.candidates[:MOST_ALIKE]
+        ]
+        heads = ("name", "cosine", f"{found.band} pull", f"{found.mag_band} mag", "apart (deg)", "epoch")
+        table(heads, [(*cells[:-1], cells[-1] or NOTHING) for cells in rows], numbers=(1, 2, 3, 4))
 
 
 def place(facts: Mapping[str, object]) -> str:

@@ -5,6 +5,7 @@ from __future__ import annotations
 import sqlite3
 from array import array
 from collections.abc import Iterable, Mapping, Sequence
+from itertools import count
 from typing import TYPE_CHECKING
 
 from tui.errors import HandleError, UnknownNameError
@@ -12,12 +13,15 @@ from tui.model import CHECKS, KINDS, Band, Candidate, Evidence, Fit, Reviewer, R
 from tui.store import candidates, claims, connect, drafts, evidence, reviewers, rulings, views
 from tui.workflow.basis import read_basis
 from tui.workflow.clock import utc_now
+from tui.workflow.lookalikes import LookAlikeFinder, LookAlikes
 from tui.workflow.records import CandidateView, Cutout, Filter, QueueRow, StoryLine
 
 if TYPE_CHECKING:
     from tui.checks import Curve
+    from tui.workflow.dip_curves import DipCurve
     from tui.workflow.tally_record import Tally
 
+_numbers = count()
 JOIN_HINT = "Join first: plainlight join QUEUE HANDLE."
 
 
@@ -35,6 +39,8 @@ class Session:
         self.write = write
         self.basis = read_basis(connection)
         self._read_at = connect.data_version(connection)
+        self._number = next(_numbers)
+        self._alike = LookAlikeFinder()  # shared with the clones
 
     # --- opening and closing ---
 
@@ -56,7 +62,9 @@ class Session:
 
     def clone(self) -> Session:
         """The same reader on a connection of its own, for another thread."""
-        return Session(self.path, connect.open_queue(self.path, write=self.write), self.reviewer, self.write)
+        other = Session(self.path, connect.open_queue(self.path, write=self.write), self.reviewer, self.write)
+        other._alike = self._alike
+        return other
 
     def close(self) -> None:
         """Close the connection; the session is of no use afterwards."""
@@ -115,10 +123,11 @@ class Session:
         """Everyone who joined, by handle."""
         return reviewers.reviewers(self.connection)
 
-    def find(self, text: str, substring: bool = False) -> array[int]:
-        """Ids of the candidates whose name starts with `text`, or holds it."""
-        search = views.find_substring if substring else views.find_prefix
-        return search(self.connection, text)
+    def find(self, text: str, substring: bool = False, limit: int = -1) -> array[int]:
+        """Ids of the candidates whose name starts with `text` (the first `limit`; -1: all), or that hold it."""
+        if substring:
+            return views.find_substring(self.connection, text)
+        return views.find_prefix(self.connection, text, limit)
 
     def id_of(self, name: str) -> int:
         """The id of a candidate in this file. UnknownNameError if there is none of that name."""
@@ -200,6 +209,31 @@ class Session:
         from tui.workflow import probing
 
         return probing.probe(self.candidate(name), check, fixed, frozenset(dropped), self.basis)
+
+    def dip_curves(self, name: str) -> list[DipCurve]:
+        """Depth against wavelength of every model fitted to the candidate's dips."""
+        from tui.workflow.dip_curves import dip_curves
+
+        dips = self.evidence(name, ("dips",)).get("dips")
+        return dip_curves(self.candidate(name), dips, self.settings.law, self.band_info())
+
+    def look_alikes(self, name: str, star: Evidence | None = None) -> LookAlikes | None:
+        """Candidates of this queue whose pulls share a pattern with this one's; None where it has no pulls.
+
+        Slow the first time on a long queue (some 2 s at 100,000 candidates); what was read is kept for all clones.
+
+        Args:
+            star: today's star evidence of the candidate; None: as `evidence` gives it.
+        """
+        star = star or self.evidence(name, ("star",)).get("star")
+        place = candidates.candidate_id(self.connection, name)
+        seen = (self._number, self.data_version(), self.connection.total_changes)
+        own = (place, candidates.candidate_name(self.connection, place))
+        return self._alike.find(self.connection, seen, own, star, self.band_info())
+
+    def candidate_count(self) -> int:
+        """How many candidates the queue has."""
+        return candidates.candidate_count(self.connection)
 
     def band_info(self) -> Mapping[str, Band]:
         """Every band by name: pivot wavelength, beam, saturation and so on."""

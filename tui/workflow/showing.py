@@ -11,6 +11,7 @@ from tui.model import CHECKS, Candidate, Dip, Evidence, Fit, Measurement, plain
 from tui.workflow.records import CandidateView
 
 if TYPE_CHECKING:
+    from tui.workflow.lookalikes import LookAlikes
     from tui.workflow.session import Session
 
 DIP_PARTS = ("band", "depth", "depth_error", "epoch")
@@ -25,6 +26,7 @@ class Dossier:
     view: CandidateView
     oddness: Mapping[str, Any]  # sigma, band, pull; empty where there is no evidence for `star`
     measurements: tuple[Measurement, ...]  # by wavelength
+    look_alikes: LookAlikes | None = None  # None where they were not looked for, or no pulls are known
 
     def as_dict(self) -> dict[str, Any]:
         """The document of `show --json`: JSON values only, in a fixed order of keys."""
@@ -36,6 +38,7 @@ class Dossier:
             "checks": {check: self.check_dict(check) for check in CHECKS},
             "mixture": evidence_dict(self.evidence.get("mixture")),
             "dips": dip_dicts(self.candidate.dips, self.evidence.get("dips")),
+            "look_alikes": self.look_alikes.as_dict() if self.look_alikes else None,
         }
 
     def check_dict(self, check: str) -> dict[str, Any]:
@@ -56,6 +59,8 @@ class Dossier:
 def dossier(session: Session, name: str) -> Dossier:
     """Gather what there is to show of a candidate, computing lacking evidence first.
 
+    Look-alikes are looked for in a queue of up to LONG_QUEUE candidates only, since that takes seconds in a longer one.
+
     Raises:
         UnknownNameError: no candidate of that name.
     """
@@ -66,7 +71,11 @@ def dossier(session: Session, name: str) -> Dossier:
         candidate.measurements,
         key=lambda one: (bands[one.band].pivot_um if one.band in bands else math.inf, one.band, one.source, one.epoch),
     )
-    return Dossier(candidate, evidence, session.view(name), oddness_dict(evidence.get("star")), tuple(measured))
+    from tui.workflow.lookalikes import LONG_QUEUE
+
+    alike = session.look_alikes(name, evidence.get("star")) if session.candidate_count() <= LONG_QUEUE else None
+    oddness = oddness_dict(evidence.get("star"))
+    return Dossier(candidate, evidence, session.view(name), oddness, tuple(measured), alike)
 
 
 def oddness_dict(star: Evidence | None) -> dict[str, Any]:

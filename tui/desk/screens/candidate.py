@@ -20,7 +20,7 @@ from tui.desk.screens.candidate_draw import advice_height, draw_foot, draw_head,
 from tui.desk.screens.candidate_layout import shares
 from tui.desk.screens.candidate_opening import OpensCandidates
 from tui.desk.screens.candidate_ruling import RecordsRulings
-from tui.desk.screens.pages import PAGES, page_rows
+from tui.desk.screens.pages import LOOK_ALIKES, PAGES, page_rows
 from tui.desk.screens.walk import Walk, step_check
 from tui.desk.session_thread import SessionThread
 from tui.desk.widgets.cutout import STRETCHES
@@ -56,6 +56,7 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
         self.before: list[str] = []
         self.reads = SessionThread(session, "evidence")
         self.writes = SessionThread(session, "rulings")
+        self.alikes = SessionThread(session, "look-alikes")
         self._ready_at = float("inf")  # keys older than the page they would hit are dropped
         self._draft_of: tuple[str, str] | None = None
 
@@ -83,6 +84,7 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
     def on_unmount(self) -> None:
         """Finish what is being written; leave what is being read."""
         self.reads.close(finish=False)
+        self.alikes.close(finish=False)
         self.writes.close(finish=True)
 
     def on_resize(self, event: events.Resize) -> None:
@@ -197,6 +199,8 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
         """One page by its number; 0 is the plot."""
         self.walk.page = number if 0 <= number <= len(PAGES) else 0
         self.walk.hand = None
+        if self.walk.page == LOOK_ALIKES:
+            self.look_for_alikes()
         self.query_one("#walk-page", RowsView).to_top()
         self.draw()
 

@@ -8,7 +8,9 @@ from typing import TYPE_CHECKING, Any
 
 from textual import work
 
+from tui.desk.screens.pages import LOOK_ALIKES
 from tui.desk.screens.walk import Loaded, Walk, first_check
+from tui.desk.widgets.rows_view import RowsView
 from tui.errors import TuiError
 from tui.model import CHECKS
 
@@ -55,6 +57,10 @@ class OpensCandidates:
                 walk.trouble = NONE
             walk.story = tuple(await self.reads.ask(lambda s: s.story(name)))
             walk.cutouts = tuple(await self.reads.ask(lambda s: s.cutouts(name)))
+            if loaded.candidate.dips:
+                walk.dip_curves = tuple(await self.reads.ask(lambda s: s.dip_curves(name)))
+            if walk.page == LOOK_ALIKES:
+                self.look_for_alikes()
             await self.draw_curves(walk)
         except TuiError as error:
             walk.trouble = walk.message = str(error)
@@ -88,6 +94,26 @@ class OpensCandidates:
             walk.message = str(error)
         if self.is_here(walk):
             self.draw()
+
+    def look_for_alikes(self: CandidateScreen) -> None:
+        """Look through the queue once, when the page of look-alikes is turned to and the evidence is here."""
+        walk = self.walk
+        if walk.look_alikes is None and not walk.looking and not walk.alike_trouble and walk.evidence.get("star"):
+            walk.looking = True
+            self.find_alikes(walk)
+
+    @work(group="alike", exit_on_error=False)
+    async def find_alikes(self: CandidateScreen, walk: Walk) -> None:
+        """Fetch what looks like this candidate; in a long queue this takes seconds, and a thread of its own."""
+        try:
+            star = walk.evidence.get("star")
+            walk.look_alikes = await self.alikes.ask(lambda s: s.look_alikes(walk.name, star))
+            walk.alike_trouble = "" if walk.look_alikes else "the star alone could not be fitted here"
+        except TuiError as error:
+            walk.alike_trouble = str(error)
+        walk.looking = False
+        if self.is_here(walk):
+            self.query_one("#walk-page", RowsView).redraw()
 
     def is_here(self: CandidateScreen, walk: Walk) -> bool:
         """Whether that page is still the one on view: what comes late is ignored."""

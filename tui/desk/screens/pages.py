@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import os
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
@@ -10,10 +11,11 @@ from typing import Any
 from tui.desk.screens.walk import Walk
 from tui.desk.text import RULING_WORDS, clock, fit, number, safe, short_band, signed
 from tui.desk.widgets.cutout import cutout_rows
+from tui.desk.widgets.dip_plot import dip_plot
 from tui.desk.widgets.numbers import adequate_word, param_rows, statistic_rows
 from tui.desk.widgets.rows import Row, paragraph, row
 from tui.desk.widgets.spectrum_plot import braille_works
-from tui.model import CHECK_TITLES, CHECKS, Measurement
+from tui.model import CHECK_TITLES, CHECKS, Dip, Measurement
 
 
 @dataclass(frozen=True, slots=True)
@@ -139,33 +141,63 @@ def pictures_page(walk: Walk, width: int, height: int) -> list[Row]:
 
 
 def dips_page(walk: Walk, width: int, height: int) -> list[Row]:
-    """Dimming events by band, and what their fits say."""
-    rows = [_head("dips")]
+    """Each dimming event: depth against wavelength with its models, then the depths and what the fits say."""
     dips = walk.loaded.candidate.dips
     if not dips:
-        return [*rows, _quiet("no dips were loaded: plainlight load QUEUE TABLE --dips TABLE")]
-    rows.append(row(("  event         band        depth, %    error  epoch", "quiet")))
-    for dip in sorted(dips, key=lambda one: (one.event, _pivot(one.band, walk.loaded.bands))):
-        rows.append(row(f"  {fit(safe(dip.event), 13)} {fit(short_band(dip.band), 10)} {100 * dip.depth:9.2f} "
-                        f"{100 * dip.depth_error:8.2f}  {safe(dip.epoch)}"))  # fmt: skip
+        return [_head("dips"), _quiet("no dips were loaded: plainlight load QUEUE TABLE --dips TABLE")]
     found = walk.evidence.get("dips")
+    named = list(found.facts.get("events", [])) if found is not None else []
+    events = [*named, *dict.fromkeys(one.event for one in dips if one.event not in named)]
+    plotted, unicode = max(8, min(20, height - 6)), braille_works(os.environ)
+    rows: list[Row] = []
+    for event in events:
+        rows.append(_head(f"dip {safe(event)}: depth against wavelength"))
+        of_event = [one for one in dips if one.event == event]
+        curves = [one for one in walk.dip_curves if one.event == event]
+        rows += [*dip_plot(width, plotted, of_event, curves, walk.loaded.bands, unicode), []]
+    if found is not None:
+        rows += [line for caution in found.cautions for line in paragraph(caution, width - 2, "caution")]
+    rows += [[], *_depth_rows(dips, walk)]
     if found is not None:
         rows += [[], *_pairs(found.facts, width)]
         for fitted in found.fits:
-            numbers = f"chi2 {fitted.chi2:8.1f}  dof {fitted.dof:3d}  p {number(fitted.p, 1)}"
-            rows.append(row(f"  {fit(safe(fitted.model), 24)} {numbers}"))
-            rows += param_rows(width, fitted.params)
-        rows += [line for caution in found.cautions for line in paragraph(caution, width - 2, "caution")]
+            rows += [row(f"  {safe(fitted.model)}"), *param_rows(width, fitted.params)]
+    return rows
+
+
+def _depth_rows(dips: tuple[Dip, ...], walk: Walk) -> list[Row]:
+    rows = [row(("  event         band        depth, %    error  epoch", "quiet"))]
+    for dip in sorted(dips, key=lambda one: (one.event, _pivot(one.band, walk.loaded.bands))):
+        rows.append(row(f"  {fit(safe(dip.event), 13)} {fit(short_band(dip.band), 10)} {100 * dip.depth:9.2f} "
+                        f"{100 * dip.depth_error:8.2f}  {safe(dip.epoch)}"))  # fmt: skip
     return rows
 
 
 def lookalikes_page(walk: Walk, width: int, height: int) -> list[Row]:
-    """Candidates whose pulls share a pattern with this one's."""
-    found = walk.own_evidence.facts.get("look_alikes") if walk.own_evidence else None
+    """Candidates whose pulls share a pattern with this one's, and what that means."""
     rows = [_head("look-alikes: candidates whose pulls share a pattern with this one's")]
-    if not found:
-        return [*rows, _quiet("none are known")]
-    return [*rows, *paragraph(_words(found), width - 2)]
+    found = walk.look_alikes
+    if found is None:
+        waiting = "looking through the queue ..." if walk.looking else "the pulls of the star alone are not known here"
+        return [*rows, _quiet(walk.alike_trouble or waiting)]
+    rows += [[], *paragraph(found.sentence, width - 2, "strong")]
+    if found.shared:
+        said = ", ".join(f"{name} {p:.2f}" for name, p in found.shared.items())
+        rows += paragraph(f"p that so many lie so close by chance: {said}. Below 0.01 or at it counts as shared.",
+                          width - 2, "quiet")  # fmt: skip
+    rows += [[], row((f"  {'name':<22}{'cosine':>7}{short_band(found.band) + ' pull':>10}"
+                      f"{short_band(found.mag_band) + ' mag':>11}{'apart, deg':>12}  epoch", "head"))]  # fmt: skip
+    for one in found.candidates:
+        rows.append(row(f"  {fit(safe(one.name), 22)}{one.cosine:7.3f}{signed(one.pull):>10}{_decimal(one.mag, 2):>11}"
+                        f"{_decimal(one.apart_deg, 3):>12}  {safe(one.epoch)}"))  # fmt: skip
+    more = found.count - len(found.candidates)
+    rows += [_quiet(f"and {more} more")] if more > 0 else []
+    return [*rows, [], *paragraph(f"Among {found.searched} candidates with evidence. It is a fact of this queue, "
+                                  "and touches no check.", width - 2, "quiet")]  # fmt: skip
+
+
+def _decimal(value: float, places: int) -> str:
+    return f"{value:.{places}f}" if math.isfinite(value) else "--"
 
 
 def story_page(walk: Walk, width: int, height: int) -> list[Row]:
@@ -193,6 +225,9 @@ PAGES = (
     Page("rulings", others_page),
     Page("story", story_page),
 )
+
+
+LOOK_ALIKES = 1 + [page.title for page in PAGES].index("look-alikes")  # what this page shows is looked for when asked
 
 
 def page_rows(walk: Walk, width: int, height: int) -> list[Row]:

@@ -13,6 +13,8 @@ from tui.workflow.records import CandidateView, Cutout, StoryLine
 
 if TYPE_CHECKING:
     from tui.checks import Curve
+    from tui.workflow.dip_curves import DipCurve
+    from tui.workflow.lookalikes import LookAlikes
 
 STEP = 0.02  # of a parameter's value: one nudge by hand where the fit gives no interval
 LEAST_STEP = 1e-6
@@ -61,6 +63,10 @@ class Walk:
     curves: dict[tuple[str, int], Curve | None] = field(default_factory=dict)
     story: tuple[StoryLine, ...] = ()
     cutouts: tuple[Cutout, ...] = ()
+    dip_curves: tuple[DipCurve, ...] = ()
+    look_alikes: LookAlikes | None = None  # looked for when their page is turned to
+    looking: bool = False
+    alike_trouble: str = ""  # why there are none
     stretch: int = 1
     first_cutout: int = 0
     fit_index: int = 0
