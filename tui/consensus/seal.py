@@ -13,7 +13,7 @@ from tui.consensus.standing import Standing
 from tui.model import CHECKS
 
 SEALED = "sealed"
-TODO = "todo"
+NOT_RULED = "todo"
 
 
 def is_open(standing: Standing, reviewer_id: str | None) -> bool:
@@ -29,7 +29,7 @@ def seen_states(standing: Standing, reviewer_id: str | None) -> dict[str, str]:
         return dict(standing.states)
     own = {check: standing.current.get((check, reviewer_id)) for check in CHECKS}
     return {
-        check: "nodata" if standing.states[check] == "nodata" else ruling.ruling if ruling else TODO
+        check: "nodata" if standing.states[check] == "nodata" else ruling.ruling if ruling else NOT_RULED
         for check, ruling in own.items()
     }
 
