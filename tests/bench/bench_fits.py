@@ -41,7 +41,8 @@ from tui.workflow.templates import build, templates_for  # noqa: E402
 CHUNK = 250  # candidates that a process assesses at once
 PROCESSES = 2
 LOWER = 0.1
-MODELS = (c.STAR, c.STAR_AV, c.STAR_AV_RV, c.DUST, c.DUST_AV, c.TWO_DUST, c.BOUND_PAIR, c.FREE_PAIR, c.COMPACT, c.GALAXY)
+MODELS = (c.STAR, c.STAR_AV, c.STAR_AV_RV, c.DUST, c.DUST_AV, c.TWO_DUST, c.BOUND_PAIR, c.FREE_PAIR, c.COMPACT,
+    c.GALAXY)
 ROW = "{:<42}{:>12}{:>16}{:>16}{:>16}"
 
 
@@ -132,7 +133,8 @@ def grids_cost():
         build(Settings(r_v=r_v), {})
         print(ROW.format(f"grids built, 44 bands, R_V {r_v}", "", f"{time.perf_counter() - start:.2f} s", "", ""))
     code = (
-        "import time; from tui.workflow import templates as t; from tui.model import Settings; import tui.physics.templates;"
+        "import time; from tui.workflow import templates as t; from tui.model import Settings;"
+        "import tui.physics.templates;"
         "k = t.cache_key(Settings(), {}); s = time.perf_counter(); assert t.read_cached(k) is not None;"
         "print(f'{1e3 * (time.perf_counter() - s):.0f} ms')"
     )

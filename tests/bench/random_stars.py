@@ -14,6 +14,8 @@ FOURTEEN = (*TEN, "SDSS_g", "SDSS_r", "SDSS_i", "V")
 TWENTY = (*FOURTEEN, "SDSS_u", "SDSS_z", "B", "MIPS24", "PACS70", "IRAC1")
 NATURES = (c.STAR, c.STAR_AV, c.DUST_AV, c.TWO_DUST, c.FREE_PAIR, c.BOUND_PAIR, c.COMPACT, c.GALAXY)
 NOISE = 0.02  # of the flux: catalogue errors
+SECOND = {"dust": (60.0, 1500.0), "star": (2700.0, 7000.0), "compact": (8000.0, 80000.0), "power": (1.0, 1.0)}  # K
+AMOUNT = {"dust": (-4.0, -1.0), "star": (-1.5, 0.0), "compact": (-4.5, -2.5), "power": (-2.0, 0.5)}  # log10
 
 
 def local_grids(grids, names):
@@ -31,14 +33,11 @@ def random_rows(rng, model, local, count, av_max):
     if c.AV in model.free:
         x[:, c.AV] = np.minimum(rng.exponential(0.6, count), 0.9 * av_max)
     for (column, amplitude), grid in zip(((c.X2, c.A2), (c.X3, c.A3)), kit.further, strict=False):
-        low, high = {"dust": (60.0, 1500.0), "star": (2700.0, 7000.0), "compact": (8000.0, 80000.0), "power": (1.0, 1.0)}[
-            model.sources[0]
-        ]
+        low, high = SECOND[model.sources[0]]
         x[:, column] = rng.uniform(np.log(low), np.log(high), count)
         if model.sources[0] == "power":
             x[:, column] = rng.uniform(grid.low, grid.high, count)
-        span = {"dust": (-4.0, -1.0), "star": (-1.5, 0.0), "compact": (-4.5, -2.5), "power": (-2.0, 0.5)}[model.sources[0]]
-        x[:, amplitude] = 10.0 ** rng.uniform(*span, count)
+        x[:, amplitude] = 10.0 ** rng.uniform(*AMOUNT[model.sources[0]], count)
     return x
 
 
@@ -71,7 +70,8 @@ def random_problem(grids, names, count, seed, *, natures=NATURES, limits=0.15, c
         local, flux, NOISE * flux, ~blank, blank, parallax, 0.02 * parallax, np.full(count, av_max), shared
     )
     sigma = errors_for(empty, flux, star, x[:, c.LN_T]).sigma
-    seen = flux + sigma * rng.standard_normal(flux.shape) + flux * (rng.standard_normal((count, len(instruments))) @ shared)
+    seen = flux + sigma * rng.standard_normal(flux.shape)
+    seen = seen + flux * (rng.standard_normal((count, len(instruments))) @ shared)
     long = np.array([band.pivot_um > 10 for band in local.bands])
     limited = (long & (rng.random(flux.shape) < limits)) | (seen <= 0)
     top = flux * rng.uniform(0.8, 4.0, flux.shape)  # some limits are overshot by the truth by a little

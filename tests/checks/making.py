@@ -21,7 +21,8 @@ def row(model, teff_k, **values):
     return x
 
 
-def make(templates, model, teff_k, *, name="SM-1", error=0.01, facts=None, seed=None, factors=None, limits=(), **values):
+def make(templates, model, teff_k, *, name="SM-1", error=0.01, facts=None, seed=None, factors=None, limits=(),
+    **values):
     """A candidate of a model; `factors` multiplies bands, `limits` turns bands into 2 sigma limits at their flux."""
     x = row(model, teff_k, **values)
     flux = predict(kit_for(model, templates), x).flux[0]
@@ -34,7 +35,8 @@ def make(templates, model, teff_k, *, name="SM-1", error=0.01, facts=None, seed=
         if seed is not None:
             value *= 1 + error * rng.standard_normal()
         is_limit = band.name in limits
-        measured.append(Measurement(band.name, float(value), float("nan") if is_limit else error * abs(float(value)), is_limit))
+        measured.append(Measurement(band.name, float(value),
+            float("nan") if is_limit else error * abs(float(value)), is_limit))
     return Candidate(name, tuple(measured), facts or {})
 
 

@@ -72,7 +72,8 @@ def test_evidence_can_be_written_down_and_read_as_sentences(found):
     for evidence in found.values():
         for one in evidence.values():
             json.loads(canonical_json(one.facts))
-            assert all(remark.endswith(".") and remark[0].isupper() or remark[0] in "fp" for remark in one.cautions), one.cautions
+            assert all(remark.endswith(".") and remark[0].isupper() or remark[0] in "fp"
+                for remark in one.cautions), one.cautions
 
 
 HOSTILE = {
@@ -89,7 +90,8 @@ HOSTILE = {
 }
 
 
-@pytest.mark.parametrize("facts", [{}, {"parallax": 20.0, "parallax_error": 0.1}, {"parallax": NAN, "parallax_error": 0.0}])
+@pytest.mark.parametrize("facts", [{}, {"parallax": 20.0, "parallax_error": 0.1}, {"parallax": NAN,
+    "parallax_error": 0.0}])
 @pytest.mark.parametrize("name", HOSTILE)
 def test_hostile_candidates_are_answered_without_a_warning(name, facts, templates, tables, mixed):
     candidate = Candidate(name, HOSTILE[name], facts)

@@ -90,7 +90,8 @@ def test_an_equal_bound_pair_needs_its_parallax(look, templates):
     # Two like stars have the colours of one: only brightness at a known distance tells them from it.
     parallax = sequence_parallax(templates, 5200.0)
     twice = {band: 2.0 for band in templates.names}
-    known = look(make(templates, c.STAR, 5200.0, factors=twice, facts={"parallax": parallax, "parallax_error": 0.01 * parallax}))
+    known = look(make(templates, c.STAR, 5200.0, factors=twice, facts={"parallax": parallax,
+        "parallax_error": 0.01 * parallax}))
     assert known.facts["over_luminosity"] == pytest.approx(0.753, abs=0.05)
     pair = fit_of(known, "bound pair")
     assert pair.params["teff2"].value == pytest.approx(5200.0, rel=0.12)

@@ -15,7 +15,8 @@ from tui.physics.planck import planck_jy
 WAVE = np.geomspace(0.35, 30.0, 4000)
 NONE = frozenset()
 CASES = [("star", c.STAR, {}), ("extinction", c.STAR_AV, {"av": 1.5}), ("dust", c.DUST, {"x": 350.0, "amount": 0.02}),
-         ("blend", c.COMPACT, {"x": 20000.0, "amount": 0.01}), ("blend", c.GALAXY, {"x": 1.5, "amount": 0.5})]  # fmt: skip
+         ("blend", c.COMPACT, {"x": 20000.0, "amount": 0.01}), ("blend", c.GALAXY, {"x": 1.5,
+         "amount": 0.5})]  # fmt: skip
 
 
 def probed(candidate, check, fixed, templates, dropped=NONE):
@@ -24,8 +25,8 @@ def probed(candidate, check, fixed, templates, dropped=NONE):
 
 @pytest.mark.parametrize(("check", "model", "values"), CASES, ids=[case[1].name for case in CASES])
 def test_a_curve_passes_through_its_bands(templates, tables, check, model, values):
-    # measurements are drawn at their bands' pivots, and the curve has to meet them there: 4 %, since neighbouring bands'
-    # offsets are averaged by three; the curve is for the eye
+    # measurements are drawn at their bands' pivots, and the curve has to meet them there: 4 %, since neighbouring
+    # bands' offsets are averaged by three; the curve is for the eye
     candidate = make(templates, model, 4500.0 if check == "blend" else 6000.0, **values)
     fit = assess(check, [candidate], templates, Settings(), tables)[0].best
     drawn = curve(candidate, fit, check, templates, Settings(), WAVE)
@@ -69,7 +70,8 @@ def test_nothing_held_is_the_checks_own_fit(templates, tables):
 @pytest.mark.parametrize(
     ("check", "name", "value"),
     [("star", "teff", 5600.0), ("star", "theta", 0.034), ("extinction", "av", 0.6), ("dust", "dust_temperature", 200.0),
-     ("dust", "dust_fractional_luminosity", 0.01), ("dust", "av", 0.3), ("blend", "teff2", 3500.0), ("blend", "flux_ratio", 0.3),
+     ("dust", "dust_fractional_luminosity", 0.01), ("dust", "av", 0.3), ("blend", "teff2", 3500.0), ("blend",
+     "flux_ratio", 0.3),
      ("blend", "radius_ratio", 0.1), ("blend", "slope", 1.2)],
 )  # fmt: skip
 def test_what_is_held_stays_and_costs(templates, check, name, value):

@@ -52,7 +52,8 @@ def test_no_parallax_no_radius(look, templates):
 
 @pytest.mark.parametrize("kelvin", LIMIT_TEMPERATURES_K)
 def test_limits_where_no_excess_is_seen(look, templates, kelvin):
-    # Dust of twice the 95 % limit at that temperature has to be seen: chi-square of the plain star rises by 2.71 or more
+    # Dust of twice the 95 % limit at that temperature has to be seen: chi-square of the plain star rises by 2.71 or
+    # more
     plain = look(make(templates, c.STAR, 6000.0))
     place = plain.facts["limit_temperature_k"].index(kelvin)
     limit = plain.facts["limit_fractional_luminosity"][place]
@@ -103,7 +104,8 @@ def test_two_temperatures_only_where_asked_for(grids, tables):
     from tui.physics.composite import kit_for, predict
 
     flux = predict(kit_for(c.TWO_DUST, local), x).flux[0]
-    two = Candidate("two", tuple(Measurement(n, float(f), 0.01 * float(f)) for n, f in zip(local.names, flux, strict=True)))
+    two = Candidate("two", tuple(Measurement(n, float(f), 0.01 * float(f)) for n, f in zip(local.names, flux,
+        strict=True)))
     settings = Settings(r_v="free")
     plain, double = assess("dust", [one, two], grids, settings, tables)
     assert all("two" not in fit.model for fit in plain.fits)

@@ -61,11 +61,13 @@ def disc_by_sum(distance_kpc, latitude_rad):
     return 1.8 * np.trapezoid(np.exp(-s * abs(np.sin(latitude_rad)) / 0.1), s)
 
 
-@pytest.mark.parametrize(("ra", "dec", "parallax"), [(192.86, 27.13, 2.0), (10.0, 60.0, 1.0), (266.4, -28.9, 0.5), (83.8, -5.4, 20.0)])
+@pytest.mark.parametrize(("ra", "dec", "parallax"), [(192.86, 27.13, 2.0), (10.0, 60.0, 1.0), (266.4, -28.9, 0.5),
+    (83.8, -5.4, 20.0)])
 def test_ceiling_of_a_dust_disc(ra, dec, parallax):
     ceiling, cause = av_limit(Candidate("x", facts={"ra": ra, "dec": dec}), parallax)
     latitude = SkyCoord(ra, dec, unit="deg").galactic.b.rad
-    assert ceiling == pytest.approx(disc_by_sum(1 / parallax, latitude), rel=5e-3)  # the plane itself is taken as endless
+    # the plane itself is taken as endless
+    assert ceiling == pytest.approx(disc_by_sum(1 / parallax, latitude), rel=5e-3)
     assert "1.8 mag" in cause
 
 

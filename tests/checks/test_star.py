@@ -41,7 +41,8 @@ def test_an_excess_is_odd_and_its_band_is_named(look, templates):
 
 
 def test_an_oddness_beyond_doubles_is_still_a_number(look, templates):
-    told = oddness(look(make(templates, c.STAR, 5772.0, error=1e-4, factors={"W4": 1e4, "W3": 1e3}), source_floor=1e-4, floors={}))
+    wild = make(templates, c.STAR, 5772.0, error=1e-4, factors={"W4": 1e4, "W3": 1e3})
+    told = oddness(look(wild, source_floor=1e-4, floors={}))
     assert np.isfinite(told.sigma) and told.sigma > 20
 
 
@@ -57,7 +58,8 @@ def test_over_luminosity_of_equal_stars(look, templates, ratio, expected):
     # 2.5 log10 of 1, 2 and 3 equal stars
     parallax = sequence_parallax(templates, 5000.0)
     flux = {band: ratio for band in templates.names}
-    found = look(make(templates, c.STAR, 5000.0, factors=flux, facts={"parallax": parallax, "parallax_error": 0.01 * parallax}))
+    facts = {"parallax": parallax, "parallax_error": 0.01 * parallax}
+    found = look(make(templates, c.STAR, 5000.0, factors=flux, facts=facts))
     assert found.facts["over_luminosity"] == pytest.approx(expected, abs=0.02)
     assert found.facts["over_luminosity_error"] > 0.25  # the scatter of real dwarfs, and more
 
@@ -76,7 +78,8 @@ def test_far_too_bright_and_far_too_faint_are_remarked(look, templates):
 
 @pytest.mark.parametrize(
     ("facts", "words"),
-    [({"parallax": 20.0, "parallax_error": 0.1, "ruwe": 2.2}, "RUWE"), ({"parallax": 0.4, "parallax_error": 0.2}, "5 times")],
+    [({"parallax": 20.0, "parallax_error": 0.1, "ruwe": 2.2}, "RUWE"), ({"parallax": 0.4, "parallax_error": 0.2},
+     "5 times")],
     ids=["RUWE", "too uncertain"],
 )
 def test_why_a_parallax_is_not_used(look, templates, facts, words):

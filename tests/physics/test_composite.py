@@ -36,7 +36,8 @@ def test_derivatives_against_finite_differences(local, name):
         high[:, column] += step
         low[:, column] -= step
         slope = (predict(kit, high).flux - predict(kit, low).flux) / (2 * step)[:, None]
-        scale = np.abs(found.flux) / np.maximum(np.abs(x[:, column]), 1e-4)[:, None]  # rounding of the difference itself
+        # rounding of the difference itself
+        scale = np.abs(found.flux) / np.maximum(np.abs(x[:, column]), 1e-4)[:, None]
         assert np.all(np.abs(found.slopes[:, place] - slope) <= 2e-4 * np.abs(slope) + 1e-5 * scale), column
 
 
@@ -96,7 +97,8 @@ def test_a_galaxy_is_measured_at_3_4_micron(local):
     x[0, [c.LN_T, c.LN_S, c.X2, c.A2]] = np.log(5000.0), -45.0, 1.0, 0.5
     star = predict(kit_for(c.STAR, local), x).flux[0]
     galaxy = predict(kit_for(c.GALAXY, local), x).flux[0] - star
-    assert (galaxy / star)[local.names.index("W1")] == pytest.approx(0.5, rel=0.04)  # pivot 3.37 micron, the star falls as w^-2
+    # pivot 3.37 micron, the star falls as w^-2
+    assert (galaxy / star)[local.names.index("W1")] == pytest.approx(0.5, rel=0.04)
     rise = galaxy[local.names.index("W4")] / galaxy[local.names.index("W1")]
     assert rise == pytest.approx(22.19 / 3.368, rel=0.02)  # F_nu ~ wavelength
 

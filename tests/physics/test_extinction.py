@@ -20,7 +20,8 @@ def curve(wave_um, law="g23", r_v=3.1):
 # Fitzpatrick 1999, PASP 111, 63, Table 3: spline anchors A(w)/E(B-V) at R_V = 3.1
 @pytest.mark.parametrize(
     ("wave_um", "printed"),
-    [(2.65, 0.265), (1.22, 0.829), (0.6, 2.688), (0.547, 3.055), (0.467, 3.806), (0.411, 4.315), (0.27, 6.265), (0.26, 6.591)],
+    [(2.65, 0.265), (1.22, 0.829), (0.6, 2.688), (0.547, 3.055), (0.467, 3.806), (0.411, 4.315), (0.27, 6.265),
+     (0.26, 6.591)],
 )
 def test_f99_anchors(wave_um, printed):
     assert 3.1 * curve(wave_um, "f99") == pytest.approx(printed, rel=0, abs=0.0006)  # half the last digit
@@ -40,7 +41,8 @@ def test_ccm89_table_3(inverse_um, printed, tolerance):
 
 # Wang & Chen 2019, ApJ 877, 116, Table 3: A(band)/A(V) of red clump stars and its error
 WANG_CHEN = {
-    "Gaia_BP": (1.002, 0.007), "Gaia_G": (0.789, 0.005), "Gaia_RP": (0.589, 0.004), "B": (1.317, 0.016), "V": (1.0, 0.006),
+    "Gaia_BP": (1.002, 0.007), "Gaia_G": (0.789, 0.005), "Gaia_RP": (0.589, 0.004), "B": (1.317, 0.016), "V": (1.0,
+    0.006),
     "SDSS_u": (1.584, 0.017), "SDSS_g": (1.205, 0.013), "SDSS_r": (0.848, 0.006), "SDSS_i": (0.630, 0.004),
     "SDSS_z": (0.458, 0.003), "PS1_g": (1.155, 0.009), "PS1_r": (0.843, 0.006), "PS1_i": (0.628, 0.004),
     "PS1_z": (0.487, 0.003), "PS1_y": (0.395, 0.003), "J": (0.243, 0.004), "H": (0.131, 0.006), "Ks": (0.078, 0.004),
@@ -62,7 +64,8 @@ def test_wc19_table_3(name):
 # Gordon et al. 2023, ApJ 950, 86, R_V = 3.1, as dust_extinction 1.7 gives it
 @pytest.mark.parametrize(
     ("wave_um", "value"),
-    [(0.15, 2.82355), (0.2175, 3.22036), (0.4, 1.42054), (0.55, 0.99851), (0.8, 0.59004), (1.25, 0.26846), (2.2, 0.10311),
+    [(0.15, 2.82355), (0.2175, 3.22036), (0.4, 1.42054), (0.55, 0.99851), (0.8, 0.59004), (1.25, 0.26846), (2.2,
+     0.10311),
      (3.4, 0.04763), (5.0, 0.02897), (9.7, 0.0841), (12.0, 0.03852), (18.0, 0.04227), (30.0, 0.03005)],
 )  # fmt: skip
 def test_g23_values(wave_um, value):
@@ -84,8 +87,10 @@ def test_every_law_is_normal_at_v_positive_and_without_a_step(law):
     assert np.all(values > 0)
     steps = np.abs(np.diff(np.log(values)))
     assert steps.max() < 0.03  # nowhere more than the slope of the 2175 A bump and of the silicate feature
-    assert np.abs(extinction_curve(np.array([3.0 - 1e-9]), law) / extinction_curve(np.array([3.0 + 1e-9]), law) - 1) < 1e-6
-    assert extinction_curve(np.array([5.0, 9.7, 20.0]), law) == pytest.approx(extinction_curve(np.array([5.0, 9.7, 20.0])))
+    assert np.abs(extinction_curve(np.array([3.0 - 1e-9]), law) / extinction_curve(np.array([3.0 + 1e-9]),
+        law) - 1) < 1e-6
+    assert extinction_curve(np.array([5.0, 9.7, 20.0]), law) == pytest.approx(extinction_curve(np.array([5.0, 9.7,
+        20.0])))
 
 
 def test_nothing_is_dimmed_beyond_what_was_measured():

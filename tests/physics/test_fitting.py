@@ -17,9 +17,10 @@ from tui.physics.fitting import fit, first_errors
 from tui.physics.likelihood import errors_for
 from tui.physics.statistics import chi2_tail
 
-# Share of fits of any model to candidates of any nature where no random start ends lower by more than 0.1, errors frozen
-# at the last pass. What is reached today; the aim is 0.995 for all. Most misses are hopeless fits whose errors, which
-# follow the star's temperature, favour another minimum each time, and stars above 24,000 K, where the table is thin.
+# Share of fits of any model to candidates of any nature where no random start ends lower by more than 0.1, errors
+# frozen at the last pass. What is reached today; the aim is 0.995 for all. Most misses are hopeless fits whose errors,
+# which follow the star's temperature, favour another minimum each time, and stars above 24,000 K, where the table is
+# thin.
 REACHED = {
     "star": 0.99, "star + A_V": 0.97, "star + A_V, R_V": 0.95, "star + dust": 0.97, "star + dust, A_V": 0.95,
     "bound pair": 0.94, "free pair": 0.93, "star + compact": 0.90, "star + galaxy": 0.95,
@@ -97,8 +98,8 @@ def test_noiseless_candidates_return_their_truth(drawn, grids):
 
 
 def test_errors_have_settled(batches):
-    # The errors used are those that the model found asks for: chi-square moves by less than 0.1 in one more pass, or the
-    # star's temperature sits on a step of the spread table.
+    # The errors used are those that the model found asks for: chi-square moves by less than 0.1 in one more pass, or
+    # the star's temperature sits on a step of the spread table.
     for batch in batches.values():
         again = errors_for(batch.problem, batch.prediction.flux, batch.prediction.star, batch.x[:, c.LN_T])
         moved = np.abs(again.sigma / batch.errors.sigma - 1).max(axis=1)
@@ -131,7 +132,8 @@ def test_p_is_uniform_with_correlated_floors(grids):
     p = chi2_tail(batch.chi2, problem.points - 2)
     assert stats.kstest(p, "uniform").pvalue > 1e-3
     plain = fit(replace(problem, common=problem.common[:0]), c.STAR)
-    assert np.mean(chi2_tail(plain.chi2, problem.points - 2) < 0.01) > np.mean(p < 0.01)  # what ignoring them would cost
+    # what ignoring them would cost
+    assert np.mean(chi2_tail(plain.chi2, problem.points - 2) < 0.01) > np.mean(p < 0.01)
 
 
 def test_a_candidate_fits_alike_alone_and_in_company(drawn):

@@ -152,4 +152,5 @@ def test_a_limit_counts_in_chi_square_only_where_it_is_overshot(drawn):
     met = problem.limited & (seen.flux <= problem.flux_jy)
     without = problem.without(met)
     assert met.any()
-    assert chi_square(problem, kit, errors, x, seen) == pytest.approx(chi_square(without, kit, errors, x, seen), rel=1e-12)
+    assert chi_square(problem, kit, errors, x, seen) == pytest.approx(chi_square(without, kit, errors, x, seen),
+        rel=1e-12)

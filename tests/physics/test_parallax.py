@@ -25,7 +25,8 @@ def test_zero_point_is_taken_off():
     # Lindegren et al. 2021, A&A 649, A4: quasars' median is -0.017 mas, so true = catalogue + 0.017
     value, error = usable_parallax(10 * ONE, 0.02 * ONE, ONE, 15.0 * ONE, 1.4)
     assert float(value[0]) == pytest.approx(10.017)
-    assert float(error[0]) == pytest.approx(0.02 * (1.141 + 0.06 - 0.1395 + 0.21 * np.exp(-((2.35 / 0.9) ** 2))), abs=1e-6)
+    assert float(error[0]) == pytest.approx(0.02 * (1.141 + 0.06 - 0.1395 + 0.21 * np.exp(-((2.35 / 0.9) ** 2))),
+        abs=1e-6)
 
 
 @pytest.mark.parametrize(

@@ -18,7 +18,8 @@ def magnitudes(grids, teff_k, radius_m):
     """Absolute magnitudes by band at temperatures (N,), radii (N,): name -> (N,)."""
     ln_flux = grids.star.at(np.log(teff_k))[0] + 2 * np.log(radius_m / TEN_PARSEC)[:, None]
     return {
-        band.name: mag_from_flux(np.exp(ln_flux[:, column]), band.zero_point_jy) for column, band in enumerate(grids.bands)
+        band.name: mag_from_flux(np.exp(ln_flux[:, column]), band.zero_point_jy) for column,
+        band in enumerate(grids.bands)
     }
 
 
@@ -32,7 +33,8 @@ def sequence_radius(grids, teff_k):
 # i stand between tabulated bands.
 THE_SUN = {
     "U": 5.61, "B": 5.44, "V": 4.81, "Rc": 4.43, "Ic": 4.10, "J": 3.67, "H": 3.32, "Ks": 3.27, "W1": 3.26, "W2": 3.28,
-    "W3": 3.26, "W4": 3.27, "SDSS_u": 6.39, "SDSS_g": 5.11, "SDSS_r": 4.65, "SDSS_i": 4.53, "SDSS_z": 4.50, "Gaia_G": 4.67,
+    "W3": 3.26, "W4": 3.27, "SDSS_u": 6.39, "SDSS_g": 5.11, "SDSS_r": 4.65, "SDSS_i": 4.53, "SDSS_z": 4.50,
+    "Gaia_G": 4.67,
     "PS1_g": 5.03, "PS1_r": 4.64, "PS1_i": 4.52, "PS1_z": 4.51, "PS1_y": 4.50, "IRAC1": 3.26, "IRAC2": 3.28,
 }  # fmt: skip
 
@@ -56,10 +58,10 @@ def test_colours_of_solar_twins(grids, colour, printed):
     assert float(found[left][0] - found[right][0]) == pytest.approx(printed, rel=0, abs=0.04)
 
 
-# Rows are smoothed by design: the table's temperatures are rounded and scatter by 1 to 2 % about any smooth relation, and
-# the wiggles they make would give chi-square several minima. So a row is met to the size of that scatter: colours with
-# Ks in the median to 0.02 mag (0.06 mag SDSS z, which the table takes through two transformations), 9 of 10 to 0.13 mag,
-# which 2 % in T_eff is for a blue colour; the infrared, where colours change little, to 0.02 mag.
+# Rows are smoothed by design: the table's temperatures are rounded and scatter by 1 to 2 % about any smooth relation,
+# and the wiggles they make would give chi-square several minima. So a row is met to the size of that scatter: colours
+# with Ks in the median to 0.02 mag (0.06 mag SDSS z, which the table takes through two transformations), 9 of 10 to
+# 0.13 mag, which 2 % in T_eff is for a blue colour; the infrared, where colours change little, to 0.02 mag.
 @pytest.mark.parametrize("name", [n for n in load.dwarfs().absolute_mag if n in load.bands()])
 def test_the_table_is_met(grids, name):
     table = load.dwarfs()
@@ -84,8 +86,9 @@ def test_absolute_magnitudes_and_radii_are_the_tables(grids):
 
 
 def test_luminosity_is_kept(grids):
-    # The sequence's light summed over B to W4 by trapezoids in ln nu, with Planck tails, is sigma T^4: a solid check that
-    # zero points, bands and radii are one system. The gaps between bands are coarse and U stands for the whole Balmer jump: 8 % to 9000 K.
+    # The sequence's light summed over B to W4 by trapezoids in ln nu, with Planck tails, is sigma T^4: a solid check
+    # that zero points, bands and radii are one system. The gaps between bands are coarse and U stands for the whole
+    # Balmer jump: 8 % to 9000 K.
     names = [n for n in ("U", "B", "V", "Rc", "Ic", "J", "H", "Ks", "W1", "W2", "W3") if n in grids.names]
     local = grids.take(names)
     fine = np.geomspace(0.1, 100, 4001)
@@ -99,10 +102,10 @@ def test_luminosity_is_kept(grids):
         assert total == pytest.approx(float(surface_flux(kelvin)), rel=0.08)
 
 
-# CARMENES input catalogue (Gaia DR3, 2MASS, AllWISE): M2 to M5.5 dwarfs in the gap of the W2, W3, W4 columns, each at the
-# temperature that its own G-Ks has on the sequence. W2 only where fainter than its saturation, 6.7 mag (brighter ones
-# read too bright): 0.03 mag in the median. Interpolated magnitudes would miss by 0.25 to 0.5 mag. W3 and W4, carried
-# from 4440 K on, come to within 0.16 mag (0.10 and 0.17 found).
+# CARMENES input catalogue (Gaia DR3, 2MASS, AllWISE): M2 to M5.5 dwarfs in the gap of the W2, W3, W4 columns, each at
+# the temperature that its own G-Ks has on the sequence. W2 only where fainter than its saturation, 6.7 mag (brighter
+# ones read too bright): 0.03 mag in the median. Interpolated magnitudes would miss by 0.25 to 0.5 mag. W3 and W4,
+# carried from 4440 K on, come to within 0.16 mag (0.10 and 0.17 found).
 def test_gap_rule_against_real_m_dwarfs(grids, real_stars):
     teff = np.geomspace(2700.0, 4500.0, 600)
     sequence = magnitudes(grids, teff, np.full(teff.shape, R_SUN))

@@ -29,7 +29,8 @@ def test_repeats_take_their_weighted_mean():
 def test_repeats_of_pure_noise_scatter_by_one():
     rng = np.random.default_rng(2)
     draws = [
-        combine([Measurement("J", 1 + 0.02 * rng.standard_normal(), 0.02) for _ in range(6)]).scatter ** 2 for _ in range(400)
+        combine([Measurement("J", 1 + 0.02 * rng.standard_normal(), 0.02)
+        for _ in range(6)]).scatter ** 2 for _ in range(400)
     ]
     assert np.mean(draws) == pytest.approx(1.0, abs=0.1)  # chi-square of 5 degrees over 5: error of the mean 0.03
 

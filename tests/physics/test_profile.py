@@ -15,7 +15,8 @@ from tui.physics.fitting import fit
 from tui.physics.likelihood import errors_for, residuals
 from tui.physics.profile import intervals
 
-WITH_U = ("U", *FOURTEEN)  # U tells temperature from reddening: without it the two trade places and chi-square has two dips
+# U tells temperature from reddening: without it the two trade places and chi-square has two dips
+WITH_U = ("U", *FOURTEEN)
 
 
 def drawn(grids, model, count, seed, **options):
@@ -23,7 +24,8 @@ def drawn(grids, model, count, seed, **options):
     return problem, x
 
 
-@pytest.mark.parametrize(("model", "columns"), [(c.STAR, (c.LN_T,)), (c.DUST, (c.LN_T, c.X2, c.A2))], ids=["star", "dust"])
+@pytest.mark.parametrize(("model", "columns"), [(c.STAR, (c.LN_T,)), (c.DUST, (c.LN_T, c.X2, c.A2))], ids=["star",
+    "dust"])
 def test_ends_against_a_profile_on_a_grid(grids, model, columns):
     # Brute force: the parameter held at 61 values, the rest minimised from the best fit and from both neighbours.
     problem, _ = drawn(grids, model, 12, 51)
@@ -113,7 +115,8 @@ COVERED = {"star": (c.STAR, (c.LN_T, c.LN_S), 61), "dust": (c.DUST, (c.LN_T, c.X
 
 @pytest.mark.parametrize("name", COVERED)
 def test_68_per_cent_intervals_hold_the_truth_as_often(grids, name):
-    # 500 candidates that the model made: 68.3 % +- 2.1 %; the aim is 63 to 73 %, three sigma of the count around it here
+    # 500 candidates that the model made: 68.3 % +- 2.1 %; the aim is 63 to 73 %, three sigma of the count around it
+    # here
     model, columns, seed = COVERED[name]
     problem, x = drawn(grids, model, 500, seed)
     batch = fit(problem, model)

@@ -71,7 +71,8 @@ def test_sigma_of_p_too_small_for_a_double():
 
 @pytest.mark.parametrize(
     ("chi2", "points", "dof", "answer"),
-    [(6.63, 3, 1, True), (6.64, 3, 1, False), (9.22, 2, 0, False), (9.20, 2, 0, None), (1.0, 2, -1, None), (0.0, 0, -2, None)],
+    [(6.63, 3, 1, True), (6.64, 3, 1, False), (9.22, 2, 0, False), (9.20, 2, 0, None), (1.0, 2, -1, None), (0.0, 0,
+     -2, None)],
     ids=["at 1 %", "below 1 %", "no dof, hopeless", "no dof, possible", "fewer points than parameters", "no point"],
 )
 def test_adequate(chi2, points, dof, answer):

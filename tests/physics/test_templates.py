@@ -35,7 +35,8 @@ def test_some_bands_in_any_order(grids):
     assert some.names == ("W1", "V")
     at = np.log([4321.0])
     whole = grids.star.at(at)[0][0]
-    assert some.star.at(at)[0][0] == pytest.approx([whole[grids.names.index("W1")], whole[grids.names.index("V")]], rel=1e-12)
+    assert some.star.at(at)[0][0] == pytest.approx([whole[grids.names.index("W1")], whole[grids.names.index("V")]],
+        rel=1e-12)
     with pytest.raises(TemplateError, match="XYZ"):
         grids.take(["V", "XYZ"])
 

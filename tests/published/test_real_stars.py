@@ -116,13 +116,14 @@ def over_luminosity(found, name):
 
 def test_pairs_are_too_bright(real_stars, found):
     # An equal pair is 2.5 log10 2 = 0.753 mag above one of its stars. V1200 Her: 8.6 and 9.0 mag in the near infrared,
-    # 0.57 mag above the brighter one. 1RXS J0729 also is young (beta Pic moving group), so brighter still. Within 2 sigma
-    # of 0.25 mag of real scatter.
+    # 0.57 mag above the brighter one. 1RXS J0729 also is young (beta Pic moving group), so brighter still. Within 2
+    # sigma of 0.25 mag of real scatter.
     value, error = over_luminosity(found, "V1200 Her")
     assert abs(value - 2.5 * np.log10(1 + 10 ** (-0.4 * 0.4))) < 2 * error
     value, error = over_luminosity(found, "1RXS J072931.4+355607")
     assert 0.4 < value < 1.5
-    value, error = over_luminosity(found, "BD+13 5195A")  # delta 2.4 mag, RUWE 11.5, W1 an artefact: bright all the same
+    # delta 2.4 mag, RUWE 11.5, W1 an artefact: bright all the same
+    value, error = over_luminosity(found, "BD+13 5195A")
     assert value > 0.1
 
 
