@@ -2,8 +2,11 @@
 
 from __future__ import annotations
 
+import bz2
 import gzip
+import lzma
 import math
+import tracemalloc
 
 import numpy as np
 import pytest
@@ -58,12 +61,43 @@ def test_hostile_files_cost_a_line_each(queue, folder):
     (folder / "nobody_W3.fits").write_bytes(whole)
     (folder / "SM-0001.fits").write_bytes(whole)
     fits.HDUList([fits.PrimaryHDU()]).writeto(folder / "SM-0001_U.fits")
+    empty = fits.PrimaryHDU(np.ones((2, 2), dtype=np.uint8)).header
+    empty["NAXIS1"] = empty["NAXIS2"] = 0
+    (folder / "SM-0001_Rc.fits").write_bytes(empty.tostring().encode() + b"\0" * 2880)
     done = loaded(queue, folder)
     assert done.counts["cutouts"] == 1
     said = "\n".join(map(str, done.refused))
-    assert len(done.refused) == 10
-    for words in ("no number", "5 axes", "20000 x 20000", "gzip", "no candidate 'nobody'", "_BAND", "no picture"):
+    assert len(done.refused) == 11 and all("\n" not in str(line) for line in done.refused)
+    for words in ("no number", "5 axes", "20000 x 20000", "gunzip", "no candidate 'nobody'", "_BAND", "no picture"):
         assert words in said
+
+
+BOMBS = {
+    "gzip": (gzip.compress, "gunzip"),
+    "bzip2": (bz2.compress, "bunzip2"),
+    "xz": (lambda whole: lzma.compress(whole, format=lzma.FORMAT_XZ), "unxz"),
+}
+
+
+@pytest.mark.parametrize("packer", BOMBS)
+def test_a_bomb_is_not_unpacked(queue, folder, packer):
+    """Some kilobytes that hold a FITS file of 30 MB: refused by their first bytes, in no memory at all."""
+    pack, mend = BOMBS[packer]
+    head = fits.PrimaryHDU(np.ones((2, 2), dtype=np.uint8)).header.tostring().encode()
+    (folder / "SM-0001_W3.fits").write_bytes(pack(head + b"\0" * 30_000_000))
+    tracemalloc.start()
+    done = loaded(queue, folder)
+    peak = tracemalloc.get_traced_memory()[1]
+    tracemalloc.stop()
+    assert len(done.refused) == 1 and mend in str(done.refused[0])
+    assert peak < 10_000_000
+
+
+def test_tiles_compressed_inside_the_file_are_not_unpacked_either(queue, folder):
+    packed = fits.CompImageHDU(np.zeros((500, 500), dtype=np.int32), compression_type="GZIP_1")
+    fits.HDUList([fits.PrimaryHDU(), packed]).writeto(folder / "SM-0001_W3.fits")
+    done = loaded(queue, folder)
+    assert done.counts["cutouts"] == 0 and "funpack" in str(done.refused[0])
 
 
 def test_a_missing_folder_is_refused(queue, folder):

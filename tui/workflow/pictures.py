@@ -27,7 +27,9 @@ ENDINGS = (".fits", ".fit", ".fts")
 MAX_BYTES = 64_000_000  # of one file: far more than a cutout of MAX_PIXELS needs
 MAX_HDUS = 16  # looked at before a picture must have been found
 TOLD = ("BUNIT", "TELESCOP", "INSTRUME", "DATE-OBS", "SURVEY")  # header cards kept with the picture
-GZIP = b"\x1f\x8b"
+# What a packed file begins with, and what unpacks it. A small packed file can hold more than any memory does.
+PACKED = {b"\x1f\x8b": "gunzip", b"BZh": "bunzip2", b"PK": "unzip", b"\xfd7zXZ": "unxz", b"\x1f\x9d": "uncompress"}
+FITS_START = b"SIMPLE"
 
 
 def load_cutouts(connection: sqlite3.Connection, folder: str, bands: Mapping[str, Band], done: Loaded) -> None:
@@ -81,11 +83,15 @@ def read_picture(path: Path, band: str) -> Cutout | str:
         if path.stat().st_size > MAX_BYTES:
             return f"the file is larger than {MAX_BYTES // 1_000_000} MB; cut it to the candidate's surroundings."
         with path.open("rb") as stream:
-            if stream.read(2) == GZIP:
-                return "the file is compressed with gzip: unpack it first (gunzip)."
+            start = stream.read(6)
+        for magic, mend in PACKED.items():
+            if start.startswith(magic):
+                return f"the file is compressed: unpack it first ({mend})."
+        if start != FITS_START:
+            return "the file does not begin as a FITS file does."
         with warnings.catch_warnings():
             warnings.simplefilter("ignore", AstropyWarning)
-            with fits.open(path, memmap=False, lazy_load_hdus=True) as hdus:
+            with fits.open(path, memmap=False, lazy_load_hdus=True, disable_image_compression=True) as hdus:
                 return picture_of(hdus, path, band)
     except (OSError, ValueError, TypeError, KeyError, IndexError, AttributeError, MemoryError) as error:
         return f"the picture cannot be read ({type(error).__name__}: {str(error)[:120]})."
@@ -98,6 +104,8 @@ def picture_of(hdus: Any, path: Path, band: str) -> Cutout | str:
             part = hdus[number]
         except IndexError:
             break
+        if part.header.get("ZIMAGE") is True:
+            return "the picture is compressed inside the file: unpack it first (funpack)."
         shape = tuple(getattr(part, "shape", ()) or ())
         if not getattr(part, "is_image", False) or not shape:
             continue

@@ -49,6 +49,7 @@ class OpensCandidates:
             self.draw()
             self.be_ready()
             self.keep_place()
+            walk.cutouts = tuple(await self.reads.ask(lambda s: s.cutouts(name)))
             evidence = await self.reads.ask(lambda s: s.evidence(name))
             if not self.is_here(walk):
                 return
@@ -56,7 +57,6 @@ class OpensCandidates:
             if not all(check in evidence for check in CHECKS):
                 walk.trouble = NONE
             walk.story = tuple(await self.reads.ask(lambda s: s.story(name)))
-            walk.cutouts = tuple(await self.reads.ask(lambda s: s.cutouts(name)))
             if loaded.candidate.dips:
                 walk.dip_curves = tuple(await self.reads.ask(lambda s: s.dip_curves(name)))
             if walk.page == LOOK_ALIKES:

@@ -15,6 +15,7 @@ from tui.workflow.records import Cutout
 
 HALF_BLOCK = "\u2580"
 DENSITY = " .:-=+*#%@"
+LEAST_RING = 3.5  # pixels on the screen: a smaller ring would hide the star; the beam stands in the head in any case
 RING = (242, 207, 99)
 MOST = 96  # columns of one picture: larger shows nothing more of a small cutout
 
@@ -110,7 +111,7 @@ def resampled(levels: FloatArray, lines: int, columns: int) -> FloatArray:
 
 def _blocks(levels: FloatArray, ring: float) -> list[Row]:
     grey = np.repeat((np.clip(levels, 0, 1) * 255).astype(int)[:, :, None], 3, axis=2)
-    if ring >= 2.0:
+    if ring >= LEAST_RING:
         y, x = np.indices(levels.shape)
         away = np.hypot(y - (levels.shape[0] - 1) / 2, x - (levels.shape[1] - 1) / 2)
         grey[np.abs(away - ring) < 0.5] = RING
