@@ -36,9 +36,10 @@ class Terminal:
         fcntl.ioctl(self.follower, termios.TIOCSWINSZ, struct.pack("HHHH", lines, columns, 0, 0))
         self.before = termios.tcgetattr(self.follower)
         kept = {name: value for name, value in os.environ.items() if name not in ("COLUMNS", "LINES", "NO_COLOR")}
+        kept |= {"TERM": "xterm-256color", "PYTHONPATH": ROOT, **environment}
         self.process = subprocess.Popen(
             [sys.executable, "-m", "tui", *arguments], stdin=self.follower, stdout=self.follower, stderr=self.follower,
-            start_new_session=True, cwd=folder, env={**kept, "TERM": "xterm-256color", "PYTHONPATH": ROOT, **environment},
+            start_new_session=True, cwd=folder, env=kept,
         )  # fmt: skip
 
     # --- looking ---
