@@ -1,7 +1,7 @@
 """How fast the desk is on a long queue: python tests/bench/bench_desk.py [ROWS]; writes only to a temporary folder.
 
 Times of the first rows are those of a whole process on a pseudo-terminal, against an empty app's; times of keys are
-taken under Textual's pilot, from the key to the end of the repaint, a search's from the last letter to its list.
+taken on the same, from the key to the end of its repaint; those of whole lists under Textual's pilot.
 """
 
 from __future__ import annotations
@@ -19,7 +19,6 @@ import sys
 import tempfile
 import termios
 import time
-from collections.abc import Awaitable, Callable
 from pathlib import Path
 
 EMPTY_APP = "from textual.app import App\nfrom textual.widgets import Static\n" \
@@ -124,54 +123,51 @@ def terminal_key_times(path: Path) -> dict[str, list[float]]:
     return found
 
 
-async def timed(pilot, do: Callable[[], Awaitable[None]]) -> float:
-    """Milliseconds until what a key did is on the screen."""
-    started = time.perf_counter()
-    await do()
-    await pilot.pause()
-    return (time.perf_counter() - started) * 1e3
-
-
-async def key_times(path: Path) -> dict[str, list[float]]:
-    """Times of keys and of what they set going."""
+async def list_times(path: Path) -> dict[str, list[float]]:
+    """Times from a key to the whole list that it asks for."""
     from tui.desk.app import Desk
-    from tui.desk.widgets.candidate_list import CandidateList
     from tui.workflow.session import Session
 
     session = Session.open(str(path), "heron")
     app = Desk(session)
     found: dict[str, list[float]] = {}
     async with app.run_test(size=(80, 24)) as pilot:
-        started = time.perf_counter()
-        await pilot.pause()
         queue = app.screen
-        candidates = queue.query_one(CandidateList)
 
-        async def listed(key: str) -> None:
-            await pilot.press(key)
+        async def listed(action: str) -> None:
+            started = time.perf_counter()
+            await queue.run_action(action)
             while queue.is_ordering:
                 await asyncio.sleep(0.001)
+            found.setdefault(f"whole list, {action}", []).append((time.perf_counter() - started) * 1e3)
 
-        while queue.is_ordering:
-            await asyncio.sleep(0.001)
-        found["whole order"] = [(time.perf_counter() - started) * 1e3]
-        for key in ("down", "pagedown", "up", "end", "home"):
-            found[f"key {key}"] = [await timed(pilot, lambda key=key: pilot.press(key)) for _ in range(KEYS // 5)]
-        for key in ("o", "O", "x", "x", "n", "n"):
-            found.setdefault(f"list after {key}", []).append(await timed(pilot, lambda key=key: listed(key)))
-        await pilot.press("slash")
         await pilot.pause()
-        found["search, while typing"] = []
-        for letter in "sm-09":
-            found["search, while typing"].append(await timed(pilot, lambda letter=letter: pilot.press(letter)))
-        started = time.perf_counter()
-        while not len(candidates.ids) or queue.view.find != "sm-09":
+        while queue.is_ordering or not queue.counts:
             await asyncio.sleep(0.001)
-        found["search, beginning"] = [(time.perf_counter() - started) * 1e3]
-        while queue.is_ordering:
-            await asyncio.sleep(0.001)
-        found["search, inside"] = [(time.perf_counter() - started) * 1e3]
+        for action in ("order", "reverse", "all", "unresolved('blend')", "needs_me", "all"):
+            await listed(action)
     session.close()
+    return found
+
+
+def searched(path: Path) -> dict[str, list[float]]:
+    """Times of a search on a pseudo-terminal: of each letter's repaint, and from all letters at once to their list."""
+    terminal = Terminal(DESK, [str(path)])
+    terminal.wait_for(b"SM-0")
+    terminal.quiet(1.5)
+    found: dict[str, list[float]] = {"search, a letter": [], "search, beginning": [], "search, inside": []}
+    for text, kind in ((b"sm-09", "search, beginning"), (b"98765", "search, inside")):
+        terminal.key(b"/")
+        terminal.quiet(0.5)
+        os.write(terminal.leader, text)
+        found[kind].append(terminal.wait_for(b"SM-09000" if kind.endswith("beginning") else b"SM-0098765"))
+        terminal.quiet(2.0)
+        for _ in text:
+            found["search, a letter"].append(terminal.key(b"\x7f"))
+            terminal.quiet(0.05)
+        terminal.key(b"\r")
+        terminal.quiet(2.0)
+    terminal.end()
     return found
 
 
@@ -187,7 +183,7 @@ def main(rows: int) -> None:
         print(f"{'first text, empty app':<28}{statistics.median(empty):>9.0f} ms median of {STARTS}")
         print(f"{'first rows, desk':<28}{statistics.median(desk):>9.0f} ms, "
               f"{statistics.median(desk) / statistics.median(empty):.2f} times")  # fmt: skip
-        for what, times in (terminal_key_times(path) | asyncio.run(key_times(path))).items():
+        for what, times in (terminal_key_times(path) | searched(path) | asyncio.run(list_times(path))).items():
             worst = sorted(times)[int(0.99 * (len(times) - 1))]
             print(f"{what:<28}{statistics.median(times):>9.1f} ms median{worst:>9.1f} ms p99 of {len(times)}")
         print(f"peak memory {resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024:.0f} MB")

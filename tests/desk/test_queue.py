@@ -283,7 +283,7 @@ def test_a_million_rows_are_drawn_line_by_line(million_session, drive, screen_te
 def test_typing_is_never_held_up_by_a_slow_search(million_session, drive, settled):
     gate = threading.Event()
 
-    def slow(text, substring=False):
+    def slow(text, substring=False, limit=-1):
         gate.wait(10)
         return array("q", [7])
 
@@ -306,5 +306,16 @@ def test_a_row_gone_from_the_queue_is_a_plain_line(fake_session, drive, screen_t
         candidates.forget_rows()
         await settled(app, pilot)
         assert "gone from the queue" in screen_text(app)
+
+    drive(fake_session, steps)
+
+
+def test_counts_are_not_lost_when_a_newer_wish_takes_the_place_of_the_one_that_counted(fake_session, drive, settled):
+    async def steps(app, pilot):
+        app.screen.counts = {}
+        app.screen.order(counting=True)
+        app.screen.action_unresolved("blend")
+        await settled(app, pilot)
+        assert app.screen.counts["all"] == len(fake_session.names)
 
     drive(fake_session, steps)

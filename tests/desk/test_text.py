@@ -55,7 +55,7 @@ def test_a_note_keeps_its_line_ends_and_nothing_else():
 
 @pytest.mark.parametrize(
     ("p", "said"),
-    [(1.0, "nearly always"), (0.5, "once in 2"), (0.01, "once in 100"), (1e-7, "once in 1e7"), (0.0, "practically never")],
+    [(1.0, "nearly always"), (0.5, "once in 2"), (0.01, "once in 100"), (1e-7, "once in 1e7"), (0, "practically never")],
 )
 def test_chance_in_words(p, said):
     assert text.once_in(p) == said
@@ -63,8 +63,8 @@ def test_chance_in_words(p, said):
 
 @pytest.mark.parametrize(
     ("value", "digits", "said"),
-    [(5612.4, 4, "5612"), (0.0, 3, "0"), (-0.00123, 3, "-0.00123"), (1e-9, 2, "1.0e-9"), (999.96, 4, "1000"), (None, 3, "--"),
-     (float("inf"), 3, "inf")],
+    [(5612.4, 4, "5612"), (0.0, 3, "0"), (-0.00123, 3, "-0.00123"), (1e-9, 2, "1.0e-9"), (999.96, 4, "1000"),
+     (None, 3, "--"), (float("inf"), 3, "inf")],
 )  # fmt: skip
 def test_numbers_are_plain_where_they_can_be_read(value, digits, said):
     assert text.number(value, digits) == said

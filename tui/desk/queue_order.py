@@ -3,13 +3,17 @@
 from __future__ import annotations
 
 from array import array
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
+from time import sleep
 from typing import TYPE_CHECKING
+
+import numpy as np
 
 if TYPE_CHECKING:
     from tui.desk.queue_view import QueueView
     from tui.workflow.session import Session
 
+REST_S = 0.12  # a search looks inside names once the typing has rested so long
 BEGINNING = 200  # lines shown at once, while a long queue is still being ordered
 
 
@@ -20,19 +24,30 @@ def beginning(session: Session, view: QueueView) -> array[int] | None:
     return session.order(view.sort, view.descending, view.where, limit=BEGINNING)
 
 
-def ordered(session: Session, view: QueueView) -> Iterator[tuple[array[int], bool]]:
+def ordered(session: Session, view: QueueView, is_wanted: Callable[[], bool]) -> Iterator[tuple[array[int], bool]]:
     """Ids for a view, and whether they are all.
 
-    A search gives the names that begin with the text, then these and after them the names that hold it.
+    A search gives the first names that begin with the text at once, then these and after them the names that hold it.
+
+    Args:
+        is_wanted: asked before the long part of a search, which waits until the typing rests.
     """
     if not view.find:
         yield session.order(view.sort, view.descending, view.where), True
         return
+    yield session.find(view.find, limit=BEGINNING), False
+    sleep(REST_S)
+    if not is_wanted():
+        return
     start = session.find(view.find)
-    yield start, False
-    known = set(start)
-    inside = (found for found in session.find(view.find, substring=True) if found not in known)
-    yield start + array("q", inside), True
+    inside = session.find(view.find, substring=True)
+    yield start + without(inside, start), True
+
+
+def without(ids: array[int], known: array[int]) -> array[int]:
+    """The ids that are not among the known ones, in their order."""
+    found, seen = np.frombuffer(ids, dtype=np.int64), np.frombuffer(known, dtype=np.int64)
+    return array("q", found[~np.isin(found, seen, assume_unique=True)].tobytes())
 
 
 def line_of(ids: array[int], candidate_id: int | None, otherwise: int) -> int:

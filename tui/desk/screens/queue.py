@@ -73,7 +73,8 @@ class QueueScreen(MovesThroughList, QueueBackground):
         self.orient(is_new=position is None)
         self.wanted = position[0] if position else None
         self.tell_head()
-        self.order()
+        self.list_beginning()
+        self.call_after_refresh(self.order, counting=True)  # the first rows first: ordering takes the processor
         self.set_interval(POLL_THIN_S if self.app.thin else POLL_S, self.poll)
 
     def orient(self, is_new: bool) -> None:

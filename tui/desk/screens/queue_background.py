@@ -60,6 +60,7 @@ class QueueBackground(DeskScreen[None]):
         self._version = session.data_version()
         self._refreshed_at = 0.0
         self._was_left = False
+        self._counts_due = True
         self.wanted: str | None = None  # name to choose when the next list arrives
 
     def orient(self, is_new: bool) -> None:
@@ -68,14 +69,15 @@ class QueueBackground(DeskScreen[None]):
     def tell_head(self) -> None:
         """The lines above the list have something new to show."""
 
-    def order(self) -> None:
-        """Make the list for the view that is wished for now."""
+    def order(self, counting: bool = False) -> None:
+        """Make the list for the view that is wished for now; `counting`: what each filter shows may differ too."""
+        self._counts_due = self._counts_due or counting  # until they come: a newer wish may take this one's place
         self.is_ordering = True
         self._asked_at = monotonic()
         self.tell_head()
         if self.view != self._listed:
             self.list_beginning()
-        self.make_order(self.view)
+        self.make_order(self.view, self._counts_due)
 
     def list_beginning(self) -> None:
         """Show the first lines while a long queue is ordered; a millisecond's work."""
@@ -87,16 +89,17 @@ class QueueBackground(DeskScreen[None]):
             self.query_one(CandidateList).show(ids, line_of(ids, self._kept_id(), 0))
 
     @work(thread=True, exclusive=True, group="order", exit_on_error=False)
-    def make_order(self, view: QueueView) -> None:
+    def make_order(self, view: QueueView, counting: bool) -> None:
         """Runs in a thread, on a connection of its own; only posts."""
         worker = get_current_worker()
         try:
             with self.session.clone() as session:
-                for ids, is_whole in ordered(session, view):
+                for ids, is_whole in ordered(session, view, lambda: not worker.is_cancelled):
                     if worker.is_cancelled:
                         return
                     self.post_message(self.Ordered(view, ids, is_whole))
-                self.post_message(self.Counted(session.counts()))
+                if counting:
+                    self.post_message(self.Counted(session.counts()))
         except TuiError as error:
             self.post_message(self.Failed(str(error)))
 
@@ -130,6 +133,7 @@ class QueueBackground(DeskScreen[None]):
     def show_counts(self, message: Counted) -> None:
         """The counts beside the filters."""
         self.counts = message.counts
+        self._counts_due = False
         self.tell_head()
         if message.counts.get("mine"):
             self.orient(is_new=False)
@@ -158,7 +162,7 @@ class QueueBackground(DeskScreen[None]):
         """What is in the queue may have changed."""
         self._refreshed_at = monotonic()
         self.query_one(CandidateList).forget_rows()
-        self.order()
+        self.order(counting=True)
 
     def on_screen_resume(self) -> None:
         """Back from a candidate: what was ruled there shows here."""

@@ -38,7 +38,9 @@ class FindLine(Horizontal):
     def compose(self) -> ComposeResult:
         """The word, the line, the way out."""
         yield Static(self.prompt, markup=False, classes="prompt")
-        yield FindInput(compact=True, select_on_focus=False)
+        entry = FindInput(compact=True, select_on_focus=False)
+        entry.cursor_blink = False  # a blink is a repaint, on slow lines too
+        yield entry
         yield Static(self.hint, markup=False, classes="hint")
 
     def open(self, text: str) -> None:

@@ -28,8 +28,8 @@ class Columns:
     check: int
     outcome: int = 11
     yours: int = 5
-    band: int = 6
-    pull: int = 6
+    band: int = 7
+    pull: int = 5
     gap: int = 1
 
 
@@ -43,7 +43,7 @@ def columns_for(width: int) -> Columns:
     check = 7 if width < 100 else 8
     gap = 1 if width < 100 else 2
     oddness = 7 if width >= 92 else 0
-    used = 2 + gap + oddness + 6 + 6 + gap + check * len(CHECKS) + 11 + gap + 5 + 1
+    used = 2 + gap + oddness + 7 + 5 + gap + check * len(CHECKS) + 11 + gap + 5 + 1
     return Columns(width, max(NAME_NARROWEST, min(NAME_WIDEST, width - used)), oddness, check, gap=gap)
 
 
@@ -88,8 +88,9 @@ def row_cells(row: QueueRow, columns: Columns, chosen: bool) -> list[Cell]:
     if columns.oddness:
         cells.append((fit(_sigma(row.oddness), columns.oddness - 2, align="right") + "  ", "plain"))
     band = fit(short_band(row.odd_band) if row.odd_band else "--", columns.band)
-    pull = fit(signed(row.odd_pull) if row.odd_band else "", columns.pull - 1, align="right")
-    cells.append((band + pull + " " + gap, "plain"))
+    decimals = 0 if abs(row.odd_pull) >= 99.95 else 1
+    pull = fit(signed(row.odd_pull, decimals) if row.odd_band else "", columns.pull, align="right")
+    cells.append((band + pull + gap, "plain"))
     for check in CHECKS:
         state = row.states.get(check, "")
         text = state_text(state, check in row.stale) if state else ""
@@ -104,8 +105,10 @@ def yours_text(row: QueueRow) -> str:
 
     A candidate that needs nobody, though this reader is not done with it, reads `--`.
     """
+    if row.needs_me and (row.done or row.stale):
+        return "again"
     if row.done:
-        return "again" if row.needs_me else "done"
+        return "done"
     if row.needs_me:
         return f"{row.ruled}/{row.to_rule}"
     return "--"
@@ -115,7 +118,7 @@ def yours_style(row: QueueRow) -> str:
     """Loud where something is begun or asked again, plain where it waits, quiet where nothing is asked."""
     if not row.needs_me:
         return "quiet"
-    return "attention" if row.done or row.ruled else "plain"
+    return "attention" if row.done or row.stale or row.ruled else "plain"
 
 
 def compact(count: int | None) -> str:
