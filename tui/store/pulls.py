@@ -37,24 +37,32 @@ def pulls_mark(connection: sqlite3.Connection) -> tuple[Any, ...]:
     return (*connection.execute(counted).fetchone(), *(last or ()))
 
 
+class Columns(dict):
+    """Band -> column, a new one for each band met."""
+
+    def __missing__(self, band: str) -> int:
+        self[band] = len(self)
+        return self[band]
+
+
 def star_pulls(connection: sqlite3.Connection) -> StarPulls:
     """The pulls of the best star-only fit of every candidate."""
+    columns = Columns()
     ids: list[NDArray[np.int64]] = []
-    tables: list[tuple[tuple[str, ...], NDArray[np.int64], NDArray[np.float32]]] = []
+    cells: list[tuple[NDArray[np.int64], NDArray[np.int64], NDArray[np.float32]]] = []
     begun = 0
     for keys, found in runs(connection):
         ids.append(keys)
-        for names, rows in alike(found).items():
-            flat = chain.from_iterable(found[row].values() for row in rows)
-            values = np.fromiter(flat, dtype=np.float32, count=len(rows) * len(names))
-            tables.append((names, begun + np.array(rows), values.reshape(len(rows), len(names))))
+        sizes = np.fromiter(map(len, found), dtype=np.int64, count=len(found))
+        count = int(sizes.sum())
+        column = np.fromiter(map(columns.__getitem__, chain.from_iterable(found)), dtype=np.int64, count=count)
+        value = np.fromiter(chain.from_iterable(map(dict.values, found)), dtype=np.float32, count=count)
+        cells.append((np.repeat(begun + np.arange(len(found)), sizes), column, value))
         begun += len(found)
-    bands = tuple(dict.fromkeys(name for names, _, _ in tables for name in names))
-    place = {band: column for column, band in enumerate(bands)}
-    pulls = np.full((begun, len(bands)), np.nan, dtype=np.float32)
-    for names, rows, values in tables:
-        pulls[np.ix_(rows, [place[name] for name in names])] = values
-    return StarPulls(np.concatenate(ids) if ids else np.zeros(0, dtype=np.int64), bands, pulls)
+    pulls = np.full((begun, len(columns)), np.nan, dtype=np.float32)
+    for rows, column, value in cells:
+        pulls[rows, column] = value
+    return StarPulls(np.concatenate(ids) if ids else np.zeros(0, dtype=np.int64), tuple(columns), pulls)
 
 
 def runs(connection: sqlite3.Connection) -> Iterator[tuple[NDArray[np.int64], list[dict[str, float]]]]:
@@ -66,15 +74,6 @@ def runs(connection: sqlite3.Connection) -> Iterator[tuple[NDArray[np.int64], li
     while rows := cursor.fetchmany(RUN):
         text = ",".join([pulls or "{}" for _, pulls in rows]).replace(":null", ":NaN")
         yield np.array([key for key, _ in rows], dtype=np.int64), json.loads(f"[{text}]")
-
-
-def alike(found: Sequence[dict[str, float]]) -> dict[tuple[str, ...], list[int]]:
-    """Bands -> which of some candidates have just these; those without any are left out."""
-    groups: dict[tuple[str, ...], list[int]] = {}
-    for row, pulls in enumerate(found):
-        if pulls:
-            groups.setdefault(tuple(pulls), []).append(row)
-    return groups
 
 
 def places_of(connection: sqlite3.Connection, ids: Sequence[int]) -> dict[int, tuple[float, float]]:
