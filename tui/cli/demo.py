@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import os
-import sys
 import tempfile
 from pathlib import Path
 
@@ -12,12 +10,16 @@ import click
 
 @click.command("demo")
 @click.option("--thin", is_flag=True, help="For slow lines.")
-def demo_command(thin: bool) -> int:
+@click.option("--practice", is_flag=True, help="Only the three practice stars, with the answer after each ruling.")
+def demo_command(thin: bool, practice: bool) -> int:
     """Open a copy of the sample queue as `visitor`; a text summary when there is no terminal."""
-    if not (sys.stdin.isatty() and sys.stdout.isatty()) or os.environ.get("TERM", "dumb") in ("", "dumb"):
+    if practice:
+        return practise(thin)
+    from tui.cli.ruling import has_terminal, open_desk
+
+    if not has_terminal():
         return summary_of_a_copy()
     from tui.cli.printing import line
-    from tui.cli.ruling import open_desk
     from tui.workflow.config import read_config
     from tui.workflow.demo import VISITOR, sample_copy
     from tui.workflow.session import Session
@@ -28,6 +30,23 @@ def demo_command(thin: bool) -> int:
         status = open_desk(session, thin=thin, theme=config.theme, keys=config.keys)
     line(f"Your copy of the sample stays at {path}; go on with: plainlight review {path} --as {VISITOR}")
     return status
+
+
+def practise(thin: bool) -> int:
+    """The desk with the practice stars alone; as text where there is no terminal."""
+    from tui.cli.ruling import has_terminal
+
+    if not has_terminal():
+        from tui.cli.demo_text import print_practice
+
+        print_practice()
+        return 0
+    from tui.cli.ruling import run_desk
+    from tui.desk.practice_desk import PracticeDesk
+    from tui.workflow.config import read_config
+
+    config = read_config()
+    return run_desk(PracticeDesk(thin=thin, theme=config.theme, keys=config.keys))
 
 
 def summary_of_a_copy() -> int:

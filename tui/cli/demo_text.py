@@ -8,11 +8,26 @@ from tui.cli.looking import print_short
 from tui.cli.printing import heading, line
 
 SHOWN = 10  # oddest candidates listed
+RULED = {"explains": "explains it", "short": "falls short", "unclear": "is unclear"}
 NEXT_STEPS = (
     ("plainlight demo", "in a terminal: opens a copy of this queue as visitor"),
+    ("plainlight demo --practice", "three stars to learn on, with answers"),
     ("plainlight load my.db table.vot", "begin a queue of your own"),
     ("plainlight --help", "every command"),
 )
+
+
+def print_practice() -> None:
+    """The practice stars with their answers, where no terminal can show them."""
+    from tui.model import CHECK_TITLES
+    from tui.workflow.practice import practice_stars
+
+    line("Practice stars belong to no queue. In a terminal the answers follow your own rulings.")
+    for star in practice_stars():
+        heading(f"{star.name}: {star.title}")
+        for check, answer in star.answers.items():
+            line(f"{CHECK_TITLES[check]} {RULED[answer.ruling]}: {answer.why}")
+        line(star.told)
 
 
 def print_summary(path: Path) -> None:

@@ -4,12 +4,16 @@ from __future__ import annotations
 
 import os
 import sys
+from typing import TYPE_CHECKING
 
 import click
 
 from tui.cli.arguments import as_option, check_argument, name_argument, needed_handle, queue_argument
 from tui.errors import InputError
 from tui.model import RULINGS
+
+if TYPE_CHECKING:
+    from tui.desk.app import Desk
 
 NO_DESK = (
     "The desk needs a terminal that can place text (TERM=dumb or a pipe cannot). Everything in it can be done by "
@@ -62,17 +66,26 @@ def review_command(queue: str, handle: str | None, thin: bool) -> int:
 
 def refuse_without_terminal() -> None:
     """InputError, naming the commands that do the same, where no terminal can show the desk."""
-    if not (sys.stdin.isatty() and sys.stdout.isatty()) or os.environ.get("TERM", "dumb") in ("", "dumb"):
+    if not has_terminal():
         raise InputError(NO_DESK)
+
+
+def has_terminal() -> bool:
+    """Whether there is a terminal that can place text."""
+    return sys.stdin.isatty() and sys.stdout.isatty() and os.environ.get("TERM", "dumb") not in ("", "dumb")
 
 
 def open_desk(session, *, thin: bool, theme: str | None, keys) -> int:
     """Run the desk until the reviewer leaves; its return code is the exit status."""
-    from multiprocessing import resource_tracker
-
     from tui.desk.app import Desk
 
+    return run_desk(Desk(session, thin=thin, theme=theme, keys=keys))
+
+
+def run_desk(desk: Desk) -> int:
+    """Run one until whoever sits there leaves; its return code is the exit status."""
+    from multiprocessing import resource_tracker
+
     resource_tracker.ensure_running()  # a process started later, inside the desk, would find its descriptors closed
-    desk = Desk(session, thin=thin, theme=theme, keys=keys)
     desk.run()
     return desk.return_code or 0

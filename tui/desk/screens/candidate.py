@@ -95,7 +95,8 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
     def lay_out(self, width: int, height: int) -> None:
         """Give every part its rows and columns."""
         writing = self._draft_of is not None
-        share = shares(width, height, self.walk.plot_only, 0 if writing else advice_height(self.walk, width))
+        advice = 0 if writing else advice_height(self.walk, width)
+        share = shares(width, height, self.walk.plot_only, advice, self.walk.is_lesson and bool(self.walk.message))
         self.query_one("#walk-head").styles.height = share.head
         self.query_one("#walk-foot").styles.height = share.foot
         self.query_one("#walk-numbers").styles.width = max(share.side, 1)

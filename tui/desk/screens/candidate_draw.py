@@ -127,7 +127,7 @@ def advice(walk: Walk) -> tuple[str, str, tuple[str, ...], str]:
         f"Your ruling is stale: {stale}." if stale else SPLIT if is_split else caution_line(walk.check, walk.evidence)
     )
     look = look_at(walk.check, walk.fit) if walk.own_evidence is not None else ("",)
-    return walk.message, point, look, caution
+    return walk.message, point, look, "" if walk.is_lesson and walk.message else caution
 
 
 def advice_height(walk: Walk, width: int) -> int:

@@ -14,11 +14,15 @@ class Shares:
     side: int
 
 
-def shares(width: int, height: int, plot_only: bool = False, advice: int = 2) -> Shares:
+LESSON = 6  # rows of an answer: what was ruled, why, and what the star was
+
+
+def shares(width: int, height: int, plot_only: bool = False, advice: int = 2, is_lesson: bool = False) -> Shares:
     """The plot gets what is left: 51 x 16 at 80 x 24, about 126 x 45 at 200 x 60.
 
     Args:
         advice: rows that advice and caution would take in full; 0 while a note is written in their place.
+        is_lesson: more of them may be shown, at the plot's cost.
 
     >>> shares(80, 24)
     Shares(head=3, foot=5, side=29)
@@ -27,7 +31,7 @@ def shares(width: int, height: int, plot_only: bool = False, advice: int = 2) ->
     if advice == 0:
         return Shares(head, 3, _side(width) if not plot_only else 0)
     least, most = (2, 3) if height < 32 else (3, 5) if height < 45 else (4, 7)
-    foot = min(max(advice, least), most) + 3  # then the ruling line and two rows of keys
+    foot = min(max(advice, least), max(most, LESSON) if is_lesson else most) + 3  # then the ruling line and two rows of keys
     return Shares(head, foot, 0 if plot_only else _side(width))
 
 

@@ -103,9 +103,13 @@ class RecordsRulings:
             walk.message = CHANGED
             self.open(name, check, keep_message=True)
             return
-        self.app.note_ruling(written[0].utc)
+        self.note_recorded(written[0].utc)
         if self.is_here(walk):
             await self.go_on(walk, written[1], check, ruling)
+
+    def note_recorded(self: CandidateScreen, utc: str) -> None:
+        """A ruling is in the file."""
+        self.app.note_ruling(utc)
 
     async def go_on(self: CandidateScreen, walk: Walk, view: CandidateView, check: str, ruling: str) -> None:
         """To the next check that this reviewer has to rule, else to the next candidate."""

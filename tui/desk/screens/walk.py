@@ -73,6 +73,7 @@ class Walk:
     chosen: str = ""  # ruling chosen and not yet recorded
     notes: dict[str, str] = field(default_factory=dict)  # check -> note begun and not recorded
     message: str = ""
+    is_lesson: bool = False  # what is said is read in full before anything else: the answers of a practice star
     trouble: str = ""  # why there is no evidence
     page: int = 0
     plot_view: PlotView = field(default_factory=PlotView)
