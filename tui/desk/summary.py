@@ -23,7 +23,7 @@ def oddness_sentence(row: QueueRow, evidence: Mapping[str, Evidence]) -> str:
         return "Not assessed yet: opening it computes the evidence."
     if star.best is None or not star.best.pulls:
         return "The star alone cannot be fitted: too few bands."
-    pulls = star.best.pulls
+    pulls = dict(sorted(star.best.pulls.items(), key=lambda item: -abs(item[1])))  # the farthest are named first
     bright = [band for band, pull in pulls.items() if pull >= ODD_PULL]
     faint = [band for band, pull in pulls.items() if pull <= -ODD_PULL]
     said = [f"{_bands(bands)} {word}" for bands, word in ((bright, "brighter"), (faint, "fainter")) if bands]
@@ -36,7 +36,7 @@ def oddness_sentence(row: QueueRow, evidence: Mapping[str, Evidence]) -> str:
 def standing_sentence(row: QueueRow, view: CandidateView | None) -> str:
     """Where the candidate stands for this reader, in one sentence."""
     if row.stale:
-        return f"Stale: the evidence under your ruling on {_checks(row.stale)} has changed since. Look once more."
+        return f"Stale: the evidence under your ruling on {_checks(row.stale)} has changed. Look once more."
     if not row.seal_open:
         return _sealed_sentence(row)
     reason = view.pending_reason if view else ""
@@ -83,4 +83,6 @@ def _bands(bands: list[str]) -> str:
 
 
 def _checks(checks: frozenset[str]) -> str:
+    if len(checks) > 2:
+        return plural(len(checks), "check")
     return listed([CHECK_TITLES[check] for check in CHECK_TITLES if check in checks])

@@ -6,7 +6,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
-from tui.desk.text import RULING_WORDS, SIGNS, decimal_aligned, fit, once_in, safe, short_band, signed, wrap
+from tui.desk.text import RULING_WORDS, SIGNS, decimal_aligned, fit, once_in, plural, safe, short_band, signed, wrap
 from tui.desk.widgets.numbers import param_name, value_and_error
 from tui.desk.widgets.rows import Row, Span, fit_row, paragraph, row
 from tui.model import CHECK_TITLES, Evidence
@@ -16,6 +16,7 @@ if TYPE_CHECKING:
 
 COLUMN_LEAST = 25  # cells: narrower columns of notes cannot be read
 PULLS_SHOWN = 5
+FITS_SHOWN = 2  # the notes matter most here; the candidate's page has all fits
 
 
 @dataclass(frozen=True, slots=True)
@@ -66,15 +67,16 @@ def split_rows(split: Split, width: int) -> list[Row]:
     said = split.rulings()
     if not said:
         return [row((" Nobody has ruled on this check yet.", "quiet"))]
-    rows = [*number_rows(split.evidence.get(split.check), width), []]
+    evidence = split.evidence.get(split.check)
+    rows = [*number_rows(evidence, width), []]
     columns = max(1, min(len(said), (width - 1) // COLUMN_LEAST))
     column_width = (width - 1) // columns
     for start in range(0, len(said), columns):
         blocks = [column_rows(handle, lines, column_width - 2, handle == split.handle)
                   for handle, lines in said[start : start + columns]]  # fmt: skip
         rows += side_by_side(blocks, column_width)
-        rows.append([])
-    return rows
+    cautions = evidence.cautions if evidence else ()
+    return rows + [line for text in cautions for line in indented(f"CAUTION {text}", width, "caution", 8)]
 
 
 def number_rows(evidence: Evidence | None, width: int) -> list[Row]:
@@ -83,7 +85,7 @@ def number_rows(evidence: Evidence | None, width: int) -> list[Row]:
         return [row((" Not assessed yet.", "quiet"))]
     if not evidence.fits:
         return [row((" Nothing could be fitted: too few data.", "quiet"))]
-    fits = evidence.fits[:4]
+    fits = evidence.fits[:FITS_SHOWN]
     name_wide = max(len(safe(found.model)) for found in fits) + 2
     chi2 = decimal_aligned([f"{found.chi2:.1f}" for found in fits])
     bic = decimal_aligned([f"{found.bic:.1f}" for found in fits])
@@ -94,9 +96,10 @@ def number_rows(evidence: Evidence | None, width: int) -> list[Row]:
         rows.append([Span(text, "strong" if place == 0 else "")])
     pulls = sorted(fits[0].pulls.items(), key=lambda item: -abs(item[1]))[:PULLS_SHOWN]
     left = "  ".join(f"{short_band(band)} {signed(pull)}" for band, pull in pulls)
-    rows += [[], *indented(f"left over, sigma: {left}", width)]
-    rows += indented(_params(evidence), width, "quiet")
-    return rows + [line for text in evidence.cautions for line in indented(f"CAUTION {text}", width, "caution", 8)]
+    more = len(evidence.fits) - len(fits)
+    rows += [row((f" and {plural(more, 'fit')} that meet the data less well", "quiet"))] if more else []
+    rows += indented(f"left over, sigma: {left}", width)
+    return rows + indented(_params(evidence), width, "quiet")
 
 
 def indented(text: str, width: int, style: str = "", hang: int = 0) -> list[Row]:

@@ -18,7 +18,7 @@ if TYPE_CHECKING:
     from tui.workflow.records import StoryLine
     from tui.workflow.session import Session
 
-TIME_WIDE, WHO_WIDE, WHAT_WIDE = 17, 13, 12
+TIME_WIDE, WHO_WIDE, WHAT_WIDE = 17, 12, 15
 
 
 class StoryScreen(DeskScreen[None]):
@@ -93,12 +93,12 @@ def story_rows(line: StoryLine, width: int) -> list[list[Span]]:
     """One thing that happened: when, who, what, then the text as often as it takes lines."""
     when = safe(line.utc[:16].replace("T", " "))
     what = f"{safe(line.what)} {SHORT_CHECKS.get(line.check, '')}".strip()
-    head = 1 + TIME_WIDE + WHO_WIDE + WHAT_WIDE + 6
+    head = 1 + TIME_WIDE + WHO_WIDE + WHAT_WIDE
     first, *rest = wrap(safe(line.text), max(20, width - head - 1)) or [""]
     spans = [
         Span(" " + fit(when, TIME_WIDE), "quiet"),
         Span(fit(safe(line.who), WHO_WIDE - 1) + " ", "strong"),
-        Span(fit(what, WHAT_WIDE + 5) + " "),
+        Span(fit(what, WHAT_WIDE - 1) + " "),
         Span(first),
     ]
     return [spans, *([Span(" " * head), Span(more)] for more in rest)]
