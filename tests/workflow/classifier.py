@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
-from scipy.special import expit
+from scipy.special import expit, ndtri
 
 RIDGE = 10.0
 FOLDS = 10
@@ -56,7 +56,7 @@ def auc(found: np.ndarray, labels: np.ndarray) -> tuple[float, float]:
     return float(wins.mean()), float(error)
 
 
-def tried(table: np.ndarray, labels: np.ndarray) -> tuple[float, float, float]:
+def tried(table: np.ndarray, labels: np.ndarray, together: int = 1) -> tuple[float, float, float]:
     """AUC on rows that the classifier never saw, with its 95 % interval.
 
     The folds share what they learn from, so that the area scatters more than its placements say: where labels
@@ -65,11 +65,12 @@ def tried(table: np.ndarray, labels: np.ndarray) -> tuple[float, float, float]:
     Args:
         table: one row a candidate, shape (n, k).
         labels: 0 or 1, shape (n,).
+        together: of so many intervals all shall hold at 95 % (Bonferroni).
     """
     rng = np.random.default_rng(1)
     sets = np.column_stack([labels, *(rng.permutation(labels) for _ in range(SHUFFLES))])
     found = scores(table, sets, rng)
     area, error = auc(found[:, 0], labels)
     scatter = np.std([auc(found[:, one], sets[:, one])[0] for one in range(1, SHUFFLES + 1)], ddof=1)
-    half = 1.96 * max(error, float(scatter))
+    half = ndtri(1 - 0.025 / together) * max(error, float(scatter))
     return area, area - half, area + half

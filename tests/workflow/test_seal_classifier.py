@@ -127,7 +127,7 @@ def test_what_is_reachable_does_not_tell_the_nature(known, reached):
 
 @pytest.mark.parametrize("check", NATURAL)
 def test_nor_which_check_it_is(known, reached, check):
-    _, low, high = tried(reached, np.array([int(nature == check) for nature in known.natures]))
+    _, low, high = tried(reached, np.array([int(nature == check) for nature in known.natures]), len(NATURAL))
     assert low < 0.5 < high
 
 
