@@ -35,9 +35,9 @@ def test_repeats_of_pure_noise_scatter_by_one():
     assert np.mean(draws) == pytest.approx(1.0, abs=0.1)  # chi-square of 5 degrees over 5: error of the mean 0.03
 
 
-def test_a_detection_without_error_gets_a_tenth_of_its_flux():
+def test_a_lone_detection_without_error_leaves_it_to_the_floor():
     found = combine([Measurement("J", -2.0, NAN)])
-    assert (found.flux_jy, found.error_jy) == pytest.approx((-2.0, 0.2))
+    assert (found.flux_jy, found.error_jy) == (-2.0, 0.0)
 
 
 def test_limits_alone_leave_the_tightest_and_detections_stand_before_limits():

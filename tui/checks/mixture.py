@@ -90,7 +90,7 @@ def assess_problem(
     """`assess` on arrays that are there already; `templates` are the ones that `problem` was built from."""
     errors = error_model(problem)
     known = np.full(len(problem), np.nan) if known_chi2 is None else np.asarray(known_chi2, dtype=np.float64)
-    points = problem.points
+    points = np.where(problem.detected.any(axis=1), problem.points, 0)  # limits alone bound nothing
     white = whiten(errors.first())
     p_known = p_bound(np.nan_to_num(known, nan=np.inf), points, np.sum(white.target**2, axis=1))
     skipped = np.isfinite(known) & (p_known >= settings.p_min)

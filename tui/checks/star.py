@@ -39,7 +39,8 @@ def oddness(evidence: Evidence) -> Oddness:
     """Oddness of a candidate from its star evidence; NaN where nothing could be tested."""
     told = evidence.facts
     sigma = told.get("oddness")
-    return Oddness(float("nan") if sigma is None else float(sigma), str(told.get("odd_band") or ""), float(told.get("odd_pull") or 0.0))
+    band, pull = str(told.get("odd_band") or ""), float(told.get("odd_pull") or 0.0)
+    return Oddness(float("nan") if sigma is None else float(sigma), band, pull)
 
 
 def assess(candidates: Sequence[Candidate], batch: FitBatch, settings: Settings) -> list[Evidence]:
@@ -91,6 +92,12 @@ def silent_bands(candidate: Candidate, batch: FitBatch) -> list[str]:
         return []
     source = source_named(batch.problem.templates.photosphere)
     return [f"Not fitted: {joined(named(sorted(measured)))}; the photosphere source {source} says nothing there."]
+
+
+def unknown_errors(candidate: Candidate) -> list[str]:
+    """A remark on detections whose error the catalogue does not give."""
+    bands = [m.band for m in candidate.measurements if not m.limit and not m.exclude and not m.error_jy > 0]
+    return [f"No error was given for {joined(sorted(set(bands)))}: the band's floor stands for it."] if bands else []
 
 
 def range_remarks(batch: FitBatch, row: int) -> list[str]:

@@ -16,7 +16,7 @@ from tui.physics.scan import scan
 PASSES = 8
 SETTLED = 0.1  # the error model has settled once chi-square moves by less
 LOOKS = 3  # times that the whole range is scanned anew with the errors of the last pass
-MOVED = 0.1  # a scan holds while no band's error has moved by more than this fraction
+MOVED = 0.03  # a scan holds while no band's error has moved by more than this fraction
 LOWER = 0.02  # a minimum found anew counts when its cost is lower by more
 SECOND_DUST_STEPS = (-1.4, -0.6, 0.6, 1.4)  # of ln T, where a second dust temperature is looked for
 HEATS = ((3, 40.0), (3, 6.0), (4, 2.0), (25, 0.0))  # steps, and how far behind the best a start is then given up
@@ -110,8 +110,10 @@ def fit(
         if not better.any():
             break
         again, x_again, cost_again = settle(some.take(better), kit, anew[better])
-        x[rows[better]], cost[rows[better]] = x_again, cost_again
-        errors = replace_rows(errors, rows[better], again)
+        there = rows[better]
+        lower = cost_again + again.ln_det < cost[there] + errors.ln_det[there]  # each with the errors it settled on
+        x[there[lower]], cost[there[lower]] = x_again[lower], cost_again[lower]
+        errors = replace_rows(errors, there[lower], again.take(np.flatnonzero(lower)))
     x = descend(problem, kit, errors, x, steps=FINE_STEPS, tolerance=FINE).x
     return finish(problem, kit, errors, x)
 

@@ -13,7 +13,7 @@ from tui.physics.constants import MAG
 from tui.physics.planck import planck_jy
 
 AB_ZERO_JY = 3631.0  # Oke & Gunn 1983, ApJ 266, 713
-NODES = 240  # quadrature nodes a band; 120 gives the same to 2e-5 for Planck sources above 20 K
+NODES = 240  # quadrature nodes a band; 120 differ by up to 1e-3 (SDSS u, which leaks in the red, by more below 2000 K)
 BOX_NODES, NARROW = 10, 1.25  # of a flat response whose ends lie closer than this ratio: a point of a spectrum
 
 

@@ -10,7 +10,7 @@ import numpy as np
 from tui.model import Candidate, FloatArray, Measurement
 from tui.physics.templates import Templates
 
-NO_ERROR_FLOOR = 0.1  # a detection whose catalogue gives no error: at least this fraction; common practice, no source
+NO_ERROR_FLOOR = 0.1  # weight of a detection without error among repeats, as a fraction; common practice, no source
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -59,11 +59,13 @@ class Combined:
 def combine(measurements: Sequence[Measurement]) -> Combined:
     """Inverse-variance mean of a band's detections; with limits only, the tightest.
 
-    A detection without error counts as one with 10 % error, since its true one is unknown.
+    A lone detection without error has the error 0: the band's floor stands for it. Beside others it weighs as one
+    of 10 %, since its true error is unknown.
     """
     detections = [m for m in measurements if not m.limit]
-    if len(detections) == 1 and detections[0].error_jy > 0:
-        return Combined(detections[0].flux_jy, detections[0].error_jy, False, 1, np.nan)
+    if len(detections) == 1:
+        error = detections[0].error_jy
+        return Combined(detections[0].flux_jy, error if error > 0 else 0.0, False, 1, np.nan)
     if not detections:
         best = min(measurements, key=lambda m: m.flux_jy)
         return Combined(best.flux_jy, best.flux_jy / best.nsigma, True, len(measurements), np.nan)
