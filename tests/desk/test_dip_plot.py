@@ -38,7 +38,7 @@ def test_rows_are_exact_and_the_bluest_stands_highest(size, unicode):
 def test_models_are_told_apart_by_letter_and_word():
     rows = [row_text(line) for line in dip_plot(78, 14, DIPS, CURVES, BANDS)]
     legend = "\n".join(rows[14:])
-    assert "grey: one depth  chi2 78.0" in legend and "extinction law" in legend and "small grains" in legend
+    assert "grey: one depth  chi2 78.0" in legend and "extinction law" in legend and "a power law" in legend
     drawn = "".join(rows[:12])
     assert all(letter in drawn for letter in "Agp")
 

@@ -225,7 +225,7 @@ def event_sentences(event: Event, fits: Mapping[str, Fit], answers: Mapping[str,
         )
     elif answers[POWER] is True and not is_coloured(fits, answers):
         said.append(
-            f"{name}: alpha {alpha.value:.1f} ({alpha.low:.1f} to {alpha.high:.1f}) is no colour: what is grey is an "
+            f"{name}: alpha {tenth(alpha.value)} ({tenth(alpha.low)} to {tenth(alpha.high)}) is no colour: what is grey is an "
             "opaque body or large grains (see blend), and small grains are not needed."
         )
     if answers[GREY] is True and answers[LAW] is True:
@@ -233,6 +233,15 @@ def event_sentences(event: Event, fits: Mapping[str, Fit], answers: Mapping[str,
     if any(answers[model] is None for model in (GREY, LAW, POWER)):
         said.append(f"{name}: {event.depth.size} bands are too few to test every model.")
     return said
+
+
+def tenth(value: float) -> str:
+    """A slope to a tenth, a zero without sign.
+
+    >>> tenth(-0.04), tenth(1.26)
+    ('0.0', '1.3')
+    """
+    return f"{round(value, 1) + 0.0:.1f}"
 
 
 def all_of(answers: Iterable[bool | None]) -> bool | None:

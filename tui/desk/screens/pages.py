@@ -183,7 +183,7 @@ def lookalikes_page(walk: Walk, width: int, height: int) -> list[Row]:
     rows += [[], *paragraph(found.sentence, width - 2, "strong")]
     if found.shared:
         said = ", ".join(f"{name} {p:.2f}" for name, p in found.shared.items())
-        rows += paragraph(f"p that so many lie so close by chance: {said}. Below 0.01 or at it counts as shared.",
+        rows += paragraph(f"p that so many lie so close by chance: {said}; 0.01 or less counts as shared.",
                           width - 2, "quiet")  # fmt: skip
     rows += [[], row((f"  {'name':<22}{'cosine':>7}{short_band(found.band) + ' pull':>10}"
                       f"{short_band(found.mag_band) + ' mag':>11}{'apart, deg':>12}  epoch", "head"))]  # fmt: skip

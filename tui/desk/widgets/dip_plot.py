@@ -21,7 +21,7 @@ LETTERS = {"grey": "g", "A(lambda), R_V": "A", "lambda^-alpha": "p"}
 WORDS = {
     "grey": "grey: one depth",
     "A(lambda), R_V": "A(lambda): the extinction law",
-    "lambda^-alpha": "lambda^-alpha: small grains",
+    "lambda^-alpha": "lambda^-alpha: a power law",
 }
 STEPS = (1.0, 2.0, 5.0)
 
