@@ -48,6 +48,20 @@ def test_fewest_done_reviewers_come_first(filled, team):
     assert not {"SM-0005", "SM-0007"} & set(turns(filled, plover))
 
 
+def test_the_order_does_not_tell_where_others_parted(filled, team):
+    # with quorum 2 only a split can have two done reviewers and still need a third: it must not come last for that
+    heron, plover, curlew = team
+    names = [f"SM-{number:04d}" for number in range(1, 13)]
+    for number, name in enumerate(names):
+        walk(filled, plover, name, "short", 200 + 20 * number)
+    before = turns(filled, heron)
+    parted = before[:3]
+    for number, name in enumerate(parted):
+        walk(filled, curlew, name, "short", 600 + 20 * number)
+        rule(filled, curlew, name, "dust", "explains", 610 + 20 * number)
+    assert turns(filled, heron) == before
+
+
 def test_what_is_settled_or_lacks_only_data_needs_nobody(filled, team):
     heron, plover, curlew = team
     for reviewer in (plover, curlew):
