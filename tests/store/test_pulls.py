@@ -28,12 +28,16 @@ def star(name, found, digest=""):
     return Evidence("star", 1, True, fits, (), {}, digest or f"digest-{name}", tuple(found or ()))
 
 
+def w3(flux_jy):
+    return Measurement("W3", flux_jy, 0.01, epoch="2010.5", source="s")
+
+
 @pytest.fixture
 def connection(tmp_path):
     with closing(open_queue(str(tmp_path / "q.db"), create=True)) as connection:
         facts = {"A": {"ra": 10.0, "dec": -5.0}, "B": {"ra": 10.0}}
         rows = (
-            Candidate(name, (Measurement("W3", 0.1 * (1 + place), 0.01, epoch="2010.5", source="s"),), facts.get(name, {}))
+            Candidate(name, (w3(0.1 + 0.1 * place),), facts.get(name, {}))
             for place, name in enumerate([*PULLS, "E", "F"])
         )
         save_candidates(connection, [LoadRecord(one, "s") for one in rows], UTC)

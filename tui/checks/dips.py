@@ -225,8 +225,8 @@ def event_sentences(event: Event, fits: Mapping[str, Fit], answers: Mapping[str,
         )
     elif answers[POWER] is True and not is_coloured(fits, answers):
         said.append(
-            f"{name}: alpha {tenth(alpha.value)} ({tenth(alpha.low)} to {tenth(alpha.high)}) is no colour: what is grey is an "
-            "opaque body or large grains (see blend), and small grains are not needed."
+            f"{name}: alpha {tenth(alpha.value)} ({tenth(alpha.low)} to {tenth(alpha.high)}) is no colour: what is grey is "
+            "an opaque body or large grains (see blend), and small grains are not needed."
         )
     if answers[GREY] is True and answers[LAW] is True:
         said.append(f"{name}: these depths cannot tell a grey body from dust.")

@@ -105,7 +105,8 @@ class LookAlikeFinder:
         """
         from tui.checks.lookalikes import look_alikes, ready, with_shared
 
-        own = {band: pull for band, pull in star.best.pulls.items() if math.isfinite(pull)} if star and star.best else {}
+        pulls = star.best.pulls if star and star.best else {}
+        own = {band: pull for band, pull in pulls.items() if math.isfinite(pull)}
         if not own:
             return None
         ids, table = compared(self.pulls(connection, seen), candidate[0], own)
@@ -200,13 +201,13 @@ def told(found: Alike, row: int, name: str, pulls: Sequence[float], read: Quanti
         for other, cosine in zip(listed, found.cosine, strict=False)
     )  # fmt: skip
     return LookAlikes(
-        name, read.odd, read.quiet, int(read.ids.size), int(found.rows.size), found.expected, found.p, dict(found.shared),
-        found.points_to_calibration, sentence(found), each,
+        name, read.odd, read.quiet, int(read.ids.size), int(found.rows.size), found.expected, found.p,
+        dict(found.shared), found.points_to_calibration, sentence(found), each,
     )  # fmt: skip
 
 
 def year_of(epoch: str) -> float:
-    """An epoch as given, as a Julian year: ISO date, MJD, JD or a year; NaN where it is none, or a catalogue's release.
+    """An epoch as given, as a Julian year: ISO date, MJD, JD or a year; NaN where it is none of these.
 
     >>> year_of("2000-01-01"), year_of("MJD 51544.5"), year_of("2010.5"), year_of("DR3")
     (2000.0, 2000.0, 2010.5, nan)

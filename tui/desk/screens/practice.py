@@ -10,7 +10,9 @@ from tui.workflow.practice_session import PracticeSession
 from tui.workflow.records import CandidateView
 
 ALL_DONE = "These were all the practice stars. q leaves; nothing of this was kept."
-WELCOME = "PRACTICE, {place} of {count}: {title}. Nothing is kept. After each ruling you read what a practised eye rules."
+WELCOME = (
+    "PRACTICE, {place} of {count}: {title}. Nothing is kept. After each ruling you read what a practised eye rules."
+)
 
 
 class PracticeScreen(CandidateScreen):
