@@ -72,6 +72,8 @@ QUEUE = (
         "Where rulings part: everybody's notes on the check side by side, to rule once more.", 3),
     Key("queue.story", "y", "story", "story", "What happened to the chosen candidate, in time order.", 3),
     Key("queue.tally", "t", "tally", "tally", "How far the team is, whether it can be trusted, and what is left.", 2),
+    Key("queue.practice", "p", "practice", "practice",
+        "Three practice stars with their answers; nothing of it is written.", 0),
     *_list_keys("queue"),
     Key("queue.quit", "q", "quit", "quit", "Leave. Everything you ruled is already in the file.", 1),
 )
@@ -92,7 +94,7 @@ SPLIT = (
     Key("split.short", "f", "choose('short')", "falls short", "Choose: the check falls short of the data.", 1),
     Key("split.unclear", "u", "choose('unclear')", "unclear",
         "Choose: these data cannot tell. It is not counted as sure.", 1),
-    Key("split.note", "a", "note", "a note", "Write a note beside your ruling: what decided it.", 2),
+    Key("split.note", "a", "note", "note", "Write a note beside your ruling: what decided it.", 2),
     Key("split.record", "enter", "record", "record",
         "Record what you chose, with the note, as seen with the others' in view.", 1),
     Key("split.up", "up,k", "up", "up", "Scroll up.", 0),

@@ -78,7 +78,7 @@ def _agree(pulls: Mapping[str, float]) -> str:
 def _bands(bands: list[str]) -> str:
     names = [short_band(band) for band in bands]
     if len(names) > NAMED_BANDS:
-        return f"{', '.join(names[: NAMED_BANDS - 1])} and {len(names) - NAMED_BANDS + 1} bands more"
+        return f"{', '.join(names[: NAMED_BANDS - 1])} and {len(names) - NAMED_BANDS + 1} more bands"
     return listed(names)
 
 

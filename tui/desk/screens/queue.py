@@ -286,6 +286,12 @@ class QueueScreen(MovesThroughList, QueueBackground):
         if row is not None:
             self.app.push_screen(StoryScreen(self.session, row.name))
 
+    def action_practice(self) -> None:
+        """Three practice stars, their answers after each ruling."""
+        from tui.desk.screens.practice import PracticeScreen
+
+        self.app.push_screen(PracticeScreen(self.session.reviewer))
+
     def action_split(self) -> None:
         """Everybody's notes where the chosen candidate's rulings part."""
         row = self.query_one(CandidateList).chosen
