@@ -53,7 +53,7 @@ def test_assess_has_nothing_left_to_do(queue):
 
 def test_show_json_has_the_documented_keys(queue):
     found = shown(queue, "DUSTY")
-    assert list(found) == ["name", "outcome", "oddness", "measurements", "checks", "mixture", "dips"]
+    assert list(found) == ["name", "outcome", "oddness", "measurements", "checks", "mixture", "dips", "look_alikes"]
     assert list(found["checks"]) == list(CHECKS)
     assert list(found["checks"]["dust"]) == CHECK_KEYS
     best = found["checks"]["dust"]["fits"][0]

@@ -104,32 +104,6 @@ class Generators:
 
         return replace(self, coarse=without(self.coarse), middle=without(self.middle))
 
-    def unscreened(self, index: NDArray[np.int64]) -> NDArray[np.bool_]:
-        """Whether nothing stands before a column's source."""
-        out = np.zeros(index.shape, bool)
-        for family in self.families:
-            size = len(family.sources) * len(family.screens)
-            own = (index >= family.first) & (index < family.first + size)
-            out |= own & ((index - family.first) % len(family.screens) == 0)
-        return out
-
-    def cooler(self, limit_k: float) -> Generators:
-        """Coarse and middle grids without the screened stars and Planck sources hotter than `limit_k`.
-
-        The coolest photosphere takes the places of those left out; the fine grid stays whole.
-        """
-        coolest = self.column(np.zeros(1, np.int64))[0].astype(np.float32)
-
-        def without(grid: Grid) -> Grid:
-            out = (self.star_k[grid.index] > limit_k) & ~self.unscreened(grid.index)
-            flux = grid.flux.copy()
-            place = np.flatnonzero(out)
-            width = flux.shape[2]
-            flux[place // width, :, place % width] = coolest
-            return Grid(flux, np.where(out, 0, grid.index))
-
-        return replace(self, coarse=without(self.coarse), middle=without(self.middle))
-
     def describe(self, index: int) -> dict[str, float | str]:
         """What a column is: its family, the parameters of its source, A_V and R_V."""
         family = max((one for one in self.families if one.first <= index), key=lambda one: one.first)
