@@ -4,11 +4,13 @@ from __future__ import annotations
 
 import pytest
 
-from tui.checks.flags import blend_shares, candidate_flags, flag_table, read_flag
+from tui.checks.flags import blend_shares, candidate_flags, flag_table, generic_column, read_flag
+from tui.data.archives import archive_texts
 from tui.data.load import bands
 from tui.data.load_flags import flag_rows
 from tui.errors import InputError
 from tui.model import Candidate, Measurement
+from tui.readers import parse_archives
 
 TABLE = flag_table(flag_rows())
 
@@ -64,6 +66,30 @@ def test_bits_are_said_one_by_one():
     assert [r.cause for r in read_flag("nuv_artifact", "GALEX_NUV", "6", TABLE)] == ["reflection", "reflection"]
 
 
+# II/125, note 6: one hexadecimal digit, 1 for 12 micron, 2 for 25, 4 for 60, 8 for 100; its example is A = 25 and 100.
+def test_a_hexadecimal_digit_holds_a_bit_for_each_iras_band():
+    said = {n: [r.cause for r in read_flag("confuse", f"IRAS{n}", "A", TABLE)] for n in (12, 25, 60, 100)}
+    assert said == {12: [], 25: ["confusion"], 60: [], 100: ["confusion"]}
+    assert read_flag("disc", "IRAS12", "1", TABLE)[0].cause == "flux differs between scans"
+    assert read_flag("disc", "IRAS12", "f", TABLE)[0].severity == "suspicion"
+    assert meaning("hsdflag", "IRAS60", "0").cause == ""
+    assert read_flag("confuse", "IRAS12", "G", TABLE) == () == read_flag("confuse", "IRAS12", "11", TABLE)
+
+
+# GLIMPSEII.notes: a flag of 16385 is a poor pixel in the dark (1) and a corrected column (2^14).
+def test_glimpse_quality_is_a_sum_of_bits():
+    assert [r.cause for r in read_flag("sqf_4_5", "IRAC2", "16385", TABLE)] == ["bad pixels", "column pulldown"]
+
+
+def test_every_flag_column_of_an_archive_with_meanings_can_be_met():
+    """Rows about columns that no archive table reads would never speak: SEIP has no m1_softsatflag, for one."""
+    entries = [entry for archive in parse_archives(archive_texts()) for entry in archive.entries]
+    met = {name for entry in entries if entry.role == "fact" for name in entry.targets}
+    met |= {generic_column(entry.columns[0], band) for entry in entries if entry.role == "flag" for band in entry.targets}
+    made = {"flag", *(f"{letter}_{word}_share" for letter in ("bp", "rp") for word in ("blended", "contaminated"))}
+    assert [row["column"] for row in flag_rows() if not set(row["column"].split()) & (met | made)] == []
+
+
 def test_long_words_keep_their_bits():
     # SDSS flags are 64 bits: EDGE is bit 2 and a double would lose it beside bit 62
     (reading,) = read_flag("flags_r", "SDSS_r", str(2**62 + 4), TABLE)
@@ -77,7 +103,26 @@ def test_long_words_keep_their_bits():
     [
         ("gQfPerfect", "PS1_g", "0.5", "masked pixels"),
         ("cirr1", "IRAS60", "7", "cirrus"),
-        ("fqual18", "AKARI_L18W", "1", "unconfirmed"),
+        ("fqual18", "AKARI_L18W", "0", "not detected"),  # II/297: 3 valid, 0 none; 1 and 2 are of the FIS catalogue
+        ("flags09", "AKARI_S9W", "1", "unconfirmed"),  # II/297, note 4: one hexadecimal digit
+        ("flags18", "AKARI_L18W", "8", "edge"),
+        ("posflg", "BT", "D", "close companion"),  # I/259, notes 2, 8, 11
+        ("posflg", "VT", "P", "close companion"),
+        ("pflag", "VT", "X", "position uncertain"),
+        ("tycho_prox", "BT", "1.9", "close companion"),
+        ("tycho_prox", "BT", "99.9", ""),
+        ("csf", "IRAC2", "6", "close neighbour"),  # GLIMPSEII.notes: 6 is within 0.5 arcsec, 0 none within 3
+        ("csf", "IRAC3", "0", ""),
+        ("sqf_3_6", "IRAC1", "4", "persistence"),  # there bit n counts 2^(n-1): 3 latent image, 20 wings
+        ("sqf_8_0", "IRAC4", str(2**19), "bright neighbour"),
+        ("i2_fluxflag", "IRAC2", "2", "bright neighbour"),  # column notes 2 and 3 of the SEIP source list
+        ("m1_fluxtype", "MIPS24", "3", "not detected"),
+        ("cc_12", "IRAS12", "A", ""),  # II/125, note 8: A is 100 %, N is 87 %
+        ("cc_12", "IRAS12", "N", "poor profile fit"),
+        ("ses2_60", "IRAS60", "1", "extended"),  # note 7
+        ("cirr3", "IRAS100", "55", "cirrus"),
+        ("qualityFlag", "PS1_i", "128", "poor stack"),
+        ("flags", "SDSS_g", str(0x40000), "saturation"),
         ("i1_softsatflag", "IRAC1", "1", "saturation"),
         ("fov_radius", "GALEX_NUV", "0.58", "detector rim"),
         ("type_z", "SDSS_z", "3", "extended"),

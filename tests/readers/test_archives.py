@@ -109,6 +109,65 @@ def test_allwise_limits_without_flux_and_snr_are_limits_at_two_sigma(one):
     )
 
 
+def test_allwise_z_is_a_flux_of_unknown_error_and_no_limit(one):
+    # VizieR II/328, note 8: where ph_qual is Z a magnitude without error is the true flux, not the 95 % limit.
+    _, band, _ = one("name,w3mpro,w3sigmpro,w4mpro,w4sigmpro,ph_qual\nA,10.1,,8.9,,AAZU\n")
+    assert not band["W3"].limit and "floor" in band["W3"].note and math.isnan(band["W3"].error_jy)
+    assert band["W4"].limit and band["W4"].nsigma == 2
+
+
+def test_allwise_vizier_names_of_saturation_and_moonlight(one):
+    # II/328: sat1 is w1sat, mW1 w1m, nW1 w1nm, covW1 w1cov, fmoon moon_lev
+    head = "name,W1mag,e_W1mag,sat1,nW1,mW1,covW1,W2mag,e_W2mag,W3mag,e_W3mag,W4mag,e_W4mag,fmoon\n"
+    _, band, contents = one(head + "A,6.1,0.04,0.12,11,12,12.3,6.2,0.02,6.2,0.02,6.1,0.05,0058\n")
+    assert band["W1"].flags == {"w1sat": "0.12", "w1nm": "11", "w1m": "12", "w1cov": "12.3", "moon_lev": "0"}
+    assert band["W4"].flags["moon_lev"] == "8" and contents.unknown_columns == []
+
+
+def test_spitzer_limits_stand_where_there_is_no_detection(one):
+    # Notes 6 and 11 of the source list: three-sigma limits in a column of their own, null where a flux is given.
+    head = "name,i1_f_ap1,i1_df_ap1,i1_f_ap1_3siglim,i1_fluxtype,m1_f_psf,m1_df_psf,m1_snr,m1_f_psf_3siglim\n"
+    _, band, contents = one(head + "A,,,41.5,3,2000,2,40,\n")
+    assert band["IRAC1"].limit and band["IRAC1"].nsigma == 3 and band["IRAC1"].flux_jy == pytest.approx(41.5e-6)
+    assert (band["IRAC1"].value, band["IRAC1"].unit) == (41.5, "uJy")
+    # Note 7: the formal error is too small, flux over signal-to-noise is to be taken.
+    assert band["MIPS24"].error_jy == pytest.approx(2000e-6 / 40) and not band["MIPS24"].limit
+    assert contents.unknown_columns == [] and contents.refused == []
+
+
+@pytest.mark.parametrize("cell", ["-3", "0", "nan", "", "-9999"])
+def test_a_limit_that_is_none_is_not_taken(one, cell):
+    _, band, _ = one(f"name,i1_f_ap1,i1_df_ap1,i1_f_ap1_3siglim,i2_f_ap1,i2_df_ap1\nA,,,{cell},50,1\n")
+    assert set(band) == {"IRAC2"}
+
+
+def test_a_bad_flux_is_not_replaced_by_a_limit(read, write):
+    contents = read(write("name,i1_f_ap1,i1_df_ap1,i1_f_ap1_3siglim\nA,four,1,40\n"))
+    assert contents.candidates[0].measurements == () and contents.refused[0].column == "i1_f_ap1"
+
+
+def test_tycho_original_names_and_close_pairs(one):
+    # format.txt of the CD-ROM: BT, e_BT, VT, e_VT, prox in 0.1 arcsec, posflg D for a pair.
+    candidate, band, _ = one("name,BT,e_BT,VT,e_VT,prox,posflg\nA,9.3,0.02,8.8,0.015,12,D\n")
+    assert set(band) == {"BT", "VT"} and band["BT"].flags == {"posflg": "D"} and band["BT"].source == "Tycho-2"
+    assert candidate.facts["tycho_prox"] == pytest.approx(1.2)
+
+
+def test_iras_flags_reach_their_bands(one):
+    head = "name,Fnu_12,e_Fnu_12,q_Fnu_12,CC_12,SES2_12,Fnu_25,e_Fnu_25,q_Fnu_25,Confuse,Disc,Var,Cirr3\n"
+    _, band, contents = one(head + "A,2.1,6,3,B,0,0.6,9,3,3,0,12,8.5\n")
+    assert band["IRAS12"].flags == {
+        "fqual_12": "3", "cc_12": "B", "ses2_12": "0", "confuse": "3", "disc": "0", "var": "12", "cirr3": "8.5",
+    }  # fmt: skip
+    assert contents.unknown_columns == []
+
+
+def test_iras_faint_source_names(one):
+    # II/156A writes Fnu12 for what II/125 calls Fnu_12.
+    _, band, _ = one("name,Fnu12,e_Fnu12,q_Fnu12,Fnu60,e_Fnu60,q_Fnu60\nA,0.15,15,3,0.2,10,1\n")
+    assert band["IRAS12"].error_jy == pytest.approx(0.0225) and band["IRAS60"].limit
+
+
 def test_without_a_column_of_errors_nothing_is_called_a_limit(one):
     _, band, contents = one("name,w1mpro,w2mpro\nA,8.9,9.0\n")
     assert not band["W1"].limit and "floor" in band["W1"].note

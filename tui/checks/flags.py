@@ -12,11 +12,12 @@ from tui.errors import InputError
 from tui.model import Candidate
 
 ANY_BAND = "*"
-TESTS = ("is", "above", "bit")
+TESTS = ("is", "above", "bit", "hex")
 BAND_LETTERS = {
     "W1": "w1", "W2": "w2", "W3": "w3", "W4": "w4", "J": "j", "H": "h", "Ks": "k",
     "PS1_g": "g", "PS1_r": "r", "PS1_i": "i", "PS1_z": "z", "PS1_y": "y",
 }  # fmt: skip
+HEX_DIGITS = frozenset("0123456789ABCDEF")
 LONGEST_WORD = 25  # digits of a word of flag bits; 64 bits need 20
 ANY_CASE = ("Gaia", "the table")  # catalogues whose codes are words
 EMPTY_TEXTS = ("", "nan", "none", "null", "--")
@@ -30,7 +31,7 @@ class FlagRow:
     catalogue: str
     columns: tuple[str, ...]  # names the column has in different services; "?" stands for the band's letter
     bands: tuple[str, ...]
-    test: str  # "is" a code, "above" a bound, or has the "bit"
+    test: str  # "is" a code, "above" a bound, has the "bit", or has it in one "hex" digit
     value: str
     meaning: str
     cause: str
@@ -165,6 +166,8 @@ def row_holds(row: FlagRow, text: str) -> bool:
         return text == row.value or (row.catalogue in ANY_CASE and text.lower() == row.value)
     if row.test == "bit":
         return text.isdecimal() and len(text) < LONGEST_WORD and bool(int(text) & int(row.value))
+    if row.test == "hex":
+        return text.upper() in HEX_DIGITS and bool(int(text, 16) & int(row.value))
     try:
         return float(text) > float(row.value)
     except ValueError:

@@ -17,6 +17,8 @@ The rows: `role,target,column,also,unit,how`. `column` is the archive's own name
 | counts          | band         | `zero Z`: one count is a source of magnitude Z |
 | counts_error    | band         |  |
 | limit           | bands        | `U at 1.645`: these letters, one a band, mark an upper limit at that many sigma |
+| detection       | bands        | `Z`: these letters, one a band, mark a detection of unknown error, no limit |
+| upper           | band         | `at 3`: an upper limit at that many sigma, in use where the value is empty |
 | flag            | bands        | `split`: one letter a band; else the whole text goes to each |
 | epoch           | bands        | `MJD` or `JD`: put before the number |
 | fact            | a fact       | `with C`: only where column C is there; `MJD`, `JD`: turned into a Julian year |
@@ -41,6 +43,8 @@ ROLES = (
     "counts",
     "counts_error",
     "limit",
+    "detection",
+    "upper",
     "flag",
     "epoch",
     "fact",

@@ -123,6 +123,7 @@ def measure(columns: BandColumns, table: RawTable, mapped_units: dict[str, str])
             set_errors(out, unit, sigma / counts, None, 1.0)
     _limits(out, columns, table)
     _below_the_limit(out, columns, table)
+    _uppers(out, columns, table, mapped_units)
     finish(out, columns.value)
     return out
 
@@ -190,6 +191,9 @@ def _below_the_limit(out: Values, columns: BandColumns, table: RawTable) -> None
     lost = out.present & np.isnan(out.error_jy) & ~out.limit & ~out.bad_rows(columns.error)
     if columns.limit_flag is not None:  # the flag says which are limits: others are detections without an error
         lost &= np.array([not letter for letter in letters_of(columns.limit_flag, table)], dtype=bool)
+    if columns.sure_flag is not None:
+        sure = set(columns.sure_letters)
+        lost &= np.array([letter not in sure for letter in letters_of(columns.sure_flag, table)], dtype=bool)
     if columns.counts:
         lost = _from_counts(out, columns, table, lost | ~out.present)
     if columns.null_error is None or not (columns.error or columns.over_error):
@@ -229,6 +233,26 @@ def _from_snr(out: Values, columns: BandColumns, table: RawTable, lost: np.ndarr
     for row in np.flatnonzero(found).tolist():
         out.note[row] = FROM_SNR
     return lost & ~found
+
+
+def _uppers(out: Values, columns: BandColumns, table: RawTable, mapped_units: dict[str, str]) -> None:
+    """Limits of a column of their own, in rows where the band has no value and no bad cell."""
+    if not columns.upper:
+        return
+    column = table.columns[columns.upper]
+    level, bad = numbers(column, SENTINELS)
+    unit = scale(
+        unit_of(column, columns.upper_unit, mapped_units.get(columns.upper, "")), columns.band, is_mag=columns.is_mag
+    )
+    other = start(level, bad, columns.upper, unit)
+    used = other.present & ~out.present & ~out.bad_rows(columns.value)
+    out.bad.update(other.bad)
+    out.flux_jy[used], out.value[used] = other.flux_jy[used], other.value[used]
+    out.nsigma[used] = columns.upper_nsigma
+    out.limit |= used
+    out.present |= used
+    for row in np.flatnonzero(used).tolist():
+        out.unit[row] = other.unit[row]
 
 
 def finish(out: Values, column: str) -> None:

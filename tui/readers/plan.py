@@ -38,6 +38,11 @@ class BandColumns:
     limit_flag: FlagColumn | None = None
     limit_letters: str = ""
     limit_nsigma: float = 2.0
+    sure_flag: FlagColumn | None = None  # says which values without an error are detections all the same
+    sure_letters: str = ""
+    upper: str = ""  # a column of limits, for rows without a value
+    upper_unit: str = ""
+    upper_nsigma: float = 3.0
     nsigma: str = ""
     null_error: float | None = None  # a null error means a limit at so many sigma
     epoch: str = ""

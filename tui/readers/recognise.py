@@ -182,18 +182,20 @@ def _native_band(band: Band, fields: Mapping[str, str], label: str) -> BandColum
 
 def _add_band(work: _Work, band: BandColumns) -> None:
     """Keep a band if its units can be understood; else refuse the column, with the mend."""
-    for column, planned, is_mag in ((band.value, band.unit, band.is_mag), (band.error, band.error_unit, True)):
+    for column, planned, is_mag in (
+        (band.value, band.unit, band.is_mag), (band.error, band.error_unit, True), (band.upper, band.upper_unit, True)
+    ):  # fmt: skip
         if not column:
             continue
         unit = work.units.get(column) or work.table.columns[column].unit or planned
         try:
-            if relative_error(unit) is None or column == band.value:
+            if relative_error(unit) is None or column != band.error:
                 scale(unit, band.band, is_mag=is_mag)
         except InputError as error:
             _refuse_column(work, column, str(error))
             if column == band.value:
                 return
-            band = replace(band, error="")
+            band = replace(band, error="") if column == band.error else replace(band, upper="")
     work.bands.append(band)
 
 
@@ -244,7 +246,7 @@ def _archive_band(band: Band, claim: Claim, entries: Sequence[Entry], label: str
     def column(role: str) -> str:
         return claim.find(first[role]) if role in first else ""
 
-    value, limit = first.get("value"), first.get("limit")
+    value, limit, sure, upper = (first.get(role) for role in ("value", "limit", "detection", "upper"))
     letters, _, level = limit.how.rpartition(" at ") if limit else ("", "", "2")
     return BandColumns(
         band=band,
@@ -262,6 +264,11 @@ def _archive_band(band: Band, claim: Claim, entries: Sequence[Entry], label: str
         limit_flag=_flag(band.name, claim, limit) if limit else None,
         limit_letters=letters.replace(" ", ""),
         limit_nsigma=float(level),
+        sure_flag=_flag(band.name, claim, sure) if sure else None,
+        sure_letters=sure.how if sure else "",
+        upper=column("upper") if value else "",
+        upper_unit=upper.unit if upper else "",
+        upper_nsigma=float(upper.option("at")) if upper else 3.0,
         null_error=claim.archive.null_error,
         epoch=column("epoch"),
         epoch_word=first["epoch"].how if "epoch" in first else "",
@@ -271,7 +278,7 @@ def _archive_band(band: Band, claim: Claim, entries: Sequence[Entry], label: str
 
 def _flag(band: str, claim: Claim, entry: Entry) -> FlagColumn:
     """A flag of one band; a split one, or a limit over several bands, is one letter of its text."""
-    is_split = entry.how == "split" or (entry.role == "limit" and len(entry.targets) > 1)
+    is_split = entry.how == "split" or (entry.role in ("limit", "detection") and len(entry.targets) > 1)
     if not is_split:
         return FlagColumn(entry.columns[0], claim.find(entry))
     return FlagColumn(entry.columns[0], claim.find(entry), entry.targets.index(band), len(entry.targets))
