@@ -8,7 +8,7 @@ import numpy as np
 
 from tui.checks import mixture
 from tui.model import Candidate, Measurement, Settings
-from tui.physics import generators as cone_sources
+from tui.physics import natural_sources as cone_sources
 from tui.physics.constants import MAG
 from tui.physics.extinction import extinction_curve
 from tui.physics.photometry import quadrature

@@ -9,8 +9,9 @@ import pytest
 
 from tests.bench.natural_mixtures import FOURTEEN, S1, Sky, in_order, observed, random_mixture
 from tui.checks import mixture
+from tui.checks.mixture_words import SPECTRUM_CAUTION
 from tui.model import Candidate, Evidence, Fit, Measurement, Settings, Spectrum, canonical_json
-from tui.physics.generators import drude
+from tui.physics.natural_sources import drude
 from tui.physics.planck import planck_jy
 from tui.workflow.templates import build
 
@@ -89,13 +90,14 @@ def test_a_fit_that_lies_in_the_cone_saves_the_solve(templates, sky):
     assert "at most 9.5" in found.facts["sentence"] and found.facts["witness"] == {}
 
 
-def test_only_fits_made_of_natural_thermal_sources_count_as_known():
-    def evidence(model, chi2):
-        return Evidence("dust", 1, True, fits=(Fit(model, chi2, 5, 0.5, 0.0, 0.0),))
+def test_only_the_star_alone_counts_as_known_since_it_is_always_fitted():
+    def evidence(kind, model, chi2):
+        return Evidence(kind, 1, True, fits=(Fit(model, chi2, 5, 0.5, 0.0, 0.0),))
 
-    known = mixture.known_from({"dust": evidence("star + dust", 8.0), "blend": evidence("star + galaxy", 2.0)})
-    assert known == 8.0
-    assert np.isnan(mixture.known_from({"blend": evidence("star + galaxy", 2.0)}))
+    found = {"star": evidence("star", "star", 30.0), "dust": evidence("dust", "star + dust", 8.0)}
+    assert mixture.known_from(found) == 30.0
+    assert np.isnan(mixture.known_from({"dust": found["dust"]}))
+    assert np.isnan(mixture.known_from({"star": Evidence("star", 1, None)}))
 
 
 def test_one_band_tests_nothing(templates):
@@ -132,7 +134,7 @@ def test_points_of_a_spectrum_stay_out_where_the_photospheres_have_no_lines(temp
     point = Measurement("spectrum:0.55", 1e-9, 1e-12)
     (found,) = mixture.assess([Candidate("c", (*star.measurements, point))], templates, Settings())
     assert found.adequate is True and found.facts["points"] == 14
-    assert found.cautions == (mixture.SPECTRUM_CAUTION,)
+    assert found.cautions == (SPECTRUM_CAUTION,)
 
 
 def test_no_real_star_is_refused(templates, real_stars):

@@ -8,7 +8,7 @@ from scipy.optimize import nnls
 from scipy.stats import chi2 as chi2_law
 
 from tui.physics.cone import Fluxes, certificate, mixture_bound, p_bound, whiten
-from tui.physics.generators import build_generators
+from tui.physics.natural_sources import build_generators
 from tui.physics.nnls_batch import nnls_batch
 from tui.physics.photometry import Quadrature
 from tui.physics.planck import ln_planck_jy

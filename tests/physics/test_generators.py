@@ -9,7 +9,8 @@ from astropy.modeling.models import BlackBody, Drude1D
 from dust_extinction.parameter_averages import G23
 
 from tui.data import load
-from tui.physics.generators import BLOCK, build_generators, drude, emissivity, refined, screen_grid
+from tui.physics.generators import BLOCK
+from tui.physics.natural_sources import build_generators, drude, emissivity, refined, screen_grid
 from tui.physics.photometry import quadrature
 
 NAMES = ("V", "J", "W1", "W3")
@@ -26,7 +27,7 @@ def generators():
 
 def find(generators, **wanted):
     """The column nearest to what is wanted."""
-    named = [one for one in generators.families if one.name == wanted["family"]]
+    named = [one for one in generators.layout.families if one.name == wanted["family"]]
     family = next(one for one in named if one.sources.max(initial=0.0) >= wanted.get("temperature", 0.0))
     if wanted["family"] == "planck":
         family = next(one for one in named if one.sources.max() <= 2000.0)  # the colder of the two ranges
@@ -83,8 +84,9 @@ def test_a_photosphere_is_its_template_dimmed_as_its_black_body(generators):
 
 
 def test_a_users_template_comes_in_behind_every_screen(generators):
-    family = generators.families[-1]
-    assert family.name == "flat" and len(family.screens) == len(generators.families[0].screens)
+    family = generators.layout.families[-1]
+    assert family.name == "template flat" and generators.added == ("flat",)
+    assert len(family.screens) == len(generators.layout.families[0].screens)
     assert generators.column(np.array(family.first)) == pytest.approx(np.ones(4), rel=1e-4)
 
 

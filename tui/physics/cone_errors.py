@@ -18,8 +18,6 @@ SETTLED_SHARE = 0.003  # this share of chi-square, where that is larger: far bey
 MONOTONE = 3  # from this pass on errors only grow, so that none swing
 LEAST_ERROR = 1e-12  # of the brightest band: a value of 0 without an error must not outweigh all else
 WIDEN = 1.25  # in temperature, the reach of each star's spread towards hotter ones
-LEAST_ERROR = 1e-12  # of the brightest band: a value of 0 without an error must not outweigh all else
-WIDEN = 1.25  # in temperature, the reach of each star's spread towards hotter ones
 FIRST_K = 6000.0  # temperature whose spread is taken before any mixture is known
 
 
@@ -73,20 +71,6 @@ def spread_flux(generators: Generators, errors: ErrorModel, index: IntArray, sca
     real = np.maximum(index, 0)
     star_k = np.where((index >= 0) & (scale > 0), generators.star_k[real], 0.0)
     return np.einsum("kmb,kmb,km->kb", generators.column(real), errors.spread_at(star_k), scale)
-
-
-def widened(spread: FloatArray, step: float) -> FloatArray:
-    """Spread over ln T, each value the largest down to T/WIDEN: dust makes a cool star pass for one so much hotter."""
-    count = int(round(np.log(WIDEN) / step)) + 1
-    padded = np.pad(spread, ((count - 1, 0), (0, 0)), mode="edge")
-    return np.lib.stride_tricks.sliding_window_view(padded, count, axis=0).max(axis=2)
-
-
-def cool_limits(errors: ErrorModel) -> list[float]:
-    """Temperatures (K) above which the spread of some band is lower by a third or more, the coolest first."""
-    before, after = errors.spread[:-1], errors.spread[1:]
-    steps = np.flatnonzero((after < before * (2 / 3)).any(axis=1))
-    return [float(np.exp(errors.ln_t[0] + step * errors.ln_t[1])) for step in steps]
 
 
 def widened(spread: FloatArray, step: float) -> FloatArray:

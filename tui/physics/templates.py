@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from fnmatch import fnmatchcase
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -21,6 +22,9 @@ from tui.physics.photosphere import (
 )
 from tui.physics.reddening import Reddening, expand_reddening
 from tui.physics.sources import SourceGrid, source_grid
+
+if TYPE_CHECKING:
+    from tui.physics.generators import Source
 
 VERSION = 1  # raise when the same tables would give other grids
 STAR_STEP = 0.01  # of ln T
@@ -67,6 +71,7 @@ class Templates:
     digest: str = ""
     broad: Templates | None = None  # the same source in the wide bands that spectra are compared in
     points: str = ""  # wavelength grid of the spectra whose points are among the bands
+    cone: Source | None = None  # where the mixture bound's columns are kept; None: they are built when asked for
 
     @property
     def names(self) -> tuple[str, ...]:

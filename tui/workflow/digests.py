@@ -17,7 +17,7 @@ RELEVANT = MappingProxyType(
 _SHARED = ("star", "dips")  # a check compares with the star alone, and asks for the dips too where they stand
 RESTS_ON = MappingProxyType(
     {"star": ("dips",), "instrument": _SHARED, "extinction": _SHARED, "blend": _SHARED, "dust": _SHARED}
-    | {"mixture": ("star", "extinction", "blend", "dust"), "dips": ()}
+    | {"mixture": ("star",), "dips": ()}
 )  # kind -> the other kinds whose code has a part in its numbers
 
 
