@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 from itertools import permutations
 
 import pytest
@@ -10,6 +11,7 @@ import pytest
 from tui.errors import InputError
 from tui.model import Measurement
 from tui.store.measurements import Row, Series, from_row, measurement_values
+from tui.store.measurements import measured as what_of
 
 
 def measured(flux, source="2MASS", epoch="", **more):
@@ -97,3 +99,13 @@ def test_the_digest_covers_every_field():
         measured(1.0, value=3.0),
     ]
     assert len({measurement_values(one)[3] for one in (base, *variants)}) == len(variants) + 1
+
+
+# IEEE 754: -0.0 and 0.0 are equal, and JSON writes them as two texts.
+@pytest.mark.parametrize("field", ["flux_jy", "value", "value_error", "error_jy"])
+def test_a_zero_has_no_sign(field):
+    plus, minus = (measured(1.0, value=9.1, value_error=0.1) for _ in range(2))
+    plus, minus = replace(plus, **{field: 0.0}), replace(minus, **{field: -0.0})
+    assert measurement_values(plus) == measurement_values(minus)
+    assert math.copysign(1.0, from_row(("2026", 1, *measurement_values(minus))).measurement.flux_jy) == 1.0
+    assert Series([row(1, plus)]).verdict(minus, measurement_values(minus)[3], what_of(minus)) == "same"

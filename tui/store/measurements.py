@@ -109,7 +109,7 @@ def measurement_values(measurement: Measurement) -> tuple[Any, ...]:
         finite(measurement.value),
         finite(measurement.value_error),
         measurement.unit,
-        float(measurement.flux_jy),
+        finite(measurement.flux_jy),
         finite(measurement.error_jy),
         int(measurement.limit),
         float(measurement.nsigma),
@@ -122,8 +122,12 @@ def measurement_values(measurement: Measurement) -> tuple[Any, ...]:
 
 
 def finite(value: float) -> float | None:
-    """A number, or None where it is NaN or infinite."""
-    return float(value) if math.isfinite(value) else None
+    """A number, a zero without sign, or None where it is NaN or infinite.
+
+    >>> finite(-0.0), finite(math.nan), finite(-2)
+    (0.0, None, -2.0)
+    """
+    return float(value) + 0.0 if math.isfinite(value) else None
 
 
 def short_digest(value: Any) -> str:
