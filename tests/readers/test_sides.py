@@ -10,7 +10,7 @@ from astropy import units as u
 
 from tui.data.load import band_aliases, bands
 from tui.errors import TableError
-from tui.readers import read_dips, read_spectra
+from tui.readers import read_dips, read_spectra, read_windows
 
 
 def dips(path, **options):
@@ -139,3 +139,56 @@ def test_a_column_map_gives_units(write):
     assert read_spectra(write("name,wavelength,flux,error\nA,1,2,1\n"), columns=column_map).rows["A"].flux_jy[
         0
     ] == pytest.approx(0.002)
+
+
+def light_curve(depths, event=False):
+    """A CSV text of 400 points in each band, dimmed from time 100 to 119, noise of half a percent."""
+    generator = np.random.default_rng(3)
+    rows = ["name,band,time,flux,error" + (",event" if event else "")]
+    for band, depth in depths.items():
+        for time in range(400):
+            inside = 100 <= time < 120
+            flux = 50.0 * (1 - (depth if inside else 0)) + generator.normal(0, 0.25)
+            rows.append(f"A,{band},{time},{flux:.5f},0.25" + ((",e1" if inside else ",") if event else ""))
+    return "\n".join(rows) + "\n"
+
+
+def windows_of(*paths):
+    return read_windows(paths, bands(), band_aliases())
+
+
+def test_windows_of_their_own_give_what_the_column_gives(write):
+    curves = write(light_curve({"g": 0.04, "i": 0.01}), "curves.csv")
+    table = write("name,event,start,end\nA,e1,100,119\n", "windows.csv")
+    windows, others = windows_of(curves, table)  # in either order
+    assert others == [str(curves)] and windows.refused == []
+    given = dips(write(light_curve({"g": 0.04, "i": 0.01}, event=True), "events.csv")).rows["A"]
+    assert dips(curves, windows=windows).rows["A"] == given and windows.unreached() == []
+
+
+def test_a_window_of_one_band_leaves_the_others_alone(write):
+    table = write("name,event,start,end,band\nA,,100,109,g\nA,,110,119,g\n")
+    found = dips(write(light_curve({"g": 0.04, "i": 0.01}), "c.csv"), windows=windows_of(table)[0]).rows["A"]
+    assert [(dip.event, dip.band) for dip in found] == [("1", "SDSS_g"), ("2", "SDSS_g")]
+
+
+def test_windows_that_cannot_be_taken(write):
+    text = "name,event,start,end,band\nA,e,119,100,\nA,e,x,3,\nA,e,,3,\nA,e,1,2,Q\n,e,1,2,\nA,late,900,901,\nB,e,1,2,\n"
+    windows, _ = windows_of(write(text))
+    assert sorted(entry.row for entry in windows.refused) == [1, 2, 3, 4, 5]
+    assert dips(write(light_curve({"g": 0.04}), "c.csv"), windows=windows).rows == {}
+    assert [entry.row for entry in windows.unreached()] == [6, 7]
+    assert "no light curve" in windows.unreached()[0].reason
+
+
+def test_light_curves_say_what_they_lack(write):
+    curves = write(light_curve({"g": 0.04}), "c.csv")
+    with pytest.raises(TableError, match="start, end"):
+        dips(curves)
+    windows, _ = windows_of(write("name,start[d],end[d]\nA,100,119\n", "w.csv"))
+    with pytest.raises(TableError, match="time"):
+        dips(write("name,band,flux\nA,g,1\n", "no_time.csv"), windows=windows)
+    with pytest.raises(TableError, match="one unit"):
+        dips(write("name,band,time[yr],flux\nA,g,1,1\n", "years.csv"), windows=windows)
+    contents = dips(write("name,band,time,flux\nA,g,,1\nA,g,x,1\nA,g,1,1\n", "gaps.csv"), windows=windows)
+    assert sorted((entry.row, entry.column) for entry in contents.refused) == [(1, "time"), (2, "time")]

@@ -110,3 +110,17 @@ def test_dips_neighbours_and_spectra_hang_on_candidates_of_the_queue(tmp_path, t
     assert (found.dips[0].depth, found.neighbours[0].separation_arcsec) == (0.1, 3.5)
     assert found.spectrum.flux_jy.tolist() == [0.010, 0.011]
     assert "nothing new" in load(path, [], sidecars=sidecars).sentence()
+
+
+def test_event_windows_may_be_a_table_of_their_own(tmp_path, table):
+    path = str(tmp_path / "q.db")
+    load(path, [table])
+    points = "".join(f"A 1,J,{day},{0.9 if 3 <= day <= 5 else 1.0},0.01\n" for day in range(12))
+    (tmp_path / "curves.csv").write_text("name,band,time,flux,error\n" + points)
+    (tmp_path / "windows.csv").write_text("name,event,start,end\nA 1,June,3,5\nA 1,July,40,50\n")
+    tables = tuple(str(tmp_path / name) for name in ("curves.csv", "windows.csv"))
+    done = load(path, [], sidecars=Sidecars(dips=tables))
+    assert [one.row for one in done.refused] == [2]  # no point in July
+    with closing(open_queue(path, write=False)) as connection:
+        (dip,) = get_candidate(connection, "A 1").dips
+    assert (dip.event, dip.band) == ("June", "J") and dip.depth == pytest.approx(0.1)

@@ -5,6 +5,7 @@ from tui.readers.columnmap import read_column_map
 from tui.readers.records import Refused, SideContents, TableContents
 from tui.readers.sides import read_dips, read_neighbours, read_spectra
 from tui.readers.tables import read_parts, read_table
+from tui.readers.windows import read_windows
 
 __all__ = [
     "Archive",
@@ -18,4 +19,5 @@ __all__ = [
     "read_parts",
     "read_spectra",
     "read_table",
+    "read_windows",
 ]

@@ -2,7 +2,8 @@
 
 A row is a point: `name, band, flux` or `mag`, `error`, `event`. Points whose `event` is empty lie outside all events
 and give the level; the points of an event give its depth as a mean over the window, which compares bands without
-favouring the noisier one as the deepest point would.
+favouring the noisier one as the deepest point would. In place of `event`, the windows may be a table of their own, to
+which each point's `time` is compared (`windows.py`).
 """
 
 from __future__ import annotations
@@ -19,23 +20,28 @@ from tui.readers.cells import quoted
 from tui.readers.native import band_name
 from tui.readers.records import SideContents
 from tui.readers.sidetable import SideTable
+from tui.readers.windows import Windows
 
 FEWEST_OUTSIDE = 3  # points outside all events, without which there is no level
 
 Groups = dict[tuple[str, str], dict[str, list[int]]]  # (name, band) -> event -> rows; "" outside all events
 
 
-def light_curve_dips(side: SideTable, bands: Mapping[str, Band], aliases: Mapping[str, str]) -> SideContents:
+def light_curve_dips(
+    side: SideTable, bands: Mapping[str, Band], aliases: Mapping[str, str], windows: Windows | None = None
+) -> SideContents:
     """The depths of all events.
 
     Raises:
-        TableError: the table has neither depths nor light curves.
+        TableError: the table has neither depths nor light curves, or nothing says where the events are.
     """
     key = "flux" if "flux" in side.columns else "mag"
-    if key not in side.columns or "event" not in side.columns:
-        raise TableError(side.table.path, "there is no column 'depth', nor flux (or mag) and event of light curves.")
+    known = windows is not None and windows.by_name
+    _check_columns(side, key, windows if known else None)
     flux, error = _fluxes(side, key)
     groups = _groups(side, bands, aliases, key, flux)
+    if known:
+        groups = _by_window(side, groups, windows)
     found: dict[str, list[Dip]] = defaultdict(list)
     for (name, band), events in groups.items():
         outside = events.pop("", [])
@@ -50,6 +56,40 @@ def light_curve_dips(side: SideTable, bands: Mapping[str, Band], aliases: Mappin
             else:
                 side.refuse(rows[0], key, f"the light curve gives no depth of {event} in {band} between -1 and 1")
     return SideContents({name: tuple(dips) for name, dips in found.items() if dips}, side.refused, side.unknown)
+
+
+def _check_columns(side: SideTable, key: str, windows: Windows | None) -> None:
+    path = side.table.path
+    if key not in side.columns or not ("event" in side.columns or windows or "time" in side.columns):
+        raise TableError(path, "there is no column 'depth', nor flux (or mag) and event of light curves.")
+    if windows is None and "event" not in side.columns:
+        mend = "add a column 'event', or give their windows (name, event, start, end) as another table of dips"
+        raise TableError(path, f"nothing says where the events of these light curves are: {mend}.")
+    if windows is not None and "event" not in side.columns and "time" not in side.columns:
+        raise TableError(path, "windows are given, but there is no column 'time' to compare with them.")
+    own = side.columns["time"].unit if "time" in side.columns else ""
+    if windows is not None and own and windows.unit and own.strip() != windows.unit.strip():
+        raise TableError(path, f"its times are in {own!a}, those of the windows in {windows.unit!a}: use one unit.")
+
+
+def _by_window(side: SideTable, groups: Groups, windows: Windows) -> Groups:
+    """The points without an event, put into the windows that hold their times."""
+    if "time" not in side.columns:
+        return groups
+    times = side.numbers("time")
+    for (name, band), events in groups.items():
+        if name not in windows.by_name:
+            continue
+        free = [row for row in events.pop("", []) if not math.isnan(times[row]) or _refuse_time(side, row)]
+        for row, event in zip(free, windows.events(name, band, times[free]), strict=True):
+            events[event].append(row)
+    return groups
+
+
+def _refuse_time(side: SideTable, row: int) -> bool:
+    if side.usable[row]:  # else its cell was refused already
+        side.refuse(row, "time", "no time is given")
+    return False
 
 
 def _fluxes(side: SideTable, key: str) -> tuple[FloatArray, FloatArray]:

@@ -22,6 +22,7 @@ from tui.readers.recognise import Words, recognise
 from tui.readers.records import Column, FactRow, RawTable, Refused, SideContents
 from tui.readers.sidetable import SideTable
 from tui.readers.units import parse_unit, relative_error
+from tui.readers.windows import Windows
 
 MOST_POINTS = 20_000  # points of one spectrum
 SEPARATIONS = ("separation_arcsec", "separation", "sep", "angDist", "r_arcsec")
@@ -34,18 +35,20 @@ def read_dips(
     aliases: Mapping[str, str],
     *,
     columns: str | os.PathLike[str] | None = None,
+    windows: Windows | None = None,
 ) -> SideContents:
     """Dips: `name, event, band, depth` and `error` (or `depth_error`), `epoch`; a row a band and event.
 
     A depth is a fraction of the flux lost, unless its unit says percent or mag. A table with `flux` or `mag` in place
-    of `depth` is one of light curves, a row a point, where `event` names the window that the point lies in.
+    of `depth` is one of light curves, a row a point, where `event` names the window that the point lies in, or
+    `time` is compared with the windows of tables of their own (`read_windows`).
     Raises:
         TableError: the file cannot be read or lacks a column.
     """
     optional = ("depth", "depth_error", "flux", "mag", "error", "event", "epoch", "time")
     side = SideTable(path, read_column_map(columns), ("name", "band"), optional)
     if "depth" not in side.columns:
-        return light_curve_dips(side, bands, aliases)
+        return light_curve_dips(side, bands, aliases, windows)
     depth = _fraction(side, "depth")
     key = "depth_error" if "depth_error" in side.columns else "error"
     error = _fraction(side, key, depth)

@@ -16,6 +16,7 @@ from tui.workflow.vocabulary import Vocabulary, packaged_vocabulary
 
 if TYPE_CHECKING:
     from tui.readers.records import SideContents
+    from tui.readers.windows import Windows
     from tui.workflow.loading import Loaded, Sidecars
 
 FIELDS = ("dips", "neighbours", "spectra")
@@ -31,26 +32,44 @@ def load_sidecars(
         TableError: a side table cannot be read at all.
     """
     bands = {**packaged_vocabulary().bands, **read_basis(connection).user_bands}
+    windows, dips = windows_apart(sidecars.dips, bands, columns)
     for kind in FIELDS:
-        for path in getattr(sidecars, kind):
-            found = read_side(kind, path, bands, columns, source)
+        for path in dips if kind == "dips" else getattr(sidecars, kind):
+            found = read_side(kind, path, bands, columns, source, windows)
             records = side_records(connection, kind, path, found, source, done)
             done.add(save_candidates(connection, records, utc_now()))
+    done.refused += [*windows.refused, *windows.unreached()]
     if sidecars.cutouts:
         from tui.workflow.pictures import load_cutouts
 
         load_cutouts(connection, sidecars.cutouts, bands, done)
 
 
+def windows_apart(
+    paths: tuple[str, ...], bands: Mapping[str, Band], columns: str | None
+) -> tuple[Windows, list[str]]:
+    """The event windows among the tables of dips, whatever their order, and the tables of dips that are left."""
+    from tui.readers.windows import Windows, read_windows
+
+    if len(paths) < 2:  # windows alone give no depth: such a table is read, and refused, as one of dips
+        return Windows(), list(paths)
+    return read_windows(paths, bands, packaged_vocabulary().aliases, columns=columns)
+
+
 def read_side(
-    kind: str, path: str, bands: Mapping[str, Band], columns: str | None, source: str | None
+    kind: str,
+    path: str,
+    bands: Mapping[str, Band],
+    columns: str | None,
+    source: str | None,
+    windows: Windows | None = None,
 ) -> SideContents:
     """What the reader makes of one side table."""
     from tui.readers import sides
 
     known: Vocabulary = packaged_vocabulary()
     if kind == "dips":
-        return sides.read_dips(path, bands, known.aliases, columns=columns)
+        return sides.read_dips(path, bands, known.aliases, columns=columns, windows=windows)
     if kind == "neighbours":
         return sides.read_neighbours(
             path, bands, known.aliases, known.facts, known.archives, columns=columns, source=source
