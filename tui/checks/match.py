@@ -26,6 +26,7 @@ class Catalogue:
     title: str
     epoch_yr: float  # mean epoch, where PREFIX_epoch is not given
     sigma_arcsec: float  # 1-sigma position error in each axis, where PREFIX_position_error is not given
+    instruments: tuple[str, ...]  # of the bands that the position was measured in
 
 
 # Epochs and typical position errors: Skrutskie et al. 2006, AJ 131, 1163; Cutri et al. 2013 (AllWISE, II.5);
@@ -33,14 +34,14 @@ class Catalogue:
 # Ishihara et al. 2010, A&A 514, A1; Spitzer's pointing as the handbooks give it; IRAS ellipses vary from source to
 # source, so that without its own error an IRAS position is taken to be good to 10 arcsec.
 CATALOGUES = (
-    Catalogue("twomass", "2MASS", 2000.0, 0.08),
-    Catalogue("wise", "AllWISE", 2010.5589, 0.10),
-    Catalogue("sdss", "SDSS", 2003.0, 0.06),
-    Catalogue("ps1", "Pan-STARRS", 2012.5, 0.03),
-    Catalogue("galex", "GALEX", 2007.0, 0.6),
-    Catalogue("spitzer", "Spitzer", 2006.0, 0.3),
-    Catalogue("akari", "AKARI", 2006.9, 1.0),
-    Catalogue("iras", "IRAS", 1983.5, 10.0),
+    Catalogue("twomass", "2MASS", 2000.0, 0.08, ("2MASS",)),
+    Catalogue("wise", "AllWISE", 2010.5589, 0.10, ("WISE",)),
+    Catalogue("sdss", "SDSS", 2003.0, 0.06, ("SDSS",)),
+    Catalogue("ps1", "Pan-STARRS", 2012.5, 0.03, ("PS1",)),
+    Catalogue("galex", "GALEX", 2007.0, 0.6, ("GALEX",)),
+    Catalogue("spitzer", "Spitzer", 2006.0, 0.3, ("IRAC", "MIPS")),
+    Catalogue("akari", "AKARI", 2006.9, 1.0, ("AKARI",)),
+    Catalogue("iras", "IRAS", 1983.5, 10.0, ("IRAS",)),
 )
 ASSUMED_MOTION_ERROR_MAS_YR = 0.5  # where the candidate's proper motion has no error
 

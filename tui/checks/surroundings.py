@@ -1,4 +1,4 @@
-"""Blend's context in one piece: neighbours, chance alignment, matches, signs of a second star."""
+"""Blend's context in one piece: neighbours, chance alignment, matches, centroids, signs of a second star."""
 
 from __future__ import annotations
 
@@ -7,6 +7,7 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
+from tui.checks.centroid import centroid_shifts, shift_sentences
 from tui.checks.chance import LEAST_EXCESS_SIGMA, chance_of, chance_sentences
 from tui.checks.match import catalogue_matches, match_sentences, nearest_source, worst_match
 from tui.checks.multiplicity import multiplicity
@@ -43,12 +44,14 @@ def surroundings(
     matches = catalogue_matches(candidate)
     multiple, multiple_said = multiplicity(candidate, settings)
     nearest = nearest_source(candidate, matches)
+    shifts = centroid_shifts(candidate, matches, anomaly_jy, pulls, bands)
     facts: dict[str, Any] = {
         "neighbours": len(candidate.neighbours),
         "neighbours_in_beam": max((leak.n_in_beam for leak in leaks), default=0),
         "neighbour_leaks": [leak.as_dict() for leak in leaks if leak.leak_jy > 0],
         "matches": [match.as_dict() for match in matches],
         **worst_match(matches),
+        "centroid_shifts": [shift.as_dict() for shift in shifts],
         **multiple,
     }
     if math.isfinite(nearest):
@@ -60,6 +63,7 @@ def surroundings(
         *beam_sentences(nearest, pulls, bands, leaks),
         *chance_sentences(chance, settings.n_searched),
         *match_sentences(matches),
+        *shift_sentences(shifts),
         *multiple_said,
     )
     return Surroundings(facts, said)
