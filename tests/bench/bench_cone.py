@@ -22,7 +22,7 @@ from scipy.stats import beta
 from tui.checks import mixture
 from tui.model import Candidate, Measurement, Settings
 from tui.physics.cone import Fluxes, certificate, mixture_bound
-from tui.physics.natural_sources import build_generators, drude
+from tui.physics.natural_sources import build_generators, drude, generators_of
 from tui.physics.photometry import Quadrature, quadrature
 from tui.physics.planck import planck_jy
 from tui.workflow.templates import build
@@ -198,7 +198,7 @@ def speed(templates, count):
     print("\nCPU time per candidate, one core, 14 bands")
     sky, rng = Sky(templates, in_order(templates, FOURTEEN)), np.random.default_rng(16)
     start = time.process_time()
-    mixture.build_for(templates)
+    generators_of(templates)
     print(f"generators built in {time.process_time() - start:.2f} s")
     fluxes, spreads = zip(*[random_mixture(rng, sky) for _ in range(min(count, 500))], strict=True)
     pivots = sky.local.pivot_um

@@ -20,8 +20,7 @@ from tui.model import Candidate, Evidence, FloatArray, Settings, Spectrum
 from tui.physics.cone import Bound, p_bound, whiten
 from tui.physics.cone_errors import ErrorModel, consistent_bound, widened
 from tui.physics.generators import Generators
-from tui.physics.natural_sources import GivenSpectrum, build_generators
-from tui.physics.photometry import is_narrow, quadrature
+from tui.physics.natural_sources import generators_of
 from tui.physics.problem import Problem, build_problem
 from tui.physics.spectral import is_point
 from tui.physics.templates import Templates
@@ -30,7 +29,6 @@ KIND = "mixture"
 VERSION = 2  # raise it whenever the same candidate could get other numbers
 ENOUGH = 0.1  # a mixture with p of at least this (or p_min, if larger) is not improved further
 CHUNK = 512  # candidates solved together
-NODES = 120  # quadrature nodes a band; 240 give the same to 2e-5
 PART_SHARE = 0.005  # smallest share of the light of a mixture's part that is listed
 INSIDE = "star"  # the kind of evidence whose fit is always there, and whose model is one of the cone's own sources
 BROAD = ("dwarfs", "planck")  # sources that do not know a star's lines
@@ -127,19 +125,7 @@ def generators_for(templates: Templates, names: tuple[str, ...]) -> Generators:
 
 @lru_cache(maxsize=2)
 def _built(templates: Templates) -> Generators:
-    return build_for(templates)
-
-
-def build_for(templates: Templates, user: Mapping[str, GivenSpectrum] | None = None) -> Generators:
-    """All columns through all bands of `templates`; most of a second.
-
-    Args:
-        user: name -> wavelengths (micron) and fluxes (Jy, at any scale) of the user's own natural sources.
-    """
-    rules = [quadrature(band, None if is_narrow(band) else NODES) for band in templates.bands]
-    star = templates.star
-    teff_k = np.exp(star.low + star.step * np.arange(star.ln_flux.shape[0]))
-    return build_generators(rules, teff_k, star.ln_flux, templates.law, user)
+    return generators_of(templates)
 
 
 def error_model(problem: Problem) -> ErrorModel:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
@@ -12,15 +13,21 @@ from tui.model import FloatArray
 from tui.physics.constants import MAG
 from tui.physics.extinction import R_V_RANGE, extinction_curve
 from tui.physics.generators import STAR_K, TEMPLATE, Family, Generators, Layout
-from tui.physics.photometry import Quadrature
+from tui.physics.photometry import Quadrature, is_narrow, quadrature
 from tui.physics.planck import ln_planck_jy
+
+if TYPE_CHECKING:
+    from tui.physics.templates import Templates
 
 NIL = 1e-25  # a column's flux in a band, over its largest, that counts as nothing (float32 holds 1e-38)
 AV_MAX = 40.0  # mag; behind more, a star's light through any band to 5 micron is that of a hotter or redder source
 HOT_K, COLD_K = (STAR_K, 100000.0), (20.0, STAR_K)  # Planck sources, in two ranges of one family
 MODIFIED_BETA, MODIFIED_UM = (0.5, 2.0), (1.0, 300.0)  # emissivity min(1, um/wave)^beta of dust grains
 FEATURE_UM, FEATURE_WIDTH, FEATURE_K = (3.2, 40.0), (0.02, 0.3), (120.0, 900.0)  # minerals and PAH
+NODES = 120  # quadrature nodes a band; 240 give the same to 2e-5
 TEMPLATES_MAX = 200  # a longer list of templates, in order of temperature, is thinned evenly to at most this many
+
+GivenSpectrum = tuple[FloatArray, FloatArray]  # wavelength in micron, flux density in Jy at any scale
 
 
 def refined(low: float, high: float, coarse: int, *, log: bool = True) -> FloatArray:
@@ -91,6 +98,18 @@ def _grid(*axes: FloatArray) -> tuple[FloatArray, NDArray[np.int64]]:
     return values, level.reshape(-1, len(axes)).min(axis=1)
 
 
+def generators_of(templates: Templates, user: Mapping[str, GivenSpectrum] | None = None) -> Generators:
+    """All columns through all bands of `templates`; a quarter of a second or more.
+
+    Args:
+        user: the user's own natural sources, by name.
+    """
+    rules = [quadrature(band, None if is_narrow(band) else NODES) for band in templates.bands]
+    star = templates.star
+    teff_k = np.exp(star.low + star.step * np.arange(star.ln_flux.shape[0]))
+    return build_generators(rules, teff_k, star.ln_flux, templates.law, user)
+
+
 def build_generators(
     rules: Sequence[Quadrature],
     teff_k: FloatArray,
@@ -126,7 +145,6 @@ def build_generators(
     return _assemble(parts)
 
 
-GivenSpectrum = tuple[FloatArray, FloatArray]  # wavelength in micron, flux density in Jy at any scale
 Screens = tuple[FloatArray, NDArray[np.int64]]
 Shape = Callable[..., FloatArray]  # (wave_um, parameter, ...) -> (N, nodes)
 
