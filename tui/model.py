@@ -198,6 +198,7 @@ class Settings:
     common: Mapping[str, float] = field(default_factory=dict)  # instrument -> common error, fraction
     ruwe_max: float = 1.4
     n_searched: int | None = None
+    templates: str = ""  # natural sources of the user's in the mixture bound, by their digest in the queue; empty: none
 
 
 def plain(value: Any) -> Any:

@@ -76,6 +76,13 @@ def photosphere(text: str) -> str:
     raise ValueError("dwarfs, planck, or grid DIR")
 
 
+def templates(text: str) -> str:
+    """Where the queue keeps the spectra of a folder."""
+    if re.fullmatch(r"templates:[0-9a-f]{16,64}( .*)?", text):
+        return text
+    raise ValueError("a folder of spectra")
+
+
 def r_v(text: str) -> str:
     """free, or a number in the range of the law."""
     if text == "free":
@@ -105,6 +112,7 @@ PARSERS: Mapping[str, Callable[[str], Any]] = {
     "source_floor": between(0, 1, low_too=True),
     "ruwe_max": between(0, 1000),
     "n_searched": whole(0),
+    "templates": templates,
 }
 fraction = between(0, 1, low_too=True)
 

@@ -11,7 +11,7 @@ from tui.model import CHECKS, Settings, digest
 _FITS = ("photosphere", "law", "r_v", "av_prior", "p_min", "source_floor", "floors", "common")
 RELEVANT = MappingProxyType(
     dict.fromkeys(CHECKS, (*_FITS, "ruwe_max"))
-    | {"blend": (*_FITS, "ruwe_max", "n_searched"), "mixture": _FITS, "dips": (*_FITS, "ruwe_max")}
+    | {"blend": (*_FITS, "ruwe_max", "n_searched"), "mixture": (*_FITS, "templates"), "dips": (*_FITS, "ruwe_max")}
 )  # kind -> the settings that can change its numbers; the rules of consensus are not among them
 
 _SHARED = ("star", "dips")  # a check compares with the star alone, and asks for the dips too where they stand

@@ -1,8 +1,8 @@
-"""The user's photosphere spectra: a folder of FITS, ECSV or two-column files, one spectrum each.
+"""The user's spectra, of photospheres or other sources: a folder of FITS, ECSV or two-column files, one spectrum each.
 
-A file says its effective temperature in its header or its name (see `grid_names`), its wavelengths' and fluxes' units
-in its columns or header, and gives the flux at the star's surface, per wavelength or per frequency, or `scale`: what
-its numbers are to be multiplied by to become that.
+A file gives the units of wavelength and flux (per wavelength or per frequency) in its columns or header. A photosphere's
+says its effective temperature in its header or its name (see `grid_names`) and gives the flux at the star's surface, or
+`scale`: what its numbers are to be multiplied by to become that.
 """
 
 from __future__ import annotations
@@ -11,7 +11,7 @@ import re
 import warnings
 from collections.abc import Callable, Mapping
 from pathlib import Path
-from typing import Any
+from typing import Any, TypeVar
 
 import numpy as np
 
@@ -33,33 +33,52 @@ HOLE, HOLE_LN = 10.0, 0.01  # a step this many times both of its neighbours', an
 SPEED_OF_LIGHT = 299_792_458.0  # m/s
 
 
+Shape = tuple[Path, FloatArray, FloatArray]  # file, wavelength in micron, flux density in Jy
+Made = TypeVar("Made")
+Maker = Callable[[Path, Mapping[str, Any], Any, Any], Made]  # of file, header, wavelengths and fluxes with units
+
+
 def read_spectra(folder: str) -> list[GivenSpectrum]:
-    """All spectra of a folder, in order of file name.
+    """All photospheres of a folder, in order of file name.
 
     Raises:
         TableError: no such folder; a file without temperature, unit or sense; far too many points.
     """
+    return read_folder(folder, given_spectrum, lambda one: one.spectrum.wave_um.size)
+
+
+def read_shapes(folder: str) -> list[Shape]:
+    """All spectra of a folder, of any source at any scale, in order of file name.
+
+    Raises:
+        TableError: no such folder; a file without unit or light, or with gaps; far too many points.
+    """
+    return read_folder(folder, given_shape, lambda one: one[1].size)
+
+
+def read_folder(folder: str, made: Maker[Made], points: Callable[[Made], int]) -> list[Made]:
+    """What is made of each file of a folder, in order of file name. TableError as `read_spectra` says."""
     place = Path(folder).expanduser()
     if not place.is_dir():
         raise TableError(folder, "there is no such folder of spectra.")
-    found: list[GivenSpectrum] = []
+    found: list[Made] = []
     for path in sorted(path for path in place.iterdir() if path.suffix.lower() in ENDINGS):
-        found.append(read_spectrum(path))
-        if sum(one.spectrum.wave_um.size for one in found) > MOST_POINTS:
+        found.append(read_file(path, made))
+        if sum(map(points, found)) > MOST_POINTS:
             raise TableError(folder, f"the spectra hold more than {MOST_POINTS} points; bin them to bands' needs.")
     if not found:
         raise TableError(folder, f"there is no spectrum in it (a file that ends in {' '.join(ENDINGS)}).")
     return found
 
 
-def read_spectrum(path: Path) -> GivenSpectrum:
-    """One file. TableError, naming it, where it cannot be used."""
+def read_file(path: Path, made: Maker[Made]) -> Made:
+    """What is made of one file. TableError, naming it, where it cannot be used."""
     reader: Callable[[Path], tuple[Mapping[str, Any], Any, Any]] = read_table if is_table(path) else read_text
     try:
         with warnings.catch_warnings():
             warnings.simplefilter("ignore")
             header, wave, flux = reader(path)
-            return given_spectrum(path, header, wave, flux)
+            return made(path, header, wave, flux)
     except TableError:
         raise
     except (OSError, ValueError, TypeError, KeyError, IndexError, MemoryError, OverflowError) as error:
@@ -137,6 +156,14 @@ def given_spectrum(path: Path, header: Mapping[str, Any], wave: Any, flux: Any) 
             "or in the header the scale that makes it so.",
         )
     return GivenSpectrum(path, SurfaceSpectrum(told.teff_k, wave_um, flux_jy), told.logg, told.mh)
+
+
+def given_shape(path: Path, header: Mapping[str, Any], wave: Any, flux: Any) -> Shape:
+    """Wavelengths and fluxes in micron and Jy; what else the header tells does not matter."""
+    wave_um, flux_jy = in_order(path, *in_own_units(path, wave, flux))
+    if not flux_jy.any():
+        raise TableError(str(path), "it has no light at any wavelength.")
+    return path, wave_um, flux_jy
 
 
 def in_own_units(path: Path, wave: Any, flux: Any) -> tuple[FloatArray, FloatArray]:

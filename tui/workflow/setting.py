@@ -7,7 +7,7 @@ from contextlib import closing
 
 from tui.model import Settings
 from tui.store.connect import open_queue
-from tui.store.settings import read_settings, setting_history, write_setting
+from tui.store.settings import DEFAULT, read_settings, setting_history, write_setting
 from tui.workflow.clock import utc_now
 
 MEANINGS = {
@@ -22,6 +22,7 @@ MEANINGS = {
     "source_floor": "spread of stars around the photosphere source, fraction; empty: its own table",
     "ruwe_max": "RUWE above which a parallax is a limit only",
     "n_searched": "stars searched to make this queue; empty: not known",
+    "templates": "folder of spectra that the mixture bound takes for natural sources too, or default: none",
 }
 
 RULES = ("quorum", "agree_share", "walk_all")  # of consensus: no evidence rests on them
@@ -59,7 +60,7 @@ def write(path: str, name: str, value: str, handle: str | None) -> str:
 
     Raises:
         SettingError: no such setting, or a value out of its range.
-        TableError: the spectra of `grid DIR` cannot be used.
+        TableError: the spectra of `grid DIR`, or of the templates' folder, cannot be used.
         HandleError: nobody joined under `handle`.
     """
     from tui.workflow.session import reviewer_named
@@ -70,9 +71,13 @@ def write(path: str, name: str, value: str, handle: str | None) -> str:
             from tui.workflow.grid_photosphere import keep_grid
 
             value = keep_grid(connection, value.removeprefix("grid ").strip())
+        if name == "templates" and value.strip() != DEFAULT:
+            from tui.workflow.own_templates import KEY, keep_templates
+
+            value = value if KEY.match(value) else keep_templates(connection, value.strip())
         write_setting(connection, name, value, utc_now(), by)
         now = dict(row[:2] for row in overview_rows(read_settings(connection)))
-    text = f"{name} is now {now.get(name, 'the default')}."
+    text = f"{name} is now {now.get(name) or 'the default'}."
     if name in RULES:
         return f"{text} States and outcomes follow it."
     return f"{text} Evidence that rests on it is outdated until: plainlight assess {path}"

@@ -4,29 +4,30 @@ from __future__ import annotations
 
 import contextlib
 import hashlib
-import os
-import tempfile
 import threading
 from collections import OrderedDict
 from collections.abc import Mapping
-from functools import cache
 from dataclasses import replace
+from functools import cache
 from importlib.resources import files
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from tui.errors import SettingError
 from tui.model import Band, Settings, digest
+from tui.workflow.cache_file import cache_folder, write_cached
 from tui.workflow.grid_file import DamagedError, pack, unpack
 
 if TYPE_CHECKING:
+    from tui.physics.natural_sources import GivenSpectrum
     from tui.physics.photosphere import Photosphere
     from tui.physics.templates import Templates
 
 KEPT_IN_MEMORY = 4
 KEPT_ON_DISK = 24
 _GRID_SETTINGS = ("photosphere", "law", "r_v", "source_floor", "floors")
-_memory: OrderedDict[str, Templates] = OrderedDict()
+_CONE_SETTINGS = ("photosphere", "law", "templates")
+_memory: OrderedDict[tuple[str, str], Templates] = OrderedDict()
 _lock = threading.Lock()
 
 
@@ -36,43 +37,67 @@ def templates_for(settings: Settings, user_bands: Mapping[str, Band] | None = No
     Safe under threads and under several processes; a damaged file is built again.
 
     Args:
-        queue: path of the queue that carries the user's spectra, where `photosphere` names some.
+        queue: path of the queue that carries the user's spectra, where `photosphere` or `templates` names some.
 
     Raises:
-        SettingError: R_V is neither a number nor `free`.
+        SettingError: R_V is neither a number nor `free`; the queue lacks the spectra.
         TemplateError: there is no such photosphere source.
     """
-    key = cache_key(settings, user_bands or {})
+    bands = user_bands or {}
+    key, cone = cache_key(settings, bands), cone_key(settings, bands)
     with _lock:
-        found = _memory.get(key)
+        found = _memory.get((key, cone))
         if found is None:
-            found = read_cached(key) or keep(key, build(settings, user_bands or {}, queue))
-            _memory[key] = found
-        _memory.move_to_end(key)
+            found = read_cached(key) or keep(key, build(settings, bands, queue))
+            found = _memory[key, cone] = with_cone(found, cone, settings, queue)
+        _memory.move_to_end((key, cone))
         while len(_memory) > KEPT_IN_MEMORY:
             _memory.popitem(last=False)
     return found
+
+
+def with_cone(templates: Templates, key: str, settings: Settings, queue: str) -> Templates:
+    """The grids, knowing where the mixture bound's columns are kept."""
+    from tui.workflow.cone_file import KeptCone
+
+    return replace(templates, cone=KeptCone(key, templates, user_spectra(settings.templates, queue)))
+
+
+def user_spectra(setting: str, queue: str) -> dict[str, GivenSpectrum]:
+    """The natural sources that a queue adds to those of the mixture bound, by name."""
+    if not setting:
+        return {}
+    from tui.store.connect import open_queue
+    from tui.workflow.own_templates import kept_templates
+
+    with contextlib.closing(open_queue(queue, write=False)) as connection:
+        return kept_templates(connection, setting)
 
 
 def templates_digest(settings: Settings, user_bands: Mapping[str, Band] | None = None) -> str:
     """Digest of all that the grids are made of, the same on every machine; needs no grids."""
     from tui.physics.templates import VERSION
 
-    return digest(
-        {
-            "version": VERSION,
-            "tables": packaged_digest(),
-            "bands": {
-                name: [getattr(band, part) for part in Band.__slots__] for name, band in (user_bands or {}).items()
-            },
-            "settings": {name: getattr(settings, name) for name in _GRID_SETTINGS},
-        }
-    )
+    return digest({"version": VERSION, **made_of(settings, _GRID_SETTINGS, user_bands or {})})
+
+
+def made_of(settings: Settings, names: tuple[str, ...], user_bands: Mapping[str, Band]) -> dict[str, Any]:
+    """What grids are made of: tables, the user's bands and some settings."""
+    return {
+        "tables": packaged_digest(),
+        "bands": {name: [getattr(band, part) for part in Band.__slots__] for name, band in user_bands.items()},
+        "settings": {name: getattr(settings, name) for name in names},
+    }
 
 
 def cache_key(settings: Settings, user_bands: Mapping[str, Band]) -> str:
     """Name of the grids in the cache: it changes with tables, settings and the code that builds."""
     return digest([templates_digest(settings, user_bands), code_digest()])[:40]
+
+
+def cone_key(settings: Settings, user_bands: Mapping[str, Band]) -> str:
+    """Name of the mixture bound's columns in the cache; floors and R_V have no part in them."""
+    return digest([made_of(settings, _CONE_SETTINGS, user_bands), code_digest()])[:40]
 
 
 @cache
@@ -163,16 +188,6 @@ def fixed_r_v(settings: Settings) -> float | None:
         raise SettingError("r_v", f"{settings.r_v!r} is neither a number nor free.") from error
 
 
-def cache_folder() -> Path:
-    """Where grids are kept: `PLAINLIGHT_CACHE`, else the user's cache folder."""
-    named = os.environ.get("PLAINLIGHT_CACHE")
-    if named:
-        return Path(named).expanduser()
-    import platformdirs
-
-    return platformdirs.user_cache_path("plainlight")
-
-
 def cached_path(key: str) -> Path:
     """The file that holds the grids of one key."""
     return cache_folder() / f"grids-{key}.bin"
@@ -194,24 +209,5 @@ def read_cached(key: str) -> Templates | None:
 
 def keep(key: str, templates: Templates) -> Templates:
     """Write grids to the cache, whole or not at all; a cache that cannot be written costs only time."""
-    target = cached_path(key)
-    with contextlib.suppress(OSError):
-        target.parent.mkdir(parents=True, exist_ok=True)
-        handle, scratch = tempfile.mkstemp(prefix=".grids-", dir=target.parent)
-        try:
-            with os.fdopen(handle, "wb") as stream:
-                stream.write(pack(templates))
-            os.replace(scratch, target)
-        except BaseException:
-            with contextlib.suppress(OSError):
-                os.unlink(scratch)
-            raise
-        make_room(target.parent)
+    write_cached(cached_path(key), [pack(replace(templates, cone=None))], KEPT_ON_DISK)
     return templates
-
-
-def make_room(folder: Path) -> None:
-    """Remove all but the newest grids."""
-    kept = sorted(folder.glob("grids-*.bin"), key=lambda path: path.stat().st_mtime, reverse=True)
-    for path in kept[KEPT_ON_DISK:]:
-        path.unlink(missing_ok=True)
