@@ -8,9 +8,9 @@ import numpy as np
 import pytest
 
 from tests.bench.natural_mixtures import FOURTEEN, S1, Sky, in_order, observed, random_mixture
-from tui.checks import mixture
+from tui.checks import assess, assess_all, mixture
 from tui.checks.mixture_words import SPECTRUM_CAUTION
-from tui.model import Candidate, Evidence, Fit, Measurement, Settings, Spectrum, canonical_json
+from tui.model import KINDS, Candidate, Evidence, Fit, Measurement, Settings, Spectrum, canonical_json
 from tui.physics.natural_sources import drude
 from tui.physics.planck import planck_jy
 from tui.workflow.templates import build
@@ -112,6 +112,24 @@ def test_order_and_mates_do_not_matter(templates, sky):
     alone = [mixture.assess([star], templates, Settings())[0] for star in stars]
     assert [one.adequate for one in together] == [False, True, None] == [one.adequate for one in alone]
     assert together[0].facts["chi2"] == pytest.approx(alone[0].facts["chi2"], rel=0.01)
+
+
+def test_what_else_is_asked_for_changes_nothing(templates, sky, tables):
+    warm = sky.seen(lambda wave: planck_jy(wave, 300.0))
+    dusty = sky.star(5772.0) + 4.0 * sky.star(5772.0)[-1] * warm / warm[-1]
+    fluxes = (dusty, notched(sky), sky.star(4000.0), sky.star(6500.0, 1.5))
+    stars = [plain_candidate(sky, flux) for flux in fluxes]
+    alone = assess("mixture", stars, templates, Settings(), tables)
+    beside = [one["mixture"] for one in assess_all(stars, templates, Settings(), KINDS, tables)]
+    assert alone == beside and [one.adequate for one in alone] == [True, False, True, True]
+
+
+@pytest.mark.parametrize("flux_jy", [1e-25, 1e-22, 1e10])
+def test_how_faint_a_star_is_does_not_matter_where_its_errors_are_as_faint(templates, sky, flux_jy):
+    flux = notched(sky) / notched(sky).max()
+    (plain,) = mixture.assess([plain_candidate(sky, flux)], templates, Settings())
+    (faint,) = mixture.assess([plain_candidate(sky, flux * flux_jy)], templates, Settings())
+    assert faint.facts["chi2"] == pytest.approx(plain.facts["chi2"], rel=1e-3) and faint.adequate is False
 
 
 def test_a_limit_can_be_what_refuses(templates, sky):

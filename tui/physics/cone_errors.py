@@ -8,7 +8,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from tui.model import FloatArray
-from tui.physics.cone import EMPTY, BoolArray, Bound, Fluxes, certificate, mixture_bound, p_bound, whiten
+from tui.physics.cone import EMPTY, BoolArray, Bound, Fluxes, certificate, mixture_bound, p_bound, whiten, wide
 from tui.physics.generators import Generators
 from tui.physics.pricing import IntArray
 
@@ -202,8 +202,7 @@ class _Work:
         """Note what `new` says of its `places` as that of `rows`."""
         old = self.bound
         width = max(old.index.shape[1], new.index.shape[1])
-        index = np.pad(old.index, ((0, 0), (0, width - old.index.shape[1])), constant_values=EMPTY)
-        scale = np.pad(old.scale, ((0, 0), (0, width - old.scale.shape[1])))
+        index, scale = wide(old.index, width, EMPTY), wide(old.scale, width, 0.0)
         index[rows], scale[rows] = EMPTY, 0.0
         index[rows[:, None], np.arange(new.index.shape[1])] = new.index[places]
         scale[rows[:, None], np.arange(new.index.shape[1])] = new.scale[places]
