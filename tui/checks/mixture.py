@@ -231,9 +231,10 @@ class _Solved:
 
     def dark(self, bands: tuple[str, ...]) -> tuple[str, ...]:
         """The caution that some templates of the user are dark in some bands, where they are."""
-        found = {name: [band for band in bands if band in dark] for name, dark in self.generators.dark(self.names).items()}
-        found = {name: dark for name, dark in found.items() if dark}
-        return (dark_caution(found),) if found else ()
+        dark = self.generators.dark(self.names).items()
+        met = {name: [band for band in bands if band in missed] for name, missed in dark}
+        met = {name: missed for name, missed in met.items() if missed}
+        return (dark_caution(met),) if met else ()
 
 
 def witness(names: Sequence[str], weights: FloatArray, covariance: FloatArray) -> dict[str, float]:

@@ -1,7 +1,7 @@
 """The mixture bound's columns in the user's cache: one file, read band by band, each band checked by its digest.
 
-Layout, little-endian: MAGIC, length of the head (8 bytes), the head as `grid_file.pack` writes it, zeros to a multiple of
-ALIGNED, then a row of float32 per band, each as long as there are columns.
+Layout, little-endian: MAGIC, length of the head (8 bytes), the head as `grid_file.pack` writes it, zeros to a multiple
+of ALIGNED, then a row of float32 per band, each as long as there are columns.
 """
 
 from __future__ import annotations
@@ -107,7 +107,8 @@ def read_rows(path: Path, names: Sequence[str]) -> tuple[Layout, dict[str, Row]]
         if stream.read(len(MAGIC)) != MAGIC:
             raise DamagedError("no columns, or damaged")
         size = int.from_bytes(stream.read(_LENGTH), "little")
-        head = unpack(stream.read(min(size, path.stat().st_size)), {one.__name__: one for one in (Head, Layout, Family)})
+        types = {one.__name__: one for one in (Head, Layout, Family)}
+        head = unpack(stream.read(min(size, path.stat().st_size)), types)
         if not isinstance(head, Head):
             raise DamagedError("something else than columns")
         first = -(-(len(MAGIC) + _LENGTH + size) // ALIGNED) * ALIGNED
