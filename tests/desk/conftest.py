@@ -1,386 +1,16 @@
-"""Queues in memory for the desk's tests, one hostile and one of a million rows; plain-text pictures of screens."""
+"""Sessions, a desk under a pilot, and plain-text pictures of screens for the desk's tests."""
 
 from __future__ import annotations
 
 import asyncio
-import math
 import os
-import threading
-from array import array
 from pathlib import Path
-from types import MappingProxyType, SimpleNamespace
 
-import numpy as np
 import pytest
 
-from tui.errors import UnknownNameError
-from tui.model import (
-    CHECKS,
-    Band,
-    Candidate,
-    Dip,
-    Evidence,
-    Fit,
-    Measurement,
-    Neighbour,
-    Param,
-    Reviewer,
-    Ruling,
-    Settings,
-    Spectrum,
-)
-from tui.workflow.records import CandidateView, Filter, QueueRow, RulingLine, StoryLine
-
-PIVOT_UM = {
-    "Gaia_BP": 0.511, "Gaia_G": 0.622, "Gaia_RP": 0.777, "J": 1.235, "H": 1.662, "Ks": 2.159,
-    "W1": 3.353, "W2": 4.603, "W3": 11.56, "W4": 22.09,
-}  # fmt: skip
-BANDS = tuple(PIVOT_UM)
-HOSTILE_NAMES = (
-    "[/]",
-    "[@click=app.exit]leave[/]",
-    "[bold red]SM[/bold red]",
-    "\x1b[2J\x1b[31mred",
-    "\x1b]0;title\x07bell\x07",
-    "tab\tand\nnewline\r",
-    "rtl \u202eedisrever\u202c name",
-    "bom\ufeff sep\u2028 end\x85\x9b1m",
-    "日本語の星 夜空の向こう",
-    "👩\u200d🚀🔭❤\ufe0f e\u0301e\u0301 क्षि",
-    "Gaia DR3 4472832130942575872",
-    "x" * 200,
-    "{0} %s {name} \\ $primary",
-)
-NATURES = (*CHECKS, "none")
-FIXED_UTC = "2026-03-04T05:06:07.000000Z"
-
-
-def make_candidate(name: str, number: int) -> Candidate:
-    """A star of 5600 K whose long bands are too bright by an amount that depends on `number`."""
-    wave = np.array([PIVOT_UM[band] for band in BANDS])
-    flux = 1e3 * wave**-3 / np.expm1(14387.77 / (wave * 5600.0)) * 1e-3
-    excess = np.where(wave > 5, 1 + 0.3 * (number % 7), 1.0)
-    measured = tuple(
-        Measurement(band, float(f * e), float(f * 0.02), limit=band == "W4" and number % 5 == 0, source="archive",
-                    epoch="2010.5", flags={"ph_qual": "A"}, value=12.0, value_error=0.02, unit="mag")
-        for band, f, e in zip(BANDS, flux, excess, strict=True)
-    )  # fmt: skip
-    grid = np.geomspace(5, 14, 30)
-    return Candidate(
-        name,
-        measured,
-        MappingProxyType({"ra": 123.4567 + number, "dec": -45.678, "parallax": 4.2, "ruwe": 1.02, "sp_type": "G5V"}),
-        (Neighbour(3.2, 120.0, {"J": 1e-4}, "archive"),) if number % 3 == 0 else (),
-        (Dip("one", "Gaia_G", 0.02, 0.004),) if number % 11 == 0 else (),
-        Spectrum(grid, np.full(30, 1e-3), np.full(30, 1e-4)) if number % 13 == 0 else None,
-    )
-
-
-def make_fit(model: str, number: int, strength: float) -> Fit:
-    """A fit whose W3 and W4 are left over by an amount that depends on `strength`."""
-    pulls = {band: math.sin(number + i) for i, band in enumerate(BANDS)}
-    pulls |= {"W3": strength, "W4": strength * 0.8}
-    chi2 = sum(pull**2 for pull in pulls.values())
-    params = {"teff": Param(5612.3, 5570.0, 5655.0, "K"), "theta": Param(0.0212, 0.0209, 0.0215, "mas")}
-    if "dust" in model:
-        params |= {"dust_temperature": Param(310.0, 255.0, 390.0, "K"),
-                   "dust_fractional_luminosity": Param(1.2e-3, 0.9e-3, 1.6e-3)}  # fmt: skip
-    return Fit(model, chi2, len(BANDS) - len(params), math.exp(-chi2 / 2), chi2 + 4, chi2 + 6, params, pulls, chi2)
-
-
-def make_evidence(number: int) -> dict[str, Evidence]:
-    """Evidence of every kind for one candidate."""
-    strength = 8.2 - 0.1 * number
-    models = {
-        "star": ("star",),
-        "instrument": ("star",),
-        "extinction": ("star + A_V",),
-        "blend": ("bound pair", "free pair"),
-        "dust": ("star + dust",),
-    }
-    made = {}
-    for step, check in enumerate(CHECKS):
-        fits = tuple(make_fit(model, number, strength / (1 + step)) for model in models[check])
-        adequate = None if check == "extinction" and number % 6 == 3 else abs(strength / (1 + step)) < 3
-        cautions = ("beam 6.5 arcsec and a faint excess: confusion is common.",) if check == "blend" else ()
-        made[check] = Evidence(check, 1, adequate, fits, cautions, {}, f"{check}-{number}", BANDS)
-    bound = make_fit("mixture", number, strength / 6)
-    made["mixture"] = Evidence("mixture", 1, number % 4 != 0, (bound,), (), {"points": 10}, f"mixture-{number}", BANDS)
-    made["dips"] = Evidence("dips", 1, None, (), (), {}, f"dips-{number}")
-    return made
-
-
-def own_rulings(own: dict[str, Ruling], number: int) -> list[RulingLine]:
-    """The reader's own lines of the log; a first, sealed one on a split that the fake queue starts with."""
-    lines = []
-    if number % 20 == 2:
-        note = "Neighbour at 3 arcsec is too faint by far.\nK shows nothing."
-        lines.append(RulingLine("o1", "blend", "heron", "r-heron", "short", note, "2026-03-01T10:00:00.000000Z", False,
-                                "blend" not in own, ""))  # fmt: skip
-    for check, made in own.items():
-        lines.append(RulingLine(made.id, check, "heron", "r-heron", made.ruling, made.note, made.utc, made.seen_others,
-                                True, ""))  # fmt: skip
-    return lines
-
-
-def other_rulings() -> list[RulingLine]:
-    """What two colleagues ruled on a blend."""
-    return [
-        RulingLine("o2", "blend", "curlew", "r-curlew", "explains", "[/] the beam holds \x1b[31mtwo\x1b[0m, see W1",
-                   "2026-03-02T11:00:00.000000Z", False, True, ""),
-        RulingLine("o3", "blend", "plover", "r-plover", "unclear", "", "2026-03-02T12:00:00.000000Z", False, True,
-                   "W3 was measured anew"),
-    ]  # fmt: skip
-
-
-class FakeSession:
-    """A queue in memory with the face of `tui.workflow.session.Session`; clones share the queue."""
-
-    def __init__(self, names, handle: str | None = "heron") -> None:
-        self.path = "/somewhere/saltmarsh.db"
-        self.reviewer = Reviewer("r-heron", handle, FIXED_UTC) if handle else None
-        self.settings = Settings()
-        self.names = list(names)
-        self.version = 1
-        self.own: dict[tuple[str, str], Ruling] = {}
-        self.other: dict[str, list[RulingLine]] = {}
-        self.log: list[Ruling] = []
-        self.claims: set[str] = set()
-        self.later: set[str] = set()
-        self.drafts: dict[tuple[str, str], str] = {}
-        self.place: tuple[str, str] | None = None
-        self.fail: Exception | None = None
-        self.tallied = None
-        self.ordered_in: list[int] = []
-
-    # --- life ---
-
-    def clone(self) -> FakeSession:
-        return self
-
-    def close(self) -> None:
-        pass
-
-    def __enter__(self):
-        return self
-
-    def __exit__(self, *exc_info) -> None:
-        pass
-
-    def data_version(self) -> int:
-        return self.version
-
-    # --- the queue ---
-
-    def order(self, sort="oddness", descending=True, where=None, limit=None):
-        if self.fail:
-            raise self.fail
-        self.ordered_in.append(threading.get_ident())
-        where = where or Filter()
-        rows = [row for row in self.rows(range(len(self.names))) if self.lets_through(row, where)]
-        keys = {"oddness": lambda row: row.oddness, "name": lambda row: row.name, "ruled": lambda row: row.ruled,
-                "outcome": lambda row: row.outcome}  # fmt: skip
-        rows.sort(key=keys[sort], reverse=descending)
-        return array("q", [row.id for row in rows[:limit]])
-
-    def lets_through(self, row: QueueRow, where: Filter) -> bool:
-        if where.unresolved and row.states[where.unresolved] not in {"open", "split", "todo"}:
-            return False
-        if where.names is not None and row.name not in where.names:
-            return False
-        return row.needs_me or not where.needs_me
-
-    def rows(self, ids):
-        return [self.row(i) for i in ids]
-
-    def row(self, i: int) -> QueueRow:
-        name = self.names[i]
-        view = self.view(name)
-        own = sum((name, check) in self.own for check in CHECKS)
-        band, pull = ("W3", 8.2 - 0.1 * i) if i % 4 else ("Gaia_BP", -6.1 + 0.05 * i)
-        to_rule = sum(state != "nodata" for state in view.states.values())
-        stale = frozenset(view.stale)
-        return QueueRow(i, name, 9.1 - 0.12 * i, band, pull, view.states, stale, view.outcome, own, to_rule,
-                        view.needs_me, view.done, view.seal_open)  # fmt: skip
-
-    def counts(self):
-        rows = self.rows(range(len(self.names)))
-        counted = {"all": len(rows), "needs_me": sum(row.needs_me for row in rows)}
-        counted["mine"] = len({name for name, _ in self.own})
-        for check in CHECKS:
-            counted[f"unresolved:{check}"] = sum(row.states[check] in {"open", "split", "todo"} for row in rows)
-        return counted
-
-    def find(self, text, substring=False, limit=-1):
-        wanted = text.casefold()
-        hits = [i for i, name in enumerate(self.names)
-                if (wanted in name.casefold() if substring else name.casefold().startswith(wanted))]  # fmt: skip
-        return array("q", hits if limit < 0 else hits[:limit])
-
-    def id_of(self, name):
-        if name not in self.names:
-            raise UnknownNameError("candidate", name)
-        return self.names.index(name)
-
-    def name_of(self, candidate_id):
-        return self.names[candidate_id]
-
-    def next_for_me(self, skip=()):
-        for row in self.rows(range(len(self.names))):
-            if row.needs_me and row.name not in self.claims and row.name not in skip:
-                return row.name
-        return None
-
-    def claim_next(self, skip=()):
-        name = self.next_for_me(skip)
-        if name is not None:
-            self.claims.add(name)
-        return name
-
-    def claim(self, name):
-        self.claims.add(name)
-        return True
-
-    def release_all(self):
-        self.claims.clear()
-
-    def put_off(self, name):
-        self.later.add(name)
-
-    def take_up(self, name):
-        self.later.discard(name)
-
-    def release(self, name):
-        self.claims.discard(name)
-
-    # --- one candidate ---
-
-    def candidate(self, name):
-        return make_candidate(name, self.id_of(name))
-
-    def view(self, name):
-        i = self.id_of(name)
-        own = {check: self.own[name, check] for check in CHECKS if (name, check) in self.own}
-        done = i % 10 == 2 or any(ruling.ruling == "explains" for ruling in own.values()) or len(own) == len(CHECKS)
-        states = {check: own[check].ruling if check in own else "todo" for check in CHECKS}
-        if i % 6 == 3:
-            states["extinction"] = "nodata"
-        outcome, reason = "sealed", ""
-        if done:
-            states |= {"star": "short", "blend": "split" if i % 20 == 2 else "open", "dust": "explains"}
-            outcome, reason = ("pending", "split:blend") if i % 20 == 2 else ("explained", "")
-        stale = {"blend": "W3 was measured anew: its pull moved from 1.2 to 3.4 sigma"} if i % 17 == 5 else {}
-        needs = not done or i % 20 == 2
-        drafts = {check: text for (of, check), text in self.drafts.items() if of == name and text}
-        to_rule = tuple(check for check in CHECKS if check not in own and states[check] != "nodata")
-        others = (self.other.get(name) or (other_rulings() if i % 20 == 2 else [])) if done else []
-        cause = "dust" if outcome == "explained" else ""
-        return CandidateView(name, states, stale, outcome, reason, done, done, needs, own, others, drafts,
-                             cause=cause, to_rule=to_rule, own_history=own_rulings(own, i))  # fmt: skip
-
-    def evidence(self, name, kinds=None):
-        return self.stored_evidence(name)
-
-    def stored_evidence(self, name):
-        i = self.id_of(name)
-        return {} if i % 23 == 7 else make_evidence(i)
-
-    def cutouts(self, name):
-        return []
-
-    def dip_curves(self, name):
-        return []
-
-    def look_alikes(self, name, star=None):
-        return None
-
-    def curve(self, name, check, fit_index=0):
-        wave = np.geomspace(0.3, 30, 200)
-        total = wave**-3 / np.expm1(14387.77 / (wave * 5600.0))
-        return SimpleNamespace(wave_um=wave, total_jy=total, components={"star": total * 0.9, "dust": total * 0.1})
-
-    def probe(self, name, check, fixed, dropped=()):
-        return make_fit("star + dust", self.id_of(name), 2.0), self.curve(name, check)
-
-    def band_info(self):
-        return {band: Band(band, wave, "Vega", 1000.0, 0.02, "any", np.array([0.9, 1.1]) * wave, np.ones(2))
-                for band, wave in PIVOT_UM.items()}  # fmt: skip
-
-    # --- rulings ---
-
-    def rule(self, name, check, ruling, note="", evidence_digest=None):
-        if self.fail:
-            raise self.fail
-        view = self.view(name)
-        made = Ruling(name, check, self.reviewer.id, ruling, note, evidence_digest or "", view.seal_open,
-                      utc=FIXED_UTC, id=f"id-{len(self.log)}")  # fmt: skip
-        self.log.append(made)
-        if ruling == "withdrawn":
-            self.own.pop((name, check), None)
-        else:
-            self.own[name, check] = made
-        self.drafts.pop((name, check), None)
-        return made
-
-    def withdraw(self, name, check, note=""):
-        return self.rule(name, check, "withdrawn", note)
-
-    def draft(self, name, check):
-        return self.drafts.get((name, check), "")
-
-    def save_draft(self, name, check, text):
-        self.drafts[name, check] = text
-
-    def position(self):
-        return self.place
-
-    def save_position(self, name, check):
-        self.place = (name, check)
-
-    def story(self, name):
-        return [
-            StoryLine("2026-03-01T10:00:00.000000Z", "loaded", "archive", "", "10 bands and 5 facts"),
-            StoryLine("2026-03-02T11:30:00.000000Z", "ruled", "heron", "star", "falls short: [/] \x1b[31m W3 is odd"),
-            StoryLine("2026-03-03T09:15:00.000000Z", "corrected", "archive", "", "W3 measured anew", True),
-        ]
-
-    def tally(self):
-        return self.tallied
-
-
-class MillionSession(FakeSession):
-    """A million candidates, none of which exists before its row is asked for."""
-
-    COUNT = 1_000_000
-
-    def __init__(self) -> None:
-        super().__init__([])
-        self.fetched = 0
-
-    def order(self, sort="oddness", descending=True, where=None, limit=None):
-        ids = range(limit or self.COUNT)
-        return array("q", ids if descending else reversed(ids))
-
-    def rows(self, ids):
-        self.fetched += len(ids)
-        return [self.row(i) for i in ids]
-
-    def row(self, i):
-        states = dict.fromkeys(CHECKS, "todo")
-        fall, name = i * 1e-5, self.name_of(i)
-        return QueueRow(i, name, 9 - fall, "W3", 8 - fall, states, frozenset(), "sealed", 0, 5, True, False, False)
-
-    def counts(self):
-        return {"all": self.COUNT, "needs_me": self.COUNT} | {f"unresolved:{check}": self.COUNT for check in CHECKS}
-
-    def id_of(self, name):
-        return int(name.removeprefix("SM-"))
-
-    def name_of(self, candidate_id):
-        return f"SM-{candidate_id:07d}"
-
-    def stored_evidence(self, name):
-        return {}
+from tests.desk.disk_queue import make_queue
+from tests.desk.fake_session import FakeSession, MillionSession
+from tests.desk.made import HOSTILE_NAMES
 
 
 @pytest.fixture
@@ -445,6 +75,40 @@ def screen_text():
 
 
 @pytest.fixture
+def any_terminal(monkeypatch):
+    """A terminal that can draw braille, whatever the tests run in."""
+    monkeypatch.delenv("LC_ALL", raising=False)
+    monkeypatch.setenv("LC_CTYPE", "C.UTF-8")
+    monkeypatch.setenv("TERM", "xterm-256color")
+
+
+@pytest.fixture
+def on_candidate(drive):
+    """Run steps on a candidate's page: `on_candidate(session, steps, name=..., order=...)`.
+
+    `async def steps(app, screen, press)`: `await press(*keys)` presses them one by one, each on a page at rest.
+    """
+    from tui.desk.screens.candidate import CandidateScreen
+
+    def run(session, steps, name="SM-0001", order=None, **options):
+        async def whole(app, pilot):
+            screen = CandidateScreen(session, name, order)
+            app.push_screen(screen)
+            await settle(app, pilot)
+
+            async def press(*keys):
+                for key in keys:
+                    await pilot.press(key)
+                    await settle(app, pilot)
+
+            await steps(app, screen, press)
+
+        drive(session, whole, **options)
+
+    return run
+
+
+@pytest.fixture
 def snapshot():
     """Compare text with `snapshots/NAME.txt`; with PLAINLIGHT_SNAPSHOTS=write, write it."""
 
@@ -456,45 +120,6 @@ def snapshot():
         assert text == path.read_text(encoding="utf-8")
 
     return compare
-
-
-
-
-def make_queue(path: Path) -> str:
-    """A queue on disk: forty candidates with evidence, three reviewers, rulings that agree, part and are unclear."""
-    from tui.store import candidates, connect, evidence, reviewers
-    from tui.store.records import LoadRecord
-    from tui.workflow.session import Session
-
-    names = [f"SM-{i:04d}" for i in range(1, 36)] + list(HOSTILE_NAMES[:5])
-    connection = connect.open_queue(str(path), create=True)
-    records = [LoadRecord(make_candidate(name, i), "archive") for i, name in enumerate(names)]
-    candidates.save_candidates(connection, records, FIXED_UTC)
-    computed = [(name, one) for i, name in enumerate(names) for one in make_evidence(i).values()]
-    evidence.save_evidence(connection, computed)
-    for number, handle in enumerate(("heron", "plover", "curlew")):
-        reviewers.add_reviewer(connection, handle, f"2026-03-0{number + 1}T00:00:00.000000Z")
-    connection.close()
-    for handle, step in (("heron", 0), ("plover", 1), ("curlew", 2)):
-        with Session.open(str(path), handle) as session:
-            for i, name in enumerate(names[: 12 + 4 * step]):
-                rule_through(session, name, i, step)
-    return str(path)
-
-
-def rule_through(session, name: str, number: int, step: int) -> None:
-    """One reviewer's walk through one candidate: a few end early, one is left half-way."""
-    for place, check in enumerate(CHECKS):
-        if number % 6 == 5 and place > 1:
-            return
-        if number % 6 == 3 and check == "extinction":
-            continue  # untestable there
-        parts = number % 4 == 2 and check == "blend" and step
-        ruling = "explains" if parts or (number % 4 == 1 and check == "dust") else "short"
-        digest = f"{check}-{number}"
-        session.rule(name, check, "unclear" if number % 7 == 6 and check == "star" else ruling, "W3 alone", digest)
-        if ruling == "explains":
-            return
 
 
 @pytest.fixture

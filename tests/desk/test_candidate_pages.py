@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from tests.desk.conftest import HOSTILE_NAMES
+from tests.desk.made import HOSTILE_NAMES
 from tui.desk.screens.candidate import CandidateScreen
 from tui.errors import StoreError
 from tui.workflow.dip_curves import DipCurve

@@ -5,18 +5,11 @@ from __future__ import annotations
 import pytest
 from rich.cells import cell_len
 
-from tests.desk.conftest import HOSTILE_NAMES
+from tests.desk.made import HOSTILE_NAMES
 from tui.desk.screens.candidate import CandidateScreen
 
 SIZES = ((80, 24), (120, 40), (200, 60))
-
-
-@pytest.fixture(autouse=True)
-def any_terminal(monkeypatch):
-    """A terminal that can draw braille, whatever the tests run in."""
-    monkeypatch.delenv("LC_ALL", raising=False)
-    monkeypatch.setenv("LC_CTYPE", "C.UTF-8")
-    monkeypatch.setenv("TERM", "xterm-256color")
+pytestmark = pytest.mark.usefixtures("any_terminal")
 
 
 @pytest.fixture

@@ -7,7 +7,8 @@ import dataclasses
 
 import pytest
 
-from tests.desk.conftest import make_evidence, settle, text_of
+from tests.desk.conftest import settle, text_of
+from tests.desk.made import make_evidence
 from tui.desk.practice_desk import PracticeDesk
 from tui.desk.screens.practice import PracticeScreen
 from tui.model import CHECKS
