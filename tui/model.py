@@ -8,12 +8,13 @@ import math
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from types import MappingProxyType
-from typing import Any
+from typing import TYPE_CHECKING, Any, TypeAlias
 
-import numpy as np
-from numpy.typing import NDArray
+if TYPE_CHECKING:
+    import numpy as np
+    from numpy.typing import NDArray
 
-FloatArray = NDArray[np.float64]
+FloatArray: TypeAlias = "NDArray[np.float64]"  # in words: the records are there before numpy, which is slow to come
 
 CHECKS = ("star", "instrument", "extinction", "blend", "dust")  # the order in which they are walked
 NATURAL = CHECKS[1:]  # explanations of an odd star; `star` says that it was not odd
@@ -208,12 +209,10 @@ def plain(value: Any) -> Any:
     """
     if isinstance(value, Mapping):
         return {str(key): plain(item) for key, item in value.items()}
-    if isinstance(value, np.ndarray):
-        return [plain(item) for item in value.tolist()]
+    if hasattr(value, "tolist"):  # numpy's arrays and scalars
+        value = value.tolist()
     if isinstance(value, (list, tuple)):
         return [plain(item) for item in value]
-    if isinstance(value, (np.bool_, np.integer, np.floating)):
-        value = value.item()
     if isinstance(value, float):
         return value + 0.0 if math.isfinite(value) else None
     return value

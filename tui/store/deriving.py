@@ -13,7 +13,6 @@ import sqlite3
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from functools import lru_cache
-from statistics import NormalDist
 from typing import Any
 
 from tui.consensus.seal import own_stale, seen_states
@@ -297,6 +296,8 @@ def sigma_of(p: float) -> float | None:
     >>> round(sigma_of(0.0013498980316301035), 9)
     3.0
     """
+    from statistics import NormalDist  # brings fractions and decimals with it
+
     if not math.isfinite(p) or not 0 <= p <= 1:
         return None
     if p >= 1e-15:

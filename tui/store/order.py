@@ -20,50 +20,28 @@ from numpy.typing import NDArray
 from tui.errors import InputError, UnknownNameError
 from tui.model import CHECKS, OUTCOMES
 from tui.store.connect import snapshot
+from tui.store.ids import INDEXED
 from tui.store.names import RING_STEPS, folded
-from tui.store.records import NOT_RULED, SEALED, SORTS, Filter
+from tui.store.records import NOT_RULED, SEALED, UNRESOLVED, Filter
 
-UNRESOLVED = ("open", "split", NOT_RULED, SEALED)
 # the order of states in a sort
 STATE_RANKS = (SEALED, NOT_RULED, "open", "split", "unclear", "short", "explains", "nodata")
 OUTCOME_RANKS = (SEALED, "pending", "unexplained", "explained", "ordinary")
-INDEXED = {  # sorts that are the order of an index
-    "oddness": "oddness DESC, id",
-    "name": "fold DESC, id DESC",
-    "band": "odd_band DESC, oddness DESC, id",
-    "pull": "odd_pull DESC, id",
-}
 Ids = NDArray[np.int64]
 Ranks = NDArray[np.int8]
 
 
-def view_order(
-    connection: sqlite3.Connection,
-    reviewer_id: str | None,
-    *,
-    sort: str = "oddness",
-    descending: bool = True,
-    where: Filter | None = None,
-    limit: int | None = None,
+def whole_order(
+    connection: sqlite3.Connection, reviewer_id: str | None, query: str, sort: str, where: Filter
 ) -> array[int]:
-    """Ids of the candidates that `where` lets through, sorted, as this reader may know them.
+    """The ids that `query` gives in the order of an index, filtered, and sorted by what is no index.
 
-    Args:
-        sort: one of `SORTS`; a check sorts by the state that the reader sees there. Ties fall by oddness.
-        limit: only the first so many; at once where the sort is an index, descending, and nothing is filtered.
     Raises:
-        InputError: no such sort or share.
+        InputError: no such share.
         UnknownNameError: no such check or outcome in `where`.
     """
-    if sort not in SORTS:
-        raise InputError(f"There is no sort {sort!r}; there are {', '.join(SORTS)}.")
-    query = f"SELECT id FROM queue_row ORDER BY {INDEXED.get(sort, INDEXED['oddness'])}"
-    if limit is not None and where in (None, Filter()) and sort in INDEXED and descending:
-        ids = ids_from(connection, f"{query} LIMIT {int(limit)}")
-    else:
-        with snapshot(connection):
-            ids = ordered(Eyes(connection, reviewer_id), ids_from(connection, query), sort, where or Filter())
-        ids = (ids if descending else ids[::-1])[:limit]
+    with snapshot(connection):
+        ids = ordered(Eyes(connection, reviewer_id), ids_from(connection, query), sort, where)
     return array("q", np.ascontiguousarray(ids).tobytes())
 
 

@@ -14,13 +14,14 @@ from tui.consensus.standing import CheckCount
 from tui.model import CHECKS, Candidate, FloatArray, Ruling
 
 __all__ = [
-    "NOT_RULED", "SEALED", "SORTS", "Attachment", "AuditReport", "CandidateView", "CheckCount", "Cutout", "Fault",
-    "Filter", "GatherReport", "LoadCounts", "LoadRecord", "QueueRow", "RulingLine", "SettingLine", "StoryLine",
-    "TeamRow",
+    "NOT_RULED", "SEALED", "SORTS", "UNRESOLVED", "Attachment", "AuditReport", "CandidateView", "CheckCount",
+    "Cutout", "Fault", "Filter", "GatherReport", "LoadCounts", "LoadRecord", "QueueRow", "RulingLine",
+    "SettingLine", "StoryLine", "TeamRow",
 ]  # fmt: skip
 
 SEALED = "sealed"  # what the outcome reads before the seal opens
 NOT_RULED = "todo"  # what a check reads that the reader has not ruled, before the seal opens
+UNRESOLVED = ("open", "split", NOT_RULED, SEALED)  # states with which a check counts as unresolved
 SORTS = ("oddness", "name", "band", "pull", "outcome", "ruled", "needs", *CHECKS)
 
 

@@ -14,8 +14,6 @@ import zlib
 from collections.abc import Iterable, Mapping, Sequence
 from typing import Any
 
-import numpy as np
-
 from tui.errors import InputError, StoreError, UnknownNameError
 from tui.model import Candidate, Dip, FloatArray, Neighbour, Spectrum, canonical_json
 from tui.store.connect import immediate
@@ -60,11 +58,15 @@ def spectrum_rows(spectrum: Spectrum | None) -> list[tuple[Any, ...]]:
 
 def packed(values: FloatArray) -> bytes:
     """An array as little-endian float64."""
+    import numpy as np  # here and below: candidates are listed before it is there
+
     return np.ascontiguousarray(values, dtype="<f8").tobytes()
 
 
 def unpacked(content: bytes) -> FloatArray:
     """What `packed` wrote."""
+    import numpy as np
+
     return np.frombuffer(content, dtype="<f8").astype(np.float64)
 
 
@@ -166,6 +168,8 @@ def save_cutout(connection: sqlite3.Connection, name: str, cutout: Cutout, utc: 
         UnknownNameError: no such candidate.
         InputError: not a picture of height x width, or larger than a cutout may be.
     """
+    import numpy as np
+
     image = np.asarray(cutout.image, dtype="<f4")
     if image.ndim != 2 or not 0 < image.size <= MAX_PIXELS:
         raise InputError(f"A cutout has two axes and up to {MAX_PIXELS} pixels; this one is {image.shape}.")
@@ -202,6 +206,8 @@ def cutouts(connection: sqlite3.Connection, name: str) -> list[Cutout]:
 
 def picture(content: bytes, height: int, width: int) -> FloatArray:
     """The pixels of a stored picture; never more than its size says, whatever the bytes claim."""
+    import numpy as np
+
     if not 0 < height * width <= MAX_PIXELS:
         raise StoreError(f"A cutout of {height} x {width} pixels is on file, which is too large to show.")
     try:

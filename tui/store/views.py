@@ -4,14 +4,13 @@ The seal is kept by construction, here and in order.py. States come from `review
 only what that reviewer may read, or, where the reviewer has no row, read `todo` (`nodata` where the
 evidence is untestable);
 the team's outcome is looked at behind `seal_open = 1` alone; a reader without a handle gets constants.
-Filters, sorts (order.py) and counts read the same rows in the same way.
+Filters, sorts (ids.py, order.py) and counts read the same rows in the same way.
 """
 
 from __future__ import annotations
 
 import math
 import sqlite3
-from array import array
 from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
@@ -20,9 +19,8 @@ from tui.model import CHECKS, OUTCOMES
 from tui.store.candidate_view import standing_for, story
 from tui.store.connect import snapshot
 from tui.store.deriving import checks_of
-from tui.store.names import folded
-from tui.store.order import UNRESOLVED, ids_from, view_order
-from tui.store.records import NOT_RULED, SEALED, QueueRow
+from tui.store.ids import find_prefix, find_substring, view_order
+from tui.store.records import NOT_RULED, SEALED, UNRESOLVED, QueueRow
 from tui.store.team import team_standing
 from tui.store.turns import next_for
 
@@ -70,23 +68,6 @@ def sight(reviewer_id: str | None) -> Sight:
         done="COALESCE(v.done, 0)",
         seal_open="COALESCE(v.seal_open, 0)",
     )
-
-
-def find_prefix(connection: sqlite3.Connection, text: str, limit: int = -1) -> array[int]:
-    """Ids of the candidates whose name starts with `text`, case ignored, by name; all for an empty text.
-
-    Args:
-        limit: only the first so many; -1 for all.
-    """
-    start = folded(text)
-    query = "SELECT id FROM queue_row WHERE fold >= ? AND fold < ? ORDER BY fold, id LIMIT ?"
-    return array("q", ids_from(connection, query, (start, start + "\U0010ffff", limit)).tobytes())
-
-
-def find_substring(connection: sqlite3.Connection, text: str) -> array[int]:
-    """Ids of the candidates whose name holds `text`, case ignored, by name."""
-    query = "SELECT id FROM queue_row INDEXED BY queue_row_fold WHERE instr(fold, ?) > 0 ORDER BY fold, id"
-    return array("q", ids_from(connection, query, (folded(text),)).tobytes())
 
 
 def view_rows(connection: sqlite3.Connection, reviewer_id: str | None, ids: Sequence[int]) -> list[QueueRow]:

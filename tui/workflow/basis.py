@@ -9,8 +9,6 @@ from dataclasses import dataclass, field
 from functools import cache
 from typing import TYPE_CHECKING, Any
 
-import numpy as np
-
 from tui.errors import StoreError
 from tui.model import Band, Settings, canonical_json
 
@@ -100,6 +98,8 @@ def band_text(band: Band) -> bytes:
 
 def band_from(content: bytes) -> Band:
     """What `band_text` wrote."""
+    import numpy as np  # most queues have no bands of their own
+
     fields: dict[str, Any] = json.loads(content)
     for name in _ARRAYS:
         fields[name] = np.array(fields[name], dtype=np.float64)

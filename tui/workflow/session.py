@@ -13,12 +13,12 @@ from tui.model import CHECKS, KINDS, Band, Candidate, Evidence, Fit, Reviewer, R
 from tui.store import candidates, claims, connect, drafts, evidence, reviewers, rulings, views
 from tui.workflow.basis import read_basis
 from tui.workflow.clock import utc_now
-from tui.workflow.lookalikes import LookAlikeFinder, LookAlikes
 from tui.workflow.records import CandidateView, Cutout, Filter, QueueRow, StoryLine
 
 if TYPE_CHECKING:
     from tui.checks import Curve
     from tui.workflow.dip_curves import DipCurve
+    from tui.workflow.lookalikes import LookAlikeFinder, LookAlikes
     from tui.workflow.tally_record import Tally
 
 _numbers = count()
@@ -40,7 +40,7 @@ class Session:
         self.basis = read_basis(connection)
         self._read_at = connect.data_version(connection)
         self._number = next(_numbers)
-        self._alike = LookAlikeFinder()  # shared with the clones
+        self._alike: dict[str, LookAlikeFinder] = {}  # the one finder, once asked for; shared with the clones
 
     # --- opening and closing ---
 
@@ -225,11 +225,14 @@ class Session:
         Args:
             star: today's star evidence of the candidate; None: as `evidence` gives it.
         """
+        from tui.workflow.lookalikes import LookAlikeFinder
+
         star = star or self.evidence(name, ("star",)).get("star")
+        finder = self._alike.setdefault("finder", LookAlikeFinder())
         place = candidates.candidate_id(self.connection, name)
         seen = (self._number, self.data_version(), self.connection.total_changes)
         own = (place, candidates.candidate_name(self.connection, place))
-        return self._alike.find(self.connection, seen, own, star, self.band_info())
+        return finder.find(self.connection, seen, own, star, self.band_info())
 
     def candidate_count(self) -> int:
         """How many candidates the queue has."""
