@@ -145,12 +145,14 @@ def _unknown(column: str, band: str, text: str, row: FlagRow) -> FlagReading:
 
 
 def plain_text(value: Any) -> str:
-    """A flag's value as text: whole numbers without a point, no blanks.
+    """A flag's value as text: whole numbers without a point, no blanks, no digits that only rounding made.
 
     >>> plain_text(" 2.0"), plain_text("h"), plain_text(2**63 + 1)  # no bit of a long word is lost
     ('2', 'h', '9223372036854775809')
+    >>> plain_text(9 * 0.1)
+    '0.9'
     """
-    text = str(value).strip()
+    text = f"{value:.12g}" if isinstance(value, float) else str(value).strip()
     if text.isdecimal():
         return str(int(text)) if len(text) < LONGEST_WORD else text
     try:

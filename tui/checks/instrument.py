@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import replace
 
 import numpy as np
@@ -10,7 +10,7 @@ import numpy as np
 from tui.checks.carrier import Carrier, find_carriers, removal_trials
 from tui.checks.carrier_words import carrier_facts, carrier_sentences
 from tui.checks.colours import w4_red_excess, w4_sentence
-from tui.checks.doubts import sentences
+from tui.checks.doubts import Doubt, sentences
 from tui.checks.neighbours import measured_fluxes, neighbour_sentences
 from tui.checks.quality import Quality, all_gaia_facts, candidate_quality
 from tui.checks.record import any_stands, stands
@@ -21,7 +21,7 @@ from tui.physics.fitting import FitBatch, fit
 from tui.physics.removal import chi2_without
 
 KIND = "instrument"
-VERSION = 2  # raise it whenever the same candidate could get other numbers
+VERSION = 3  # raise it whenever the same candidate could get other numbers
 FEW = 2  # degrees of freedom without the suspects, up to which a caution is given
 
 Record = Callable[[FitBatch], list[Fit]]  # how fitted rows become fits
@@ -122,13 +122,18 @@ def one_evidence(
         *([] if quality.is_loaded else [NOTHING_LOADED]),
         *([NOT_THE_DATA] if beyond else []),
         *(() if star.adequate is not False else carrier_sentences(carrier, suspects, bands, star.bands, settings)),
-        *sentences(doubt for doubt in quality.doubts if doubt.band in star.bands),
+        *sentences(of_the_fit(quality.doubts, star.bands)),
         *neighbour_sentences(list(quality.leaks)),
         *few_left(without),
         *w4_sentence(red),
     )
     adequate = any_stands([star.adequate, False if beyond else answer]) if quality.is_loaded else None
     return Evidence(KIND, VERSION, adequate, fits, cautions, facts, bands=star.bands)
+
+
+def of_the_fit(doubts: Iterable[Doubt], fitted: Sequence[str]) -> list[Doubt]:
+    """Doubts about fitted bands as they are; those about bands that were measured only say so."""
+    return [doubt if doubt.band in fitted else replace(doubt, band=f"{doubt.band} (not fitted)") for doubt in doubts]
 
 
 NOTHING_LOADED = (
