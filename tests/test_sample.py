@@ -30,7 +30,10 @@ from tui.workflow.session import Session
 SAMPLE = Path(__file__).parent.parent / "sample_db"
 TEAM = ("curlew", "heron", "plover")
 REBUILD = "the sample queue is of other code or tables; make it anew: python sample_db/make_sample.py --queue"
-TABLES = ("crossmatch.vot", "known.ecsv", "sdss.csv", "further_bands.csv", "spitzer_later.csv")
+TABLES = (
+    "crossmatch.vot", "known.ecsv", "sdss.csv", "further_bands.csv", "archives.csv", "glimpse.csv", "spitzer_later.csv",
+)  # fmt: skip
+DIPS = ("dips.csv", "light_curves.csv", "windows.csv")
 
 
 @pytest.fixture(scope="module")
@@ -142,7 +145,7 @@ def test_the_demo_without_a_terminal_tells_what_is_in_the_sample(monkeypatch, tm
 def test_the_tables_make_the_same_candidates(connection, tmp_path):
     path = str(tmp_path / "again.db")
     sides = Sidecars(
-        dips=(str(SAMPLE / "dips.csv"),), neighbours=(str(SAMPLE / "neighbours.ecsv"),),
+        dips=tuple(str(SAMPLE / table) for table in DIPS), neighbours=(str(SAMPLE / "neighbours.ecsv"),),
         spectra=(str(SAMPLE / "spectra.fits"),), cutouts=str(SAMPLE / "cutouts"),
     )  # fmt: skip
     done = load(path, [str(SAMPLE / table) for table in TABLES], sidecars=sides)

@@ -67,6 +67,16 @@ RECOVERED = {
     "no flags loaded": {"instrument": None, "extinction": True},
     "coloured dip": {"star": False, "instrument": False, "blend": False, "dust": True},
     "grey dip": {"star": False, "instrument": False, "extinction": False, "blend": True},
+    "coloured dip in its light curves": {"star": False, "instrument": False, "blend": False, "extinction": True},
+    "galaxy beside the star": {"star": False, "instrument": False, "extinction": False, "blend": True, "dust": False},
+    "on a bad night of 2MASS": {"star": False, "instrument": False, "extinction": False, "blend": False},
+    "SDSS saturated in g": {"star": False, "instrument": True},
+    "Pan-STARRS masked in r": {"star": False, "instrument": True},
+    "Tycho-2 star with a companion": {"star": False, "instrument": True},
+    "Spitzer beyond its linear range": {"star": False, "instrument": True},
+    "GLIMPSE in the wings of a bright star": {"star": False, "instrument": True},
+    "AKARI at the edge of its strip": {"star": False, "instrument": True},
+    "IRAS confused at 12 micron": {"star": False, "instrument": True},
 }
 
 
@@ -133,6 +143,34 @@ SPOKEN = {
     "log g": ("dust", "log g"),
     "coloured dip": ("dips", "refused are grey"),
     "grey dip": ("dips", "refused are A(lambda)"),
+    "light curves": ("dips", "2015 May: refused are grey"),
+    "shell test": ("dust", "A shell all round would dim the star"),
+    "centroid shift": ("blend", "pulls it there, it lies 1."),
+    "second-nearest source": ("blend", "Another source lies 3.9 arcsec away, inside the beam of W1, W2"),
+    "SDSS flag": ("instrument", "SDSS_g: SDSS flags_g 262144: a pixel is saturated"),
+    "Pan-STARRS flag": ("instrument", "PS1_r: Pan-STARRS rQfPerfect 0.31: more than 15 %"),
+    "GALEX flag": ("instrument", "GALEX_NUV (not fitted): GALEX nuv_artifact 4: may hold a ghost"),
+    "Tycho-2 flag": ("instrument", "BT, VT: Tycho-2 posflg D: treated as a double star"),
+    "Spitzer flag": ("instrument", "IRAC1: Spitzer i1_softsatflag 1: pixels beyond the linear range"),
+    "GLIMPSE flag": ("instrument", "IRAC3: Spitzer sqf_5_8 532480: in the wings of a saturated star"),
+    "AKARI flag": ("instrument", "AKARI_S9W: AKARI flags09 8: measured at the edge of the strip"),
+    "IRAS flag": ("instrument", "IRAS12: IRAS confuse 1: confused with another source"),
+}
+# further items that a star shows beside the one it was built for: shows -> kind, words
+BESIDE = {
+    "double images": ("RUWE", "blend", "Gaia saw more than one peak in 31 %"),
+    "blended transits": ("C*", "blend", "of the BP or RP transits another source lay in the window"),
+    "age": ("natural class", "dust", "4 Myr old: at this age gas-rich discs"),
+    "spectral type": ("log g", "dust", "Catalogued as evolved (sp_type K"),
+    "GLIMPSE close source": ("GLIMPSE flag", "instrument", "IRAC4: Spitzer csf 5: another source 0.5 to 1 arcsec"),
+    "Tycho-2 proximity": ("Tycho-2 flag", "instrument", "tycho_prox 0.9: another Tycho-2 star lies within 2.4"),
+    "large beam": ("IRAS flag", "blend", "inside the beam of IRAS12"),
+    "W4 of red sources": ("centroid shift", "instrument", "W4 reads some 3 % high"),
+    "extended": ("aperture", "instrument", "reduced chi-square above 3"),
+    "variable": ("Gaia scatter", "instrument", "found variable from Gaia's own light curve"),
+    "carrier": ("saturation", "instrument", "the anomaly ("),
+    "parallax hygiene": ("RUWE", "blend", "No usable parallax"),
+    "over-luminosity": ("over-luminosity", "blend", "Brighter than one dwarf by 0."),
 }
 
 
@@ -145,6 +183,19 @@ def test_an_item_changes_what_a_reviewer_reads(item, key, evidence):
     plain = [row["name"] for row in key if row["recipe"] == "plain dwarf"]
     spoken = [name for name in plain if any(words in said for said in evidence[name][kind].cautions)]
     assert not spoken
+
+
+@pytest.mark.parametrize("item", BESIDE)
+def test_what_a_star_shows_beside_its_own_item(item, key, evidence):
+    shows, kind, words = BESIDE[item]
+    built = [row["name"] for row in key if row["shows"] == shows and not row["late"]]
+    assert any(words in said for name in built for said in evidence[name][kind].cautions), item
+
+
+def test_the_key_names_no_item_that_no_test_speaks_of(key):
+    told = {*SPOKEN, "", "limits", "too cold to see", "second temperature", "look-alikes", "hot companion", "spectrum"}
+    told |= {"look-alikes in epoch and place", "over-luminosity", "mixture bound", "untestable", "two temperatures"}
+    assert {row["shows"] for row in key} == told
 
 
 def test_over_luminosity_tells_twins_from_single_stars(key, evidence):

@@ -19,8 +19,10 @@ WISE_BANDS = ("W1", "W2", "W3", "W4")
 STAR_TO_STAR = 0.022  # real stars scatter about their sequence
 CALIBRATION = 0.8  # of each band's floor
 FIRST_SOURCE_ID = 9_000_000_000_000_000_000  # above every identifier that Gaia gives
-GAIA_YR, TWOMASS_YR, WISE_YR = 2016.0, 1999.4, 2010.55
-TWOMASS_JD, WISE_MJD = 2451324.8, 55397.3
+GAIA_YR, WISE_YR = 2016.0, 2010.55
+TWOMASS_JD, WISE_MJD = 2451324.8, 55397.3  # in the middle of the survey
+TWOMASS_DAYS = 1300  # that the survey lasted
+JD_2000, DAYS_PER_YEAR = 2451545.0, 365.25
 LIMIT_SIGMA = {"2MASS": 10.0, "WISE": 5.0, "SDSS": 5.0}  # at which the bands' usual depths are quoted
 FAINT_JY = {
     "IRAC1": 2e-5,
@@ -38,6 +40,11 @@ FAINT_JY = {
     "V": 1e-5,
     "Rc": 1e-5,
     "Ic": 1e-5,
+    **dict.fromkeys(("PS1_g", "PS1_r", "PS1_i", "PS1_z", "PS1_y"), 2e-6),
+    "BT": 2e-3,
+    "VT": 2e-3,
+    "IRAS12": 2e-2,
+    "IRAS25": 2e-2,
 }
 
 
@@ -171,12 +178,13 @@ class Observer:
 
     def twomass(self, star: Star, gaia: dict[str, Any]) -> dict[str, Any]:
         """Columns of the 2MASS point source catalogue."""
-        ra, dec = self.moved(gaia, TWOMASS_YR, 0.07)
+        night = star.twomass.get("jdate") or self.night(star)
+        ra, dec = self.moved(gaia, 2000.0 + (night - JD_2000) / DAYS_PER_YEAR, 0.07)
         row: dict[str, Any] = {
             "ra": ra,
             "dec": dec,
             "err_maj": 0.07,
-            "jdate": TWOMASS_JD,
+            "jdate": night,
             "gal_contam": 0,
             "mp_flg": 0,
             "prox": round(float(self.rng.uniform(12, 60)), 1),
@@ -201,6 +209,11 @@ class Observer:
         if star.neighbours:
             row["prox"] = round(star.neighbours[0][0], 1)
         return row | {"ph_qual": quality} | dict(star.twomass)
+
+    def night(self, star: Star) -> float:
+        """The Julian date on which 2MASS saw a star: some night of the survey, by a random state of its own."""
+        share = np.random.default_rng([self.state, *star.stream, 9]).uniform(-0.5, 0.5)
+        return round(float(TWOMASS_JD + TWOMASS_DAYS * share), 4)
 
     def wise(self, star: Star, gaia: dict[str, Any]) -> dict[str, Any]:
         """Columns of the AllWISE source catalogue."""

@@ -100,7 +100,15 @@ def discs(rng: np.random.Generator) -> Iterator[Star]:
         further=SPITZER,
         facts={"age_myr": 4.0, "otype": "TT*", "sp_type": "K4Ve"},
     )
-    yield Star("dust that takes a third of the light", "dust", 6100, 9.3, "shell test", parts=(Dust(350, 0.33),))
+    yield Star(
+        "dust that takes a third of the light",
+        "dust",
+        6100,
+        9.3,
+        "shell test",
+        parts=(Dust(350, 0.33),),
+        facts={"av_max": 0.05},
+    )
     yield Star(
         "reddened star with a disc",
         "dust",

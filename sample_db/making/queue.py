@@ -22,7 +22,8 @@ from tui.workflow.loading import Loaded, Sidecars, load
 from tui.workflow.session import Session
 
 QUEUE = "saltmarsh.db"
-TABLES = ("crossmatch.vot", "known.ecsv", "sdss.csv", "further_bands.csv")
+TABLES = ("crossmatch.vot", "known.ecsv", "sdss.csv", "further_bands.csv", "archives.csv", "glimpse.csv")
+DIPS = ("dips.csv", "light_curves.csv", "windows.csv")
 LATER = "spitzer_later.csv"
 SEARCHED = 48_000  # stars of the invented survey
 BEGIN = datetime(2026, 11, 9, 19, 0, tzinfo=UTC)
@@ -89,7 +90,7 @@ def make_queue(folder: Path) -> str:
 def load_tables(path: str, folder: Path) -> Loaded:
     """Load all tables but the late one."""
     sides = Sidecars(
-        dips=(str(folder / "dips.csv"),),
+        dips=tuple(str(folder / table) for table in DIPS),
         neighbours=(str(folder / "neighbours.ecsv"),),
         spectra=(str(folder / "spectra.fits"),),
         cutouts=str(folder / "cutouts"),

@@ -2,39 +2,33 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import replace
 
 import numpy as np
 from making.beams import compact, galaxies, leaks, pairs, wrong_matches
 from making.dusty import SPITZER, dips, discs, reddened, screens
 from making.records import instrument, sparse
+from making.signs import further_signs
 from making.star import MARSH, Star
 
 
 def all_stars(state: int) -> list[Star]:
-    """Every star, in the order in which the survey numbers them: shuffled, so that a number tells nothing."""
-    families = (
-        ordinary,
-        instrument,
-        wrong_matches,
-        reddened,
-        pairs,
-        compact,
-        galaxies,
-        leaks,
-        discs,
-        giants,
-        dips,
-        screens,
-        sparse,
-    )
+    """Every star, in the order in which the survey numbers them: shuffled, so that a number tells nothing.
+
+    The stars that came later are shuffled among themselves and follow: the earlier ones keep their numbers.
+    """
+    return [*shuffled(state, 0, FIRST), *shuffled(state, len(FIRST), LATER)]
+
+
+def shuffled(state: int, before: int, families: Sequence[Family]) -> list[Star]:
+    """The stars of some families, `before` of which came earlier, each with its own random states."""
     stars = [
         replace(star, stream=(family, place))
-        for family, make in enumerate(families)
+        for family, make in enumerate(families, before)
         for place, star in enumerate(make(np.random.default_rng([state, family])))
     ]
-    return [stars[place] for place in np.random.default_rng(state).permutation(len(stars))]
+    return [stars[place] for place in np.random.default_rng(state + before).permutation(len(stars))]
 
 
 def ordinary(rng: np.random.Generator) -> Iterator[Star]:
@@ -67,3 +61,11 @@ def giants(rng: np.random.Generator) -> Iterator[Star]:
             place=MARSH,
             facts={"sp_type": f"K{number + 1}III", "av_max": 0.3},
         )
+
+
+Family = Callable[[np.random.Generator], Iterator[Star]]
+FIRST: tuple[Family, ...] = (
+    ordinary, instrument, wrong_matches, reddened, pairs, compact, galaxies, leaks, discs, giants, dips, screens,
+    sparse,
+)  # fmt: skip
+LATER: tuple[Family, ...] = (further_signs,)

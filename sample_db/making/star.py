@@ -75,9 +75,13 @@ class Star:
     wise_offset_arcsec: tuple[float, float] = (0.0, 0.0)  # east, north of where the star was
     further: tuple[str, ...] = ()  # bands of the further tables
     sdss: bool = False
+    sdss_odd: Mapping[str, Any] = field(default_factory=dict)  # columns of SDSS that are not as usual
+    archives: Mapping[str, Mapping[str, Any]] = field(default_factory=dict)  # catalogue -> columns not as usual
     epochs: Mapping[str, tuple[float, ...]] = field(default_factory=dict)  # band -> mag offsets of single epochs
     neighbours: tuple[tuple[float, float, float, float], ...] = ()  # arcsec, angle, T_eff, mag fainter than it at Ks
+    neighbours_told: bool = True  # in the table of neighbours; else only 2MASS tells how near the nearest is
     dip: tuple[str, float] = ("", 0.0)  # "coloured" and A_V, or "grey" and the depth
+    curves: bool = False  # its dip is there as light curves
     spectrum: bool = False
     pictures: tuple[str, ...] = ()
     control: bool = False

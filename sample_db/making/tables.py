@@ -9,6 +9,17 @@ from typing import Any
 
 import numpy as np
 from astropy.table import Table
+from making.archives import (
+    ARCHIVE_TABLE,
+    CURVES,
+    GLIMPSE_TABLE,
+    LAYOUTS,
+    WINDOWS,
+    archive_rows,
+    curve_rows,
+    head_of,
+    window_rows,
+)
 from making.catalogues import Observer
 from making.pictures import picture
 from making.sky import extinction, magnitude
@@ -177,7 +188,7 @@ def sdss_rows(stars: Sequence[Star], observer: Observer) -> Iterable[dict[str, A
                 f"psfMag_{band[-1]}": -9999.0 if missing else round(float(mag), 4),
                 f"psfMagErr_{band[-1]}": -9999.0 if missing else round(float(sigma), 4),
             }
-        yield row | {"type": 6, "clean": 1}
+        yield row | {"type": 6, "clean": 1, "flags_g": 0} | dict(star.sdss_odd)
 
 
 def long_rows(stars: Sequence[Star], observer: Observer) -> Iterable[list[Any]]:
@@ -238,7 +249,7 @@ def dip_rows(stars: Sequence[Star], observer: Observer, pivots: Mapping[str, flo
     wave = np.array([pivots[band] for band in DIP_BANDS])
     for number, star in enumerate(stars, 1):
         kind, size = star.dip
-        if not kind:
+        if not kind or star.curves:
             continue
         observer.turn_to(star, 4)
         depth = 1 - 10 ** (-0.4 * size * extinction(wave, 3.1)) if kind == "coloured" else np.full(wave.size, size)
@@ -253,7 +264,7 @@ def neighbour_table(stars: Sequence[Star], observer: Observer) -> Table:
     """Sources near some candidates."""
     rows = []
     for number, star in enumerate(stars, 1):
-        for near in star.neighbours:
+        for near in star.neighbours if star.neighbours_told else ():
             row: dict[str, Any] = {
                 "name": name_of(number),
                 "separation": round(near[0], 2),
@@ -313,6 +324,13 @@ def write_all(folder: Path, stars: Sequence[Star], observer: Observer) -> None:
     write_csv(
         folder / "dips.csv", ["name", "event", "band", "depth", "error", "epoch"], dip_rows(stars, observer, pivots)
     )
+    write_csv(folder / CURVES, ["name", "band", "time", "flux", "error"], curve_rows(stars, observer, pivots))
+    write_csv(folder / WINDOWS, ["name", "event", "start", "end"], window_rows(stars))
+    others = tuple(name for name in LAYOUTS if name != "GLIMPSE")
+    for file, names in ((ARCHIVE_TABLE, others), (GLIMPSE_TABLE, ("GLIMPSE",))):
+        rows = archive_rows(stars, observer, names)
+        head = head_of(rows)
+        write_csv(folder / file, head, [[row.get(key, "") for key in head] for row in rows])
     neighbour_table(stars, observer).write(folder / "neighbours.ecsv", overwrite=True)
     spectra_table(stars, observer).write(folder / "spectra.fits", overwrite=True)
     pictures = folder / "cutouts"
