@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 
 import pytest
 
@@ -20,8 +21,11 @@ NAN = math.nan
         (Param(310.0, 262.0, 388.0), "310 +78 -48"),
         (Param(0.0212, 0.0209, 0.0215), "0.0212 +-0.0003"),
         (Param(1.41, 1.298, 1.55), "1.41 +0.14 -0.11"),
-        (Param(0.0, 0.0, 0.12, limit=True), "<0.12 95%"),
-        (Param(24044.0, 24044.0, 24044.0, limit=True), ">24044 95%"),
+        (Param(0.0, 0.0, 0.12, limit=True), "<0.12 (95 %)"),
+        (Param(4.9, 4.2, 4.9, limit=True), ">4.2 (95 %)"),
+        (Param(0.65, 0.0, 0.65, limit=True), "any up to 0.65"),
+        (Param(33300.0, 30723.4, 33300.0, limit=True), ">30700 (95 %)"),
+        (Param(24044.0, 24044.0, 24044.0, limit=True), "24044 at its bound"),
         (Param(2e-5, 1e-5, 3e-5), "0.000020 +-0.000010"),
         (Param(5000.0, NAN, NAN), "5000"),
         (Param(NAN, NAN, NAN), "--"),
@@ -30,6 +34,20 @@ NAN = math.nan
 )
 def test_value_is_written_as_far_as_its_error_reaches(param, text):
     assert "".join(value_and_error(param)) == text
+
+
+@pytest.mark.parametrize("width", [28, 40, 74])
+def test_limit_at_the_upper_bound_of_a_fit_reads_as_a_lower_limit_in_plain_words(width):
+    """A value at its upper bound is bounded from below alone, and not even so where the whole range fits as well."""
+    params = {
+        "av": Param(4.9, 4.2, 4.9, "mag", limit=True),
+        "dust_temperature": Param(2000.0, 20.0, 2000.0, "K", limit=True),
+        "teff": Param(5772.0, 5700.0, 5850.0, "K"),
+    }
+    said = [" ".join(row_text(line).split()) for line in param_rows(width, params)]
+    assert ">4.2 (95 %)" in said[0] or ">4.2 (95%)" in said[0]
+    assert re.search(r"any (up )?to 2000", said[1])
+    assert not any("> 0" in line or ">0" in line or ">20" in line for line in said)
 
 
 @pytest.mark.parametrize("width", [28, 40, 74])
@@ -64,7 +82,7 @@ def test_held_number_shows_that_it_is_held_and_chosen():
 
 @pytest.mark.parametrize(
     ("p", "words"),
-    [(8e-24, "once in 1e23"), (0.002, "once in 500"), (0.9, "nearly always"), (0.0, "practically never")],
+    [(8e-24, "once in 1e23"), (0.002, "once in 500"), (0.9, "more often than not"), (0.0, "practically never")],
 )
 def test_chance_is_told_in_words_at_any_width(p, words):
     for width in (28, 70):

@@ -30,6 +30,8 @@ RULING_WORDS = MappingProxyType(
     {"explains": "explains", "short": "falls short", "unclear": "unclear", "withdrawn": "withdrawn"}
 )
 
+LEAST_P = 1e-300  # doubles end a little below (IEEE 754: 4.9e-324), and their last digits are lost before
+
 # Terminals differ in how wide they draw what these join or select (UAX 11, UTS 51); in columns they are left out.
 _JOINERS = re.compile("[\u200d\ufe0e\ufe0f]")
 _LINE_ENDS = re.compile("\r\n|\r|\n")
@@ -150,21 +152,34 @@ def plural(count: int, word: str, many: str = "") -> str:
     return f"{thousands(count)} {word if count == 1 else many or word + 's'}"
 
 
+def p_text(p: float | None, digits: int = 1) -> str:
+    """A chance probability; one too small for the machine's numbers reads as below them, never as 0.
+
+    >>> p_text(0.6, 2), p_text(2.31e-44), p_text(0.0), p_text(None)
+    ('0.60', '2e-44', '<1e-300', '--')
+    """
+    if p is not None and p < LEAST_P:
+        return f"<{LEAST_P:.0e}"
+    return number(p, digits)
+
+
 def once_in(p: float | None) -> str:
     """How often chance alone does as badly, in words.
 
-    >>> once_in(0.25), once_in(8e-24), once_in(None)
-    ('once in 4', 'once in 1e23', '--')
+    >>> once_in(0.25), once_in(8e-24), once_in(0.6), once_in(None)
+    ('once in 4', 'once in 1e23', 'more often than not', '--')
     """
     if p is None or math.isnan(p):
         return "--"
-    if p <= 0:
+    if p < LEAST_P:
         return "practically never"
-    if p >= 0.67:
+    if p > 0.95:
         return "nearly always"
+    if p > 0.5:
+        return "more often than not"
     odds = 1 / p
     if odds < 10:
-        return f"once in {odds:.0f}" if odds >= 1.95 else f"once in {odds:.1f}"
+        return f"once in {odds:.0f}"
     if odds < 1e6:
         return f"once in {thousands(int(float(f'{odds:.1e}')))}"
     return f"once in 1e{round(math.log10(odds))}"

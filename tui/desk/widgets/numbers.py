@@ -6,13 +6,19 @@ import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
-from tui.desk.text import decimal_aligned, number, once_in, safe
+from tui.desk.text import decimal_aligned, number, once_in, p_text, safe
 from tui.desk.text import fit as cut
 from tui.desk.widgets.rows import Row, Span, paragraph, row
 from tui.model import Evidence, Fit, Param
 
 WIDE = 40  # columns from which full names, both ends of intervals and all fits find room
 NOTHING = "--"
+LEVEL = " (95 %)"  # of a limit (Evidence keeps one-sided 95 % limits where a value lies at a bound)
+ROUNDING = 1e-6  # by which a limit may miss the bound that it lies at
+UP_TO = " up to "
+LEAST: Mapping[str, float] = {  # where the ranges of the fits begin; the others begin at 0
+    "dust_temperature": 20.0, "dust2_temperature": 20.0, "r_v": 2.3, "alpha": -math.inf,
+}  # fmt: skip
 
 
 @dataclass(frozen=True, slots=True)
@@ -39,6 +45,11 @@ NAMES: Mapping[str, ParamName] = {
     "dust2_temperature": ParamName("second dust temperature", "T dust2", "K"),
     "dust2_fractional_luminosity": ParamName("second dust's share", "L dust2", "%", 100.0),
     "dust2_radius": ParamName("second dust's distance", "R dust2", "au"),
+    "radius_ratio": ParamName("radius, second/first", "R 2nd/1st"),
+    "slope": ParamName("slope of the power law", "slope"),
+    "a_055": ParamName("dimming at 0.55 micron", "A 0.55", "mag"),
+    "alpha": ParamName("slope alpha", "alpha"),
+    "depth": ParamName("depth", "depth", "%", 100.0),
     "compact_temperature": ParamName("compact temperature", "T comp", "K"),
     "compact_radius": ParamName("compact radius", "R comp", "R_sun"),
 }
@@ -104,7 +115,7 @@ def param_rows(width: int, params: Mapping[str, Param], held: Sequence[str] = ()
     ]
     values, errors = [], []
     for key, name, param in zip(params, names, params.values(), strict=True):
-        value, error = value_and_error(param, name.factor, wide)
+        value, error = value_and_error(param, name.factor, wide, LEAST.get(key, 0.0))
         values.append(value if key not in held else number(param.value * name.factor, 4))
         errors.append(error if key not in held else " held")
     label_width = min(max(len(label) for label in labels), 24 if wide else 11)
@@ -129,6 +140,8 @@ def squeezed(error: str, room: int) -> str:
     """
     if len(error) <= room:
         return error
+    if error.startswith(UP_TO):
+        return error.replace(UP_TO, " to ")
     tight = error.replace(" ", "")
     if len(tight) <= room or not tight.startswith("+") or tight.startswith("+-"):
         return tight
@@ -145,21 +158,26 @@ def param_name(key: str, param: Param) -> ParamName:
     return ParamName(plain_name, plain_name, safe(param.unit))
 
 
-def value_and_error(param: Param, factor: float = 1.0, wide: bool = False) -> tuple[str, str]:
+def value_and_error(
+    param: Param, factor: float = 1.0, wide: bool = False, least: float = 0.0
+) -> tuple[str, str]:
     """A value as far as its error reaches, and the error (one digit, two where it begins with 1); limits read as such.
+
+    Args:
+        least: the least value that the fits allow: a lower limit there says nothing, and is written as that.
 
     >>> value_and_error(Param(5612.3, 5572.0, 5652.0, "K"))
     ('5612', ' +-40')
     >>> value_and_error(Param(0.31, 0.2, 0.5, ""))
     ('0.31', ' +0.19 -0.11')
+    >>> value_and_error(Param(4.9, 4.2, 4.9, "mag", limit=True)), value_and_error(Param(4.9, 0.0, 4.9, "mag", limit=True))
+    (('>4.2', ' (95 %)'), ('any', ' up to 4.9'))
     """
     value, low, high = (factor * end for end in (param.value, param.low, param.high))
     if not math.isfinite(value):
         return NOTHING, ""
     if param.limit:
-        if math.isfinite(high) and high > value:
-            return f"<{number(high, 2)}", " 95%"
-        return f">{number(low, 2)}", " 95%"
+        return _limit(value, low, high, factor * least)
     up, down = high - value, value - low
     spread = [size for size in (up, down) if math.isfinite(size) and size > 0]
     if not spread:
@@ -175,14 +193,42 @@ def value_and_error(param: Param, factor: float = 1.0, wide: bool = False) -> tu
     return text, f" +{more} -{less}"
 
 
+def _limit(value: float, low: float, high: float, least: float) -> tuple[str, str]:
+    """A one-sided 95 % limit: below a value at the lower bound, above one at the upper bound, or none at all."""
+    if math.isfinite(high) and high > value:
+        return f"<{_limit_text(high)}", LEVEL
+    if math.isfinite(low) and least * (1 + ROUNDING) < low < value:
+        return f">{_limit_text(low)}", LEVEL
+    if low == value:
+        return number(value, 4), " at its bound"
+    return "any", f"{UP_TO}{_limit_text(value)}"
+
+
+def _limit_text(value: float) -> str:
+    """Two digits, three where a temperature or the like has as many before its point."""
+    return number(value, 2) if abs(value) < 1000 else number(float(f"{value:.3g}"), 3)
+
+
 def _error_digits(error: float) -> int:
     return 2 if f"{error:e}"[0] == "1" else 1
+
+
+def param_words(key: str, param: Param) -> str:
+    """A parameter in running text: name, value, interval or limit, unit.
+
+    >>> param_words("av", Param(0.0, 0.0, 0.55, "mag", limit=True))
+    'extinction A_V <0.55 mag (95 %)'
+    """
+    name = param_name(key, param)
+    value, error = value_and_error(param, name.factor, least=LEAST.get(key, 0.0))
+    parts = (value, name.unit, error.strip()) if error == LEVEL else (value, error.strip(), name.unit)
+    return " ".join(part for part in (name.label, *parts) if part)
 
 
 def fits_table(width: int, fits: Sequence[Fit], shown: int) -> list[Row]:
     """All fits of a check, best first."""
     columns = [[f"{fit.chi2:.1f}" for fit in fits], [str(fit.dof) for fit in fits],
-               [number(fit.p, 1) for fit in fits], [f"{fit.bic:.1f}" for fit in fits]]  # fmt: skip
+               [p_text(fit.p) for fit in fits], [f"{fit.bic:.1f}" for fit in fits]]  # fmt: skip
     aligned = [decimal_aligned(column) for column in columns]
     room = max(8, min(24, width - 33))
     rows = [
@@ -203,7 +249,7 @@ def fits_table(width: int, fits: Sequence[Fit], shown: int) -> list[Row]:
 
 def _statistics(fit: Fit) -> list[str]:
     chi2, bic = decimal_aligned([tenth(fit.chi2), tenth(fit.bic)])
-    return [chi2, f"{fit.dof}  ", _whole_e(number(fit.p, 1)) if fit.p != 0 else "<1e-300", bic]
+    return [chi2, f"{fit.dof}  ", _whole_e(p_text(fit.p)), bic]
 
 
 def _whole_e(text: str) -> str:

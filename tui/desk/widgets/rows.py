@@ -23,6 +23,7 @@ class Span(NamedTuple):
 
 
 Row = list[Span]
+LEAST_BESIDE = 8  # columns: a head that leaves less room lets its text run over rather than stand letter by letter
 
 
 def row(*parts: str | Span | tuple[str, str]) -> Row:
@@ -87,6 +88,17 @@ def paragraph(text: str, width: int, style: str = "", indent: int = 0, lead: str
             rest = wrap(" ".join(rest), max(1, width - indent))
         rows += [[Span(" " * indent + part, style)] for part in rest]
     return rows
+
+
+def hanging(head: Row, text: str, width: int, style: str = "") -> list[Row]:
+    """`text`, made safe, beside a head: its further lines stand under its first, none wider than `width` columns.
+
+    >>> [row_text(line) for line in hanging(row("a key  "), "what it does", 15)]
+    ['a key  what it', '       does']
+    """
+    wide = row_width(head)
+    lines = paragraph(text, max(LEAST_BESIDE, width - wide), style)
+    return [[*(head if first is lines[0] else [Span(" " * wide)]), *first] for first in lines]
 
 
 def beside(left: list[Row], right: list[Row], left_width: int, gap: int = 1) -> list[Row]:
