@@ -4,10 +4,11 @@ from __future__ import annotations
 
 import json
 import math
+from dataclasses import replace
 
 from tui.model import CHECKS, Dip, Evidence, Fit
 from tui.workflow.session import Session
-from tui.workflow.showing import dip_dicts, dossier, evidence_dict
+from tui.workflow.showing import dip_dicts, dossier, drawn_dict, drawn_of, evidence_dict
 
 
 def fit(model):
@@ -44,3 +45,16 @@ def test_a_single_event_needs_no_label():
 def test_dips_without_evidence_are_still_shown():
     (only,) = dip_dicts((Dip("a", "B", 0.1, 0.01),), None)
     assert only["depths"] and not only["fits"] and evidence_dict(None) == {}
+
+
+def test_a_refused_mixture_is_drawn_anew_the_same_each_time(queue, tmp_path, monkeypatch):
+    monkeypatch.setenv("PLAINLIGHT_CACHE", str(tmp_path / "cache"))
+    with Session.open(queue, "heron") as session:
+        candidate, basis = session.candidate("SM-0001"), session.basis
+    rows = [replace(one, flux_jy=one.flux_jy / (3 if one.band == "H" else 1)) for one in candidate.measurements]
+    notched = replace(candidate, measurements=tuple(rows))
+    refused = Evidence("mixture", 1, False, digest="ab" * 32)
+    first, again = (drawn_of(notched, refused, basis) for _ in range(2))
+    assert first == again and first is not None and first.as_bad == 0
+    assert drawn_dict(first) == {"bootstrap": {"draws": first.draws, "as_bad": 0, "p": 1 / (first.draws + 1)}}
+    assert drawn_of(notched, replace(refused, adequate=True), basis) is None and drawn_dict(None) == {}

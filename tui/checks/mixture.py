@@ -51,14 +51,20 @@ def assess(
     Raises:
         TemplateError: `templates` lacks a band that some candidate has.
     """
-    if templates.photosphere in BROAD:
-        candidates = [_broad(candidate) for candidate in candidates]
-    nothing = np.full(len(candidates), np.nan)
-    problem = build_problem(
-        candidates, templates, parallaxes=(nothing, nothing), av_max=nothing, common=settings.common
-    )
+    candidates = broadened(candidates, templates)
     cautions = [(SPECTRUM_CAUTION,) if one.spectrum is not None else () for one in candidates]
-    return assess_problem(problem, templates, settings, known_chi2, cautions)
+    return assess_problem(problem_of(candidates, templates, settings), templates, settings, known_chi2, cautions)
+
+
+def problem_of(candidates: Sequence[Candidate], templates: Templates, settings: Settings) -> Problem:
+    """The fluxes that are bounded; nothing else of a candidate matters."""
+    nothing = np.full(len(candidates), np.nan)
+    return build_problem(candidates, templates, parallaxes=(nothing, nothing), av_max=nothing, common=settings.common)
+
+
+def broadened(candidates: Sequence[Candidate], templates: Templates) -> list[Candidate]:
+    """The candidates, without the points of their spectra where the photospheres have no lines."""
+    return [_broad(one) for one in candidates] if templates.photosphere in BROAD else list(candidates)
 
 
 def _broad(candidate: Candidate) -> Candidate:

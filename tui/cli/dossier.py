@@ -28,6 +28,8 @@ def print_dossier(found: Dossier) -> None:
         if evidence is not None and (evidence.fits or evidence.cautions or evidence.facts):
             heading(f"{title}: {adequacy_words(evidence)}")
             print_evidence(evidence)
+            if kind == "mixture" and found.drawn:
+                line(found.drawn.sentence)
             print_depths(found.candidate.dips if kind == "dips" else ())
     print_look_alikes(found.look_alikes)
 

@@ -11,6 +11,8 @@ from tui.model import CHECKS, Candidate, Dip, Evidence, Fit, Measurement, plain
 from tui.workflow.records import CandidateView
 
 if TYPE_CHECKING:
+    from tui.checks.mixture_draws import Drawn
+    from tui.workflow.basis import Basis
     from tui.workflow.lookalikes import LookAlikes
     from tui.workflow.session import Session
 
@@ -27,6 +29,7 @@ class Dossier:
     oddness: Mapping[str, Any]  # sigma, band, pull; empty where there is no evidence for `star`
     measurements: tuple[Measurement, ...]  # by wavelength
     look_alikes: LookAlikes | None = None  # None where they were not looked for, or no pulls are known
+    drawn: Drawn | None = None  # fluxes drawn from the nearest mixture; None where mixtures are not refused
 
     def as_dict(self) -> dict[str, Any]:
         """The document of `show --json`: JSON values only, in a fixed order of keys."""
@@ -36,7 +39,7 @@ class Dossier:
             "oddness": plain(self.oddness),
             "measurements": [measurement_dict(one) for one in self.measurements],
             "checks": {check: self.check_dict(check) for check in CHECKS},
-            "mixture": evidence_dict(self.evidence.get("mixture")),
+            "mixture": evidence_dict(self.evidence.get("mixture")) | drawn_dict(self.drawn),
             "dips": dip_dicts(self.candidate.dips, self.evidence.get("dips")),
             "look_alikes": self.look_alikes.as_dict() if self.look_alikes else None,
         }
@@ -75,7 +78,26 @@ def dossier(session: Session, name: str) -> Dossier:
 
     alike = session.look_alikes(name, evidence.get("star")) if session.candidate_count() <= LONG_QUEUE else None
     oddness = oddness_dict(evidence.get("star"))
-    return Dossier(candidate, evidence, session.view(name), oddness, tuple(measured), alike)
+    drawn = drawn_of(candidate, evidence.get("mixture"), session.basis)
+    return Dossier(candidate, evidence, session.view(name), oddness, tuple(measured), alike, drawn)
+
+
+def drawn_of(candidate: Candidate, mixture: Evidence | None, basis: Basis) -> Drawn | None:
+    """Fluxes drawn from the nearest mixture, the same each time for the same evidence."""
+    if mixture is None or mixture.adequate is not False:
+        return None
+    import numpy as np
+
+    from tui.checks.mixture_draws import drawn
+    from tui.workflow.spectral_grids import templates_of
+
+    rng = np.random.default_rng(int(mixture.digest[:16], 16))
+    return drawn(candidate, templates_of(candidate, basis), basis.settings, rng)
+
+
+def drawn_dict(found: Drawn | None) -> dict[str, Any]:
+    """What the draws say, beside the bound; nothing where there are none."""
+    return {"bootstrap": {"draws": found.draws, "as_bad": found.as_bad, "p": found.p}} if found else {}
 
 
 def oddness_dict(star: Evidence | None) -> dict[str, Any]:
