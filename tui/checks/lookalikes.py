@@ -84,12 +84,21 @@ def cosines(target: FloatArray, queue: Pulls) -> FloatArray:
     return np.where(usable, product / np.where(usable, norm, 1.0), np.nan).astype(np.float64)
 
 
-def shuffled(queue: Pulls, rng: np.random.Generator) -> Pulls:
-    """The same pulls dealt anew within each band, among the candidates that have it."""
-    value = queue.value.copy()
-    for column in range(value.shape[1]):
-        rows = np.flatnonzero(queue.present[:, column])
-        value[rows, column] = value[rng.permutation(rows), column]
+def holders(queue: Pulls) -> list[tuple[Rows, NDArray[np.float32]]]:
+    """For each band the rows that have it and their pulls: what a permutation deals anew."""
+    rows = [np.flatnonzero(present) for present in queue.present.T]
+    return [(found, queue.value[found, column]) for column, found in enumerate(rows)]
+
+
+def shuffled(queue: Pulls, rng: np.random.Generator, held: Sequence[tuple[Rows, NDArray[np.float32]]] = ()) -> Pulls:
+    """The same pulls dealt anew within each band, among the candidates that have it.
+
+    Args:
+        held: `holders` of the queue, for whoever deals many times.
+    """
+    value = np.zeros_like(queue.value)
+    for column, (rows, pulls) in enumerate(held or holders(queue)):
+        value[rows, column] = rng.permutation(pulls)
     return Pulls(value, queue.present, np.square(value))
 
 
@@ -145,8 +154,9 @@ def chance_counts(
     if len(queue) > sample:
         part = take(queue, rng.choice(len(queue), sample, replace=False))
         scale = len(queue) / sample
+    held = holders(part)
     return np.array(
-        [scale * np.sum(cosines(target, shuffled(part, rng)) >= COSINE) for _ in range(permutations)], dtype=float
+        [scale * np.sum(cosines(target, shuffled(part, rng, held)) >= COSINE) for _ in range(permutations)], dtype=float
     )
 
 
@@ -229,7 +239,9 @@ def tail(counts: FloatArray, seen: int, permutations: int) -> float:
 
 def permuted_counts(targets: Pulls, queue: Pulls, rng: np.random.Generator, permutations: int) -> FloatArray:
     """Look-alikes of each target in permuted queues, shape (permutations, C)."""
-    return np.array([alike_many(targets, shuffled(queue, rng)).sum(axis=1) for _ in range(permutations)], dtype=float)
+    held = holders(queue)
+    drawn = (alike_many(targets, shuffled(queue, rng, held)) for _ in range(permutations))
+    return np.array([alike.sum(axis=1) for alike in drawn], dtype=float)
 
 
 def take(queue: Pulls, rows: Rows) -> Pulls:
