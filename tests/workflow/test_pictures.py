@@ -93,6 +93,39 @@ def test_a_bomb_is_not_unpacked(queue, folder, packer):
     assert peak < 10_000_000
 
 
+def head_of(axes, more=()):
+    """The head of a FITS file of bytes with such axes, whatever follows it."""
+    cards = ["SIMPLE  =                    T", "BITPIX  =                    8", f"NAXIS   = {len(axes):20d}"]
+    cards += [f"NAXIS{number:<3}= {size:20d}" for number, size in enumerate(axes, 1)]
+    text = "".join(card.ljust(80) for card in (*cards, *more, "END"))
+    return text.ljust(-(-len(text) // 2880) * 2880).encode()
+
+
+HOSTILE = {
+    "20,000 squared": head_of((20_000, 20_000)),
+    "five axes": head_of((3,) * 5) + b"\0" * 2880,
+    "999 axes": head_of((1,) * 999),
+    "no pixels": head_of((0, 0)),
+    "beyond any disk": head_of((2**31 - 1, 2**31 - 1)),
+    "fewer than none": head_of((-5, 5)),
+    "truncated": head_of((900, 900)) + b"\0" * 100,
+    "counts that lie": head_of((2, 2), ("PCOUNT  =        9999999999", "GCOUNT  =        9999999999")),
+    "a head without end": head_of((9, 9), ["COMMENT"] * 200_000),
+    "blanks": b"SIMPLE".ljust(20_000_000),
+}
+
+
+@pytest.mark.parametrize("kind", HOSTILE)
+def test_hostile_files_take_no_memory(queue, folder, kind):
+    (folder / "SM-0001_W3.fits").write_bytes(HOSTILE[kind])
+    tracemalloc.start()
+    done = loaded(queue, folder)
+    peak = tracemalloc.get_traced_memory()[1]
+    tracemalloc.stop()
+    assert done.counts["cutouts"] == 0 and len(done.refused) == 1 and "\n" not in str(done.refused[0])
+    assert peak < 10_000_000
+
+
 def test_tiles_compressed_inside_the_file_are_not_unpacked_either(queue, folder):
     packed = fits.CompImageHDU(np.zeros((500, 500), dtype=np.int32), compression_type="GZIP_1")
     fits.HDUList([fits.PrimaryHDU(), packed]).writeto(folder / "SM-0001_W3.fits")

@@ -25,11 +25,12 @@ if TYPE_CHECKING:
 
 ENDINGS = (".fits", ".fit", ".fts")
 MAX_BYTES = 64_000_000  # of one file: far more than a cutout of MAX_PIXELS needs
+MAX_HEAD = 288_000  # bytes of the first head: a hundred blocks of 36 cards; usual ones have one to five
 MAX_HDUS = 16  # looked at before a picture must have been found
 TOLD = ("BUNIT", "TELESCOP", "INSTRUME", "DATE-OBS", "SURVEY")  # header cards kept with the picture
 # What a packed file begins with, and what unpacks it. A small packed file can hold more than any memory does.
 PACKED = {b"\x1f\x8b": "gunzip", b"BZh": "bunzip2", b"PK": "unzip", b"\xfd7zXZ": "unxz", b"\x1f\x9d": "uncompress"}
-FITS_START = b"SIMPLE"
+FITS_START, FITS_END = b"SIMPLE", b"END".ljust(80)
 
 
 def load_cutouts(connection: sqlite3.Connection, folder: str, bands: Mapping[str, Band], done: Loaded) -> None:
@@ -83,12 +84,15 @@ def read_picture(path: Path, band: str) -> Cutout | str:
         if path.stat().st_size > MAX_BYTES:
             return f"the file is larger than {MAX_BYTES // 1_000_000} MB; cut it to the candidate's surroundings."
         with path.open("rb") as stream:
-            start = stream.read(6)
+            head = stream.read(MAX_HEAD)
+        start = head[:6]
         for magic, mend in PACKED.items():
             if start.startswith(magic):
                 return f"the file is compressed: unpack it first ({mend})."
         if start != FITS_START:
             return "the file does not begin as a FITS file does."
+        if len(head) == MAX_HEAD and not any(head[at : at + 80] == FITS_END for at in range(0, MAX_HEAD, 80)):
+            return f"its head is longer than {MAX_HEAD // 1000} kB; no picture needs so many cards."
         with warnings.catch_warnings():
             warnings.simplefilter("ignore", AstropyWarning)
             with fits.open(path, memmap=False, lazy_load_hdus=True, disable_image_compression=True) as hdus:
