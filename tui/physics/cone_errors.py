@@ -99,7 +99,7 @@ def consistent_bound(generators: Generators, errors: ErrorModel, refuse: float, 
     for limit_k in cool_limits(errors):
         rows = np.flatnonzero(~work.natural & (work.bound.p < refuse))
         fluxes = errors.take(rows).first(limit_k)
-        rows = rows[work.proven(rows, fluxes) >= refuse]
+        rows = rows[work.proven(rows, fluxes)[1] >= refuse]
         if len(rows):
             local = errors.take(rows)
             again = _Work(generators.cooler(limit_k), local, enough)
@@ -125,12 +125,12 @@ class _Work:
             np.full((count, 1), EMPTY), np.zeros((count, 1)), errors.first().covariance,
         )  # fmt: skip
 
-    def proven(self, rows: IntArray, fluxes: Fluxes) -> FloatArray:
-        """p by the weights found, which hold for every mixture, with other errors."""
+    def proven(self, rows: IntArray, fluxes: Fluxes) -> tuple[FloatArray, FloatArray]:
+        """Chi-square and p by the weights found, which hold for every mixture, with other errors."""
         white = whiten(fluxes)
         weights = self.bound.weights[rows]
         chi2, _ = certificate(white.flux, fluxes.covariance, weights, white.weight, np.zeros(len(rows)))
-        return p_bound(chi2, white.points, np.sum(white.target**2, axis=1))
+        return chi2, p_bound(chi2, white.points, np.sum(white.target**2, axis=1))
 
     def settle(self, fluxes: Fluxes, depths: Sequence[str], hopeless: float = 0.0) -> None:
         """Solve on each grid in turn until the errors no longer move chi-square.
@@ -149,11 +149,26 @@ class _Work:
                 chi2, natural = self.judge(rows, fluxes)
                 moved = np.abs(chi2 - self.bound.feasible[rows]) >= np.maximum(SETTLED, SETTLED_SHARE * chi2)
                 again = ~natural & (moved | ((depth != "coarse") & (number == 0)))
+                if depth == "fine" and number:
+                    again[again] = ~self.stands(rows[again], fluxes.take(np.flatnonzero(again)), chi2[again])
                 self.natural[rows[~again & self.left[rows]]] = True
                 rows = rows[again]
                 if len(rows):
                     self.solve(rows, fluxes.take(again), self.pool(rows), depth)
         self.natural |= self.left
+
+    def stands(self, rows: IntArray, fluxes: Fluxes, chi2: FloatArray) -> BoolArray:
+        """Whether the proof found with other errors shows the mixture to be the nearest with these; noted where so.
+
+        Args:
+            chi2: of the mixture found, with these errors.
+        """
+        least, p = self.proven(rows, fluxes)
+        near = chi2 - least < np.maximum(SETTLED, SETTLED_SHARE * chi2)
+        done, old = rows[near], self.bound
+        for name, value in (("chi2", least), ("feasible", chi2), ("p", p), ("covariance", fluxes.covariance)):
+            getattr(old, name)[done] = value[near]
+        return near
 
     def adopt(self, rows: IntArray, other: _Work) -> None:
         """Take over those of another solve of `rows` that came out natural."""
