@@ -49,8 +49,9 @@ def light_curve_dips(
             for rows in events.values():
                 side.refuse(rows[0], "event", f"{band} has fewer than {FEWEST_OUTSIDE} points outside all events")
             continue
+        usual = _usual(flux, error, outside)
         for event, rows in events.items():
-            dip = _dip(event, band, flux, error, rows, outside)
+            dip = _dip(event, band, flux, error, rows, usual)
             if -1 < dip.depth <= 1:
                 found[name].append(dip)
             else:
@@ -121,12 +122,22 @@ def _groups(
     return groups
 
 
-def _dip(event: str, band: str, flux: FloatArray, error: FloatArray, rows: list[int], outside: list[int]) -> Dip:
+def _usual(flux: FloatArray, error: FloatArray, outside: list[int]) -> tuple[float, float, float]:
+    """The level outside all events, its error, and the spread about it, for points without an error of their own."""
+    spread = float(np.std(flux[outside], ddof=1))
+    return *_mean(flux[outside], _sigma(error, outside, spread)), spread
+
+
+def _sigma(error: FloatArray, rows: list[int], spread: float) -> FloatArray:
+    return np.where(np.isfinite(error[rows]), error[rows], spread)
+
+
+def _dip(
+    event: str, band: str, flux: FloatArray, error: FloatArray, rows: list[int], usual: tuple[float, float, float]
+) -> Dip:
     """Depth 1 - inside/outside, with both means' errors."""
-    spread = float(np.std(flux[outside], ddof=1))  # where a point has no error of its own
-    sigma = np.where(np.isfinite(error), error, spread)
-    level, level_error = _mean(flux[outside], sigma[outside])
-    low, low_error = _mean(flux[rows], sigma[rows])
+    level, level_error, spread = usual
+    low, low_error = _mean(flux[rows], _sigma(error, rows, spread))
     ratio = low / level if level else math.nan
     ratio_error = math.hypot(low_error, ratio * level_error) / abs(level) if level else math.nan
     return Dip(event, band, 1.0 - ratio, ratio_error if ratio_error > 0 else math.nan)

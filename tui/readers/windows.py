@@ -46,11 +46,13 @@ class Windows:
 
     def events(self, name: str, band: str, times: FloatArray) -> list[str]:
         """The event of each time of one light curve, "" outside all windows."""
-        found = [""] * len(times)
+        found, order = [""] * len(times), np.argsort(times)
+        ordered = times[order]
         for window in self.by_name.get(name, ()):
             if window.band not in ("", band):
                 continue
-            for place in np.flatnonzero((window.start <= times) & (times <= window.end)).tolist():
+            first, last = np.searchsorted(ordered, window.start), np.searchsorted(ordered, window.end, side="right")
+            for place in order[first:last].tolist():
                 found[place] = found[place] or window.event
                 self.reached.add(window)
         return found
