@@ -11,10 +11,10 @@ from time import monotonic
 from typing import TYPE_CHECKING, Any
 
 from textual import events
-from textual.app import App
 from textual.binding import Binding
 from textual.screen import Screen
 
+from tui.desk.guard import Guarded
 from tui.desk.help import BREAK_AFTER_S, BREAK_LINE
 from tui.desk.keys import checked_keymap
 from tui.desk.text import clock
@@ -28,7 +28,7 @@ SMALLEST = (80, 24)
 GRACE_S = 2.0  # after a signal, for putting the terminal back as it was
 
 
-class Desk(App[None], inherit_bindings=False):
+class Desk(Guarded, inherit_bindings=False):
     """Everything a reader sees; what a key does to the queue is the session's work."""
 
     TITLE = "Plainlight"
