@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import threading
 from array import array
+from contextlib import contextmanager
 from types import SimpleNamespace
 
 import numpy as np
@@ -56,6 +57,7 @@ class FakeSession:
         self.fail: Exception | None = None
         self.tallied = None
         self.ordered_in: list[int] = []
+        self.asked = threading.local()  # by each thread: whether its answer is still wanted
 
     # --- life ---
 
@@ -73,6 +75,11 @@ class FakeSession:
 
     def data_version(self) -> int:
         return self.version
+
+    @contextmanager
+    def while_wanted(self, is_wanted):
+        self.asked.is_wanted = is_wanted
+        yield
 
     # --- the queue ---
 

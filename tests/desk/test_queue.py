@@ -299,6 +299,33 @@ def test_typing_is_never_held_up_by_a_slow_search(million_session, drive, settle
     drive(million_session, steps)
 
 
+def test_typing_on_gives_up_the_search_that_runs(fake_session, drive, settled, screen_text, monkeypatch):
+    find, begun, given_up = fake_session.find, threading.Event(), threading.Event()
+
+    def endless(text, substring=False, limit=-1):
+        if substring and text == "00":
+            begun.set()
+            while fake_session.asked.is_wanted():
+                given_up.wait(0.001)  # lets the other thread go on
+            given_up.set()
+            raise StoreError("interrupted")
+        return find(text, substring, limit)
+
+    fake_session.find = endless
+    monkeypatch.setattr("tui.desk.queue_order.REST_S", 0)
+
+    async def steps(app, pilot):
+        await pilot.press("slash", *"00")
+        while not begun.is_set():
+            await pilot.pause()
+        await pilot.press("1")
+        await settled(app, pilot)
+        assert given_up.is_set() and "interrupted" not in screen_text(app)
+        assert [fake_session.names[one] for one in app.screen.query_one(CandidateList).ids][:2] == ["SM-0001", "SM-0010"]
+
+    drive(fake_session, steps)
+
+
 def test_a_row_gone_from_the_queue_is_a_plain_line(fake_session, drive, screen_text, settled):
     async def steps(app, pilot):
         candidates = app.screen.query_one(CandidateList)

@@ -4,13 +4,15 @@ from __future__ import annotations
 
 import sqlite3
 from array import array
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence
+from contextlib import AbstractContextManager
 from itertools import count
 from typing import TYPE_CHECKING
 
 from tui.errors import HandleError, UnknownNameError
 from tui.model import CHECKS, KINDS, Band, Candidate, Evidence, Fit, Reviewer, Ruling, Settings
 from tui.store import candidates, claims, connect, drafts, evidence, reviewers, rulings, views
+from tui.store.stopping import while_wanted
 from tui.workflow.basis import read_basis
 from tui.workflow.clock import utc_now
 from tui.workflow.records import CandidateView, Cutout, Filter, QueueRow, StoryLine
@@ -102,6 +104,10 @@ class Session:
         return self.reviewer.id if self.reviewer else None
 
     # --- the queue ---
+
+    def while_wanted(self, is_wanted: Callable[[], bool]) -> AbstractContextManager[None]:
+        """Within it a long question that nobody waits for any more ends early, with StoreError."""
+        return while_wanted(self.connection, is_wanted)
 
     def order(
         self, sort: str = "oddness", descending: bool = True, where: Filter | None = None, limit: int | None = None

@@ -90,18 +90,23 @@ class QueueBackground(DeskScreen[None]):
 
     @work(thread=True, exclusive=True, group="order", exit_on_error=False)
     def make_order(self, view: QueueView, counting: bool) -> None:
-        """Runs in a thread, on a connection of its own; only posts."""
+        """Runs in a thread, on a connection of its own; only posts. A newer wish ends it, in the midst of a search."""
         worker = get_current_worker()
+
+        def is_wanted() -> bool:
+            return not worker.is_cancelled
+
         try:
-            with self.session.clone() as session:
-                for ids, is_whole in ordered(session, view, lambda: not worker.is_cancelled):
+            with self.session.clone() as session, session.while_wanted(is_wanted):
+                for ids, is_whole in ordered(session, view, is_wanted):
                     if worker.is_cancelled:
                         return
                     self.post_message(self.Ordered(view, ids, is_whole))
                 if counting:
                     self.post_message(self.Counted(session.counts()))
         except TuiError as error:
-            self.post_message(self.Failed(str(error)))
+            if is_wanted():  # else it is the search that was given up
+                self.post_message(self.Failed(str(error)))
 
     @on(Ordered)
     def list_order(self, message: Ordered) -> None:
