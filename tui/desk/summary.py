@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import TYPE_CHECKING
 
-from tui.desk.text import listed, plural, short_band
+from tui.desk.text import band_names, listed, plural
 from tui.model import CHECK_TITLES, Evidence
 
 if TYPE_CHECKING:
@@ -76,7 +76,7 @@ def _agree(pulls: Mapping[str, float]) -> str:
 
 
 def _bands(bands: list[str]) -> str:
-    names = [short_band(band) for band in bands]
+    names = band_names(bands)
     if len(names) > NAMED_BANDS:
         return f"{', '.join(names[: NAMED_BANDS - 1])} and {len(names) - NAMED_BANDS + 1} more bands"
     return listed(names)

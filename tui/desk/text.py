@@ -30,6 +30,7 @@ RULING_WORDS = MappingProxyType(
     {"explains": "explains", "short": "falls short", "unclear": "unclear", "withdrawn": "withdrawn"}
 )
 
+SPECTRUM_POINT = "spectrum:"  # how evidence names a point of the candidate's own spectrum, before its micron
 LEAST_P = 1e-300  # doubles end a little below (IEEE 754: 4.9e-324), and their last digits are lost before
 
 # Terminals differ in how wide they draw what these join or select (UAX 11, UTS 51); in columns they are left out.
@@ -103,11 +104,25 @@ def outcome_text(outcome: str) -> str:
 def short_band(band: str) -> str:
     """A band's shortest unmistakable name, as the tables that go in may call it too.
 
-    >>> [short_band(b) for b in ("Gaia_BP", "SDSS_u", "PS1_g", "W3")]
-    ['BP', 'u', 'PS1_g', 'W3']
+    >>> [short_band(b) for b in ("Gaia_BP", "SDSS_u", "PS1_g", "W3", "spectrum:0.55")]
+    ['BP', 'u', 'PS1_g', 'W3', 'spectrum 0.55']
     """
+    if band.startswith(SPECTRUM_POINT):
+        return safe(f"spectrum {band.removeprefix(SPECTRUM_POINT):.6}")
     prefix, _, rest = band.partition("_")
     return safe(rest if rest and prefix in {"Gaia", "SDSS", "GALEX", "AKARI"} else band)
+
+
+def band_names(bands: Iterable[str]) -> list[str]:
+    """Bands to be read, in their order; points of a spectrum, of which there are tens, as one.
+
+    >>> band_names(["W3", "spectrum:0.5", "Gaia_BP", "spectrum:0.52"])
+    ['W3', '2 points of the spectrum', 'BP']
+    """
+    bands = list(bands)
+    points = [band for band in bands if band.startswith(SPECTRUM_POINT)]
+    grouped = plural(len(points), "point") + " of the spectrum"
+    return [grouped if band in points else short_band(band) for band in bands if band not in points[1:]]
 
 
 def signed(value: float | None, decimals: int = 1) -> str:

@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Mapping
 
-from tui.desk.text import listed, short_band, signed
+from tui.desk.text import SPECTRUM_POINT, listed, short_band, signed
 from tui.model import Evidence, Fit
 
 STRONG = 3.0  # sigma: from here on a band is named as leaving the model
@@ -124,15 +124,16 @@ def _asked(check: str, strong: Mapping[str, float], bands: str) -> str:
 
 
 def _band_words(bands: Sequence[str]) -> list[str]:
-    """The bands in words, at less and less length."""
-    names = [short_band(band) for band in bands]
-    words = [listed(names)] if len(names) <= NAMED else []
+    """The bands in words, at less and less length; the points of a spectrum, of which there are tens, as one."""
+    names = [short_band(band) for band in bands if not band.startswith(SPECTRUM_POINT)]
+    own = ["its spectrum"] if len(names) < len(bands) else []
+    words = [listed([*names, *own])] if len(names) <= NAMED else []
     words += [
-        f"{', '.join(names[:count])} and {len(names) - count} more bands"
+        listed([*names[:count], f"{len(names) - count} more bands", *own])
         for count in (3, 2, 1)
         if len(names) > count + 1
     ]
-    return [*words, f"{len(names)} bands" if len(names) > 1 else names[0]]
+    return [*words, listed([f"{len(names)} bands" if len(names) > 1 else names[0], *own] if names else own)]
 
 
 def _way(pulls: Mapping[str, float], more: bool = False) -> str:

@@ -7,7 +7,7 @@ from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
 from tui.desk.widgets.plot_data import PlotData, PlotView
-from tui.desk.widgets.plot_points import fit_of, plot_curves, plot_points, spectrum_curve
+from tui.desk.widgets.plot_points import fit_of, plot_curves, plot_points, spectrum_curve, spectrum_pulls
 from tui.model import CHECK_TITLES, CHECKS, Band, Candidate, Evidence, Fit, Measurement, Param
 from tui.workflow.records import CandidateView, Cutout, StoryLine
 
@@ -29,7 +29,7 @@ class Loaded:
     bands: Mapping[str, Band]
 
 
-@dataclass
+@dataclass(repr=False)
 class Hand:
     """Probing by hand: what is held, what is dropped, and what came of it."""
 
@@ -52,7 +52,7 @@ class Hand:
         return bool(self.fixed or self.dropped)
 
 
-@dataclass
+@dataclass(repr=False)
 class Walk:
     """The state of the page; the screen changes it and draws from it."""
 
@@ -83,6 +83,10 @@ class Walk:
     hand: Hand | None = None
     recording: bool = False
     drawn: PlotData = field(default_factory=PlotData)  # what the plot shows, as `redrawn` last made it
+
+    def __repr__(self) -> str:
+        """Short: background work is described by its arguments each time it starts."""
+        return f"Walk({self.name!r}, {self.check!r})"
 
     @property
     def note(self) -> str:
@@ -139,7 +143,8 @@ class Walk:
         curves = plot_curves(
             curve, self.curves.get((self.compared, 0)), CHECK_TITLES.get(self.compared, "")
         ) + spectrum_curve(self.loaded.candidate)
-        return PlotData(points, curves, self._plot_message(own))
+        spectrum = spectrum_pulls(self.loaded.candidate, self.fit, curve)
+        return PlotData(points, curves, spectrum, self._plot_message(own))
 
     def measurement_under_cursor(self) -> Measurement | None:
         """The measurement that the plot's cursor is on."""

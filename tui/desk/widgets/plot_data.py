@@ -46,11 +46,25 @@ class PlotCurve:
 
 
 @dataclass(frozen=True, slots=True)
+class SpectrumPulls:
+    """How far the points of the candidate's own spectrum lie from the model: shapes (N,), micron and sigma.
+
+    `fitted`: they are in the fit, and the pulls are the fit's; else they are held against the drawn curve, in units of
+    the spectrum's own errors.
+    """
+
+    wave_um: FloatArray
+    pulls: FloatArray
+    fitted: bool
+
+
+@dataclass(frozen=True, slots=True)
 class PlotData:
     """All that one plot shows of one candidate."""
 
     points: tuple[PlotPoint, ...] = ()
     curves: tuple[PlotCurve, ...] = ()
+    spectrum: SpectrumPulls | None = None
     message: str = ""  # in place of curves: why there are none
 
 

@@ -43,7 +43,14 @@ def _lines(plot: PlotData, unicode: bool) -> list[Row]:
         sample = dash_sample(COMPONENT_DASH[turn]) if unicode else curve.letter * 3
         lead = f"{sample}{curve.letter}" if unicode and curve.letter else sample
         entries.append([Span(lead, f"component-{'abcd'[turn]}"), Span(f" {curve.label}")])
-    return entries
+    return entries + [_spectrum(plot, unicode) for curve in plot.curves if curve.role == "spectrum"]
+
+
+def _spectrum(plot: PlotData, unicode: bool) -> Row:
+    """The candidate's own spectrum, and whether its points are in the fit."""
+    fitted = plot.spectrum is None or plot.spectrum.fitted
+    sample = dash_sample(SPECTRUM_DASH, 2) if unicode else ",,,"
+    return [Span(sample, "spectrum"), Span(" spectrum" if fitted else " spectrum, not fitted")]
 
 
 def _marks(plot: PlotData) -> list[Row]:

@@ -8,9 +8,9 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from tui.desk.text import number, safe, short_band
-from tui.desk.widgets.plot_data import PlotCurve, PlotData, PlotPoint
-from tui.model import Band, Candidate, Evidence, Fit, Measurement
+from tui.desk.text import SPECTRUM_POINT, number, safe, short_band
+from tui.desk.widgets.plot_data import PlotCurve, PlotData, PlotPoint, SpectrumPulls
+from tui.model import Band, Candidate, Evidence, Fit, Measurement, Spectrum
 
 if TYPE_CHECKING:
     from tui.checks import Curve
@@ -67,6 +67,35 @@ def spectrum_curve(candidate: Candidate) -> tuple[PlotCurve, ...]:
     if spectrum is None:
         return ()
     return (PlotCurve("spectrum", spectrum.wave_um, spectrum.flux_jy, "spectrum"),)
+
+
+def spectrum_pulls(candidate: Candidate, fit: Fit | None, curve: Curve | None) -> SpectrumPulls | None:
+    """The spectrum's points for the strip of pulls: as fitted where they were, else against the drawn curve.
+
+    Returns:
+        None where there is no spectrum, or neither a fit that holds it nor a curve to hold it against.
+    """
+    fitted = {
+        float(band.removeprefix(SPECTRUM_POINT)): pull
+        for band, pull in (fit.pulls if fit else {}).items()
+        if band.startswith(SPECTRUM_POINT)
+    }
+    if fitted:
+        wave = np.array(sorted(fitted))
+        return SpectrumPulls(wave, np.array([fitted[one] for one in wave.tolist()]), fitted=True)
+    spectrum = candidate.spectrum
+    if spectrum is None or curve is None or len(curve.wave_um) < 2:
+        return None
+    return _held_against(spectrum, curve)
+
+
+def _held_against(spectrum: Spectrum, curve: Curve) -> SpectrumPulls | None:
+    with np.errstate(divide="ignore", invalid="ignore"):
+        log_model = np.interp(np.log(spectrum.wave_um), np.log(curve.wave_um), np.log(np.asarray(curve.total_jy)),
+                              left=np.nan, right=np.nan)  # fmt: skip
+        pulls = (spectrum.flux_jy - np.exp(log_model)) / spectrum.error_jy
+    known = np.isfinite(pulls)
+    return SpectrumPulls(spectrum.wave_um[known], pulls[known], fitted=False) if known.any() else None
 
 
 def band_ends(band: Band) -> tuple[float, float]:

@@ -1,4 +1,7 @@
-"""The strip of pulls under a plot: (measured - model)/sigma, with what lies off the scale written as a number."""
+"""The strip of pulls under a plot: (measured - model)/sigma, with what lies off the scale written as a number.
+
+Points of the candidate's own spectrum are dots between the bands; they have no numbers, there are too many.
+"""
 
 from __future__ import annotations
 
@@ -33,6 +36,7 @@ def draw_residuals(canvas: Canvas, frame: Frame, plot: PlotData, view: PlotView)
     canvas.horizontal(4 * middle + 1.5, 2 * frame.left, 2 * frame.right - 1, "zero", every=2)
     for inner in (-span, span):
         canvas.horizontal(_y(inner, span, top, rows), 2 * frame.left, 2 * frame.right - 1, "grid", every=6)
+    _draw_spectrum(canvas, frame, plot, span)
     order = sorted(
         range(len(plot.points)), key=lambda index: (index == view.cursor, abs(_finite(plot.points[index].pull)))
     )
@@ -44,6 +48,21 @@ def draw_residuals(canvas: Canvas, frame: Frame, plot: PlotData, view: PlotView)
         point = plot.points[index]
         if frame.holds(frame.column(point.wave_um)) and abs(_finite(point.pull)) > span:
             _write_pull(canvas, frame, point, "cursor" if index == view.cursor else "far")
+
+
+def _draw_spectrum(canvas: Canvas, frame: Frame, plot: PlotData, span: float) -> None:
+    """The points of the spectrum as dots, off the scale along its very edge; the bands' marks lie above them."""
+    if plot.spectrum is None:
+        return
+    top, rows = frame.strip, frame.strip_rows
+    for wave, pull in zip(plot.spectrum.wave_um.tolist(), plot.spectrum.pulls.tolist(), strict=True):
+        column = frame.column(wave)
+        if not frame.holds(column) or not math.isfinite(pull):
+            continue
+        place = _y(pull, span, top, rows)
+        if abs(pull) > span:
+            place = 4 * top if pull > 0 else 4 * (top + rows) - 1
+        canvas.vertical(frame.x_dot(wave), place, place + (abs(pull) <= span), "spectrum", top, top + rows)
 
 
 def pull_text(pull: float) -> str:
