@@ -123,10 +123,12 @@ def placed(found: re.Match[str]) -> str:
     dots = [dot for cell, letter in enumerate(text) for dot in dots_of(letter, float(x) + CELL * cell, float(y))]
     path = f'<path class="{style}" d="{"".join(dots)}"/>' if dots else ""
     letters = "".join("\xa0" if "\u2800" <= letter <= "\u28ff" else letter for letter in text)
-    if not letters.strip():
+    word = letters.strip("\xa0 ")  # spaces at the ends take no room in some viewers: the word is put where it begins
+    if not word:
         return path
-    spaced = html.escape(letters).replace("\xa0", "&#160;")
-    return f'<text class="{style}" x="{x}" y="{y}" textLength="{CELL * len(letters):g}">{spaced}</text>{path}'
+    begins = float(x) + CELL * letters.index(word[0])
+    spaced = html.escape(word).replace("\xa0", "&#160;")
+    return f'<text class="{style}" x="{begins:g}" y="{y}" textLength="{CELL * len(word):g}">{spaced}</text>{path}'
 
 
 def dots_of(letter: str, x: float, y: float) -> list[str]:

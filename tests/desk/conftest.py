@@ -9,8 +9,9 @@ from pathlib import Path
 import pytest
 
 from tests.desk.disk_queue import make_queue
-from tests.desk.fake_session import FakeSession, MillionSession
+from tests.desk.fake_session import FakeSession
 from tests.desk.made import HOSTILE_NAMES
+from tests.desk.million_session import MillionSession
 
 
 @pytest.fixture

@@ -1,10 +1,11 @@
-"""A queue in memory with the face of a session: small and known, or a million rows that exist when asked for."""
+"""A queue in memory with the face of a session, small and known."""
 
 from __future__ import annotations
 
 import threading
 from array import array
 from contextlib import contextmanager
+from dataclasses import replace
 from types import SimpleNamespace
 
 import numpy as np
@@ -72,6 +73,12 @@ class FakeSession:
 
     def __exit__(self, *exc_info) -> None:
         pass
+
+    def forget(self) -> None:
+        """As if nobody had ruled, looked or written yet."""
+        for kept in (self.own, self.log, self.claims, self.later, self.drafts):
+            kept.clear()
+        self.place = None
 
     def data_version(self) -> int:
         return self.version
@@ -211,7 +218,9 @@ class FakeSession:
         return SimpleNamespace(wave_um=wave, total_jy=total, components={"star": total * 0.9, "dust": total * 0.1})
 
     def probe(self, name, check, fixed, dropped=()):
-        return make_fit("star + dust", self.id_of(name), 2.0), self.curve(name, check)
+        found = make_fit("star + dust", self.id_of(name), 2.0)
+        held = {key: replace(found.params[key], value=value) for key, value in fixed.items() if key in found.params}
+        return replace(found, params={**found.params, **held}), self.curve(name, check)
 
     def band_info(self):
         return {band: Band(band, wave, "Vega", 1000.0, 0.02, "any", np.array([0.9, 1.1]) * wave, np.ones(2))
@@ -257,38 +266,3 @@ class FakeSession:
 
     def tally(self):
         return self.tallied
-
-
-class MillionSession(FakeSession):
-    """A million candidates, none of which exists before its row is asked for."""
-
-    COUNT = 1_000_000
-
-    def __init__(self) -> None:
-        super().__init__([])
-        self.fetched = 0
-
-    def order(self, sort="oddness", descending=True, where=None, limit=None):
-        ids = range(limit or self.COUNT)
-        return array("q", ids if descending else reversed(ids))
-
-    def rows(self, ids):
-        self.fetched += len(ids)
-        return [self.row(i) for i in ids]
-
-    def row(self, i):
-        states = dict.fromkeys(CHECKS, "todo")
-        fall, name = i * 1e-5, self.name_of(i)
-        return QueueRow(i, name, 9 - fall, "W3", 8 - fall, states, frozenset(), "sealed", 0, 5, True, False, False)
-
-    def counts(self):
-        return {"all": self.COUNT, "needs_me": self.COUNT} | {f"unresolved:{check}": self.COUNT for check in CHECKS}
-
-    def id_of(self, name):
-        return int(name.removeprefix("SM-"))
-
-    def name_of(self, candidate_id):
-        return f"SM-{candidate_id:07d}"
-
-    def stored_evidence(self, name):
-        return {}

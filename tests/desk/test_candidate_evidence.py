@@ -81,15 +81,22 @@ def test_nothing_can_be_ruled_before_the_numbers_are_there(fake_session, on_cand
     on_candidate(fake_session, steps)
 
 
-def test_unforeseen_failure_in_the_background_is_a_quiet_line(fake_session, on_candidate, screen_text, monkeypatch):
+def test_unforeseen_failure_in_the_background_is_a_quiet_line(
+    fake_session, on_candidate, screen_text, monkeypatch, tmp_path
+):
+    monkeypatch.setattr("platformdirs.user_log_path", lambda *args, **kwargs: tmp_path)
+
     def break_down(name, kinds=None):
         raise ZeroDivisionError("float division by zero")
 
-    monkeypatch.setattr(fake_session, "evidence", break_down)
-
     async def steps(app, screen, press):
+        app.is_guarded = True
+        monkeypatch.setattr(fake_session, "evidence", break_down)
+        screen.open("SM-0002")
+        await press("right")
         text = screen_text(app)
-        assert "Something went wrong inside the program" in text and "ZeroDivisionError" in text
+        assert "The evidence could not be had" in text and "no evidence, so nothing can be ruled" in text
+        assert "ZeroDivisionError" in (tmp_path / "desk-faults.txt").read_text(encoding="utf-8")
         await press("q")
         assert app.screen is not screen
 

@@ -7,8 +7,11 @@ import sys
 
 import pytest
 
-# each takes longer to import than the rest of the desk together, or nearly
-HEAVY = "numpy scipy astropy sqlite_utils pandas dust_extinction statistics rich.traceback multiprocessing.pool".split()
+# slow to import, and of no use before there are rows
+HEAVY = (
+    "numpy scipy astropy sqlite_utils pandas dust_extinction statistics rich.traceback multiprocessing "
+    "tomllib textual.widgets._text_area textual.widgets._input"
+).split()
 OWN = (  # of the program itself: needed once something was opened
     "tui.store.order tui.store.audit tui.store.gather tui.workflow.assessing tui.workflow.lookalikes tui.checks "
     "tui.physics tui.readers tui.data tui.desk.screens.candidate tui.desk.screens.tally tui.desk.screens.help"

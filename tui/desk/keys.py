@@ -84,7 +84,8 @@ TALLY = (
     Key("tally.right", "right", "right", "right", "The count to the right.", 0),
     Key("tally.list", "enter", "list", "list what a line counts",
         "Show the candidates that the line counts, in the queue.", 1),
-    Key("tally.reviewers", "r", "reviewers", "reviewers", "What each reviewer has done. There is no ranking.", 2),
+    Key("tally.reviewers", "r", "reviewers", "reviewers",
+        "What each reviewer has done, and back to the tally. There is no ranking.", 2),
     Key("tally.write", "w", "write_out", "write out",
         "Write the team's vetted list to a file: past every seal, for everyone's eyes.", 2),
 )

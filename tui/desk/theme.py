@@ -24,6 +24,7 @@ _COLOURS = {
     "attention": ("#f2cf63", "#7a5200", "#ffee55", "ansi_bright_yellow"),
     "quiet": ("#9aa2a7", "#5b6367", "#dddddd", "ansi_default"),
     "rule-line": ("#3b4449", "#b9b3a4", "#ffffff", "ansi_default"),
+    "plot-grid": ("#68757b", "#86837a", "#9a9a9a", "ansi_bright_black"),
     "cursor-row": ("#24323c", "#d8e3ea", "#102a40", "ansi_default"),
     "series-total": ("#f4efe2", "#1d2326", "#ffffff", "ansi_default"),
     "series-1": ("#7fb8e6", "#0a5a97", "#9fd4ff", "ansi_bright_blue"),

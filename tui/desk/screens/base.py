@@ -31,8 +31,8 @@ class DeskScreen(Screen[Result]):
         """The line that shows this place's keys as they are bound now."""
         return KeyLine(PLACES[self.PLACE], self.app.keys_of, lines, self.offers)
 
-    def offers(self, action_id: str) -> bool:
-        """Whether a key does something as things stand; the key line shows no other."""
+    def offers(self, action_id: str) -> bool | str:
+        """Whether a key does something as things stand, or what it does then; the key line shows no other."""
         return True
 
     def say(self, text: str, *, is_error: bool = False) -> None:

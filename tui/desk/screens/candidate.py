@@ -33,6 +33,9 @@ if TYPE_CHECKING:
     from tui.workflow.session import Session
 
 
+FAULT = "The evidence could not be had: something went wrong inside the program."
+
+
 class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesByHand, DeskScreen[None]):
     """One candidate; evidence is computed off the interface's thread, and never drawn under another's name."""
 
@@ -114,12 +117,14 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
             self.draw_foot()
 
     def on_worker_state_changed(self, event: Worker.StateChanged) -> None:
-        """What nobody foresaw ends neither the desk nor the round: a plain line, and keys count again."""
+        """What nobody foresaw does not end the round: keys count again, and nothing is thought to be recorded.
+
+        That it happened is said by the desk's guard.
+        """
         if event.state is WorkerState.ERROR:
             self.walk.recording = False
-            self.say(
-                f"Something went wrong inside the program ({event.worker.name}): {event.worker.error!r}", is_error=True
-            )
+            self.walk.trouble = self.walk.trouble or ("" if self.walk.evidence else FAULT)
+            self.draw()
             self.be_ready()
 
     # --- drawing ---
@@ -148,7 +153,9 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
         self.draw_foot()
 
     def _foot(self, width: int, height: int) -> list[Row]:
-        return draw_foot(self.walk, width, height, self.app.keys_of, self.session, self._draft_of is not None)
+        scrolls = self.walk.page > 0 and self.query_one("#walk-page", RowsView).has_more
+        is_writing = self._draft_of is not None
+        return draw_foot(self.walk, width, height, self.app.keys_of, self.session, is_writing, scrolls)
 
     def _right(self) -> tuple[str, ...]:
         """Queue, reader and the last ruling recorded, at less and less length."""
@@ -204,6 +211,7 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
             self.look_for_alikes()
         self.query_one("#walk-page", RowsView).to_top()
         self.draw()
+        self.call_after_refresh(self.draw_foot)  # whether the page scrolls is known once it has its place
 
     def action_stretch(self) -> None:
         """The pictures' next stretch: faint, middle, bright."""

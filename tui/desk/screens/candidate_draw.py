@@ -9,7 +9,9 @@ from tui.desk.screens.candidate_keys import offered, writing
 from tui.desk.screens.questions import STRONG, caution_line, look_at, oddness_words, question
 from tui.desk.screens.walk import Walk
 from tui.desk.text import RULING_WORDS, fit, number, safe, short_band, signed
+from tui.desk.widgets.aligned import table
 from tui.desk.widgets.check_line import check_row, title_row
+from tui.desk.widgets.fact_words import catalogue_pairs
 from tui.desk.widgets.numbers import (
     WIDE,
     Beside,
@@ -105,18 +107,27 @@ def _further_blocks(walk: Walk, width: int) -> list[list[Row]]:
 
 
 def draw_foot(
-    walk: Walk, width: int, height: int, keymap: Mapping[str, str], session: Session, is_writing: bool
+    walk: Walk,
+    width: int,
+    height: int,
+    keymap: Mapping[str, str],
+    session: Session,
+    is_writing: bool = False,
+    scrolls: bool = True,
 ) -> list[Row]:
     """Advice, the ruling line, the keys that work now."""
     message, point, look, caution = advice(walk)
     rows = advice_rows(width, height - 1 - KEY_ROWS, message, point, look, caution) if height > 1 + KEY_ROWS else []
     rows.append(rule_row(width, rule_facts(walk, session)))
-    keys = writing() if is_writing else offered(walk, keymap)
+    keys = writing() if is_writing else offered(walk, keymap, session.reviewer is not None, scrolls)
     return [fit_row(line, width, more=" ..") for line in [*rows, *key_rows(width, keys, KEY_ROWS)]]
 
 
 def advice(walk: Walk) -> tuple[str, str, tuple[str, ...], str]:
-    """What was just said, the point under the cursor, what to look at, and the caution."""
+    """What was just said, the point under the cursor, what to look at, and the caution.
+
+    A further page has the room for itself: only what was said and what calls for another ruling stands beneath it.
+    """
     point = ""
     measurement = walk.measurement_under_cursor()
     if measurement is not None and walk.plot_view.cursor is not None and walk.page == 0:
@@ -126,13 +137,17 @@ def advice(walk: Walk) -> tuple[str, str, tuple[str, ...], str]:
     caution = (
         f"Your ruling is stale: {stale}." if stale else SPLIT if is_split else caution_line(walk.check, walk.evidence)
     )
-    look = look_at(walk.check, walk.fit) if walk.own_evidence is not None else ("",)
-    return walk.message, point, look, "" if walk.is_lesson and walk.message else caution
+    look = look_at(walk.check, walk.fit) if walk.own_evidence is not None and not walk.page else ("",)
+    is_told = walk.is_lesson and walk.message or walk.page and not stale and not is_split
+    return walk.message, point, look, "" if is_told else caution
 
 
 def advice_height(walk: Walk, width: int) -> int:
-    """Rows that advice and caution take in full."""
-    return sum(len(part) for part in advice_parts(width, *advice(walk), height=2))
+    """Rows that advice and caution take in full; none on a page where nothing has to be said."""
+    said = advice(walk)
+    if walk.page and not any((said[0], said[1], said[3])):
+        return 0
+    return sum(len(part) for part in advice_parts(width, *said, height=2))
 
 
 def rule_facts(walk: Walk, session: Session) -> RuleFacts:
@@ -161,30 +176,25 @@ def _compared_rows(walk: Walk, width: int) -> list[Row]:
 
 
 def points_table(walk: Walk, width: int) -> list[Row]:
-    """Every drawn point by wavelength, with its pull as a number and a bar."""
+    """Every drawn point by wavelength, with its pull; x: not fitted."""
     points = sorted(walk.drawn.points, key=lambda point: point.wave_um)
-    rows = [row((f" {'band':<8}{'micron':>8}{'mJy':>12}{'error':>10}{'pull':>8}", "head"))]
-    for point in points:
-        flux = f"{'<' if point.limit else ''}{number(point.flux_jy * 1e3)}"
-        error = "limit" if point.limit else number(point.error_high_jy * 1e3, 2)
-        text = (
-            f" {fit(short_band(point.band), 8)}{number(point.wave_um):>8}{flux:>12}{error:>10}{signed(point.pull):>8}"
-        )
-        style = (
-            "dropped" if point.dropped else "limit" if point.limit else "strong" if abs(point.pull) >= STRONG else ""
-        )
-        rows.append(row((text, style), (" not fitted" if point.dropped and width >= 60 else "", "quiet")))
-    return rows
+    lines = [
+        ("x" if point.dropped else "", short_band(point.band), number(point.wave_um),
+         f"{'<' if point.limit else ''}{number(point.flux_jy * 1e3)}",
+         "limit" if point.limit else number(point.error_high_jy * 1e3, 2), signed(point.pull))
+        for point in points
+    ]  # fmt: skip
+    styles = [
+        "dropped" if point.dropped else "limit" if point.limit else "strong" if abs(point.pull) >= STRONG else ""
+        for point in points
+    ]
+    return table(("", "band", "micron", "mJy", "error", "pull"), lines, width, texts=(0, 1), styles=styles)
 
 
 def facts_rows(walk: Walk, width: int) -> list[Row]:
     """The facts that are asked for most, in a few lines; the others stand on their own page."""
     facts = walk.loaded.candidate.facts
-    said = [
-        f"{safe(key)} {number(facts[key], 6) if isinstance(facts[key], float) else safe(facts[key])}"
-        for key in FACTS
-        if facts.get(key) not in (None, "")
-    ]
+    said = [" ".join(pair) for pair in catalogue_pairs({key: facts[key] for key in FACTS if key in facts})]
     lines = paragraph("   ".join(said), width - 2)[:6] if said else []
     return [row((" facts", "head")), *([*row(" "), *line] for line in lines)] if lines else []
 

@@ -21,6 +21,8 @@ READING = (
     ("hand", "by hand", "hand()"),
     ("compare", "compare", "compare()"),
     ("left right", "points", ""),
+    ("withdraw", "withdraw", "withdraw()"),
+    ("up down", "fits", ""),
     ("zoom_in zoom_out", "zoom", "zoom(1)"),
     ("later", "later", "later()"),
     ("back", "back", "back()"),
@@ -48,8 +50,13 @@ PLOT = (
 )
 
 
-def offered(walk: Walk, keymap: Mapping[str, str]) -> list[Entry]:
-    """The entries of the key line, as things stand."""
+def offered(walk: Walk, keymap: Mapping[str, str], can_rule: bool = True, scrolls: bool = True) -> list[Entry]:
+    """The entries of the key line, as things stand.
+
+    Args:
+        can_rule: the reader has a handle.
+        scrolls: the page on view holds more rows than the screen.
+    """
     if walk.asking_compare:
         return [
             (_keys("checks", keymap), "draw that check's best fit too", ""),
@@ -57,25 +64,34 @@ def offered(walk: Walk, keymap: Mapping[str, str]) -> list[Entry]:
         ]
     if walk.hand is not None:
         return _hand(walk, keymap)
-    if walk.page:
-        table = PAGE
-    elif walk.plot_only:
-        table = PLOT
-    else:
-        table = READING
-    entries = [(_keys(ids, keymap), label, action) for ids, label, action in table]
-    if walk.page == 0 and not walk.plot_only:
-        place = next(i for i, entry in enumerate(entries) if entry[1] == "points") + 1
-        if walk.fits > 1:
-            entries.insert(place, (_keys("up down", keymap), "fits", ""))
-        if walk.loaded is not None and walk.check in walk.loaded.view.own:
-            entries.insert(place, (_keys("withdraw", keymap), "withdraw", "withdraw()"))
-    if walk.compared:
-        entries = [
-            (keys, f"without {CHECK_TITLES[walk.compared]}" if label == "compare" else label, action)
-            for keys, label, action in entries
-        ]
+    table = PAGE if walk.page else PLOT if walk.plot_only else READING
+    entries = []
+    for ids, label, action in table:
+        ids = _zoom_ids(ids, walk)
+        if _works(ids, walk, can_rule, scrolls):
+            words = f"without {CHECK_TITLES[walk.compared]}" if walk.compared and label == "compare" else label
+            entries.append((_keys(ids, keymap), words, action))
     return entries
+
+
+def _zoom_ids(ids: str, walk: Walk) -> str:
+    """Farther only where one has come nearer."""
+    return "zoom_in" if ids == "zoom_in zoom_out" and walk.plot_view.x_range is None else ids
+
+
+def _works(ids: str, walk: Walk, can_rule: bool, scrolls: bool) -> bool:
+    """Whether keys do something as things stand."""
+    if ids == "up down":
+        return scrolls if walk.page else walk.fits > 1
+    if ids == "withdraw":
+        return can_rule and walk.loaded is not None and walk.check in walk.loaded.view.own
+    if ids in ("note", "later"):
+        return can_rule
+    if ids == "pan_left pan_right":
+        return walk.plot_view.x_range is not None
+    if ids in ("hand", "left right"):
+        return walk.fit is not None if ids == "hand" else bool(walk.drawn.points)
+    return True
 
 
 def writing() -> list[Entry]:
@@ -90,19 +106,18 @@ def writing() -> list[Entry]:
 def _hand(walk: Walk, keymap: Mapping[str, str]) -> list[Entry]:
     hand = walk.hand
     param = walk.fit.params.get(hand.param) if walk.fit and hand.param else None
-    label = param_name(hand.param, param).short if param is not None else "nothing"
-    entries = [(_keys("up down", keymap), label, "")] if param is not None else []
-    if len(hand.params) > 1:
-        entries.append((_keys("next_check", keymap), "next number", "next_check()"))
-    return [
-        *entries,
-        (_keys("release", keymap), "fit it", "release()"),
-        (_keys("left right", keymap), "points", ""),
-        (_keys("drop", keymap), "drop the band", "drop()"),
-        (_keys("reset", keymap), "all as fitted", "reset()"),
-        (_keys("hand", keymap), "leave", "hand()"),
-        (_keys("help", keymap), "help", "help()"),
-    ]
+    held, drops = hand.param in hand.fixed, walk.plot_view.cursor is not None
+    wanted = (
+        (param is not None, "up down", param_name(hand.param, param).short if param is not None else "", ""),
+        (len(hand.params) > 1, "next_check", "next number", "next_check()"),
+        (held, "release", "fit it", "release()"),
+        (bool(walk.drawn.points), "left right", "points", ""),
+        (drops, "drop", "drop the band", "drop()"),
+        (hand.touched, "reset", "all as fitted", "reset()"),
+        (True, "hand", "leave", "hand()"),
+        (True, "help", "help", "help()"),
+    )
+    return [(_keys(ids, keymap), label, action) for works, ids, label, action in wanted if works]
 
 
 def _keys(ids: str, keymap: Mapping[str, str]) -> str:

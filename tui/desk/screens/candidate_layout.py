@@ -21,7 +21,7 @@ def shares(width: int, height: int, plot_only: bool = False, advice: int = 2, is
     """The plot gets what is left: 51 x 16 at 80 x 24, about 126 x 45 at 200 x 60.
 
     Args:
-        advice: rows that advice and caution would take in full; 0 while a note is written in their place.
+        advice: rows that advice and caution would take in full; 0 where a note or a page has their place.
         is_lesson: more of them may be shown, at the plot's cost.
 
     >>> shares(80, 24)
@@ -31,7 +31,8 @@ def shares(width: int, height: int, plot_only: bool = False, advice: int = 2, is
     if advice == 0:
         return Shares(head, 3, _side(width) if not plot_only else 0)
     least, most = (2, 3) if height < 32 else (3, 5) if height < 45 else (4, 7)
-    foot = min(max(advice, least), max(most, LESSON) if is_lesson else most) + 3  # then the ruling line and two rows of keys
+    most = max(most, LESSON) if is_lesson else most
+    foot = min(max(advice, least), most) + 3  # then the ruling line and two rows of keys
     return Shares(head, foot, 0 if plot_only else _side(width))
 
 

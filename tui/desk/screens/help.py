@@ -11,8 +11,9 @@ from tui.desk.keys import PLACE_TITLES, PLACES, Key, bindings, shown
 from tui.desk.screens.base import DeskScreen
 from tui.desk.text import fit, wrap
 from tui.desk.widgets.find_line import FindLine
+from tui.desk.widgets.key_line import KeyLine
 from tui.desk.widgets.pick_rows import PickRow, PickRows
-from tui.desk.widgets.rows import Row, Span, row
+from tui.desk.widgets.rows import Row, Span, hanging, row
 
 KEYS_WIDE = 13
 LABEL_WIDE = 15
@@ -51,6 +52,14 @@ class HelpScreen(DeskScreen[str | None]):
         rows += [PickRow(line) for sign, text in WORDS for line in _entry(sign, "strong", text, width, KEYS_WIDE)]
         return [*rows, PickRow(), *elsewhere_rows(self.about)]
 
+    def offers(self, action_id: str) -> bool:
+        """Enter where an action of this place is chosen."""
+        return action_id != "help.do" or any(isinstance(rows.target, Key) for rows in self.query(PickRows))
+
+    def on_mount(self) -> None:
+        """The keys that work stand on the last line once there are rows to choose from."""
+        self.call_after_refresh(self.query_one(KeyLine).renew)
+
     def action_up(self) -> None:
         """The action above."""
         self.query_one(PickRows).move(-1)
@@ -79,6 +88,7 @@ class HelpScreen(DeskScreen[str | None]):
         message.stop()
         self.wanted = message.value.strip()
         self.query_one(PickRows).renew()
+        self.call_after_refresh(self.query_one(KeyLine).renew)
 
     @on(FindLine.Left)
     def leave_find(self) -> None:
@@ -132,20 +142,15 @@ def _speaks_of(key: Key, words: list[str]) -> bool:
 
 def _key_rows(key: Key, keymap: dict[str, str], width: int, target: Key | None) -> list[PickRow]:
     names = " ".join(shown(name) for name in keymap.get(key.id, key.keys).split(","))
-    head = fit(names, KEYS_WIDE - 1) + " "
-    lines = wrap(key.why, max(20, width - KEYS_WIDE - LABEL_WIDE - 4))
-    label = fit(key.label, LABEL_WIDE - 1) + " "
-    first = [Span(head, "key"), Span(label, "strong"), Span(lines[0])]
-    rest = [[Span(" " * (KEYS_WIDE + LABEL_WIDE + 2)), Span(line)] for line in lines[1:]]
-    if target is None:
-        first = [Span("  "), *first]
-    return [PickRow(first, target), *(PickRow(line) for line in rest)]
+    head = [Span(fit(names, KEYS_WIDE - 1) + " ", "key"), Span(fit(key.label, LABEL_WIDE - 1) + " ", "strong")]
+    margin = Span("  ")  # where the mark of a row that can be chosen would stand
+    first, *rest = hanging(head, key.why, width - 4)
+    spans = first if target is not None else [margin, *first]
+    return [PickRow(spans, target), *(PickRow([margin, *line]) for line in rest)]
 
 
 def _entry(head: str, style: str, text: str, width: int, head_wide: int) -> list[Row]:
-    lines = wrap(text, max(20, width - head_wide - 4))
-    first = [Span("  " + fit(head, head_wide), style), Span(lines[0])]
-    return [first, *([Span(" " * (head_wide + 2)), Span(line)] for line in lines[1:])]
+    return hanging([Span("  " + fit(head, head_wide), style)], text, width - 2)
 
 
 def _text_rows(text: str, width: int) -> list[Row]:

@@ -16,6 +16,7 @@ from tui.desk.screens.base import DeskScreen
 from tui.desk.screens.questions import question
 from tui.desk.screens.split_rows import Split, foot_row, head_rows, split_rows
 from tui.desk.text import RULING_WORDS
+from tui.desk.widgets.key_line import KeyLine
 from tui.desk.widgets.note import NoteEditor
 from tui.desk.widgets.rows import Row
 from tui.desk.widgets.rows_view import RowsView
@@ -25,6 +26,11 @@ if TYPE_CHECKING:
     from tui.model import Evidence, Ruling
     from tui.workflow.records import CandidateView
     from tui.workflow.session import Session
+
+
+NO_HANDLE = "Without a handle nothing can be ruled. Join first: plainlight join QUEUE HANDLE."
+STILL_SEALED = "It is still sealed to you: rule on the star's own page first."
+RULING_KEYS = frozenset({"split.explains", "split.short", "split.unclear", "split.note"})
 
 
 class SplitScreen(DeskScreen[None]):
@@ -58,7 +64,7 @@ class SplitScreen(DeskScreen[None]):
     def compose(self) -> ComposeResult:
         """Head, everybody's words, the note, the ruling, keys."""
         yield RowsView(self.draw_head, id="split-head")
-        yield RowsView(self.draw_body, id="split-body")
+        yield RowsView(self.draw_body, scrolls=True, id="split-body")
         yield NoteEditor(id="note")
         yield Static("", id="message", markup=False)
         yield RowsView(self.draw_foot, id="split-foot")
@@ -83,6 +89,18 @@ class SplitScreen(DeskScreen[None]):
         self.query_one("#split-head", RowsView).rows_from(self.draw_head)
         self.query_one("#split-body", RowsView).rows_from(self.draw_body)
         self.query_one("#split-foot", RowsView).rows_from(self.draw_foot)
+        self.query_one(KeyLine).renew()
+
+    @property
+    def can_rule(self) -> bool:
+        """Whether the reader may rule here: with a handle, and with the seal open to them."""
+        return self.session.reviewer is not None and self.view is not None and self.view.seal_open
+
+    def offers(self, action_id: str) -> bool:
+        """Ruling keys where one may rule; Enter once something is chosen."""
+        if action_id == "split.record":
+            return self.can_rule and bool(self.chosen) and not self.is_recording
+        return self.can_rule or action_id not in RULING_KEYS
 
     @property
     def split(self) -> Split:
@@ -101,8 +119,7 @@ class SplitScreen(DeskScreen[None]):
 
     def draw_foot(self, width: int, height: int) -> list[Row]:
         """The ruling in one row."""
-        can_rule = self.session.reviewer is not None and self.view is not None and self.view.seal_open
-        return [foot_row(width, self.chosen, self.note, self.is_recording, can_rule)]
+        return [foot_row(width, self.chosen, self.note, self.is_recording, self.can_rule)]
 
     # --- keys ---
 
@@ -116,15 +133,16 @@ class SplitScreen(DeskScreen[None]):
 
     def action_choose(self, ruling: str) -> None:
         """Choose; nothing is recorded yet."""
-        if self.session.reviewer is None:
-            self.say("Without a handle nothing can be ruled. Join first: plainlight join QUEUE HANDLE.")
+        if not self.can_rule:
+            self.say(NO_HANDLE if self.session.reviewer is None else STILL_SEALED)
             return
         self.chosen = ruling
         self.redraw()
 
     def action_note(self) -> None:
         """Write the note; it is kept at every keystroke."""
-        if self.session.reviewer is None:
+        if not self.can_rule:
+            self.say(NO_HANDLE if self.session.reviewer is None else STILL_SEALED)
             return
         note = self.query_one(NoteEditor)
         note.display = True

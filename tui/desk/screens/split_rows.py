@@ -6,9 +6,10 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
-from tui.desk.text import RULING_WORDS, SIGNS, decimal_aligned, fit, once_in, plural, safe, short_band, signed, wrap
-from tui.desk.widgets.numbers import param_name, value_and_error
-from tui.desk.widgets.rows import Row, Span, fit_row, paragraph, row
+from tui.desk.text import RULING_WORDS, SIGNS, once_in, p_text, plural, safe, short_band, signed, wrap
+from tui.desk.widgets.aligned import table
+from tui.desk.widgets.numbers import param_words, tenth
+from tui.desk.widgets.rows import Row, Span, fit_row, hanging, paragraph, row
 from tui.model import CHECK_TITLES, Evidence
 
 if TYPE_CHECKING:
@@ -76,7 +77,9 @@ def split_rows(split: Split, width: int) -> list[Row]:
                   for handle, lines in said[start : start + columns]]  # fmt: skip
         rows += side_by_side(blocks, column_width)
     cautions = evidence.cautions if evidence else ()
-    return rows + [line for text in cautions for line in indented(f"CAUTION {text}", width, "caution", 8)]
+    return rows + [
+        line for text in cautions for line in hanging(row((" CAUTION  ", "caution")), text, width, "caution")
+    ]
 
 
 def number_rows(evidence: Evidence | None, width: int) -> list[Row]:
@@ -86,25 +89,22 @@ def number_rows(evidence: Evidence | None, width: int) -> list[Row]:
     if not evidence.fits:
         return [row((" Nothing could be fitted: too few data.", "quiet"))]
     fits = evidence.fits[:FITS_SHOWN]
-    name_wide = max(len(safe(found.model)) for found in fits) + 2
-    chi2 = decimal_aligned([f"{found.chi2:.1f}" for found in fits])
-    bic = decimal_aligned([f"{found.bic:.1f}" for found in fits])
-    heads = fit("chi2", len(chi2[0]), align="right"), fit("BIC", len(bic[0]), align="right")
-    rows: list[Row] = [row((f" {fit('fit', name_wide)}{heads[0]}   dof  {heads[1]}  chance alone", "quiet"))]
-    for place, found in enumerate(fits):
-        text = f" {fit(safe(found.model), name_wide)}{chi2[place]}  {found.dof:>4}  {bic[place]}  {once_in(found.p)}"
-        rows.append([Span(text, "strong" if place == 0 else "")])
+    lines = [(safe(found.model), tenth(found.chi2), str(found.dof), tenth(found.bic), p_text(found.p), once_in(found.p))
+             for found in fits]  # fmt: skip
+    styles = ["strong", *[""] * (len(lines) - 1)]
+    rows = table(("fit, best first", "chi2", "dof", "BIC", "p", "chance alone"), lines, width, (0, 5), styles)
     pulls = sorted(fits[0].pulls.items(), key=lambda item: -abs(item[1]))[:PULLS_SHOWN]
     left = "  ".join(f"{short_band(band)} {signed(pull)}" for band, pull in pulls)
     more = len(evidence.fits) - len(fits)
-    rows += [row((f" and {plural(more, 'fit')} that meet the data less well", "quiet"))] if more else []
-    rows += indented(f"left over, sigma: {left}", width)
-    return rows + indented(_params(evidence), width, "quiet")
+    rows += [row((f"  and {plural(more, 'fit')} that meet the data less well", "quiet"))] if more else []
+    rows += hanging(row(("  left over, sigma  ", "quiet")), left, width)
+    said = "; ".join(param_words(key, param) for key, param in fits[0].params.items())
+    return rows + hanging(row(("  the best fit  ", "quiet")), said, width)
 
 
-def indented(text: str, width: int, style: str = "", hang: int = 0) -> list[Row]:
+def indented(text: str, width: int, style: str = "") -> list[Row]:
     """A paragraph one cell from the edge."""
-    return [[Span(" "), *line] for line in paragraph(text, width - 2, style, hang)]
+    return hanging([Span(" ")], text, width - 1, style)
 
 
 def column_rows(handle: str, lines: list[RulingLine], width: int, is_reader: bool) -> list[Row]:
@@ -117,6 +117,8 @@ def column_rows(handle: str, lines: list[RulingLine], width: int, is_reader: boo
         style = line.ruling if line.current else "quiet"
         rows.append(row((f"{SIGNS.get(line.ruling, '')}{word}", style), (f"  {when}", "quiet")))
         rows.append(row((how, "quiet")))
+        if not line.current and line.ruling != "withdrawn":
+            rows.append(row(("replaced since", "quiet")))
         if line.stale:
             rows += paragraph(f"stale: {safe(line.stale)}", width, "caution")
         for text in line.note.splitlines():
@@ -146,14 +148,5 @@ def foot_row(width: int, chosen: str, note: str, is_recording: bool, can_rule: b
         return fit_row([head, Span(f"recording {RULING_WORDS[chosen]} ...", "message")], width)
     said = " / ".join(safe(line) for line in note.splitlines() if line.strip())
     line = [head, Span(f"> {RULING_WORDS[chosen]} <", "chosen") if chosen else Span("choose once more", "quiet")]
-    line += [Span("   Enter records it", "")] if chosen else []
+    line += [Span("   "), Span("Enter", "key", "record()"), Span(" records it", "", "record()")] if chosen else []
     return fit_row([*line, *([Span("   note: ", "quiet"), Span(said)] if said else [])], width)
-
-
-def _params(evidence: Evidence) -> str:
-    said = []
-    for key, param in evidence.fits[0].params.items():
-        name = param_name(key, param)
-        value, error = value_and_error(param, name.factor)
-        said.append(f"{name.label} {value} {error.strip()} {name.unit}".rstrip())
-    return "   ".join(said)

@@ -9,16 +9,15 @@ from textual.widgets import Static
 
 from tui.desk.keys import bindings
 from tui.desk.screens.base import DeskScreen
-from tui.desk.text import SHORT_CHECKS, fit, safe, wrap
+from tui.desk.text import safe
 from tui.desk.widgets.pick_rows import PickRow, PickRows
-from tui.desk.widgets.rows import Span, row
+from tui.desk.widgets.rows import row
+from tui.desk.widgets.story_rows import NEW, story_rows
 from tui.errors import TuiError
 
 if TYPE_CHECKING:
     from tui.workflow.records import StoryLine
     from tui.workflow.session import Session
-
-TIME_WIDE, WHO_WIDE, WHAT_WIDE = 17, 12, 15
 
 
 class StoryScreen(DeskScreen[None]):
@@ -56,7 +55,7 @@ class StoryScreen(DeskScreen[None]):
         for line in self.happened:
             if line.since_mine and not has_marked:
                 has_marked = True
-                rows += [PickRow(), PickRow(row((" since you last ruled on it", "head")))]
+                rows += [PickRow(), PickRow(row((f" {NEW} since you last ruled on it", "head")))]
             rows += [PickRow(spans) for spans in story_rows(line, width)]
         if not self.happened:
             rows.append(PickRow(row((" Nothing is told of it.", "quiet"))))
@@ -87,18 +86,3 @@ class StoryScreen(DeskScreen[None]):
     def action_last(self) -> None:
         """To the end."""
         self.query_one(PickRows).scroll_rows(1_000_000)
-
-
-def story_rows(line: StoryLine, width: int) -> list[list[Span]]:
-    """One thing that happened: when, who, what, then the text as often as it takes lines."""
-    when = safe(line.utc[:16].replace("T", " "))
-    what = f"{safe(line.what)} {SHORT_CHECKS.get(line.check, '')}".strip()
-    head = 1 + TIME_WIDE + WHO_WIDE + WHAT_WIDE
-    first, *rest = wrap(safe(line.text), max(20, width - head - 1)) or [""]
-    spans = [
-        Span(" " + fit(when, TIME_WIDE), "quiet"),
-        Span(fit(safe(line.who), WHO_WIDE - 1) + " ", "strong"),
-        Span(fit(what, WHAT_WIDE - 1) + " "),
-        Span(first),
-    ]
-    return [spans, *([Span(" " * head), Span(more)] for more in rest)]

@@ -16,6 +16,7 @@ from tui.desk.screens.base import DeskScreen
 from tui.desk.screens.tally_rows import Choice, chosen_line, reviewer_rows, tally_rows, title_row
 from tui.desk.text import safe
 from tui.desk.widgets.find_line import FindLine
+from tui.desk.widgets.key_line import KeyLine
 from tui.desk.widgets.pick_rows import PickRow, PickRows
 from tui.desk.widgets.rows import Row, row
 from tui.desk.widgets.rows_view import RowsView
@@ -86,6 +87,7 @@ class TallyScreen(DeskScreen[Counted | None]):
         """Draw all again."""
         self.query_one("#title", RowsView).rows_from(self.draw_title)
         self.query_one(PickRows).renew()
+        self.call_after_refresh(self.query_one(KeyLine).renew)
 
     def draw_title(self, width: int, height: int) -> list[Row]:
         """The first line."""
@@ -98,6 +100,14 @@ class TallyScreen(DeskScreen[Counted | None]):
         if self.shows_reviewers:
             return reviewer_rows(self.tally, width)
         return tally_rows(self.tally, width, Choice(self.query_one("#rows", PickRows).line, self.column))
+
+    def offers(self, action_id: str) -> bool | str:
+        """Enter where a count is chosen; the reviewers once they are counted, and from them the tally."""
+        if action_id == "tally.list":
+            return not self.shows_reviewers and self.cells > 0
+        if action_id == "tally.reviewers" and self.shows_reviewers:
+            return "the tally"
+        return self.tally is not None or action_id != "tally.reviewers"
 
     # --- keys ---
 
@@ -124,8 +134,8 @@ class TallyScreen(DeskScreen[Counted | None]):
     @property
     def cells(self) -> int:
         """Counts on the chosen row."""
-        target = self.query_one(PickRows).target
-        return len(target) if isinstance(target, tuple) else 0
+        targets = [rows.target for rows in self.query(PickRows)]
+        return len(targets[0]) if targets and isinstance(targets[0], tuple) else 0
 
     @on(PickRows.Picked)
     def action_list(self) -> None:

@@ -18,6 +18,7 @@ if TYPE_CHECKING:
 
 HEADS = {"none": "none yet", "stale": "stale*"}
 LABEL_WIDE, CELL_WIDE = 13, 9
+HANDLE_WIDE, HANDLE_MOST, ROOMY = 14, 33, 100  # cells of a handle on a narrow and on a roomy screen; from where on
 WIDEST = 110  # columns of reading text
 NAMED_ON_SCREEN = 200  # survivors; the list that Enter makes has them all
 
@@ -139,9 +140,10 @@ def left_rows(tally: Tally, width: int, choice: Choice) -> list[PickRow]:
 def reviewer_rows(tally: Tally, width: int) -> list[PickRow]:
     """What each reviewer has done, by handle; who agrees with whom. No ranking."""
     width = min(width, WIDEST)
-    heads = f" {'reviewer':<20}{'rulings':>9}{'candidates':>12}{'done':>8}   last ruling"
+    size = HANDLE_WIDE if width < ROOMY else HANDLE_MOST
+    heads = f" {fit('reviewer', size)}{'rulings':>9}{'candidates':>12}{'done':>8}   last ruling"
     rows = [*head("REVIEWERS", "by handle; this is no ranking"), PickRow(row((heads, "quiet")))]
-    rows += [PickRow([Span(reviewer_text(one))]) for one in tally.reviewers]
+    rows += [PickRow([Span(reviewer_text(one, size))]) for one in tally.reviewers]
     handles = {one.id: one.handle for one in tally.reviewers}
     if tally.agreement.pairs:
         rows += [PickRow(), *head("WHO RULED ALIKE", "first, sealed rulings that both made")]
@@ -153,11 +155,11 @@ def reviewer_rows(tally: Tally, width: int) -> list[PickRow]:
     return rows
 
 
-def reviewer_text(one: ReviewerLine) -> str:
-    """One reviewer's line."""
+def reviewer_text(one: ReviewerLine, size: int) -> str:
+    """One reviewer's line, the handle in `size` cells."""
     last = one.last_utc[:16].replace("T", " ") or "none yet"
-    quiet = f", quiet for {plural(round(one.quiet_days), 'day')}" if one.quiet_days and one.quiet_days >= 1 else ""
-    return f" {fit(safe(one.handle), 20)}{one.rulings:>9,}{one.candidates:>12,}{one.done:>8,}   {last}{quiet}"
+    ago = f", {plural(round(one.quiet_days), 'day')} ago" if one.quiet_days and one.quiet_days >= 1 else ""
+    return f" {fit(safe(one.handle), size)}{one.rulings:>9,}{one.candidates:>12,}{one.done:>8,}   {last}{ago}"
 
 
 def pair_text(pair) -> str:

@@ -7,11 +7,11 @@ from collections.abc import Mapping, Sequence
 
 import numpy as np
 
-from tui.desk.text import number, safe, short_band
+from tui.desk.text import p_text, safe, short_band
 from tui.desk.widgets.plot_canvas import Canvas, dash_sample
 from tui.desk.widgets.plot_legend import COMPONENT_DASH
 from tui.desk.widgets.plot_scale import Scale, tick_text, ticks
-from tui.desk.widgets.rows import Row, Span, fit_row, paragraph
+from tui.desk.widgets.rows import Row, Span, fit_row, hanging
 from tui.model import Band, Dip
 from tui.workflow.dip_curves import DipCurve
 
@@ -145,9 +145,8 @@ def _legend(width: int, order: int, curve: DipCurve, unicode: bool) -> list[Row]
     """One model: its line, what it is, and how well it meets the depths."""
     dash = COMPONENT_DASH[order % len(COMPONENT_DASH)]
     sample = dash_sample(dash) + _letter(curve) if unicode else _PLAIN[order % 4] * 4
-    words = f"{WORDS.get(curve.model, safe(curve.model))}  chi2 {curve.chi2:.1f}  dof {curve.dof}  p {number(curve.p, 1)}"
-    first, *rest = paragraph(words, max(10, width - 8))
-    return [[Span("  "), Span(sample, _style(order)), Span("  "), *first], *([Span(" " * 8), *line] for line in rest)]
+    words = f"{WORDS.get(curve.model, safe(curve.model))}  chi2 {curve.chi2:.1f}  dof {curve.dof}  p {p_text(curve.p)}"
+    return hanging([Span("  "), Span(sample, _style(order)), Span("  ")], words, width)
 
 
 _PLAIN = "abcd"

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from rich.cells import cell_len
 from textual import events
@@ -69,6 +69,12 @@ def _placed(pieces: list[Entry], width: int) -> list[list[Entry]]:
     return lines
 
 
+TYPING = {  # in a note or not -> the key that leaves, and what is said of it
+    False: ("Enter", "ends the line; letters are text here"),
+    True: ("Tab", "leaves the note; Enter begins a new line"),
+}
+
+
 class KeyLine(Widget):
     """Draws the keys of a place; told again whenever what can be done changes."""
 
@@ -80,13 +86,13 @@ class KeyLine(Widget):
         keys: tuple[Key, ...],
         keymap: Mapping[str, str],
         lines: int = 2,
-        offers: Callable[[str], bool] = lambda action: True,
+        offers: Callable[[str], bool | str] = lambda action: True,
     ) -> None:
         """Made for the keys of a place.
 
         Args:
             lines: at most so many.
-            offers: whether an action, by its id, does something as things stand.
+            offers: whether an action, by its id, does something as things stand; or what it does then, in other words.
         """
         super().__init__()
         self.keys, self.keymap, self.lines, self.offers = keys, keymap, lines, offers
@@ -99,8 +105,20 @@ class KeyLine(Widget):
             self.pieces = pieces
             self.refresh(layout=len(self.placed()) != self.size.height)
 
+    def on_mount(self) -> None:
+        """While something is typed letters are no keys: the line says how to leave instead."""
+        self.watch(self.screen, "focused", self.renew, init=False)
+
     def _pieces_now(self) -> list[Entry]:
-        return entries(tuple(key for key in self.keys if self.offers(key.id)), self.keymap)
+        typed_in = self.screen.focused if self.is_attached else None
+        if typed_in is not None:
+            from textual.widgets import Input, TextArea  # the first rows come before there is anything to type in
+
+            if isinstance(typed_in, (Input, TextArea)):
+                return [Entry(*TYPING[isinstance(typed_in, TextArea)], "", 1)]
+        answers = [(key, self.offers(key.id)) for key in self.keys]
+        offered = (replace(key, label=said) if isinstance(said, str) else key for key, said in answers if said)
+        return entries(tuple(offered), self.keymap)
 
     def get_content_height(self, container: Size, viewport: Size, width: int) -> int:
         """As many lines as the keys take at this width, up to the most allowed."""

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 
 from tui.desk.text import decimal_aligned, number, once_in, p_text, safe
 from tui.desk.text import fit as cut
-from tui.desk.widgets.rows import Row, Span, paragraph, row
+from tui.desk.widgets.rows import Row, Span, row
 from tui.model import Evidence, Fit, Param
 
 WIDE = 40  # columns from which full names, both ends of intervals and all fits find room
@@ -125,6 +125,8 @@ def param_rows(width: int, params: Mapping[str, Param], held: Sequence[str] = ()
         mark = ">" if key == chosen else "=" if key in held else " "
         style = "chosen" if key == chosen else "quiet"
         tail = f" {name.unit}" if wide else ""
+        if wide and error == LEVEL:
+            error, tail = tail, LEVEL
         error = squeezed(error, width - label_width - 2 - len(value) - len(tail))
         rows.append(
             row((f"{mark}{label[:label_width].ljust(label_width)}", style), (f" {value}", "strong"), f"{error}{tail}")
@@ -158,9 +160,7 @@ def param_name(key: str, param: Param) -> ParamName:
     return ParamName(plain_name, plain_name, safe(param.unit))
 
 
-def value_and_error(
-    param: Param, factor: float = 1.0, wide: bool = False, least: float = 0.0
-) -> tuple[str, str]:
+def value_and_error(param: Param, factor: float = 1.0, wide: bool = False, least: float = 0.0) -> tuple[str, str]:
     """A value as far as its error reaches, and the error (one digit, two where it begins with 1); limits read as such.
 
     Args:
@@ -170,8 +170,10 @@ def value_and_error(
     ('5612', ' +-40')
     >>> value_and_error(Param(0.31, 0.2, 0.5, ""))
     ('0.31', ' +0.19 -0.11')
-    >>> value_and_error(Param(4.9, 4.2, 4.9, "mag", limit=True)), value_and_error(Param(4.9, 0.0, 4.9, "mag", limit=True))
-    (('>4.2', ' (95 %)'), ('any', ' up to 4.9'))
+    >>> value_and_error(Param(4.9, 4.2, 4.9, "mag", limit=True))
+    ('>4.2', ' (95 %)')
+    >>> value_and_error(Param(4.9, 0.0, 4.9, "mag", limit=True))
+    ('any', ' up to 4.9')
     """
     value, low, high = (factor * end for end in (param.value, param.low, param.high))
     if not math.isfinite(value):

@@ -54,7 +54,7 @@ class Peek(Vertical):
 
     DEFAULT_CSS = """
     Peek SpectrumPlot { height: 1fr; min-height: 14; margin-top: 1; }
-    Peek .rows--grid { color: $rule-line; }
+    Peek .rows--grid { color: $plot-grid; }
     Peek .rows--point, Peek .rows--far { color: $series-point; text-style: bold; }
     Peek .rows--limit { color: $series-limit; text-style: bold; }
     Peek .rows--dropped { color: $series-dropped; }

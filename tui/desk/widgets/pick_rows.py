@@ -27,7 +27,7 @@ class PickRows(RowsView):
         """The chosen row was clicked once more."""
 
     def __init__(self, make: Callable[[int], list[PickRow]], *, id: str | None = None) -> None:
-        super().__init__(self._marked_rows, id=id)
+        super().__init__(self._marked_rows, scrolls=True, id=id)
         self.make = make
         self.line = 0
         self._made: list[PickRow] = []
@@ -41,6 +41,8 @@ class PickRows(RowsView):
     @property
     def target(self) -> Hashable | None:
         """What the chosen row stands for."""
+        if self.size.width:
+            self._redraw()
         return self._made[self.line].target if 0 <= self.line < len(self._made) else None
 
     def move(self, rows: int) -> None:

@@ -65,6 +65,12 @@ class RowsView(Widget):
         self.refresh()
 
     @property
+    def has_more(self) -> bool:
+        """Whether there are more rows than fit."""
+        self._redraw()
+        return len(self._rows) > self.size.height
+
+    @property
     def text(self) -> str:
         """All rows as plain text, those below the edge included."""
         self._redraw()

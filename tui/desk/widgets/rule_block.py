@@ -5,8 +5,8 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-from tui.desk.text import RULING_WORDS, clock, fit, safe
-from tui.desk.widgets.rows import Row, Span, fit_row, paragraph, row, row_width
+from tui.desk.text import RULING_WORDS, fit, safe
+from tui.desk.widgets.rows import Row, Span, fit_row, hanging, row, row_width
 from tui.model import Ruling
 
 LABEL = 9  # columns of the words at the left
@@ -57,7 +57,10 @@ def advice_parts(
 
 def rule_row(width: int, facts: RuleFacts) -> Row:
     """The one line in which a ruling is chosen and recorded."""
-    line = [Span(" RULE".ljust(LABEL + 1), "head"), *_rule_words(facts)]
+    start = Span(" RULE".ljust(LABEL + 1), "head")
+    line = [start, *_rule_words(facts)]
+    if row_width(line) > width:
+        line = [start, *_rule_words(facts, terse=True)]
     return _with_note(width, line, facts) if facts.note and not facts.reader_only else fit_row(line, width)
 
 
@@ -87,12 +90,7 @@ def _key_rows(width: int, entries: Sequence[tuple[str, str, str]]) -> list[Row]:
 
 
 def _labelled(width: int, label: str, text: str, style: str) -> list[Row]:
-    lines = paragraph(text, width - LABEL - 2, style)
-    heads = [Span(f" {label}".ljust(LABEL + 1), "head")] + [Span(" " * (LABEL + 1))] * (len(lines) - 1)
-    if not label:
-        lines = paragraph(text, width - 2, style)
-        heads = [Span(" ")] * len(lines)
-    return [[head, *line] for head, line in zip(heads, lines, strict=True)]
+    return hanging([Span(f" {label}".ljust(LABEL + 1) if label else " ", "head")], text, width - 1, style)
 
 
 def _cut(rows: list[Row], height: int, width: int) -> list[Row]:
@@ -102,7 +100,8 @@ def _cut(rows: list[Row], height: int, width: int) -> list[Row]:
     return [*rows[: height - 1], fit_row([*rows[height - 1], Span(" " * width)], width - 1, more=" ..")]
 
 
-def _rule_words(facts: RuleFacts) -> Row:
+def _rule_words(facts: RuleFacts, terse: bool = False) -> Row:
+    """What can be ruled now; `terse` for lines of 80 columns that would run over."""
     if facts.reader_only:
         return row((facts.reader_only, "quiet"))
     if facts.recording:
@@ -112,26 +111,28 @@ def _rule_words(facts: RuleFacts) -> Row:
     if facts.chosen:
         word = "take back" if facts.chosen == "withdrawn" else RULING_WORDS[facts.chosen]
         return row((f"> {word} <", "chosen"), "   ", ("Enter", "key", "record()"), (" records it", "", "record()"))
+    gap = "  " if terse else "   "
     choices = row(
         ("e", "key", "choose('explains')"),
-        (" explains   ", "", "choose('explains')"),
+        (f" explains{gap}", "", "choose('explains')"),
         ("f", "key", "choose('short')"),
-        (" falls short   ", "", "choose('short')"),
+        (f" falls short{gap}", "", "choose('short')"),
         ("u", "key", "choose('unclear')"),
         (" unclear", "", "choose('unclear')"),
     )
     if facts.is_nodata:
         return row(("no data test this check, nothing need be ruled", "quiet"), "   ", *choices[4:])
     if facts.own is not None and facts.stale:
+        ruled = RULING_WORDS[facts.own.ruling]
         return row(
-            (f"your {RULING_WORDS[facts.own.ruling]} is stale", "caution"),
-            "   ",
+            (f"stale: {ruled}" if terse else f"your {ruled} is stale", "caution"),
+            gap,
             ("r", "key", "reaffirm()"),
-            (" it stands   ", "", "reaffirm()"),
+            (f" it stands{gap}", "", "reaffirm()"),
             *choices,
         )
     if facts.own is not None:
-        when = clock(facts.own.utc)
+        when = "" if terse else safe(facts.own.utc[:10])
         return row(
             ("you ruled ", "quiet"),
             (RULING_WORDS[facts.own.ruling], "strong"),
