@@ -58,6 +58,27 @@ def test_every_word_stands_out_from_every_ground(theme):
             assert ratio >= (7 if theme.name == theme_name("contrast") else 4.5), (key, ground, ratio)
 
 
+@pytest.mark.parametrize("theme", [theme for theme in themes() if not theme.ansi], ids=lambda theme: theme.name)
+def test_lines_of_a_plot_can_be_seen_and_stay_behind_its_data(theme):
+    """WCAG 2.1, 1.4.11: 3 for graphics that carry meaning; what is drawn over the grid stands out more."""
+    ground = Color.parse(theme.background)
+    grid, data = (contrast(Color.parse(theme.variables[name]), ground) for name in ("plot-grid", "series-1"))
+    assert 3 <= grid < data
+
+
+def test_nothing_is_drawn_dim(fake_session, drive, settled):
+    """Dim text on many terminals is half of whatever contrast its colour had."""
+
+    async def steps(app, pilot):
+        for keys in ((), ("down", "down", "v"), ("q", "y"), ("q", "question_mark"), ("q", "enter"), ("1",)):
+            await pilot.press(*keys)
+            await settled(app, pilot)
+            strips = app.screen._compositor.render_strips()
+            assert not [part.text for strip in strips for part in strip if part.style and part.style.dim]
+
+    drive(fake_session, steps, size=(120, 40))
+
+
 def test_no_colour_leaves_every_meaning(fake_session, drive, screen_text, monkeypatch):
     monkeypatch.setenv("NO_COLOR", "1")
 
