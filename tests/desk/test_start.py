@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import gc
 import subprocess
 import sys
 
@@ -10,7 +11,7 @@ import pytest
 # slow to import, and of no use before there are rows
 HEAVY = (
     "numpy scipy astropy sqlite_utils pandas dust_extinction statistics rich.traceback multiprocessing "
-    "tomllib textual.widgets._text_area textual.widgets._input"
+    "tomllib textual.widgets._text_area"
 ).split()
 OWN = (  # of the program itself: needed once something was opened
     "tui.store.order tui.store.audit tui.store.gather tui.workflow.assessing tui.workflow.lookalikes tui.checks "
@@ -47,4 +48,28 @@ def loaded(disk_session) -> set[str]:
 
 def test_first_rows_come_before_what_is_slow_to_import(loaded):
     assert "tui.desk.screens.queue" in loaded
-    assert not loaded & {*HEAVY, *OWN}
+    assert sorted(loaded & {*HEAVY, *OWN}) == []
+
+
+def test_after_the_first_rows_garbage_is_collected_again_where_that_was_stopped(fake_session, drive, monkeypatch):
+    frozen = []
+    monkeypatch.setattr(gc, "freeze", lambda: frozen.append(gc.isenabled()))
+
+    async def steps(app, pilot):
+        assert gc.isenabled() and frozen == [False]
+
+    gc.disable()
+    try:
+        drive(fake_session, steps)
+    finally:
+        gc.enable()
+
+
+def test_a_desk_started_otherwise_leaves_the_collector_alone(fake_session, drive, monkeypatch):
+    frozen = []
+    monkeypatch.setattr(gc, "freeze", lambda: frozen.append(1))
+
+    async def steps(app, pilot):
+        assert gc.isenabled() and not frozen
+
+    drive(fake_session, steps)

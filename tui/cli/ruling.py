@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import gc
 import os
 import sys
 from typing import TYPE_CHECKING
@@ -54,6 +55,7 @@ def review_command(queue: str, handle: str | None, thin: bool) -> int:
     config = read_config()
     handle = needed_handle(handle or config.handle)
     refuse_without_terminal()
+    gc.disable()  # much is imported now and nothing can be collected of it; the desk enables it once it has drawn
     from tui.workflow.session import Session
 
     with Session.open(queue, handle) as session:
@@ -84,8 +86,5 @@ def open_desk(session, *, thin: bool, theme: str | None, keys) -> int:
 
 def run_desk(desk: Desk) -> int:
     """Run one until whoever sits there leaves; its return code is the exit status."""
-    from multiprocessing import resource_tracker
-
-    resource_tracker.ensure_running()  # a process started later, inside the desk, would find its descriptors closed
     desk.run()
     return desk.return_code or 0

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import asyncio
+import gc
 import os
 import signal
 import threading
@@ -85,6 +86,15 @@ class Desk(Guarded, inherit_bindings=False):
         loop = asyncio.get_running_loop()
         for number in (signal.SIGTERM, signal.SIGHUP):
             loop.add_signal_handler(number, self.leave_at_once, number)
+
+    def on_ready(self) -> None:
+        """The first screen is drawn: what was imported for it stays for good, and is not looked through for garbage.
+
+        Each look would take some 10 ms, in the midst of some key.
+        """
+        if not gc.isenabled():  # whoever started the desk saw to it
+            gc.freeze()
+            gc.enable()
 
     def leave_at_once(self, number: int) -> None:
         """Leave in order; where the terminal is gone and its writer would wait for ever, leave without.

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import os
-import tomllib
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -38,10 +37,12 @@ def read_config() -> Config:
     path = config_path()
     try:
         with path.open("rb") as stream:
+            import tomllib  # most people have no such file
+
             found = tomllib.load(stream)
     except FileNotFoundError:
         return Config()
-    except (OSError, UnicodeDecodeError, tomllib.TOMLDecodeError) as error:
+    except (OSError, ValueError) as error:
         raise TableError(str(path), f"the config file cannot be read: {error}. Mend it or move it away.") from error
     return _config(path, found)
 
