@@ -18,13 +18,14 @@ from tui.desk.widgets.numbers import (
     adequate_word,
     fit_title,
     fits_table,
+    number_columns,
     number_rows,
     param_rows,
     tenth,
 )
 from tui.desk.widgets.plot_points import point_words
 from tui.desk.widgets.rule_block import RuleFacts, advice_parts, advice_rows, key_rows, rule_row
-from tui.desk.widgets.rows import Row, fit_row, paragraph, row
+from tui.desk.widgets.rows import Row, Span, fit_row, paragraph, row
 from tui.model import CHECK_TITLES, CHECKS
 
 if TYPE_CHECKING:
@@ -35,6 +36,7 @@ WAITING = "computing the evidence: rulings open when the numbers are here"
 SPLIT = "The rulings on this check are split: page 8 shows them side by side, and you may rule once more."
 FACTS = ("ra", "dec", "parallax", "parallax_error", "ruwe", "sp_type", "otype", "age_myr", "logg", "av_max")
 KEY_ROWS = 2
+BEST_WIDE = 32  # cells of a check's title with its best model
 
 
 def draw_head(walk: Walk, width: int, height: int, right: Sequence[str]) -> list[Row]:
@@ -202,16 +204,18 @@ def facts_rows(walk: Walk, width: int) -> list[Row]:
 def _all_checks(walk: Walk, width: int) -> list[Row]:
     """One line a check: its best fit, and, with room, what the reader ruled."""
     ruled_too = width >= 64
-    room = min(26, width - 24)
-    head = f" {fit('best fit of each check', room)}{'chi2':>9}{'dof':>5}{'BIC':>9}"
+    best = {check: walk.evidence[check].best if check in walk.evidence else None for check in CHECKS}
+    columns = [[tenth(one.chi2) if one else "--" for one in best.values()],
+               [str(one.dof) if one else "--" for one in best.values()],
+               [tenth(one.bic) if one else "--" for one in best.values()]]  # fmt: skip
+    tails = number_columns(("chi2", "dof", "BIC"), columns)
+    room = min(BEST_WIDE, width - 1 - len(tails[0]) - (15 if ruled_too else 0))
+    head = f" {fit('best fit of each check', room)}{tails[0]}"
     rows = [row((head, "head"), ("  you ruled" if ruled_too else "", "head"))]
-    for check in CHECKS:
-        found = walk.evidence.get(check)
-        best = found.best if found else None
+    for (check, one), text in zip(best.items(), tails[1:], strict=True):
         own = walk.loaded.view.own.get(check)
-        label = fit(f"{CHECK_TITLES[check]}: {safe(best.model)}" if best else f"{CHECK_TITLES[check]}: no fit", room)
-        text = f"{tenth(best.chi2):>9}{best.dof:5d}{tenth(best.bic):>9}" if best else f"{'--':>9}"
-        mark = ">" if check == walk.check else " "
+        label = fit(f"{CHECK_TITLES[check]}: {safe(one.model) if one else 'no fit'}", room)
+        mark, style = (">", "strong") if check == walk.check else (" ", "")
         ruled = (f"  {RULING_WORDS[own.ruling]}", own.ruling) if own and ruled_too else ("", "")
-        rows.append(row((f"{mark}{label}{text}", "strong" if check == walk.check else "", f"check('{check}')"), ruled))
+        rows.append([Span(f"{mark}{label}{text}", style, f"check('{check}')"), Span(*ruled)])
     return rows

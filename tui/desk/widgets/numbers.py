@@ -13,6 +13,7 @@ from tui.model import Evidence, Fit, Param
 
 WIDE = 40  # columns from which full names, both ends of intervals and all fits find room
 NOTHING = "--"
+MODEL_WIDE = 26  # cells of a model's name
 LEVEL = " (95 %)"  # of a limit (Evidence keeps one-sided 95 % limits where a value lies at a bound)
 ROUNDING = 1e-6  # by which a limit may miss the bound that it lies at
 UP_TO = " up to "
@@ -229,24 +230,31 @@ def param_words(key: str, param: Param) -> str:
 
 def fits_table(width: int, fits: Sequence[Fit], shown: int) -> list[Row]:
     """All fits of a check, best first."""
-    columns = [[f"{fit.chi2:.1f}" for fit in fits], [str(fit.dof) for fit in fits],
-               [p_text(fit.p) for fit in fits], [f"{fit.bic:.1f}" for fit in fits]]  # fmt: skip
-    aligned = [decimal_aligned(column) for column in columns]
-    room = max(8, min(24, width - 33))
-    rows = [
-        row(
-            (
-                f" {'fits of this check' if room >= 18 else 'its fits':<{room}}{'chi2':>9}{'dof':>5}{'p':>8}{'BIC':>9}",
-                "head",
-            )
-        )
-    ]
-    for line, one in enumerate(fits):
-        cells = "".join(cell[line].rjust(size) for cell, size in zip(aligned, (9, 5, 8, 9), strict=True))
+    heads = ("chi2", "dof", "p", "BIC")
+    columns = ([tenth(fit.chi2) for fit in fits], [str(fit.dof) for fit in fits], [p_text(fit.p) for fit in fits],
+               [tenth(fit.bic) for fit in fits])  # fmt: skip
+    tails = number_columns(heads, columns)
+    room = max(8, min(MODEL_WIDE, width - 1 - len(tails[0])))
+    rows = [row((f" {cut('fits of this check' if room >= 18 else 'its fits', room)}{tails[0]}", "head"))]
+    for line, (one, cells) in enumerate(zip(fits, tails[1:], strict=True)):
         mark = ">" if line == shown else " "
         text = f"{mark}{cut(safe(one.model), room)}{cells}"
         rows.append([Span(text, "chosen" if line == shown else "", f"fit({line})")])
     return rows
+
+
+def number_columns(heads: Sequence[str], columns: Sequence[Sequence[str]]) -> list[str]:
+    """Columns of numbers under their heads, aligned by the decimal point, two spaces before each.
+
+    >>> number_columns(("chi2", "p"), (["4.2", "596.9"], ["0.7", "<1e-300"]))
+    ['   chi2        p', '    4.2   0.7   ', '  596.9  <1e-300']
+    """
+    lines = [""] * (1 + len(columns[0]))
+    for head, column in zip(heads, columns, strict=True):
+        aligned = decimal_aligned(column)
+        size = max(len(head), *(len(text) for text in aligned))
+        lines = [f"{line}  {text:>{size}}" for line, text in zip(lines, (head, *aligned), strict=True)]
+    return lines
 
 
 def _statistics(fit: Fit) -> list[str]:
