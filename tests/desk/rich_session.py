@@ -124,7 +124,7 @@ class RichSession(FakeSession):
 
     def look_alikes(self, name, star=None):
         alike = tuple(LookAlike(one, 0.95, 8.1, 9.123, BAD, 1.5) for one in HOSTILE_NAMES)
-        return LookAlikes(RICH, "W4", "Gaia_G", 60, 15, 0.5, 0.01, {"magnitude": 0.01, "place": 0.4}, True,
+        return LookAlikes(RICH, "W4", "Gaia_G", 60, 15, 0.5, 0.01, {"magnitude": 0.01, "place": float("nan")}, True,
                           f"15 candidates share this pattern {BAD}.", alike)  # fmt: skip
 
     def story(self, name):

@@ -128,7 +128,7 @@ CANDIDATE = (
     Key("candidate.next_check", "tab", "next_check", "check", "The next check; by hand, the next number.", 1),
     Key("candidate.previous_check", "shift+tab", "previous_check", "check", "The check before.", 0),
     *(
-        Key(f"candidate.check_{check}", key, f"check('{check}')", "check", f"Go to the check {check}.", 0)
+        Key(f"candidate.check_{check}", key, f"check('{check}')", "check", f"Go to the check {CHECK_TITLES[check]}.", 0)
         for check, key in _CHECK_KEYS.items()
     ),
     Key("candidate.left", "left", "point(-1)", "point", "The point to the left, in words.", 0),

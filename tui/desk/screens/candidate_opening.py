@@ -114,6 +114,7 @@ class OpensCandidates:
         walk.looking = False
         if self.is_here(walk):
             self.query_one("#walk-page", RowsView).redraw()
+            self.draw_foot()
 
     def is_here(self: CandidateScreen, walk: Walk) -> bool:
         """Whether that page is still the one on view: what comes late is ignored."""

@@ -94,7 +94,7 @@ def lookalikes_page(walk: Walk, width: int, height: int) -> list[Row]:
         return [*rows, quiet(walk.alike_trouble or waiting)]
     rows += [[], *paragraph(found.sentence, width - 2, "strong")]
     if found.shared:
-        said = ", ".join(f"{name} {p:.2f}" for name, p in found.shared.items())
+        said = ", ".join(f"{name} {_decimal(p, 2)}" for name, p in found.shared.items())
         rows += paragraph(f"p that so many lie so close by chance: {said}; 0.01 or less counts as shared.",
                           width - 2, "quiet")  # fmt: skip
     rows += [[], *_alike_rows(found, width)]
