@@ -192,8 +192,8 @@ def test_a_full_disk_writes_nothing_and_says_so(filled, team, path):
     pages = filled.execute("PRAGMA page_count").fetchone()[0]
     filled.execute(f"PRAGMA max_page_count = {pages}")
     with pytest.raises(StoreError, match="full"):
-        for number in range(200):
-            rule(filled, team[0], "SM-0001", "star", second=number, note="n" * 20_000)
+        for number in range(1000):
+            rule(filled, team[0], "SM-0001", "star", second=number, note="n" * 4000)
     assert not filled.in_transaction
     filled.execute(f"PRAGMA max_page_count = {pages * 10}")
     assert filled.execute("PRAGMA integrity_check").fetchone()[0] == "ok"

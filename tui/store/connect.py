@@ -10,22 +10,20 @@ import os
 import shutil
 import sqlite3
 from collections.abc import Iterator
-from contextlib import contextmanager
+from contextlib import contextmanager, suppress
 from dataclasses import dataclass
 from pathlib import Path
-from random import random
 from threading import RLock
-from time import monotonic, sleep
 from typing import Any
 from weakref import WeakSet
 
 from tui.errors import StoreError
 from tui.store.filesystem import network_type
 from tui.store.schema import APPLICATION_ID, SCHEMA_VERSION, migrate
-from tui.store.sentences import BUSY_SECONDS, is_busy, plainly, sentence
+from tui.store.sentences import BUSY_SECONDS, has_moved, moved_sentence, plainly, sentence
+from tui.store.waiting import Hook, patiently
 
 MAGIC = b"SQLite format 3\x00"  # sqlite.org/fileformat2.html, section 1.3; the two numbers: offsets 60 and 68
-LONGEST_PAUSE_S, SHORTEST_PAUSE_S = 0.008, 0.0005  # between two tries for the write lock; a ruling holds it for some ms
 
 
 # Closing any descriptor of a file drops all locks that the process holds on it (POSIX; "How To Corrupt An SQLite
@@ -67,10 +65,14 @@ class QueueConnection(sqlite3.Connection):
     """A connection to a queue; errors of SQLite arrive as StoreError."""
 
     queue_path = ""
+    identity: tuple[int, int] | None = None  # device and inode of the file; None where they do not matter
+    on_wait: Hook | None = None  # told, in the waiting thread, once a wait for another program has lasted a while
 
     def close(self) -> None:
+        """Close; what SQLite then finds wrong with the file is no news: every answer given was on disk before."""
         with OPENING:
-            super().close()
+            with suppress(sqlite3.Error):
+                super().close()
             for held in OPEN.values():
                 held.discard(self)
 
@@ -144,10 +146,30 @@ def read_header(path: str, create: bool = False) -> Header | None:
 def is_held_open(path: str) -> bool:
     """Whether this process has a connection to the file, in whatever thread."""
     try:
-        found = os.stat(path)
-    except OSError:
+        return bool(OPEN.get(identity_of(path)))
+    except StoreError:
         return False
-    return bool(OPEN.get((found.st_dev, found.st_ino)))
+
+
+def identity_of(path: str) -> tuple[int, int]:
+    """Device and inode of a file. StoreError where there is none any more."""
+    try:
+        found = os.stat(path)
+    except OSError as error:
+        raise StoreError(f"{path} cannot be read: {error.strerror}.") from error
+    return found.st_dev, found.st_ino
+
+
+def refuse_moved(connection: sqlite3.Connection, outcome: str = "nothing was recorded") -> None:
+    """StoreError where the path of an open queue names another file by now, or none.
+
+    What was written then would lie in a file that nobody finds again.
+
+    Args:
+        outcome: what that means to whoever asked.
+    """
+    if has_moved(connection):
+        raise StoreError(moved_sentence(connection, outcome))
 
 
 def not_newer(path: str, header: Header) -> Header:
@@ -163,8 +185,7 @@ def not_newer(path: str, header: Header) -> Header:
 def connected(path: str, *, write: bool, shared: bool = True) -> QueueConnection:
     """A connection to a queue that is up to date."""
     quoted = Path(path).absolute().as_uri()
-    writable = os.access(path, os.W_OK) and os.access(os.path.dirname(os.path.abspath(path)), os.W_OK)
-    if write or (writable and shared):
+    if write or (is_writable(path) and shared):
         query = "?mode=rw"
     else:
         query = "?mode=ro" if os.path.exists(path + "-wal") else "?immutable=1"
@@ -175,9 +196,9 @@ def connected(path: str, *, write: bool, shared: bool = True) -> QueueConnection
     except sqlite3.Error as error:
         raise StoreError(sentence(path, error)) from error
     connection.queue_path = path
-    found = os.stat(path)
-    OPEN.setdefault((found.st_dev, found.st_ino), WeakSet()).add(connection)
     try:
+        connection.identity = identity_of(path)
+        OPEN.setdefault(connection.identity, WeakSet()).add(connection)
         prepare(connection, write)
     except BaseException:
         connection.close()
@@ -185,9 +206,14 @@ def connected(path: str, *, write: bool, shared: bool = True) -> QueueConnection
     return connection
 
 
+def is_writable(path: str) -> bool:
+    """Whether this user may write the file, and beside it, where its log lies."""
+    return os.access(path, os.W_OK) and os.access(os.path.dirname(os.path.abspath(path)), os.W_OK)
+
+
 def prepare(connection: QueueConnection, write: bool) -> None:
     """Set what every connection to a queue keeps to; StoreError where another program made it newer meanwhile."""
-    version = connection.execute("PRAGMA user_version").fetchone()[0]
+    version = patiently(connection, "PRAGMA user_version").fetchone()[0]
     not_newer(connection.queue_path, Header(APPLICATION_ID, version))
     connection.execute("PRAGMA foreign_keys = ON")
     connection.execute("PRAGMA recursive_triggers = ON")
@@ -201,15 +227,7 @@ def prepare(connection: QueueConnection, write: bool) -> None:
 
 def use_log(connection: QueueConnection) -> None:
     """Turn on the write-ahead log; SQLite does not wait for others who do the same, so this does."""
-    deadline = monotonic() + BUSY_SECONDS
-    while True:
-        try:
-            connection.execute("PRAGMA journal_mode = WAL").fetchone()
-            return
-        except StoreError as error:
-            if not is_busy(error.__cause__) or monotonic() > deadline:
-                raise
-            sleep(0.01)
+    patiently(connection, "PRAGMA journal_mode = WAL").fetchone()
 
 
 def bring_up_to_date(path: str, *, is_new: bool) -> None:
@@ -259,8 +277,7 @@ def read_only(path: str) -> sqlite3.Connection:
 
     Where no log lies beside the file it may make one, so that it can clear it away again at the end.
     """
-    folder = os.path.dirname(os.path.abspath(path))
-    leaves_nothing = not os.path.exists(path + "-wal") and os.access(path, os.W_OK) and os.access(folder, os.W_OK)
+    leaves_nothing = not os.path.exists(path + "-wal") and is_writable(path)
     mode = "rw" if leaves_nothing else "ro"
     connection = sqlite3.connect(f"{Path(path).absolute().as_uri()}?mode={mode}", uri=True, timeout=BUSY_SECONDS)
     connection.execute("PRAGMA query_only = ON")
@@ -301,36 +318,21 @@ def immediate(connection: sqlite3.Connection) -> Iterator[None]:
     if connection.in_transaction:
         yield
         return
-    begin(connection)
+    patiently(connection, "BEGIN IMMEDIATE")
     try:
+        refuse_moved(connection)
         yield
         connection.execute("COMMIT")
     except BaseException:
-        if connection.in_transaction:  # a full disk may have rolled it back already
-            connection.execute("ROLLBACK")
+        roll_back(connection)
         raise
 
 
-def begin(connection: sqlite3.Connection) -> None:
-    """BEGIN IMMEDIATE, in a fairer order than SQLite's own waiting gives.
-
-    SQLite's busy handler sleeps the longer the longer it has waited, so that late comers overtake and
-    a few wait for seconds. Here who has waited longer asks more often.
-    """
-    start = monotonic()
-    connection.execute("PRAGMA busy_timeout = 0")
-    try:
-        while True:
-            try:
-                connection.execute("BEGIN IMMEDIATE")
-                return
-            except StoreError as error:
-                waited = monotonic() - start
-                if not is_busy(error.__cause__) or waited > BUSY_SECONDS:
-                    raise
-            sleep(random() * max(LONGEST_PAUSE_S - waited / 10, SHORTEST_PAUSE_S))
-    finally:
-        connection.execute(f"PRAGMA busy_timeout = {BUSY_SECONDS * 1000:.0f}")
+def roll_back(connection: sqlite3.Connection) -> None:
+    """End a transaction without its changes; a file too damaged even for that keeps them out all the same."""
+    if connection.in_transaction:  # a full disk may have rolled it back already
+        with suppress(StoreError):
+            connection.execute("ROLLBACK")
 
 
 @contextmanager
@@ -343,8 +345,19 @@ def snapshot(connection: sqlite3.Connection) -> Iterator[None]:
     try:
         yield
     finally:
-        if connection.in_transaction:
-            connection.execute("ROLLBACK")
+        roll_back(connection)
+
+
+def listen(hook: Hook | None, connection: sqlite3.Connection | None = None) -> None:
+    """Have `hook` told when a connection waits for another program.
+
+    Args:
+        connection: None: every connection of this process that has no hook of its own.
+    """
+    if isinstance(connection, QueueConnection):
+        connection.on_wait = hook
+    else:
+        QueueConnection.on_wait = staticmethod(hook) if hook else None
 
 
 def data_version(connection: sqlite3.Connection) -> int:

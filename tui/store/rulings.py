@@ -17,12 +17,12 @@ from tui.consensus.history import current_rulings
 from tui.errors import StoreError, UnknownNameError
 from tui.model import CHECKS, RULINGS, Ruling, digest
 from tui.store import deriving
-from tui.store.connect import immediate
+from tui.store.connect import immediate, refuse_moved
 from tui.store.deriving import RULING_COLUMNS, ruling_from
 from tui.store.names import checked_utc, findable, id_of, later_utc
 from tui.store.settings import read_settings
 
-MAX_NOTE = 20_000  # characters
+MAX_NOTE = 4000  # characters: a page of text
 
 
 def ruling_hash(ruling: Ruling) -> str:
@@ -55,9 +55,10 @@ def append_ruling(connection: sqlite3.Connection, ruling: Ruling) -> Ruling:
     Raises:
         UnknownNameError: no such candidate, check, ruling or reviewer.
         StoreError: nothing to withdraw, an untestable check (which takes only `unclear`), evidence that
-            the queue does not hold, a note too long; nothing is written then.
+            the queue does not hold, a note too long, a file moved or replaced meanwhile; nothing is written then.
     """
     checked_words(ruling)
+    refuse_moved(connection, "nothing was recorded; your note is kept on the screen")
     name = findable(ruling.candidate)
     deriving.ground_of(connection, id_of(connection, name))  # decodes evidence before the lock is held, not under it
     with immediate(connection):

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import sqlite3
 
 from tui.errors import StoreError
@@ -20,9 +21,33 @@ class plainly:  # noqa: N801 - reads as a word at its use
 
     def __exit__(self, kind: type[BaseException] | None, error: BaseException | None, trace: object) -> None:
         if isinstance(error, sqlite3.Error):
-            raise StoreError(sentence(getattr(self.connection, "queue_path", ""), error)) from error
+            raise StoreError(told(self.connection, error)) from error
         if isinstance(error, UnicodeEncodeError):
             raise StoreError("Text with half a surrogate pair cannot be stored; mend its encoding.") from error
+
+
+def told(connection: sqlite3.Connection, error: sqlite3.Error) -> str:
+    """What went wrong at an open queue; one whose file was taken from under it is not the damaged one."""
+    if has_moved(connection):
+        return moved_sentence(connection, "nothing was recorded")
+    return sentence(getattr(connection, "queue_path", ""), error)
+
+
+def has_moved(connection: sqlite3.Connection) -> bool:
+    """Whether the path of an open queue names another file than the open one, or none."""
+    identity = getattr(connection, "identity", None)
+    if identity is None:
+        return False
+    try:
+        found = os.stat(connection.queue_path)
+    except OSError:
+        return True
+    return (found.st_dev, found.st_ino) != identity
+
+
+def moved_sentence(connection: sqlite3.Connection, outcome: str) -> str:
+    """That the file was taken from under an open connection, and what that means to whoever asked."""
+    return f"{connection.queue_path} was moved, deleted or replaced while open; {outcome}."
 
 
 def sentence(path: str, error: sqlite3.Error) -> str:
