@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+import os
+import shutil
 import threading
 
 import pytest
 
 from tui.errors import HandleError, StoreError, UnknownNameError
-from tui.workflow.records import Filter
+from tui.workflow.records import MAX_NOTE, Filter
 from tui.workflow.session import Session
 
 
@@ -122,3 +124,62 @@ def test_settings_set_by_others_are_followed(heron, queue):
     heron.follow_settings()
     assert heron.settings.law == "f99"
     assert [row[1:] for row in setting.history(queue, "law")] == [("plover", "f99")]
+
+
+def put_another_in_place_of(queue, tmp_path):
+    shutil.copy(queue, tmp_path / "other.db")
+    os.replace(tmp_path / "other.db", queue)
+
+
+def test_once_the_file_is_replaced_there_is_no_ruling_no_receipt_and_no_clone(heron, queue, tmp_path):
+    rule(heron, "SM-0001", "star", "short")
+    put_another_in_place_of(queue, tmp_path)
+    for ask in (lambda: rule(heron, "SM-0001", "dust", "explains"), heron.receipt, heron.clone):
+        with pytest.raises(StoreError, match="moved, deleted or replaced while open"):
+            ask()
+
+
+@pytest.fixture
+def read_only(queue, monkeypatch):
+    """A session at a file that this user may not write."""
+    monkeypatch.setattr("tui.store.connect.is_writable", lambda path: False)
+    with Session.open(queue, "heron") as session:
+        yield session
+
+
+def test_a_file_that_may_only_be_read_is_read(read_only):
+    assert read_only.read_only and not read_only.write
+    assert read_only.next_for_me() == read_only.claim_next()
+    assert read_only.claim("SM-0001")
+    read_only.release("SM-0001")
+    read_only.release_all()
+    read_only.save_position("SM-0001", "dust")
+    read_only.save_draft("SM-0001", "dust", "begun")
+    assert read_only.draft("SM-0001", "dust") == ""
+    with read_only.clone() as other:
+        assert other.read_only
+
+
+def test_there_evidence_is_computed_and_not_kept(read_only, monkeypatch):
+    kept = []
+    monkeypatch.setattr("tui.store.evidence.save_evidence", lambda *args: kept.append(args))
+    assert set(read_only.evidence("SM-0001", ("star",))) == {"star"}
+    assert not kept
+
+
+def test_there_a_ruling_is_refused_in_plain_words(read_only):
+    with pytest.raises(StoreError, match="read only: nothing can be ruled or kept"):
+        read_only.rule("SM-0001", "dust", "explains")
+
+
+def test_a_file_that_may_be_written_is_not_read_only(heron):
+    assert heron.write and not heron.read_only
+
+
+def test_a_note_has_one_limit_for_screen_and_command(heron):
+    rule(heron, "SM-0001", "dust", "explains", "n" * MAX_NOTE)
+    for too_long in ("n" * (MAX_NOTE + 1), "n" * 10_000):
+        with pytest.raises(StoreError, match=f"{MAX_NOTE} is the most"):
+            rule(heron, "SM-0001", "star", "short", too_long)
+        with pytest.raises(StoreError, match=f"{MAX_NOTE} is the most"):
+            heron.save_draft("SM-0001", "star", too_long)

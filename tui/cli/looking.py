@@ -58,9 +58,12 @@ def list_command(queue, handle, unresolved, outcome, sort, only_next, share) -> 
     you, -nodat untestable. A trailing * marks a stale ruling. Without --as, states and outcome read sealed.
     """
     from tui.cli.printing import line, remark
+    from tui.workflow.session import READ_ONLY
 
     with reader(queue, needed_handle(handle) if only_next else handle, write=only_next) as session:
         if only_next:
+            if session.read_only:
+                remark(f"{queue} is {READ_ONLY}; the candidate is not claimed.")
             name = session.claim_next() if share is None else next_in_share(session, share)
             line(name) if name else remark("Nothing needs you now.")
             return 0

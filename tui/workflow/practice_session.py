@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import replace
 from typing import TYPE_CHECKING
 
@@ -30,6 +30,7 @@ class PracticeSession:
 
     path = "practice stars"
     write = False
+    read_only = False  # what is practised is kept for as long as the practice lasts
 
     def __init__(self, reviewer: Reviewer | None = None) -> None:
         """Begin with nothing ruled.
@@ -53,6 +54,9 @@ class PracticeSession:
 
     def close(self) -> None:
         """Nothing is open."""
+
+    def on_wait(self, hook: Callable[[str], None] | None) -> None:
+        """No other program holds what lives in memory."""
 
     # --- the stars ---
 

@@ -3,5 +3,6 @@
 from __future__ import annotations
 
 from tui.store.records import SORTS, CandidateView, Cutout, Filter, QueueRow, RulingLine, StoryLine
+from tui.store.rulings import MAX_NOTE
 
-__all__ = ["SORTS", "CandidateView", "Cutout", "Filter", "QueueRow", "RulingLine", "StoryLine"]
+__all__ = ["MAX_NOTE", "SORTS", "CandidateView", "Cutout", "Filter", "QueueRow", "RulingLine", "StoryLine"]

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import sqlite3
 from array import array
 from collections.abc import Callable, Iterable, Mapping, Sequence
@@ -9,7 +10,7 @@ from contextlib import AbstractContextManager
 from itertools import count
 from typing import TYPE_CHECKING
 
-from tui.errors import HandleError, UnknownNameError
+from tui.errors import HandleError, StoreError, UnknownNameError
 from tui.model import CHECKS, KINDS, Band, Candidate, Evidence, Fit, Reviewer, Ruling, Settings
 from tui.store import candidates, claims, connect, drafts, evidence, reviewers, rulings, views
 from tui.store.stopping import while_wanted
@@ -24,6 +25,7 @@ if TYPE_CHECKING:
     from tui.workflow.tally_record import Tally
 
 _numbers = count()
+READ_ONLY = "read only: nothing can be ruled or kept"
 JOIN_HINT = "Join first: plainlight join QUEUE HANDLE."
 
 
@@ -34,11 +36,19 @@ class Session:
     covers: every view asks the store as `reviewer`.
     """
 
-    def __init__(self, path: str, connection: sqlite3.Connection, reviewer: Reviewer | None, write: bool) -> None:
+    def __init__(
+        self,
+        path: str,
+        connection: sqlite3.Connection,
+        reviewer: Reviewer | None,
+        write: bool,
+        read_only: bool = False,
+    ) -> None:
         self.path = path
         self.reviewer = reviewer
         self.connection = connection
         self.write = write
+        self.read_only = read_only  # the file may not be written here: nothing can be ruled or kept
         self.basis = read_basis(connection)
         self._read_at = connect.data_version(connection)
         self._number = next(_numbers)
@@ -50,23 +60,42 @@ class Session:
     def open(cls, path: str, handle: str | None = None, *, write: bool = True) -> Session:
         """Open an existing queue; `handle` must have joined it.
 
+        A file that may only be read is opened for reading, and the session is `read_only`: evidence is computed
+        and not kept, nothing is claimed, and a ruling is refused.
+
         Raises:
             HandleError: nobody joined under `handle`.
             StoreError: no such file, no queue, newer than the program, or on a network filesystem.
         """
+        read_only = write and os.path.exists(path) and not connect.is_writable(path)
+        write = write and not read_only
         connection = connect.open_queue(path, write=write)
         try:
             reviewer = reviewer_named(connection, handle) if handle else None
-            return cls(path, connection, reviewer, write)
+            return cls(path, connection, reviewer, write, read_only)
         except BaseException:
             connection.close()
             raise
 
     def clone(self) -> Session:
-        """The same reader on a connection of its own, for another thread."""
-        other = Session(self.path, connect.open_queue(self.path, write=self.write), self.reviewer, self.write)
+        """The same reader on a connection of its own, for another thread.
+
+        Raises:
+            StoreError: the queue was moved, deleted or replaced since it was opened.
+        """
+        connect.refuse_moved(self.connection)
+        connection = connect.open_queue(self.path, write=self.write)
+        connection.on_wait = getattr(self.connection, "on_wait", None)
+        other = Session(self.path, connection, self.reviewer, self.write, self.read_only)
         other._alike = self._alike
         return other
+
+    def on_wait(self, hook: Callable[[str], None] | None) -> None:
+        """Have `hook` told, in the waiting thread, when a wait for another program lasts more than two seconds.
+
+        Clones made afterwards tell it too. The text is a sentence without its full stop.
+        """
+        connect.listen(hook, self.connection)
 
     def close(self) -> None:
         """Close the connection; the session is of no use afterwards."""
@@ -149,19 +178,25 @@ class Session:
 
     def claim_next(self, skip: Iterable[str] = ()) -> str | None:
         """The same, and claimed at once, so that two people never get one candidate."""
+        if self.read_only:
+            return self.next_for_me(skip)
         return claims.claim_next(self.connection, self.needed_reviewer().id, utc_now(), frozenset(skip))
 
     def claim(self, name: str) -> bool:
         """Say that this reviewer is looking at `name`, for 15 minutes; whether nobody else is."""
+        if self.read_only:
+            return True
         return claims.claim(self.connection, name, self.needed_reviewer().id, utc_now())
 
     def release(self, name: str) -> None:
         """Say that this reviewer no longer looks at `name`."""
-        claims.release(self.connection, name, self.needed_reviewer().id)
+        if not self.read_only:
+            claims.release(self.connection, name, self.needed_reviewer().id)
 
     def release_all(self) -> None:
         """Say that this reviewer looks at nothing any more."""
-        claims.release_all(self.connection, self.needed_reviewer().id)
+        if not self.read_only:
+            claims.release_all(self.connection, self.needed_reviewer().id)
 
     def put_off(self, name: str) -> None:
         """Come back to a candidate later: it is offered after all others."""
@@ -259,9 +294,11 @@ class Session:
             evidence_digest: of the evidence on screen; None computes lacking evidence first and cites that.
         Raises:
             UnknownNameError: no such candidate, check or ruling.
-            StoreError: refused by the rules of the log.
+            StoreError: refused by the rules of the log, or the file may only be read, or it is no longer there.
         """
         reviewer = self.needed_reviewer()
+        if self.read_only:
+            raise StoreError(f"{self.path} is {READ_ONLY}. Copy it to a folder you may write to, and gather the copy.")
         if evidence_digest is None:
             evidence_digest = self.digest_to_cite(name, check) if ruling != "withdrawn" else ""
         made = Ruling(
@@ -292,7 +329,8 @@ class Session:
 
     def save_draft(self, name: str, check: str, text: str) -> None:
         """Keep a note that is being typed; '' forgets it."""
-        drafts.save_draft(self.connection, self.needed_reviewer().id, name, check, text)
+        if not self.read_only:
+            drafts.save_draft(self.connection, self.needed_reviewer().id, name, check, text)
 
     def position(self) -> tuple[str, str] | None:
         """Candidate and check this reviewer was last at."""
@@ -300,7 +338,8 @@ class Session:
 
     def save_position(self, name: str, check: str) -> None:
         """Keep where this reviewer is, to resume there."""
-        drafts.save_position(self.connection, self.needed_reviewer().id, name, check)
+        if not self.read_only:
+            drafts.save_position(self.connection, self.needed_reviewer().id, name, check)
 
     def story(self, name: str) -> list[StoryLine]:
         """What happened to a candidate, in time order, as far as this reader may know."""
@@ -323,9 +362,14 @@ class Session:
         return bool(self.reviewer) and self.counts()["mine"] > 0
 
     def receipt(self) -> str:
-        """What this reviewer takes away on leaving; `plainlight audit --receipt` checks it later."""
+        """What this reviewer takes away on leaving; `plainlight audit --receipt` checks it later.
+
+        Raises:
+            StoreError: the queue was moved, deleted or replaced while open, so that no receipt would hold.
+        """
         from tui.store.audit import receipt
 
+        connect.refuse_moved(self.connection, "no receipt is given for what nobody would find again")
         return receipt(self.connection, self.needed_reviewer().id)
 
     def needed_reviewer(self) -> Reviewer:
