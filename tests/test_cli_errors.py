@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import errno
 import os
+import shutil
+import signal
 import sqlite3
 import subprocess
 import sys
@@ -119,3 +121,65 @@ def test_help_starts_without_the_heavy_libraries():
     loaded = done.stdout.splitlines()[-1]
     for name in ("scipy", "astropy", "textual", "sqlite_utils", "pandas", "dust_extinction", "rich"):
         assert f"'{name}'" not in loaded, name
+
+
+def test_no_command_at_all_prints_the_help_as_it_is():
+    result = CliRunner().invoke(cli, [])
+    assert result.exit_code == 2
+    assert result.stderr.startswith("Usage: ") and "\n  assess " in result.stderr
+    assert "\ufffd" not in result.stderr
+
+
+@pytest.mark.parametrize(
+    ("arguments", "words"),
+    [
+        (["rule", "q.db", "SM-1", "dust"], "explains, short, unclear, withdrawn. Try: cli rule --help\n"),
+        (["audit", "q.db", "--receipt"], "requires an argument. Try: plainlight audit --help\n"),
+    ],
+)
+def test_what_lacks_is_named_in_one_line(arguments, words):
+    result = CliRunner().invoke(cli, arguments)
+    assert result.exit_code == 2 and result.stderr.endswith(words)
+    assert "\ufffd" not in result.stderr and result.stderr.count("\n") == 1
+
+
+SAMPLE = os.path.join(os.path.dirname(os.path.dirname(os.path.abspath(__file__))), "sample_db", "saltmarsh.db")
+
+
+@pytest.mark.parametrize("closed", [(1,), (0, 1, 2)])
+def test_closed_streams_are_taken_for_a_reader_that_has_gone_and_the_queue_stays_whole(tmp_path, closed):
+    queue = tmp_path / "q.db"
+    shutil.copy(SAMPLE, queue)
+    before = queue.read_bytes()
+
+    def close():
+        for number in closed:
+            os.close(number)
+
+    done = subprocess.run(
+        [*RUN, "list", str(queue)], stderr=subprocess.PIPE, preexec_fn=close, cwd=os.path.dirname(os.path.dirname(SAMPLE))
+    )
+    assert (done.returncode, done.stderr) == (0, b"")
+    assert queue.read_bytes() == before
+
+
+def test_a_full_disk_behind_standard_output_is_named(tmp_path):
+    shutil.copy(SAMPLE, tmp_path / "q.db")
+    with open("/dev/full", "w") as full:
+        done = subprocess.run([*RUN, "list", str(tmp_path / "q.db")], stdout=full, stderr=subprocess.PIPE, text=True)
+    assert done.returncode == 2
+    assert done.stderr == "plainlight: Standard output: No space left on device. Make room on the disk and try again.\n"
+
+
+@pytest.mark.parametrize("number", [signal.SIGTERM, signal.SIGINT])
+def test_ended_from_outside_it_says_so_and_leaves_no_other_word(tmp_path, number):
+    code = (
+        "import os, sys, signal; from tui.cli import group; from tui import __main__ as door; import click\n"
+        "@click.command('join')\n"
+        f"def join(): os.kill(os.getpid(), {int(number)}); signal.pause()\n"
+        "group.cli.get_command = lambda ctx, name: join\n"
+        "sys.argv = ['plainlight', 'join']; door.main()"
+    )
+    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True)
+    assert (done.returncode, done.stdout) == (130, "")
+    assert done.stderr.lstrip("\n") == "plainlight: Interrupted. What was already saved stays saved.\n"

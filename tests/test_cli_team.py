@@ -11,7 +11,7 @@ from click.testing import CliRunner
 
 from tui.cli.group import cli
 from tui.model import CHECKS, Candidate, Evidence, Fit, Measurement, digest
-from tui.store import connect
+from tui.store import connect, waiting
 from tui.store.candidates import save_candidates
 from tui.store.evidence import save_evidence
 from tui.store.records import LoadRecord
@@ -137,7 +137,7 @@ def test_export_says_where_and_refuses_to_replace(queue, tmp_path):
 
 
 def test_a_locked_queue_is_said_plainly(queue, monkeypatch):
-    monkeypatch.setattr(connect, "BUSY_SECONDS", 0.05)
+    monkeypatch.setattr(waiting, "BUSY_SECONDS", 0.05)
     with closing(sqlite3.connect(queue, isolation_level=None)) as holder:
         holder.execute("BEGIN IMMEDIATE")
         result = run("join", queue, "curlew")

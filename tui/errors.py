@@ -15,6 +15,21 @@ TuiError                      something a person can mend; the text is one or tw
 from __future__ import annotations
 
 
+def reason_of(error: BaseException) -> str:
+    """Why something outside the program failed, in plain words without a full stop, for the end of a sentence.
+
+    >>> reason_of(FileNotFoundError(2, "No such file or directory")), reason_of(KeyError("x"))
+    ('no such file or directory', 'its content is not what was expected')
+    """
+    if isinstance(error, UnicodeDecodeError):
+        return f"it is not UTF-8 text from byte {error.start + 1} on"
+    if isinstance(error, OSError) and error.strerror:
+        return error.strerror[0].lower() + error.strerror[1:]
+    if isinstance(error, MemoryError):
+        return "it needs more memory than there is"
+    return "its content is not what was expected"
+
+
 class TuiError(Exception):
     """Base of all; `str()` is fit to be shown to a person."""
 

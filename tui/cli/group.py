@@ -14,10 +14,11 @@ from typing import Any
 import click
 
 from tui import __version__
-from tui.errors import TuiError
+from tui.errors import TuiError, reason_of
 
 DONE, FAULTS, WRONG_USE = 0, 1, 2
-INTERRUPTED = 130  # 128 + SIGINT, as shells say it
+INTERRUPTED = 130  # 128 + SIGINT, as shells say it; by SIGTERM too
+NO_ROOM = (errno.ENOSPC, errno.EDQUOT, errno.EFBIG, errno.EIO)
 
 COMMANDS = {  # name -> module of tui.cli that holds it, what it does; in the order of a vetting round
     "demo": ("demo", "Open a copy of the sample queue, or say what is in it."),
@@ -69,8 +70,11 @@ class PlainGroup(click.Group):
         except (KeyboardInterrupt, click.Abort):
             complain("Interrupted. What was already saved stays saved.")
             return INTERRUPTED
+        except click.exceptions.NoArgsIsHelpError as error:
+            print_help(error)
+            return WRONG_USE
         except click.ClickException as error:
-            complain(usage_sentence(error))
+            complain(usage_sentence(error, sys.argv[1:] if args is None else args))
             return WRONG_USE
         except OSError as error:  # while help was printed
             return failed(error)
@@ -79,6 +83,9 @@ class PlainGroup(click.Group):
 
     def invoke(self, ctx: click.Context) -> int | None:
         """Run the chosen command; what it raises becomes a sentence and a status."""
+        from tui.workflow.waiting import say_waits
+
+        say_waits(complain)
         try:
             status = super().invoke(ctx)
             sys.stdout.flush()  # a full disk or a closed pipe is met here and not at interpreter exit
@@ -96,6 +103,8 @@ def failed(error: BaseException) -> int:
     if is_broken_pipe(error):
         silence_stdout()
         return DONE
+    if is_output_refused(error):
+        silence_stdout()
     complain(sentence(error))
     return WRONG_USE
 
@@ -103,6 +112,11 @@ def failed(error: BaseException) -> int:
 def is_broken_pipe(error: BaseException) -> bool:
     """Whether whoever read our output has gone."""
     return isinstance(error, BrokenPipeError) or getattr(error, "errno", None) == errno.EPIPE
+
+
+def is_output_refused(error: BaseException) -> bool:
+    """Whether standard output could not be written: what the program opens itself is named in its errors."""
+    return isinstance(error, OSError) and error.filename is None and error.errno in NO_ROOM
 
 
 def silence_stdout() -> None:
@@ -123,13 +137,25 @@ def complain(text: str) -> None:
         return
 
 
-def usage_sentence(error: click.ClickException) -> str:
-    """What was wrong with the command as typed, and where to read how it goes."""
-    text = error.format_message().strip()
+def print_help(error: click.ClickException) -> None:
+    """The help that click holds ready where a command was named without anything, as it is."""
+    try:
+        print(error.format_message(), file=sys.stderr, flush=True)
+    except OSError:  # nobody listens there
+        return
+
+
+def usage_sentence(error: click.ClickException, args: Sequence[str] = ()) -> str:
+    """What was wrong with the command as typed, and where to read how it goes.
+
+    Args:
+        args: as typed, for the name of the command where click does not know it any more.
+    """
+    text = " ".join(error.format_message().split())  # click puts each choice on a line of its own
     text = text if text.endswith((".", "?", "!")) else f"{text}."
     context = getattr(error, "ctx", None)
-    path = context.command_path if context else "plainlight"
-    return f"{text} Try: {path} --help"
+    typed = next((f"plainlight {word}" for word in args[:1] if word in COMMANDS), "plainlight")
+    return f"{text} Try: {context.command_path if context else typed} --help"
 
 
 def sentence(error: BaseException) -> str:
@@ -160,6 +186,8 @@ def os_sentence(error: BaseException) -> str:
     name = getattr(error, "filename", None)
     reason = getattr(error, "strerror", None) or str(error)
     place = f"{os.fsdecode(name)}: " if isinstance(name, (str, bytes)) else ""
+    if is_output_refused(error):
+        place = "Standard output: "
     mend = {
         errno.ENOSPC: "Make room on the disk and try again.",
         errno.ENOENT: "Check the path.",
@@ -184,14 +212,15 @@ def kept_traceback(error: Exception) -> str:
         path = platformdirs.user_log_path("plainlight", ensure_exists=True) / "fault.txt"
         path.write_text("".join(traceback.format_exception(error)), encoding="utf-8", errors="replace")
     except (OSError, ImportError) as refused:
-        return f"Its details could not be kept ({refused})."
+        return f"Its details could not be kept: {reason_of(refused)}."
     return f"Please send {path} to whoever maintains it."
 
 
 @click.group(
     cls=PlainGroup,
     context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100},
-    epilog="QUEUE is one SQLite file. Exit status: 0 done, 1 done with rows refused or faults found, 2 wrong use.",
+    epilog="QUEUE is one SQLite file. Exit status: 0 done, 1 done with rows refused or faults found, 2 wrong use, "
+    "130 interrupted.",
 )
 @click.version_option(__version__, prog_name="plainlight", message="%(prog)s %(version)s")
 def cli() -> None:
