@@ -21,6 +21,7 @@ from tui.workflow.session import Session
 
 SAMPLE = Path(ROOT) / "sample_db" / "saltmarsh.db"
 ABBREVIATED = dict(zip(("STAR", "INSTR", "EXTIN", "BLEND", "WDUST"), CHECKS, strict=True))
+ABBREVIATION = {check: short for short, check in ABBREVIATED.items()}
 CHI2 = r"chi2 +([\d.]+)"
 
 
@@ -76,7 +77,8 @@ def test_five_checks_from_a_cold_start_at_80_by_24(queue):
         terminal.until("m opens the next star that needs you")
         name = to_untouched(terminal)
         for number, check in enumerate(CHECKS):
-            assert (name_on(terminal), check_on(terminal)) == (name, check)
+            terminal.until(rf"\[{ABBREVIATION[check]} ")  # a frame may arrive in pieces, its last lines first
+            assert name_on(terminal) == name
             terminal.press("f", "falls short", "> falls short <")
             if check == "extinction":
                 terminal.press("a", "note", "Tab leaves the note")
