@@ -1,161 +1,202 @@
-"""How fast the desk is on a long queue: python tests/bench/bench_desk.py [ROWS]; writes only to a temporary folder.
+"""How fast the desk is: python tests/bench/bench_desk.py [ROWS] [starts keys busy lists ...]; writes to a temporary folder.
 
-Times of the first rows are those of a whole process on a pseudo-terminal, against an empty app's; times of keys are
-taken on the same, from the key to the end of its repaint; those of whole lists under Textual's pilot.
+starts  first rows of whole processes on a pseudo-terminal, in turn with an empty app's, for a queue of ROWS lines
+keys    from a key to the end of its repaint, on a pseudo-terminal and under Textual's pilot, nothing else running
+busy    the same while `plainlight assess` computes evidence of 10,000 candidates of the same queue, and while the
+        desk itself computes the evidence of the candidates that are opened
+lists   whole lists and searches at ROWS lines
+
+Beside every time stands the load average of the machine: more than the number of cores means that others had a part
+of them, and then only the ratios within a run say something.
 """
 
 from __future__ import annotations
 
 import asyncio
-import fcntl
 import os
-import pty
 import resource
-import select
+import sqlite3
 import statistics
-import struct
 import subprocess
 import sys
 import tempfile
-import termios
 import time
+from collections.abc import Iterator
+from contextlib import contextmanager
 from pathlib import Path
+
+from textual import events
+
+from tests.bench.desk_queues import make_long, make_measured
+from tests.bench.desk_terminal import ENVIRONMENT, Terminal, first_text
 
 EMPTY_APP = "from textual.app import App\nfrom textual.widgets import Static\n" \
     "class A(App):\n    def compose(self):\n        yield Static('SM-ready')\nA().run()\n"  # fmt: skip
 DESK = "import sys\nfrom tui.workflow.session import Session\nfrom tui.desk.app import Desk\n" \
     "Desk(Session.open(sys.argv[1], 'heron')).run()\n"  # fmt: skip
-SYNC_ASKED, SYNC_KNOWN = b"\x1b[?2026$p", b"\x1b[?2026;2$y"
-SYNC_END = b"\x1b[?2026l"  # ends a repaint, where the terminal said it knows the mode
-ENVIRONMENT = {name: value for name, value in os.environ.items() if name != "PYTHONDONTWRITEBYTECODE"}
-ENVIRONMENT |= {"TERM": "xterm-256color", "PYTHONPYCACHEPREFIX": str(Path(tempfile.gettempdir()) / "bench-desk-cache")}
-STARTS = 7
+COMMAND = "import sys\nsys.argv = ['plainlight', 'review', sys.argv[1], '--as', 'heron']\n" \
+    "from tui.__main__ import main\nmain()\n"  # fmt: skip
+STARTS = 12
 KEYS = 200
+MEASURED = 10_000
+OPENED = 12
+MOVES = {"down": b"\x1b[B", "page down": b"\x1b[6~", "end": b"\x1b[F", "home": b"\x1b[H"}
+UNDO = {"end": b"\x1b[A", "home": b"\x1b[B"}  # so that the next one moves again
+PAUSE_S = 0.08  # between two keys
+Times = dict[str, list[float]]
 
 
-def make_queue(path: Path, rows: int) -> None:
-    """A queue of so many assessed candidates, as many as it takes to measure a list; no measurements."""
-    from tui.model import Reviewer
-    from tui.store import connect, reviewers
-    from tui.store.names import folded, ring
-
-    connection = connect.open_queue(str(path), create=True)
-    names = [f"SM-{i:07d}" for i in range(rows)]
-    with connect.immediate(connection):
-        connection.executemany("INSERT INTO candidate (id, name) VALUES (?, ?)", enumerate(names, 1))
-        connection.executemany(
-            "INSERT INTO queue_row (id, name, fold, ring, oddness, odd_band, odd_pull) VALUES (?, ?, ?, ?, ?, ?, ?)",
-            ((i, name, folded(name), ring(name), (i * 7919 % rows) / rows * 12, "W3", i % 90 / 10)
-             for i, name in enumerate(names, 1)),
-        )  # fmt: skip
-    reviewers.add_reviewer(connection, "heron", "2026-03-04T05:06:07.000000Z")
-    assert isinstance(reviewers.reviewer_by_handle(connection, "heron"), Reviewer)
-    connection.close()
+def line(what: str, times: list[float]) -> None:
+    """Print one row of the table."""
+    worst = sorted(times)[int(0.99 * (len(times) - 1))]
+    print(f"{what:<44}{min(times):>8.1f}{statistics.median(times):>9.1f}{worst:>9.1f}{len(times):>6}"
+          f"{os.getloadavg()[0]:>8.1f}", flush=True)  # fmt: skip
 
 
-class Terminal:
-    """A process on a pseudo-terminal of 80 columns and 24 lines."""
-
-    def __init__(self, program: str, arguments: list[str]) -> None:
-        self.started = time.perf_counter()
-        self.leader, follower = pty.openpty()
-        fcntl.ioctl(follower, termios.TIOCSWINSZ, struct.pack("HHHH", 24, 80, 0, 0))
-        self.process = subprocess.Popen(
-            [sys.executable, "-c", program, *arguments], stdin=follower, stdout=follower, stderr=follower,
-            env=ENVIRONMENT, start_new_session=True,
-        )  # fmt: skip
-        os.close(follower)
-        self.written = b""
-        self.answered = False
-
-    def wait_for(self, wanted: bytes, seconds: float = 30.0) -> float:
-        """Milliseconds since the start of waiting until `wanted` was written after now."""
-        waited = time.perf_counter()
-        self.written = b""
-        while wanted not in self.written and time.perf_counter() - waited < seconds:
-            if select.select([self.leader], [], [], 0.05)[0]:
-                self.written += os.read(self.leader, 65536)
-                if SYNC_ASKED in self.written and not self.answered:
-                    self.answered = True
-                    os.write(self.leader, SYNC_KNOWN)
-        return (time.perf_counter() - waited) * 1e3
-
-    def quiet(self, seconds: float) -> None:
-        """Read on until nothing was written for so long."""
-        while select.select([self.leader], [], [], seconds)[0]:
-            os.read(self.leader, 65536)
-
-    def key(self, sent: bytes) -> float:
-        """Milliseconds from a key to the end of the next repaint."""
-        os.write(self.leader, sent)
-        return self.wait_for(SYNC_END, 5.0)
-
-    def end(self) -> None:
-        """Stop it."""
-        self.process.terminate()
-        self.process.wait()
-        os.close(self.leader)
+# --- starts ---
 
 
-def first_text(program: str, arguments: list[str], wanted: bytes) -> float:
-    """Milliseconds from the start of a process on a pseudo-terminal until `wanted` is on it."""
-    terminal = Terminal(program, arguments)
-    terminal.wait_for(wanted)
-    took = (time.perf_counter() - terminal.started) * 1e3
-    terminal.end()
-    return took
+def starts(path: Path) -> None:
+    """First text of an empty app, of the desk and of the whole command, in turn."""
+    programs = {"empty app": (EMPTY_APP, b"SM-ready"), "desk": (DESK, b"SM-0"), "plainlight review": (COMMAND, b"SM-0")}
+    for program, wanted in programs.values():
+        first_text(program, [str(path)], wanted)  # leaves compiled modules behind, as an installed program has them
+    found: Times = {name: [] for name in programs}
+    for _ in range(STARTS):
+        for name, (program, wanted) in programs.items():
+            found[name].append(first_text(program, [str(path)], wanted))
+    empty = found["empty app"]
+    for name, times in found.items():
+        line(f"first rows, {name}", times)
+        if name != "empty app":
+            pairs = statistics.median(one / other for one, other in zip(times, empty, strict=True))
+            print(f"{'':<4}times the empty app's: best {min(times) / min(empty):.2f}, median "
+                  f"{statistics.median(times) / statistics.median(empty):.2f}, of pairs {pairs:.2f}")  # fmt: skip
 
 
-def terminal_key_times(path: Path) -> dict[str, list[float]]:
-    """Times of keys on a pseudo-terminal."""
-    terminal = Terminal(DESK, [str(path)])
+# --- keys ---
+
+
+def terminal_keys(path: Path, count: int, size: tuple[int, int] = (80, 24)) -> Times:
+    """Times of keys in the list, on a pseudo-terminal."""
+    terminal = Terminal(DESK, [str(path)], size)
     terminal.wait_for(b"SM-0")
     terminal.quiet(1.5)
-    found: dict[str, list[float]] = {}
-    for name, sent in {"down": b"\x1b[B", "page down": b"\x1b[6~", "end": b"\x1b[F", "home": b"\x1b[H"}.items():
-        for _ in range(KEYS // 4):
-            found.setdefault(f"terminal, {name}", []).append(terminal.key(sent))
-            terminal.quiet(0.12)
-            if name in {"end", "home"}:
-                terminal.key(b"\x1b[A" if name == "end" else b"\x1b[B")
-                terminal.quiet(0.12)
+    found: Times = {name: [] for name in MOVES}
+    for _ in range(count // len(MOVES)):
+        for name, sent in MOVES.items():
+            found[name].append(terminal.key(sent))
+            terminal.quiet(PAUSE_S, 1.0)
+            if name in UNDO:
+                terminal.key(UNDO[name])
+                terminal.quiet(PAUSE_S, 1.0)
     terminal.end()
     return found
 
 
-async def list_times(path: Path) -> dict[str, list[float]]:
-    """Times from a key to the whole list that it asks for."""
+async def pilot_keys(path: Path, count: int) -> Times:
+    """Times from a key that reaches the app until the next frame is handed on, under the pilot."""
     from tui.desk.app import Desk
     from tui.workflow.session import Session
 
-    session = Session.open(str(path), "heron")
-    app = Desk(session)
-    found: dict[str, list[float]] = {}
-    async with app.run_test(size=(80, 24)) as pilot:
-        queue = app.screen
+    drawn = asyncio.Event()
+    found: Times = {name: [] for name in MOVES}
+    with Session.open(str(path), "heron") as session:
+        app = Desk(session)
+        display = app._display
 
-        async def listed(action: str) -> None:
-            started = time.perf_counter()
-            await queue.run_action(action)
-            while queue.is_ordering:
-                await asyncio.sleep(0.001)
-            found.setdefault(f"whole list, {action}", []).append((time.perf_counter() - started) * 1e3)
+        def watched(screen, renderable):
+            display(screen, renderable)
+            if renderable is not None:
+                drawn.set()
 
-        await pilot.pause()
-        while queue.is_ordering or not queue.counts:
-            await asyncio.sleep(0.001)
-        for action in ("order", "reverse", "all", "unresolved('blend')", "needs_me", "all"):
-            await listed(action)
-    session.close()
+        app._display = watched
+        async with app.run_test(size=(80, 24)) as pilot:
+            await pilot.pause(1.5)
+            for _ in range(count // len(MOVES)):
+                for name in ("down", "page down", "end", "home"):  # each moves, whatever came before
+                    drawn.clear()
+                    started = time.perf_counter()
+                    app.post_message(events.Key(name.replace(" ", ""), None))
+                    await asyncio.wait_for(drawn.wait(), 10)
+                    found[name].append((time.perf_counter() - started) * 1e3)
+                    await asyncio.sleep(PAUSE_S)
     return found
 
 
-def searched(path: Path) -> dict[str, list[float]]:
+def opened_keys(path: Path, size: tuple[int, int]) -> Times:
+    """Times on candidates' pages: opening them, and the keys pressed while their evidence is computed."""
+    terminal = Terminal(DESK, [str(path)], size)
+    terminal.wait_for(b"SM-0")
+    terminal.quiet(1.5)
+    found: Times = {"opening": [], "first opened, a key meanwhile": [], "a key meanwhile": []}
+    for number in range(OPENED):
+        found["opening"].append(terminal.key(b"\r"))
+        kind = "a key meanwhile" if number else "first opened, a key meanwhile"
+        for sent in (b"i", b"x", b"b", b"d", b"s") * (4 if not number else 2):
+            terminal.quiet(0.03, 0.1)
+            found[kind].append(terminal.key(sent))
+        terminal.quiet(0.5, 5.0)
+        terminal.key(b"q")
+        terminal.quiet(0.3, 2.0)
+        terminal.key(b"\x1b[B")
+        terminal.quiet(0.3, 2.0)
+    terminal.end()
+    return found
+
+
+@contextmanager
+def assessment(path: Path) -> Iterator[subprocess.Popen]:
+    """`plainlight assess` on the same queue, once its first evidence is in the file."""
+    process = subprocess.Popen(
+        [sys.executable, "-m", "tui", "assess", str(path)], stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL,
+        env=ENVIRONMENT, start_new_session=True,
+    )  # fmt: skip
+    try:
+        with sqlite3.connect(f"{path.as_uri()}?mode=ro", uri=True) as connection:
+            while process.poll() is None and not connection.execute("SELECT COUNT(*) FROM evidence").fetchone()[0]:
+                time.sleep(0.2)
+        yield process
+    finally:
+        if process.poll() is None:
+            os.killpg(process.pid, 9)
+        process.wait()
+
+
+def keys(path: Path) -> None:
+    """Keys with nothing else running."""
+    for name, times in terminal_keys(path, KEYS).items():
+        line(f"key, terminal, {name}", times)
+    for name, times in asyncio.run(pilot_keys(path, KEYS)).items():
+        line(f"key, pilot, {name}", times)
+
+
+def busy(folder: Path) -> None:
+    """Keys while evidence is computed, by another process and by the desk."""
+    path = folder / "measured.db"
+    make_measured(path, MEASURED)
+    for size in ((80, 24), (200, 60)):
+        for name, times in opened_keys(path, size).items():
+            line(f"candidate {size[0]} x {size[1]}, {name}", times)
+    with assessment(path) as process:
+        shown = {"terminal": terminal_keys(path, KEYS), "pilot": asyncio.run(pilot_keys(path, KEYS))}
+        still = process.poll() is None
+    for where, found in shown.items():
+        for name, times in found.items():
+            line(f"key while assessing, {where}, {name}", times)
+        line(f"key while assessing, {where}, all", [one for times in found.values() for one in times])
+    print(f"{'':<4}the assessment ran {'to the end of it' if still else 'only for a part of it'}")
+
+
+# --- lists ---
+
+
+def searched(path: Path) -> Times:
     """Times of a search on a pseudo-terminal: of each letter's repaint, and from all letters at once to their list."""
     terminal = Terminal(DESK, [str(path)])
     terminal.wait_for(b"SM-0")
     terminal.quiet(1.5)
-    found: dict[str, list[float]] = {"search, a letter": [], "search, beginning": [], "search, inside": []}
+    found: Times = {"search, a letter": [], "search, beginning": [], "search, inside": []}
     for text, kind in ((b"sm-09", "search, beginning"), (b"98765", "search, inside")):
         terminal.key(b"/")
         terminal.quiet(0.5)
@@ -171,23 +212,49 @@ def searched(path: Path) -> dict[str, list[float]]:
     return found
 
 
-def main(rows: int) -> None:
+async def whole_lists(path: Path) -> Times:
+    """Times from a key to the whole list that it asks for, under the pilot."""
+    from tui.desk.app import Desk
+    from tui.workflow.session import Session
+
+    found: Times = {}
+    with Session.open(str(path), "heron") as session:
+        app = Desk(session)
+        async with app.run_test(size=(80, 24)) as pilot:
+            queue = app.screen
+            await pilot.pause()
+            while queue.is_ordering or not queue.counts:
+                await asyncio.sleep(0.001)
+            for action in ("order", "reverse", "all", "unresolved('blend')", "needs_me", "all"):
+                started = time.perf_counter()
+                await queue.run_action(action)
+                while queue.is_ordering:
+                    await asyncio.sleep(0.001)
+                found.setdefault(f"whole list, {action}", []).append((time.perf_counter() - started) * 1e3)
+    return found
+
+
+def lists(path: Path) -> None:
+    """Searches and whole lists."""
+    for name, times in (searched(path) | asyncio.run(whole_lists(path))).items():
+        line(name, times)
+
+
+def main(rows: int, parts: set[str]) -> None:
     """Measure and print."""
-    with tempfile.TemporaryDirectory() as folder:
-        path = Path(folder) / "long.db"
-        make_queue(path, rows)
-        first_text(DESK, [str(path)], b"SM-0")  # leaves compiled modules behind, as an installed program has them
-        empty = [first_text(EMPTY_APP, [], b"SM-ready") for _ in range(STARTS)]
-        desk = [first_text(DESK, [str(path)], b"SM-0") for _ in range(STARTS)]
+    with tempfile.TemporaryDirectory() as name:
+        folder = Path(name)
+        path = folder / "long.db"
+        make_long(path, rows)
         print(f"{rows:,} rows, {os.cpu_count()} cores")
-        print(f"{'first text, empty app':<28}{statistics.median(empty):>9.0f} ms median of {STARTS}")
-        print(f"{'first rows, desk':<28}{statistics.median(desk):>9.0f} ms, "
-              f"{statistics.median(desk) / statistics.median(empty):.2f} times")  # fmt: skip
-        for what, times in (terminal_key_times(path) | searched(path) | asyncio.run(list_times(path))).items():
-            worst = sorted(times)[int(0.99 * (len(times) - 1))]
-            print(f"{what:<28}{statistics.median(times):>9.1f} ms median{worst:>9.1f} ms p99 of {len(times)}")
+        print(f"{'milliseconds':<44}{'best':>8}{'median':>9}{'p99':>9}{'of':>6}{'load':>8}")
+        for part, measure, given in (("starts", starts, path), ("keys", keys, path), ("busy", busy, folder),
+                                     ("lists", lists, path)):  # fmt: skip
+            if not parts or part in parts:
+                measure(given)
         print(f"peak memory {resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024:.0f} MB")
 
 
 if __name__ == "__main__":
-    main(int(sys.argv[1]) if len(sys.argv) > 1 else 1_000_000)
+    given = sys.argv[1:]
+    main(next((int(one) for one in given if one.isdigit()), 1_000_000), {one for one in given if not one.isdigit()})
