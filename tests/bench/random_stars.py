@@ -55,7 +55,7 @@ def random_problem(grids, names, count, seed, *, natures=NATURES, limits=0.15, c
     shared = shared.reshape(len(instruments), len(local.bands))
     nature = rng.integers(0, len(natures), count)
     x = np.zeros((count, c.WIDTH))
-    flux, star = np.zeros((count, len(local.bands))), np.zeros((count, len(local.bands)))
+    flux, star, second = (np.zeros((count, len(local.bands))) for _ in range(3))
     parallax = np.full(count, np.nan)
     for number, model in enumerate(natures):
         rows = np.flatnonzero(nature == number)
@@ -63,13 +63,14 @@ def random_problem(grids, names, count, seed, *, natures=NATURES, limits=0.15, c
         kit = kit_for(model, local)
         seen = predict(kit, x[rows])
         flux[rows], star[rows] = seen.flux, seen.star
+        second[rows] = 0.0 if seen.second is None else seen.second
         parallax[rows] = c.parallax_of(kit, x[rows])[0] * np.exp(rng.normal(0, 0.115, rows.size))
     parallax[rng.random(count) < 0.3] = np.nan
     blank = np.zeros(flux.shape, bool)
     empty = Problem(
         local, flux, NOISE * flux, ~blank, blank, parallax, 0.02 * parallax, np.full(count, av_max), shared
     )
-    sigma = errors_for(empty, flux, star, x[:, c.LN_T]).sigma
+    sigma = errors_for(empty, flux, star, x[:, c.LN_T], (second, x[:, c.X2])).sigma
     seen = flux + sigma * rng.standard_normal(flux.shape)
     seen = seen + flux * (rng.standard_normal((count, len(instruments))) @ shared)
     long = np.array([band.pivot_um > 10 for band in local.bands])

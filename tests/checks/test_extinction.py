@@ -50,7 +50,7 @@ def test_more_than_the_line_of_sight_holds_is_a_caution_only(look, templates):
 def test_thick_screens_warn_of_the_laws_and_an_excess_is_tried_on_another(look, templates):
     found = look(make(templates, c.STAR_AV, 5772.0, av=4.0))
     assert any("Wang & Chen" in remark for remark in found.cautions)
-    excess = look(make(templates, c.STAR_AV, 5772.0, av=4.0, factors={"W4": 8.0}))
+    excess = look(make(templates, c.STAR_AV, 7000.0, av=4.0, factors={"W4": 8.0}))
     assert excess.adequate is False
     assert excess.facts["other_law"] == "wc19" and excess.facts["excess_survives_other_law"] is True
 

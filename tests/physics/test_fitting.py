@@ -14,7 +14,7 @@ from tui.physics import composite as c
 from tui.physics.composite import MODELS, predict
 from tui.physics.descent import descend
 from tui.physics.fitting import fit, first_errors
-from tui.physics.likelihood import errors_for
+from tui.physics.likelihood import errors_of
 from tui.physics.statistics import chi2_tail
 
 # Share of fits of any model to candidates of any nature where no random start ends lower by more than 0.1, errors
@@ -101,7 +101,7 @@ def test_errors_have_settled(batches):
     # The errors used are those that the model found asks for: chi-square moves by less than 0.1 in one more pass, or
     # the star's temperature sits on a step of the spread table.
     for batch in batches.values():
-        again = errors_for(batch.problem, batch.prediction.flux, batch.prediction.star, batch.x[:, c.LN_T])
+        again = errors_of(batch.problem, batch.x, batch.prediction)
         moved = np.abs(again.sigma / batch.errors.sigma - 1).max(axis=1)
         assert np.mean(moved < 0.1) > 0.9
         assert np.median(moved) < 0.01

@@ -15,7 +15,7 @@ from tui.physics.fitting import FitBatch, finish, fit
 from tui.physics.problem import Problem
 
 KIND = "blend"
-VERSION = 2  # raise it whenever the same candidate could get other numbers
+VERSION = 3  # raise it whenever the same candidate could get other numbers
 COMPACT_RADIUS = (0.005, 0.3)  # R_sun: white dwarfs and hot subdwarfs
 EQUAL_PAIR_MAG = 0.753
 MODELS = (BOUND_PAIR, FREE_PAIR, COMPACT, GALAXY)
@@ -24,11 +24,12 @@ MODELS = (BOUND_PAIR, FREE_PAIR, COMPACT, GALAXY)
 def fit_blend(problem: Problem, star: FitBatch) -> list[FitBatch]:
     """Fits of every kind of second source, behind one screen."""
     has_sequence = bool(np.isfinite(problem.templates.radius_m).any())
-    batches = []
+    batches: list[FitBatch] = []
     for model in MODELS:
         if model.bound_pair and not has_sequence:
             continue
-        batch = fit(problem, model, start=None if model.bound_pair else star.x)
+        before = batches[-1] if batches else star
+        batch = fit(problem, model, start=None if model.bound_pair else star.x, errors=before.errors)
         batches.append(hotter_first(batch) if model.sources == ("star",) else batch)
     return batches
 

@@ -40,18 +40,17 @@ from tui.physics.composite import (
     predict,
 )
 from tui.physics.constants import MAG
-from tui.physics.descent import descend
 from tui.physics.extinction import extinction_curve
 from tui.physics.fitting import finish, first_errors, rested, starting_rows
-from tui.physics.likelihood import Errors, errors_for
+from tui.physics.likelihood import errors_of
+from tui.physics.looking import held_down
 from tui.physics.planck import planck_jy
 from tui.physics.problem import Problem
 from tui.physics.reddening import AV_MAX
 from tui.physics.spectral import INSTRUMENT, is_point
 from tui.physics.templates import SLOPE_SPLIT_UM, Templates
 
-SEED = 1e-3
-HAND_PASSES, HAND_STEPS, HAND_SETTLED = 8, 25, 0.002
+HAND_PASSES, HAND_STEPS, HAND_SETTLED, HAND_TOLERANCE = 8, 25, 0.002, 1e-5
 CHECK_MODELS: Mapping[str, tuple[Model, ...]] = {
     "star": (STAR,),
     "instrument": (STAR,),
@@ -189,25 +188,16 @@ def conditional(problem: Problem, kit: Kit, fixed: Mapping[str, float]) -> Fit:
         held[column] = True
         values[column] = np.clip(inner_value(name, value), low[0, column], high[0, column])
     errors = first_errors(problem)
-    x = np.where(held, values, np.concatenate(starting_rows(problem, kit, errors)))
-    if A2 in kit.model.free and not held[A2] and (held[X2] or held[X3]):
-        x[:, A2] = np.maximum(x[:, A2], SEED)  # a source that was not there has no slope to come back by
+    x = np.where(held, values, starting_rows(problem, kit, errors)[:, 0])
     for _ in range(HAND_PASSES):
-        rows = np.zeros(x.shape[0], np.intp)
-        still = np.tile(held, (x.shape[0], 1))
-        found = descend(problem.take(rows), kit, errors.take(rows), x, held=still, steps=HAND_STEPS)
-        x = found.x[[found.cost.argmin()]]
-        last, errors = errors, errors_of(problem, kit, x)
+        rows, still = np.zeros(x.shape[0], np.intp), np.tile(held, (x.shape[0], 1))
+        found, cost = held_down(problem, kit, errors, x, rows, still, HAND_STEPS, HAND_TOLERANCE)
+        x = found[[cost.argmin()]]
+        last, errors = errors, errors_of(problem, x, predict(kit, x))
         if np.all(np.abs(errors.sigma / last.sigma - 1.0) < HAND_SETTLED):
             break
     x = np.where(held, x, rested(kit, x))
     return fits_of(finish(problem, kit, last, x), with_intervals=False)[0]
-
-
-def errors_of(problem: Problem, kit: Kit, x: FloatArray) -> Errors:
-    """Errors that follow a model row."""
-    here = predict(kit, x)
-    return errors_for(problem, here.flux, here.star, x[:, LN_T])
 
 
 def dropped_bands(problem: Problem, dropped: frozenset[str]) -> Problem:

@@ -18,7 +18,7 @@ from tui.physics.problem import Problem
 from tui.physics.statistics import chi2_tail
 
 KIND = "dust"
-VERSION = 2  # raise it whenever the same candidate could get other numbers
+VERSION = 3  # raise it whenever the same candidate could get other numbers
 SUBLIMATION_K = 1500.0  # silicates; common practice, no single source
 EXTREME_F = 0.1
 NO_DISC_F = 0.5
@@ -35,11 +35,14 @@ LEAST_AV_SIGMA = 0.02  # mag
 def fit_dust(problem: Problem, star: FitBatch, settings: Settings) -> list[Group]:
     """Fits of star + dust; those with two temperatures only of the rows that ask for them."""
     everyone = np.arange(len(problem))
-    bare = fit(problem, DUST, start=star.x)
-    screened = fit(problem, DUST_AV, start=bare.x)
+    bare = fit(problem, DUST, start=star.x, errors=star.errors)
+    screened = fit(problem, DUST_AV, start=bare.x, errors=bare.errors)
     groups = [Group(bare, everyone), Group(screened, everyone)]
     rows = asks_for_two(problem, screened, settings)
-    return [*groups, Group(fit(problem.take(rows), TWO_DUST), rows)] if rows.size else groups
+    if not rows.size:
+        return groups
+    two = fit(problem.take(rows), TWO_DUST, start=screened.x[rows], errors=screened.errors.take(rows))
+    return [*groups, Group(two, rows)]
 
 
 def asks_for_two(problem: Problem, one: FitBatch, settings: Settings) -> np.ndarray:

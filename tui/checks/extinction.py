@@ -17,7 +17,7 @@ from tui.physics.problem import Problem
 from tui.physics.reddening import AV_MAX
 
 KIND = "extinction"
-VERSION = 1  # raise it whenever the same candidate could get other numbers
+VERSION = 2  # raise it whenever the same candidate could get other numbers
 DISC_HEIGHT_KPC = 0.1
 AV_PER_KPC = 1.8  # mag; Whittet 2003
 LAWS_DIFFER_AV = 2.0  # beyond this the laws' own differences reach several per cent in the infrared
@@ -28,10 +28,10 @@ INFRARED_UM = 2.0
 def fit_extinction(problem: Problem, star: FitBatch, settings: Settings) -> list[FitBatch]:
     """Star behind a screen of free A_V, and of free R_V where the settings say so."""
     wide = _with_av(problem, AV_MAX)
-    fixed = fit(wide, STAR_AV, r_v=fixed_r_v(settings), start=star.x)
+    fixed = fit(wide, STAR_AV, r_v=fixed_r_v(settings), start=star.x, errors=star.errors)
     if settings.r_v != "free" or settings.law == "wc19":
         return [fixed]
-    return [fixed, fit(wide, STAR_AV_RV, start=np.where(np.arange(8) == 3, 3.1, fixed.x))]
+    return [fixed, fit(wide, STAR_AV_RV, start=np.where(np.arange(8) == 3, 3.1, fixed.x), errors=fixed.errors)]
 
 
 def fixed_r_v(settings: Settings) -> float:

@@ -18,7 +18,7 @@ from tui.physics.fitting import FitBatch
 from tui.physics.statistics import ln_chi2_tail, sigma_of_ln_p
 
 KIND = "star"
-VERSION = 2  # raise it whenever the same candidate could get other numbers
+VERSION = 3  # raise it whenever the same candidate could get other numbers
 SEQUENCE_SCATTER_MAG = 0.25  # of real dwarfs about the mean sequence
 EVOLVED_MAG = 1.3  # more than any triple of equals (1.193 mag) explains
 DIM_MAG = -0.5

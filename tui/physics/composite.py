@@ -26,6 +26,7 @@ LN_T, LN_S, AV, RV, X2, A2, X3, A3 = range(8)
 WIDTH = 8
 POWER_REDDENING_K = 1000.0  # a power law is reddened as a source of this colour
 A_MAX = 1e6
+LN_S_RANGE = (-90.0, 0.0)
 A_GALAXY = 30.0  # of the star's flux at 3.4 micron: a brighter one would not be called the star's background
 NEAR = 1e-6  # a parameter this close to a bound, as a fraction of its range, lies at it
 
@@ -73,7 +74,7 @@ class Kit:
         """Lowest and highest value of every parameter, each (M, 8)."""
         low, high = np.zeros((av_max.size, WIDTH)), np.zeros((av_max.size, WIDTH))
         low[:, LN_T], high[:, LN_T] = self.star.low, self.star.high
-        low[:, LN_S], high[:, LN_S] = -90.0, 0.0
+        low[:, LN_S], high[:, LN_S] = LN_S_RANGE
         high[:, AV] = av_max
         low[:, RV], high[:, RV] = R_V_RANGE
         for column, grid in zip((X2, X3), self.further, strict=False):
@@ -129,6 +130,12 @@ class Prediction:
     flux: FloatArray
     star: FloatArray
     slopes: FloatArray
+    second: FloatArray | None = None  # (M, B), a second star's share
+
+    def take(self, rows: np.ndarray) -> Prediction:
+        """The same for some rows."""
+        second = None if self.second is None else self.second[rows]
+        return Prediction(self.flux[rows], self.star[rows], self.slopes[rows], second)
 
 
 def predict(kit: Kit, x: FloatArray) -> Prediction:
@@ -149,14 +156,16 @@ def predict(kit: Kit, x: FloatArray) -> Prediction:
         np.multiply(star, screen[2], out=slopes[:, place[AV]])
         if screen[3] is not None:
             np.multiply(star, screen[3], out=slopes[:, place[RV]])
-    total = star
-    for number in range(len(model.sources)):
-        total = total + _add_source(kit, number, x, ratio, place, slopes)
+    total, second = star, None
+    for number, source in enumerate(model.sources):
+        further = _add_source(kit, number, x, ratio, place, slopes)
+        total = total + further
+        second = further if source == "star" else second
     for column in (AV, RV):
         if column in place:
             slopes[:, place[column]] *= -MAG
     slopes[:, place[LN_S]] = total
-    return Prediction(total, star, slopes)
+    return Prediction(total, star, slopes, second)
 
 
 def _add_source(
@@ -172,7 +181,7 @@ def _add_source(
         screen = kit.further_reddening[number].at(colour, x[:, AV], ratio)
         value = value - MAG * screen[0]
         slope = slope if source == "power" else slope - MAG * screen[1]
-    ln_h, dh_star, dh_own = _norm(kit, source, x[:, LN_T], x[:, column_x])
+    ln_h, dh_star, dh_own = ln_unit(kit, source, x[:, LN_T], x[:, column_x])
     unit = np.exp(value + (ln_h + x[:, LN_S])[:, None])
     if kit.model.bound_pair:
         flux = unit
@@ -189,10 +198,13 @@ def _add_source(
     return flux
 
 
-def _norm(
+def ln_unit(
     kit: Kit, source: str, ln_t: FloatArray, own: FloatArray
 ) -> tuple[FloatArray, FloatArray | None, FloatArray | None]:
-    """ln of what an amplitude of 1 means, and its derivatives with ln T and the source's parameter (None: zero)."""
+    """ln of the surface scale, over the star's, that an amplitude of 1 means, (R,).
+
+    Also its derivatives with ln T and the source's own parameter (None: zero).
+    """
     if kit.model.bound_pair:
         second, dsecond = kit.ln_radius2.at(own)
         first, dfirst = kit.ln_radius2.at(ln_t)

@@ -7,24 +7,23 @@ from dataclasses import dataclass
 import numpy as np
 
 from tui.model import FloatArray
-from tui.physics.composite import A2, A3, LN_T, WIDTH, X2, X3, Kit, Model, Prediction, kit_for, predict
-from tui.physics.descent import descend
-from tui.physics.likelihood import Errors, chi_square, errors_for, minus_2_ln_l, residuals
+from tui.physics.composite import A2, A3, X2, X3, Kit, Model, Prediction, kit_for, predict
+from tui.physics.likelihood import Errors, chi_square, errors_for, errors_of, minus_2_ln_l, residuals
+from tui.physics.looking import Minima, gone_down, look, put
 from tui.physics.problem import Problem
 from tui.physics.scan import scan
 
 PASSES = 8
 SETTLED = 0.1  # the error model has settled once chi-square moves by less
-LOOKS = 3  # times that the whole range is scanned anew with the errors of the last pass
-MOVED = 0.03  # a scan holds while no band's error has moved by more than this fraction
+LOOKS = 4  # times that minima are compared anew with the errors of the last pass
+MOVED = 0.03  # minima hold while no band's error has moved by more than this fraction
+FAR = 0.3  # beyond which the range is scanned anew
 LOWER = 0.02  # a minimum found anew counts when its cost is lower by more
-SECOND_DUST_STEPS = (-1.4, -0.6, 0.6, 1.4)  # of ln T, where a second dust temperature is looked for
-HEATS = ((3, 40.0), (3, 6.0), (4, 2.0), (25, 0.0))  # steps, and how far behind the best a start is then given up
-ALIKE = 0.04  # parameters this close after a heat lead to the same minimum
-SETTLE_STEPS = 10
+WITH_SECOND_DUST, SECOND_DUST_NODES = 6, 6  # the best starts of one dust, each with a second at so many temperatures
+SETTLE_STEPS = 2
 COARSE = 3e-3  # of the cost: descents on the way; the last one goes on to FINE
 FINE = 1e-5
-FINE_STEPS = 20
+FINE_STEPS = 25
 REST = {"dust": np.log(300.0), "star": np.log(3500.0), "compact": np.log(20000.0), "power": 1.0}
 
 
@@ -55,7 +54,6 @@ class FitBatch:
 
     def take(self, rows: np.ndarray) -> FitBatch:
         """The same fits of some candidates."""
-        here = self.prediction
         return FitBatch(
             self.kit,
             self.problem.take(rows),
@@ -64,7 +62,7 @@ class FitBatch:
             self.cost[rows],
             self.chi2[rows],
             self.minus2lnl[rows],
-            Prediction(here.flux[rows], here.star[rows], here.slopes[rows]),
+            self.prediction.take(rows),
         )
 
     def at_bounds(self) -> np.ndarray:
@@ -83,103 +81,123 @@ def first_errors(problem: Problem) -> Errors:
 
 
 def fit(
-    problem: Problem, model: Model, *, r_v: float = 3.1, start: FloatArray | None = None, other_law: bool = False
+    problem: Problem,
+    model: Model,
+    *,
+    r_v: float = 3.1,
+    start: FloatArray | None = None,
+    errors: Errors | None = None,
+    other_law: bool = False,
 ) -> FitBatch:
     """Best fit of `model` to every candidate of `problem`.
 
     Args:
         r_v: R_V of the screen where the model does not free it.
         start: (M, 8) rows to begin from besides the scan's, for nested models.
+        errors: to look with at first, best those of a narrower model's fit; in the end they follow this model.
         other_law: behind a screen by the templates' other law.
     """
     kit = kit_for(model, problem.templates, r_v, other_law=other_law)
-    errors = first_errors(problem)
-    extra = [] if start is None else [start]
-    x, cost = look(problem, kit, errors, extra)
-    looked = errors.sigma.copy()
-    errors, x, cost = settle(problem, kit, x)
+    errors = first_errors(problem) if errors is None else errors
+    extra = [] if start is None else [start[None]]
+    looked = look(problem, kit, errors, np.concatenate([starting_rows(problem, kit, errors), *extra]))
+    sigma = errors.sigma.copy()
+    now = settle(problem, kit, looked.x[0])
+    likeliest, unsettled = now, np.zeros(0, np.intp)
     for _ in range(LOOKS):
-        moved = np.abs(errors.sigma / looked - 1.0) > MOVED
-        rows = np.flatnonzero((moved & (problem.detected | problem.limited)).any(axis=1))
+        rows, again = look_again(problem, kit, now.errors, sigma, looked, extra)
         if not rows.size:
             break
-        some, own = problem.take(rows), errors.take(rows)
-        looked[rows] = own.sigma
-        anew, anew_cost = look(some, kit, own, [each[rows] for each in extra])
-        better = anew_cost < cost[rows] - LOWER
-        if not better.any():
-            break
-        again, x_again, cost_again = settle(some.take(better), kit, anew[better])
-        there = rows[better]
-        lower = cost_again + again.ln_det < cost[there] + errors.ln_det[there]  # each with the errors it settled on
-        x[there[lower]], cost[there[lower]] = x_again[lower], cost_again[lower]
-        errors = replace_rows(errors, there[lower], again.take(np.flatnonzero(lower)))
-    x = descend(problem, kit, errors, x, steps=FINE_STEPS, tolerance=FINE).x
-    return finish(problem, kit, errors, x)
+        looked, sigma = looked.put(rows, again), put(sigma, rows, now.errors.sigma[rows])
+        better = again.cost[0] < now.cost[rows] - LOWER
+        unsettled = rows[better]
+        if unsettled.size:
+            now = now.put(unsettled, settle(problem.take(unsettled), kit, again.x[0, better]))
+            lower = np.flatnonzero(now.total < likeliest.total)
+            likeliest = likeliest.put(lower, now.take(lower))
+    now = now.put(unsettled, likeliest.take(unsettled))  # minima that take turns: each the lowest with the other's errors
+    x = gone_down(problem, kit, now.errors, now.x, FINE_STEPS, FINE)[0]
+    return finish(problem, kit, now.errors, x)
 
 
-def look(problem: Problem, kit: Kit, errors: Errors, extra: list[FloatArray]) -> tuple[FloatArray, FloatArray]:
-    """The lowest of several descents from a scan of the whole range, errors frozen.
+@dataclass(frozen=True, slots=True, eq=False)
+class Settled:
+    """Parameters and errors that follow each other."""
 
-    All starts go a few steps; those that are then far above the best of their candidate go no further.
+    errors: Errors
+    x: FloatArray  # (M, 8)
+    cost: FloatArray  # (M,)
+
+    @property
+    def total(self) -> FloatArray:
+        """-2 ln L less its constant, (M,)."""
+        return self.cost + self.errors.ln_det
+
+    def take(self, rows: np.ndarray) -> Settled:
+        """The same for some candidates."""
+        return Settled(self.errors.take(rows), self.x[rows], self.cost[rows])
+
+    def put(self, rows: np.ndarray, some: Settled) -> Settled:
+        """These with those of some candidates put in."""
+        errors = replace_rows(self.errors, rows, some.errors)
+        return Settled(errors, put(self.x, rows, some.x), put(self.cost, rows, some.cost))
+
+
+def look_again(
+    problem: Problem, kit: Kit, errors: Errors, sigma: FloatArray, looked: Minima, extra: list[FloatArray]
+) -> tuple[np.ndarray, Minima]:
+    """Rows whose errors have moved since they were looked at with errors `sigma`, and their minima with the new ones.
+
+    After a small move the minima found before are visited again; after a large one the whole range is scanned anew.
     """
-    starts = np.stack([*starting_rows(problem, kit, errors), *extra])
-    count, m = starts.shape[:2]
-    owner = np.tile(np.arange(m), count)
-    rows = first_of_each(starts.reshape(count * m, WIDTH), owner)
-    owner, x = owner[rows], starts.reshape(count * m, WIDTH)[rows]
-    for steps, behind in HEATS:
-        heat = descend(problem.take(owner), kit, errors.take(owner), x, steps=steps, tolerance=COARSE)
-        best = np.full(m, np.inf)
-        np.minimum.at(best, owner, heat.cost)
-        order = np.lexsort((heat.cost, owner))
-        order = order[heat.cost[order] <= best[owner[order]] + behind]
-        order = order[first_of_each(np.round(heat.x[order] / ALIKE), owner[order])]
-        owner, x, cost = owner[order], heat.x[order], heat.cost[order]
-    first = np.unique(owner, return_index=True)[1]
-    return x[first], cost[first]
+    used = problem.detected | problem.limited
+    moved = np.where(used, np.abs(np.log(errors.sigma / sigma)), 0.0).max(axis=1, initial=0.0)
+    near, far = np.flatnonzero((moved > MOVED) & (moved <= FAR)), np.flatnonzero(moved > FAR)
+    found = []
+    for rows in (near, far):
+        if rows.size:
+            some, own = problem.take(rows), errors.take(rows)
+            starts = [looked.x[:, rows], *(each[:, rows] for each in extra)]
+            if rows is far:
+                starts.append(starting_rows(some, kit, own))
+            found.append(look(some, kit, own, np.concatenate(starts)))
+    rows = np.concatenate([near, far])
+    return rows, Minima.joined(found) if found else looked
 
 
-def first_of_each(x: FloatArray, owner: np.ndarray) -> np.ndarray:
-    """Row numbers without the rows that repeat an earlier one of the same owner."""
-    _, first = np.unique(np.column_stack([owner, x]), axis=0, return_index=True)
-    return np.sort(first)
-
-
-def starting_rows(problem: Problem, kit: Kit, errors: Errors) -> list[FloatArray]:
-    """Rows to descend from; a second dust temperature is looked for about the first."""
+def starting_rows(problem: Problem, kit: Kit, errors: Errors) -> FloatArray:
+    """Temperatures and screens to descend from, (S, M, 8); a second dust temperature is looked for all along."""
+    found = scan(problem, kit, errors)
     if len(kit.model.sources) < 2:
-        return list(scan(problem, kit, errors))
-    rows = scan(problem, kit, errors, 1)[0]
+        best = np.take_along_axis(found.x, found.gain.argmax(axis=0)[None, :, None], axis=0)
+        return np.where(found.hopeful(problem, errors)[:, :, None], found.x, best)
+    order = np.argsort(-found.gain, axis=0, kind="stable")[:WITH_SECOND_DUST]
+    rows = np.take_along_axis(found.x, order[:, :, None], axis=0)
     out = []
-    for step in SECOND_DUST_STEPS:
-        row = rows.copy()
-        row[:, X3] = np.clip(rows[:, X2] + step, kit.further[1].low, kit.further[1].high)
-        row[:, A3] = 0.3 * rows[:, A2]
-        out.append(row)
-    return out
+    for ln_t in np.linspace(kit.further[1].low, kit.further[1].high, SECOND_DUST_NODES):
+        each = rows.copy()
+        each[:, :, X3] = ln_t
+        out.append(each)
+    return np.concatenate(out)
 
 
-def settle(problem: Problem, kit: Kit, x: FloatArray) -> tuple[Errors, FloatArray, FloatArray]:
+def settle(problem: Problem, kit: Kit, x: FloatArray) -> Settled:
     """Let errors and parameters follow each other until chi-square rests."""
     x, cost = x.copy(), np.empty(len(problem))
-    here = predict(kit, x)
-    errors = errors_for(problem, here.flux, here.star, x[:, LN_T])
+    errors = errors_of(problem, x, predict(kit, x))
     live, before = np.arange(len(problem)), np.full(len(problem), np.inf)
     for _ in range(PASSES):
         some = problem.take(live)
-        here = predict(kit, x[live])
-        own = errors_for(some, here.flux, here.star, x[live, LN_T])
-        found = descend(some, kit, own, x[live], steps=SETTLE_STEPS, tolerance=COARSE)
-        x[live], cost[live] = found.x, found.cost
+        own = errors_of(some, x[live], predict(kit, x[live]))
+        x[live], cost[live] = gone_down(some, kit, own, x[live], SETTLE_STEPS, COARSE)
         errors = replace_rows(errors, live, own)
-        chi2 = chi_square(some, kit, own, found.x, predict(kit, found.x))
+        chi2 = chi_square(some, kit, own, x[live], predict(kit, x[live]))
         moving = np.abs(chi2 - before[live]) >= SETTLED
         before[live] = chi2
         live = live[moving]
         if not live.size:
             break
-    return errors, x, cost
+    return Settled(errors, x, cost)
 
 
 def replace_rows(errors: Errors, rows: np.ndarray, some: Errors) -> Errors:
@@ -188,9 +206,9 @@ def replace_rows(errors: Errors, rows: np.ndarray, some: Errors) -> Errors:
     sigma[rows], ln_det[rows] = some.sigma, some.ln_det
     if errors.whiten is None:
         return Errors(sigma, None, ln_det)
-    whiten = errors.whiten.copy()
-    whiten[rows] = some.whiten
-    return Errors(sigma, whiten, ln_det)
+    whiten, shared = errors.whiten.copy(), errors.shared.copy()
+    whiten[rows], shared[rows] = some.whiten, some.shared
+    return Errors(sigma, whiten, ln_det, shared)
 
 
 def finish(problem: Problem, kit: Kit, errors: Errors, x: FloatArray) -> FitBatch:

@@ -8,7 +8,7 @@ import numpy as np
 from scipy.special import log_ndtr
 
 from tui.model import FloatArray
-from tui.physics.composite import LN_T, Kit, Prediction, parallax_of
+from tui.physics.composite import LN_T, X2, Kit, Prediction, parallax_of
 from tui.physics.problem import Problem
 
 LN_2PI = float(np.log(2 * np.pi))
@@ -23,12 +23,13 @@ class Errors:
     sigma: FloatArray  # (M, B) Jy, total, 1 where nothing
     whiten: FloatArray | None = None  # (M, B, B): inverse root of the correlations where instruments share an error
     ln_det: FloatArray | None = None  # (M,): ln determinant of the detections' covariance
+    shared: FloatArray | None = None  # (M, K, B): what each instrument's bands share, in units of sigma
 
     def take(self, rows: np.ndarray) -> Errors:
         """The same for some candidates."""
         if self.whiten is None:
             return Errors(self.sigma[rows], None, self.ln_det[rows])
-        return Errors(self.sigma[rows], self.whiten[rows], self.ln_det[rows])
+        return Errors(self.sigma[rows], self.whiten[rows], self.ln_det[rows], self.shared[rows])
 
 
 def spread_at(problem: Problem, ln_t: FloatArray) -> FloatArray:
@@ -38,23 +39,38 @@ def spread_at(problem: Problem, ln_t: FloatArray) -> FloatArray:
     return problem.templates.spread[np.clip(place, 0, star.ln_flux.shape[0] - 1)]
 
 
-def errors_for(problem: Problem, total: FloatArray, star: FloatArray, ln_t: FloatArray) -> Errors:
+def errors_for(
+    problem: Problem,
+    total: FloatArray,
+    star: FloatArray,
+    ln_t: FloatArray,
+    second: tuple[FloatArray, FloatArray] | None = None,
+) -> Errors:
     """sigma^2 = measurement^2 + (floor max(F, model))^2 + (spread F_star)^2, and the common term if any.
 
     Args:
         total, star: (M, B) Jy, model flux and the star's share of it, of the last pass.
         ln_t: (M,), ln T_eff of the last pass, for the spread.
+        second: the same of a second star, whose spread is its own.
     """
     used = problem.detected | problem.limited
     floor = problem.templates.floor * np.maximum(np.where(problem.detected, problem.flux_jy, 0.0), total)
     variance = problem.error_jy**2 + floor**2 + (spread_at(problem, ln_t) * star) ** 2
+    if second is not None:
+        variance += (spread_at(problem, second[1]) * second[0]) ** 2
     sigma = np.where(used, np.sqrt(variance), 1.0)
     ln_det = np.sum(np.where(problem.detected, 2 * np.log(sigma), 0.0), axis=1)
     if not problem.common.size:
         return Errors(sigma, None, ln_det)
     shared = problem.common[None] * np.where(problem.detected, total, 0.0)[:, None, :] / sigma[:, None, :]
     whiten, ln_det_shared = whitener(shared)
-    return Errors(sigma, whiten, ln_det + ln_det_shared)
+    return Errors(sigma, whiten, ln_det + ln_det_shared, shared)
+
+
+def errors_of(problem: Problem, x: FloatArray, seen: Prediction) -> Errors:
+    """Errors that follow parameter rows `x` (M, 8) and what they predict."""
+    second = None if seen.second is None else (seen.second, x[:, X2])
+    return errors_for(problem, seen.flux, seen.star, x[:, LN_T], second)
 
 
 def whitener(shared: FloatArray) -> tuple[FloatArray, FloatArray]:

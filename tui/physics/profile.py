@@ -8,9 +8,10 @@ import numpy as np
 
 from tui.model import FloatArray
 from tui.physics.composite import WIDTH
-from tui.physics.descent import curvature, descend
+from tui.physics.descent import curvature
 from tui.physics.fitting import FitBatch
 from tui.physics.likelihood import residuals
+from tui.physics.looking import held_down
 
 RISE_68 = 1.0  # of -2 ln L, two-sided 68.3 % (Wilks 1938)
 RISE_95 = 2.71  # one-sided 95 % at a bound
@@ -101,8 +102,8 @@ class _Ray:
         start[place, column] = self.batch.x[row, column] + self.side[some] * step
         held = np.zeros((some.size, WIDTH), bool)
         held[place, column] = True
-        part, errors = self.batch.problem.take(row), self.batch.errors.take(row)
-        cost = descend(part, self.batch.kit, errors, start, held=held, steps=5, tolerance=1e-2).cost
+        here = self.batch
+        cost = held_down(here.problem, here.kit, here.errors, start, row, held, steps=5, tolerance=1e-2)[1]
         return np.sqrt(np.maximum(cost - self.batch.cost[row], 0.0) / self.goal[some])
 
 

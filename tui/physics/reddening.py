@@ -88,11 +88,12 @@ def _basis(unit: FloatArray, count: int) -> tuple[FloatArray, FloatArray]:
         twice = 2.0 * unit
     for degree in range(2, count):
         basis[:, degree] = twice * basis[:, degree - 1] - basis[:, degree - 2]
-    return basis, basis @ _derivative_matrix(count)
+    return basis, basis @ derivative_matrix(count)
 
 
 @cache
-def _derivative_matrix(count: int) -> FloatArray:
+def derivative_matrix(count: int) -> FloatArray:
+    """Matrix D (count, count): polynomials times D are the polynomials' derivatives."""
     matrix = np.zeros((count, count))
     for degree in range(1, count):
         unit = np.zeros(count)

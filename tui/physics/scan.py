@@ -1,120 +1,247 @@
-"""Coarse scans over all temperatures and screens, amplitudes in closed form: where a descent should start."""
+"""Coarse scans over all temperatures and screens, amplitudes in closed form: where a descent should start.
+
+A scan only ranks places, so it works in single precision, and in pieces that stay in the processor's cache. Of the
+amplitudes only the fall of chi-square that they bring is computed; branches and index searches, which cost more than
+all arithmetic, are left to the few places that are chosen in the end.
+"""
 
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 
 from tui.model import FloatArray
-from tui.physics.composite import A2, AV, LN_S, LN_T, POWER_REDDENING_K, RV, WIDTH, X2, Kit, parallax_of
+from tui.physics.composite import AV, LN_T, POWER_REDDENING_K, RV, WIDTH, X2, Kit, parallax_of
 from tui.physics.constants import MAG
 from tui.physics.likelihood import Errors, parallax_sigma
 from tui.physics.problem import Problem
 
 AV_NODES = np.array([0, 0.15, 0.4, 0.8, 1.4, 2.2, 3.2, 4.5, 6, 8, 10.5, 13.5, 17, 21, 25, 30.0])
 RV_NODES = np.array([2.5, 3.1, 4.0, 5.2])
-STAR_NODES = 40
-FURTHER_NODES = {"dust": 22, "star": 22, "compact": 18, "power": 12}
-STARTS = 3
-PARTS_ALONG_T = 10  # temperature and screen make a long valley with several minima: a start from each part of it
-COARSE = np.float32  # a scan only ranks places to start from
+STAR_NODES = 60
+FURTHER_NODES = {"dust": 32, "star": 30, "compact": 24, "power": 16}
+STARTS = 4
+PARTS_ALONG_T = 15  # temperature and screen make a long valley with several minima: a start from each part of it
+COARSE = np.float32
 TINY = 1e-30
-SCAN_CELLS = 40_000  # cells of one scan worked on at a time: they stay in the processor's cache
-
-
-def nodes(low: float, high: float, count: int) -> FloatArray:
-    """Evenly spaced values from low to high."""
-    return np.linspace(low, high, count)
+ALIKE = 1e-5  # two sources as alike as that are one
+SCAN_CELLS = 400_000  # cells of one scan worked on at a time; more would only cost memory
+KITS_KEPT = 24
+BEHIND, ROUGH = 100.0, 50.0  # of chi-square; the farther, the worse the best is
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class Weighted:
-    """Data in the form that scans use, fluxes in units of each candidate's brightest: weights, weighted fluxes."""
+class Starts:
+    """Places to descend from, the best of the scan's first."""
+
+    x: FloatArray  # (S, M, 8): temperatures and screen; amplitudes are not set
+    gain: FloatArray  # (S, M): fall of chi-square there, by the scan
+
+    def hopeful(self, problem: Problem, errors: Errors) -> np.ndarray:
+        """Which places (S, M) are not so far behind the best that none was ever seen to lead to the lowest minimum."""
+        all_of_it = np.sum(np.where(problem.detected, problem.flux_jy / errors.sigma, 0.0) ** 2, axis=1)
+        top = self.gain.max(axis=0)
+        return top - self.gain <= BEHIND * (1.0 + np.maximum(all_of_it - top, 0.0) / ROUGH)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Weighted:
+    """Data as scans use them, fluxes in units of each candidate's brightest."""
 
     weight: FloatArray  # (B, M)
     weighted: FloatArray  # (B, M)
-    unit_jy: FloatArray  # (M,)
+    level: FloatArray  # (B, M) limits over sigma, 0 where none
+    inverse: FloatArray  # (B, M) the unit over sigma of limits, 0 where none
+    limited_bands: tuple[int, ...]
+    reach: FloatArray  # (M,) highest A_V node to look at
+    ln_parallax: FloatArray  # (M,) ln of parallax squared over the unit
+    firmness: FloatArray  # (M,) inverse square of the scale's relative error by the parallax; 0 where not known
 
-    def take(self, rows: np.ndarray) -> Weighted:
+    def take(self, rows: np.ndarray) -> _Weighted:
         """The same for some candidates."""
-        return Weighted(self.weight[:, rows], self.weighted[:, rows], self.unit_jy[rows])
+        whole = (self.weight, self.weighted, self.level, self.inverse)
+        single = (self.reach, self.ln_parallax, self.firmness)
+        cut = [part[:, rows] for part in whole]
+        return _Weighted(*cut, self.limited_bands, *(part[rows] for part in single))
+
+    def overshoot(self, band: int, model: FloatArray) -> FloatArray:
+        """How far model fluxes (..., M) of a band lie above its limit, in sigma; the model is used up."""
+        model *= self.inverse[band]
+        model -= self.level[band]
+        return np.maximum(model, 0.0, out=model)
+
+    def drawn(self, ln_wish: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Weight and value of the scale that the parallax asks for, shaped as `ln_wish` broadcast with (M,)."""
+        wish = np.exp(np.clip(ln_wish + self.ln_parallax, -25.0, 35.0)).astype(COARSE)
+        return (self.firmness / (wish * wish)).astype(COARSE), wish
+
+    def shut(self, screen: _Screen) -> FloatArray:
+        """Infinite for candidates that do not look behind this screen, else 0."""
+        return np.where(screen.av <= self.reach, 0.0, np.inf).astype(COARSE)
 
 
-def weigh(problem: Problem, errors: Errors) -> Weighted:
-    """Detections' weights; limits enter a scan as penalties."""
+def _weigh(problem: Problem, errors: Errors) -> _Weighted:
     flux = np.where(problem.detected, problem.flux_jy, 0.0)
     unit = np.maximum(np.abs(flux).max(axis=1, initial=0.0), 1e-300)
     weight = np.where(problem.detected, (unit[:, None] / errors.sigma) ** 2, 0.0)
-    weighted = weight * flux / unit[:, None]
-    return Weighted(np.ascontiguousarray(weight.T), np.ascontiguousarray(weighted.T), unit)
+    inverse = np.where(problem.limited, unit[:, None] / errors.sigma, 0.0)
+    level = np.where(problem.limited, problem.flux_jy / errors.sigma, 0.0)
+    known = np.isfinite(problem.parallax_mas)
+    parallax = np.where(known, problem.parallax_mas, 1.0)
+    parts = (weight, weight * flux / unit[:, None], level, inverse)
+    return _Weighted(
+        *(np.ascontiguousarray(part.T, COARSE) for part in parts),
+        limited_bands=tuple(np.flatnonzero(problem.limited.any(axis=0))),
+        reach=AV_NODES[np.minimum(np.searchsorted(AV_NODES, problem.av_max - 1e-9), AV_NODES.size - 1)],
+        ln_parallax=2 * np.log(parallax) - np.log(unit),
+        firmness=np.where(known, (parallax / (2 * parallax_sigma(problem))) ** 2, 0.0),
+    )
 
 
-def screens(kit: Kit) -> list[tuple[float, float]]:
-    """(A_V, R_V) nodes; the same for every candidate, so that none depends on its company."""
+@dataclass(frozen=True, slots=True, eq=False)
+class _Screen:
+    """The sources' tables behind one screen, each row in units of its largest band."""
+
+    av: float
+    rv: float
+    first: FloatArray  # (T, B)
+    second: FloatArray | None = None  # (U, B)
+    product: FloatArray | None = None  # (T U, B)
+    ratio: FloatArray | None = None  # (T, U) the second scale over the first, of a pair at one distance
+    ln_wish: FloatArray | None = None  # (T,) ln of such a pair's first scale at a parallax of 1 mas
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Tables:
+    """What a scan of one model looks through."""
+
+    t: FloatArray  # (T,) ln T of the star
+    u: FloatArray | None  # (U,) the second source's parameter
+    screens: tuple[_Screen, ...]
+
+
+@lru_cache(maxsize=KITS_KEPT)
+def _tables(kit: Kit) -> _Tables:
+    """Tables behind every screen, the same for all candidates, so that none depends on its company."""
+    two = bool(kit.model.sources)
+    t = np.linspace(kit.star.low, kit.star.high, STAR_NODES if two else 3 * STAR_NODES)
+    u = None
+    if two:
+        u = np.linspace(kit.further[0].low, kit.further[0].high, FURTHER_NODES[kit.model.sources[0]])
+    return _Tables(t, u, tuple(_screen(kit, t, u, av, rv) for av, rv in _screens(kit)))
+
+
+def _screens(kit: Kit) -> list[tuple[float, float]]:
+    """(A_V, R_V) nodes, A_V rising."""
     if AV not in kit.model.free:
         return [(0.0, 3.1)]
     ratios = RV_NODES if RV in kit.model.free else [3.1]
     return [(float(av), float(rv)) for av in AV_NODES for rv in (ratios if av > 0 else [3.1])]
 
 
-def reach(av_max: FloatArray) -> FloatArray:
-    """The highest A_V node that a candidate looks at: the first at or above its largest A_V, (M,)."""
-    return AV_NODES[np.minimum(np.searchsorted(AV_NODES, av_max - 1e-9), AV_NODES.size - 1)]
+def _screen(kit: Kit, t: FloatArray, u: FloatArray | None, av: float, rv: float) -> _Screen:
+    first, ln_first = _through(kit.star, kit.star_reddening, t, t, av, rv)
+    if u is None:
+        return _Screen(av, rv, first)
+    colour = np.full(u.shape, np.log(POWER_REDDENING_K)) if kit.model.sources[0] == "power" else u
+    second, ln_second = _through(kit.further[0], kit.further_reddening[0], u, colour, av, rv)
+    product = (first[:, None, :] * second[None]).reshape(-1, first.shape[1])
+    if not kit.model.bound_pair:
+        return _Screen(av, rv, first, second, product)
+    own, one = kit.ln_radius2.at(u)[0][:, 0], kit.ln_radius2.at(t)[0][:, 0]
+    ln_ratio = (own + ln_second)[None, :] - (one + ln_first)[:, None]
+    at_one = np.zeros((t.size, WIDTH))
+    at_one[:, LN_T] = t
+    ln_wish = ln_first - 2 * np.log(parallax_of(kit, at_one)[0])
+    return _Screen(av, rv, first, second, product, np.exp(np.clip(ln_ratio, -40.0, 40.0)).astype(COARSE), ln_wish)
 
 
-def _through(grid, reddening, x: FloatArray, colour: FloatArray, av: float, rv: float) -> FloatArray:
+def _through(grid, reddening, x: FloatArray, colour: FloatArray, av: float, rv: float) -> tuple[FloatArray, FloatArray]:
+    """Fluxes (N, B) of a source behind a screen, the brightest band 1, and ln of that band's."""
     value, _ = grid.at(x)
     if av > 0:
         value = value - MAG * reddening.at(colour, np.full(x.shape, av), np.full(x.shape, rv))[0]
-    return value
+    top = value.max(axis=1)
+    return np.exp(value - top[:, None]).astype(COARSE), top
 
 
-def scan(problem: Problem, kit: Kit, errors: Errors, starts: int = STARTS) -> FloatArray:
-    """Starting rows, shape (S, M, 8): up to `starts` peaks of the scan, and one from each part of the star's range."""
-    data = weigh(problem, errors)
-    if not kit.model.sources:
-        return _scan_star(problem, kit, data, errors, starts)
-    return _scan_two(problem, kit, data, errors, starts)
+def scan(problem: Problem, kit: Kit, errors: Errors, starts: int = STARTS) -> Starts:
+    """Up to `starts` peaks along the parameter of the last source, and one place from each part of the star's range."""
+    tables, with_limits = _tables(kit), problem.limited.any(axis=1)
+    size = max(1, SCAN_CELLS // (tables.t.size * (1 if tables.u is None else tables.u.size)))
+    parts, order = [], []
+    for group in (np.flatnonzero(~with_limits), np.flatnonzero(with_limits)):
+        for first in range(0, group.size, size):
+            order.append(group[first : first + size])
+            data = _weigh(problem.take(order[-1]), errors.take(order[-1]))
+            parts.append(_scan_star(data, tables, starts) if tables.u is None else _scan_two(data, tables, starts))
+    back = np.argsort(np.concatenate(order))
+    x = np.concatenate([part.x for part in parts], axis=1)[:, back]
+    return Starts(x, np.concatenate([part.gain for part in parts], axis=1)[:, back])
 
 
-def _penalty(problem: Problem, errors: Errors, model: FloatArray) -> FloatArray:
-    """Penalty (..., M) of limits that model fluxes (..., M, B) overshoot."""
-    over = np.maximum(0.0, (model - problem.flux_jy) / errors.sigma)
-    return np.sum(np.where(problem.limited, over, 0.0) ** 2, axis=-1)
-
-
-def _scan_star(problem: Problem, kit: Kit, data: Weighted, errors: Errors, starts: int) -> FloatArray:
-    t = nodes(kit.star.low, kit.star.high, 3 * STAR_NODES)
-    gains, scales, places = [], [], screens(kit)
-    has_limits, ceiling = bool(problem.limited.any()), reach(problem.av_max)
-    places = [(av, rv) for av, rv in places if av <= ceiling.max()]
-    for av, rv in places:
-        ln_flux = _through(kit.star, kit.star_reddening, t, t, av, rv)
-        top = ln_flux.max(axis=1, keepdims=True)
-        flux = np.exp(ln_flux - top)
-        a, b = (flux**2) @ data.weight, flux @ data.weighted
-        scale = np.maximum(b, 0) / np.maximum(a, 1e-300)
-        gain = np.maximum(b, 0) * scale
-        scale = scale * data.unit_jy
-        if has_limits:
-            gain = gain - _penalty(problem, errors, scale[:, :, None] * flux[:, None, :])
-        gains.append(np.where(av <= ceiling, gain, -np.inf))
-        scales.append(np.log(np.maximum(scale, 1e-300)) - top)
-    gain, scale = np.stack(gains, axis=1), np.stack(scales, axis=1)  # (T, screens, M)
-    best_screen = gain.argmax(axis=1)
-    profile = np.take_along_axis(gain, best_screen[:, None], axis=1)[:, 0]
-    chosen = _peaks(profile, starts)  # (starts, M)
-    if len(places) > 1:
+def _scan_star(data: _Weighted, tables: _Tables, starts: int) -> Starts:
+    """Starts of a star alone."""
+    screens = [one for one in tables.screens if one.av <= data.reach.max()]
+    gains = np.stack([_star_gain(data, screen) for screen in screens])  # (S, T, M)
+    profile = gains.max(axis=0)
+    chosen = _peaks(profile, starts)
+    if len(screens) > 1:
         chosen = np.concatenate([chosen, _best_of_parts(profile, PARTS_ALONG_T)])
-    m = np.arange(len(problem))
-    rows = np.zeros((chosen.shape[0], len(problem), WIDTH))
-    screen = best_screen[chosen, m]
-    rows[:, :, LN_T] = t[chosen]
-    rows[:, :, LN_S] = scale[chosen, screen, m]
-    rows[:, :, AV] = np.array([av for av, _ in places])[screen]
-    rows[:, :, RV] = np.array([rv for _, rv in places])[screen]
-    return rows
+    screen = _best_screen(gains, chosen)
+    return _placed(tables, screens, screen, chosen, None, np.take_along_axis(profile, chosen, 0))
+
+
+def _star_gain(data: _Weighted, screen: _Screen) -> FloatArray:
+    """Fall of chi-square (T, M) with the best scale."""
+    a, b = (screen.first**2) @ data.weight, np.maximum(screen.first @ data.weighted, 0.0)
+    scale = b / (a + TINY)
+    gain = b * scale
+    for band in data.limited_bands:
+        gain -= data.overshoot(band, scale * screen.first[:, band, None]) ** 2
+    return gain - data.shut(screen)
+
+
+def _scan_two(data: _Weighted, tables: _Tables, starts: int) -> Starts:
+    """Starts of two sources: peaks along the second's parameter, then the best of each part of the star's range."""
+    screens = [one for one in tables.screens if one.av <= data.reach.max()]
+    along_t = np.empty((len(screens), tables.t.size, data.reach.size), COARSE)
+    along_u = np.empty((len(screens), tables.u.size, data.reach.size), COARSE)
+    for number, screen in enumerate(screens):
+        gain = _pair_gain(data, screen, _sums(data, screen))
+        gain.max(axis=1, out=along_t[number])
+        gain.max(axis=0, out=along_u[number])
+        along_t[number] -= data.shut(screen)
+        along_u[number] -= data.shut(screen)
+    found = []
+    for gains, is_t in ((along_u, False), (along_t, True)):
+        profile = gains.max(axis=0)
+        chosen = _best_of_parts(profile, PARTS_ALONG_T) if is_t else _peaks(profile, starts)
+        screen = _best_screen(gains, chosen)
+        other = _partner(data, screens, screen, chosen, is_t)
+        i, j = (chosen, other) if is_t else (other, chosen)
+        found.append(_placed(tables, screens, screen, i, j, np.take_along_axis(profile, chosen, 0)))
+    return Starts(*(np.concatenate([getattr(one, name) for one in found]) for name in ("x", "gain")))
+
+
+def _best_screen(gains: FloatArray, chosen: np.ndarray) -> np.ndarray:
+    """The best screen (K, M) at each chosen place along the second axis of gains (S, N, M)."""
+    return np.stack([np.take_along_axis(one, chosen, 0) for one in gains]).argmax(axis=0)
+
+
+def _placed(
+    tables: _Tables, screens: list[_Screen], screen: np.ndarray, i: np.ndarray, j: np.ndarray | None, gain: FloatArray
+) -> Starts:
+    """Parameter rows of places in the tables."""
+    x = np.zeros((*i.shape, WIDTH))
+    x[:, :, LN_T] = tables.t[i]
+    x[:, :, AV] = np.array([one.av for one in screens])[screen]
+    x[:, :, RV] = np.array([one.rv for one in screens])[screen]
+    if j is not None:
+        x[:, :, X2] = tables.u[j]
+    return Starts(x, gain)
 
 
 def _peaks(profile: FloatArray, starts: int) -> np.ndarray:
@@ -129,201 +256,133 @@ def _peaks(profile: FloatArray, starts: int) -> np.ndarray:
     return np.where(found, order, best)
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class _Screen:
-    """Both sources' tables behind one screen, each row in units of its largest band."""
-
-    av: float
-    rv: float
-    first: FloatArray  # (T, B)
-    second: FloatArray  # (U, B)
-    product: FloatArray  # (T U, B)
-    ln_first: FloatArray  # (T,)
-    ln_second: FloatArray  # (U,)
-
-
-def _screen(kit: Kit, t: FloatArray, u: FloatArray, av: float, rv: float) -> _Screen:
-    colour = np.full(u.shape, np.log(POWER_REDDENING_K)) if kit.model.sources[0] == "power" else u
-    first = _through(kit.star, kit.star_reddening, t, t, av, rv)
-    second = _through(kit.further[0], kit.further_reddening[0], u, colour, av, rv)
-    top1, top2 = first.max(axis=1), second.max(axis=1)
-    g1, g2 = np.exp(first - top1[:, None]).astype(COARSE), np.exp(second - top2[:, None]).astype(COARSE)
-    product = (g1[:, None, :] * g2[None]).reshape(-1, g1.shape[1])
-    return _Screen(av, rv, g1, g2, product, top1, top2)
-
-
 def _best_of_parts(profile: FloatArray, parts: int) -> np.ndarray:
-    """Index (parts, M) of the highest value in each of several stretches along the first axis."""
+    """Index (parts + 2, M) of the highest value in each of several stretches along the first axis, and both ends."""
     edges = np.linspace(0, profile.shape[0], parts + 1).astype(int)
-    return np.stack([low + profile[low:high].argmax(axis=0) for low, high in zip(edges[:-1], edges[1:], strict=True)])
+    best = [low + profile[low:high].argmax(axis=0) for low, high in zip(edges[:-1], edges[1:], strict=True)]
+    ends = np.tile([[0], [profile.shape[0] - 1]], profile.shape[1])
+    return np.concatenate([np.stack(best), ends])
 
 
-def _scan_two(problem: Problem, kit: Kit, data: Weighted, errors: Errors, starts: int) -> FloatArray:
-    source = kit.model.sources[0]
-    t = nodes(kit.star.low, kit.star.high, STAR_NODES)
-    u = nodes(kit.further[0].low, kit.further[0].high, FURTHER_NODES[source])
-    top = reach(problem.av_max).max()
-    tables = [_screen(kit, t, u, av, rv) for av, rv in screens(kit) if av <= top]
-    size = max(1, SCAN_CELLS // (t.size * u.size))
-    out = []
-    for first in range(0, len(problem), size):
-        rows = np.arange(first, min(first + size, len(problem)))
-        out.append(_scan_part(problem.take(rows), kit, data.take(rows), errors.take(rows), starts, t, u, tables))
-    return np.concatenate(out, axis=1)
+@dataclass(frozen=True, slots=True, eq=False)
+class _Sums:
+    """Products of both sources' tables with the data; they broadcast to (T, U, M)."""
+
+    a11: FloatArray
+    a12: FloatArray
+    a22: FloatArray
+    b1: FloatArray
+    b2: FloatArray
 
 
-def _scan_part(
-    problem: Problem,
-    kit: Kit,
-    data: Weighted,
-    errors: Errors,
-    starts: int,
-    t: FloatArray,
-    u: FloatArray,
-    tables: list[_Screen],
-) -> FloatArray:
-    """Starts of some candidates: the peaks along the second source's parameter, then those along the star's."""
-    size = len(problem)
-    along_u, along_t = _Kept(u.size, size), _Kept(t.size, size)
-    ceiling = reach(problem.av_max)
-    for number, table in enumerate(tables):
-        if not (table.av <= ceiling).any():
+def _sums(data: _Weighted, screen: _Screen) -> _Sums:
+    first, second = screen.first, screen.second
+    a12 = (screen.product @ data.weight).reshape(first.shape[0], second.shape[0], -1)
+    return _Sums(
+        a11=((first**2) @ data.weight)[:, None],
+        a12=a12,
+        a22=((second**2) @ data.weight)[None],
+        b1=(first @ data.weighted)[:, None],
+        b2=(second @ data.weighted)[None],
+    )
+
+
+def _pair_gain(data: _Weighted, screen: _Screen, sums: _Sums) -> FloatArray:
+    """Fall of chi-square (T, U, M) with the best scales that are not negative."""
+    if screen.ratio is not None:
+        gain, s1, s2 = _tied_gain(sums, screen.ratio[:, :, None], *data.drawn(screen.ln_wish[:, None, None]))
+    elif not data.limited_bands:
+        return _free_gain(sums)
+    else:
+        gain, s1, s2 = _free_scales(sums)
+    for band in data.limited_bands:
+        model = s1 * screen.first[:, band, None, None]
+        model += s2 * screen.second[None, :, band, None]
+        over = data.overshoot(band, model)
+        over *= over
+        gain -= over
+    return gain
+
+
+def _free_gain(sums: _Sums) -> FloatArray:
+    """With two scales of their own.
+
+    In units where each source alone has length 1: c the data's share in each, r how alike they are. Where the second
+    source alone leaves nothing to the first, or the first to the second, the better one stands alone.
+    """
+    n1, n2 = 1.0 / np.sqrt(sums.a11 + TINY), 1.0 / np.sqrt(sums.a22 + TINY)
+    c1, c2 = np.maximum(sums.b1 * n1, 0.0), np.maximum(sums.b2 * n2, 0.0)
+    r = sums.a12 * n1
+    r *= n2
+    own = c1 - r * c2
+    np.maximum(own, 0.0, out=own)
+    own *= own
+    rest = 1.0 - r * r
+    np.maximum(rest, ALIKE, out=rest)
+    own /= rest  # what the first adds to the second
+    r *= c1
+    r -= c2
+    alone = r > 0  # the first alone leaves nothing to the second
+    own += c2 * c2
+    np.copyto(own, np.broadcast_to(c1 * c1, own.shape), where=alone)
+    return own
+
+
+def _free_scales(sums: _Sums) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """As _free_gain, with both scales."""
+    n1, n2 = 1.0 / np.sqrt(sums.a11 + TINY), 1.0 / np.sqrt(sums.a22 + TINY)
+    c1, c2 = np.maximum(sums.b1 * n1, 0.0), np.maximum(sums.b2 * n2, 0.0)
+    r = sums.a12 * n1 * n2
+    rest = np.maximum(1.0 - r * r, ALIKE)
+    s1, s2 = np.maximum(c1 - r * c2, 0.0), np.maximum(c2 - r * c1, 0.0)
+    gain = s1 * s1 / rest + c2 * c2
+    only1, only2 = s2 <= 0, s1 <= 0
+    s1 /= rest
+    s2 /= rest
+    for target, value, where in ((gain, c1 * c1, only1), (s1, c1, only1), (s2, c2, only2)):
+        np.copyto(target, np.broadcast_to(value, target.shape), where=where)
+    return gain, s1 * n1, s2 * n2
+
+
+def _tied_gain(
+    sums: _Sums, ratio: FloatArray, pull: FloatArray, wish: FloatArray
+) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Both stars at one distance: one scale, drawn towards what the parallax asks for; also both scales."""
+    a = sums.a12 * (2.0 * ratio)
+    a += ratio * ratio * sums.a22
+    a += sums.a11 + pull + TINY
+    b = ratio * sums.b2 + (sums.b1 + pull * wish)
+    np.maximum(b, 0.0, out=b)
+    s = b / a
+    b *= s
+    b -= pull * wish * wish
+    return b, s, s * ratio
+
+
+def _partner(
+    data: _Weighted, screens: list[_Screen], screen: np.ndarray, chosen: np.ndarray, is_t: bool
+) -> np.ndarray:
+    """The other source's best node (K, M) beside a chosen node of one, behind a given screen."""
+    row = np.broadcast_to(np.arange(chosen.shape[1]), chosen.shape)
+    out = np.zeros(chosen.shape, np.intp)
+    for number, one in enumerate(screens):
+        here = np.nonzero(screen == number)
+        if not here[0].size:
             continue
-        gain, s1, s2 = _pair_gain(problem, kit, data, errors, t, u, table)
-        gain = np.where(table.av <= ceiling, gain, -np.inf)
-        top = gain.argmax(axis=0)  # over T: (U, M)
-        along_u.better(np.take_along_axis(gain, top[None], 0)[0], top, np.arange(u.size)[:, None], (s1, s2), number)
-        top = gain.argmax(axis=1)  # over U: (T, M)
-        along_t.better(
-            np.take_along_axis(gain, top[:, None], 1)[:, 0], np.arange(t.size)[:, None], top, (s1, s2), number
-        )
-    picked = [along_u.picked(_peaks(along_u.gain, starts)), along_t.picked(_best_of_parts(along_t.gain, PARTS_ALONG_T))]
-    i, j, scale1, scale2, screen = (np.concatenate(pair) for pair in zip(*picked, strict=True))
-    rows = np.zeros((i.shape[0], size, WIDTH))
-    rows[:, :, LN_T], rows[:, :, X2] = t[i], u[j]
-    ln_first, ln_second = (np.stack([getattr(s, name) for s in tables]) for name in ("ln_first", "ln_second"))
-    with np.errstate(divide="ignore"):
-        rows[:, :, LN_S] = np.log(np.maximum(scale1 * data.unit_jy, 1e-300)) - ln_first[screen, i]
-        ln_s2 = np.log(scale2 * data.unit_jy) - ln_second[screen, j]
-    rows[:, :, AV] = np.array([table.av for table in tables])[screen]
-    rows[:, :, RV] = 3.1
-    rows[:, :, A2] = _amplitude(kit, rows, ln_s2 - rows[:, :, LN_S])
-    return rows
-
-
-class _Kept:
-    """The best cell along one axis of a scan, so far: its gain, indices, scales and screen."""
-
-    def __init__(self, length: int, count: int) -> None:
-        shape = (length, count)
-        self.gain = np.full(shape, -np.inf)
-        self.i, self.j, self.screen = (np.zeros(shape, np.intp) for _ in range(3))
-        self.s1, self.s2 = np.zeros(shape), np.zeros(shape)
-
-    def better(
-        self, gain: FloatArray, i: np.ndarray, j: np.ndarray, scales: tuple[FloatArray, FloatArray], screen: int
-    ) -> None:
-        """Take over the cells (i, j) where their gain is larger."""
-        row, column = np.nonzero(gain > self.gain)
-        i, j = np.broadcast_to(i, gain.shape)[row, column], np.broadcast_to(j, gain.shape)[row, column]
-        self.gain[row, column] = gain[row, column]
-        self.i[row, column], self.j[row, column], self.screen[row, column] = i, j, screen
-        self.s1[row, column], self.s2[row, column] = scales[0][i, j, column], scales[1][i, j, column]
-
-    def picked(self, chosen: np.ndarray) -> tuple[np.ndarray, ...]:
-        """Indices, scales and screens of chosen places along the axis, (starts, M) each."""
-        return tuple(np.take_along_axis(part, chosen, 0) for part in (self.i, self.j, self.s1, self.s2, self.screen))
-
-
-def _amplitude(kit: Kit, rows: FloatArray, ln_ratio: FloatArray) -> FloatArray:
-    """Amplitude of the second source from the ratio of the two surfaces' scales."""
-    ln_t, own = rows[:, :, LN_T], rows[:, :, X2]
-    source = kit.model.sources[0]
-    flat = (ln_t.ravel(), own.ravel())
-    if source == "dust":
-        ln_h = 4 * (ln_t - own)
-    elif source == "star":
-        ln_h = (kit.ratio.at(flat[0])[0] - kit.ratio.at(flat[1])[0])[:, 0].reshape(ln_t.shape)
-    elif source == "power":
-        ln_h = kit.infrared.at(flat[0])[0][:, 0].reshape(ln_t.shape)
-    else:
-        ln_h = np.zeros(ln_t.shape)
-    return np.exp(np.clip(ln_ratio - ln_h, -60.0, 13.0))
-
-
-def _pair_gain(
-    problem: Problem, kit: Kit, data: Weighted, errors: Errors, t: FloatArray, u: FloatArray, table: _Screen
-) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Fall of chi-square (T, U, M) with the best non-negative scales, and both scales in the data's units."""
-    g1, g2 = table.first, table.second
-    weight, weighted = data.weight.astype(COARSE), data.weighted.astype(COARSE)
-    a11, b1 = ((g1**2) @ weight)[:, None, :], (g1 @ weighted)[:, None, :]
-    a22, b2 = ((g2**2) @ weight)[None], (g2 @ weighted)[None]
-    a12 = (table.product @ weight).reshape(t.size, u.size, -1)
-    if kit.model.bound_pair:
-        s1, s2, gain = _tied(problem, kit, t, u, table, (a11, a12, a22, b1, b2), data.unit_jy)
-    else:
-        s1, s2, gain = _two_scales(a11, a12, a22, b1, b2)
-    if problem.limited.any():
-        gain = gain - _pair_penalty(problem, errors, s1 * data.unit_jy, s2 * data.unit_jy, g1, g2)
-    return gain, s1, s2
-
-
-def _two_scales(
-    a11: FloatArray, a12: FloatArray, a22: FloatArray, b1: FloatArray, b2: FloatArray
-) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Best scales of two sources, neither negative, and the fall of chi-square; inputs broadcast to (T, U, M)."""
-    alone1, alone2 = np.maximum(b1, 0) / (a11 + TINY), np.maximum(b2, 0) / (a22 + TINY)
-    gain1, gain2 = b1 * alone1, b2 * alone2
-    det = np.maximum(a11 * a22 - a12 * a12, 1e-5 * a11 * a22 + TINY)
-    s1, s2 = (b1 * a22 - b2 * a12) / det, (b2 * a11 - b1 * a12) / det
-    inside = (s1 > 0) & (s2 > 0)
-    only1 = gain1 >= gain2
-    s1 = np.where(inside, s1, np.where(only1, alone1, 1e-6 * alone1))
-    s2 = np.where(inside, s2, np.where(only1, 0.0, alone2))
-    return s1, s2, np.where(inside, s1 * b1 + s2 * b2, np.maximum(gain1, gain2))
-
-
-def _pair_penalty(
-    problem: Problem, errors: Errors, s1: FloatArray, s2: FloatArray, g1: FloatArray, g2: FloatArray
-) -> FloatArray:
-    """Penalty of overshot limits; only candidates with limits, only their bands."""
-    penalty = np.zeros_like(s1)
-    for column in np.flatnonzero(problem.limited.any(axis=0)):
-        rows = np.flatnonzero(problem.limited[:, column])
-        model = s1[:, :, rows] * g1[:, column, None, None] + s2[:, :, rows] * g2[None, :, column, None]
-        over = (model - problem.flux_jy[rows, column]) / errors.sigma[rows, column]
-        penalty[:, :, rows] += np.maximum(over, 0.0) ** 2
-    return penalty
-
-
-def _tied(
-    problem: Problem,
-    kit: Kit,
-    t: FloatArray,
-    u: FloatArray,
-    table: _Screen,
-    sums: tuple[FloatArray, FloatArray, FloatArray, FloatArray, FloatArray],
-    unit_jy: FloatArray,
-) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Both stars at one distance: one scale, drawn towards what the parallax asks for."""
-    a11, a12, a22, b1, b2 = sums
-    own, first = kit.ln_radius2.at(u)[0][:, 0], kit.ln_radius2.at(t)[0][:, 0]
-    ln_ratio = own[None, :] - first[:, None] + table.ln_second[None, :] - table.ln_first[:, None]
-    ratio = np.exp(np.clip(ln_ratio, -40.0, 40.0)).astype(COARSE)[:, :, None]
-    a = a11 + 2 * ratio * a12 + ratio**2 * a22
-    b = b1 + ratio * b2
-    known = np.isfinite(problem.parallax_mas)
-    if not known.any():
-        s = np.maximum(b, 0) / (a + TINY)
-        return s, s * ratio, s * b
-    row = np.zeros((t.size, WIDTH))
-    row[:, LN_T] = t
-    unit = parallax_of(kit, row)[0]  # mas at theta = 1
-    parallax = np.where(known, problem.parallax_mas, 1.0)
-    wish = (parallax[None, :] / unit[:, None]) ** 2 * np.exp(table.ln_first)[:, None] / unit_jy
-    relative = np.where(known, 2 * parallax_sigma(problem) / parallax, np.inf)
-    pull = (np.where(known, 1.0 / (np.maximum(wish, 1e-12) * relative), 0.0) ** 2)[:, None, :].astype(COARSE)
-    wish = np.minimum(wish, 1e15)[:, None, :].astype(COARSE)  # nothing detected: no scale to draw towards
-    s = np.maximum((b + pull * wish) / (a + pull + TINY), TINY)
-    return s, s * ratio, 2 * s * b - s**2 * a - pull * (s - wish) ** 2
+        some, node = data.take(row[here]), chosen[here]
+        fixed, free = (one.first, one.second) if is_t else (one.second, one.first)
+        held = fixed[node]  # (K, B)
+        a_held, b_held = np.einsum("kb,bk->k", held**2, some.weight), np.einsum("kb,bk->k", held, some.weighted)
+        a_free, b_free = (free**2) @ some.weight, free @ some.weighted  # (N, K)
+        cross = free @ (held.T * some.weight)
+        if is_t:
+            sums = _Sums(a_held[None], cross, a_free, b_held[None], b_free)
+        else:
+            sums = _Sums(a_free, cross, a_held[None], b_free, b_held[None])
+        if one.ratio is None:
+            gain = _free_gain(sums)
+        else:
+            ratio = one.ratio[node].T if is_t else one.ratio[:, node]
+            gain = _tied_gain(sums, ratio, *some.drawn(one.ln_wish[node][None] if is_t else one.ln_wish[:, None]))[0]
+        out[here] = gain.argmax(axis=0)
+    return out

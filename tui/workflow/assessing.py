@@ -18,8 +18,8 @@ from tui.workflow.compact import compact
 from tui.workflow.digests import Recipe, recipes
 from tui.workflow.processes import in_processes, spare_processes
 
-CHUNK = 256  # candidates computed at once: enough for the matrix products, small enough for memory
-FEW = 1024  # below this starting processes costs more than it saves
+CHUNK = 1024  # candidates computed at once: enough for the matrix products, small enough for memory
+FEW = 2048  # below this starting processes costs more than it saves
 Report = Callable[[int, int], None]
 Task = tuple[tuple[str, ...], tuple[str, ...]]  # names, kinds that all of them lack
 Made = list[tuple[str, Evidence]]

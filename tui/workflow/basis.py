@@ -30,8 +30,10 @@ class Basis:
 
     def templates(self) -> Templates:
         """The template grids; from memory or the disk cache where they are there."""
+        from tui.workflow.memory import keep_freed_memory
         from tui.workflow.templates import templates_for
 
+        keep_freed_memory()
         return templates_for(self.settings, self.user_bands, self.queue)
 
     def templates_digest(self) -> str:
