@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import pytest
 
 from tui.workflow.records import RulingLine
@@ -108,5 +110,31 @@ def test_plot_alone_takes_the_whole_width(fake_session, on_candidate, screen_tex
         assert screen.query_one("#walk-plot").size.width == 80
         await press("p")
         assert "chi2" in screen_text(app)
+
+    on_candidate(fake_session, steps)
+
+
+def test_by_hand_begins_from_the_fit_that_is_drawn_with_the_bands_that_it_did_without(
+    fake_session, on_candidate, screen_text, monkeypatch
+):
+    asked, plain, stored = [], fake_session.probe, fake_session.stored_evidence
+    monkeypatch.setattr(fake_session, "probe", lambda *a: asked.append(a[1:]) or plain(*a))
+
+    def without_w3(name):
+        made = stored(name)
+        fit = made["instrument"].fits[0]
+        pulls = {band: pull for band, pull in fit.pulls.items() if band != "W3"}
+        made["instrument"] = replace(made["instrument"], fits=(replace(fit, pulls=pulls),))
+        return made
+
+    monkeypatch.setattr(fake_session, "stored_evidence", without_w3)
+
+    async def steps(app, screen, press):
+        await press("i", "h")
+        assert "dropped: W3" in screen_text(app) and "all as fitted" not in screen_text(app)
+        await press("up")
+        assert asked[-1][0] == "instrument" and asked[-1][2] == {"W3"}
+        await press("0")
+        assert not screen.walk.hand.touched and screen.walk.hand.dropped == {"W3"}
 
     on_candidate(fake_session, steps)

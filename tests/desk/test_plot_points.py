@@ -92,3 +92,11 @@ def test_curves_have_letters_by_component_and_one_total():
 def test_point_in_words(index, words):
     plot = PlotData(plot_points(CANDIDATE, BANDS, FIT, dropped={"W3"}))
     assert point_words(plot, index, drawn_measurements(CANDIDATE, BANDS)[index]) == words
+
+
+def test_a_band_that_the_drawn_fit_did_without_is_no_used_point():
+    """The check of the instrument fits the star without its suspects: they stand in the plot as what they are."""
+    fit = Fit("star without W3", 1.0, 1, 0.5, 1.0, 1.0, pulls={"J": 0.4, "W4": 0.0})
+    points = plot_points(CANDIDATE, BANDS, fit, fitted=("J", "W3", "W4"))
+    assert [point.dropped for point in points if point.band == "W3"] == [True]
+    assert not any(point.dropped for point in points if point.band == "W4")

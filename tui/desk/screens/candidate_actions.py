@@ -7,13 +7,12 @@ from typing import TYPE_CHECKING
 
 from textual import work
 
-from tui.desk.screens.walk import Hand
 from tui.desk.widgets.rows_view import RowsView
 from tui.errors import TuiError
 
 if TYPE_CHECKING:
     from tui.desk.screens.candidate import CandidateScreen
-    from tui.desk.screens.walk import Walk
+    from tui.desk.screens.walk import Hand, Walk
     from tui.workflow.session import Session
 
 NEARER = 0.6  # share of the view that one zoom step leaves
@@ -100,7 +99,7 @@ class MovesThroughPlot:
     def action_reset(self: CandidateScreen) -> None:
         """By hand: the program's own fit again. Else the whole plot."""
         if self.walk.hand is not None:
-            self.walk.hand = Hand(self.walk.hand.params, self.walk.hand.chosen)
+            self.walk.hand = self.walk.by_hand(self.walk.hand.chosen)
         else:
             self.walk.plot_view = replace(self.walk.plot_view, x_range=None)
         self.draw()
@@ -119,7 +118,7 @@ class ProbesByHand:
             return
         else:
             walk.page, walk.asking_compare = 0, False
-            walk.hand = Hand(tuple(walk.fit.params))
+            walk.hand = walk.by_hand()
         self.draw()
 
     def next_param(self: CandidateScreen, step: int) -> None:

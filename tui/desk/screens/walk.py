@@ -35,6 +35,7 @@ class Hand:
 
     params: tuple[str, ...]
     chosen: int = 0
+    left_out: frozenset[str] = frozenset()  # bands that the fit begun from did without
     fixed: dict[str, float] = field(default_factory=dict)
     dropped: set[str] = field(default_factory=set)
     fit: Fit | None = None
@@ -48,8 +49,8 @@ class Hand:
 
     @property
     def touched(self) -> bool:
-        """Whether anything is held or dropped."""
-        return bool(self.fixed or self.dropped)
+        """Whether anything is held, dropped or taken in again."""
+        return bool(self.fixed) or self.dropped != self.left_out
 
 
 @dataclass(repr=False)
@@ -114,6 +115,12 @@ class Walk:
     def fits(self) -> int:
         """How many fits the check has."""
         return len(self.own_evidence.fits) if self.own_evidence else 0
+
+    def by_hand(self, chosen: int = 0) -> Hand:
+        """Probing begun anew from the fit that the program made and that is drawn; what it did without stays out."""
+        made, own = fit_of(self.own_evidence, self.fit_index), self.own_evidence
+        left_out = frozenset(own.bands if own else ()) - frozenset(made.pulls if made else ())
+        return Hand(tuple(made.params if made else ()), chosen, left_out, dropped=set(left_out))
 
     def go(self, check: str, keep_message: bool = False) -> None:
         """Turn to another check; nothing chosen, held or compared is carried over."""

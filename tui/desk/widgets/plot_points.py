@@ -32,7 +32,7 @@ def plot_points(
     """One point for each measurement in a band whose wavelength is known.
 
     Args:
-        fitted: bands that the evidence fitted; empty where that is not known.
+        fitted: bands that the evidence fitted; empty where that is not known. A fit may have left out more of them.
         dropped: bands left out by hand.
         other: the fit compared with, whose pulls are marked too.
     """
@@ -42,6 +42,7 @@ def plot_points(
         if band is None or not band.pivot_um > 0:
             continue
         out = measurement.exclude or measurement.band in dropped or bool(fitted) and measurement.band not in fitted
+        out = out or fit is not None and bool(fit.pulls) and measurement.band not in fit.pulls
         points.append(_point(measurement, band, fit, other, out))
     return tuple(points)
 
