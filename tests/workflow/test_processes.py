@@ -5,8 +5,10 @@ Fresh processes import the work by name, so it is a function that every Python h
 
 from __future__ import annotations
 
+import multiprocessing
 import os
 import signal
+import time
 
 import pytest
 
@@ -42,3 +44,13 @@ def test_the_environment_is_as_it_was():
     before = dict(os.environ)
     assert list(in_processes(abs, iter([-1]), 1, int, ())) == [1]
     assert dict(os.environ) == before
+
+
+def test_an_interruption_does_not_wait_for_what_is_half_computed():
+    def interrupted():
+        yield 1_000_000  # seconds that a process would sleep
+        raise KeyboardInterrupt
+
+    with pytest.raises(KeyboardInterrupt):
+        list(in_processes(time.sleep, interrupted(), 1, int, ()))
+    assert not multiprocessing.active_children()

@@ -54,8 +54,17 @@ def in_processes(
                 "A process that computed evidence was ended from outside, perhaps for lack of memory. What was "
                 "finished is saved; run it again, with fewer --jobs."
             ) from error
+        except BaseException:  # ctrl+c, or nobody wants the rest: what is half computed is not waited for
+            end_processes()
+            raise
         finally:
             pool.shutdown(wait=True, cancel_futures=True)
+
+
+def end_processes() -> None:
+    """End the processes that this one began; what they had not handed over is lost, and saved nowhere."""
+    for process in multiprocessing.active_children():
+        process.terminate()
 
 
 def in_order(pool: ProcessPoolExecutor, work: Callable[[Any], Any], chunks: Iterable[Any], ahead: int) -> Iterator[Any]:
