@@ -102,3 +102,23 @@ def test_what_cannot_be_done_is_said(templates):
         probed(candidate, "star", {"dust_temperature": 300.0}, templates)
     with pytest.raises(InputError):
         probed(candidate, "star", {}, templates, frozenset(templates.names))
+
+
+def test_another_model_can_be_asked_for_with_intervals(templates, tables):
+    # The free pair and its intervals as in the check, where it leads there; the name is refused where it has none.
+    candidate = make(templates, c.FREE_PAIR, 6500.0, x=3300.0, amount=0.5)
+    found = assess("blend", [candidate], templates, Settings(), tables)[0].best
+    asked = probe(candidate, "blend", {}, frozenset(), templates, Settings(), model=found.model, with_intervals=True)
+    assert asked.chi2 == pytest.approx(found.chi2, abs=0.1)
+    for name, param in found.params.items():
+        assert asked.params[name].high == pytest.approx(param.high, rel=0.02)
+    with pytest.raises(InputError, match="it has bound pair"):
+        probe(candidate, "blend", {}, frozenset(), templates, Settings(), model="star + dust")
+
+
+def test_what_is_held_has_no_interval_and_narrows_the_others(templates):
+    candidate = make(templates, c.STAR_AV, 5772.0, av=1.0)
+    free = probe(candidate, "extinction", {}, frozenset(), templates, Settings(), with_intervals=True).params
+    held = probe(candidate, "extinction", {"av": 1.0}, frozenset(), templates, Settings(), with_intervals=True).params
+    assert np.isnan(held["av"].low) and np.isnan(held["av"].high)
+    assert held["teff"].high - held["teff"].low < 0.7 * (free["teff"].high - free["teff"].low)

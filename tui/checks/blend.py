@@ -18,6 +18,7 @@ KIND = "blend"
 VERSION = 3  # raise it whenever the same candidate could get other numbers
 COMPACT_RADIUS = (0.005, 0.3)  # R_sun: white dwarfs and hot subdwarfs
 EQUAL_PAIR_MAG = 0.753
+ANY_PAIR_MAG = 0.92  # unequal pairs reach 0.17 mag more, since the fitted temperature is below the primary's
 MODELS = (BOUND_PAIR, FREE_PAIR, COMPACT, GALAXY)
 
 
@@ -86,6 +87,11 @@ def luminosity_remark(value: object, error: object) -> list[str]:
     """What the brightness above the dwarf sequence says of a second star."""
     if not isinstance(value, float) or not np.isfinite(value) or not isinstance(error, float):
         return []
+    if value > ANY_PAIR_MAG + 2 * error:
+        return [
+            f"Brighter than one dwarf by {value:.2f} +- {error:.2f} mag, which no pair of dwarfs is (an equal one: "
+            f"{EQUAL_PAIR_MAG}): evolved, young, or its temperature is wrong."
+        ]
     if value > 2 * error:
         return [f"Brighter than one dwarf by {value:.2f} +- {error:.2f} mag (an equal pair: {EQUAL_PAIR_MAG})."]
     return [f"As bright as one dwarf: {value:+.2f} +- {error:.2f} mag (an equal pair: {EQUAL_PAIR_MAG})."]

@@ -159,13 +159,17 @@ def probe(
     dropped: frozenset[str],
     templates: Templates,
     settings: Settings,
+    *,
+    model: str | None = None,
+    with_intervals: bool = False,
 ) -> Fit:
-    """Best fit of a check with some parameters held and some bands left out; no intervals.
+    """Best fit of a check with some parameters held and some bands left out.
 
-    The model is the simplest of the check that has every held parameter.
-
+    Args:
+        model: one of the check's; None: the simplest that has every held parameter.
+        with_intervals: also profile intervals of what is not held.
     Raises:
-        InputError: no model of the check has these parameters, or no band is left.
+        InputError: no such model, no model of the check has these parameters, or no band is left.
     """
     settings = own_settings(settings, templates)
     problem = dropped_bands(prepare([as_measured(candidate, templates)], templates, settings), dropped)
@@ -173,12 +177,11 @@ def probe(
         raise InputError(f"No band of {candidate.name} is left to fit.")
     if check == "extinction":
         problem = replace(problem, av_max=np.full(1, AV_MAX))
-    model = model_with(check, fixed, problem)
-    kit = kit_for(model, problem.templates, fixed_r_v(settings))
-    return conditional(problem, kit, fixed)
+    kit = kit_for(model_with(check, fixed, problem, model), problem.templates, fixed_r_v(settings))
+    return conditional(problem, kit, fixed, with_intervals)
 
 
-def conditional(problem: Problem, kit: Kit, fixed: Mapping[str, float]) -> Fit:
+def conditional(problem: Problem, kit: Kit, fixed: Mapping[str, float], with_intervals: bool = False) -> Fit:
     """The best fit with parameters held, errors following the model."""
     names = {told.name: column for column, told in columns_of(kit).items()}
     held, values = np.zeros(WIDTH, bool), np.zeros(WIDTH)
@@ -197,7 +200,7 @@ def conditional(problem: Problem, kit: Kit, fixed: Mapping[str, float]) -> Fit:
         if np.all(np.abs(errors.sigma / last.sigma - 1.0) < HAND_SETTLED):
             break
     x = np.where(held, x, rested(kit, x))
-    return fits_of(finish(problem, kit, last, x), with_intervals=False)[0]
+    return fits_of(finish(problem, kit, last, x), with_intervals=with_intervals, held=held)[0]
 
 
 def dropped_bands(problem: Problem, dropped: frozenset[str]) -> Problem:
@@ -207,10 +210,13 @@ def dropped_bands(problem: Problem, dropped: frozenset[str]) -> Problem:
     return problem.without(np.broadcast_to(mask, problem.detected.shape))
 
 
-def model_with(check: str, fixed: Mapping[str, float], problem: Problem) -> Model:
-    """The first model of a check that has every held parameter. InputError naming those there are."""
+def model_with(check: str, fixed: Mapping[str, float], problem: Problem, wanted: str | None = None) -> Model:
+    """The model asked for, or the first of a check that has every held parameter. InputError naming those there are."""
+    models = {model.name: model for model in CHECK_MODELS.get(check, ())}
+    if wanted is not None and wanted not in models:
+        raise InputError(f"The check {check} has no model {wanted!r}; it has {', '.join(models)}.")
     known: set[str] = set()
-    for model in CHECK_MODELS.get(check, ()):
+    for model in models.values() if wanted is None else [models[wanted]]:
         names = {told.name for told in columns_of(kit_for(model, problem.templates)).values()}
         known |= names
         if set(fixed) <= names:

@@ -30,9 +30,14 @@ def carrier_sentences(
     """What the carrier means, in words."""
     if carrier is None or carrier.p >= settings.p_min:
         return ("No single band or instrument carries the anomaly.",)
-    verb = "carries most of" if carrier.p_without < settings.p_min else "carries"
+    if carrier.p_without < settings.p_min:
+        share = carrier.delta_chi2 / max(carrier.delta_chi2 + carrier.chi2_without, 1e-300)
+        return (
+            f"{carrier.name} carries the largest part of the anomaly ({carrier.pull:+.1f} sigma, {share:.0%} of "
+            f"chi-square); without it the star alone is still refused, p = {carrier.p_without:.2g}.",
+        )
     said = [
-        f"{carrier.name} {verb} the anomaly ({carrier.pull:+.1f} sigma): without it the star alone has "
+        f"{carrier.name} carries the anomaly ({carrier.pull:+.1f} sigma): without it the star alone has "
         f"p = {carrier.p_without:.2g}."
     ]
     if any(band in suspects for band in carrier.bands):

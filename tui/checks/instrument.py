@@ -21,7 +21,7 @@ from tui.physics.fitting import FitBatch, fit
 from tui.physics.removal import chi2_without
 
 KIND = "instrument"
-VERSION = 3  # raise it whenever the same candidate could get other numbers
+VERSION = 4  # raise it whenever the same candidate could get other numbers
 FEW = 2  # degrees of freedom without the suspects, up to which a caution is given
 
 Record = Callable[[FitBatch], list[Fit]]  # how fitted rows become fits
@@ -83,7 +83,10 @@ def batch_carriers(batch: FitBatch) -> list[Carrier | None]:
 
 
 def fits_without(batch: FitBatch, suspects: np.ndarray, record: Record) -> dict[int, Fit]:
-    """Row -> star-only fit without its suspect bands, for rows that have any and keep a band to fit."""
+    """Row -> star-only fit without its suspect bands, for rows that have any and keep a band to fit.
+
+    Its information criteria are left open: they cannot be compared with those of a fit to more data.
+    """
     kept = (batch.problem.detected & ~suspects).sum(axis=1)
     rows = np.flatnonzero(suspects.any(axis=1) & (kept > 0))
     if not rows.size:
@@ -91,7 +94,12 @@ def fits_without(batch: FitBatch, suspects: np.ndarray, record: Record) -> dict[
     anew = fit(batch.problem.take(rows).without(suspects[rows]), STAR)
     names = np.array(batch.problem.templates.names)
     return {
-        int(row): replace(found, model=f"star without {', '.join(names[suspects[row]].tolist())}")
+        int(row): replace(
+            found,
+            model=f"star without {', '.join(names[suspects[row]].tolist())}",
+            aic=float("nan"),
+            bic=float("nan"),
+        )
         for row, found in zip(rows, record(anew), strict=True)
     }
 

@@ -66,9 +66,9 @@ def columns_of(kit: Kit) -> dict[int, Column]:
     return {column: table[column] for column in kit.model.free}
 
 
-def fits_of(batch: FitBatch, *, with_intervals: bool = True) -> list[Fit]:
-    """One Fit per row; profile intervals of its parameters, or NaN ends."""
-    ends = intervals(batch) if with_intervals and len(batch.problem) else None
+def fits_of(batch: FitBatch, *, with_intervals: bool = True, held: np.ndarray | None = None) -> list[Fit]:
+    """One Fit per row; profile intervals of its parameters but those `held` (8,), or NaN ends."""
+    ends = intervals(batch, held) if with_intervals and len(batch.problem) else None
     dof, points = degrees(batch)
     p = chi2_tail(batch.chi2, dof)
     k = len(batch.model.free)

@@ -41,6 +41,8 @@ def common_remarks(best: Fit | None, star_adequate: bool | None, settings: Setti
     remarks = []
     if star_adequate and not is_star:
         remarks.append("The star alone fits: nothing here needs explaining.")
+    if best.dof <= 0:
+        remarks.append("The best fit cannot be tested: it has as many free parameters as there are points.")
     if best.dof > 0 and best.p > TOO_GOOD:
         remarks.append(f"p = {best.p:.3f}: the errors look too large.")
     return remarks

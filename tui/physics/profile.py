@@ -8,9 +8,8 @@ import numpy as np
 
 from tui.model import FloatArray
 from tui.physics.composite import WIDTH
-from tui.physics.descent import curvature
 from tui.physics.fitting import FitBatch
-from tui.physics.likelihood import residuals
+from tui.physics.likelihood import curvature, residuals
 from tui.physics.looking import held_down
 
 RISE_68 = 1.0  # of -2 ln L, two-sided 68.3 % (Wilks 1938)
@@ -29,9 +28,14 @@ class Intervals:
     limit: np.ndarray  # bool: the best value lies at a bound, and the other end is a 95 % limit
 
 
-def intervals(batch: FitBatch) -> Intervals:
-    """Profile intervals of every free parameter, errors frozen at the last pass."""
+def intervals(batch: FitBatch, held: np.ndarray | None = None) -> Intervals:
+    """Profile intervals of every free parameter, errors frozen at the last pass.
+
+    Args:
+        held: (8,) bool, parameters that were held in the fit: they stay, and have no interval.
+    """
     m, free = len(batch.problem), list(batch.model.free)
+    held = np.zeros(WIDTH, bool) if held is None else held
     low, high = batch.kit.bounds(batch.problem.av_max)
     ends = np.full((2, m, WIDTH), np.nan)
     limit = np.zeros((m, WIDTH), bool)
@@ -48,15 +52,16 @@ def intervals(batch: FitBatch) -> Intervals:
     at_other = np.abs(best - other) <= near
     goal = np.where(at_other, RISE_95, RISE_68)
     room = np.abs(edge - best)
-    todo = np.flatnonzero(room > near)
+    todo = np.flatnonzero((room > near) & ~held[column])
     found = best.copy()
     if todo.size:
-        ray = _Ray(batch, row[todo], column[todo], side[todo], goal[todo], directions[row, place][todo])
+        ray = _Ray(batch, held, row[todo], column[todo], side[todo], goal[todo], directions[row, place][todo])
         found[todo] = best[todo] + side[todo] * _reach(ray, room[todo], scale[row, place][todo])
     for index, s in enumerate(sides):
         chosen = side == s
         ends[index, row[chosen], column[chosen]] = found[chosen]
     limit[row[at_other], column[at_other]] = True
+    ends[:, :, held], limit[:, held] = np.nan, False
     return Intervals(ends[0], ends[1], limit)
 
 
@@ -86,6 +91,7 @@ class _Ray:
     """K searches: from a candidate's best value of one column, to one side."""
 
     batch: FitBatch
+    held: np.ndarray  # (8,) bool
     row: np.ndarray
     column: np.ndarray
     side: FloatArray
@@ -100,7 +106,8 @@ class _Ray:
         start = self.batch.x[row].copy()
         start[:, free] += self.direction[some] * (self.side[some] * step)[:, None]
         start[place, column] = self.batch.x[row, column] + self.side[some] * step
-        held = np.zeros((some.size, WIDTH), bool)
+        held = np.tile(self.held, (some.size, 1))
+        start = np.where(held, self.batch.x[row], start)
         held[place, column] = True
         here = self.batch
         cost = held_down(here.problem, here.kit, here.errors, start, row, held, steps=5, tolerance=1e-2)[1]
