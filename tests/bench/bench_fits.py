@@ -26,6 +26,7 @@ from pathlib import Path  # noqa: E402
 import numpy as np  # noqa: E402
 
 sys.path.insert(0, str(Path(__file__).parent))
+from descents import descend  # noqa: E402
 from optimisers import OneCandidate, random_starts  # noqa: E402
 from random_stars import FOURTEEN, TEN, TWENTY, random_problem  # noqa: E402
 
@@ -34,7 +35,6 @@ from tui.checks.tables import build_tables  # noqa: E402
 from tui.data import load_flags  # noqa: E402
 from tui.model import KINDS, Candidate, Measurement, Settings  # noqa: E402
 from tui.physics import composite as c  # noqa: E402
-from tui.physics.descent import descend  # noqa: E402
 from tui.physics.fitting import fit  # noqa: E402
 from tui.workflow.templates import build, templates_for  # noqa: E402
 

@@ -8,11 +8,11 @@ import numpy as np
 import pytest
 from scipy import stats
 
+from tests.bench.descents import descend
 from tests.bench.optimisers import OneCandidate, random_starts
 from tests.bench.random_stars import FOURTEEN, TEN, random_problem
 from tui.physics import composite as c
 from tui.physics.composite import MODELS, predict
-from tui.physics.descent import descend
 from tui.physics.fitting import fit, first_errors
 from tui.physics.likelihood import errors_of
 from tui.physics.statistics import chi2_tail

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 from scipy import stats
@@ -11,6 +13,7 @@ from tui.physics import composite as c
 from tui.physics.composite import MODELS, kit_for, parallax_of, predict
 from tui.physics.likelihood import (
     chi_square,
+    curvature,
     errors_for,
     limit_residual,
     minus_2_ln_l,
@@ -154,3 +157,16 @@ def test_a_limit_counts_in_chi_square_only_where_it_is_overshot(drawn):
     assert met.any()
     assert chi_square(problem, kit, errors, x, seen) == pytest.approx(chi_square(without, kit, errors, x, seen),
         rel=1e-12)
+
+
+def test_curvature_is_half_the_second_derivative(drawn):
+    # where residuals vanish Gauss-Newton is exact
+    problem, x, _ = drawn
+    some, x = problem.without(problem.limited).take(np.arange(20)), x[:20]
+    kit = kit_for(c.STAR_AV, some.templates)
+    seen = predict(kit, x)
+    errors, some = errors_for(some, seen.flux, seen.star, x[:, c.LN_T]), replace(some, flux_jy=seen.flux)
+    found = curvature(residuals(some, kit, errors, x, seen))
+    step = 1e-4 * (np.arange(c.WIDTH) == c.LN_T)
+    costs = [residuals(some, kit, errors, x + s * step, predict(kit, x + s * step)).cost for s in (1, -1)]
+    assert found[:, 0, 0] == pytest.approx(sum(costs) / 2 / 1e-8, rel=2e-2)

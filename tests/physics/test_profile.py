@@ -7,10 +7,10 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
+from tests.bench.descents import descend
 from tests.bench.random_stars import FOURTEEN, random_problem
 from tui.physics import composite as c
 from tui.physics.composite import kit_for, predict
-from tui.physics.descent import descend
 from tui.physics.fitting import fit
 from tui.physics.likelihood import errors_for, residuals
 from tui.physics.profile import intervals

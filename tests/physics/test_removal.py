@@ -7,9 +7,9 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
+from tests.bench.descents import descend
 from tui.data import load
 from tui.physics.composite import STAR
-from tui.physics.descent import descend
 from tui.physics.fitting import fit
 from tui.physics.problem import Problem
 from tui.physics.removal import chi2_without

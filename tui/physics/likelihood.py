@@ -104,6 +104,11 @@ class Residuals:
         return np.einsum("mb,mb->m", self.value, self.value)
 
 
+def curvature(state: Residuals) -> FloatArray:
+    """Half the second derivative of the cost, Gauss-Newton, shape (M, P, P)."""
+    return state.slopes @ state.slopes.transpose(0, 2, 1)
+
+
 def residuals(problem: Problem, kit: Kit, errors: Errors, x: FloatArray, prediction: Prediction) -> Residuals:
     """Detections, limits and, for a bound pair, the parallax."""
     m, b = problem.flux_jy.shape

@@ -1,4 +1,4 @@
-"""Levenberg-Marquardt within bounds, for many candidates at once."""
+"""Levenberg-Marquardt in all parameters alike, amplitudes among them: a judge that shares no step with the fits."""
 
 from __future__ import annotations
 
@@ -8,13 +8,13 @@ import numpy as np
 
 from tui.model import FloatArray
 from tui.physics.composite import Kit, predict
-from tui.physics.likelihood import Errors, Residuals, residuals
+from tui.physics.likelihood import Errors, residuals
 from tui.physics.problem import Problem
 
 STEPS = 40
 SHORT_STEP = 1e-2  # damping above which steps are short
 BLOCK = 20_000  # rows that go down together; more would only cost memory
-TOLERANCE = 1e-5  # of the cost: a thousandth of what an interval or a ruling could feel
+TOLERANCE = 1e-5  # of the cost
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -38,7 +38,7 @@ def descend(
     """Lowest cost reached from `start` (M, 8), parameters kept within their bounds.
 
     Args:
-        held: (M, 8) bool, parameters that stay as they are (for profiles and hand probing).
+        held: (M, 8) bool, parameters that stay as they are.
     Source: Marquardt 1963, J. SIAM 11, 431; steps at an active bound are projected.
     """
     if len(problem) <= BLOCK:
@@ -119,8 +119,3 @@ def _step(
     right = -gradient * moves
     unit = np.linalg.solve(matrix, right[:, :, None])[:, :, 0]
     return unit / root * (moves > 0), np.sum(unit * right, axis=1)
-
-
-def curvature(state: Residuals) -> FloatArray:
-    """Half the second derivative of the cost, Gauss-Newton, shape (M, P, P)."""
-    return state.slopes @ state.slopes.transpose(0, 2, 1)
