@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import gzip
 import os
+import re
 import time
 
 import numpy as np
@@ -58,7 +59,7 @@ def refusal(read, path):
         (b"name,J_mag,J_mag\nA,8,9\n", "two columns"),
         (b"# only\n# comments\n", "column names"),
         (b"\x00" * 5000, "NUL byte"),
-        (b'name,J_mag\n"A,8\n' + b"x" * 200_000, "cannot be cut"),
+        (b'name,J_mag\n"A,8\n' + b"x" * 200_000, "does not close"),
         (b"," * 9000 + b"\n", "column names"),
         (b"%PDF-1.4 ", "PDF"),
     ],
@@ -202,3 +203,29 @@ def test_texts_from_a_table_are_kept_as_they_are(read, write):
 def test_messages_repeat_nothing_that_a_terminal_obeys(read, write):
     contents = read(write("name,J_mag\nA,\x1b[31m8\n"))
     assert "\x1b" not in contents.refused[0].reason
+
+
+@pytest.mark.parametrize(
+    ("content", "words"),
+    [
+        (b"<?xml version='1.0'?>\n<VOTABLE><RESOURCE>", "the VOTable is damaged"),
+        (b"# %ECSV 1.0\n# ---\n# datatype:\n# - {nam: x}\nx\n1\n", "must name every column"),
+        (b"name,J_mag\nA," + b"8" * 200_000 + b"\n", "near line 2 a cell is longer than 131072 characters"),
+        (b"name,J_mag\nA,\xff\n", "line 2 is not UTF-8 text"),
+    ],
+)
+def test_a_refusal_speaks_no_words_of_the_language_it_is_written_in(read, tmp_path, content, words):
+    (tmp_path / "t").write_bytes(content)
+    with pytest.raises(TableError) as refused:
+        read(str(tmp_path / "t"))
+    assert words in str(refused.value)
+    assert not re.search(r"Error|Errno|codec|token|field limit", str(refused.value))
+
+
+def test_a_column_map_that_is_no_text_is_refused_in_plain_words(read, tmp_path):
+    (tmp_path / "t.csv").write_text("name,J_mag\nA,8\n")
+    (tmp_path / "map.toml").write_bytes(b"\xff\xfe")
+    for path, words in (("map.toml", "not UTF-8 text from byte 1 on"), ("none.toml", "no such file or directory")):
+        with pytest.raises(TableError) as refused:
+            read(str(tmp_path / "t.csv"), columns=str(tmp_path / path))
+        assert words in str(refused.value) and "codec" not in str(refused.value) and "Errno" not in str(refused.value)

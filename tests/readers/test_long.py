@@ -41,6 +41,15 @@ def test_published_rows(read, write):
     assert contents.refused == [] and contents.unknown_columns == []
 
 
+@pytest.mark.parametrize("error", ["inf", "abc", "-0.02"])
+def test_a_row_with_a_wrong_error_is_refused(read, write, error):
+    contents = read(write(f"name,band,value,error,unit\nA,J,8.0,{error},mag\nA,H,8.0,9.999,mag\nA,Ks,8.0,12,mag\n"))
+    found = {m.band: m for m in contents.candidates[0].measurements}
+    assert set(found) == {"H", "Ks"}
+    assert math.isnan(found["H"].error_jy) and found["Ks"].error_jy > 10 * found["Ks"].flux_jy
+    assert [(entry.row, entry.column) for entry in contents.refused] == [(1, "error")]
+
+
 def test_rows_that_cannot_be_taken(read, write):
     text = (
         "name,band,value,error,unit,epoch,ra\n"
@@ -53,7 +62,6 @@ def test_rows_that_cannot_be_taken(read, write):
     candidates = {c.name: c for c in contents.candidates}
     assert [(m.band, m.value, m.epoch) for m in candidates["A"].measurements] == [
         ("J", 8.0, ""),
-        ("W3", 7, ""),
         ("J", 8.2, "2020"),
     ]
     assert candidates["A"].facts == {"ra": 10.0} and candidates["B"].measurements == ()

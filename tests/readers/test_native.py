@@ -124,10 +124,45 @@ def test_cells_that_are_no_measurement(one, columns, cells, column):
     assert [(entry.row, entry.column) for entry in contents.refused] == [(1, column)]
 
 
-@pytest.mark.parametrize("error", ["0", "-1", "nan", "", "-9999", "9.999", "99"])
+@pytest.mark.parametrize("error", ["0", "nan", "", "-9999", "-999", "9.999", "99", "99.999"])
 def test_errors_that_are_none(one, error):
     _, band, contents = one(f"name,J_mag,J_err\nA,8.0,{error}\n")
     assert math.isnan(band["J"].error_jy) and "floor" in band["J"].note and contents.refused == []
+
+
+@pytest.mark.parametrize("error", ["inf", "-inf", "1e400", "abc", "-0.02", "-1"])
+@pytest.mark.parametrize("column", ["J_mag", "J_flux[mJy]"])
+def test_a_detection_whose_error_is_wrong_is_refused_and_not_made_a_precise_point(one, column, error):
+    candidate, _, contents = one(f"name,H_mag,{column},J_err\nA,8.0,8.0,{error}\n")
+    assert [m.band for m in candidate.measurements] == ["H"]
+    assert [(entry.row, entry.column) for entry in contents.refused] == [(1, "J_err")]
+    assert contents.refused[0].reason.endswith("the measurement is left out")
+    assert not any("J:" in caution for caution in contents.cautions)
+
+
+@pytest.mark.parametrize("error", [1.2, 12.0])
+def test_a_huge_error_stays_the_error_that_it_is(one, error):
+    # d ln F = 0.4 ln(10) dm: an error of more than 1.0857 mag is a signal-to-noise ratio below 1
+    _, band, contents = one(f"name,J_mag,J_err\nA,8.0,{error}\n")
+    assert band["J"].error_jy == pytest.approx(0.4 * math.log(10) * error * band["J"].flux_jy)
+    assert band["J"].error_jy > band["J"].flux_jy and contents.refused == []
+
+
+def test_the_error_of_a_flux_may_be_any_number_above_zero(one):
+    _, band, contents = one("name,J_flux[mJy],J_err,H_flux[mJy],H_err\nA,8.0,99.0,8.0,-999\n")
+    assert band["J"].error_jy == pytest.approx(0.099)
+    assert math.isnan(band["H"].error_jy) and contents.refused == []
+
+
+def test_the_error_of_a_flux_beyond_any_star_is_refused(one):
+    candidate, _, contents = one("name,J_flux[Jy],J_err\nA,8.0,1e30\n")
+    assert candidate.measurements == () and [entry.column for entry in contents.refused] == ["J_err"]
+
+
+@pytest.mark.parametrize("error", ["-0.02", "99.999", ""])
+def test_a_limit_needs_no_error(one, error):
+    _, band, contents = one(f"name,J_mag,J_err,J_limit\nA,8.0,{error},true\n")
+    assert band["J"].limit and contents.refused == []
 
 
 def test_negative_fluxes_are_measurements(one):

@@ -20,6 +20,10 @@ SHOWN = 30  # characters of a bad cell that a message repeats
 # AKARI -999.9 -1000, ground-based reductions 99 99.9 99.99.
 SENTINELS = (-999.0, -999.9, -999.99, -1000.0, -9999.0, -99.99, -99.999)
 MAG_SENTINELS = (*SENTINELS, -99.0, -99.9, 99.0, 99.9, 99.99, 99.999, 999.0, 9999.0)
+# What an error column holds where there is no error: the same, and 2MASS 8.888 and 9.999 (ph_qual F, Explanatory
+# Supplement II.2.a), DAOPHOT 9.999, and -9.999995e8 in the archives of wide near-infrared surveys.
+ERROR_SENTINELS = (*SENTINELS, -99.0, -99.9, -9.999995e8)
+MAG_ERROR_SENTINELS = (*MAG_SENTINELS, 8.888, 9.99, 9.999, 9.9999, -9.999995e8)
 
 Bad = dict[int, str]  # index of the cell -> why it cannot be taken
 

@@ -21,7 +21,7 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
-from tui.errors import InputError, TableError
+from tui.errors import InputError, TableError, reason_of
 from tui.model import Band
 from tui.readers.userbands import user_band
 
@@ -57,7 +57,8 @@ def read_column_map(path: str | os.PathLike[str] | None) -> ColumnMap:
     except (OSError, UnicodeDecodeError, tomllib.TOMLDecodeError, RecursionError, ValueError) as error:
         if isinstance(error, TableError):
             raise
-        raise TableError(shown, f"the column map cannot be read: {error}.") from error
+        why = str(error) if isinstance(error, tomllib.TOMLDecodeError) else reason_of(error)
+        raise TableError(shown, f"the column map cannot be read: {why}.") from error
     for section, entries in content.items():
         if section not in SECTIONS or not isinstance(entries, dict):
             raise TableError(

@@ -8,7 +8,7 @@ from collections.abc import Callable
 from dataclasses import replace
 from pathlib import Path
 
-from tui.errors import TableError
+from tui.errors import TableError, reason_of
 from tui.readers.cells import truths
 from tui.readers.collector import collector_at_rest
 from tui.readers.fitstable import read_fits
@@ -46,7 +46,7 @@ def open_table(path: str | os.PathLike[str]) -> RawTable:
     except MemoryError as error:
         raise TableError(shown, "the table needs more memory than there is: split it.") from error
     except OSError as error:
-        raise TableError(shown, f"the file cannot be read ({error.strerror or error}).") from error
+        raise TableError(shown, f"the file cannot be read: {reason_of(error)}.") from error
 
 
 def _reader(head: bytes) -> Callable[[str], RawTable]:
@@ -81,8 +81,7 @@ def _head(shown: str) -> bytes:
     except (OSError, ValueError) as error:
         if isinstance(error, TableError):
             raise
-        reason = getattr(error, "strerror", None) or str(error)
-        raise TableError(shown, f"the file cannot be opened ({reason}).") from error
+        raise TableError(shown, f"the file cannot be opened: {reason_of(error)}.") from error
     if not head.strip():
         raise TableError(shown, "the file is empty.")
     return head

@@ -28,14 +28,16 @@ def read_fits(path: str) -> RawTable:
         try:
             with fits.open(path, memmap=True, lazy_load_hdus=True, ignore_missing_simple=False) as hdus:
                 found, others = _first_table(path, hdus, size)
-                columns = _columns(path, found)
+                columns, unread = _columns(path, found)
         except TableError:
             raise
         except Exception as error:  # a damaged header makes astropy raise almost anything
-            raise TableError(path, f"the FITS file is damaged or cut short ({type(error).__name__}).") from error
+            raise TableError(path, f"the FITS file is damaged or cut short.") from error
+    if not columns and unread:
+        raise TableError(path, f"every column holds arrays or complex numbers ({', '.join(unread)[:80]}): give plain cells.")
     rows = len(next(iter(columns.values())).cells) if columns else 0
     cautions = (f"{path}: only the first of {others + 1} tables was read",) if others else ()
-    return RawTable(path, columns, np.arange(1, rows + 1), (), cautions)
+    return RawTable(path, columns, np.arange(1, rows + 1), (), cautions, unread)
 
 
 def _first_table(path: str, hdus: Any, size: int) -> tuple[Any, int]:
@@ -66,18 +68,24 @@ def _first_table(path: str, hdus: Any, size: int) -> tuple[Any, int]:
     return found, others
 
 
-def _columns(path: str, hdu: Any) -> dict[str, Column]:
+def _columns(path: str, hdu: Any) -> tuple[dict[str, Column], dict[str, str]]:
+    """Columns of plain cells, and what the others hold."""
     columns: dict[str, Column] = {}
+    unread: dict[str, str] = {}
     for definition in hdu.columns:
         name = definition.name.strip()
         if name in columns:
             raise TableError(path, f"two columns are called {name!a}: rename one.")
         if definition.format.lstrip("0123456789")[:1] in ("P", "Q"):
-            continue  # an array of its own length in each row: nothing this program reads
-        column = _column(name, hdu.data[definition.name], definition)
+            unread[name] = "arrays"  # of their own length in each row: nothing this program reads
+            continue
+        cells = hdu.data[definition.name]
+        column = _column(name, cells, definition)
         if column is not None:
             columns[name] = column
-    return columns
+        else:
+            unread[name] = "complex numbers" if cells.dtype.kind == "c" else "arrays"
+    return columns, unread
 
 
 def _column(name: str, cells: Any, definition: Any) -> Column | None:

@@ -14,7 +14,16 @@ from tui.errors import InputError, TableError
 from tui.model import Candidate, Measurement
 from tui.readers.cells import MAG_SENTINELS, SENTINELS, numbers, quoted, texts, truths
 from tui.readers.factcells import fact_values
-from tui.readers.measure import NO_ERROR, Values, finish, set_errors, set_levels, start
+from tui.readers.measure import (
+    NO_ERROR,
+    Values,
+    error_sentinels,
+    finish,
+    note_bad_errors,
+    set_errors,
+    set_levels,
+    start,
+)
 from tui.readers.names import clean_names
 from tui.readers.native import band_name, fact_column
 from tui.readers.plan import FactColumn
@@ -149,7 +158,9 @@ class LongReader:
         out = start(values, bad, "value", own)
         if "error" in self.columns:
             error, wrong = self._part("error", rows)
-            out.bad.update({(place, "error"): why for place, why in wrong.items()})
+            note_bad_errors(out, wrong, "error")
+            for sentinel in error_sentinels(given or own, share):
+                error[np.isclose(error, sentinel, rtol=1e-6, atol=0)] = math.nan
             set_errors(out, own, error, given, share)
         if "limit" in self.columns:
             out.limit, wrong = self._part("limit", rows)
@@ -158,7 +169,7 @@ class LongReader:
                 out.present[place] = False
         if "nsigma" in self.columns:
             set_levels(out, *self._with_bad("nsigma", rows))
-        finish(out, "value")
+        finish(out, "value", "error")
         return out
 
     def _with_bad(self, key: str, rows: list[int]) -> tuple[np.ndarray, str, dict[int, str]]:

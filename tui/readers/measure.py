@@ -3,12 +3,21 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
 from tui.model import FloatArray, Measurement
-from tui.readers.cells import MAG_SENTINELS, SENTINELS, numbers, texts, truths
+from tui.readers.cells import (
+    ERROR_SENTINELS,
+    MAG_ERROR_SENTINELS,
+    MAG_SENTINELS,
+    SENTINELS,
+    Bad,
+    numbers,
+    texts,
+    truths,
+)
 from tui.readers.plan import BandColumns, FlagColumn
 from tui.readers.records import Column, RawTable, Refused
 from tui.readers.units import BRIGHTEST_MAG, FAINTEST_MAG, LARGEST_JY, MAG_PER_RATIO, Scale, relative_error, scale
@@ -16,7 +25,8 @@ from tui.readers.units import BRIGHTEST_MAG, FAINTEST_MAG, LARGEST_JY, MAG_PER_R
 NO_ERROR = "no error given: the band's floor stands in"
 FROM_COUNTS = "flux from {}: the catalogue has no magnitude with an error"
 FROM_SNR = "flux from the catalogue's limit and its signal-to-noise"
-NO_ERROR_MAG = 8.0  # an error of so many mag is a flag: 2MASS ph_qual F, DAOPHOT 9.999
+NO_ERROR_MAG = 8.0  # in a catalogue's own column an error of so many mag is a flag: 2MASS ph_qual F
+LEFT_OUT = "{}; the measurement is left out"
 
 
 @dataclass(slots=True)
@@ -33,6 +43,7 @@ class Values:
     unit: list[str]
     note: list[str]
     bad: dict[tuple[int, str], str]  # (row, column) -> why the cell cannot be taken
+    wrong_error: dict[int, str] = field(default_factory=dict)  # row -> why what is given as its error is none
 
     def bad_rows(self, column: str) -> np.ndarray:
         """Rows whose cell in a column cannot be taken."""
@@ -76,13 +87,16 @@ def start(values: FloatArray, bad: dict[int, str], column: str, unit: Scale) -> 
 
 
 def set_errors(out: Values, unit: Scale, error: FloatArray, error_scale: Scale | None, share: float | None) -> None:
-    """Errors in Jy and in the value's unit; errors that are none (zero, negative, a flag) stay NaN.
+    """Errors in Jy and in the value's unit; NaN where none is given (an empty cell, zero), and where it is wrong.
+
+    An error is never made smaller than it is: one of more than a magnitude is kept, so that the point weighs little.
 
     Args:
         error_scale: of the error where it differs in kind or unit from the value's.
         share: factor that makes the error a share of the value (percent), else None.
     """
     with np.errstate(invalid="ignore", over="ignore"):
+        _note_wrong(out, error < 0, "an error is above zero, and empty where it is not known")
         error = np.where(error > 0, error, math.nan)
         given = error_scale or unit
         if share is not None:
@@ -90,14 +104,20 @@ def set_errors(out: Values, unit: Scale, error: FloatArray, error_scale: Scale |
         elif given.kind == "linear":
             jy = error * given.factor_jy
         else:
-            error = np.where(error * given.step < NO_ERROR_MAG, error, math.nan)
             own = given if unit.kind == "linear" else replace(unit, step=given.step)
             jy = own.flux_error(np.abs(out.flux_jy), error)
-        jy = np.where(np.isfinite(jy) & (jy < LARGEST_JY), jy, math.nan)
+        is_sound = np.isfinite(jy) & (jy < LARGEST_JY)
+        _note_wrong(out, np.isfinite(error) & out.present & ~is_sound, "the error is beyond that of any flux density")
+        jy = np.where(is_sound, jy, math.nan)
         out.error_jy = jy
         out.value_error = (
             jy / unit.factor_jy if unit.kind == "linear" else _mag_error(out, unit, jy, error, given, share)
         )
+
+
+def _note_wrong(out: Values, rows: np.ndarray, why: str) -> None:
+    for row in np.flatnonzero(rows).tolist():
+        out.wrong_error.setdefault(row, why)
 
 
 def _mag_error(
@@ -112,19 +132,20 @@ def measure(columns: BandColumns, table: RawTable, mapped_units: dict[str, str])
     """The measurements of one band in all rows of a wide table."""
     out, unit = _start_band(columns, table, mapped_units)
     if columns.over_error:
-        ratio, _ = numbers(table.columns[columns.over_error], SENTINELS)
+        ratio, out.wrong_error = numbers(table.columns[columns.over_error], SENTINELS)
         with np.errstate(divide="ignore", invalid="ignore"):
             set_errors(out, unit, 1.0 / ratio, None, 1.0)
     elif columns.error:
         _errors_of_column(out, columns, table, mapped_units, unit)
     elif columns.counts:
-        counts, sigma = (numbers(table.columns[name], SENTINELS)[0] for name in (columns.counts, columns.counts_error))
+        counts, _ = numbers(table.columns[columns.counts], SENTINELS)
+        sigma, out.wrong_error = numbers(table.columns[columns.counts_error], ERROR_SENTINELS)
         with np.errstate(divide="ignore", invalid="ignore"):
-            set_errors(out, unit, sigma / counts, None, 1.0)
+            set_errors(out, unit, sigma / np.abs(counts), None, 1.0)
     _limits(out, columns, table)
     _below_the_limit(out, columns, table)
     _uppers(out, columns, table, mapped_units)
-    finish(out, columns.value)
+    finish(out, columns.value, columns.error or columns.over_error or columns.counts_error)
     return out
 
 
@@ -143,12 +164,26 @@ def _errors_of_column(
     out: Values, columns: BandColumns, table: RawTable, mapped_units: dict[str, str], unit: Scale
 ) -> None:
     column = table.columns[columns.error]
-    error, bad = numbers(column, SENTINELS)
-    out.bad.update({(row, columns.error): why for row, why in bad.items()})
     text = unit_of(column, columns.error_unit, mapped_units.get(columns.error, ""))
     share = relative_error(text)
     given = scale(text, columns.band, is_mag=True) if text and share is None else None
+    error, bad = numbers(column, error_sentinels(given or unit, share))
+    note_bad_errors(out, bad, columns.error)
+    if columns.error_unit == "mag":  # a catalogue's: a native column has none planned
+        with np.errstate(invalid="ignore"):
+            error[error > NO_ERROR_MAG] = math.nan
     set_errors(out, unit, error, given, share)
+
+
+def error_sentinels(given: Scale, share: float | None) -> tuple[float, ...]:
+    """The numbers that stand for no error in a column of this kind; 99 may be an error where it is no magnitude's."""
+    return ERROR_SENTINELS if given.kind == "linear" or share is not None else MAG_ERROR_SENTINELS
+
+
+def note_bad_errors(out: Values, bad: Bad, column: str) -> None:
+    """Cells of a column of errors that are no numbers: bad cells, and wrong errors of their detections."""
+    out.bad.update({(row, column): why for row, why in bad.items()})
+    out.wrong_error.update(bad)
 
 
 def _limits(out: Values, columns: BandColumns, table: RawTable) -> None:
@@ -188,7 +223,8 @@ def set_levels(out: Values, level: FloatArray, column: str, bad: dict[int, str])
 
 def _below_the_limit(out: Values, columns: BandColumns, table: RawTable) -> None:
     """A null error where that means a limit: the measurement behind it where there is one, else the limit."""
-    lost = out.present & np.isnan(out.error_jy) & ~out.limit & ~out.bad_rows(columns.error)
+    lost = out.present & np.isnan(out.error_jy) & ~out.limit
+    lost[list(out.wrong_error)] = False
     if columns.limit_flag is not None:  # the flag says which are limits: others are detections without an error
         lost &= np.array([not letter for letter in letters_of(columns.limit_flag, table)], dtype=bool)
     if columns.sure_flag is not None:
@@ -218,6 +254,7 @@ def _from_counts(out: Values, columns: BandColumns, table: RawTable, lost: np.nd
     out.present |= found
     unit = table.columns[columns.counts].unit or "counts"
     for row in np.flatnonzero(found).tolist():
+        out.wrong_error.pop(row, None)
         out.unit[row] = unit
         out.note[row] = FROM_COUNTS.format(columns.counts)
     return lost & ~found
@@ -255,8 +292,15 @@ def _uppers(out: Values, columns: BandColumns, table: RawTable, mapped_units: di
         out.unit[row] = other.unit[row]
 
 
-def finish(out: Values, column: str) -> None:
-    """In the end limits are positive and have no error, detections without error say so, and no zero has a sign."""
+def finish(out: Values, column: str, error_column: str = "") -> None:
+    """In the end limits are positive and have no error, detections without error say so, and no zero has a sign.
+
+    A detection with a wrong error is refused: neither its error nor the floor would say how well it is known.
+    """
+    for row, why in out.wrong_error.items():
+        if out.present[row] and not out.limit[row]:
+            out.bad[(row, error_column)] = LEFT_OUT.format(why)
+            out.present[row] = False
     wrong = out.present & out.limit & ~(out.flux_jy > 0)
     for row in np.flatnonzero(wrong).tolist():
         out.bad[(row, column)] = "an upper limit must be above zero"

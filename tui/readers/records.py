@@ -72,6 +72,7 @@ class RawTable:
     row_numbers: np.ndarray  # shape (N,), 1 is the first row of data
     refused: tuple[Refused, ...] = ()
     cautions: tuple[str, ...] = ()
+    unread: Mapping[str, str] = field(default_factory=dict)  # column without plain cells -> what it holds
 
     def __len__(self) -> int:
         return len(self.row_numbers)

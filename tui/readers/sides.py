@@ -62,6 +62,8 @@ def read_dips(
             side.refuse(row, "band", f"{quoted(given[row])} is no known band")
         elif not -1 < depth[row] <= 1:
             side.refuse(row, "depth", "a depth is a fraction of the flux, from -1 to 1")
+        elif error[row] < 0:
+            side.refuse(row, key, "an error is above zero, and empty where it is not known")
         else:
             event = events[row] or "1"
             sigma = error[row] if error[row] > 0 else math.nan

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import os
 from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import replace
 
 from tui.model import Band
 from tui.readers.archives import Archive
@@ -11,9 +12,9 @@ from tui.readers.collector import collector_at_rest
 from tui.readers.columnmap import read_column_map
 from tui.readers.files import open_table
 from tui.readers.long import LongReader, long_columns
-from tui.readers.native import hint
+from tui.readers.native import hint, native_columns
 from tui.readers.recognise import Words, recognise
-from tui.readers.records import FactRow, TableContents
+from tui.readers.records import FactRow, RawTable, Refused, TableContents
 from tui.readers.wide import WideReader
 
 PART_ROWS = 20_000  # rows of a wide table made into candidates at once
@@ -48,6 +49,19 @@ def read_table(
     return TableContents(candidates, refused, last.unknown_columns, last.cautions, last.source, last.user_bands)
 
 
+def without_arrays(table: RawTable, words: Words) -> RawTable:
+    """The table, with what holds no plain cells said: refused where it is wanted by its name, else as a caution."""
+    known = {name for archive in words.archives for name in archive.column_names} | set(words.facts)
+    refused, cautions = list(table.refused), list(table.cautions)
+    for name, held in table.unread.items():
+        mend = f"the column holds {held}: give one plain number or text a row"
+        if name in known or native_columns([name], words.bands, words.aliases, ""):
+            refused.append(Refused(table.path, 0, name, mend))
+        else:
+            cautions.append(f"{table.path}: column {name} holds {held} and is not read")
+    return replace(table, refused=tuple(refused), cautions=tuple(cautions))
+
+
 def read_parts(
     path: str | os.PathLike[str],
     bands: Mapping[str, Band],
@@ -66,7 +80,7 @@ def read_parts(
     """
     column_map = read_column_map(columns)
     words = Words({**bands, **column_map.bands}, aliases, facts, archives, column_map, source or "")
-    table = open_table(path)
+    table = without_arrays(open_table(path), words)
     label = words.label(table.path)
     if (long := long_columns(table, words)) is not None:
         reader = LongReader(table, long, words)

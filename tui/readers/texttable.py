@@ -92,7 +92,7 @@ def _ecsv_head(path: str, comments: list[str]) -> tuple[str, dict[str, str]]:
         fields = [(_plain(field["name"]), _plain(field.get("unit") or "")) for field in head["datatype"]]
         delimiter = _plain(head.get("delimiter", " "))
     except Exception as error:  # the YAML reader raises what it likes; it loads plain values only
-        raise TableError(path, f"the ECSV head cannot be read ({type(error).__name__}).") from error
+        raise TableError(path, "the ECSV head is damaged: it must name every column and its datatype.") from error
     if delimiter not in (" ", ","):
         raise TableError(path, "an ECSV table is cut by blanks or commas, this one is not.")
     return delimiter, dict(fields)
@@ -124,8 +124,13 @@ class _Cutter:
                 self.head.pop()
             self.cells = self._cut() if 0 < len(self.head) <= MOST_COLUMNS and any(self.head) else []
         except csv.Error as error:
-            place = f"near line {self.reader.line_num}"
-            raise TableError(path, f"{place} the rows cannot be cut into cells ({error}).") from error
+            why = (
+                f"a cell is longer than {csv.field_size_limit()} characters"
+                if "field limit" in str(error)
+                else "the rows cannot be cut into cells"
+            )
+            where = f"near line {self.reader.line_num}"
+            raise TableError(path, f"{where} {why}: look for a quote that does not close.") from error
         if not self.cells:
             raise TableError(path, f"there are {len(self.head)} column names: no table was recognised.")
 

@@ -16,6 +16,7 @@ import numpy as np
 from tui.errors import TableError
 from tui.readers.records import Column, RawTable
 
+PLACE = re.compile(r"(?:^|:)(\d+):\d+:")
 FOREIGN = (
     (re.compile(rb"<!ENTITY"), "defines entities, which no table needs"),
     (
@@ -40,14 +41,14 @@ def read_votable(path: str) -> RawTable:
         try:
             tables = [table for table in parse(path, verify="ignore").iter_tables() if table.fields]
         except Exception as error:  # the XML and VOTable readers raise many kinds
-            raise TableError(path, f"the VOTable is damaged ({_reason(error)}).") from error
+            raise TableError(path, f"the VOTable is damaged{_place(error)}.") from error
     filled = [table for table in tables if len(table.array)]
     if not tables:
         raise TableError(path, "the VOTable holds no table.")
     table = (filled or tables)[0]
-    columns = _columns(path, table)
+    columns, unread = _columns(path, table)
     cautions = (f"{path}: only the first of {len(filled)} tables was read",) if len(filled) > 1 else ()
-    return RawTable(path, columns, np.arange(1, len(table.array) + 1), (), cautions)
+    return RawTable(path, columns, np.arange(1, len(table.array) + 1), (), cautions, unread)
 
 
 def _refuse_foreign(path: str) -> None:
@@ -57,21 +58,27 @@ def _refuse_foreign(path: str) -> None:
                 raise TableError(path, f"the VOTable {reason}.")
 
 
-def _reason(error: Exception) -> str:
-    lines = str(error).strip().splitlines()
-    return f"{type(error).__name__}: {lines[0][:120]}" if lines else type(error).__name__
+def _place(error: Exception) -> str:
+    """Where the reader stopped, which its complaint begins with: "FILE:LINE:COLUMN: ..." or "LINE:COLUMN: ..."."""
+    found = PLACE.search(str(error))
+    return f" at line {found[1]}" if found else ""
 
 
-def _columns(path: str, table: Any) -> dict[str, Column]:
+def _columns(path: str, table: Any) -> tuple[dict[str, Column], dict[str, str]]:
+    """Columns of plain cells, and what the others hold."""
     columns: dict[str, Column] = {}
+    unread: dict[str, str] = {}
     for field, key in zip(table.fields, table.array.dtype.names, strict=True):
         name = field.name or field.ID
         if name in columns:
             raise TableError(path, f"two columns are called {name!a}: rename one.")
-        column = _column(name, table.array[key], str(field.unit) if field.unit is not None else "")
+        cells = table.array[key]
+        column = _column(name, cells, str(field.unit) if field.unit is not None else "")
         if column is not None:
             columns[name] = column
-    return columns
+        else:
+            unread[name] = "complex numbers" if cells.dtype.kind == "c" else "arrays"
+    return columns, unread
 
 
 def _column(name: str, cells: Any, unit: str) -> Column | None:
