@@ -13,7 +13,7 @@ import sqlite3
 from collections.abc import Iterable, Iterator, Sequence
 from pathlib import Path
 
-from tui.errors import StoreError
+from tui.errors import StoreError, reason_of
 from tui.model import Settings
 from tui.store import deriving
 from tui.store.candidates import refresh_inputs
@@ -173,6 +173,7 @@ def backup(connection: sqlite3.Connection, path: str | os.PathLike[str]) -> None
     except FileExistsError:
         raise StoreError(f"{path} exists and was left as it is; give another name for the backup.") from None
     except (sqlite3.Error, OSError) as error:
-        raise StoreError(f"{path} cannot be written: {error}.") from error
+        why = reason_of(error) if isinstance(error, OSError) else "its folder must exist and have room"
+        raise StoreError(f"{path} cannot be written: {why}.") from error
     finally:
         Path(part).unlink(missing_ok=True)

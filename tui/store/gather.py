@@ -28,6 +28,7 @@ from tui.store.measurements import COLUMNS
 from tui.store.names import later_utc
 from tui.store.records import Fault, GatherReport
 from tui.store.reviewers import checked_handle, handles
+from tui.store.sentences import sentence
 from tui.store.settings import STANDING_NAMES, newest, settings_from, touched
 
 SAME_CANDIDATE = (
@@ -127,7 +128,7 @@ def copy_queue(path: str, copy: str) -> None:
             return
         except sqlite3.Error as error:
             if "unable to open" not in str(error):  # a directory that cannot be written: copy the bytes
-                raise StoreError(f"{path} cannot be read: {error}.") from error
+                raise StoreError(sentence(path, error)) from error
         finally:
             source.close()
     try:
