@@ -100,7 +100,7 @@ def test_a_sound_queue_passes_its_audit_and_gives_receipts(queue):
     assert result.exit_code == 0 and "Sound" in result.stdout
     receipt = next(line.split(": ")[1] for line in result.stdout.splitlines() if line.startswith("Receipt of heron"))
     checked = run("audit", queue, "--receipt", receipt)
-    assert checked.exit_code == 0 and "1 receipts checked" in checked.stdout
+    assert checked.exit_code == 0 and "1 receipt checked" in checked.stdout
     assert run("audit", queue, "--receipt", "nonsense").exit_code == 2
 
 

@@ -8,7 +8,9 @@ from contextlib import closing
 from dataclasses import dataclass
 from pathlib import Path
 
+from tui.errors import TableError, reason_of
 from tui.store.connect import open_queue
+from tui.workflow.counting import counted
 
 CHAIN_LIMIT = (
     "A chain alone cannot show that its newest rulings were cut off, nor that someone wrote a whole chain anew: "
@@ -39,14 +41,15 @@ def audit_queue(path: str, *, repair: bool = False, receipts: Sequence[str] = ()
         found = audit(connection, repair, receipt_texts(receipts))
     faults = tuple(f"{fault.kind}: {fault.place}: {fault.text}" for fault in found.faults)
     what = (("candidates", found.candidates), ("measurements", found.measurements), ("rulings", found.rulings))
-    lines = [f"{path}: {', '.join(f'{count} {name}' for name, count in what)}, {found.reviewers} reviewers."]
+    what = (*what, ("reviewers", found.reviewers))
+    lines = [f"{path}: {', '.join(counted(count, name) for name, count in what)}."]
     lines.append(f"Queue digest {found.queue_digest}")
     lines += [f"Receipt of {handle}: {receipt}" for handle, receipt in sorted(found.heads.items())]
     if repair:
-        lines.append(f"{found.repaired} derived rows written anew.")
+        lines.append(f"{counted(found.repaired, 'derived rows')} written anew.")
     if receipts:
-        lines.append(f"{len(receipts)} receipts checked.")
-    lines.append(f"{len(faults)} faults." if faults else "Sound: file, references, every chain, every derived state.")
+        lines.append(f"{counted(len(receipts), 'receipts')} checked.")
+    lines.append(f"{counted(len(faults), 'faults')}." if faults else "Sound: file, references, every chain, every derived state.")
     return Audited((*lines, CHAIN_LIMIT), faults)
 
 
@@ -54,9 +57,17 @@ def receipt_texts(given: Sequence[str]) -> list[str]:
     """Receipts as texts; a file gives every line that is not empty."""
     texts: list[str] = []
     for one in given:
-        lines = Path(one).read_text(encoding="utf-8").splitlines() if os.path.isfile(one) else [one]
+        lines = lines_of(one) if os.path.isfile(one) else [one]
         texts += [line.strip() for line in lines if line.strip()]
     return texts
+
+
+def lines_of(path: str) -> list[str]:
+    """The lines of a file of receipts. TableError where it cannot be read as text."""
+    try:
+        return Path(path).read_text(encoding="utf-8").splitlines()
+    except (OSError, UnicodeDecodeError) as error:
+        raise TableError(path, f"the receipts cannot be read: {reason_of(error)}.") from error
 
 
 def write_backup(path: str, target: str) -> str:

@@ -8,7 +8,7 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
-from tui.errors import TableError
+from tui.errors import TableError, reason_of
 
 NAMES = ("handle", "theme", "keys")
 
@@ -43,7 +43,8 @@ def read_config() -> Config:
     except FileNotFoundError:
         return Config()
     except (OSError, ValueError) as error:
-        raise TableError(str(path), f"the config file cannot be read: {error}. Mend it or move it away.") from error
+        why = str(error) if type(error).__name__ == "TOMLDecodeError" else reason_of(error)
+        raise TableError(str(path), f"the config file cannot be read: {why}. Mend it or move it away.") from error
     return _config(path, found)
 
 

@@ -12,7 +12,7 @@ from urllib.parse import unquote
 
 import numpy as np
 
-from tui.errors import TableError
+from tui.errors import TableError, reason_of
 from tui.model import Band
 from tui.store.candidates import ids_of
 from tui.store.records import Cutout
@@ -98,7 +98,7 @@ def read_picture(path: Path, band: str) -> Cutout | str:
             with fits.open(path, memmap=False, lazy_load_hdus=True, disable_image_compression=True) as hdus:
                 return picture_of(hdus, path, band)
     except (OSError, ValueError, TypeError, KeyError, IndexError, AttributeError, MemoryError) as error:
-        return f"the picture cannot be read ({type(error).__name__}: {str(error)[:120]})."
+        return f"the picture cannot be read: {reason_of(error)}."
 
 
 def picture_of(hdus: Any, path: Path, band: str) -> Cutout | str:
