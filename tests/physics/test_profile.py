@@ -13,6 +13,7 @@ from tui.physics import composite as c
 from tui.physics.composite import kit_for, predict
 from tui.physics.fitting import fit
 from tui.physics.likelihood import errors_for, residuals
+from tui.physics.looking import held_down
 from tui.physics.profile import intervals
 
 # U tells temperature from reddening: without it the two trade places and chi-square has two dips
@@ -160,3 +161,21 @@ def test_the_best_value_lies_between_the_ends(grids):
             assert np.all(found.high[:, column] <= high[:, column] + 1e-9)
         others = [column for column in range(c.WIDTH) if column not in model.free]
         assert np.isnan(found.low[:, others]).all() and np.isnan(found.high[:, others]).all()
+
+
+def test_an_amplitude_that_spans_decades_keeps_them(grids):
+    # Cold dust behind limits: the profile at the true fraction, its temperature the best of many, is a brute force.
+    problem, truth, _ = random_problem(grids, FOURTEEN, 120, 5, natures=(c.DUST,), limits=0.3)
+    batch = fit(problem, c.DUST)
+    ends = intervals(batch)
+    everyone, held = np.arange(len(problem)), np.zeros((len(problem), c.WIDTH), bool)
+    held[:, c.A2] = True
+    lowest = np.full(len(problem), np.inf)
+    for ln_t in np.linspace(np.log(20), np.log(2000), 25):
+        x = batch.x.copy()
+        x[:, c.A2], x[:, c.X2] = truth[:, c.A2], ln_t
+        cost = held_down(problem, batch.kit, batch.errors, x, everyone, held, 30, 1e-4)[1]
+        lowest = np.minimum(lowest, cost)
+    allowed = lowest - batch.cost < 0.9
+    inside = (ends.low[:, c.A2] <= truth[:, c.A2]) & (truth[:, c.A2] <= ends.high[:, c.A2])
+    assert allowed.sum() > 40 and np.mean(inside[allowed]) > 0.9

@@ -41,14 +41,16 @@ def _alone(a: FloatArray, b: FloatArray) -> FloatArray:
 
 
 def _of_two(normal: FloatArray, right: FloatArray) -> FloatArray:
-    """Amplitudes of two sources; where one would be negative, or is not seen, the better of the two alone."""
+    """Amplitudes of two sources; where one would be negative, is unseen or is the other's twin, the better alone."""
     (a, c), (_, d) = normal
     one, two = _alone(a, right[0]), _alone(d, right[1])
     first = one * right[0] >= two * right[1]
-    det = np.maximum(a * d - c * c, SINGULAR * a * d + UNSEEN**2)
+    det, least = a * d - c * c, SINGULAR * a * d + UNSEEN**2
+    apart = det > least
+    det = np.maximum(det, least)
     s1, s2 = (right[0] * d - right[1] * c) / det, (right[1] * a - right[0] * c) / det
-    both = (s1 > 0) & (s2 > 0) & (a > UNSEEN) & (d > UNSEEN)
-    return np.stack([np.where(both, s1, one * first), np.where(both, s2, two * ~first)])
+    both = apart & (s1 > 0) & (s2 > 0) & (a > UNSEEN) & (d > UNSEEN)
+    return np.array([np.where(both, s1, one * first), np.where(both, s2, two * ~first)])
 
 
 def _solved(normal: FloatArray, right: FloatArray, chosen: tuple[int, ...]) -> tuple[FloatArray, FloatArray]:

@@ -32,8 +32,9 @@ class Pieces:
     def at(self, x: FloatArray) -> tuple[FloatArray, FloatArray]:
         """ln flux and its derivative with x, each (B, R), at x (R,)."""
         place = (x - self.low) / self.step
-        np.clip(place, 0.0, self.table.shape[1] - 1e-3, out=place)
-        left = place.astype(np.intp)
+        np.maximum(place, 0.0, out=place)
+        np.minimum(place, self.table.shape[1], out=place)
+        left = np.minimum(place.astype(np.intp), self.table.shape[1] - 1)
         t = place - left
         c0, c1, c2, c3 = self.table.take(left, axis=1).reshape(4, -1, x.size)
         c3 *= t
@@ -69,7 +70,7 @@ class Screen:
         slid = [slope @ basis for slope, basis in zip(self.slopes, plain, strict=False)]
         kinds = [plain, *[[*plain[:n], slid[n], *plain[n + 1 :]] for n in range(len(plain))]]
         stacked = np.concatenate([_outer(kind) for kind in kinds], axis=1)
-        shape, by_t, by_a, *by_r = np.split(self.table @ stacked, len(kinds), axis=1)
+        shape, by_t, by_a, *by_r = _halves(self.table @ stacked, len(kinds))
         by_t *= av * (2.0 / (here.ln_t[1] - here.ln_t[0]))
         by_a *= (2.0 / top) * av / (AV_SCALE + av)
         by_a += shape
@@ -80,7 +81,14 @@ class Screen:
 
 
 def _inside(value: FloatArray, low: float, high: float) -> FloatArray:
-    return np.clip((2.0 * value - (low + high)) / (high - low), -1.0, 1.0)
+    unit = (2.0 * value - (low + high)) / (high - low)
+    return np.minimum(np.maximum(unit, -1.0), 1.0)
+
+
+def _halves(array: FloatArray, count: int) -> list[FloatArray]:
+    """An array (B, count R) as `count` arrays (B, R)."""
+    width = array.shape[1] // count
+    return [array[:, number * width : (number + 1) * width] for number in range(count)]
 
 
 def _polynomials(unit: FloatArray, count: int, dtype: np.dtype) -> FloatArray:
@@ -158,7 +166,7 @@ def lights(tables: Tables, theta: FloatArray, absent: FloatArray) -> Lights:
     if len(own) == 2 and tables.kit.model.sources == ("star",):  # both stars at once
         twice = [None if part is None else np.concatenate([part, part]) for part in screen]
         both = _seen(tables, 0, np.concatenate(own), *twice)
-        seen = list(zip(*((None, None) if part is None else np.split(part, 2, axis=1) for part in both), strict=True))
+        seen = list(zip(*((None, None) if part is None else _halves(part, 2) for part in both), strict=True))
     else:
         seen = [_seen(tables, number, one, *screen) for number, one in enumerate(own)]
     found = Lights([], [], [])

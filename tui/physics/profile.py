@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from tui.model import FloatArray
-from tui.physics.composite import WIDTH
+from tui.physics.composite import A2, A3, WIDTH, X2, X3
 from tui.physics.fitting import FitBatch
 from tui.physics.likelihood import curvature, residuals
 from tui.physics.looking import held_down
@@ -15,6 +15,9 @@ from tui.physics.looking import held_down
 RISE_68 = 1.0  # of -2 ln L, two-sided 68.3 % (Wilks 1938)
 RISE_95 = 2.71  # one-sided 95 % at a bound
 TRIES = 6
+LEAST = 1e-12  # an amplitude this small is none
+OWN_NODES = 12  # temperatures tried beside a held amplitude
+STEPS, TOLERANCE = 5, 1e-2
 CLOSE = 0.03  # of the square root of the rise
 FARTHER = (1.6, 2.6, 4.5)  # times the first crossing: where a further dip is looked for
 
@@ -51,12 +54,12 @@ def intervals(batch: FitBatch, held: np.ndarray | None = None) -> Intervals:
     near = batch.kit.near(batch.problem.av_max)[row, column]
     at_other = np.abs(best - other) <= near
     goal = np.where(at_other, RISE_95, RISE_68)
-    room = np.abs(edge - best)
-    todo = np.flatnonzero((room > near) & ~held[column])
+    todo = np.flatnonzero((np.abs(edge - best) > near) & ~held[column])
     found = best.copy()
     if todo.size:
-        ray = _Ray(batch, held, row[todo], column[todo], side[todo], goal[todo], directions[row, place][todo])
-        found[todo] = best[todo] + side[todo] * _reach(ray, room[todo], scale[row, place][todo])
+        way = _Way.along(column[todo], best[todo], edge[todo], side[todo])
+        ray = _Ray(batch, held, row[todo], column[todo], goal[todo], directions[row, place][todo], way)
+        found[todo] = way.value(slice(None), _reach(ray, way.room, scale[row, place][todo] / way.unit))
     for index, s in enumerate(sides):
         chosen = side == s
         ends[index, row[chosen], column[chosen]] = found[chosen]
@@ -87,6 +90,34 @@ def _directions(batch: FitBatch) -> tuple[FloatArray, FloatArray]:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
+class _Way:
+    """How K values move from their best: by steps of themselves, or, for amplitudes, of their logarithms."""
+
+    best: FloatArray
+    edge: FloatArray
+    side: FloatArray
+    unit: FloatArray  # what one step is worth at the best value
+    room: FloatArray  # steps to the edge; an amplitude of LEAST is none
+    by_factors: np.ndarray  # bool
+
+    @classmethod
+    def along(cls, column: np.ndarray, best: FloatArray, edge: FloatArray, side: FloatArray) -> _Way:
+        """Amplitudes that are not zero may span decades: they move by factors."""
+        by_factors = np.isin(column, (A2, A3)) & (best > LEAST)
+        safe = np.where(by_factors, best, 1.0)
+        decades = np.abs(np.log(np.maximum(np.where(by_factors, edge, 1.0), LEAST) / safe))
+        room = np.where(by_factors, decades, np.abs(edge - best))
+        return cls(best, edge, side, np.where(by_factors, best, 1.0), room, by_factors)
+
+    def value(self, some: np.ndarray | slice, step: FloatArray) -> FloatArray:
+        """Values of the searches `some` after `step`."""
+        best, side = self.best[some], self.side[some]
+        factor = np.exp(np.where(self.by_factors[some], side * step, 0.0))
+        moved = np.where(self.by_factors[some], best * factor, best + side * step)
+        return np.where(step >= self.room[some] * (1 - 1e-9), self.edge[some], moved)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
 class _Ray:
     """K searches: from a candidate's best value of one column, to one side."""
 
@@ -94,9 +125,9 @@ class _Ray:
     held: np.ndarray  # (8,) bool
     row: np.ndarray
     column: np.ndarray
-    side: FloatArray
     goal: FloatArray
     direction: FloatArray  # (K, P)
+    way: _Way
 
     def root(self, some: np.ndarray, step: FloatArray) -> FloatArray:
         """Square root of the profile's rise at `step`, in units of the goal, for the searches `some`."""
@@ -104,14 +135,39 @@ class _Ray:
         free = list(self.batch.model.free)
         place = np.arange(some.size)
         start = self.batch.x[row].copy()
-        start[:, free] += self.direction[some] * (self.side[some] * step)[:, None]
-        start[place, column] = self.batch.x[row, column] + self.side[some] * step
+        start[:, free] += self.direction[some] * (self.way.side[some] * self.way.unit[some] * step)[:, None]
+        start[place, column] = self.way.value(some, step)
         held = np.tile(self.held, (some.size, 1))
         start = np.where(held, self.batch.x[row], start)
         held[place, column] = True
-        here = self.batch
-        cost = held_down(here.problem, here.kit, here.errors, start, row, held, steps=5, tolerance=1e-2)[1]
+        start = self._with_own_parameter(start, row, column, held)
+        cost = self._down(start, row, held, STEPS)
         return np.sqrt(np.maximum(cost - self.batch.cost[row], 0.0) / self.goal[some])
+
+    def _down(self, x: FloatArray, row: np.ndarray, held: np.ndarray, steps: int) -> FloatArray:
+        here = self.batch
+        return held_down(here.problem, here.kit, here.errors, x, row, held, steps, TOLERANCE)[1]
+
+    def _with_own_parameter(
+        self, start: FloatArray, row: np.ndarray, column: np.ndarray, held: np.ndarray
+    ) -> FloatArray:
+        """`start` where a held amplitude begins beside the best of several temperatures (or slopes) of its source.
+
+        An amplitude may span decades while the source's temperature makes up for it: no straight way leads there.
+        """
+        for number, (amplitude, own) in enumerate(((A2, X2), (A3, X3))):
+            some = np.flatnonzero((column == amplitude) & ~self.held[own])
+            if not some.size or own not in self.batch.model.free:
+                continue
+            grid = self.batch.kit.further[number]
+            tried = np.repeat(start[some][None], OWN_NODES + 1, axis=0)
+            tried[1:, :, own] = np.linspace(grid.low, grid.high, OWN_NODES)[:, None]
+            flat = tried.reshape(-1, WIDTH)
+            times = OWN_NODES + 1
+            cost = self._down(flat, np.tile(row[some], times), np.tile(held[some], (times, 1)), 0)
+            best = cost.reshape(times, -1).argmin(axis=0)
+            start[some] = tried[best, np.arange(some.size)]
+        return start
 
 
 def _reach(ray: _Ray, room: FloatArray, scale: FloatArray) -> FloatArray:

@@ -24,6 +24,7 @@ NEWTON = 2  # steps of the amplitudes where something is not linear in them
 FAINTEST = 1e-15  # amplitude, in units of the brightest flux
 FAINT = 1e-5  # a star may be this faint beside its companion, each in its brightest band
 ROOT_STEPS = 6
+FEW = 100  # rows below which one call for all products is quicker than one for each
 FAR_BELOW = -15.0  # sigma, where Mills' ratio is its own first terms
 
 
@@ -55,7 +56,7 @@ def reduced(rows: Rows, tables: Tables, theta: FloatArray, held: Held | None = N
     both = solved.both
     if both.shape[0] > 1 and not tables.kit.model.bound_pair:
         both[0] = np.maximum(both[0], FAINT * both[1:].max(axis=0))
-    return Reduced(solved.state.cost, normal, right, both, np.stack(seen.ln_top))
+    return Reduced(solved.state.cost, normal, right, both, np.array(seen.ln_top))
 
 
 def _parallax_at_one(rows: Rows, tables: Tables, theta: FloatArray, seen: Lights) -> FloatArray | None:
@@ -100,7 +101,7 @@ def _solve(
         if bound is None or bound.where is not None:
             own, free = state.amplitude[free], free + 1
         both.append(own if bound is None else own + bound.ratio * star)
-    return _Solved(state, columns, np.stack(both))
+    return _Solved(state, columns, np.array(both))
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -145,11 +146,14 @@ def _amplitudes(rows: Rows, normal: FloatArray, right: FloatArray, parallax: Flo
 
 def _gram(rows: Rows, weighted: list[FloatArray], columns: list[FloatArray]) -> FloatArray:
     """Products (K, K, R) of columns, the errors that bands share taken into account."""
-    count = len(columns)
-    out = np.empty((count, count, columns[0].shape[1]), columns[0].dtype)
-    for i in range(count):
-        for j in range(i, count):
-            out[i, j] = out[j, i] = np.add.reduce(weighted[i] * columns[j], axis=0)
+    count, size = len(columns), columns[0].shape[1]
+    if size < FEW:
+        out = np.einsum("ibr,jbr->ijr", np.array(weighted), np.array(columns))
+    else:
+        out = np.empty((count, count, size), columns[0].dtype)
+        for i in range(count):
+            for j in range(i, count):
+                out[i, j] = out[j, i] = np.add.reduce(weighted[i] * columns[j], axis=0)
     if rows.shared is not None:
         common, share = rows.shared
         for one, part in zip(common, share, strict=True):
@@ -160,7 +164,10 @@ def _gram(rows: Rows, weighted: list[FloatArray], columns: list[FloatArray]) -> 
 
 def _against(rows: Rows, columns: list[FloatArray], left: FloatArray) -> FloatArray:
     """Products (K, R) of columns with what is left."""
-    out = np.stack([np.add.reduce(column * left, axis=0) for column in columns])
+    if left.shape[1] < FEW:
+        out = np.einsum("ibr,br->ir", np.array(columns), left)
+    else:
+        out = np.stack([np.add.reduce(column * left, axis=0) for column in columns])
     if rows.shared is not None:
         common, share = rows.shared
         for one, part in zip(common, share, strict=True):

@@ -118,10 +118,11 @@ def _thermal(tables: Tables) -> list[int]:
 
 
 def _moved(theta: FloatArray, step: FloatArray, thermal: list[int], low: FloatArray, high: FloatArray) -> FloatArray:
-    step = np.nan_to_num(step, nan=0.0)
-    step[thermal] = -np.log1p(-np.clip(step[thermal], -5.0, LONGEST))
+    step = np.where(np.isfinite(step), step, 0.0)
+    step[thermal] = -np.log1p(-np.minimum(np.maximum(step[thermal], -5.0), LONGEST))
     step += theta
-    return np.clip(step, low, high, out=step)
+    np.maximum(step, low, out=step)
+    return np.minimum(step, high, out=step)
 
 
 def _step(
