@@ -90,6 +90,36 @@ def test_probe_holds_what_is_fixed_and_drops_what_is_dropped(queue):
     assert run("probe", queue, "DUSTY", "dust", "--fix", "T=nan").exit_code == 2
 
 
+@pytest.mark.parametrize("check", ["extinction", "blend", "dust"])
+def test_probe_begins_from_the_leading_model_and_gives_its_intervals(queue, check):
+    lead = shown(queue, "DUSTY")["checks"][check]["fits"][0]
+    lines = run("probe", queue, "DUSTY", check).stdout.splitlines()
+    assert lines[2].startswith(lead["model"])
+    fitted = [line for line in lines[3:] if line.startswith(lead["model"])]
+    assert len(fitted) >= 2 and not any(line.split()[-1] == "-" for line in fitted)
+
+
+def test_probe_takes_another_model_by_name(queue):
+    text = run("probe", queue, "DUSTY", "blend", "--model", "star + galaxy").stdout
+    assert "star + galaxy" in text and "slope" in text
+    refused = run("probe", queue, "DUSTY", "blend", "--model", "star + dust")
+    assert refused.exit_code == 2 and "free pair" in refused.stderr
+
+
+@pytest.mark.parametrize(
+    ("check", "fixed", "words"),
+    [
+        ("dust", "T=-4", "20 to 2000"),
+        ("dust", "T=1e308", "20 to 2000"),
+        ("extinction", "A_V=-1", "outside its range"),
+        ("star", "theta=0", "outside its range"),
+    ],
+)
+def test_probe_refuses_values_outside_the_range_of_a_parameter(queue, check, fixed, words):
+    result = run("probe", queue, "DUSTY", check, "--fix", fixed)
+    assert result.exit_code == 2 and result.stdout == "" and words in result.stderr
+
+
 def test_a_ruling_cites_todays_evidence_and_can_be_withdrawn(queue):
     digest = shown(queue, "PLAIN")["checks"]["dust"]["digest"]
     assert run("rule", queue, "PLAIN", "dust", "short", "--as", "heron", "--note", "no excess").exit_code == 0

@@ -14,15 +14,22 @@ from tui.errors import InputError
 @check_argument
 @click.option("--fix", multiple=True, callback=pairs, metavar="PARAM=VALUE", help="Hold a parameter; repeat for more.")
 @click.option("--drop", multiple=True, metavar="BAND", help="Leave a band out; repeat for more.")
-def probe_command(queue: str, name: str, check: str, fix: dict[str, str], drop: tuple[str, ...]) -> int:
-    """A fit with parameters fixed or bands dropped: --fix T=450 --drop W3. Nothing is stored."""
+@click.option("--model", metavar="NAME", help="This model of the check, not the leading one.")
+def probe_command(
+    queue: str, name: str, check: str, fix: dict[str, str], drop: tuple[str, ...], model: str | None
+) -> int:
+    """A fit with parameters fixed or bands dropped, with intervals: --fix T=450 --drop W3. Nothing is stored.
+
+    It begins from the model that leads in the evidence; show lists the others.
+    """
     from tui.cli.dossier import print_fits
     from tui.cli.printing import line, signed, table
+    from tui.workflow.by_command import probe_by_command
     from tui.workflow.session import Session
 
     fixed = {parameter: number(parameter, text) for parameter, text in fix.items()}
     with Session.open(queue, write=False) as session:
-        fit, _ = session.probe(name, check, fixed, dropped_bands(drop))
+        fit = probe_by_command(session, name, check, fixed, dropped_bands(drop), model)
     line(f"{name}: {check} by hand" + (f", without {', '.join(drop)}" if drop else ""))
     print_fits([fit])
     table(("band", "pull"), [(band, signed(pull)) for band, pull in fit.pulls.items()], numbers=(1,))

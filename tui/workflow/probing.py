@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from types import MappingProxyType
 from typing import TYPE_CHECKING
 
@@ -51,6 +51,14 @@ def band_name(candidate: Candidate, typed: str) -> str:
     raise UnknownNameError("band", typed, f"{candidate.name} has {' '.join(sorted(measured)) or 'none'}.")
 
 
+def fitted_bands(candidate: Candidate, dropped: Iterable[str]) -> frozenset[str]:
+    """The names of the bands to leave out. InputError where none would be left to fit."""
+    without = frozenset(band_name(candidate, band) for band in dropped)
+    if not {one.band for one in candidate.measurements if not one.exclude} - without:
+        raise InputError(f"No band of {candidate.name} is left to fit.")
+    return without
+
+
 def probe(
     candidate: Candidate, check: str, fixed: Mapping[str, float], dropped: frozenset[str], basis: Basis
 ) -> tuple[Fit, Curve]:
@@ -66,10 +74,7 @@ def probe(
     from tui import checks
 
     held = {parameter_name(check, name): value for name, value in fixed.items()}
-    without = frozenset(band_name(candidate, band) for band in dropped)
-    left = {one.band for one in candidate.measurements if not one.exclude} - without
-    if not left:
-        raise InputError(f"No band of {candidate.name} is left to fit.")
+    without = fitted_bands(candidate, dropped)
     templates = templates_of(candidate, basis)
     fit = checks.probe(candidate, check, held, without, templates, basis.settings)
     return fit, checks.curve(candidate, fit, check, templates, basis.settings, curve_wavelengths(candidate, basis))
