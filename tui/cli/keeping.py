@@ -7,7 +7,7 @@ import click
 from tui.cli.arguments import as_option, pairs, queue_argument, reader
 
 
-@click.command("set")
+@click.command("set", context_settings={"ignore_unknown_options": True})  # so that a value may begin with a minus
 @queue_argument
 @click.argument("name", required=False)
 @click.argument("value", required=False)
@@ -25,7 +25,11 @@ def set_command(queue: str, name: str | None, value: str | None, handle: str | N
             by = session.reviewer.handle if session.reviewer else None
         line(setting.write(queue, name, value, by))
         return 0
-    table(("set (UTC)", "by", "value"), setting.history(queue, name))
+    past = setting.history(queue, name)
+    if past:
+        table(("set (UTC)", "by", "value"), past)
+    else:
+        line(f"{name} was never set: the default holds.")
     return 0
 
 

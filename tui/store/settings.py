@@ -8,6 +8,7 @@ import secrets
 import sqlite3
 from collections.abc import Callable, Mapping
 from dataclasses import replace
+from difflib import get_close_matches
 from typing import Any
 
 from tui.errors import SettingError
@@ -117,6 +118,18 @@ PARSERS: Mapping[str, Callable[[str], Any]] = {
 fraction = between(0, 1, low_too=True)
 
 
+def checked_name(name: str) -> str:
+    """The name itself. SettingError, naming near ones, where no setting is called so."""
+    family, dot, member = name.partition(".")
+    if name in PARSERS or (dot and family in FAMILIES and re.fullmatch(r"[^\s.][^\s]{0,63}", member)):
+        return name
+    known = [*PARSERS, "floor.BAND", "common.INSTRUMENT"]
+    near = get_close_matches(name.lower(), known, n=3) or known
+    where = "near it" if len(near) < len(known) else "there"
+    verb = "is" if len(near) == 1 else "are"
+    raise SettingError(name, f"there is no such setting; {where} {verb} {', '.join(near)}.")
+
+
 def parse_setting(name: str, text: str) -> Any:
     """The typed value of a setting's text.
 
@@ -126,14 +139,7 @@ def parse_setting(name: str, text: str) -> Any:
     >>> parse_setting("walk_all", "yes")
     True
     """
-    family, dot, member = name.partition(".")
-    if dot and family in FAMILIES and re.fullmatch(r"[^\s.][^\s]{0,63}", member):
-        parse: Callable[[str], Any] = fraction
-    elif name in PARSERS:
-        parse = PARSERS[name]
-    else:
-        known = ", ".join([*PARSERS, "floor.BAND", "common.INSTRUMENT"])
-        raise SettingError(name, f"there is no such setting; there are {known}.")
+    parse: Callable[[str], Any] = PARSERS.get(checked_name(name), fraction)
     try:
         return parse(text)
     except ValueError as error:

@@ -2,13 +2,19 @@
 
 from __future__ import annotations
 
+import sqlite3
 from collections.abc import Iterator
 from contextlib import closing
+from difflib import get_close_matches
 
+from tui.errors import SettingError
 from tui.model import Settings
+from tui.store.candidates import candidate_count
 from tui.store.connect import open_queue
-from tui.store.settings import DEFAULT, read_settings, setting_history, write_setting
+from tui.store.settings import DEFAULT, checked_name, read_settings, setting_history, write_setting
+from tui.workflow.basis import read_basis
 from tui.workflow.clock import utc_now
+from tui.workflow.digests import RELEVANT, settings_digest
 
 MEANINGS = {
     "quorum": "sure rulings that settle a check",
@@ -24,8 +30,6 @@ MEANINGS = {
     "n_searched": "stars searched to make this queue; empty: not known",
     "templates": "folder of spectra that the mixture bound takes for natural sources too, or default: none",
 }
-
-RULES = ("quorum", "agree_share", "walk_all")  # of consensus: no evidence rests on them
 
 
 def shown(value: object) -> str:
@@ -75,15 +79,44 @@ def write(path: str, name: str, value: str, handle: str | None) -> str:
             from tui.workflow.own_templates import KEY, keep_templates
 
             value = value if KEY.match(value) else keep_templates(connection, value.strip())
+        refuse_pointless(connection, name, value.strip())
+        before = read_settings(connection)
         write_setting(connection, name, value, utc_now(), by)
-        now = dict(row[:2] for row in overview_rows(read_settings(connection)))
-    text = f"{name} is now {now.get(name) or 'the default'}."
-    if name in RULES:
-        return f"{text} States and outcomes follow it."
-    return f"{text} Evidence that rests on it is outdated until: plainlight assess {path}"
+        after = read_settings(connection)
+    now = dict(row[:2] for row in overview_rows(after))
+    return f"{name} is now {now.get(name) or 'the default'}. {consequence(path, before, after)}"
+
+
+def refuse_pointless(connection: sqlite3.Connection, name: str, value: str) -> None:
+    """SettingError for a value that is in the setting's range and yet cannot be meant in this queue."""
+    family, _, member = name.partition(".")
+    if family == "floor" and member and value != DEFAULT:
+        known = read_basis(connection).bands()
+        if member not in known:
+            near = [band for band in known if band.lower() == member.lower()] or get_close_matches(member, known, n=3)
+            mend = f"near it: {', '.join(near)}" if near else "bands are named as in: plainlight show"
+            raise SettingError(name, f"there is no band {member!r}; {mend}.")
+    if name == "n_searched" and value.isdigit():
+        held = candidate_count(connection)
+        if int(value) < held:
+            raise SettingError(
+                name, f"{value} stars searched cannot have given {held} candidates; give at least {held}."
+            )
+
+
+def consequence(path: str, before: Settings, after: Settings) -> str:
+    """What follows from a change of settings: which evidence is outdated, or that none is."""
+    if before == after:
+        return "It was so before."
+    kinds = [kind for kind in RELEVANT if settings_digest(kind, before) != settings_digest(kind, after)]
+    if not kinds:
+        return "States and outcomes follow it."
+    what = "All evidence" if len(kinds) == len(RELEVANT) else f"Evidence on {', '.join(kinds)}"
+    return f"{what} is outdated until: plainlight assess {path}"
 
 
 def history(path: str, name: str) -> list[tuple[str, str, str]]:
-    """When, by whom and to what a setting was set, oldest first."""
+    """When, by whom and to what a setting was set, oldest first. SettingError where no setting is called so."""
+    checked_name(name)
     with closing(open_queue(path, write=False)) as connection:
         return [(line.utc, line.by, line.value) for line in setting_history(connection, name)]
