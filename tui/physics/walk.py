@@ -18,6 +18,7 @@ FIRST_DAMPING, EASE, STIFFEN = 0.1, 0.2, 4.0
 FREE_DAMPING = 1e-3  # all but free: what is promised, not what is dared
 HOPELESS = 1e6  # damping at which no step is worth trying
 SHORT_STEP = 0.3  # damping above which steps are short and a small gain says little
+LEAST = 0.1  # curvature that damping adds to: a parameter that does next to nothing must not leap and spoil the step
 FLAT = 1e-12  # curvature of the cost below which a parameter does nothing
 LONGEST = 0.8  # of a temperature, as a fraction of 1/T
 PRECISION = 3e-6  # of the cost: what single precision can tell
@@ -137,7 +138,7 @@ def _step(
     moves = ~rests
     normal = here.normal * moves[:, None] * moves[None]
     for place in range(theta.shape[0]):
-        normal[place, place] = np.where(rests[place], 1.0, diagonal[place] * (1.0 + damping))
+        normal[place, place] = np.where(rests[place], 1.0, diagonal[place] * (1.0 + damping) + LEAST * damping)
     step = solved(normal, right * moves, PRECISION)
     return step, np.add.reduce(step * right, axis=0)
 
