@@ -136,3 +136,19 @@ def test_a_configured_handle_of_other_queues_does_not_hinder_looking(queue, tmp_
     assert run("list", queue).exit_code == run("story", queue, "SM-1").exit_code == 0
     assert run("set", queue, "quorum", "3").exit_code == 0
     assert run("list", queue, "--next").exit_code == run("list", queue, "--as", "nobody").exit_code == 2
+
+
+def test_thousands_of_refusals_do_not_fill_the_terminal(tmp_path):
+    (tmp_path / "t.csv").write_text("name,J_mag,H_mag\n" + "".join(f"A{n},bright,8\n" for n in range(30)))
+    result = run("load", str(tmp_path / "q.db"), str(tmp_path / "t.csv"))
+    said = result.stderr.splitlines()
+    assert result.exit_code == 1 and sum("bright" in text for text in said) == 20
+    assert said[-1] == "30 refused, of which these are the first 20; all of them: --refused FILE."
+    written = run("load", str(tmp_path / "q.db"), str(tmp_path / "t.csv"), "--refused", str(tmp_path / "r.txt"))
+    assert (tmp_path / "r.txt").read_text().count("bright") == 30 and "bright" not in written.stderr
+
+
+def test_assessing_an_empty_queue_says_that_it_is_empty(tmp_path):
+    open_queue(str(tmp_path / "q.db"), create=True).close()
+    result = run("assess", str(tmp_path / "q.db"))
+    assert (result.exit_code, result.stdout) == (0, f"{tmp_path / 'q.db'} holds no candidates.\n")

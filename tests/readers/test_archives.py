@@ -171,7 +171,7 @@ def test_iras_faint_source_names(one):
 def test_without_a_column_of_errors_nothing_is_called_a_limit(one):
     _, band, contents = one("name,w1mpro,w2mpro\nA,8.9,9.0\n")
     assert not band["W1"].limit and "floor" in band["W1"].note
-    assert any(caution.startswith("W1: 1 detections have no error") for caution in contents.cautions)
+    assert any(caution.startswith("W1: 1 detection has no error") for caution in contents.cautions)
 
 
 def test_allwise_flags_by_band(one):

@@ -3,15 +3,17 @@
 from __future__ import annotations
 
 from contextlib import closing
+from pathlib import Path
 
 import pytest
 
-from tui.errors import TableError
+from tui.errors import StoreError, TableError
 from tui.store.candidates import get_candidate
 from tui.store.connect import open_queue
+from tui.workflow import loading
 from tui.workflow.auditing import audit_queue
 from tui.workflow.basis import band_from, band_text, read_basis
-from tui.workflow.loading import Sidecars, load, write_refused
+from tui.workflow.loading import Sidecars, holds_candidates, load, write_refused
 
 TABLE = """name,ra,dec,J_mag,J_err,W3_mag,W3_err,W3_limit,hue
 A 1,10.5,-3.25,6.9,0.02,6.45,0.02,false,red
@@ -52,6 +54,59 @@ def test_a_wrong_path_leaves_no_queue_behind(tmp_path, table):
     with pytest.raises(FileNotFoundError):
         load(str(tmp_path / "q.db"), [table, str(tmp_path / "none.csv")])
     assert not (tmp_path / "q.db").exists()
+
+
+@pytest.mark.parametrize("content", ["name,J_mag\n", "name,J_mag\n,8\n"], ids=["head alone", "all refused"])
+def test_a_load_that_takes_nothing_leaves_no_queue_behind(tmp_path, content):
+    (tmp_path / "t.csv").write_text(content)
+    done = load(str(tmp_path / "q.db"), [str(tmp_path / "t.csv")])
+    assert done.sentence().endswith("q.db was not made: there is nothing to put into it.")
+    assert [one.name for one in tmp_path.iterdir()] == ["t.csv"]
+
+
+def test_a_table_that_cannot_be_read_leaves_no_queue_behind_but_keeps_what_came_before(tmp_path, table):
+    (tmp_path / "bad.vot").write_text("<VOTABLE>")
+    with pytest.raises(TableError):
+        load(str(tmp_path / "q.db"), [str(tmp_path / "bad.vot")])
+    assert not list(tmp_path.glob("q.db*"))
+    with pytest.raises(TableError):
+        load(str(tmp_path / "q.db"), [table, str(tmp_path / "bad.vot")])
+    assert holds_candidates(str(tmp_path / "q.db"))
+
+
+def test_a_full_disk_leaves_no_stub_behind(tmp_path, table, monkeypatch):
+    def full(path, create=False, write=True):
+        Path(path).write_bytes(b"")
+        raise StoreError(f"{path}: the disk is full; nothing was written.")
+
+    monkeypatch.setattr(loading, "open_queue", full)
+    with pytest.raises(StoreError, match="full"):
+        load(str(tmp_path / "q.db"), [table])
+    assert not (tmp_path / "q.db").exists()
+
+
+def test_a_queue_that_was_there_is_never_taken_away(tmp_path, table):
+    path = str(tmp_path / "q.db")
+    open_queue(path, create=True).close()
+    (tmp_path / "t.csv").write_text("name,J_mag\n")
+    done = load(path, [str(tmp_path / "t.csv")])
+    assert (tmp_path / "q.db").exists() and done.sentence().endswith("nothing was found to load.")
+    assert any("has no rows" in text for text in done.remarks)
+
+
+def test_a_folder_without_pictures_is_said(tmp_path, table):
+    path = str(tmp_path / "q.db")
+    load(path, [table])
+    (tmp_path / "folder").mkdir()
+    done = load(path, [], sidecars=Sidecars(cutouts=str(tmp_path / "folder")))
+    assert done.sentence().endswith("nothing was found to load.")
+    assert any("no picture NAME_BAND.fits" in text for text in done.remarks)
+
+
+def test_a_list_of_refusals_that_finds_no_room_is_named():
+    with pytest.raises(OSError) as full:
+        write_refused("/dev/full", ["row 1"])
+    assert full.value.filename == "/dev/full"
 
 
 def test_a_file_that_is_no_table_is_refused_by_name(tmp_path):

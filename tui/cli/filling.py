@@ -7,6 +7,7 @@ import click
 from tui.cli.arguments import queue_argument
 from tui.model import KINDS
 
+SHOWN = 20  # refusals printed; a file takes all of them
 
 @click.command("load")
 @queue_argument
@@ -36,8 +37,10 @@ def load_command(queue, tables, columns, source, refused, dips, neighbours, spec
         if done.refused:
             remark(f"{len(done.refused)} refused: see {refused}.")
     else:
-        for row in done.refused:
+        for row in done.refused[:SHOWN]:
             remark(row)
+        if len(done.refused) > SHOWN:
+            remark(f"{len(done.refused)} refused, of which these are the first {SHOWN}; all of them: --refused FILE.")
     return 1 if done.refused else 0
 
 
@@ -49,10 +52,11 @@ def assess_command(queue: str, only: tuple[str, ...], jobs: int | None) -> int:
     """Compute the evidence that is lacking or outdated."""
     from tui.cli.printing import line, progress
     from tui.workflow.assessing import assess_queue
+    from tui.workflow.loading import holds_candidates
 
     with progress("assessing") as report:
         done = assess_queue(queue, kinds=only or KINDS, jobs=jobs, report=report)
-    line(done.sentence())
+    line(done.sentence() if done.candidates or holds_candidates(queue) else f"{queue} holds no candidates.")
     return 0
 
 

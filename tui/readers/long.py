@@ -19,6 +19,7 @@ from tui.readers.measure import (
     Values,
     error_sentinels,
     finish,
+    floor_caution,
     note_bad_errors,
     set_errors,
     set_levels,
@@ -229,9 +230,7 @@ class LongReader:
 
     def _count_missing(self, by_row: Mapping[int, Measurement]) -> None:
         missing = Counter(m.band for m in by_row.values() if NO_ERROR in m.note)
-        self.cautions += [
-            f"{band}: {count} detections have no error and take the band's floor" for band, count in missing.items()
-        ]
+        self.cautions += [floor_caution(band, count) for band, count in missing.items()]
 
     def _facts(self, names: list[str], usable: np.ndarray) -> dict[str, dict[str, Any]]:
         """Facts beside the measurements: the first row of a candidate that has one."""

@@ -313,6 +313,12 @@ def finish(out: Values, column: str, error_column: str = "") -> None:
         out.note[row] = out.note[row] or NO_ERROR
 
 
+def floor_caution(band: str, count: int) -> str:
+    """What is said once of the detections of a band that came without an error."""
+    words = "detection has no error and takes" if count == 1 else "detections have no error and take"
+    return f"{band}: {count} {words} the band's floor"
+
+
 def letters_of(flag: FlagColumn, table: RawTable) -> list[str]:
     """A flag's text in each row: its letter for a split one, "" where the text is not as long as it must be."""
     cells = texts(table.columns[flag.column])

@@ -13,7 +13,7 @@ from tui.model import Candidate, Measurement
 from tui.readers.cells import lost_digits, texts
 from tui.readers.collector import collector_at_rest
 from tui.readers.factcells import fact_values
-from tui.readers.measure import NO_ERROR, measure, measurements, refusals
+from tui.readers.measure import NO_ERROR, floor_caution, measure, measurements, refusals
 from tui.readers.names import clean_names
 from tui.readers.plan import Plan
 from tui.readers.records import RawTable, Refused
@@ -47,10 +47,7 @@ class WideReader:
 
     def closing_cautions(self) -> list[str]:
         """All cautions, once every part was read."""
-        counted = [
-            f"{band}: {count} detections have no error and take the band's floor"
-            for band, count in self.without_error.items()
-        ]
+        counted = [floor_caution(band, count) for band, count in self.without_error.items()]
         return [*self.cautions, *counted]
 
     def _candidates(self, table: RawTable) -> list[Candidate]:

@@ -176,4 +176,5 @@ def backup(connection: sqlite3.Connection, path: str | os.PathLike[str]) -> None
         why = reason_of(error) if isinstance(error, OSError) else "its folder must exist and have room"
         raise StoreError(f"{path} cannot be written: {why}.") from error
     finally:
-        Path(part).unlink(missing_ok=True)
+        for name in (part, f"{part}-journal"):
+            Path(name).unlink(missing_ok=True)

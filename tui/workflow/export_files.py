@@ -15,6 +15,7 @@ import numpy as np
 
 from tui.errors import InputError, TableError
 from tui.workflow.export_row import INT_NULL, Cells
+from tui.workflow.file_errors import named
 from tui.workflow.safe_text import safe
 
 if TYPE_CHECKING:
@@ -38,7 +39,7 @@ def write_list(path: str, cells: Cells, meta: Mapping[str, Any], *, force: bool)
         InputError: an ending of no known format, or the file exists and `force` is false.
     """
     writer = writer_for(path)
-    with replacing(path, force) as place:
+    with named(path), replacing(path, force) as place:
         writer(place, cells, meta)
 
 

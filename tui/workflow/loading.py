@@ -2,16 +2,20 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Callable, Iterable, Iterator, Sequence
 from contextlib import closing
 from dataclasses import dataclass, field, fields
+from pathlib import Path
 from typing import TYPE_CHECKING
 
-from tui.store.candidates import save_candidates
-from tui.store.connect import open_queue
+from tui.errors import StoreError
+from tui.store.candidates import candidate_count, save_candidates
+from tui.store.connect import open_queue, read_header
 from tui.store.records import LoadCounts, LoadRecord
 from tui.workflow.basis import keep_bands, read_basis
 from tui.workflow.clock import utc_now
+from tui.workflow.file_errors import named
 from tui.workflow.safe_text import safe
 from tui.workflow.vocabulary import packaged_vocabulary
 
@@ -50,6 +54,8 @@ class Loaded:
     counts: dict[str, int] = field(default_factory=lambda: dict.fromkeys((*WORDS, "same"), 0))
     refused: list[Refused | str] = field(default_factory=list)
     remarks: list[str] = field(default_factory=list)
+    found: int = 0  # candidates, side tables' entries and pictures that could be read, new or not
+    is_unmade: bool = False  # nothing could be taken, and the queue that this load had begun was taken away again
 
     def add(self, counts: LoadCounts) -> None:
         """Add the counts of one table."""
@@ -60,6 +66,10 @@ class Loaded:
         """One line for a person."""
         new = [f"{self.counts[name]} {word}" for name, word in WORDS.items() if self.counts[name]]
         known = f"{self.counts['same']} measurements were known" if self.counts["same"] else ""
+        if self.is_unmade:
+            return f"{self.path} was not made: there is nothing to put into it."
+        if not new and not self.found:
+            return f"{self.path}: " + ("nothing could be taken." if self.refused else "nothing was found to load.")
         if not new:
             return f"{self.path}: nothing new" + (f"; {known}." if known else ".")
         return f"{self.path}: {', '.join(new)}." + (f" {known.capitalize()}." if known else "")
@@ -89,6 +99,24 @@ def load(
     for table in (*tables, *side_paths(sidecars)):
         probe_file(table)
     done = Loaded(path)
+    is_new = not os.path.lexists(path)
+    try:
+        load_all(path, tables, columns, source, sidecars, done, report)
+    finally:
+        done.is_unmade = is_new and took_away_empty(path)
+    return done
+
+
+def load_all(
+    path: str,
+    tables: Sequence[str],
+    columns: str | None,
+    source: str | None,
+    sidecars: Sidecars | None,
+    done: Loaded,
+    report: Report | None,
+) -> None:
+    """Load tables, then what hangs on candidates, into a queue that is made where there is none."""
     with closing(open_queue(path, create=bool(tables))) as connection:
         for table in tables:
             load_table(connection, table, columns, source, done, report)
@@ -96,7 +124,22 @@ def load(
             from tui.workflow.side_tables import load_sidecars
 
             load_sidecars(connection, sidecars, columns, source, done)
-    return done
+
+
+def took_away_empty(path: str) -> bool:
+    """Take away a queue file that a load has made and put nothing into; whether it did."""
+    if not os.path.lexists(path):
+        return False
+    if os.path.getsize(path):  # a full disk leaves one without a byte, or without a table
+        try:
+            header = read_header(path)
+            if header is None or (header.user_version and holds_candidates(path)):
+                return False
+        except StoreError:
+            return False
+    for name in (path, f"{path}-wal", f"{path}-shm", f"{path}-journal"):
+        Path(name).unlink(missing_ok=True)
+    return True
 
 
 def side_paths(sidecars: Sidecars | None) -> tuple[str, ...]:
@@ -110,6 +153,12 @@ def probe_file(path: str) -> None:
         return
 
 
+def holds_candidates(path: str) -> bool:
+    """Whether there is anything in a queue to work on."""
+    with closing(open_queue(path, write=False)) as connection:
+        return candidate_count(connection) > 0
+
+
 def load_table(
     connection: sqlite3.Connection,
     table: str,
@@ -120,8 +169,11 @@ def load_table(
 ) -> None:
     """Load one table, part by part."""
     parts = table_parts(connection, table, columns, source)
+    before = done.found + len(done.refused)
     records = records_of(connection, parts, done, report)
     done.add(save_candidates(connection, records, utc_now()))
+    if done.found + len(done.refused) == before:
+        done.remarks.append(f"{table}: the table has no rows.")
 
 
 def table_parts(
@@ -148,6 +200,7 @@ def records_of(
         done.refused += part.refused
         done.remarks += remarks_of(part)
         read += len(part.candidates)
+        done.found += len(part.candidates)
         if report:
             report(read, read)
 
@@ -159,6 +212,6 @@ def remarks_of(part: TableContents) -> list[str]:
 
 
 def write_refused(path: str, refused: Iterable[Refused | str]) -> None:
-    """List what was refused in a file, one line each."""
-    with open(path, "w", encoding="utf-8", newline="\n") as stream:
+    """List what was refused in a file, one line each. OSError that names the file where it cannot be written."""
+    with named(path), open(path, "w", encoding="utf-8", newline="\n") as stream:
         stream.writelines(f"{safe(one)}\n" for one in refused)

@@ -43,7 +43,10 @@ def load_cutouts(connection: sqlite3.Connection, folder: str, bands: Mapping[str
     if not place.is_dir():
         raise TableError(folder, "there is no such folder of cutouts.")
     words = (*bands, *packaged_vocabulary().aliases)
-    for path in sorted(one for one in place.iterdir() if one.suffix.lower() in ENDINGS):
+    paths = sorted(one for one in place.iterdir() if one.suffix.lower() in ENDINGS)
+    if not paths:
+        done.remarks.append(f"{folder}: there is no picture NAME_BAND.fits in this folder.")
+    for path in paths:
         reason = load_cutout(connection, path, words, done)
         if reason:
             done.refused.append(f"{path}: {reason}")
@@ -60,6 +63,7 @@ def load_cutout(connection: sqlite3.Connection, path: Path, words: Iterable[str]
     picture = read_picture(path, band)
     if isinstance(picture, str):
         return picture
+    done.found += 1
     done.counts["cutouts"] += save_cutout(connection, name, picture, utc_now())
     return ""
 

@@ -86,6 +86,9 @@ def side_records(
     if found.unknown_columns:
         done.remarks.append(f"{path}: columns not known and not loaded: {', '.join(found.unknown_columns)}.")
     done.remarks += found.cautions
+    done.found += len(found.rows)
+    if not found.rows and not found.refused:
+        done.remarks.append(f"{path}: the table has no rows.")
     known = ids_of(connection, found.rows)
     for name, rows in found.rows.items():
         if name in known:
