@@ -11,9 +11,9 @@ from tui.checks.prepare import fact
 from tui.checks.record import Group, any_stands, dust_radius, fits_of, luminosity_sun, ordered_fits, stands
 from tui.checks.remarks import common_remarks, gain_over_star
 from tui.model import Candidate, Evidence, Fit, FloatArray, Param, Settings
-from tui.physics.composite import A2, DUST, DUST_AV, TWO_DUST, X2, kit_for, predict
+from tui.physics.composite import A2, A3, DUST, DUST_AV, TWO_DUST, X2, X3, kit_for, predict
 from tui.physics.context import shell_dimming, steady_state_ceiling
-from tui.physics.fitting import FitBatch, fit
+from tui.physics.fitting import FitBatch, finish, fit
 from tui.physics.problem import Problem
 from tui.physics.statistics import chi2_tail
 
@@ -42,7 +42,17 @@ def fit_dust(problem: Problem, star: FitBatch, settings: Settings) -> list[Group
     if not rows.size:
         return groups
     two = fit(problem.take(rows), TWO_DUST, start=screened.x[rows], errors=screened.errors.take(rows))
-    return [*groups, Group(two, rows)]
+    return [*groups, Group(warmer_first(two), rows)]
+
+
+def warmer_first(batch: FitBatch) -> FitBatch:
+    """The same fits with the warmer dust as the first, so that the order means something."""
+    x = batch.x.copy()
+    swap = (x[:, X3] > x[:, X2]) & (x[:, A3] > 0)
+    if not swap.any():
+        return batch
+    x[np.ix_(swap, [X2, A2, X3, A3])] = x[np.ix_(swap, [X3, A3, X2, A2])]
+    return finish(batch.problem, batch.kit, batch.errors, x)
 
 
 def asks_for_two(problem: Problem, one: FitBatch, settings: Settings) -> np.ndarray:

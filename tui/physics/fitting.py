@@ -18,6 +18,7 @@ SETTLED = 0.1  # the error model has settled once chi-square moves by less
 LOOKS = 4  # times that minima are compared anew with the errors of the last pass
 MOVED = 0.03  # minima hold while no band's error has moved by more than this fraction
 FAR = 0.3  # beyond which the range is scanned anew
+GIVE = 20.0  # of -2 ln L: a lower minimum is taken if with its own errors it is not unlikelier by more
 LOWER = 0.02  # a minimum found anew counts when its cost is lower by more
 WITH_SECOND_DUST, SECOND_DUST_NODES = 6, 6  # the best starts of one dust, each with a second at so many temperatures
 SETTLE_STEPS = 2
@@ -99,10 +100,10 @@ def fit(
     """
     kit = kit_for(model, problem.templates, r_v, other_law=other_law)
     errors = first_errors(problem) if errors is None else errors
-    extra = [] if start is None else [start[None]]
+    extra = [] if start is None else [rested(kit, start)[None]]
     looked = look(problem, kit, errors, np.concatenate([starting_rows(problem, kit, errors), *extra]))
     sigma = errors.sigma.copy()
-    now = settle(problem, kit, looked.x[0])
+    now = likelier(problem, kit, settle(problem, kit, looked.x[0]), [*looked.x[1:], *(each[0] for each in extra)])
     likeliest, unsettled = now, np.zeros(0, np.intp)
     for _ in range(LOOKS):
         rows, again = look_again(problem, kit, now.errors, sigma, looked, extra)
@@ -112,7 +113,10 @@ def fit(
         better = again.cost[0] < now.cost[rows] - LOWER
         unsettled = rows[better]
         if unsettled.size:
-            now = now.put(unsettled, settle(problem.take(unsettled), kit, again.x[0, better]))
+            there = settle(problem.take(unsettled), kit, again.x[0, better])
+            taken = there.total < now.total[unsettled] + GIVE
+            unsettled = unsettled[taken]
+            now = now.put(unsettled, there.take(np.flatnonzero(taken)))
             lower = np.flatnonzero(now.total < likeliest.total)
             likeliest = likeliest.put(lower, now.take(lower))
     now = now.put(unsettled, likeliest.take(unsettled))  # minima that take turns: each the lowest with the other's errors
@@ -141,6 +145,26 @@ class Settled:
         """These with those of some candidates put in."""
         errors = replace_rows(self.errors, rows, some.errors)
         return Settled(errors, put(self.x, rows, some.x), put(self.cost, rows, some.cost))
+
+
+def likelier(problem: Problem, kit: Kit, now: Settled, others: list[FloatArray]) -> Settled:
+    """`now`, or what settles from another row (M, 8) that is likelier with the errors that follow it.
+
+    The lowest minimum with one's errors may be a poor one with its own, where the spread of stars changes with T_eff.
+    """
+    totals = []
+    for x in others:
+        seen = predict(kit, x)
+        errors = errors_of(problem, x, seen)
+        total = residuals(problem, kit, errors, x, seen).cost + errors.ln_det
+        totals.append(np.where(np.isfinite(total), total, np.inf))
+    best = np.argmin(totals, axis=0)
+    rows = np.flatnonzero(np.min(totals, axis=0) < now.total - GIVE)
+    if not rows.size:
+        return now
+    there = settle(problem.take(rows), kit, np.array(others)[best[rows], rows])
+    lower = np.flatnonzero(there.total < now.total[rows])
+    return now.put(rows[lower], there.take(lower))
 
 
 def look_again(
@@ -182,22 +206,30 @@ def starting_rows(problem: Problem, kit: Kit, errors: Errors) -> FloatArray:
 
 
 def settle(problem: Problem, kit: Kit, x: FloatArray) -> Settled:
-    """Let errors and parameters follow each other until chi-square rests."""
-    x, cost = x.copy(), np.empty(len(problem))
-    errors = errors_of(problem, x, predict(kit, x))
+    """Let errors and parameters follow each other until chi-square rests.
+
+    Where that leads from a likelier pass to a much unlikelier one, as when stars of the temperature found scatter less,
+    the likelier pass stands.
+    """
+    x = x.copy()
+    now = Settled(errors_of(problem, x, predict(kit, x)), x, np.full(len(problem), np.inf))
+    likeliest = now
     live, before = np.arange(len(problem)), np.full(len(problem), np.inf)
     for _ in range(PASSES):
         some = problem.take(live)
-        own = errors_of(some, x[live], predict(kit, x[live]))
-        x[live], cost[live] = gone_down(some, kit, own, x[live], SETTLE_STEPS, COARSE)
-        errors = replace_rows(errors, live, own)
-        chi2 = chi_square(some, kit, own, x[live], predict(kit, x[live]))
+        own = errors_of(some, now.x[live], predict(kit, now.x[live]))
+        there = Settled(own, *gone_down(some, kit, own, now.x[live], SETTLE_STEPS, COARSE))
+        now = now.put(live, there)
+        better = np.flatnonzero(there.total < likeliest.total[live])
+        likeliest = likeliest.put(live[better], there.take(better))
+        chi2 = chi_square(some, kit, own, there.x, predict(kit, there.x))
         moving = np.abs(chi2 - before[live]) >= SETTLED
         before[live] = chi2
         live = live[moving]
         if not live.size:
             break
-    return Settled(errors, x, cost)
+    worse = np.flatnonzero(now.total > likeliest.total + GIVE)
+    return now.put(worse, likeliest.take(worse)) if worse.size else now
 
 
 def replace_rows(errors: Errors, rows: np.ndarray, some: Errors) -> Errors:
