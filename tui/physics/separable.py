@@ -23,7 +23,7 @@ from tui.physics.rows import Rows
 NEWTON = 2  # steps of the amplitudes where something is not linear in them
 FAINTEST = 1e-15  # amplitude, in units of the brightest flux
 FAINT = 1e-5  # a star may be this faint beside its companion, each in its brightest band
-ROOT_STEPS = 6
+ROOT_STEPS = 10  # quadratic in the end, but from far off it takes some to get there
 FEW = 100  # rows below which one call for all products is quicker than one for each
 FAR_BELOW = -15.0  # sigma, where Mills' ratio is its own first terms
 
