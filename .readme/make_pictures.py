@@ -48,8 +48,8 @@ class Picture:
 FOUND = (*(("slash", "find"),), *((key, "showing +names like") for key in "0096"))
 PICTURES = (
     Picture("queue", (("n", "of [0-9]+ +order"), ("down", "SM"), ("down", "sigma: "))),
-    Picture("candidate", (("enter", "chance alone"), ("d", r"\[WARM DUST.*adequate +[a-z]"))),
-    Picture("candidate-light", (("enter", "chance alone"), ("b", r"\[BLEND.*adequate +[a-z]")), theme="light"),
+    Picture("candidate", (("enter", "this large"), ("d", r"\[WARM DUST.*adequate +[a-z]"))),
+    Picture("candidate-light", (("enter", "this large"), ("b", r"\[BLEND.*adequate +[a-z]")), theme="light"),
     Picture("split", (*FOUND, ("enter", "SM-0096"), ("v", "choose once more"))),
     Picture("tally", (("t", "WHAT IS LEFT"),)),
 )

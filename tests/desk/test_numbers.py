@@ -82,7 +82,7 @@ def test_held_number_shows_that_it_is_held_and_chosen():
 
 @pytest.mark.parametrize(
     ("p", "words"),
-    [(8e-24, "once in 1e23"), (0.002, "once in 500"), (0.9, "more often than not"), (0.0, "practically never")],
+    [(8e-24, "once in 1e23"), (0.002, "once in 500"), (0.9, "90 %"), (0.0, "practically never")],
 )
 def test_chance_is_told_in_words_at_any_width(p, words):
     for width in (28, 70):

@@ -55,8 +55,9 @@ def test_a_note_keeps_its_line_ends_and_nothing_else():
 
 @pytest.mark.parametrize(
     ("p", "said"),
-    [(1.0, "nearly always"), (0.6, "more often than not"), (0.5, "once in 2"), (0.37, "once in 3"),
-     (0.01, "once in 100"), (1e-7, "once in 1e7"), (0, "practically never")],
+    [(1.0, "100 %"), (0.6, "60 %"), (0.37, "37 %"), (0.01, "once in 100"), (1e-7, "once in 10,000,000"),
+     (3.1e-9, "once in 320,000,000"), (1e-12, "once in 1e12"), (3e-83, "once in 3e82"), (9.9e-300, "once in 1e299"),
+     (1e-310, "practically never"), (5e-324, "practically never"), (0, "practically never")],
 )  # fmt: skip
 def test_chance_in_words(p, said):
     assert text.once_in(p) == said

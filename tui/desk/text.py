@@ -31,6 +31,7 @@ RULING_WORDS = MappingProxyType(
 )
 
 SPECTRUM_POINT = "spectrum:"  # how evidence names a point of the candidate's own spectrum, before its micron
+OFTEN, FEW = 0.1, 1e-9  # p from which a share reads better than odds, and up to which odds need an exponent
 LEAST_P = 1e-300  # doubles end a little below (IEEE 754: 4.9e-324), and their last digits are lost before
 
 # Terminals differ in how wide they draw what these join or select (UAX 11, UTS 51); in columns they are left out.
@@ -179,25 +180,22 @@ def p_text(p: float | None, digits: int = 1) -> str:
 
 
 def once_in(p: float | None) -> str:
-    """How often chance alone does as badly, in words.
+    """How often chance does as badly where the model is right: a share of the cases, or once in how many.
 
-    >>> once_in(0.25), once_in(8e-24), once_in(0.6), once_in(None)
-    ('once in 4', 'once in 1e23', 'more often than not', '--')
+    >>> once_in(0.94), once_in(0.00105), once_in(8e-24), once_in(None)
+    ('94 %', 'once in 950', 'once in 1e23', '--')
     """
     if p is None or math.isnan(p):
         return "--"
     if p < LEAST_P:
         return "practically never"
-    if p > 0.95:
-        return "nearly always"
-    if p > 0.5:
-        return "more often than not"
-    odds = 1 / p
-    if odds < 10:
-        return f"once in {odds:.0f}"
-    if odds < 1e6:
-        return f"once in {thousands(int(float(f'{odds:.1e}')))}"
-    return f"once in 1e{round(math.log10(odds))}"
+    if p >= OFTEN:
+        return f"{100 * min(p, 1.0):.0f} %"
+    if p > FEW:
+        return f"once in {thousands(int(float(f'{1 / p:.1e}')))}"
+    power = math.floor(-math.log10(p))  # of 1/p, which would overflow at the end of the doubles
+    mantissa = round(10 ** (-math.log10(p) - power))
+    return f"once in {f'1e{power + 1}' if mantissa == 10 else f'{mantissa}e{power}'}"
 
 
 def decimal_aligned(numbers: Iterable[str]) -> list[str]:

@@ -137,7 +137,7 @@ def _check_block(walk: Walk, check: str, width: int) -> list[Row]:
         for one in found.fits
     ]
     styles = ["strong", *[""] * (len(lines) - 1)]
-    rows += table(("fit, best first", "chi2", "dof", "p", "chance alone", "BIC"), lines, width, (0, 4), styles)
+    rows += table(("fit, best first", "chi2", "dof", "p", "chi2 so large", "BIC"), lines, width, (0, 4), styles)
     return [*rows, *([*row("   "), *line] for line in param_rows(width - 4, found.best.params)), []]
 
 

@@ -83,7 +83,7 @@ def look_at(check: str, fit: Fit | None) -> tuple[str, ...]:
 
 
 HINTS = {
-    "star": "Scatter, or a common lean?",
+    "star": "Scatter, or all to one side?",
     "instrument": "v shows flags and epochs.",
     "extinction": "Does the blue side bend with it?",
     "blend": "A second source shows first in the bands beside it.",

@@ -5,43 +5,62 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from tui.desk.summary import reason_text
-from tui.desk.text import KEY_OF_CHECK, SHORT_CHECKS, fit, outcome_text, safe, state_text
+from tui.desk.text import KEY_OF_CHECK, SHORT_CHECKS, fit, outcome_text, plural, safe, state_text
 from tui.desk.widgets.rows import Row, Span, fit_row, row_width
 from tui.model import CHECK_TITLES, CHECKS
 from tui.workflow.records import CandidateView
 
+LEAST_NAME = 12  # cells of a name that is cut
 ROOMY = 100  # columns from which checks stand under their full names
 
 
 def title_row(width: int, name: str, odd: str, view: CandidateView | None, right: Sequence[str]) -> Row:
     """Name, why it is odd and where it stands; at the right who looks.
 
+    Where there is no room for all, what stands at the right is said shorter, then where the candidate stands, then
+    why it is odd is left out; name and handle stay, the name cut in its middle where it must be.
+
     Args:
-        right: the same said at less and less length; what leaves the name whole is taken. The name gives way last.
+        right: the same said at less and less length, the handle last.
     """
-    shown = safe(name)
-    middle = [Span(f"   {odd}", "quiet")] if odd else []
-    if view is not None:
-        middle += [Span("   "), Span(standing_words(view), outcome_style(view.outcome))]
-    taken = 1 + row_width(middle) + row_width([Span(shown)])
-    tails = [[Span(f"  {text} ", "quiet")] for text in right if taken + len(text) + 3 <= width]
-    tail = tails[0] if tails else []
-    room = width - 1 - row_width(middle) - row_width(tail)
-    name_span = Span(fit(shown, min(room, row_width([Span(shown)])), cut="middle"), "name")
-    left: Row = [Span(" "), name_span, *middle]
-    return [*fit_row(left, width - row_width(tail)), *tail]
+    shown = Span(safe(name), "name")
+    standings = [[Span("   "), Span(text, outcome_style(view.outcome))] for text in standings_of(view)] if view else [[]]
+    odds = [[Span(f"   {odd}", "quiet")], []] if odd else [[]]
+    tails = [[Span(f"  {text} ", "quiet")] for text in right] or [[]]
+    choices = [(why, standing, tail) for why in odds for standing in standings for tail in tails]
+    needed = 1 + row_width([shown])
+    why, standing, tail = next(
+        (parts for parts in choices if needed + sum(map(row_width, parts)) <= width), (odds[0], standings[-1], tails[-1])
+    )
+    room = width - 1 - sum(map(row_width, (why, standing, tail)))
+    name_span = shown._replace(text=fit(shown.text, min(row_width([shown]), max(LEAST_NAME, room)), cut="middle"))
+    return [*fit_row([Span(" "), name_span, *why, *standing], width - row_width(tail)), *tail]
 
 
-def standing_words(view: CandidateView) -> str:
-    """Outcome and the reader's own progress, or why it is pending."""
+def standings_of(view: CandidateView) -> list[str]:
+    """Outcome and the reader's own progress, or why it is pending, at less and less length."""
+    outcome = outcome_text(view.outcome)
     if not view.seal_open:
-        count = len(view.own)
-        return f"{outcome_text(view.outcome)}" + (
-            f", {count} of {count + len(view.to_rule)} ruled" if count or view.to_rule else ""
-        )
-    reason = f": {safe(reason_text(view.pending_reason))}" if view.pending_reason else ""
-    reason = reason or (f" by {safe(reason_text(view.cause))}" if view.cause else "")
-    return outcome_text(view.outcome) + reason
+        needed = [check for check, state in view.states.items() if state != "nodata"]
+        ruled = len(set(needed) - set(view.to_rule))
+        return [f"{outcome}, {ruled} of {len(needed)} ruled", outcome] if view.own or view.to_rule else [outcome]
+    if view.pending_reason:
+        reason = safe(reason_text(view.pending_reason))
+        return [f"{outcome}: {reason}", f"{outcome}: {counted_reason(view.pending_reason)}", outcome]
+    return [f"{outcome} by {safe(reason_text(view.cause))}", outcome] if view.cause else [outcome]
+
+
+def counted_reason(reason: str) -> str:
+    """Why a candidate is pending, the checks counted instead of named.
+
+    >>> counted_reason("open:star;open:blend;split:dust;nodata:extinction")
+    '2 checks open, 1 split, 1 without data'
+    """
+    states = [piece.partition(":")[0] for piece in reason.split(";") if piece]
+    words = {state: {"nodata": "without data"}.get(state, safe(state)) for state in dict.fromkeys(states)}
+    said = [f"{states.count(state)} {word}" for state, word in words.items()]
+    first = plural(states.count(states[0]), "check") if states else ""
+    return ", ".join([f"{first} {words[states[0]]}", *said[1:]]) if states else ""
 
 
 def outcome_style(outcome: str) -> str:

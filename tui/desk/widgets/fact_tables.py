@@ -91,7 +91,7 @@ def _epochs(facts: Mapping[str, Any], width: int) -> list[Row]:
          once_in(one.get("p")))
         for band, one in facts["epochs"].items()
     ]  # fmt: skip
-    return table(("band", "epochs", "scatter, %", "p constant", "chance alone"), lines, width, texts=(0, 4))
+    return table(("band", "epochs", "scatter, %", "p constant", "so much if constant"), lines, width, texts=(0, 4))
 
 
 def _apertures(facts: Mapping[str, Any], width: int) -> list[Row]:

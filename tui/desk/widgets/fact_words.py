@@ -7,7 +7,7 @@ from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from typing import Any
 
-from tui.desk.text import number, once_in, p_text, safe, short_band, signed
+from tui.desk.text import OFTEN, number, once_in, p_text, safe, short_band, signed
 from tui.desk.widgets.numbers import value_and_error
 from tui.model import Param
 from tui.workflow.vocabulary import facts as known_facts
@@ -70,7 +70,6 @@ FACTS: Mapping[str, FactName] = {
     "p": FactName("p, at most", "p"),
     "at_most": FactName("chi2 is an upper bound"),
     "chi2": FactName("chi2", ".1f"),
-    "chi2_found": FactName("chi2 of the mixture below", ".1f"),
     "family": FactName("made of"),
     "stands": FactName("a dip stands"),
     "standing_events": FactName("dips that stand"),
@@ -83,7 +82,7 @@ FACTS: Mapping[str, FactName] = {
 # Told together with another fact, in a table, or as a sentence above the list.
 TOLD_ELSEWHERE = frozenset(
     "odd_pull over_luminosity_error c_star_sigma c_star_significance spectrum_dof spectrum_p slope_low slope_high "
-    "slope_is_limit chance_mag carrier_bands carrier_pull match_catalogue match_separation match_p sentence "
+    "slope_is_limit chi2_found chance_mag carrier_bands carrier_pull match_catalogue match_separation match_p sentence "
     "limit_temperature_k limit_fractional_luminosity neighbour_leaks matches centroid_shifts flags doubts epochs "
     "apertures witness parts events".split()
 )
@@ -134,8 +133,8 @@ def words(value: Any) -> str:
 
 
 def chance_words(p: float) -> str:
-    """A chance probability, and how often that is."""
-    return f"{p_text(p, 2)}, {once_in(p)}"
+    """A chance probability and, where it is small, how often that is."""
+    return p_text(p, 2) if p >= OFTEN else f"{p_text(p, 2)}, {once_in(p)}"
 
 
 def _pair(key: str, value: Any) -> Pair:
@@ -164,6 +163,14 @@ def _measured(value: Any, error: Any, unit: str) -> str:
 def _with_error(value: float, error: float | None, unit: str) -> str:
     error = math.nan if error is None else error
     return "".join((*value_and_error(Param(value, value - error, value + error)), f" {unit}" if unit else ""))
+
+
+def _chi2(facts: Mapping[str, Any]) -> Pair:
+    """A bound and what the search found, which are two things; where only one is known, that."""
+    least, found = f"{facts['chi2']:.1f}", facts.get("chi2_found")
+    if is_empty(found):
+        return "chi2", least
+    return "chi2", f"no mixture can undercut {least}; the nearest found has {found:.1f}"
 
 
 def _odd_band(facts: Mapping[str, Any]) -> Pair:
@@ -203,6 +210,7 @@ def _carrier(facts: Mapping[str, Any]) -> Pair:
 
 
 TOGETHER: Mapping[str, Callable[[Mapping[str, Any]], Pair]] = {
+    "chi2": _chi2,
     "odd_band": _odd_band,
     "over_luminosity": _over_luminosity,
     "c_star": _c_star,

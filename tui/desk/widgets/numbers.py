@@ -97,11 +97,16 @@ def statistic_rows(width: int, fit: Fit, beside: Beside | None) -> list[Row]:
 
 
 def chance_rows(width: int, fit: Fit) -> list[Row]:
-    """What p means, in words."""
+    """What p means, in words: how often chance makes so large a chi-square where the model is right."""
     if fit.p is None or math.isnan(fit.p):
         return []
     odds = once_in(fit.p)
-    said = (f"chance alone does this {odds}", f"chance alone: {odds}", f"chance: {odds}")
+    said = (
+        f"if this model is right, a chi-square this large: {odds}",
+        f"if right, a chi2 this large: {odds}",
+        f"chi2 this large: {odds}",
+        f"so large: {odds}",
+    )
     return [row(next((text for text in said if len(text) <= width), said[-1]))]
 
 
