@@ -129,6 +129,7 @@ def _in_blocks(
     bounds: tuple[FloatArray, FloatArray],
     steps: int,
     tolerance: float,
+    held: Held | None = None,
 ) -> Walked:
     """Walk from `theta` (P, R), each row with the data of its owner; those with limits, which cost more, apart."""
     dtype, count = theta.dtype, len(tables.sources)
@@ -139,7 +140,8 @@ def _in_blocks(
     for some in (group[first : first + BLOCK] for group in groups for first in range(0, group.size, BLOCK)):
         own = owner[some]
         edges = tuple(edge[:, own] for edge in bounds)
-        at = walk(take(rows, own), tables, theta[:, some], edges, steps, tolerance)
+        stays = None if held is None else held.take(some)
+        at = walk(take(rows, own), tables, theta[:, some], edges, steps, tolerance, stays)
         for name in ("theta", "cost", "promise", "amplitude", "ln_top"):
             getattr(found, name)[..., some] = getattr(at, name)
     np.nan_to_num(found.cost, copy=False, nan=np.inf)
@@ -183,16 +185,15 @@ def held_down(
         held: (R, 8) bool.
     """
     tables = tables_of(kit, np.float64)
-    rows = take(rows_of(problem, errors, kit.model.bound_pair, np.float64), owner)
+    rows = rows_of(problem, errors, kit.model.bound_pair, np.float64)
     columns = list(tables.columns)
-    low, high = (np.ascontiguousarray(edge[owner][:, columns].T) for edge in kit.bounds(problem.av_max))
+    bounds = tuple(np.ascontiguousarray(edge[:, columns].T) for edge in kit.bounds(problem.av_max))
     sources = [column for column in (A2, A3) if column in kit.model.free]
     stays = Held(
         np.ascontiguousarray(held[:, columns].T),
         np.where(held[:, LN_S], x[:, LN_S], np.nan),
         np.ascontiguousarray(np.where(held[:, sources], x[:, sources], np.nan).T),
     )
-    theta = np.clip(np.ascontiguousarray(x[:, columns].T), low, high)
-    at = walk(rows, tables, theta, (low, high), steps, tolerance, stays)
-    found = parameters(rows.unit_jy, tables, at.theta, at.amplitude, at.ln_top)
+    at = _in_blocks(rows, tables, owner, np.ascontiguousarray(x[:, columns].T), bounds, steps, tolerance, stays)
+    found = parameters(rows.unit_jy[owner], tables, at.theta, at.amplitude, at.ln_top)
     return np.where(held, x, found), at.cost
