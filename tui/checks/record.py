@@ -4,12 +4,13 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
+from functools import cache
 
 import numpy as np
 
 from tui.checks.spectra import parts
 from tui.model import Fit, FloatArray, Param, Settings
-from tui.physics.composite import A2, A3, AV, LN_S, LN_T, RV, X2, X3, Kit
+from tui.physics.composite import A2, A3, AV, LN_S, LN_T, RV, X2, X3, Kit, Model
 from tui.physics.constants import L_SUN, PARSEC, T_EQUILIBRIUM_1AU_K
 from tui.physics.fitting import FitBatch
 from tui.physics.planck import surface_flux
@@ -47,7 +48,12 @@ class Column:
 
 def columns_of(kit: Kit) -> dict[int, Column]:
     """Reported name, unit and scale of each free column of a model."""
-    sources = kit.model.sources
+    return _columns(kit.model)
+
+
+@cache
+def _columns(model: Model) -> dict[int, Column]:
+    sources = model.sources
     pair = bool(sources) and sources[0] != "dust"
     table = {
         LN_T: Column("teff1" if pair else "teff", "K", _exp),
@@ -63,7 +69,7 @@ def columns_of(kit: Kit) -> dict[int, Column]:
     elif pair:
         table[X2] = Column("slope", "", _itself) if sources[0] == "power" else Column("teff2", "K", _exp)
         table[A2] = Column("radius_ratio", "", _root) if sources[0] == "compact" else Column("flux_ratio", "", _itself)
-    return {column: table[column] for column in kit.model.free}
+    return {column: table[column] for column in model.free}
 
 
 def fits_of(batch: FitBatch, *, with_intervals: bool = True, held: np.ndarray | None = None) -> list[Fit]:

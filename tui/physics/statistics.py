@@ -24,6 +24,8 @@ def ln_chi2_tail(chi2: ArrayLike, dof: ArrayLike) -> FloatArray:
     a, x = np.broadcast_arrays(np.asarray(dof, float) / 2, np.maximum(np.asarray(chi2, float), 0.0) / 2)
     plain = gammaincc(a, x)
     far = plain < 1e-290
+    if not far.any():
+        return np.log(plain)
     fraction = np.ones_like(x)
     safe = np.where(far, x, 1.0)
     for n in range(60, 0, -1):
@@ -47,11 +49,16 @@ def adequate(chi2: float, points: int, dof: int, p_min: float) -> bool | None:
 
     A chi-square that even no free parameter could excuse, Q(points/2, chi2/2) < p_min, is refused whatever dof.
     """
-    if points > 0 and float(chi2_tail(chi2, points)) < p_min:
+    if points > 0 and one_tail(chi2, points) < p_min:
         return False
     if dof <= 0:
         return None
-    return bool(chi2_tail(chi2, dof) >= p_min)
+    return bool(one_tail(chi2, dof) >= p_min)
+
+
+def one_tail(chi2: float, dof: float) -> float:
+    """As chi2_tail, of single numbers and dof > 0, which is ten times quicker."""
+    return float(gammaincc(0.5 * dof, 0.5 * max(chi2, 0.0)))
 
 
 def aic(minus2lnl: ArrayLike, k: ArrayLike) -> FloatArray:
