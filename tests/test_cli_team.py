@@ -13,6 +13,7 @@ from tui.cli.group import cli
 from tui.model import CHECKS, Candidate, Evidence, Fit, Measurement, digest
 from tui.store import connect, waiting
 from tui.store.candidates import save_candidates
+from tui.store.connect import open_queue
 from tui.store.evidence import save_evidence
 from tui.store.records import LoadRecord
 from tui.workflow.session import Session
@@ -63,7 +64,7 @@ def test_controls_leave_the_counts_and_give_rates(queue, tmp_path):
     (tmp_path / "truth.csv").write_text("name,nature\nSM-1,dust\n")
     rule(queue, "heron", "SM-1", "dust", "explains")
     text = run("tally", queue, "--controls", str(tmp_path / "truth.csv")).stdout
-    assert "1 controls are left out" in text and "1/1" in text
+    assert "1 control is left out where candidates are counted" in text and "1/1" in text
     assert run("tally", queue, "--controls", str(tmp_path / "none.csv")).exit_code == 2
 
 
@@ -72,7 +73,7 @@ def test_copies_worked_on_apart_are_gathered_once(queue, tmp_path):
     assert run("audit", queue, "--backup", copy).exit_code == 0
     rule(copy, "plover", "SM-2", "dust", "explains")
     rule(queue, "heron", "SM-2", "dust", "explains")
-    assert "1 rulings" in run("gather", queue, copy).stdout
+    assert "1 ruling" in run("gather", queue, copy).stdout
     assert "nothing new" in run("gather", queue, copy).stdout
     outcomes = json.loads(run("tally", queue, "--json").stdout)["outcomes"]
     assert outcomes["explained"]["names"] == ["SM-2"]
@@ -81,13 +82,36 @@ def test_copies_worked_on_apart_are_gathered_once(queue, tmp_path):
 def test_two_people_under_one_handle_are_refused_with_the_mend(queue, tmp_path):
     other = str(tmp_path / "other.db")
     with closing(connect.open_queue(other, create=True)) as connection:
-        save_candidates(connection, [LoadRecord(Candidate("SM-9"), "t")], UTC)
+        save_candidates(connection, [LoadRecord(Candidate("SM-1"), "t")], UTC)
     run("join", other, "heron")
     refused = run("gather", queue, other)
     assert refused.exit_code == 2 and "--rename heron=" in refused.stderr
     assert run("gather", queue, other, "--rename", "heron=crane").exit_code == 0
     with Session.open(queue) as session:
         assert [one.handle for one in session.reviewers()] == ["crane", "heron", "plover"]
+
+
+def test_an_unrelated_queue_is_taken_in_only_where_that_is_meant(queue, tmp_path):
+    other = str(tmp_path / "other.db")
+    (tmp_path / "t.csv").write_text("name,J_mag,J_err\nZ-1,8,0.02\n")
+    run("load", other, str(tmp_path / "t.csv"))
+    before = run("audit", queue).stdout
+    refused = run("gather", queue, other)
+    assert refused.exit_code == 2 and "hardly a colleague's copy" in refused.stderr
+    assert run("audit", queue).stdout == before
+    taken = run("gather", queue, other, "--unrelated")
+    assert taken.exit_code == 0 and "1 candidate," in taken.stdout and "None of its candidates was in" in taken.stdout
+
+
+def test_an_empty_queue_gathers_any(tmp_path, queue):
+    open_queue(str(tmp_path / "empty.db"), create=True).close()
+    taken = run("gather", str(tmp_path / "empty.db"), queue)
+    assert taken.exit_code == 0 and "3 candidates" in taken.stdout and "None of" not in taken.stdout
+
+
+def test_export_looks_past_every_seal_and_so_knows_no_sealed(queue, tmp_path):
+    refused = run("export", queue, str(tmp_path / "list.csv"), "--outcome", "sealed")
+    assert refused.exit_code == 2 and "'sealed' is not one of" in refused.stderr
 
 
 def test_gathering_a_queue_into_itself_is_refused(queue):

@@ -21,6 +21,7 @@ unresolved_option = click.option(
     "--unresolved", type=click.Choice(CHECKS), help="Only candidates on which this check is open or split."
 )
 outcome_option = click.option("--outcome", type=click.Choice((*OUTCOMES, "sealed")), help="Only this outcome.")
+settled_option = click.option("--outcome", type=click.Choice(OUTCOMES), help="Only this outcome.")
 controls_option = click.option(
     "--controls", type=click.Path(), metavar="TRUTH", help="Table of controls: name, nature."
 )

@@ -37,12 +37,13 @@ def set_command(queue: str, name: str | None, value: str | None, handle: str | N
 @queue_argument
 @click.argument("others", nargs=-1, required=True, type=click.Path(), metavar="OTHER...")
 @click.option("--rename", multiple=True, callback=pairs, metavar="OLD=NEW", help="Another handle for theirs.")
-def gather_command(queue: str, others: tuple[str, ...], rename: dict[str, str]) -> int:
+@click.option("--unrelated", is_flag=True, help="Take in a queue of other candidates too.")
+def gather_command(queue: str, others: tuple[str, ...], rename: dict[str, str], unrelated: bool) -> int:
     """Take in what colleagues ruled in their own copies; order and repetition do not matter."""
     from tui.cli.printing import line
     from tui.workflow.gathering import gather_all
 
-    for done in gather_all(queue, others, rename):
+    for done in gather_all(queue, others, rename, unrelated=unrelated):
         line(done.sentence())
     return 0
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import click
 
-from tui.cli.arguments import controls_option, json_option, outcome_option, queue_argument, unresolved_option
+from tui.cli.arguments import controls_option, json_option, queue_argument, settled_option, unresolved_option
 
 
 @click.command("tally")
@@ -29,7 +29,7 @@ def tally_command(queue: str, controls: str | None, as_json: bool) -> int:
 @click.command("export")
 @queue_argument
 @click.argument("out", type=click.Path())
-@outcome_option
+@settled_option
 @unresolved_option
 @controls_option
 @click.option("--force", is_flag=True, help="Replace OUT if it exists.")

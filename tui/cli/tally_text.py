@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING, Any
 
 from tui.cli.printing import NOTHING, figure, heading, line, table
 from tui.model import CHECK_TITLES, CHECKS, OUTCOMES
+from tui.workflow.counting import counted
 
 if TYPE_CHECKING:
     from tui.workflow.tally_record import ReviewerLine, Tally
@@ -18,7 +19,8 @@ def print_tally(found: Tally) -> None:
     line(f"The team's tally, past every seal. {found.utc[:16].replace('T', ' ')} UTC")
     line(f"Quorum {found.quorum} sure rulings, of which {figure(100 * found.agree_share, 3)} % must agree.")
     if found.controls:
-        line(f"{found.controls} controls are left out of every count.")
+        left = f"{counted(found.controls, 'controls')} {'is' if found.controls == 1 else 'are'} left out where candidates"
+        line(f"{left} are counted; agreement and what each reviewer ruled keep them.")
     print_progress(found)
     print_trust(found)
     print_survivors(found)
@@ -48,7 +50,7 @@ def print_trust(found: Tally) -> None:
     for text in trust_sentences(found.agreement):
         line(text)
     print()
-    headings = ("reviewer", "rulings", "candidates", "done", "last ruling (UTC)", "hits", "false")
+    headings = ("reviewer", "rulings", "candidates", "done", "last ruling (UTC)", "nature found", "wrongly explained")
     shown = len(headings) if found.controls else len(headings) - 2  # rates need controls
     table(headings[:shown], (reviewer_cells(one)[:shown] for one in found.reviewers), numbers=(1, 2, 3))
 

@@ -56,19 +56,28 @@ INPUTS: Mapping[str, tuple[str, str]] = {
     ),
 }
 
+UNRELATED = (
+    "None of the candidates of {other} is in {queue}, so it is hardly a colleague's copy; nothing was gathered. "
+    "To take it in all the same: --unrelated."
+)
+
 
 def gather(
     connection: sqlite3.Connection,
     other_path: str | os.PathLike[str],
     rename: Mapping[str, str] | None = None,
+    *,
+    unrelated: bool = True,
 ) -> GatherReport:
     """Take in another queue's candidates, measurements, reviewers, settings, rulings and the evidence they cite.
 
     Args:
         rename: handle in the other queue -> its handle here, for two people who chose the same one.
+        unrelated: also take in a queue that has no candidate in common with this one.
     Raises:
         HandleError: two reviewers under one handle, and no `rename` for it.
-        StoreError: the other file is no queue, newer, damaged, or its log was edited; nothing is taken in then.
+        StoreError: the other file is no queue, newer, damaged, or its log was edited, or it is unrelated;
+            nothing is taken in then.
     """
     path = os.fspath(other_path)
     if os.path.exists(path) and os.path.samefile(path, getattr(connection, "queue_path", "") or path + "/"):
@@ -76,6 +85,9 @@ def gather(
     with private_copy(path) as copy, attached(connection, copy), immediate(connection):
         refuse(path, wrong_times(connection, "other"))
         refuse_conflicts(connection, path)
+        is_unrelated = shares_nothing(connection)
+        if is_unrelated and not unrelated:
+            raise StoreError(UNRELATED.format(other=path, queue=getattr(connection, "queue_path", "")))
         people = take_people(connection, path, rename or {})
         settings_before = newest(connection)
         settings_taken = take_rows(connection, "setting", "id, name, value, utc, reviewer_id", "id")
@@ -98,6 +110,7 @@ def gather(
             evidence=evidence,
             renamed=tuple(sorted((rename or {}).items())),
             affected=names_of(connection, sorted(changed)),
+            unrelated=is_unrelated,
         )
 
 
@@ -160,6 +173,15 @@ def attached(connection: sqlite3.Connection, copy: str) -> Iterator[None]:
         yield
     finally:
         connection.execute("DETACH DATABASE other")
+
+
+def shares_nothing(connection: sqlite3.Connection) -> bool:
+    """Whether both queues have candidates, and none in common."""
+    query = (
+        "SELECT EXISTS (SELECT 1 FROM candidate) AND EXISTS (SELECT 1 FROM other.candidate) AND NOT EXISTS "
+        "(SELECT 1 FROM other.candidate AS o JOIN candidate AS c ON c.name = o.name)"
+    )
+    return bool(connection.execute(query).fetchone()[0])
 
 
 def refuse_conflicts(connection: sqlite3.Connection, path: str) -> None:

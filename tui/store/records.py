@@ -190,6 +190,7 @@ class GatherReport:
     evidence: int = 0
     renamed: tuple[tuple[str, str], ...] = ()
     affected: tuple[str, ...] = ()  # candidates whose inputs changed, so that evidence must be computed again
+    unrelated: bool = False  # both had candidates, and none in common
 
 
 @dataclass(frozen=True, slots=True)
