@@ -6,10 +6,12 @@ import os
 import subprocess
 import sys
 from contextlib import closing
+from dataclasses import replace
 
 import pytest
 from click.testing import CliRunner
 
+from tui.cli.dossier import adequacy_words
 from tui.cli.group import cli
 from tui.model import CHECKS, Candidate, Evidence, Fit, Measurement, digest
 from tui.store.candidates import save_candidates
@@ -152,3 +154,26 @@ def test_assessing_an_empty_queue_says_that_it_is_empty(tmp_path):
     open_queue(str(tmp_path / "q.db"), create=True).close()
     result = run("assess", str(tmp_path / "q.db"))
     assert (result.exit_code, result.stdout) == (0, f"{tmp_path / 'q.db'} holds no candidates.\n")
+
+
+@pytest.mark.parametrize(
+    ("fact", "words"),
+    [
+        ("dip_stands", "not adequate: the fit stands, but a dip is unexplained"),
+        ("spectrum_misfits", "not adequate: the fit stands, but the star's own spectrum misfits"),
+        ("nothing", "not adequate: no fit explains the data"),
+    ],
+)
+def test_what_speaks_against_a_standing_fit_is_named(fact, words):
+    fit = Fit("star", 3.3, 8, 0.92, 8.0, 9.0, {}, {"W3": 0.9})
+    made = Evidence("star", 1, False, (fit,), (), {fact: True}, "d", ("J", "W3"))
+    assert adequacy_words(made, 0.01) == words
+    refused = replace(made, fits=(replace(fit, p=1e-6),))
+    assert adequacy_words(refused, 0.01) == "not adequate: no fit explains the data"
+
+
+def test_story_has_a_heading_for_every_column(queue):
+    lines = run("story", queue, "SM-1").stdout.splitlines()
+    assert lines[0].split("  ")[-1].strip() == "bands, ruling, note"
+    measured = next(text for text in lines if "measured" in text)
+    assert measured.index("J W3") == lines[0].index("bands, ruling, note")

@@ -74,7 +74,7 @@ def test_the_metadata_say_how_the_list_was_made(ruled, tmp_path):
 
 
 def test_what_is_missing_is_said(ruled, tmp_path):
-    assert "1 of them have no evidence" in export(ruled, str(tmp_path / "a.csv")).sentence()
+    assert "1 of them has no evidence" in export(ruled, str(tmp_path / "a.csv")).sentence()
 
 
 def test_a_refused_export_does_no_work(ruled, tmp_path):

@@ -43,10 +43,12 @@ def practise(thin: bool) -> int:
         return 0
     from tui.cli.ruling import run_desk
     from tui.desk.practice_desk import PracticeDesk
-    from tui.workflow.config import read_config
+    from tui.workflow.config import named_config, read_config
 
     config = read_config()
-    return run_desk(PracticeDesk(thin=thin, theme=config.theme, keys=config.keys))
+    with named_config():
+        desk = PracticeDesk(thin=thin, theme=config.theme, keys=config.keys)
+    return run_desk(desk)
 
 
 def summary_of_a_copy() -> int:

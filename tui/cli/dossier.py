@@ -10,6 +10,7 @@ from tui.workflow.lookalikes import LookAlikes
 from tui.workflow.showing import Dossier
 
 ADEQUATE = {True: "adequate: some fit explains the data", False: "not adequate: no fit explains the data"}
+AGAINST = {"dip_stands": "a dip is unexplained", "spectrum_misfits": "the star's own spectrum misfits"}
 BOUND = {True: "not refused", False: "refused", None: "not given"}
 MOST_ALIKE = 10  # look-alikes listed
 UNTESTABLE = "untestable with these data"
@@ -91,12 +92,20 @@ def oddness_sentence(oddness: Mapping[str, object]) -> str:
     return f"Oddness: {figure(oddness['sigma'], 3)} sigma, most by {oddness['band']} ({signed(oddness['pull'])})."
 
 
-def adequacy_words(evidence: Evidence | None) -> str:
-    """The evidence's own state in words."""
+def adequacy_words(evidence: Evidence | None, p_min: float = 0.0) -> str:
+    """The evidence's own state in words.
+
+    Args:
+        p_min: from which a fit stands, for evidence that something else than its fits makes not adequate.
+    """
     if evidence is None:
         return "no evidence yet"
     if evidence.kind == "mixture":
         return BOUND[evidence.adequate]
+    if evidence.adequate is False and any(fit.p >= p_min > 0 for fit in evidence.fits):
+        against = [words for name, words in AGAINST.items() if evidence.facts.get(name)]
+        if against:
+            return f"not adequate: the fit stands, but {' and '.join(against)}"
     return UNTESTABLE if evidence.adequate is None else ADEQUATE[evidence.adequate]
 
 
@@ -122,7 +131,7 @@ def measurement_cells(one: Measurement, pulls: Mapping[str, float]) -> tuple[str
 def print_check(found: Dossier, check: str) -> None:
     """One check: its state, its evidence's, its fits and cautions."""
     evidence = found.evidence.get(check)
-    heading(f"{CHECK_TITLES[check]}: {found.view.states.get(check, 'todo')}; {adequacy_words(evidence)}")
+    heading(f"{CHECK_TITLES[check]}: {found.view.states.get(check, 'todo')}; {adequacy_words(evidence, found.p_min)}")
     if check in found.view.stale:
         line(f"stale: {found.view.stale[check]}")
     if evidence is not None:

@@ -37,7 +37,7 @@ SHORT_STATES = {  # sign and word together: the sign compares the model with the
     "split": "/split",
     "open": ":open",
     "todo": ".todo",
-    "nodata": "-nodat",
+    "nodata": "-nodata",
     "sealed": ".seal",
 }
 LIST_HEADINGS = ("name", "oddness", "odd_band", "odd_pull", *CHECKS, "outcome", "ruled", "to_rule")
@@ -55,7 +55,7 @@ def list_command(queue, handle, unresolved, outcome, sort, only_next, share) -> 
     """The queue as text: tab-separated with whole words when it goes to a file or a program.
 
     At a terminal: =expl explains, <short falls short, ~uncl unclear, /split split, :open open, .todo not ruled by
-    you, -nodat untestable. A trailing * marks a stale ruling. Without --as, states and outcome read sealed.
+    you, -nodata untestable. A trailing * marks a stale ruling. Without --as, states and outcome read sealed.
     """
     from tui.cli.printing import line, remark
     from tui.workflow.session import READ_ONLY
@@ -155,7 +155,7 @@ def show_command(queue: str, name: str, handle: str | None, as_json: bool) -> in
 @as_option
 def story_command(queue: str, name: str, handle: str | None) -> int:
     """What happened to a candidate, in time order; others' rulings only where your seal is open."""
-    from tui.cli.printing import line, remark, table
+    from tui.cli.printing import NOTHING, line, remark, table
 
     with reader(queue, handle, write=False) as session:
         lines = session.story(name)
@@ -164,6 +164,6 @@ def story_command(queue: str, name: str, handle: str | None) -> int:
     if not lines:
         line("Nothing has happened to it yet.")
     else:
-        rows = [(one.utc[:19] + "Z", one.who, one.what, one.check, one.text) for one in lines]
-        table(("when (UTC)", "who", "what", "check", ""), rows)
+        rows = [(one.utc[:19] + "Z", one.who, one.what, one.check or NOTHING, one.text) for one in lines]
+        table(("when (UTC)", "who", "what", "check", "bands, ruling, note"), rows)
     return 0

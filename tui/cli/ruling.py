@@ -80,8 +80,11 @@ def has_terminal() -> bool:
 def open_desk(session, *, thin: bool, theme: str | None, keys) -> int:
     """Run the desk until the reviewer leaves; its return code is the exit status."""
     from tui.desk.app import Desk
+    from tui.workflow.config import named_config
 
-    return run_desk(Desk(session, thin=thin, theme=theme, keys=keys))
+    with named_config():
+        desk = Desk(session, thin=thin, theme=theme, keys=keys)
+    return run_desk(desk)
 
 
 def run_desk(desk: Desk) -> int:

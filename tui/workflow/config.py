@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 import os
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping
+from contextlib import contextmanager
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
-from tui.errors import TableError, reason_of
+from tui.errors import SettingError, TableError, reason_of
 
 NAMES = ("handle", "theme", "keys")
 
@@ -20,6 +21,17 @@ class Config:
     handle: str | None = None
     theme: str | None = None
     keys: Mapping[str, str] = field(default_factory=dict)  # id of an action, such as candidate.explains -> key
+
+
+@contextmanager
+def named_config() -> Iterator[None]:
+    """Within it a refused theme or key says in which file it stands."""
+    try:
+        yield
+    except SettingError as error:
+        if str(config_path()) in error.reason:
+            raise
+        raise TableError(str(config_path()), f"{error.setting}: {error.reason}") from error
 
 
 def config_path() -> Path:

@@ -21,6 +21,7 @@ from tui.store.settings import read_settings
 from tui.store.team import team_standing
 from tui.workflow.clock import utc_now
 from tui.workflow.controls import read_truth
+from tui.workflow.counting import counted
 from tui.workflow.export_columns import columns
 from tui.workflow.export_files import refuse_existing, write_list, writer_for
 from tui.workflow.export_row import Cells, VettedRow
@@ -61,9 +62,9 @@ class Exported:
 
     def sentence(self) -> str:
         """One line for a person."""
-        text = f"Wrote {self.rows} candidates to {self.path}."
+        text = f"Wrote {counted(self.rows, 'candidates')} to {self.path}."
         if self.without_evidence:
-            text += f" {self.without_evidence} of them have no evidence yet; plainlight assess computes it."
+            text += f" {self.without_evidence} of them {'has' if self.without_evidence == 1 else 'have'} no evidence yet; plainlight assess computes it."
         return text
 
 

@@ -15,6 +15,7 @@ from tui.store.connect import open_queue, read_header
 from tui.store.records import LoadCounts, LoadRecord
 from tui.workflow.basis import keep_bands, read_basis
 from tui.workflow.clock import utc_now
+from tui.workflow.counting import counted
 from tui.workflow.file_errors import named
 from tui.workflow.safe_text import safe
 from tui.workflow.vocabulary import packaged_vocabulary
@@ -64,8 +65,9 @@ class Loaded:
 
     def sentence(self) -> str:
         """One line for a person."""
-        new = [f"{self.counts[name]} {word}" for name, word in WORDS.items() if self.counts[name]]
-        known = f"{self.counts['same']} measurements were known" if self.counts["same"] else ""
+        same = self.counts["same"]
+        new = [counted(self.counts[name], word) for name, word in WORDS.items() if self.counts[name]]
+        known = f"{counted(same, 'measurements')} {'was' if same == 1 else 'were'} known" if same else ""
         if self.is_unmade:
             return f"{self.path} was not made: there is nothing to put into it."
         if not new and not self.found:

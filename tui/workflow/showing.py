@@ -29,6 +29,7 @@ class Dossier:
     oddness: Mapping[str, Any]  # sigma, band, pull; empty where there is no evidence for `star`
     measurements: tuple[Measurement, ...]  # by wavelength
     look_alikes: LookAlikes | None = None  # None where they were not looked for, or no pulls are known
+    p_min: float = 0.01  # from which a fit stands, by the queue's settings
     drawn: Drawn | None = None  # fluxes drawn from the nearest mixture; None where mixtures are not refused
 
     def as_dict(self) -> dict[str, Any]:
@@ -79,7 +80,7 @@ def dossier(session: Session, name: str) -> Dossier:
     alike = session.look_alikes(name, evidence.get("star")) if session.candidate_count() <= LONG_QUEUE else None
     oddness = oddness_dict(evidence.get("star"))
     drawn = drawn_of(candidate, evidence.get("mixture"), session.basis)
-    return Dossier(candidate, evidence, session.view(name), oddness, tuple(measured), alike, drawn)
+    return Dossier(candidate, evidence, session.view(name), oddness, tuple(measured), alike, session.settings.p_min, drawn)
 
 
 def drawn_of(candidate: Candidate, mixture: Evidence | None, basis: Basis) -> Drawn | None:
