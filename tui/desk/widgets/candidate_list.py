@@ -18,6 +18,7 @@ from textual.scroll_view import ScrollView
 from textual.strip import Strip
 
 from tui.desk.text import fit, wrap
+from tui.desk.widgets.late_styles import LateStyles
 from tui.desk.widgets.queue_columns import Cell, columns_for, row_cells
 
 if TYPE_CHECKING:
@@ -32,13 +33,12 @@ STYLES = (
 )  # fmt: skip
 
 
-class CandidateList(ScrollView, can_focus=True):
+class CandidateList(LateStyles, ScrollView, can_focus=True):
     """The queue's rows in a given order, with one of them chosen.
 
     `fetch` is called on the interface's thread for the lines in sight only and must be quick.
     """
 
-    COMPONENT_CLASSES = {f"candidate-list--{name}" for name in (*STYLES, "cursor")}
     cursor: reactive[int] = reactive(0, repaint=False)
 
     @dataclass

@@ -9,10 +9,10 @@ from rich.cells import cell_len
 from textual import events
 from textual.content import Content
 from textual.message import Message
-from textual.widget import Widget
 
 from tui.desk.queue_view import QueueView
 from tui.desk.text import KEY_OF_CHECK, fit, safe, thousands
+from tui.desk.widgets.late_styles import LateStyles
 from tui.desk.widgets.queue_columns import Cell, columns_for, count_cells, head_cells
 from tui.model import CHECKS
 
@@ -34,10 +34,9 @@ class HeadFacts:
     letters: Mapping[str, str] = field(default_factory=lambda: KEY_OF_CHECK)  # the key that filters by each check
 
 
-class HeadLines(Widget):
+class HeadLines(LateStyles):
     """Draws lines made of cells in named styles."""
 
-    COMPONENT_CLASSES = {f"head--{name}" for name in HEAD_STYLES}
     facts = HeadFacts()
 
     def show(self, facts: HeadFacts) -> None:
@@ -112,7 +111,7 @@ class ColumnHead(HeadLines):
     def on_click(self, event: events.Click) -> None:
         """A click in a check's column filters by it."""
         columns = columns_for(self.size.width)
-        start = 2 + columns.name + columns.oddness + columns.band + columns.pull + 2 * columns.gap
+        start = columns.before_checks
         place = (event.x - start) // columns.check
         if event.x >= start and place < len(CHECKS):
             self.post_message(self.CheckClicked(CHECKS[place]))

@@ -9,8 +9,8 @@ from rich.style import Style
 from textual.geometry import Size
 from textual.selection import Selection
 from textual.strip import Strip
-from textual.widget import Widget
 
+from tui.desk.widgets.late_styles import LateStyles
 from tui.desk.widgets.rows import Row, Span, fit_row, fit_rows, row_text
 
 Draw = Callable[[int, int], list[Row]]
@@ -25,10 +25,9 @@ NAMES = (
 )  # fmt: skip
 
 
-class RowsView(Widget):
+class RowsView(LateStyles):
     """Rows made anew for each size; `rows_from` draws, `scroll_rows` moves where there are more than fit."""
 
-    COMPONENT_CLASSES = {f"rows--{name}" for name in NAMES}
     ALLOW_SELECT = True
 
     def __init__(self, draw: Draw | None = None, *, scrolls: bool = False, id: str | None = None) -> None:
@@ -127,7 +126,6 @@ class RowsView(Widget):
         super().notify_style_update()
         self._styles.clear()
         self._strips_for = None
-        self.refresh()
 
     def get_selection(self, selection: Selection) -> tuple[str, str] | None:
         """What the mouse marked, as plain text."""
