@@ -7,12 +7,14 @@ import pytest
 
 from tests.bench.random_stars import TEN, local_grids, random_rows
 from tui.physics import composite as c
-from tui.physics.binding import LARGE, Held, binds_of, bound_by, cap_of
+from tui.physics.binding import A_LARGEST, LARGE, Held, binds_of, bound_by, caps_of
 from tui.physics.components import lights, tables_of
 from tui.physics.composite import MODELS, kit_for, predict
 
 COUNT = 30
-WITH_SOURCES = ("star + dust, A_V", "star + two dusts, A_V", "bound pair", "free pair", "star + compact", "star + galaxy")
+WITH_SOURCES = (
+    "star + dust, A_V", "star + two dusts, A_V", "bound pair", "free pair", "star + compact", "star + galaxy"
+)  # fmt: skip
 
 
 @pytest.fixture(scope="module")
@@ -85,10 +87,10 @@ def test_what_is_too_bright_is_bound_and_nothing_else(local):
     kit, x, tables, theta, seen = seen_of(local, "star + galaxy")
     most = bound_by(tables, theta, seen, 1, np.full(COUNT, c.A_GALAXY), None).ratio
     factor = np.where(np.arange(COUNT) % 2 == 0, 0.99, 1.01)
-    bind = cap_of(tables, theta, seen, np.stack([np.ones(COUNT), factor * most]), {})
+    bind = caps_of(tables, theta, seen, np.stack([np.ones(COUNT), factor * most]), {})[1]
     assert np.array_equal(bind.where, factor > 1)
     assert bind.ratio[bind.where] == pytest.approx(most[bind.where])
-    assert cap_of(tables, theta, seen, np.stack([np.ones(COUNT), 0.99 * most]), {}) is None
+    assert caps_of(tables, theta, seen, np.stack([np.ones(COUNT), 0.99 * most]), {}) == {}
 
 
 def test_a_cap_leaves_what_is_held_alone(local):
@@ -97,13 +99,22 @@ def test_a_cap_leaves_what_is_held_alone(local):
     held.share[0, :10] = 50.0  # by hand, more than a fit may take
     binds = binds_of(tables, theta, seen, held)
     both = np.stack([np.ones(COUNT), np.full(COUNT, 1e9)])
-    bind = cap_of(tables, theta, seen, both, binds)
+    bind = caps_of(tables, theta, seen, both, binds)[1]
     assert bind.where.all()
     assert bind.ratio[:10] == pytest.approx(binds[1].ratio[:10])
     most = bound_by(tables, theta, seen, 1, np.full(COUNT, c.A_GALAXY), None).ratio
     assert bind.ratio[10:] == pytest.approx(most[10:])
 
 
-def test_a_faint_companion_of_another_kind_is_not_looked_at(local):
+@pytest.mark.parametrize("model", ["free pair", "star + compact"])
+def test_a_companion_that_is_not_much_brighter_is_not_looked_at(local, model):
+    kit, x, tables, theta, seen = seen_of(local, model)
+    assert caps_of(tables, theta, seen, np.stack([np.ones(COUNT), np.full(COUNT, LARGE)]), {}) == {}
+
+
+def test_cold_dust_that_hardly_shows_is_bound_by_its_luminosity(local):
+    # 20 K in bands shortward of W4: all its light may be 1e6 times the star's while it is fainter in every band
     kit, x, tables, theta, seen = seen_of(local, "star + dust, A_V")
-    assert cap_of(tables, theta, seen, np.stack([np.ones(COUNT), np.full(COUNT, LARGE)]), {}) is None
+    most = bound_by(tables, theta, seen, 1, np.full(COUNT, A_LARGEST), None).ratio
+    bind = caps_of(tables, theta, seen, np.stack([np.ones(COUNT), 2.0 * most]), {})[1]
+    assert bind.where.all() and bind.ratio == pytest.approx(most)

@@ -75,27 +75,26 @@ def bound_by(
     return Bind(ratio, where, {column: slope.astype(tables.dtype) for column, slope in kept.items()})
 
 
-def cap_of(
+def caps_of(
     tables: Tables, theta: FloatArray, seen: Lights, both: FloatArray, binds: dict[int, Bind]
-) -> Bind | None:
-    """The second source bound where it would be larger than a parameter row may say."""
-    if both.shape[0] != 2 or tables.kit.model.bound_pair:
-        return None
-    power = tables.kit.model.sources == ("power",)
-    suspect = both[1] > (0.0 if power else LARGE) * both[0]
-    if not suspect.any():
-        return None
-    most = bound_by(tables, theta, seen, 1, np.full(theta.shape[1], A_GALAXY if power else A_LARGEST), None)
-    over = both[1] > most.ratio * both[0]
-    already = binds[1] if 1 in binds else None
-    if already is not None:
-        over &= ~already.where
-    if not over.any():
-        return None
-    where = over if already is None else over | already.where
-    ratio = np.where(over, most.ratio, 0.0 if already is None else already.ratio).astype(tables.dtype)
-    slopes = {column: (slope * where).astype(tables.dtype) for column, slope in most.slopes.items()}
-    return Bind(ratio, where, slopes)
+) -> dict[int, Bind]:
+    """Further sources bound where they would be larger than a parameter row may say."""
+    found = {}
+    for number, source in enumerate(() if tables.kit.model.bound_pair else tables.kit.model.sources, start=1):
+        least = LARGE if source in ("star", "compact") else 0.0  # the cheap question first
+        if not (both[number] > least * both[0]).any():
+            continue
+        share = np.full(theta.shape[1], A_GALAXY if source == "power" else A_LARGEST)
+        most, already = bound_by(tables, theta, seen, number, share, None), binds.get(number)
+        over = both[number] > most.ratio * both[0]
+        if already is not None:
+            over &= ~already.where
+        if over.any():
+            where = over if already is None else over | already.where
+            ratio = np.where(over, most.ratio, 0.0 if already is None else already.ratio).astype(tables.dtype)
+            slopes = {column: (slope * where).astype(tables.dtype) for column, slope in most.slopes.items()}
+            found[number] = Bind(ratio, where, slopes)
+    return found
 
 
 def fixed_of(rows: Rows, seen: Lights, held: Held) -> Fixed | None:

@@ -14,7 +14,7 @@ from scipy.special import log_ndtr
 
 from tui.model import FloatArray
 from tui.physics.amplitudes import non_negative
-from tui.physics.binding import Bind, Fixed, Held, binds_of, cap_of, fixed_of
+from tui.physics.binding import Bind, Fixed, Held, binds_of, caps_of, fixed_of
 from tui.physics.components import Lights, Tables, lights
 from tui.physics.composite import A2, A3, LN_S, LN_S_RANGE, LN_T, RV, WIDTH, X2, X3, ln_unit, parallax_of
 from tui.physics.likelihood import LN_2PI
@@ -47,9 +47,9 @@ def reduced(rows: Rows, tables: Tables, theta: FloatArray, held: Held | None = N
     fixed = None if held is None else fixed_of(rows, seen, held)
     parallax = _parallax_at_one(rows, tables, theta, seen)
     solved = _solve(rows, shown, binds, fixed, parallax)
-    cap = cap_of(tables, theta, seen, solved.both, binds)
-    if cap is not None:
-        binds = {1: cap}
+    caps = caps_of(tables, theta, seen, solved.both, binds)
+    if caps:
+        binds = binds | caps
         solved = _solve(rows, shown, binds, fixed, parallax)
     moves = _moves(tables, seen, shown, solved.both, binds)
     normal, right = _equations(rows, solved, moves, binds, fixed, tables.columns)
