@@ -111,7 +111,7 @@ class ColumnHead(HeadLines):
     def on_click(self, event: events.Click) -> None:
         """A click in a check's column filters by it."""
         columns = columns_for(self.size.width)
-        start = columns.before_checks
+        start = 2 + columns.name + columns.oddness + columns.band + columns.pull + 2 * columns.gap
         place = (event.x - start) // columns.check
         if event.x >= start and place < len(CHECKS):
             self.post_message(self.CheckClicked(CHECKS[place]))
