@@ -100,8 +100,9 @@ def _sorted_out(at: Walked, owner: np.ndarray, m: int, behind: float) -> tuple[n
 
 
 def _lowest(rows: Rows, tables: Tables, owner: np.ndarray, at: Walked, m: int) -> Minima:
-    """The KEPT lowest rows of every candidate."""
+    """The KEPT lowest rows of every candidate, of those that are alike the lowest."""
     order = np.lexsort((at.cost, owner))
+    order = order[first_of_each(np.round(at.theta[:, order] / ALIKE), owner[order])]
     first = np.searchsorted(owner[order], np.arange(m))
     last = np.searchsorted(owner[order], np.arange(m), side="right")
     place = first + np.arange(KEPT)[:, None]

@@ -47,8 +47,10 @@ def reduced(rows: Rows, tables: Tables, theta: FloatArray, held: Held | None = N
     fixed = None if held is None else fixed_of(rows, seen, held)
     parallax = _parallax_at_one(rows, tables, theta, seen)
     solved = _solve(rows, shown, binds, fixed, parallax)
-    caps = caps_of(tables, theta, seen, solved.both, binds)
-    if caps:
+    for _ in tables.kit.model.sources:  # once one is capped the next may grow
+        caps = caps_of(tables, theta, seen, solved.both, binds)
+        if not caps:
+            break
         binds = binds | caps
         solved = _solve(rows, shown, binds, fixed, parallax)
     moves = _moves(tables, seen, shown, solved.both, binds)
