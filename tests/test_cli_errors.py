@@ -156,9 +156,7 @@ def test_closed_streams_are_taken_for_a_reader_that_has_gone_and_the_queue_stays
         for number in closed:
             os.close(number)
 
-    done = subprocess.run(
-        [*RUN, "list", str(queue)], stderr=subprocess.PIPE, preexec_fn=close, cwd=os.path.dirname(os.path.dirname(SAMPLE))
-    )
+    done = subprocess.run([*RUN, "list", str(queue)], stderr=subprocess.PIPE, preexec_fn=close)
     assert (done.returncode, done.stderr) == (0, b"")
     assert queue.read_bytes() == before
 
@@ -169,6 +167,24 @@ def test_a_full_disk_behind_standard_output_is_named(tmp_path):
         done = subprocess.run([*RUN, "list", str(tmp_path / "q.db")], stdout=full, stderr=subprocess.PIPE, text=True)
     assert done.returncode == 2
     assert done.stderr == "plainlight: Standard output: No space left on device. Make room on the disk and try again.\n"
+
+
+def test_what_goes_wrong_beside_a_command_is_written_down_and_not_shown(tmp_path):
+    code = (
+        "import sys, threading, click; from tui.cli import group; from tui import __main__ as door\n"
+        "from tui.errors import StoreError\n"
+        "class Left:\n    def __del__(self): raise StoreError('q.db is damaged, says what is cleared away')\n"
+        "def fail(): raise StoreError('q.db is damaged, says a thread')\n"
+        "@click.command('join')\n"
+        "def join():\n    one = threading.Thread(target=fail); one.start(); one.join(); left = Left(); del left\n"
+        "group.cli.get_command = lambda ctx, name: join\n"
+        "sys.argv = ['plainlight', 'join']; door.main()"
+    )
+    home = os.environ | {"HOME": str(tmp_path), "XDG_STATE_HOME": str(tmp_path), "XDG_CACHE_HOME": str(tmp_path)}
+    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, env=home)
+    assert (done.returncode, done.stdout, done.stderr) == (0, "", "")
+    kept = "".join(path.read_text() for path in tmp_path.rglob("*.txt"))
+    assert "says a thread" in kept and "says what is cleared away" in kept
 
 
 @pytest.mark.parametrize("number", [signal.SIGTERM, signal.SIGINT])

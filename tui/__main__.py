@@ -5,7 +5,10 @@ from __future__ import annotations
 import os
 import signal
 import sys
+import threading
 import warnings
+from contextlib import suppress
+from typing import Any
 
 
 def main() -> None:
@@ -17,9 +20,19 @@ def main() -> None:
     for stream in (sys.stdout, sys.stderr):
         if hasattr(stream, "reconfigure"):
             stream.reconfigure(errors="replace")  # a terminal that cannot show a letter shows a question mark
+    sys.unraisablehook = threading.excepthook = keep_stray
     from tui.cli.group import cli
 
     cli.main()
+
+
+def keep_stray(stray: Any) -> None:
+    """Write down what went wrong in a thread, or in clearing away, where no command can say it any more."""
+    from tui.workflow.fault_log import keep_fault
+
+    if isinstance(stray.exc_value, Exception):
+        with suppress(OSError):
+            keep_fault(stray.exc_value, "beside a command")
 
 
 def fill_closed_streams() -> None:

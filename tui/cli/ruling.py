@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import gc
+import logging
 import os
 import sys
 from typing import TYPE_CHECKING
@@ -89,5 +90,6 @@ def open_desk(session, *, thin: bool, theme: str | None, keys) -> int:
 
 def run_desk(desk: Desk) -> int:
     """Run one until whoever sits there leaves; its return code is the exit status."""
+    logging.getLogger("asyncio").addHandler(logging.NullHandler())  # what nobody waited for was said on the screen
     desk.run()
     return desk.return_code or 0
