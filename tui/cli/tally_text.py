@@ -19,8 +19,9 @@ def print_tally(found: Tally) -> None:
     line(f"The team's tally, past every seal. {found.utc[:16].replace('T', ' ')} UTC")
     line(f"Quorum {found.quorum} sure rulings, of which {figure(100 * found.agree_share, 3)} % must agree.")
     if found.controls:
-        left = f"{counted(found.controls, 'controls')} {'is' if found.controls == 1 else 'are'} left out where candidates"
-        line(f"{left} are counted; agreement and what each reviewer ruled keep them.")
+        verb = "is" if found.controls == 1 else "are"
+        left = f"{counted(found.controls, 'controls')} {verb} left out where candidates are counted"
+        line(f"{left}; agreement and what each reviewer ruled keep them.")
     print_progress(found)
     print_trust(found)
     print_survivors(found)

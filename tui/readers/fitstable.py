@@ -34,7 +34,8 @@ def read_fits(path: str) -> RawTable:
         except Exception as error:  # a damaged header makes astropy raise almost anything
             raise TableError(path, f"the FITS file is damaged or cut short.") from error
     if not columns and unread:
-        raise TableError(path, f"every column holds arrays or complex numbers ({', '.join(unread)[:80]}): give plain cells.")
+        named = ", ".join(unread)[:80]
+        raise TableError(path, f"every column holds arrays or complex numbers ({named}): give plain cells.")
     rows = len(next(iter(columns.values())).cells) if columns else 0
     cautions = (f"{path}: only the first of {others + 1} tables was read",) if others else ()
     return RawTable(path, columns, np.arange(1, rows + 1), (), cautions, unread)

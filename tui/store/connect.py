@@ -265,7 +265,8 @@ def keep_copy(path: str, version: int) -> str:
         write_copy(source, copy)
         flush(copy)
     except sqlite3.Error as error:
-        raise StoreError(f"{copy} cannot be written, so {path} was not brought up to date; make room beside it.") from error
+        why = f"{copy} cannot be written, so {path} was not brought up to date; make room beside it."
+        raise StoreError(why) from error
     finally:
         source.close()
     shutil.copymode(path, copy)

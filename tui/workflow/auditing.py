@@ -49,7 +49,8 @@ def audit_queue(path: str, *, repair: bool = False, receipts: Sequence[str] = ()
         lines.append(f"{counted(found.repaired, 'derived rows')} written anew.")
     if receipts:
         lines.append(f"{counted(len(receipts), 'receipts')} checked.")
-    lines.append(f"{counted(len(faults), 'faults')}." if faults else "Sound: file, references, every chain, every derived state.")
+    sound = "Sound: file, references, every chain, every derived state."
+    lines.append(f"{counted(len(faults), 'faults')}." if faults else sound)
     return Audited((*lines, CHAIN_LIMIT), faults)
 
 

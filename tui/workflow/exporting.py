@@ -64,7 +64,8 @@ class Exported:
         """One line for a person."""
         text = f"Wrote {counted(self.rows, 'candidates')} to {self.path}."
         if self.without_evidence:
-            text += f" {self.without_evidence} of them {'has' if self.without_evidence == 1 else 'have'} no evidence yet; plainlight assess computes it."
+            have = "has" if self.without_evidence == 1 else "have"
+            text += f" {self.without_evidence} of them {have} no evidence yet; plainlight assess computes it."
         return text
 
 
