@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from itertools import cycle
 
 import numpy as np
 import pytest
@@ -12,26 +13,30 @@ from tests.bench.descents import descend
 from tests.bench.optimisers import OneCandidate, random_starts
 from tests.bench.random_stars import FOURTEEN, TEN, random_problem
 from tui.physics import composite as c
-from tui.physics.composite import MODELS, predict
-from tui.physics.fitting import fit, first_errors
+from tui.physics import fitting
+from tui.physics.composite import MODELS, kit_for, predict
+from tui.physics.fitting import first_errors, fit, settle, starting_rows
 from tui.physics.likelihood import errors_of
+from tui.physics.looking import KEPT, Minima, look
 from tui.physics.statistics import chi2_tail
 
 # Share of fits of any model to candidates of any nature where no random start ends lower by more than 0.1, errors
-# frozen at the last pass. What is reached today; the aim is 0.995 for all. Most misses are hopeless fits whose errors,
-# which follow the star's temperature, favour another minimum each time, and stars above 24,000 K, where the table is
-# thin.
+# frozen at the last pass: what 600 candidates gave, less a margin of one sigma of 300. The aim is 0.995 for all. Errors
+# follow the model, so most of what is missed (5 in 6, two dusts apart) is unlikelier once its own errors have followed
+# it; LIKELIER is what remains. A second dust is looked for from the best six starts of one dust only.
 REACHED = {
-    "star": 0.99, "star + A_V": 0.97, "star + A_V, R_V": 0.95, "star + dust": 0.97, "star + dust, A_V": 0.95,
-    "bound pair": 0.94, "free pair": 0.93, "star + compact": 0.90, "star + galaxy": 0.95,
+    "star": 0.99, "star + A_V": 0.975, "star + A_V, R_V": 0.97, "star + dust": 0.99, "star + dust, A_V": 0.975,
+    "star + two dusts, A_V": 0.94, "bound pair": 0.97, "free pair": 0.975, "star + compact": 0.955,
+    "star + galaxy": 0.98,
 }  # fmt: skip
+LIKELIER = 0.005  # share of all fits but those of two dusts that a random start beats by 0.1 with its own errors too
 STARTS = 10
 
 
 @pytest.fixture(scope="module")
 def drawn(grids):
     """Candidates of all natures, limits among them."""
-    return random_problem(grids, TEN, 150, 5)
+    return random_problem(grids, TEN, 300, 5)
 
 
 @pytest.fixture(scope="module")
@@ -41,19 +46,35 @@ def batches(drawn):
     return {name: fit(problem, MODELS[name], start=star.x) for name in REACHED}
 
 
+@pytest.fixture(scope="module")
+def lowest(batches):
+    """Where the best of many random starts ends, errors frozen as the fit left them: rows (M, 8) and costs (M,)."""
+    found = {}
+    for name, batch in batches.items():
+        starts = random_starts(np.random.default_rng(9), batch.problem, batch.kit, STARTS)
+        ends = [descend(batch.problem, batch.kit, batch.errors, row) for row in starts]
+        cost = np.array([end.cost for end in ends])
+        where = cost.argmin(axis=0), np.arange(cost.shape[1])
+        found[name] = np.array([end.x for end in ends])[where], cost[where]
+    return found
+
+
+@pytest.fixture(scope="module")
+def beaten(batches, lowest):
+    """Of each model the candidates for which that is lower by more than 0.1, and where it is."""
+    rows = {name: np.flatnonzero(lowest[name][1] < batch.cost - 0.1) for name, batch in batches.items()}
+    return {name: (some, lowest[name][0][some]) for name, some in rows.items()}
+
+
 @pytest.mark.parametrize("name", REACHED)
-def test_many_random_starts_find_little_that_is_lower(batches, name):
-    batch = batches[name]
-    rng = np.random.default_rng(9)
-    starts = random_starts(rng, batch.problem, batch.kit, STARTS)
-    lowest = np.min([descend(batch.problem, batch.kit, batch.errors, row).cost for row in starts], axis=0)
-    fall = batch.cost - lowest
+def test_many_random_starts_find_little_that_is_lower(batches, lowest, name):
+    fall = batches[name].cost - lowest[name][1]
     assert np.median(np.maximum(fall, 0)) < 1e-3
     assert np.mean(fall <= 0.1) >= REACHED[name]
 
 
 def test_scipy_from_many_starts_finds_nothing_lower(batches):
-    # scipy.optimize.least_squares from 4 random starts, 4 candidates of every model: 144 fits
+    # scipy.optimize.least_squares from 4 random starts, 4 candidates of every model: 160 fits
     lower = []
     for name, batch in batches.items():
         starts = random_starts(np.random.default_rng(10), batch.problem, batch.kit, 4)
@@ -136,12 +157,54 @@ def test_p_is_uniform_with_correlated_floors(grids):
     assert np.mean(chi2_tail(plain.chi2, problem.points - 2) < 0.01) > np.mean(p < 0.01)
 
 
-def test_a_candidate_fits_alike_alone_and_in_company(drawn):
+@pytest.mark.parametrize("name", ["star", "star + dust, A_V", "free pair", "star + compact"])
+def test_a_candidate_fits_alike_alone_and_in_company(drawn, batches, name):
+    # Alone all goes in two heats instead of five, which costs less and finds another minimum for some 2 %: as often a
+    # lower one as a higher. Of bound pairs it is 10 %, most of them hopeless.
     problem, _, _ = drawn
-    whole = fit(problem, c.DUST_AV)
-    for row in (0, 17, 93):
-        alone = fit(problem.take(np.array([row])), c.DUST_AV)
-        assert alone.cost[0] == pytest.approx(whole.cost[row], abs=0.02)
+    whole, star = batches[name], batches["star"]
+    off = []
+    for row in range(0, 120, 4):
+        some = np.array([row])
+        alone = fit(problem.take(some), MODELS[name], start=star.x[some])
+        off.append(alone.minus2lnl[0] - whole.minus2lnl[row])
+    assert np.mean(np.abs(off) <= 0.1) >= 0.9
+    assert np.median(np.abs(off)) < 1e-3
+
+
+@pytest.mark.parametrize("first", [0, 1])
+def test_of_minima_that_take_turns_the_likelier_stands(drawn, monkeypatch, first):
+    # Each is made to seem the lowest with the other's errors, time after time: whichever comes last, the likelier stays.
+    problem, _, _ = drawn
+    kit = kit_for(c.STAR_AV, problem.templates)
+    errors = first_errors(problem)
+    looked = look(problem, kit, errors, starting_rows(problem, kit, errors))
+    ends = [settle(problem, kit, looked.x[number]) for number in (0, 1)]
+    gap = ends[1].total - ends[0].total
+    again = [settle(problem, kit, end.x).total - end.total for end in ends]  # some rest only after more passes
+    rows = np.flatnonzero((np.abs(gap) > 0.1) & (np.abs(gap) < 1.5) & (np.abs(again) < 0.02).all(axis=0))
+    assert rows.size >= 5
+    turns = cycle([1 - first, first])
+
+    def in_turn(problem, kit, errors, sigma, looked, extra):
+        one = ends[next(turns)].take(rows)
+        return np.arange(rows.size), Minima(np.tile(one.x, (KEPT, 1, 1)), np.full((KEPT, rows.size), -np.inf))
+
+    monkeypatch.setattr(fitting, "look_again", in_turn)
+    batch = fit(problem.take(rows), c.STAR_AV)
+    total = batch.cost + batch.errors.ln_det
+    assert np.all(total <= np.minimum(ends[0].total, ends[1].total)[rows] + 0.05)
+
+
+def test_what_random_starts_find_lower_is_seldom_likelier_with_its_own_errors(beaten, batches):
+    likelier = {}
+    for name, (rows, x) in beaten.items():
+        batch = batches[name]
+        there = settle(batch.problem.take(rows), batch.kit, x).total if rows.size else np.zeros(0)
+        likelier[name] = np.sum(there < (batch.cost + batch.errors.ln_det)[rows] - 0.1)
+    fits = [len(batch.problem) for name, batch in batches.items() if name != c.TWO_DUST.name]
+    assert sum(count for name, count in likelier.items() if name != c.TWO_DUST.name) <= LIKELIER * sum(fits)
+    assert likelier[c.TWO_DUST.name] <= 0.06 * len(batches[c.TWO_DUST.name].problem)
 
 
 def test_scaling_all_fluxes_changes_nothing_but_the_scale(drawn):
