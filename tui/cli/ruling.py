@@ -50,16 +50,18 @@ def rule_command(queue: str, name: str, check: str, ruling: str, handle: str | N
 @click.option("--thin", is_flag=True, help="For slow lines: no mouse tracking, no animation, fewer bytes.")
 def review_command(queue: str, handle: str | None, thin: bool) -> int:
     """The desk: walk the candidates that need you, in the terminal."""
-    from tui.cli.printing import line
+    from tui.cli.printing import line, remark
     from tui.workflow.config import read_config
 
     config = read_config()
     handle = needed_handle(handle or config.handle)
     refuse_without_terminal()
     gc.disable()  # much is imported now and nothing can be collected of it; the desk enables it once it has drawn
-    from tui.workflow.session import Session
+    from tui.workflow.session import READ_ONLY, Session
 
     with Session.open(queue, handle) as session:
+        if session.read_only:
+            remark(f"{queue} is {READ_ONLY}.")
         status = open_desk(session, thin=thin, theme=config.theme, keys=config.keys)
         if session.has_ruled():
             line(f"Your receipt: {session.receipt()}")

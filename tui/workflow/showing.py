@@ -80,7 +80,8 @@ def dossier(session: Session, name: str) -> Dossier:
     alike = session.look_alikes(name, evidence.get("star")) if session.candidate_count() <= LONG_QUEUE else None
     oddness = oddness_dict(evidence.get("star"))
     drawn = drawn_of(candidate, evidence.get("mixture"), session.basis)
-    return Dossier(candidate, evidence, session.view(name), oddness, tuple(measured), alike, session.settings.p_min, drawn)
+    p_min = session.settings.p_min
+    return Dossier(candidate, evidence, session.view(name), oddness, tuple(measured), alike, p_min, drawn)
 
 
 def drawn_of(candidate: Candidate, mixture: Evidence | None, basis: Basis) -> Drawn | None:
