@@ -13,6 +13,11 @@ def test_an_empty_list_gives_the_limit_of_no_event():
     assert "0.00994" in found.sentences[0] and "one-sided" in found.sentences[0] and found.sentences[-1] == CAUTION
 
 
+def test_a_null_is_spoken_of_only_where_there_is_one():
+    said = {count: " ".join(meaning(300, count, 1, 0).sentences) for count in (0, 2)}
+    assert "null" in said[0] and "null" not in said[2]
+
+
 def test_pending_candidates_count_as_possible_survivors():
     assert meaning(300, 1, 4, 4).limit == meaning(300, 5, 0, 0).limit > meaning(300, 0, 0, 0).limit
     assert any("4 candidates still need reviewers" in said for said in meaning(300, 1, 4, 4).sentences)

@@ -44,7 +44,8 @@ def meaning(n_searched: int | None, survivors: int, pending: int, waiting: int) 
     else:
         limit = upper_limit(events, n_searched)
         said.append(_limit_sentence(n_searched, survivors, pending, limit))
-        said.append("A null limits only what the search could have seen.")
+        if survivors == 0:
+            said.append("A null limits only what the search could have seen.")
     if waiting:
         who = "1 candidate still needs reviewers" if waiting == 1 else f"{waiting} candidates still need reviewers"
         said.append(f"{who}; until then each counts as one that may survive.")
