@@ -13,6 +13,7 @@ from tui.store.claims import (
     claim,
     claim_next,
     claimed,
+    others_looking,
     put_off,
     put_off_names,
     release,
@@ -30,6 +31,15 @@ def turns(connection, reviewer, now=None):
     while (name := next_for(connection, reviewer.id, now or utc(), skipped)) is not None:
         skipped.append(name)
     return skipped
+
+
+def test_who_else_looks_is_told_by_handle_until_it_runs_out(filled, team):
+    name = turns(filled, team[0])[0]
+    claim(filled, name, team[0].id, utc())
+    claim(filled, name, team[1].id, utc())
+    assert others_looking(filled, name, team[0].id, utc()) == [team[1].handle]
+    assert others_looking(filled, name, None, utc()) == sorted([team[0].handle, team[1].handle])
+    assert others_looking(filled, name, team[0].id, utc(60 * CLAIM_MINUTES)) == []
 
 
 def test_everyone_is_sent_everywhere_in_an_order_of_their_own(filled, team):

@@ -12,6 +12,7 @@ from datetime import datetime, timedelta
 
 from tui.store.connect import immediate
 from tui.store.names import UTC_FORM, checked_utc, id_of
+from tui.store.reviewers import handles
 
 CLAIM_MINUTES = 15
 
@@ -52,6 +53,14 @@ def claimed(connection: sqlite3.Connection, now: str) -> dict[str, tuple[str, ..
     for name, reviewer_id in connection.execute(query, (now,)).fetchall():
         found[name] = (*found.get(name, ()), reviewer_id)
     return found
+
+
+def others_looking(connection: sqlite3.Connection, name: str, reviewer_id: str | None, now: str) -> list[str]:
+    """Handles of the others who are looking at a candidate; a claim says nothing of what anyone ruled."""
+    found = handles(connection)
+    query = "SELECT reviewer_id FROM claim WHERE candidate_id = ? AND reviewer_id IS NOT ? AND expires_utc > ?"
+    rows = connection.execute(query, (id_of(connection, name), reviewer_id, now)).fetchall()
+    return sorted(found.get(other, other) for (other,) in rows)
 
 
 def claim_next(

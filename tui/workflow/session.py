@@ -198,6 +198,10 @@ class Session:
         if not self.read_only:
             claims.release_all(self.connection, self.needed_reviewer().id)
 
+    def others_looking(self, name: str) -> list[str]:
+        """Handles of the others who are looking at a candidate now."""
+        return claims.others_looking(self.connection, name, self.reader_id, utc_now())
+
     def put_off(self, name: str) -> None:
         """Come back to a candidate later: it is offered after all others."""
         claims.put_off(self.connection, self.needed_reviewer().id, name)
