@@ -42,6 +42,9 @@ def other_rulings() -> list[RulingLine]:
 class FakeSession:
     """A queue in memory with the face of `tui.workflow.session.Session`; clones share the queue."""
 
+    read_only = False
+    hook = None  # told of a long wait
+
     def __init__(self, names, handle: str | None = "heron") -> None:
         self.path = "/somewhere/saltmarsh.db"
         self.reviewer = Reviewer("r-heron", handle, FIXED_UTC) if handle else None
@@ -53,6 +56,7 @@ class FakeSession:
         self.log: list[Ruling] = []
         self.claims: set[str] = set()
         self.later: set[str] = set()
+        self.looking: dict[str, list[str]] = {}
         self.drafts: dict[tuple[str, str], str] = {}
         self.place: tuple[str, str] | None = None
         self.fail: Exception | None = None
@@ -64,6 +68,9 @@ class FakeSession:
 
     def clone(self) -> FakeSession:
         return self
+
+    def on_wait(self, hook) -> None:
+        self.hook = hook
 
     def close(self) -> None:
         pass
@@ -158,6 +165,9 @@ class FakeSession:
     def claim(self, name):
         self.claims.add(name)
         return True
+
+    def others_looking(self, name):
+        return self.looking.get(name, [])
 
     def release_all(self):
         self.claims.clear()

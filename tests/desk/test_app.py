@@ -7,11 +7,13 @@ from textual.color import Color
 
 from tui.desk.app import Desk
 from tui.desk.keys import PLACES, RESERVED, checked_keymap
-from tui.desk.screens.help import HelpScreen
+from tui.desk.screens.help import HelpScreen, key_rows
+from tui.desk.screens.pages import PAGES
 from tui.desk.screens.small import SmallScreen
 from tui.desk.theme import THEME_NAMES, theme_name, themes
 from tui.desk.widgets.candidate_list import CandidateList
 from tui.desk.widgets.pick_rows import PickRows
+from tui.desk.widgets.rows import row_text
 from tui.errors import SettingError
 
 
@@ -117,13 +119,13 @@ def test_a_desk_started_too_small_waits(fake_session, drive):
 
 def test_keys_can_be_given_by_file_and_every_line_says_so(fake_session, drive, screen_text, settled):
     async def steps(app, pilot):
-        assert "j next for me" in screen_text(app)
+        assert "j next, fewest finished" in screen_text(app)
         await pilot.press("7")
         await settled(app, pilot)
         assert app.screen.view.unresolved == "dust"
         await pilot.press("question_mark")
         await settled(app, pilot)
-        assert "j            next for me" in screen_text(app)
+        assert "j            next, fewest finished" in screen_text(app)
 
     drive(fake_session, steps, keys={"queue.next": "j", "queue.down": "down", "queue.unresolved_dust": "7"})
 
@@ -131,15 +133,45 @@ def test_keys_can_be_given_by_file_and_every_line_says_so(fake_session, drive, s
 @pytest.mark.parametrize(
     ("keys", "reason"),
     [
-        ({"queue.fly": "f"}, "no such action"),
-        ({"queue.next": "q"}, "already"),
+        ({"queue.nxt": "f"}, "queue.nxt: there is no such action. Nearest: queue.next, [a-z_.]+, [a-z_.]+. Mend it"),
+        ({"queue.next": "q"}, "queue.next: 'q' is already queue.quit"),
         ({"queue.next": "ctrl+c"}, "terminal's"),
-        ({"queue.next": ""}, "cannot be used"),
+        ({"queue.next": ""}, "given no key"),
+        ({"queue.next": "notakey"}, "no key 'notakey'. Nearest: .* Mend it in .*settings.toml"),
+        ({"queue.next": "pgdn"}, "no key 'pgdn'. Nearest: pagedown, "),
+        ({"queue.next": "ctrl + c"}, r"no key 'ctrl \+ c'. Nearest: ctrl\+(?!c,)"),
+        ({"queue.next": "n,,f"}, "given no key"),
     ],
 )
-def test_keys_that_cannot_be_had_are_refused(keys, reason):
+def test_keys_that_cannot_be_had_are_refused_with_the_file_and_what_stands_near(keys, reason, monkeypatch):
+    monkeypatch.setenv("PLAINLIGHT_CONFIG", "/somewhere/settings.toml")
     with pytest.raises(SettingError, match=reason):
         checked_keymap(keys)
+
+
+def test_signs_in_the_file_are_keys_too(fake_session, drive, settled):
+    async def steps(app, pilot):
+        await pilot.press("comma")
+        await settled(app, pilot)
+        assert app.screen.view.sort == "name"
+        await pilot.press("f5")
+        await settled(app, pilot)
+        assert app.screen.view.needs_me
+
+    drive(fake_session, steps, keys={"queue.order": ",", "queue.needs_me": "&, f5"})
+
+
+def test_each_letter_that_leads_elsewhere_means_one_thing_in_every_place():
+    """Story and tally lie apart: who presses their letter on a star's page must not change a drawing instead."""
+    for letter, action in (("y", "story"), ("t", "tally"), ("m", "next_for_me")):
+        assert {key.action for place in PLACES.values() for key in place if letter in key.keys.split(",")} == {action}
+
+
+def test_every_page_of_a_candidate_is_named_in_its_help():
+    named = [key.why for key in PLACES["candidate"] if key.id.startswith("candidate.page_") and key.id[-1].isdigit()]
+    assert named == [f"The page {page.title}." for page in PAGES]
+    views = next(key for key in PLACES["candidate"] if key.id == "candidate.views")
+    assert all(page.title in views.why for page in PAGES)
 
 
 def test_no_place_has_two_actions_on_one_key_or_takes_the_terminals():
@@ -153,12 +185,24 @@ def test_an_unknown_theme_is_refused(fake_session):
         Desk(fake_session, theme="sepia")
 
 
-@pytest.mark.parametrize("key", ["q", "ctrl+c"])
-def test_leaving(fake_session, drive, key):
+@pytest.mark.parametrize("keys", [("q", "q"), ("Q",), ("ctrl+c",)], ids=str)
+def test_leaving(fake_session, drive, keys):
     async def steps(app, pilot):
-        await pilot.press(key)
+        await pilot.press(*keys)
         await pilot.pause()
         assert not app.is_running or app._exit
+
+    drive(fake_session, steps)
+
+
+def test_one_q_too_many_does_not_end_the_program(fake_session, drive, screen_text, settled):
+    async def steps(app, pilot):
+        await pilot.press("y", "q", "q")
+        await settled(app, pilot)
+        assert not app._exit and "q again leaves; everything is kept." in screen_text(app)
+        await pilot.press("down", "q")
+        await settled(app, pilot)
+        assert not app._exit and "q again leaves" in screen_text(app)
 
     drive(fake_session, steps)
 
@@ -202,6 +246,23 @@ def test_help_looks_so(fake_session, drive, screen_text, snapshot, size):
         snapshot(f"help-{size[0]}x{size[1]}", screen_text(app))
 
     drive(fake_session, steps, size=size)
+
+
+@pytest.mark.parametrize("place", PLACES)
+def test_no_name_of_an_action_is_cut_in_help(place):
+    for made in key_rows(place, {}, 76):
+        if made.target is not None:
+            assert f"{made.target.label} " in row_text(made.spans)
+
+
+@pytest.mark.parametrize("word", ["--", "again", "3/5", "oddness"])
+def test_help_explains_what_the_columns_read(fake_session, drive, word):
+    async def steps(app, pilot):
+        await pilot.press("question_mark")
+        await pilot.pause()
+        assert f"\n  {word} " in app.screen.query_one(PickRows).text
+
+    drive(fake_session, steps)
 
 
 def test_thin_leaves_out_what_a_slow_line_need_not_carry(fake_session, drive):

@@ -74,7 +74,7 @@ def path(disk_session) -> str:
     return disk_session.path
 
 
-@pytest.mark.parametrize("leave", ["q", "\x03", signal.SIGTERM, signal.SIGHUP], ids=str)
+@pytest.mark.parametrize("leave", ["qq", "\x03", signal.SIGTERM, signal.SIGHUP], ids=str)
 def test_the_terminal_is_as_it_was_after(path, leave):
     with terminal(path) as desk:
         if isinstance(leave, str):
@@ -95,7 +95,7 @@ def test_ctrl_z_stops_it_and_fg_brings_it_back(path):
         assert os.WIFSTOPPED(status) and desk.is_as_before()
         desk.process.send_signal(signal.SIGCONT)
         desk.wait_for(INTO)
-        os.write(desk.leader, b"q")
+        os.write(desk.leader, b"Q")
         desk.wait_for(b"left in order")
 
 

@@ -20,7 +20,8 @@ from tui.desk.widgets.key_line import KeyLine
 
 pytestmark = pytest.mark.usefixtures("any_terminal")
 
-NAMES = {key: key.lower() for key in ("Enter", "Space", "Tab", "Up", "Down", "Left", "Right")}
+NAMES = {key: key.lower() for key in ("Enter", "Space", "Tab", "Up", "Down", "Left", "Right", "Home", "End")}
+NAMES |= {"PgUp": "pageup", "PgDn": "pagedown"}
 NAMES |= {
     "?": "question_mark",
     "/": "slash",

@@ -65,7 +65,7 @@ def check_on(terminal: Terminal) -> str:
 
 def to_untouched(terminal: Terminal) -> str:
     """The next candidate on which all five checks can be ruled; its name."""
-    terminal.press("m", "next for me", r"RULE +e explains")
+    terminal.press("m", "next, fewest finished", r"RULE +e explains")
     while terminal.shows("-nodata"):
         terminal.press("l", "later", rf"Left for later: {name_on(terminal)}")
         terminal.until(r"RULE +e explains")
@@ -74,7 +74,7 @@ def to_untouched(terminal: Terminal) -> str:
 
 def test_five_checks_from_a_cold_start_at_80_by_24(queue):
     with desk(queue, "visitor", 80, 24) as terminal:
-        terminal.until("m opens the next star that needs you")
+        terminal.until("m: the star that the fewest have finished")
         name = to_untouched(terminal)
         for number, check in enumerate(CHECKS):
             terminal.until(rf"\[{ABBREVIATION[check]} ")  # a frame may arrive in pieces, its last lines first
@@ -88,8 +88,10 @@ def test_five_checks_from_a_cold_start_at_80_by_24(queue):
             said = f"You are done with {name}; the seal is open" if last else r"Recorded: [a-z ]+ falls short"
             terminal.press(ENTER, "records it", said)
             terminal.until(r"RULE +e explains")
+        assert name_on(terminal) == name and terminal.shows("rulings of others")
+        terminal.press("q", "to the plot", "LOOK AT")
         terminal.press("q", "back", "NEED YOU")
-        terminal.until("q quit")
+        terminal.press("q", "quit", "q again leaves; everything is kept")
         terminal.type_key("q")
         assert terminal.status() == 0 and terminal.is_as_before()
     rulings = made(queue, "visitor", name)
@@ -107,7 +109,7 @@ def probe(terminal: Terminal) -> None:
     terminal.press("h", "leave", "h by hand")
 
 
-def rule_and_take_back(terminal: Terminal) -> str:
+def rule_and_withdraw(terminal: Terminal) -> str:
     """The first of what is unresolved in blend: filter, open, probe, rule with a note, withdraw; its name."""
     terminal.press("b", "unresolved", "showing blend unresolved")
     terminal.press(ENTER, "open", r"RULE +e explains")
@@ -119,8 +121,8 @@ def rule_and_take_back(terminal: Terminal) -> str:
     terminal.press(TAB, "leaves the note", r"note: W3 to W4 rise\.")
     terminal.press(ENTER, "records it", "Recorded: star falls short")
     terminal.press("s", "checks", r"\[STAR <short\]")
-    terminal.press("w", "withdraw", "> take back <")
-    terminal.press(ENTER, "records it", "Taken back: your ruling on star")
+    terminal.press("w", "withdraw", "> withdraw <")
+    terminal.press(ENTER, "records it", "Withdrawn: your ruling on star")
     terminal.press("q", "back", "NEED YOU")
     return name
 
@@ -128,12 +130,12 @@ def rule_and_take_back(terminal: Terminal) -> str:
 def settle_split(terminal: Terminal) -> str:
     """The first candidate whose rulings part: find it, read all notes, rule once more; its name."""
     name = terminal.until(r"(SM-\d{4}) .* /split ").group(1)
-    terminal.press("/", "find", "Enter: to the list")
+    terminal.press("/", "find", "Esc drops it")
     terminal.type(name)
     terminal.until(rf"> {name} ")
     terminal.type_key(ENTER)
     terminal.cursor_on(f"> {name} ")
-    terminal.press("v", "notes of a split", "choose once more")
+    terminal.press("v", "split: all notes", "choose once more")
     assert terminal.shows("before the seal opened") and terminal.shows(r"heron \(you\)")
     terminal.press("u", "unclear", "> unclear <")
     terminal.press(ENTER, "records it", "Recorded: unclear, with the others in view")
@@ -144,7 +146,7 @@ def settle_split(terminal: Terminal) -> str:
 def write_list(terminal: Terminal) -> None:
     """The tally, and the vetted list beside the queue."""
     terminal.press("t", "tally", "1 IS IT DONE +1[0-9]+ candidates")
-    terminal.press("w", "write out", r"vetted list to saltmarsh-vetted\.ecsv")
+    terminal.press("w", "write out", r"write the list into .*\n saltmarsh-vetted\.ecsv")
     terminal.type_key(ENTER)
     terminal.until(r"Wrote \d+ candidates to saltmarsh-vetted\.ecsv")
     terminal.press("q", "back", "NEED YOU")
@@ -152,10 +154,10 @@ def write_list(terminal: Terminal) -> None:
 
 def test_a_whole_round_by_keys_at_200_by_60(queue):
     with desk(queue, "heron", 200, 60) as terminal:
-        name = rule_and_take_back(terminal)
+        name = rule_and_withdraw(terminal)
         split = settle_split(terminal)
         write_list(terminal)
-        terminal.until("q quit")
+        terminal.press("q", "quit", "q again leaves; everything is kept")
         terminal.type_key("q")
         assert terminal.status() == 0 and terminal.is_as_before()
     first, second = made(queue, "heron", name)[-2:]
@@ -175,7 +177,7 @@ def test_a_whole_round_by_keys_at_200_by_60(queue):
 @pytest.mark.parametrize("number", [signal.SIGTERM, signal.SIGHUP], ids=lambda one: one.name)
 def test_cut_off_amid_a_note_it_leaves_the_terminal_whole_and_keeps_the_note(queue, number):
     with desk(queue, "visitor", 80, 24) as terminal:
-        terminal.press("m", "next for me", r"RULE +e explains")
+        terminal.press("m", "next, fewest finished", r"RULE +e explains")
         name, check = name_on(terminal), check_on(terminal)
         terminal.press("a", "note", "Tab leaves the note")
         terminal.type("half a thou")

@@ -4,12 +4,14 @@ from __future__ import annotations
 
 import threading
 from array import array
+from dataclasses import replace
 
 import pytest
 from rich.cells import cell_len
 
 from tui.desk.widgets.candidate_list import CandidateList
 from tui.desk.widgets.described import Described
+from tui.desk.widgets.queue_columns import columns_for, row_cells
 from tui.errors import StoreError
 from tui.model import CHECKS
 
@@ -182,6 +184,74 @@ def test_a_candidate_is_told_in_one_sentence(fake_session, drive):
     drive(fake_session, steps)
 
 
+def test_who_else_looks_and_a_note_begun_are_told_of_the_chosen_candidate(fake_session, drive):
+    fake_session.looking = {"SM-0001": ["plover"]}
+    fake_session.drafts["SM-0001", "blend"] = "half a thou"
+
+    async def steps(app, pilot):
+        await app.screen.describe(app.screen.query_one(CandidateList).chosen)
+        said = [text for text, _ in app.screen.query_one(Described).said]
+        assert said[1].startswith("plover is looking at it. A note is begun on blend. You have ruled nothing")
+        assert "half a thou" not in said[1]
+
+    drive(fake_session, steps)
+
+
+def test_oddness_by_which_the_list_is_ordered_is_a_column_at_80_too(fake_session, drive, screen_text):
+    async def steps(app, pilot):
+        lines = screen_text(app).splitlines()
+        head = next(line for line in lines if " odd " in line)
+        odd = [float(line[head.index("odd") - 1 :].split()[0]) for line in lines_of("\n".join(lines))]
+        assert odd == sorted(odd, reverse=True) and odd[0] == 9.1
+
+    drive(fake_session, steps)
+
+
+@pytest.mark.parametrize(
+    ("oddness", "pull", "shown"), [(9.14, -8.25, "9.1"), (123.4, 9999.0, "123"), (45_678.0, -1e9, "46k")], ids=str
+)
+@pytest.mark.parametrize("band", ["W3", "PACS160", "a_band_of_a_long_name"])
+def test_numbers_of_any_size_keep_the_columns_in_line(fake_session, oddness, pull, shown, band):
+    row = replace(fake_session.row(0), oddness=oddness, odd_pull=pull, odd_band=band)
+    cells = row_cells(row, columns_for(80), chosen=True)
+    assert sum(cell_len(text) for text, _ in cells) == 80 and cells[2][0].strip() == shown
+    assert len(cells[3][0]) == 11
+
+
+def test_a_filter_is_kept_beside_another(fake_session, drive, screen_text, settled):
+    async def steps(app, pilot):
+        await pilot.press("x", "n")
+        await settled(app, pilot)
+        assert "showing extinction unresolved, needs you" in screen_text(app)
+        await pilot.press("x")
+        await settled(app, pilot)
+        assert "showing needs you" in screen_text(app)
+
+    drive(fake_session, steps)
+
+
+@pytest.mark.parametrize("keys", [("enter", "0"), ("enter", "x"), ("escape",)], ids=str)
+def test_a_search_that_is_over_leaves_no_line_behind(fake_session, drive, screen_text, settled, keys):
+    async def steps(app, pilot):
+        await pilot.press("slash", *"zzz")
+        await settled(app, pilot)
+        assert "find zzz" in screen_text(app) and "Esc drops it" in screen_text(app)
+        await pilot.press(*keys)
+        await settled(app, pilot)
+        assert "zzz" not in screen_text(app) and app.screen.query_one(CandidateList).ids
+
+    drive(fake_session, steps)
+
+
+def test_a_wall_screen_gives_the_room_beside_the_list_to_the_chosen_candidate(fake_session, drive, settled):
+    async def steps(app, pilot):
+        await app.screen.describe(app.screen.query_one(CandidateList).chosen)
+        await settled(app, pilot)
+        assert app.screen.query_one("#peek").size.width > 170 and app.screen.query_one(CandidateList).size.width == 120
+
+    drive(fake_session, steps, size=(300, 90))
+
+
 def test_next_for_me_claims_and_opens(fake_session, drive, settled):
     opened = []
 
@@ -207,7 +277,7 @@ def test_when_nothing_needs_me_it_says_so(fake_session, drive, screen_text, sett
 
 def test_a_reader_without_a_handle_is_offered_no_work(reader_session, drive, screen_text, settled):
     async def steps(app, pilot):
-        assert "next for me" not in screen_text(app) and "You are reading without a handle" in screen_text(app)
+        assert "fewest finished" not in screen_text(app) and "You are reading without a handle" in screen_text(app)
         await pilot.press("m")
         await settled(app, pilot)
         assert "Without a handle nothing can need you. Join first" in screen_text(app)

@@ -52,6 +52,7 @@ def test_a_split_is_ruled_again_with_a_note_and_the_first_ruling_stays(fake_sess
         assert (made.check, made.ruling, made.note, made.seen_others) == ("blend", "explains", "K is plain\ntoo", True)
         assert made.evidence_digest == "blend-2"
         assert "Recorded: explains, with the others in view." in screen_text(app)
+        assert "choose once more" not in screen_text(app) and "explains, recorded: nothing more is" in screen_text(app)
         assert app.saved == "05:06 UTC"
 
     drive(fake_session, steps)
@@ -167,13 +168,107 @@ def test_the_reviewers_page_ranks_nobody(disk_session, drive, screen_text, settl
     drive(disk_session, steps)
 
 
-def test_the_vetted_list_is_written_from_the_tally(disk_session, drive, screen_text, settled, tmp_path):
+@pytest.mark.parametrize("key", ["escape", "tab"])
+def test_a_file_need_not_be_named(disk_session, drive, screen_text, settled, tmp_path, monkeypatch, key):
+    monkeypatch.chdir(tmp_path)
+
+    async def steps(app, pilot):
+        await pilot.press("t")
+        await settled(app, pilot)
+        await pilot.press("w", "q")
+        await settled(app, pilot)
+        assert "Enter writes the file; Esc or Tab: nothing is written" in screen_text(app)
+        await pilot.press(key)
+        await settled(app, pilot)
+        assert isinstance(app.screen, TallyScreen) and "Nothing was written." in screen_text(app)
+        await pilot.press("q")
+        await settled(app, pilot)
+        assert not isinstance(app.screen, TallyScreen)
+
+    drive(disk_session, steps)
+    assert not list(tmp_path.glob("*vetted*"))
+
+
+def test_a_file_that_exists_is_replaced_only_when_asked_twice(disk_session, drive, screen_text, settled, tmp_path):
+    old = tmp_path / "old.csv"
+    old.write_text("precious", encoding="utf-8")
+
     async def steps(app, pilot):
         await pilot.press("t")
         await settled(app, pilot)
         await pilot.press("w")
-        entry = app.screen.query_one("FindInput")
+        app.screen.query_one("FileInput").value = str(old)
+        await pilot.press("enter")
+        await settled(app, pilot)
+        assert "old.csv exists already: Enter again replaces it, or type" in " ".join(screen_text(app).split())
+        assert old.read_text(encoding="utf-8") == "precious"
+        await pilot.press("enter")
+        await settled(app, pilot)
+        assert "Wrote 40 candidates" in screen_text(app)
+
+    drive(disk_session, steps, size=(200, 40))
+    assert "SM-0001" in old.read_text(encoding="utf-8")
+
+
+def test_q_leads_from_a_count_and_from_the_reviewers_back_to_the_tally(disk_session, drive, screen_text, settled):
+    async def steps(app, pilot):
+        await pilot.press("x", "t")
+        await settled(app, pilot)
+        await pilot.press("down", "right", "enter")
+        await settled(app, pilot)
+        assert "q to the tally" in screen_text(app)
+        await pilot.press("q")
+        await settled(app, pilot)
+        assert isinstance(app.screen, TallyScreen) and re.search(r"> +star .*\[\d+\]", screen_text(app))
+        await pilot.press("r", "q")
+        await settled(app, pilot)
+        assert isinstance(app.screen, TallyScreen) and "1 IS IT DONE" in screen_text(app)
+        await pilot.press("q")
+        await settled(app, pilot)
+        assert app.screen.view.names is None and app.screen.view.unresolved == "extinction"
+
+    drive(disk_session, steps)
+
+
+def test_a_count_that_is_listed_accounts_for_those_still_sealed(disk_session, drive, screen_text, settled):
+    async def steps(app, pilot):
+        await pilot.press("t")
+        await settled(app, pilot)
+        line = app.screen.tally.settled
+        await pilot.press("enter")
+        await settled(app, pilot)
+        assert f"showing {line.text} ({line.unnamed} sealed)  1 of {line.count - line.unnamed}" in screen_text(app)
+
+    drive(disk_session, steps)
+
+
+def test_the_tally_is_read_to_its_end_by_screens(disk_session, drive, screen_text, settled):
+    async def steps(app, pilot):
+        await pilot.press("t")
+        await settled(app, pilot)
+        assert "PgDn page down" in screen_text(app) and "PgUp" not in screen_text(app)
+        for back, key in (("pageup", "pagedown"), ("home", "end")):
+            await pilot.press(key, key)
+            await settled(app, pilot)
+            text = screen_text(app)
+            assert "4 WHAT IT MEANS" in text and "PgUp page up" in text and "PgDn" not in text
+            await pilot.press(back, back)
+            await settled(app, pilot)
+            assert "1 IS IT DONE" in screen_text(app)
+
+    drive(disk_session, steps)
+
+
+def test_the_vetted_list_is_written_from_the_tally(disk_session, drive, screen_text, settled, tmp_path, monkeypatch):
+    monkeypatch.chdir(tmp_path)
+
+    async def steps(app, pilot):
+        await pilot.press("t")
+        await settled(app, pilot)
+        await pilot.press("w")
+        entry = app.screen.query_one("FileInput")
         assert "past your seal" in screen_text(app) and entry.value == "saltmarsh-vetted.ecsv"
+        assert entry.size.width >= 78 and f"{tmp_path.name[-20:]}\n" in screen_text(app)
         entry.value = str(tmp_path / "out.csv")
         await pilot.press("enter")
         await settled(app, pilot)

@@ -4,17 +4,18 @@ from __future__ import annotations
 
 ORIENTATION = (
     "Each line is a star that a search called odd; try to explain it away.",
-    "m opens the next star that needs you: one question at a time, and you rule.",
+    "m: the star that the fewest have finished. p: three stars to practise on.",
     "Rulings on a star stay sealed until you are done with it. ? tells more.",
 )
 READER_LINE = "You are reading without a handle. To rule: plainlight join QUEUE HANDLE, then review --as HANDLE."
 
 WHAT_FOR = {
     "queue": (
-        "The queue is the list of odd stars. Left to right: its name, the band that is farthest from what the star "
-        "alone should shine and by how many sigma, where each of the five checks stands, the outcome, and how much of "
-        "it is yours to do.",
-        "Work from the top line: m always brings the star that needs you most and that nobody else has on screen.",
+        "The queue is the list of odd stars. Left to right: its name, its oddness, the band that is farthest from what "
+        "the star alone should shine and by how many sigma, where each of the five checks stands, the outcome, and how "
+        "much of it is yours to do.",
+        "m: the star that the fewest have finished, of those that need you and that nobody else has on screen. "
+        "p: three practice stars, before you rule on real ones.",
     ),
     "candidate": (
         "One star, one question at a time. Look first where the points leave the curve, then at the numbers, then "
@@ -47,11 +48,15 @@ WORDS = (
     ("*", "stale: the evidence that a ruling rests on has changed since in a way that matters"),
     (".sealed", "the outcome opens for you once you are done with the star"),
     ("done", "you ruled `explains` on a check, or every check that can be tested"),
-    ("ordinary", "the star alone explains it: it was not odd"),
-    ("explained", "one of the four natural explanations holds"),
-    ("unexplained", "the star and all four fell short. It is no detection: only these checks, with these data"),
+    ("3/5", "yours: you ruled on three of the five checks that can be ruled"),
+    ("again", "yours: a split asks you once more, or your ruling is stale"),
+    ("--", "yours: it needs nobody now, though you are not done with it"),
+    ("ordinary", "enough reviewers ruled that the star alone explains it: it was not odd"),
+    ("explained", "enough reviewers hold one of the four natural explanations, though perhaps not the same one"),
+    ("unexplained", "enough reviewers ruled that the star and all four fall short. It is no detection: only these "
+                    "checks, with these data"),  # fmt: skip
     ("pending", "not settled yet, with the reason"),
-    ("sigma", "how far from a plain star the data are, as a Gaussian would count it"),
+    ("oddness", "how far from a plain star the data are, in sigma, as a Gaussian would count it"),
     ("pull", "measured minus model, in units of the error"),
 )
 

@@ -35,6 +35,9 @@ class Key:
 
 
 _CHECK_KEYS = dict(zip(CHECKS, "sixbd", strict=True))
+_PAGE_TITLES = (  # of a candidate's further pages, in the order of their numbers
+    "facts", "measured", "all fits", "mixture", "dips", "pictures", "look-alikes", "rulings", "story",
+)  # fmt: skip
 
 
 def _list_keys(place: str) -> tuple[Key, ...]:
@@ -53,8 +56,8 @@ _HELP = Key("desk.help", "question_mark", "help", "help", "The keys of this plac
 _THEME = Key("desk.theme", "T", "next_theme", "colours", "The next set of colours: dark, light, contrast, terminal.", 0)
 
 QUEUE = (
-    Key("queue.next", "m", "next_for_me", "next for me",
-        "Open the candidate that needs you most and is on nobody's screen.", 1),
+    Key("queue.next", "m", "next_for_me", "next, fewest finished",
+        "Open the star that the fewest have finished, of those that need you and are on nobody's screen.", 1),
     Key("queue.open", "enter", "open", "open", "Open the chosen candidate, at the first check you have not ruled.", 1),
     *(
         Key(f"queue.unresolved_{check}", key, f"unresolved('{check}')", "unresolved",
@@ -68,21 +71,27 @@ QUEUE = (
         "Search the names: those that begin with what you type, then those that hold it.", 2),
     Key("queue.order", "o", "order", "order", "The next order: oddness, name, what you have ruled, outcome.", 2),
     Key("queue.reverse", "O", "reverse", "reverse", "Turn the order around.", 0),
-    Key("queue.split", "v", "split", "notes of a split",
+    Key("queue.split", "v", "split", "split: all notes",
         "Where rulings part: everybody's notes on the check side by side, to rule once more.", 3),
     Key("queue.story", "y", "story", "story", "What happened to the chosen candidate, in time order.", 3),
     Key("queue.tally", "t", "tally", "tally", "How far the team is, whether it can be trusted, and what is left.", 2),
     Key("queue.practice", "p", "practice", "practice",
-        "Three practice stars with their answers; nothing of it is written.", 0),
+        "Three practice stars with their answers; nothing of it is written.", 3),
     *_list_keys("queue"),
-    Key("queue.quit", "q", "quit", "quit", "Leave. Everything you ruled is already in the file.", 1),
+    Key("queue.quit", "q", "quit", "quit",
+        "Leave, once q is pressed again; everything is kept. From a count of the tally: back to the tally.", 1),
+    Key("queue.quit_now", "Q", "quit_now", "quit at once", "Leave without being asked again.", 0),
 )
 TALLY = (
     Key("tally.up", "up,k", "up", "up", "The line above.", 0),
     Key("tally.down", "down,j", "down", "down", "The line below.", 0),
+    Key("tally.page_down", "pagedown,space", "page_down", "page down", "One screen down.", 2),
+    Key("tally.page_up", "pageup", "page_up", "page up", "One screen up.", 2),
+    Key("tally.first", "home,g", "first", "top", "To the beginning.", 3),
+    Key("tally.last", "end,G", "last", "end", "To the end.", 3),
     Key("tally.left", "left", "left", "left", "The count to the left.", 0),
     Key("tally.right", "right", "right", "right", "The count to the right.", 0),
-    Key("tally.list", "enter", "list", "list what a line counts",
+    Key("tally.list", "enter", "list", "list them",
         "Show the candidates that the line counts, in the queue.", 1),
     Key("tally.reviewers", "r", "reviewers", "reviewers",
         "What each reviewer has done, and back to the tally. There is no ranking.", 2),
@@ -123,7 +132,8 @@ CANDIDATE = (
         "Record your stale ruling anew: the evidence changed, and it still holds.", 0),
     Key("candidate.withdraw", "w", "withdraw", "withdraw", "Choose: take back your ruling on this check.", 2),
     Key("candidate.later", "l", "later", "later", "Leave this candidate for later and take the next.", 2),
-    Key("candidate.next", "m", "next_for_me", "next for me", "The next candidate that needs you.", 2),
+    Key("candidate.next", "m", "next_for_me", "next for me",
+        "The star that the fewest have finished, of those that still need you.", 2),
     Key("candidate.last", "z", "last_candidate", "the one before", "Back to the candidate you had before this one.", 0),
     Key("candidate.next_check", "tab", "next_check", "check", "The next check; by hand, the next number.", 1),
     Key("candidate.previous_check", "shift+tab", "previous_check", "check", "The check before.", 0),
@@ -142,14 +152,17 @@ CANDIDATE = (
     Key("candidate.zoom_out", "minus", "zoom(-1)", "zoom", "Farther.", 0),
     Key("candidate.pan_left", "less_than_sign", "pan(-1)", "move", "Zoomed: towards shorter wavelengths.", 0),
     Key("candidate.pan_right", "greater_than_sign", "pan(1)", "move", "Zoomed: towards longer wavelengths.", 0),
-    Key("candidate.quantity", "y", "quantity", "F_nu or nu F_nu",
+    Key("candidate.quantity", "F", "quantity", "F_nu or nu F_nu",
         "Draw nu F_nu, where a black body's share of the light shows, or F_nu.", 0),
     Key("candidate.plot", "p", "plot", "plot", "The plot alone, as large as the screen; again for the numbers.", 2),
     Key("candidate.views", "v", "views", "views",
-        "The next page: facts, measurements, all fits, mixture, dips, pictures, story.", 2),
+        f"The next page: {', '.join(_PAGE_TITLES)}.", 2),
     Key("candidate.views_back", "V", "views_back", "page before", "The page before.", 0),
-    *(Key(f"candidate.page_{n}", str(n), f"page({n})", "page", f"Page {n}.", 0) for n in range(1, 10)),
-    Key("candidate.stretch", "t", "stretch", "stretch", "Pictures: the faint, the middle or the bright parts.", 0),
+    *(
+        Key(f"candidate.page_{n}", str(n), f"page({n})", "page", f"The page {title}.", 0)
+        for n, title in enumerate(_PAGE_TITLES, start=1)
+    ),
+    Key("candidate.stretch", "S", "stretch", "stretch", "Pictures: the faint, the middle or the bright parts.", 0),
     Key("candidate.swap", "n", "swap", "other bands",
         "Pictures: another band in the same place, to see what moves or fades.", 0),
     Key("candidate.hand", "h", "hand", "by hand", "Change numbers by hand: the curve and chi-square follow.", 2),
@@ -189,19 +202,19 @@ def checked_keymap(wanted: Mapping[str, str]) -> dict[str, str]:
     """The keys that a reader asked for, if they can all be had.
 
     Raises:
-        SettingError: an unknown action, a key that stays the terminal's, or one key for two actions of a place.
+        SettingError: an unknown action or key, a key that stays the terminal's, or one key for two actions of a place.
     """
-    known = {key.id: key for place in PLACES.values() for key in place}
-    for action, keys in wanted.items():
-        if action not in known:
-            raise SettingError(f"keys.{action}", f"there is no such action. They are {', '.join(sorted(known))}.")
-        taken = RESERVED.intersection(keys.split(","))
-        if taken or not keys.strip():
-            reason = f"{keys!r} cannot be used: {', '.join(sorted(RESERVED))} stay the terminal's."
-            raise SettingError(f"keys.{action}", reason)
+    if not wanted:
+        return {}
+    from tui.desk.key_names import canonical_list  # most people keep the desk's own keys
+
+    given = {action: canonical_list(keys) for action, keys in wanted.items()}
+    for action, keys in given.items():
+        _refuse_unknown(action, keys)
     for place, entries in PLACES.items():
-        _refuse_clash(place, {key.id: wanted.get(key.id, key.keys) for key in entries})
-    return dict(wanted)
+        kept = {key.id: key.keys for key in entries if key.id not in given}
+        _refuse_clash(place, kept | {key.id: given[key.id] for key in entries if key.id in given})
+    return given
 
 
 def shown(keys: str) -> str:
@@ -214,9 +227,31 @@ def shown(keys: str) -> str:
     return _SHOWN.get(first, first)
 
 
+def _refuse_unknown(action: str, keys: str) -> None:
+    from tui.desk.key_names import is_key, nearest, nearest_keys
+
+    known = {key.id for place in PLACES.values() for key in place}
+    if action not in known:
+        raise _refusal(action, f"there is no such action. Nearest: {', '.join(nearest(action, known))}.")
+    for key in keys.split(","):
+        if key in RESERVED:
+            raise _refusal(action, f"{key!r} stays the terminal's, as do {', '.join(sorted(RESERVED - {key}))}.")
+        if not key:
+            raise _refusal(action, "it is given no key.")
+        if not is_key(key):
+            usable = [name for name in nearest_keys(key) if name not in RESERVED]
+            raise _refusal(action, f"there is no key {key!r}. Nearest: {', '.join(usable)}.")
+
+
+def _refusal(action: str, reason: str) -> SettingError:
+    from tui.workflow.config import config_path
+
+    return SettingError(f"keys.{action}", f"{reason} Mend it in {config_path()}.")
+
+
 def _refuse_clash(place: str, keys_of: Mapping[str, str]) -> None:
     owner: dict[str, str] = {}
     for action, keys in keys_of.items():
         for key in keys.split(","):
             if owner.setdefault(key.strip(), action) != action:
-                raise SettingError(f"keys.{action}", f"{key!r} is already {owner[key.strip()]} in the place {place}.")
+                raise _refusal(action, f"{key!r} is already {owner[key.strip()]} in the place {place}.")

@@ -28,6 +28,7 @@ class QueueView:
     needs_me: bool = False
     counted: str = ""  # the line of the tally whose candidates are listed
     names: frozenset[str] | None = None  # those candidates
+    unnamed: int = 0  # others that it counts, still sealed to the reader
     sort: str = "oddness"
     descending: bool = True
     find: str = ""
@@ -61,7 +62,8 @@ class QueueView:
             return f"names like {self.find!r}"
         said = [f"{CHECK_TITLES[self.unresolved]} unresolved"] if self.unresolved else []
         said += ["needs you"] if self.needs_me else []
-        said += [self.counted] if self.names is not None else []
+        sealed = f" ({self.unnamed} sealed)" if self.unnamed else ""
+        said += [self.counted + sealed] if self.names is not None else []
         return ", ".join(said) or "all"
 
     def order_words(self) -> str:

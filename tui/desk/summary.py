@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from typing import TYPE_CHECKING
 
 from tui.desk.text import band_names, listed, plural
@@ -14,6 +14,7 @@ if TYPE_CHECKING:
 ODD_PULL = 3.0  # sigma: a band that the sentence names
 PLAIN_PULL = 2.0  # sigma: a band that agrees with the star alone
 NAMED_BANDS = 4
+PARTED = ", though by different checks"
 
 
 def oddness_sentence(row: QueueRow, evidence: Mapping[str, Evidence]) -> str:
@@ -42,9 +43,19 @@ def standing_sentence(row: QueueRow, view: CandidateView | None) -> str:
     reason = view.pending_reason if view else ""
     if row.outcome == "pending":
         said = f"Pending: {reason_text(reason)}." if reason else "Pending."
-        return f"{said} It asks you once more." if row.needs_me else said
-    cause = f" by {reason_text(view.cause)}" if view and view.cause and row.outcome == "explained" else ""
-    return f"You are done with it. The team's outcome: {row.outcome}{cause}."
+        return f"{said} {_asked(row, view)}" if row.needs_me else said
+    return f"You are done with it. The team's outcome: {row.outcome}{_cause(row, view)}."
+
+
+def looking_sentence(handles: Sequence[str]) -> str:
+    """Who else is looking at it now; empty where nobody is."""
+    return f"{listed(handles)} {'is' if len(handles) == 1 else 'are'} looking at it." if handles else ""
+
+
+def begun_sentence(view: CandidateView | None) -> str:
+    """On which checks the reader has a note that is not yet recorded; empty where there is none."""
+    begun = [CHECK_TITLES[check] for check in CHECK_TITLES if view is not None and view.drafts.get(check)]
+    return f"A note is begun on {listed(begun)}." if begun else ""
 
 
 def reason_text(reason: str) -> str:
@@ -60,6 +71,20 @@ def reason_text(reason: str) -> str:
         title = CHECK_TITLES.get(check, check)
         said.append(f"{title} {words.get(state, state)}" if check else CHECK_TITLES.get(state, state))
     return ", ".join(said)
+
+
+def _cause(row: QueueRow, view: CandidateView | None) -> str:
+    if view is None or not view.cause or row.outcome != "explained":
+        return ""
+    return PARTED if view.cause == "parted" else f" by {reason_text(view.cause)}"
+
+
+def _asked(row: QueueRow, view: CandidateView | None) -> str:
+    """What a star whose seal is open still asks: a split, once more, or the checks never ruled."""
+    if row.done or view is None or not view.to_rule:
+        return "It asks you once more."
+    left = listed([CHECK_TITLES[check] for check in view.to_rule])
+    return f"You have {plural(len(view.to_rule), 'check')} left: {left}."
 
 
 def _sealed_sentence(row: QueueRow) -> str:

@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
+
+from rich.cells import cell_len
 from textual import on
 from textual.app import ComposeResult
 from textual.widgets import Input, Static
@@ -16,7 +19,7 @@ from tui.desk.widgets.pick_rows import PickRow, PickRows
 from tui.desk.widgets.rows import Row, Span, hanging, row
 
 KEYS_WIDE = 13
-LABEL_WIDE = 15
+LABEL_MOST = 24  # cells of an action's name; the longest there is takes 22
 WIDEST = 96  # columns of reading text
 
 
@@ -110,8 +113,9 @@ class HelpScreen(DeskScreen[str | None]):
 def key_rows(place: str, keymap: dict[str, str], width: int) -> list[PickRow]:
     """One action after the other, each with its keys, its name and its reason."""
     rows: list[PickRow] = []
+    label_wide = _label_wide(PLACES[place])
     for key in PLACES[place]:
-        rows += _key_rows(key, keymap, width, key)
+        rows += _key_rows(key, keymap, width, key, label_wide)
     return rows
 
 
@@ -124,8 +128,9 @@ def found_rows(wanted: str, place: str, keymap: dict[str, str], width: int) -> l
         if hits:
             where = "here" if other == place else f"in {PLACE_TITLES[other]}"
             rows += [PickRow(), PickRow(row((f" {where}", "head")))]
+            label_wide = _label_wide(hits)
             for key in hits:
-                rows += _key_rows(key, keymap, width, key if other == place else None)
+                rows += _key_rows(key, keymap, width, key if other == place else None, label_wide)
     return rows or [PickRow(), PickRow(row((f" No action speaks of {wanted!r}.", "")))]
 
 
@@ -140,9 +145,14 @@ def _speaks_of(key: Key, words: list[str]) -> bool:
     return all(word in text for word in words)
 
 
-def _key_rows(key: Key, keymap: dict[str, str], width: int, target: Key | None) -> list[PickRow]:
+def _label_wide(keys: Iterable[Key]) -> int:
+    """Cells for the names of these actions, a gap behind the longest."""
+    return min(LABEL_MOST, 2 + max(cell_len(key.label) for key in keys))
+
+
+def _key_rows(key: Key, keymap: dict[str, str], width: int, target: Key | None, label_wide: int) -> list[PickRow]:
     names = " ".join(shown(name) for name in keymap.get(key.id, key.keys).split(","))
-    head = [Span(fit(names, KEYS_WIDE - 1) + " ", "key"), Span(fit(key.label, LABEL_WIDE - 1) + " ", "strong")]
+    head = [Span(fit(names, KEYS_WIDE - 1) + " ", "key"), Span(fit(key.label, label_wide - 1) + " ", "strong")]
     margin = Span("  ")  # where the mark of a row that can be chosen would stand
     first, *rest = hanging(head, key.why, width - 4)
     spans = first if target is not None else [margin, *first]

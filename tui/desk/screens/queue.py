@@ -18,7 +18,7 @@ from textual.widgets import Static
 from tui.desk.keys import bindings
 from tui.desk.screens.base import MovesThroughList
 from tui.desk.screens.queue_background import POLL_S, POLL_THIN_S, QueueBackground
-from tui.desk.summary import oddness_sentence, standing_sentence
+from tui.desk.summary import begun_sentence, looking_sentence, oddness_sentence, standing_sentence
 from tui.desk.text import KEY_OF_CHECK, safe
 from tui.desk.widgets.candidate_list import CandidateList
 from tui.desk.widgets.described import Described
@@ -29,12 +29,18 @@ from tui.errors import TuiError
 if TYPE_CHECKING:
     from textual.widgets import Input
 
+    from tui.desk.queue_view import QueueView
+    from tui.desk.screens.tally import Counted
+    from tui.desk.widgets.find_line import FindLine
     from tui.model import Evidence
     from tui.workflow.records import QueueRow
     from tui.workflow.session import Session
 
 PEEK_FROM = 165  # columns: below it the list needs them all
+PEEK_LEAST = 80
+LIST_MOST = 120  # columns: the widest that the list's own columns take
 SETTLE_S = 0.04  # a candidate is described once the cursor has rested on it so long
+LEAVING = "q again leaves; everything is kept."
 SIGN_WORDS = ".todo not ruled by you   .sealed opens when you are done   * stale"
 
 
@@ -53,6 +59,9 @@ class QueueScreen(MovesThroughList, QueueBackground):
     def __init__(self, session: Session) -> None:
         super().__init__(session)
         self._settle: Timer | None = None
+        self._asked_to_leave = self._was_asked = False
+        self._before_tally: QueueView | None = None  # what was listed, while a count of the tally is
+        self._tally_place = (0, 0)  # row and count of it
 
     def compose(self) -> ComposeResult:
         """Head, list with the chosen candidate's data beside it, what is said of it, keys."""
@@ -103,12 +112,15 @@ class QueueScreen(MovesThroughList, QueueBackground):
             return
         try:
             evidence = self.session.stored_evidence(row.name)
-            view = self.session.view(row.name) if row.seal_open else None
+            view = self.session.view(row.name) if self.session.reviewer else None
+            others = self.session.others_looking(row.name)
         except TuiError as error:
             self.say(str(error), is_error=True)
             return
         said = [(safe(f"{row.name}  {oddness_sentence(row, evidence)}"), "plain")]
-        said += [(safe(standing_sentence(row, view)), "quiet")] if self.session.reviewer else []
+        stands = [looking_sentence(others), begun_sentence(view)]
+        stands += [standing_sentence(row, view)] if self.session.reviewer else []
+        said += [(safe(" ".join(filter(None, stands))), "quiet")] if any(stands) else []
         self.query_one(Described).say([*said, (SIGN_WORDS, "quiet")])
         if self.has_room:
             await self.peek(row.name, evidence)
@@ -124,6 +136,7 @@ class QueueScreen(MovesThroughList, QueueBackground):
 
         if not self.query(Peek):
             await self.query_one("#middle").mount(Peek(id="peek"))
+        self.query_one(Peek).styles.width = max(PEEK_LEAST, self.size.width - LIST_MOST)
         try:
             self.query_one(Peek).show(self.session.candidate(name), evidence, self.session.band_info())
         except TuiError as error:
@@ -135,13 +148,14 @@ class QueueScreen(MovesThroughList, QueueBackground):
             peek.display = self.has_room
         self.call_later(self.describe, self.query_one(CandidateList).chosen)
 
-    def offers(self, action_id: str) -> bool:
+    def offers(self, action_id: str) -> bool | str:
         """A split is offered where there is one, `all` where not all is listed, and a reader is not offered work."""
         row = self.query_one(CandidateList).chosen if self.query("#list") else None
         return {
             "queue.split": row is not None and "split" in row.states.values(),
             "queue.all": not self.view.is_whole,
             "queue.next": self.session.reviewer is not None,
+            "queue.quit": True if self.view.names is None else "to the tally",
             "queue.needs_me": self.session.reviewer is not None,
         }.get(action_id, True)
 
@@ -206,11 +220,14 @@ class QueueScreen(MovesThroughList, QueueBackground):
     def look(self, view: QueueView) -> None:
         """Wish for another view."""
         self.view = view
+        if not view.find:
+            self.close_find()
         self.order()
 
-    def list_names(self, names: frozenset[str], words: str) -> None:
-        """List just these candidates, which a line of the tally counted."""
-        self.look(replace(self.view.whole(), names=names, counted=words))
+    def close_find(self) -> None:
+        """Take the line to search in away, unless something is still typed there."""
+        for line in self.query("FindLine").results():
+            line.display = line.has_focus_within
 
     async def action_find(self) -> None:
         """Open the line to search in."""
@@ -226,9 +243,13 @@ class QueueScreen(MovesThroughList, QueueBackground):
         if message.value != self.view.find:
             self.look(replace(self.view.whole(), find=message.value))
 
-    def on_find_line_left(self) -> None:
-        """Letters are keys again."""
+    def on_find_line_left(self, message: FindLine.Left) -> None:
+        """Letters are keys again; a search given up is over."""
         self.set_focus(None)
+        if message.is_given_up and self.view.find:
+            self.look(self.view.whole())
+        elif not self.view.find:
+            self.close_find()
         self.place_terminal_cursor()
 
     def action_open(self) -> None:
@@ -303,17 +324,34 @@ class QueueScreen(MovesThroughList, QueueBackground):
 
         self.app.push_screen(SplitScreen(self.session, row.name, parted[0]))
 
-    def action_tally(self) -> None:
-        """How far the team is."""
+    def action_tally(self, row: int = 0, count: int = 0) -> None:
+        """How far the team is, from a count of it."""
         from tui.desk.screens.tally import TallyScreen
 
-        self.app.push_screen(TallyScreen(self.session), self.list_counted)
+        self.app.push_screen(TallyScreen(self.session, row, count), self.list_counted)
 
-    def list_counted(self, counted: tuple[frozenset[str], str] | None) -> None:
-        """List what a line of the tally counts."""
-        if counted is not None:
-            self.list_names(*counted)
+    def list_counted(self, counted: Counted | None) -> None:
+        """List just the candidates that a line of the tally counts; q leads back there."""
+        if counted is None:
+            return
+        self._before_tally, self._tally_place = self.view, counted.place
+        self.look(replace(self.view.whole(), names=counted.names, counted=counted.text, unnamed=counted.unnamed))
 
     def action_quit(self) -> None:
+        """Back to the tally whose count is listed; else leave the desk, once it is asked for twice running."""
+        if self.view.names is not None:
+            self.look(self._before_tally or self.view.whole())
+            self.action_tally(*self._tally_place)
+        elif self._was_asked or self._asked_to_leave:
+            self.action_quit_now()
+        else:
+            self._asked_to_leave = True
+            self.say(LEAVING)
+
+    def action_quit_now(self) -> None:
         """Leave the desk."""
         self.app.exit()
+
+    def on_key(self) -> None:
+        """Any other key takes the wish to leave back."""
+        self._was_asked, self._asked_to_leave = self._asked_to_leave, False

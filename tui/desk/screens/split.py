@@ -59,6 +59,7 @@ class SplitScreen(DeskScreen[None]):
         self.view: CandidateView | None = None
         self.evidence: Mapping[str, Evidence] = {}
         self.chosen = ""
+        self.recorded = ""  # the ruling made here last
         self.is_recording = False
 
     def compose(self) -> ComposeResult:
@@ -119,7 +120,7 @@ class SplitScreen(DeskScreen[None]):
 
     def draw_foot(self, width: int, height: int) -> list[Row]:
         """The ruling in one row."""
-        return [foot_row(width, self.chosen, self.note, self.is_recording, self.can_rule)]
+        return [foot_row(width, self.chosen, self.note, self.is_recording, self.can_rule, self.recorded)]
 
     # --- keys ---
 
@@ -196,7 +197,7 @@ class SplitScreen(DeskScreen[None]):
         """It is in the file: say so, and show where the check stands now."""
         self.app.note_ruling(message.made.utc)
         self.is_recording = False
-        self.chosen, self.note = "", ""
+        self.chosen, self.note, self.recorded = "", "", message.made.ruling
         self.read()
         self.say(f"Recorded: {RULING_WORDS[message.made.ruling]}, with the others in view.")
 

@@ -139,14 +139,15 @@ def side_by_side(blocks: list[list[Row]], column_width: int) -> list[Row]:
     return rows
 
 
-def foot_row(width: int, chosen: str, note: str, is_recording: bool, can_rule: bool) -> Row:
-    """The ruling, in one row."""
+def foot_row(width: int, chosen: str, note: str, is_recording: bool, can_rule: bool, recorded: str = "") -> Row:
+    """The ruling, in one row; `recorded`: the one made here already."""
     head = Span(" RULE  ", "head")
     if not can_rule:
         return fit_row([head, Span("nothing can be ruled here by you", "quiet")], width)
     if is_recording:
         return fit_row([head, Span(f"recording {RULING_WORDS[chosen]} ...", "message")], width)
     said = " / ".join(safe(line) for line in note.splitlines() if line.strip())
-    line = [head, Span(f"> {RULING_WORDS[chosen]} <", "chosen") if chosen else Span("choose once more", "quiet")]
+    waiting = f"{RULING_WORDS[recorded]}, recorded: nothing more is asked here" if recorded else "choose once more"
+    line = [head, Span(f"> {RULING_WORDS[chosen]} <", "chosen") if chosen else Span(waiting, "quiet")]
     line += [Span("   "), Span("Enter", "key", "record()"), Span(" records it", "", "record()")] if chosen else []
     return fit_row([*line, *([Span("   note: ", "quiet"), Span(said)] if said else [])], width)

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 from rich.cells import cell_len
 
-from tui.desk.text import clock, decimal_aligned, fit, number, plural, safe, state_text
+from tui.desk.text import clock, fit, number, plural, safe, state_text
 from tui.desk.widgets.pick_rows import PickRow
 from tui.desk.widgets.rows import Row, Span, paragraph, row
 from tui.model import CHECK_TITLES, CHECKS, OUTCOMES
@@ -20,6 +20,8 @@ HEADS = {"none": "none yet", "stale": "stale*"}
 LABEL_WIDE, CELL_WIDE = 13, 9
 HANDLE_WIDE, HANDLE_MOST, ROOMY = 14, 33, 100  # cells of a handle on a narrow and on a roomy screen; from where on
 WIDEST = 110  # columns of reading text
+LEAST_Q = 1e-6  # our choice: far below it only noise is counted, and templates are never wrong so seldom
+Q_CAUTION = "q: the share of such stars that noise alone would make; wrong templates are not covered."
 NAMED_ON_SCREEN = 200  # survivors; the list that Enter makes has them all
 
 
@@ -126,15 +128,25 @@ def left_rows(tally: Tally, width: int, choice: Choice) -> list[PickRow]:
     rows += cell_rows(counts, width, choice.after(rows))
     names = survivors.names[:NAMED_ON_SCREEN]
     if tally.q_values:
-        q = decimal_aligned([number(tally.q_values.get(name), 2) for name in names])
+        q = [q_text(tally.q_values.get(name)) for name in names]
         rows += [PickRow(row((f"   {fit(safe(name), 30, cut='middle')}", "strong"), f"  q {value}"))
                  for name, value in zip(names, q, strict=True)]  # fmt: skip
+        rows += text_rows([Q_CAUTION], width) if names else []
     elif names:
         rows += text_rows([", ".join(safe(name) for name in names)], width)
     if survivors.unnamed:
         verb = "is" if survivors.unnamed == 1 else "are"
         rows += text_rows([f"{survivors.unnamed} of the unexplained {verb} still sealed to you and not named."], width)
     return rows
+
+
+def q_text(q: float | None) -> str:
+    """A false discovery rate; one that no template is good enough for as below that.
+
+    >>> q_text(0.031), q_text(7.2e-189), q_text(None)
+    ('= 0.031', '< 1e-6', '= --')
+    """
+    return "< 1e-6" if q is not None and q < LEAST_Q else f"= {number(q, 2)}"
 
 
 def reviewer_rows(tally: Tally, width: int) -> list[PickRow]:

@@ -12,11 +12,20 @@ from textual.widgets import Input, Static
 class FindInput(Input):
     """A text line that the Enter, Tab and arrow keys leave."""
 
-    BINDINGS = [Binding("enter,tab,down,up", "leave", show=False)]
+    BINDINGS = [
+        Binding("enter,tab,down,up", "leave", show=False),
+        Binding("escape", "give_up", show=False),  # never needed: on slow lines it may be taken for another key's start
+    ]
+    LEAVES = ("Enter", "ends the line; Esc drops it; letters are text here")
 
     def action_leave(self) -> None:
         """Back to the list."""
         self.post_message(FindLine.Left())
+
+    def action_give_up(self) -> None:
+        """Back to the whole list."""
+        self.value = ""
+        self.post_message(FindLine.Left(is_given_up=True))
 
 
 class FindLine(Horizontal):
@@ -29,7 +38,11 @@ class FindLine(Horizontal):
     """
 
     class Left(Message):
-        """The reader is done typing."""
+        """The reader is done typing; `is_given_up`: and wants nothing of it."""
+
+        def __init__(self, is_given_up: bool = False) -> None:
+            super().__init__()
+            self.is_given_up = is_given_up
 
     def __init__(self, prompt: str = " find ", hint: str = "  Enter: to the list ", *, id: str | None = None) -> None:
         super().__init__(id=id)

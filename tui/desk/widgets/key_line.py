@@ -69,10 +69,7 @@ def _placed(pieces: list[Entry], width: int) -> list[list[Entry]]:
     return lines
 
 
-TYPING = {  # in a note or not -> the key that leaves, and what is said of it
-    False: ("Enter", "ends the line; letters are text here"),
-    True: ("Tab", "leaves the note; Enter begins a new line"),
-}
+IN_NOTE = ("Tab", "leaves the note; Enter begins a new line")  # the key that leaves, and what is said of it
 
 
 class KeyLine(Widget):
@@ -115,7 +112,7 @@ class KeyLine(Widget):
             from textual.widgets import Input, TextArea  # the first rows come before there is anything to type in
 
             if isinstance(typed_in, (Input, TextArea)):
-                return [Entry(*TYPING[isinstance(typed_in, TextArea)], "", 1)]
+                return [Entry(*getattr(typed_in, "LEAVES", IN_NOTE), "", 1)]
         answers = [(key, self.offers(key.id)) for key in self.keys]
         offered = (replace(key, label=said) if isinstance(said, str) else key for key, said in answers if said)
         return entries(tuple(offered), self.keymap)

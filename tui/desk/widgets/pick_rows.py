@@ -11,6 +11,8 @@ from textual.message import Message
 from tui.desk.widgets.rows import Row, Span, fit_row
 from tui.desk.widgets.rows_view import RowsView
 
+ALL = 10_000  # screens: more than anything takes
+
 
 @dataclass(frozen=True, slots=True)
 class PickRow:
@@ -47,7 +49,7 @@ class PickRows(RowsView):
 
     def move(self, rows: int) -> None:
         """Choose the next row that can be chosen, so many on; where there is none, scroll."""
-        places = [i for i, made in enumerate(self._made) if made.target is not None]
+        places = self._places
         if not places:
             self.scroll_rows(rows)
             return
@@ -56,6 +58,33 @@ class PickRows(RowsView):
         self.choose(places[max(0, min(wanted, len(places) - 1))])
         if wanted < 0 or wanted >= len(places):
             self.scroll_rows(rows)
+
+    def turn(self, screens: int) -> None:
+        """Move by whole screens, one row staying in sight, and choose what can be chosen nearest to before."""
+        self.scroll_rows(screens * max(1, self.size.height - 1))
+        seen = range(self._first, self._first + self.size.height - self.has_above_below[1])
+        places = [i for i in self._places if i in seen]
+        if places:
+            self.line = min(places, key=lambda i: abs(i - self.line))
+            self.rows_from(self._marked_rows)
+
+    def choose_nearest(self, line: int) -> None:
+        """Choose the row that can be chosen and stands nearest to a line."""
+        self._redraw()
+        if self._places:
+            self.choose(min(self._places, key=lambda i: abs(i - line)))
+
+    @property
+    def has_above_below(self) -> tuple[bool, bool]:
+        """Whether there are rows above those in sight, and below."""
+        if not self.size.height:
+            return False, False
+        self._redraw()
+        return self._first > 0, self._first + self.size.height < len(self._made)
+
+    @property
+    def _places(self) -> list[int]:
+        return [i for i, made in enumerate(self._made) if made.target is not None]
 
     def choose(self, line: int) -> None:
         """Choose a row and bring it into sight."""

@@ -7,7 +7,10 @@ from dataclasses import dataclass
 from functools import lru_cache
 from typing import TYPE_CHECKING
 
-from tui.desk.text import KEY_OF_CHECK, SHORT_CHECKS, fit, outcome_text, safe, short_band, signed, state_text, thousands
+from rich.cells import cell_len
+
+from tui.desk.text import KEY_OF_CHECK, SHORT_CHECKS, fit, number, outcome_text, safe, short_band, signed
+from tui.desk.text import state_text, thousands
 from tui.model import CHECKS
 
 if TYPE_CHECKING:
@@ -15,12 +18,14 @@ if TYPE_CHECKING:
 
 Cell = tuple[str, str]  # text, the name of its style: `plain`, `quiet`, `attention` or a state
 NAME_WIDEST = 30
-NAME_NARROWEST = 11
+NAME_NARROWEST = 9
+LONGEST_PULL = 5  # cells; a longer one is written with an exponent
+ROOMY = 92  # columns from which the oddness has room for its own word
 
 
 @dataclass(frozen=True, slots=True)
 class Columns:
-    """Cells for each column at one width; 0 leaves a column out. Each is followed by its gap."""
+    """Cells for each column at one width. Each is followed by its gap."""
 
     width: int
     name: int
@@ -28,7 +33,7 @@ class Columns:
     check: int
     outcome: int = 11
     yours: int = 5
-    band: int = 7
+    band: int = 7  # the farthest band and its pull share their cells
     pull: int = 5
     gap: int = 1
 
@@ -38,13 +43,14 @@ def columns_for(width: int) -> Columns:
     """The columns that a list `width` cells wide has room for.
 
     >>> columns_for(80).name, columns_for(80).oddness, columns_for(120).oddness
-    (11, 0, 7)
+    (9, 5, 9)
     """
     check = 7 if width < 100 else 8
     gap = 1 if width < 100 else 2
-    oddness = 7 if width >= 92 else 0
-    used = 2 + gap + oddness + 7 + 5 + gap + check * len(CHECKS) + 11 + gap + 5 + 1
-    return Columns(width, max(NAME_NARROWEST, min(NAME_WIDEST, width - used)), oddness, check, gap=gap)
+    oddness, band, pull = (9, 7, 5) if width >= ROOMY else (5, 6, 4)
+    used = 2 + gap + oddness + band + pull + gap + check * len(CHECKS) + 11 + gap + 5
+    name = max(NAME_NARROWEST, min(NAME_WIDEST, width - used))
+    return Columns(width, name, oddness, check, band=band, pull=pull, gap=gap)
 
 
 def head_cells(
@@ -58,12 +64,9 @@ def head_cells(
         letters: the key that filters by each check.
     """
     gap = " " * columns.gap
-    odd = "odd by" if columns.oddness else "most in"
     cells = [("  ", "quiet"), (fit("name", columns.name) + gap, _head("name", order))]
-    if columns.oddness:
-        cells.append((fit("sigma", columns.oddness - 2, align="right") + "  ", _head("oddness", order)))
-        odd = "most in"
-    cells.append((fit(odd, columns.band + columns.pull) + gap, "quiet" if columns.oddness else _head("oddness", order)))
+    cells.append((_beside_gap("oddness" if columns.width >= ROOMY else "odd", columns), _head("oddness", order)))
+    cells.append((fit("most in", columns.band + columns.pull) + gap, "quiet"))
     for check in CHECKS:
         cells += _check_head(SHORT_CHECKS[check], letters.get(check, ""), columns.check, check == active)
     cells.append((fit("outcome", columns.outcome) + gap, _head("outcome", order)))
@@ -85,12 +88,8 @@ def row_cells(row: QueueRow, columns: Columns, chosen: bool) -> list[Cell]:
     """One candidate in its columns; every cell carries its meaning in text, and a style beside."""
     gap = " " * columns.gap
     cells = [("> " if chosen else "  ", "attention"), (fit(safe(row.name), columns.name, cut="middle") + gap, "name")]
-    if columns.oddness:
-        cells.append((fit(_sigma(row.oddness), columns.oddness - 2, align="right") + "  ", "plain"))
-    band = fit(short_band(row.odd_band) if row.odd_band else "--", columns.band)
-    decimals = 0 if abs(row.odd_pull) >= 99.95 else 1
-    pull = fit(signed(row.odd_pull, decimals) if row.odd_band else "", columns.pull, align="right")
-    cells.append((band + pull + gap, "plain"))
+    cells.append((_beside_gap(_sigma(row.oddness, columns.width >= ROOMY), columns), "plain"))
+    cells.append((_most_text(row, columns.band + columns.pull) + gap, "plain"))
     for check in CHECKS:
         state = row.states.get(check, "")
         text = state_text(state, check in row.stale) if state else ""
@@ -136,10 +135,34 @@ def compact(count: int | None) -> str:
     return f"{count / 1e6:.2f}M"
 
 
-def _sigma(oddness: float | None) -> str:
+def _beside_gap(text: str, columns: Columns) -> str:
+    """A number in the column of the oddness, or the word above it."""
+    gap = 2 if columns.width >= ROOMY else 1
+    return fit(text, columns.oddness - gap, align="right") + " " * gap
+
+
+def _most_text(row: QueueRow, width: int) -> str:
+    """The farthest band at the left, its pull at the right, which gives its decimal up before the band is cut."""
+    if not row.odd_band:
+        return fit("--", width)
+    band = short_band(row.odd_band)
+    pull = signed(row.odd_pull, 0 if abs(row.odd_pull) >= 99.95 else 1)
+    if cell_len(band) + 1 + len(pull) > width:
+        pull = signed(row.odd_pull, 0)
+    if len(pull) > LONGEST_PULL:
+        pull = f"{'+' if row.odd_pull > 0 else ''}{number(row.odd_pull, 1)}"
+    return fit(band, width - 1 - len(pull)) + " " + pull
+
+
+def _sigma(oddness: float | None, is_roomy: bool) -> str:
+    """In at most 4 cells, or in 7 where there is room."""
     if oddness is None or oddness != oddness:
         return "--"
-    return f"{oddness:.1f}" if oddness < 1000 else thousands(round(oddness))
+    if oddness < (1000 if is_roomy else 99.95):
+        return f"{oddness:.1f}"
+    if is_roomy:
+        return thousands(round(oddness))
+    return f"{oddness:.0f}" if oddness < 9999.5 else f"{oddness / 1e3:.0f}k"
 
 
 def _check_head(word: str, letter: str, width: int, is_active: bool) -> list[Cell]:
