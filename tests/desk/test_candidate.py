@@ -44,7 +44,10 @@ def test_letter_chooses_and_enter_records_and_goes_on(fake_session, on_candidate
         assert (made.candidate, made.check, made.ruling) == (NAME, "star", "short")
         assert made.evidence_digest == "star-0"
         assert screen.walk.check == "instrument" and screen.walk.chosen == ""
-        assert "Recorded: star falls short." in screen_text(app)
+        text = screen_text(app)
+        assert "Recorded: star falls short" in text and "LOOK AT" in text, "what to read stays in its place"
+        await press("right")
+        assert "Recorded" not in screen_text(app)
 
     on_candidate(fake_session, steps)
 
@@ -53,21 +56,57 @@ def test_enter_alone_records_nothing(fake_session, on_candidate, screen_text):
     async def steps(app, screen, press):
         await press("enter")
         assert fake_session.log == [] and "Choose first" in screen_text(app)
-        await press("e", "e", "enter")
-        assert fake_session.log == []
 
     on_candidate(fake_session, steps)
 
 
-def test_whole_walk_ends_at_the_next_candidate(fake_session, on_candidate, screen_text):
+def test_a_letter_that_bounces_keeps_the_choice_and_another_changes_it(fake_session, on_candidate):
+    async def steps(app, screen, press):
+        await press("e", "e")
+        assert screen.walk.chosen == "explains"
+        await press("f", "enter")
+        assert [made.ruling for made in fake_session.log] == ["short"]
+
+    on_candidate(fake_session, steps)
+
+
+def test_whole_walk_ends_on_the_star_itself_at_what_was_ruled(fake_session, on_candidate, screen_text):
     async def steps(app, screen, press):
         for _ in CHECKS:
             await press("f", "enter")
         assert [made.check for made in fake_session.log] == list(CHECKS)
+        text = " ".join(screen_text(app).split())
+        assert screen.walk.name == NAME and "[8 rulings]" in text and "rulings of others" in text
+        assert f"You are done with {NAME}; the seal is open" in text and "m: next star, a: add a note" in text
+        for key in ("enter", "f", "f"):  # a steady rhythm rules on nothing that was not looked at
+            await press(key)
+        assert screen.walk.name == NAME and len(fake_session.log) == len(CHECKS)
+        assert "others in view" in screen_text(app)
+        await press("m")
         assert screen.walk.name == "SM-0002" and screen.walk.check == "star"
-        assert "You are done with SM-0001" in screen_text(app)
         await press("z")
         assert screen.walk.name == NAME
+
+    on_candidate(fake_session, steps)
+
+
+def test_enter_on_a_finished_star_says_how_to_go_on(fake_session, on_candidate, screen_text):
+    async def steps(app, screen, press):
+        await press("e", "enter", "enter")
+        assert len(fake_session.log) == 1 and "Done. m: next star, a: add a note." in screen_text(app)
+        await press("p")
+        assert "m next star" in screen_text(app)
+
+    on_candidate(fake_session, steps)
+
+
+def test_a_note_after_the_end_goes_to_the_same_star_with_the_ruling_once_more(fake_session, on_candidate, screen_text):
+    async def steps(app, screen, press):
+        await press("d", "e", "enter", "a", "w", "h", "y", "tab")
+        assert screen.walk.name == NAME and "r it stands" in screen_text(app)
+        await press("r", "enter")
+        assert [(one.candidate, one.check, one.ruling, one.note) for one in fake_session.log] == [
+            (NAME, "dust", "explains", ""), (NAME, "dust", "explains", "why")]  # fmt: skip
 
     on_candidate(fake_session, steps)
 
@@ -76,6 +115,8 @@ def test_explains_ends_the_walk_at_once(fake_session, on_candidate):
     async def steps(app, screen, press):
         await press("d", "e", "enter")
         assert [made.check for made in fake_session.log] == ["dust"]
+        assert screen.walk.name == NAME and screen.walk.is_done
+        await press("m")
         assert screen.walk.name == "SM-0002"
 
     on_candidate(fake_session, steps)
@@ -85,7 +126,7 @@ def test_order_of_the_list_decides_what_is_next(fake_session, on_candidate):
     ids = fake_session.order("name")
 
     async def steps(app, screen, press):
-        await press("e", "enter")
+        await press("e", "enter", "m")
         place = list(ids).index(fake_session.id_of(NAME))
         wanted = next(row.name for row in fake_session.rows(ids[place + 1 :]) if row.needs_me)
         assert screen.walk.name == wanted
@@ -109,12 +150,12 @@ def test_later_skips_for_good_and_says_when_nothing_is_left(fake_session, on_can
 def test_withdraw_takes_two_keys(fake_session, on_candidate, screen_text):
     async def steps(app, screen, press):
         await press("w")
-        assert "no ruling of yours to take back" in screen_text(app)
+        assert "no ruling of yours to withdraw" in screen_text(app)
         await press("f", "enter", "s", "w")
-        assert "> take back <" in screen_text(app)
+        assert "> withdraw <" in screen_text(app)
         await press("enter")
         assert [made.ruling for made in fake_session.log] == ["short", "withdrawn"]
-        assert screen.walk.check == "star"
+        assert screen.walk.check == "star" and "Withdrawn: your ruling on star" in screen_text(app)
 
     on_candidate(fake_session, steps)
 
@@ -123,20 +164,24 @@ def test_nodata_can_only_be_unclear(fake_session, on_candidate, screen_text):
     async def steps(app, screen, press):
         await press("x", "e")
         assert "No data test this check" in screen_text(app) and screen.walk.chosen == ""
+        await press("f", "enter")
+        assert "only u (unclear) can be ruled here" in screen_text(app) and fake_session.log == []
         await press("u", "enter")
         assert fake_session.log[-1].ruling == "unclear"
 
     on_candidate(fake_session, steps, name="SM-0004")
 
 
-def test_stale_ruling_is_told_and_reaffirmed_by_one_key(fake_session, on_candidate, screen_text):
+def test_stale_ruling_is_told_and_chosen_anew_by_one_key(fake_session, on_candidate, screen_text):
     fake_session.rule("SM-0006", "blend", "short", "weak")
 
     async def steps(app, screen, press):
         await press("b")
         text = screen_text(app)
-        assert "<short*" in text and "measured anew" in text and "r it stands" in text
+        assert "<short*" in text and "measured anew" in text and "r it stands" in text and "u unclear" in text
         await press("r")
+        assert len(fake_session.log) == 1 and "> falls short <" in screen_text(app)
+        await press("enter")
         assert (fake_session.log[-1].ruling, fake_session.log[-1].note) == ("short", "weak")
 
     on_candidate(fake_session, steps, name="SM-0006")
@@ -199,5 +244,34 @@ def test_changed_evidence_asks_once_before_anything_is_recorded(fake_session, on
         assert screen.walk.own_evidence.digest == "star-30"
         await press("f", "enter")
         assert [made.evidence_digest for made in fake_session.log] == ["star-30"]
+
+    on_candidate(fake_session, steps)
+
+
+def test_a_ruling_made_on_another_screen_is_told_before_a_second_one_takes_its_place(
+    fake_session, on_candidate, screen_text
+):
+    async def steps(app, screen, press):
+        fake_session.rule(NAME, "star", "unclear", "made elsewhere")
+        await press("f", "enter")
+        assert len(fake_session.log) == 1
+        assert "ruled this unclear at 05:06 UTC on another screen" in " ".join(screen_text(app).split())
+        assert screen.walk.chosen == "short" and screen.walk.check == "star"
+        await press("enter")
+        assert [made.ruling for made in fake_session.log] == ["unclear", "short"]
+
+    on_candidate(fake_session, steps)
+
+
+def test_a_queue_that_may_only_be_read_says_so_and_takes_nothing(fake_session, on_candidate, screen_text):
+    fake_session.read_only = True
+
+    async def steps(app, screen, press):
+        assert "read only: nothing can be ruled or kept" in screen_text(app) and "chi2" in screen_text(app)
+        for key in ("f", "a", "l", "w"):
+            await press(key)
+            assert "The queue is read only" in screen_text(app) and screen.walk.name == NAME
+        await press("enter")
+        assert fake_session.log == [] and fake_session.drafts == {}
 
     on_candidate(fake_session, steps)

@@ -81,7 +81,7 @@ def test_walk_goes_on_in_order_and_round_once():
 def test_refusals_are_sentences():
     assert refusal(view_of((), {"dust": "nodata"}), "dust", "explains").endswith("nothing need be.")
     assert refusal(view_of((), {"dust": "nodata"}), "dust", "unclear") == ""
-    assert refusal(view_of(()), "dust", "withdrawn") == "There is no ruling of yours to take back on this check."
+    assert refusal(view_of(()), "dust", "withdrawn") == "There is no ruling of yours to withdraw on this check."
 
 
 def test_nudges_are_half_a_sigma_and_never_nothing():

@@ -160,7 +160,7 @@ class PracticeSession:
     def withdraw(self, name: str, check: str, note: str = "") -> Ruling:
         """Take a ruling back; its answer is hidden again."""
         if (name, check) not in self._own:
-            raise StoreError("There is no ruling of yours to take back on this check.")
+            raise StoreError("There is no ruling of yours to withdraw on this check.")
         return self.rule(name, check, "withdrawn", note)
 
     def draft(self, name: str, check: str) -> str:

@@ -112,8 +112,8 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
         if event.time < self._ready_at:
             event.stop()
             event.prevent_default()
-        elif self.walk.message:
-            self.walk.message = ""
+        elif self.walk.message or self.walk.recorded:
+            self.walk.message, self.walk.recorded = "", ()
             self.draw_foot()
 
     def on_worker_state_changed(self, event: Worker.StateChanged) -> None:
@@ -246,7 +246,7 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
 
     def action_note(self) -> None:
         """Write the note of this check."""
-        if self.session.reviewer is None or self.walk.loaded is None:
+        if self.session.reviewer is None or self.session.read_only or self.walk.loaded is None:
             self.say(self.cannot_rule())
             return
         self._draft_of = (self.walk.name, self.walk.check)

@@ -31,6 +31,7 @@ from tui.model import CHECK_TITLES, CHECKS
 if TYPE_CHECKING:
     from tui.workflow.session import Session
 
+READ_ONLY = "read only: nothing can be ruled or kept"
 READER_ONLY = "you read without a handle. To rule: plainlight join QUEUE HANDLE"
 WAITING = "computing the evidence: rulings open when the numbers are here"
 SPLIT = "The rulings on this check are split: page 8 shows them side by side, and you may rule once more."
@@ -121,7 +122,8 @@ def draw_foot(
     message, point, look, caution = advice(walk)
     rows = advice_rows(width, height - 1 - KEY_ROWS, message, point, look, caution) if height > 1 + KEY_ROWS else []
     rows.append(rule_row(width, rule_facts(walk, session)))
-    keys = writing() if is_writing else offered(walk, keymap, session.reviewer is not None, scrolls)
+    can_rule = session.reviewer is not None and not session.read_only
+    keys = writing() if is_writing else offered(walk, keymap, can_rule, scrolls)
     return [fit_row(line, width, more=" ..") for line in [*rows, *key_rows(width, keys, KEY_ROWS)]]
 
 
@@ -156,7 +158,7 @@ def rule_facts(walk: Walk, session: Session) -> RuleFacts:
     """What the ruling line says now."""
     view = walk.loaded.view if walk.loaded else None
     return RuleFacts(
-        reader_only=READER_ONLY if session.reviewer is None else "",
+        reader_only=READER_ONLY if session.reviewer is None else READ_ONLY if session.read_only else "",
         waiting=(
             "no evidence, so nothing can be ruled" if walk.trouble else WAITING if walk.own_evidence is None else ""
         ),
@@ -166,6 +168,9 @@ def rule_facts(walk: Walk, session: Session) -> RuleFacts:
         own=view.own.get(walk.check) if view else None,
         stale=view.stale.get(walk.check, "") if view else "",
         is_nodata=bool(view and view.states.get(walk.check) == "nodata"),
+        recorded=walk.recorded,
+        with_others=bool(view and view.seal_open),
+        is_done=walk.is_done,
     )
 
 

@@ -13,6 +13,7 @@ Entry = tuple[str, str, str]  # keys, what they do, the action of a click
 
 _DEFAULTS = {key.id: key for key in PLACES["candidate"]}
 READING = (
+    ("next", "next star", "next_for_me()"),
     ("note", "note", "note()"),
     ("next_check", "next check", "next_check()"),
     ("checks", "checks", ""),
@@ -29,6 +30,7 @@ READING = (
     ("help", "help", "help()"),
 )
 PAGE = (
+    ("next", "next star", "next_for_me()"),
     ("views", "next page", "views()"),
     ("digits", "pages", ""),
     ("up down", "scroll", ""),
@@ -85,6 +87,8 @@ def _works(ids: str, walk: Walk, can_rule: bool, scrolls: bool) -> bool:
         return scrolls if walk.page else walk.fits > 1
     if ids == "withdraw":
         return can_rule and walk.loaded is not None and walk.check in walk.loaded.view.own
+    if ids == "next":
+        return can_rule and walk.is_done
     if ids in ("note", "later"):
         return can_rule
     if ids == "pan_left pan_right":

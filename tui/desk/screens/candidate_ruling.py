@@ -7,8 +7,9 @@ from typing import TYPE_CHECKING
 
 from textual import work
 
-from tui.desk.screens.walk import Loaded, Walk, next_to_rule, refusal
-from tui.desk.text import RULING_WORDS
+from tui.desk.screens.pages import RULINGS
+from tui.desk.screens.walk import ONLY_UNCLEAR, Loaded, Walk, next_to_rule, refusal
+from tui.desk.text import RULING_WORDS, SHORT_CHECKS, clock, state_text
 from tui.errors import TuiError
 from tui.model import CHECK_TITLES, Evidence, Ruling
 from tui.workflow.records import CandidateView
@@ -17,6 +18,9 @@ if TYPE_CHECKING:
     from tui.desk.screens.candidate import CandidateScreen
     from tui.workflow.session import Session
 
+CHOOSE = "Choose first: e explains, f falls short, u unclear. Then Enter records."
+FURTHER = "m: next star, a: add a note."
+READ_ONLY = "The queue is read only: nothing can be ruled or kept. Copy it to a folder of yours, and gather the copy."
 NOBODY = "Nothing else needs you. q: back to the queue."
 MORE = 400  # candidates of the list looked at for the next one, before the queue is asked
 CHANGED = "The evidence changed while you looked; this is the new one. Nothing was recorded: look, and choose again."
@@ -31,35 +35,35 @@ class RecordsRulings:
     """The part of the candidate's screen that rules; every write is off the interface's thread."""
 
     def action_choose(self: CandidateScreen, ruling: str) -> None:
-        """Choose, record nothing yet; the same letter again takes the choice back."""
+        """Choose, record nothing yet; the same letter again, as slow lines repeat it, keeps the choice."""
         walk = self.walk
         why = self.cannot_rule() or refusal(walk.loaded.view, walk.check, ruling)
         if why:
             self.say(why)
             return
-        walk.chosen = "" if walk.chosen == ruling else ruling
-        walk.asking_compare = False
+        walk.choose(ruling)
         self.draw_foot()
 
     def action_withdraw(self: CandidateScreen) -> None:
-        """Choose to take the ruling on this check back."""
+        """Choose to withdraw the ruling on this check."""
         self.action_choose("withdrawn")
 
     def action_reaffirm(self: CandidateScreen) -> None:
-        """A stale ruling still holds: record it anew."""
+        """A ruling that is stale, or gets a further note, still holds: choose it once more."""
         walk = self.walk
         own = walk.loaded.view.own.get(walk.check) if walk.loaded else None
-        if self.cannot_rule() or own is None or walk.check not in walk.loaded.view.stale:
+        if self.cannot_rule() or own is None or not may_stand(walk):
             self.say(self.cannot_rule() or "There is no stale ruling of yours on this check.")
             return
-        walk.chosen = own.ruling
-        walk.notes[walk.check] = walk.note or own.note
-        self.action_record()
+        walk.choose(own.ruling, stands=True)
+        self.draw_foot()
 
     def cannot_rule(self: CandidateScreen) -> str:
         """Why nothing can be ruled now, as a plain sentence; '' where it can."""
         if self.session.reviewer is None:
             return "You read without a handle. To rule: plainlight join QUEUE HANDLE, then review --as HANDLE."
+        if self.session.read_only:
+            return READ_ONLY
         if self.walk.loaded is None or self.walk.own_evidence is None:
             return "The evidence is not here yet: rulings open when the numbers are."
         return "Recording ..." if self.walk.recording else ""
@@ -68,7 +72,7 @@ class RecordsRulings:
         """Record what was chosen with its note; the evidence on view is cited."""
         walk = self.walk
         if self.cannot_rule() or not walk.chosen:
-            self.say(self.cannot_rule() or "Choose first: e explains, f falls short, u unclear. Then Enter records.")
+            self.say(self.cannot_rule() or why_nothing_is_chosen(walk))
             return
         walk.recording = True
         self._ready_at = float("inf")
@@ -77,10 +81,13 @@ class RecordsRulings:
 
     @work(group="record", exit_on_error=False)
     async def record(self: CandidateScreen, walk: Walk, check: str, ruling: str, note: str) -> None:
-        """Write the ruling off this thread, then go on; where the evidence has changed meanwhile, ask once more."""
-        name, shown = walk.name, walk.own_evidence.digest
+        """Write the ruling off this thread, then go on; where anything has changed meanwhile, ask once more."""
+        name, shown, current = walk.name, walk.own_evidence.digest, own_id(walk.loaded.view, check)
 
-        def job(session: Session) -> tuple[Ruling, CandidateView] | None:
+        def job(session: Session) -> tuple[Ruling | None, CandidateView] | None:
+            view = session.view(name)
+            if own_id(view, check) != current:
+                return None, view
             if ruling == "withdrawn":
                 made = session.withdraw(name, check, note)
             elif has_changed(session.stored_evidence(name).get(check), shown):
@@ -103,41 +110,53 @@ class RecordsRulings:
             walk.message = CHANGED
             self.open(name, check, keep_message=True)
             return
-        self.note_recorded(written[0].utc)
+        made, view = written
+        if made is None:
+            self.take_elsewhere(walk, view, check)
+            return
+        self.note_recorded(made.utc)
         if self.is_here(walk):
-            await self.go_on(walk, written[1], check, ruling)
+            await self.go_on(walk, view, check, ruling)
+
+    def take_elsewhere(self: CandidateScreen, walk: Walk, view: CandidateView, check: str) -> None:
+        """The same reviewer ruled meanwhile on another screen: say so, and let them decide what holds."""
+        own = view.own.get(check)
+        ruled = f"ruled this {RULING_WORDS[own.ruling]} at {clock(own.utc)}" if own else "withdrew your ruling on this"
+        begun = dict(walk.notes)
+        walk.take(Loaded(walk.loaded.candidate, view, walk.loaded.bands))
+        walk.notes |= begun
+        walk.message = f"You {ruled} on another screen. Nothing was recorded here; Enter again records your choice."
+        self.draw()
+        self.be_ready()
 
     def note_recorded(self: CandidateScreen, utc: str) -> None:
         """A ruling is in the file."""
         self.app.note_ruling(utc)
 
     async def go_on(self: CandidateScreen, walk: Walk, view: CandidateView, check: str, ruling: str) -> None:
-        """To the next check that this reviewer has to rule, else to the next candidate."""
+        """To the next check that this reviewer has to rule; after the last, to what has been ruled on this star."""
         walk.take(Loaded(walk.loaded.candidate, view, walk.loaded.bands))
-        said = f"Recorded: {CHECK_TITLES[check]} {RULING_WORDS[ruling]}."
-        following = None if view.done and ruling != "withdrawn" else next_to_rule(view, check)
-        if ruling == "withdrawn" or following is not None:
-            walk.go(check if ruling == "withdrawn" else following)
-            walk.message = said if ruling != "withdrawn" else f"Taken back: your ruling on {CHECK_TITLES[check]}."
-            self.draw()
-            self.be_ready()
-            self.keep_place()
-            self.show_curve(walk, walk.check, 0)
-            return
-        done = f"{said} You are done with {walk.name}"
-        walk.message = f"{done}; the seal is open: {view.outcome}. z goes back to it."
-        await self.take_next(walk)
+        following = None if view.done or ruling == "withdrawn" else next_to_rule(view, check)
+        walk.go(following or check)
+        walk.recorded = recorded_words(check, ruling)
+        if following is None and ruling != "withdrawn":
+            walk.page = RULINGS
+            walk.message = done_words(walk.name, view)
+        self.draw()
+        self.be_ready()
+        self.keep_place()
+        self.show_curve(walk, walk.check, 0)
 
     # --- going on ---
 
     def action_next_for_me(self: CandidateScreen) -> None:
-        """The candidate that needs this reviewer most, wherever the list is."""
+        """From a star that is done the next of the list; else what needs this reviewer most, wherever it stands."""
         self.walk.message = ""
-        self.turn(self.walk, by_list=False)
+        self.turn(self.walk, by_list=self.walk.is_done)
 
     def action_later(self: CandidateScreen) -> None:
         """Leave this candidate for later and take the next."""
-        if self.session.reviewer is None:
+        if self.session.reviewer is None or self.session.read_only:
             self.say(self.cannot_rule())
             return
         name = self.walk.name
@@ -190,6 +209,42 @@ class RecordsRulings:
                 if entry.needs_me and entry.name not in skip:
                     return entry.name
         return session.claim_next(skip)
+
+
+def own_id(view: CandidateView, check: str) -> str:
+    """The id of the reader's current ruling on a check; '' where there is none."""
+    own = view.own.get(check)
+    return own.id if own else ""
+
+
+def may_stand(walk: Walk) -> bool:
+    """Whether the reader's ruling on the check on view can be made once more: it is stale, or a note was begun."""
+    view = walk.loaded.view if walk.loaded else None
+    return view is not None and walk.check in view.own and bool(walk.check in view.stale or walk.note)
+
+
+def why_nothing_is_chosen(walk: Walk) -> str:
+    """What to do where Enter has nothing to record."""
+    if walk.loaded.view.states.get(walk.check) == "nodata":
+        return ONLY_UNCLEAR
+    return f"Done. {FURTHER}" if walk.is_done else CHOOSE
+
+
+def recorded_words(check: str, ruling: str) -> tuple[str, ...]:
+    """What was just recorded, at less and less length."""
+    if ruling == "withdrawn":
+        return f"Withdrawn: your ruling on {CHECK_TITLES[check]}", f"Withdrawn: {SHORT_CHECKS[check]}"
+    return (
+        f"Recorded: {CHECK_TITLES[check]} {RULING_WORDS[ruling]}",
+        f"Recorded: {SHORT_CHECKS[check]} {state_text(ruling)}",
+    )
+
+
+def done_words(name: str, view: CandidateView) -> str:
+    """That a star is finished, and what comes next."""
+    if not view.seal_open:
+        return f"Done. {FURTHER}"
+    return f"You are done with {name}; the seal is open: {view.outcome}. {FURTHER}"
 
 
 def ids_after(session: Session, order: Sequence[int] | Sequence[str], name: str) -> list[int]:

@@ -148,7 +148,7 @@ def _ruling_rows(line: RulingLine, who: str, width: int) -> list[Row]:
     word = SIGNS.get(line.ruling, "") + RULING_WORDS.get(line.ruling, safe(line.ruling))
     marks = ["with others in view"] if line.seen_others else []
     marks += [f"stale: {safe(line.stale)}"] if line.stale else []
-    marks += [] if line.current or line.ruling == "withdrawn" else ["taken back or replaced since"]
+    marks += [] if line.current or line.ruling == "withdrawn" else ["withdrawn or replaced since"]
     when = f"{line.utc[:10]} {clock(line.utc)}".strip()
     rows = [row(f"  {fit(CHECK_TITLES.get(line.check, safe(line.check)), 12)} ", (fit(word, 13), line.ruling),
                 (f" {fit(who, 12)} {when}", "quiet"))]  # fmt: skip

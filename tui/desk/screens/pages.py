@@ -34,6 +34,7 @@ PAGES = (
 
 
 FACTS = 1 + [page.title for page in PAGES].index("facts")  # it has every caution in full
+RULINGS = 1 + [page.title for page in PAGES].index("rulings")  # where a walk ends
 LOOK_ALIKES = 1 + [page.title for page in PAGES].index("look-alikes")  # what this page shows is looked for when asked
 
 

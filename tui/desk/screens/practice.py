@@ -48,7 +48,7 @@ class PracticeScreen(CandidateScreen):
         walk.story = tuple(self.practice.story(walk.name))
         following = check if ruling == "withdrawn" or view.done else next_to_rule(view, check) or check
         walk.go(following)
-        walk.message = "Taken back." if ruling == "withdrawn" else self.answer_words(walk.name, check, ruling)
+        walk.message = "Withdrawn." if ruling == "withdrawn" else self.answer_words(walk.name, check, ruling)
         if view.done and ruling != "withdrawn":
             walk.message += f"\n{self.practice.star(walk.name).told} {self.further()}"
         self.draw()

@@ -18,6 +18,7 @@ if TYPE_CHECKING:
 
 STEP = 0.02  # of a parameter's value: one nudge by hand where the fit gives no interval
 LEAST_STEP = 1e-6
+ONLY_UNCLEAR = "No data test this check: only u (unclear) can be ruled here, and nothing need be."
 
 
 @dataclass(frozen=True)
@@ -72,6 +73,8 @@ class Walk:
     first_cutout: int = 0
     fit_index: int = 0
     chosen: str = ""  # ruling chosen and not yet recorded
+    stands: bool = False  # what is chosen is the reader's own ruling once more, with its note
+    recorded: tuple[str, ...] = ()  # what was just recorded, at less and less length; it goes with the next key
     notes: dict[str, str] = field(default_factory=dict)  # check -> note begun and not recorded
     message: str = ""
     is_lesson: bool = False  # what is said is read in full before anything else: the answers of a practice star
@@ -91,8 +94,19 @@ class Walk:
 
     @property
     def note(self) -> str:
-        """The note begun on the check on view."""
-        return self.notes.get(self.check, "")
+        """The note begun on the check on view; where a ruling is to stand, its own unless another was begun."""
+        begun = self.notes.get(self.check, "")
+        return begun or (self.loaded.view.own[self.check].note if self.stands else "")
+
+    @property
+    def is_done(self) -> bool:
+        """Whether the reader is done with this candidate, and it asks them nothing more."""
+        view = self.loaded.view if self.loaded else None
+        return view is not None and view.done and not view.needs_me
+
+    def choose(self, ruling: str, stands: bool = False) -> None:
+        """Choose a ruling; nothing is recorded yet."""
+        self.chosen, self.stands, self.asking_compare = ruling, stands, False
 
     def take(self, loaded: Loaded) -> None:
         """Take in what the queue says of the candidate now; notes begun go with it."""
@@ -127,6 +141,7 @@ class Walk:
         self.check = check
         self.fit_index = 0
         self.chosen = self.compared = ""
+        self.stands, self.recorded = False, ()
         self.message = self.message if keep_message else ""
         self.hand, self.asking_compare = None, False
 
@@ -207,9 +222,9 @@ def next_to_rule(view: CandidateView, after: str) -> str | None:
 def refusal(view: CandidateView, check: str, ruling: str) -> str:
     """Why a ruling cannot be chosen here, as a plain sentence; '' where it can."""
     if ruling == "withdrawn" and check not in view.own:
-        return "There is no ruling of yours to take back on this check."
+        return "There is no ruling of yours to withdraw on this check."
     if ruling in ("explains", "short") and view.states.get(check) == "nodata":
-        return "No data test this check: only u (unclear) can be ruled, and nothing need be."
+        return ONLY_UNCLEAR
     return ""
 
 

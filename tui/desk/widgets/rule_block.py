@@ -9,6 +9,7 @@ from tui.desk.text import RULING_WORDS, fit, safe
 from tui.desk.widgets.rows import Row, Span, fit_row, hanging, row, row_width
 from tui.model import Ruling
 
+NOTE_ROOM = 20  # columns that the beginning of a note takes beside the choice
 LABEL = 9  # columns of the words at the left
 
 
@@ -24,6 +25,9 @@ class RuleFacts:
     own: Ruling | None = None
     stale: str = ""
     is_nodata: bool = False
+    recorded: tuple[str, ...] = ()  # what was just recorded, at less and less length
+    with_others: bool = False  # the seal is open: whatever is ruled now is marked so
+    is_done: bool = False  # with this candidate, and nothing to rule again
 
 
 def advice_rows(width: int, height: int, message: str, point: str, look: Sequence[str], caution: str) -> list[Row]:
@@ -56,11 +60,11 @@ def advice_parts(
 
 
 def rule_row(width: int, facts: RuleFacts) -> Row:
-    """The one line in which a ruling is chosen and recorded."""
+    """The one line in which a ruling is chosen and recorded, as much of it as there is room for."""
     start = Span(" RULE".ljust(LABEL + 1), "head")
-    line = [start, *_rule_words(facts)]
-    if row_width(line) > width:
-        line = [start, *_rule_words(facts, terse=True)]
+    options = [[start, *words] for words in _rule_words(facts)]
+    room = width - (NOTE_ROOM if facts.note and facts.chosen else 0)
+    line = next((one for one in options if row_width(one) <= room), options[-1])
     return _with_note(width, line, facts) if facts.note and not facts.reader_only else fit_row(line, width)
 
 
@@ -100,18 +104,29 @@ def _cut(rows: list[Row], height: int, width: int) -> list[Row]:
     return [*rows[: height - 1], fit_row([*rows[height - 1], Span(" " * width)], width - 1, more=" ..")]
 
 
-def _rule_words(facts: RuleFacts, terse: bool = False) -> Row:
-    """What can be ruled now; `terse` for lines of 80 columns that would run over."""
+def _rule_words(facts: RuleFacts) -> list[Row]:
+    """What can be ruled now, at less and less length."""
     if facts.reader_only:
-        return row((facts.reader_only, "quiet"))
+        return [row((facts.reader_only, "quiet"))]
     if facts.recording:
-        return row((f"recording {RULING_WORDS.get(facts.chosen, facts.chosen)} ...", "message"))
+        return [row((f"recording {RULING_WORDS.get(facts.chosen, facts.chosen)} ...", "message"))]
     if facts.waiting:
-        return row((facts.waiting, "quiet"))
+        return [row((facts.waiting, "quiet"))]
     if facts.chosen:
-        word = "take back" if facts.chosen == "withdrawn" else RULING_WORDS[facts.chosen]
-        return row((f"> {word} <", "chosen"), "   ", ("Enter", "key", "record()"), (" records it", "", "record()"))
-    gap = "  " if terse else "   "
+        word = "withdraw" if facts.chosen == "withdrawn" else RULING_WORDS[facts.chosen]
+        marked = ", marked as made with others in view" if facts.with_others else ""
+        short = ", others in view" if facts.with_others else ""
+        return [
+            row((f"> {word} <", "chosen"), "   ", ("Enter", "key", "record()"), (f" records it{said}", "", "record()"))
+            for said in (marked, short)
+        ]
+    return [
+        [*before, *_choices(gap, facts.is_nodata), *([Span(f"   {hint}", style)] if hint else [])]
+        for before, gap, hint, style in _arranged(facts)
+    ]
+
+
+def _choices(gap: str, only_unclear: bool) -> Row:
     choices = row(
         ("e", "key", "choose('explains')"),
         (f" explains{gap}", "", "choose('explains')"),
@@ -120,35 +135,56 @@ def _rule_words(facts: RuleFacts, terse: bool = False) -> Row:
         ("u", "key", "choose('unclear')"),
         (" unclear", "", "choose('unclear')"),
     )
+    return choices[4:] if only_unclear else choices
+
+
+def _arranged(facts: RuleFacts) -> list[tuple[Row, str, str, str]]:
+    """What stands before the choices, the gaps, what stands behind them and its style: longest first.
+
+    What was just recorded goes last but for the choices.
+    """
+    befores = _before(facts)
+    if facts.recorded:
+        befores += [[]] if facts.own and not (facts.stale or facts.note) else []
+        wanted = [(before, hint, "message") for hint in facts.recorded for before in befores]
+    else:
+        wanted = [(before, hint, "quiet") for before in befores for hint in _hints(facts)]
+    wanted += [(before, "", "") for before in befores]
+    return [(before, gap, hint, style) for before, hint, style in wanted for gap in ("   ", "  ")]
+
+
+def _before(facts: RuleFacts) -> list[Row]:
+    """How the reader's own ruling on this check stands."""
     if facts.is_nodata:
-        return row(("no data test this check, nothing need be ruled", "quiet"), "   ", *choices[4:])
-    if facts.own is not None and facts.stale:
-        ruled = RULING_WORDS[facts.own.ruling]
-        return row(
-            (f"stale: {ruled}" if terse else f"your {ruled} is stale", "caution"),
-            gap,
-            ("r", "key", "reaffirm()"),
-            (f" it stands{gap}", "", "reaffirm()"),
-            *choices,
-        )
-    if facts.own is not None:
-        when = "" if terse else safe(facts.own.utc[:10])
-        return row(
-            ("you ruled ", "quiet"),
-            (RULING_WORDS[facts.own.ruling], "strong"),
-            (f" {when}   " if when else "   ", "quiet"),
-            *choices,
-        )
-    return [*choices, Span("     choose, then Enter records", "quiet")]
+        return [row(("no data test this check, nothing need be ruled", "quiet"), "   ")]
+    if facts.own is None:
+        return [[]]
+    ruled, stands = RULING_WORDS[facts.own.ruling], row(("r", "key", "reaffirm()"), (" it stands  ", "", "reaffirm()"))
+    if facts.stale:
+        return [
+            [*row((f"your {ruled} is stale", "caution"), "  "), *stands],
+            [*row((f"stale: {ruled}", "caution"), "  "), *stands],
+        ]
+    again = stands if facts.note else []
+    dated = row(("you ruled ", "quiet"), (ruled, "strong"), (f" {safe(facts.own.utc[:10])}   ", "quiet"))
+    return [[*dated, *again], [*row(("you: ", "quiet"), (ruled, "strong"), "  "), *again]]
+
+
+def _hints(facts: RuleFacts) -> tuple[str, ...]:
+    """What Enter will do, or that there is nothing left to do here."""
+    if facts.note:
+        return ()
+    if facts.is_done:
+        return "done   m: next star   a: add a note", "done   m: next star", "m: next star"
+    if facts.with_others:
+        return "choose, then Enter records, marked: others in view", "marked: others in view", "others in view"
+    return ("choose, then Enter records",) if facts.own is None else ()
 
 
 def _with_note(width: int, line: Row, facts: RuleFacts) -> Row:
     """The note's beginning after the choice, as far as there is room."""
     note = safe(" / ".join(part for part in facts.note.splitlines() if part.strip()))
     room = width - row_width(line) - len("   note: ") - 1
-    if room < 6 and facts.chosen == "":
-        line = [span for span in line if "Enter records" not in span.text]
-        room = width - row_width(line) - len("   note: ") - 1
     if room >= 4:
         line = [*line, Span("   note: ", "quiet"), Span(fit(note, room).rstrip())]
     return fit_row(line, width)
