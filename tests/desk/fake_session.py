@@ -227,8 +227,8 @@ class FakeSession:
         total = wave**-3 / np.expm1(14387.77 / (wave * 5600.0))
         return SimpleNamespace(wave_um=wave, total_jy=total, components={"star": total * 0.9, "dust": total * 0.1})
 
-    def probe(self, name, check, fixed, dropped=()):
-        found = make_fit("star + dust", self.id_of(name), 2.0)
+    def probe(self, name, check, fixed, dropped=(), model=None):
+        found = make_fit(model or "star + dust", self.id_of(name), 2.0)
         held = {key: replace(found.params[key], value=value) for key, value in fixed.items() if key in found.params}
         return replace(found, params={**found.params, **held}), self.curve(name, check)
 

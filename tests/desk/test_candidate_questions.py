@@ -2,11 +2,14 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import pytest
 
 from tui.desk.screens.candidate_layout import shares
-from tui.desk.screens.questions import caution_line, look_at, question
+from tui.desk.screens.questions import caution_line, look_at, oddness_words, question
 from tui.desk.screens.walk import first_check, next_to_rule, nudge_step, refusal, step_check
+from tui.desk.widgets.numbers import adequate_word
 from tui.model import CHECKS, Evidence, Fit, Param
 from tui.workflow.records import CandidateView
 
@@ -58,6 +61,49 @@ def test_advice_names_what_the_fit_leaves_over():
 def test_first_caution_and_the_count_of_others():
     assert caution_line("dust", evidence_of("dust", ("hot", "young", "far"), J=0.0)) == "hot (+2 more: v)"
     assert caution_line("dust", {}) == ""
+
+
+def test_the_weightiest_caution_stands_first():
+    said = ("As bright as one dwarf: +0.01 +- 0.28 mag.", "Beam 12 arcsec.", "A dip stands: it has to be explained too.")
+    assert caution_line("blend", evidence_of("blend", said, J=0.0)).startswith("A dip stands")
+    assert caution_line("blend", evidence_of("blend", said[:2], J=0.0)).startswith("Beam")
+
+
+def with_facts(check: str, **facts: bool) -> dict[str, Evidence]:
+    plain = evidence_of(check, J=0.3, H=1.3)
+    return {kind: replace(one, facts=facts, adequate=False) for kind, one in plain.items()}
+
+
+def test_a_star_that_dips_is_not_asked_for_as_a_plain_one():
+    found = with_facts("star", dip_stands=True)
+    assert question("star", found) == "Its bands agree with a plain star, but it dips (page 5)."
+    assert oddness_words(found["star"]) == "odd by a dip"
+    assert adequate_word(found["star"], 0, 0.01) == "no: a dip stands"
+    assert question("dust", with_facts("dust", dip_stands=True)).endswith("it dips (page 5). Can dust do that?")
+
+
+def test_a_star_whose_own_spectrum_misfits_says_so_everywhere():
+    found = with_facts("star", spectrum_misfits=True)
+    assert question("star", found) == "Its bands agree with a plain star, but its own spectrum does not."
+    assert oddness_words(found["star"]) == "odd by its spectrum"
+    assert adequate_word(found["star"], 0, 0.01) == "no: its spectrum misfits"
+
+
+@pytest.mark.parametrize("facts", [{"dip_stands": True}, {"dip_stands": True, "spectrum_misfits": True}])
+@pytest.mark.parametrize("check", CHECKS)
+def test_those_questions_are_no_longer_than_two_rows(check, facts):
+    assert len(question(check, with_facts(check, **facts))) <= 2 * 78
+
+
+def test_a_plain_star_is_odd_by_nothing():
+    assert oddness_words(evidence_of("star", Ks=0.9)["star"]) == "farthest Ks +0.9 sigma"
+    assert oddness_words(evidence_of("star", Ks=0.9, W3=8.2)["star"]) == "odd by W3 +8.2"
+
+
+def test_adequate_by_another_fit_than_the_one_on_view_names_it():
+    fits = tuple(Fit(name, 1.0, 3, p, 1.0, 1.0) for name, p in (("bound pair", 0.4), ("free pair", 1e-5)))
+    found = Evidence("blend", 1, True, fits)
+    assert adequate_word(found, 0, 0.01) == "yes" and adequate_word(found, 1, 0.01) == "yes (by fit 1)"
 
 
 def view_of(to_rule: tuple[str, ...], states: dict[str, str] | None = None) -> CandidateView:

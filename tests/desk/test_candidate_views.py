@@ -35,7 +35,7 @@ def test_by_hand_holds_numbers_drops_bands_and_resets(fake_session, on_candidate
         assert list(asked[-1][1]) == ["teff"] and asked[-1][1]["teff"] > 5612.3
         assert "by hand" in screen_text(app) and "as fitted" in screen_text(app)
         await press("tab", "tab", "down", "left", "space")
-        check, fixed, dropped = asked[-1]
+        check, fixed, dropped, _ = asked[-1]
         assert check == "dust" and fixed["dust_temperature"] < 310 and dropped == {"W4"}
         assert "dropped: W4" in screen_text(app)
         await press("0")
@@ -136,5 +136,36 @@ def test_by_hand_begins_from_the_fit_that_is_drawn_with_the_bands_that_it_did_wi
         assert asked[-1][0] == "instrument" and asked[-1][2] == {"W3"}
         await press("0")
         assert not screen.walk.hand.touched and screen.walk.hand.dropped == {"W3"}
+
+    on_candidate(fake_session, steps)
+
+
+def test_by_hand_holds_the_model_on_view_and_never_sets_another_beside_it_as_the_same(
+    fake_session, on_candidate, screen_text, monkeypatch
+):
+    asked, plain = [], fake_session.probe
+    monkeypatch.setattr(fake_session, "probe", lambda *a: asked.append(a) or plain(*a))
+
+    async def steps(app, screen, press):
+        await press("b", "down", "h", "up")
+        text = screen_text(app)
+        assert asked[-1][-1] == "free pair" and "by hand: free pair" in text and "as fitted" in text
+        monkeypatch.setattr(fake_session, "probe", lambda *a: plain(*a[:-1], "bound pair"))
+        await press("up")
+        text = screen_text(app)
+        assert "by hand: bound pair" in text and text.count("as fitted") == 1 and "free pair" in text
+
+    on_candidate(fake_session, steps)
+
+
+def test_a_curve_compared_with_has_a_mark_of_its_own_and_a_page_ends_the_asking(
+    fake_session, on_candidate, screen_text
+):
+    async def steps(app, screen, press):
+        await press("d", "c", "b")
+        head = screen_text(app).split("\n")[3]
+        assert "+ blend" in head
+        await press("c", "c", "v", "b")
+        assert screen.walk.check == "blend" and not screen.walk.compared
 
     on_candidate(fake_session, steps)

@@ -74,7 +74,7 @@ def test_curves_have_letters_by_component_and_one_total():
         ("component", "a", "star"),
         ("component", "b", "dust\ufffd"),
         ("total", "", "total"),
-        ("other", "", "warm dust"),
+        ("other", "+", "warm dust"),
     ]
     alone = SimpleNamespace(wave_um=wave, total_jy=wave, components={"star": wave})
     assert [line.role for line in plot_curves(alone)] == ["total"]

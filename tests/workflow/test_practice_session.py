@@ -63,4 +63,5 @@ def test_evidence_curve_and_probe_are_the_programs_own(practice):
     curve = practice.curve(name, "star")
     assert curve.total_jy.shape == curve.wave_um.shape
     fit, _ = practice.probe(name, "star", {"teff": 5000.0}, ("W3",))
+    assert practice.probe(name, "blend", {"teff1": 5000.0}, (), "free pair")[0].model == "free pair"
     assert "W3" not in fit.pulls and fit.params["teff"].value == pytest.approx(5000.0, rel=1e-9)

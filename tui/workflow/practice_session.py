@@ -91,12 +91,17 @@ class PracticeSession:
         return probing.fit_curve(self.candidate(name), self.evidence(name)[check], fit_index, self.basis)
 
     def probe(
-        self, name: str, check: str, fixed: Mapping[str, float], dropped: Iterable[str] = ()
+        self,
+        name: str,
+        check: str,
+        fixed: Mapping[str, float],
+        dropped: Iterable[str] = (),
+        model: str | None = None,
     ) -> tuple[Fit, Curve]:
         """A fit with some numbers held and some bands dropped."""
         from tui.workflow import probing
 
-        return probing.probe(self.candidate(name), check, fixed, frozenset(dropped), self.basis)
+        return probing.probe(self.candidate(name), check, fixed, frozenset(dropped), self.basis, model)
 
     def band_info(self) -> Mapping[str, Band]:
         """Every band by name."""

@@ -60,23 +60,31 @@ def fitted_bands(candidate: Candidate, dropped: Iterable[str]) -> frozenset[str]
 
 
 def probe(
-    candidate: Candidate, check: str, fixed: Mapping[str, float], dropped: frozenset[str], basis: Basis
+    candidate: Candidate,
+    check: str,
+    fixed: Mapping[str, float],
+    dropped: frozenset[str],
+    basis: Basis,
+    model: str | None = None,
 ) -> tuple[Fit, Curve]:
     """Fit one check with some parameters fixed and some bands dropped.
 
     Args:
         fixed: parameter -> value, by the name or the short name of a parameter.
         dropped: bands to leave out, by name or alias.
+        model: the one to fit; None, or one that no hand can change: the simplest that has every fixed parameter.
     Raises:
         UnknownNameError: no such band.
         InputError: no such parameter in any model of the check, or too few bands are left.
     """
     from tui import checks
+    from tui.checks.by_hand import CHECK_MODELS
 
     held = {parameter_name(check, name): value for name, value in fixed.items()}
     without = fitted_bands(candidate, dropped)
     templates = templates_of(candidate, basis)
-    fit = checks.probe(candidate, check, held, without, templates, basis.settings)
+    own = model if model in {one.name for one in CHECK_MODELS.get(check, ())} else None
+    fit = checks.probe(candidate, check, held, without, templates, basis.settings, model=own)
     return fit, checks.curve(candidate, fit, check, templates, basis.settings, curve_wavelengths(candidate, basis))
 
 

@@ -248,12 +248,17 @@ class Session:
         return probing.fit_curve(self.candidate(name), self.evidence(name, (check,))[check], fit_index, self.basis)
 
     def probe(
-        self, name: str, check: str, fixed: Mapping[str, float], dropped: Iterable[str] = ()
+        self,
+        name: str,
+        check: str,
+        fixed: Mapping[str, float],
+        dropped: Iterable[str] = (),
+        model: str | None = None,
     ) -> tuple[Fit, Curve]:
-        """A fit of `check` with some parameters fixed and some bands dropped, and its curve; stores nothing."""
+        """A fit of `check`, of one model where it is named, with some parameters fixed and bands dropped, and its curve."""
         from tui.workflow import probing
 
-        return probing.probe(self.candidate(name), check, fixed, frozenset(dropped), self.basis)
+        return probing.probe(self.candidate(name), check, fixed, frozenset(dropped), self.basis, model)
 
     def dip_curves(self, name: str) -> list[DipCurve]:
         """Depth against wavelength of every model fitted to the candidate's dips."""

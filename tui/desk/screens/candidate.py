@@ -206,7 +206,7 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
     def action_page(self, number: int) -> None:
         """One page by its number; 0 is the plot."""
         self.walk.page = number if 0 <= number <= len(PAGES) else 0
-        self.walk.hand = None
+        self.walk.hand, self.walk.asking_compare = None, False
         if self.walk.page == LOOK_ALIKES:
             self.look_for_alikes()
         self.query_one("#walk-page", RowsView).to_top()

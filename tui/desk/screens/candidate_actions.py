@@ -159,10 +159,10 @@ class ProbesByHand:
     @work(group="probe", exit_on_error=False)
     async def run_probe(self: CandidateScreen, walk: Walk, hand: Hand, wish: int) -> None:
         """Ask the session off this thread and draw what comes, unless the reviewer moved on."""
-        check, fixed, dropped = walk.check, dict(hand.fixed), frozenset(hand.dropped)
+        check, fixed, dropped, model = walk.check, dict(hand.fixed), frozenset(hand.dropped), walk.model
 
         def job(session: Session):
-            return session.probe(walk.name, check, fixed, dropped) if wish == hand.wish else None
+            return session.probe(walk.name, check, fixed, dropped, model) if wish == hand.wish else None
 
         try:
             found = await self.reads.ask(job)

@@ -69,7 +69,7 @@ def draw_numbers(walk: Walk, width: int, height: int) -> list[Row]:
     title = (
         row(("by hand: ", "message"), (safe(shown.model), "head")) if hand else fit_title(width, own, walk.fit_index)
     )
-    rows = number_rows(width, shown, title, _beside(walk), "" if hand else adequate_word(own))
+    rows = number_rows(width, shown, title, _beside(walk), "" if hand else adequate_word(own, walk.fit_index, walk.p_min))
     params = param_rows(width, shown.params, tuple(hand.fixed) if hand else (), hand.param if hand else "")
     rows += [[], *params] if len(rows) + len(params) < height else params
     if hand is not None:
@@ -86,7 +86,9 @@ def _beside(walk: Walk) -> Beside | None:
     """What the shown fit is held against: the fit as it was, the check compared with, else the star alone."""
     compared = walk.evidence.get(walk.compared) if walk.compared else None
     if walk.hand is not None and walk.hand.fit is not None:
-        return Beside("as fitted", walk.own_evidence.fits[walk.fit_index])
+        made = walk.own_evidence.fits[walk.fit_index]
+        is_same = made.model.partition(" without ")[0] == walk.hand.fit.model  # dropped bands make no other model
+        return Beside("as fitted" if is_same else safe(made.model), made)
     if compared is not None and compared.best is not None:
         return Beside(CHECK_TITLES[walk.compared], compared.best)
     star = walk.evidence.get("star")

@@ -54,6 +54,7 @@ class OpensCandidates:
             if not self.is_here(walk):
                 return
             walk.evidence = dict(evidence)
+            walk.p_min = self.session.settings.p_min
             if not all(check in evidence for check in CHECKS):
                 walk.trouble = NONE
             walk.story = tuple(await self.reads.ask(lambda s: s.story(name)))

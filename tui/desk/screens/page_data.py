@@ -8,6 +8,7 @@ from typing import Any
 
 from rich.cells import cell_len
 
+from tui.desk.screens.questions import by_weight
 from tui.desk.screens.walk import Walk
 from tui.desk.text import RULING_WORDS, number, once_in, p_text, safe, short_band, signed
 from tui.desk.widgets.aligned import pair_rows, table
@@ -27,15 +28,15 @@ def facts_page(walk: Walk, width: int, height: int) -> list[Row]:
     rows: list[Row] = []
     own = walk.own_evidence
     if own is not None:
-        rows += [head(f"what the check {CHECK_TITLES[walk.check]} found"), *_found_rows(own, width), []]
+        rows += [head(f"what the check {CHECK_TITLES[walk.check]} found"), *_found_rows(own, width, walk.p_min), []]
     rows += [head("other sources near it"), *_neighbour_rows(walk, width), [], head("facts of the catalogues")]
     pairs = catalogue_pairs(walk.loaded.candidate.facts)
     return rows + (pair_rows(pairs, width) if pairs else [quiet("none beside the measurements")])
 
 
-def _found_rows(own: Evidence, width: int) -> list[Row]:
-    rows = [row(("  adequate  ", "quiet"), adequate_word(own))]
-    for caution in grouped(own.cautions):
+def _found_rows(own: Evidence, width: int, p_min: float) -> list[Row]:
+    rows = [row(("  adequate  ", "quiet"), adequate_word(own, 0, p_min))]
+    for caution in by_weight(grouped(own.cautions)):
         rows += hanging(row(("  caution   ", "caution")), caution, width)
     return [*rows, *pair_rows(evidence_pairs(own.facts), width), *fact_tables(own.facts, width)]
 
@@ -128,7 +129,7 @@ def fits_page(walk: Walk, width: int, height: int) -> list[Row]:
 def _check_block(walk: Walk, check: str, width: int) -> list[Row]:
     found, own = walk.evidence.get(check), walk.loaded.view.own.get(check)
     ruled = f"you ruled {RULING_WORDS[own.ruling]}" if own else "not ruled by you"
-    said = f"   {ruled}" + (f"   adequate: {adequate_word(found)}" if found else "")
+    said = f"   {ruled}" + (f"   adequate: {adequate_word(found, 0, walk.p_min)}" if found else "")
     rows = [row((CHECK_TITLES[check], "head"), (said, "quiet"))]
     if found is None or found.best is None:
         return [*rows, quiet("no fit"), []]

@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+import re
+from collections.abc import Mapping, Sequence
 
 from tui.desk.text import SPECTRUM_POINT, listed, short_band, signed
 from tui.model import Evidence, Fit
@@ -23,6 +24,21 @@ ASKS_PLAIN = {
     "blend": "No band leaves the star alone by 3 sigma. Is there a second source?",
     "dust": "No band leaves the star alone by 3 sigma. Is there warm dust at all?",
 }
+ASKS_FURTHER = {  # where the bands are a plain star's, but something else is not
+    "star": "Its bands agree with a plain star, but {what}.",
+    "instrument": "Its bands agree with a plain star, but {what}. Could that be bad data?",
+    "extinction": "Its bands agree with a plain star, but {what}. Can extinction do that?",
+    "blend": "Its bands agree with a plain star, but {what}. A second source?",
+    "dust": "Its bands agree with a plain star, but {what}. Can dust do that?",
+}
+NOT_PLAIN = {  # fact of the star's evidence: how the question says it, and why it is odd
+    "dip_stands": ("it dips (page 5)", "a dip"),
+    "spectrum_misfits": ("its own spectrum does not", "its spectrum"),
+}
+WEIGHTY = re.compile("A dip stands|own spectrum|A dip or the spectrum|has to be explained|[Rr]efused|outside|leaking|"
+                     "more than|survives the law|silicates are gone|no pair|cannot be tested|without the suspect")  # fmt: skip
+LIGHT = re.compile("As bright as one dwarf|Photosphere source|^Not fitted|effective wavelength|No error was given|"
+                   "errors look too large|The spectrum is not in")  # fmt: skip
 
 
 def question(check: str, evidence: Mapping[str, Evidence], room: int = 200) -> str:
@@ -36,6 +52,9 @@ def question(check: str, evidence: Mapping[str, Evidence], room: int = 200) -> s
     if fit is None:
         return f"Nothing could be fitted to the star alone. Does {ARTICLES[check]} explain it?"
     strong = strong_pulls(fit)
+    further = not_plain(star)
+    if not strong and further:
+        return ASKS_FURTHER[check].format(what=" and ".join(words[0] for words in further))
     if not strong:
         return ASKS_PLAIN[check] if check != "star" else _plain_star(fit)
     asked = [_asked(check, strong, bands) for bands in _band_words(list(strong))]
@@ -92,22 +111,39 @@ HINTS = {
 
 
 def caution_line(check: str, evidence: Mapping[str, Evidence]) -> str:
-    """The first caution, and how many more there are."""
+    """The weightiest caution, and how many more there are."""
     own = evidence.get(check)
     if own is None or not own.cautions:
         return ""
     more = len(own.cautions) - 1
-    return own.cautions[0] + (f" (+{more} more: v)" if more else "")
+    return by_weight(own.cautions)[0] + (f" (+{more} more: v)" if more else "")
+
+
+def by_weight(cautions: Sequence[str]) -> list[str]:
+    """What may overturn a ruling first, mere remarks last; in their own order otherwise.
+
+    >>> by_weight(["As bright as one dwarf: +0.0", "Beam 12 arcsec.", "A dip stands: it has to be explained too."])
+    ['A dip stands: it has to be explained too.', 'Beam 12 arcsec.', 'As bright as one dwarf: +0.0']
+    """
+    return sorted(cautions, key=lambda text: 0 if WEIGHTY.search(text) else 2 if LIGHT.search(text) else 1)
+
+
+def not_plain(star: Evidence | None) -> list[tuple[str, str]]:
+    """What beside its bands speaks against a plain star, each in the words of `NOT_PLAIN`."""
+    return [words for fact, words in NOT_PLAIN.items() if star is not None and star.facts.get(fact)]
 
 
 def oddness_words(star: Evidence | None) -> str:
-    """The band that leaves the star alone farthest."""
+    """Why it is odd: the band that leaves the star alone farthest, a dip, its spectrum; or that nothing is."""
     fit = star.best if star else None
     pulls = {band: pull for band, pull in fit.pulls.items() if math.isfinite(pull)} if fit else {}
-    if not pulls:
-        return ""
-    band = max(pulls, key=lambda name: abs(pulls[name]))
-    return f"odd by {short_band(band)} {signed(pulls[band])}"
+    band = max(pulls, key=lambda name: abs(pulls[name]), default=None)
+    farthest = f"{short_band(band)} {signed(pulls[band])}" if band is not None else ""
+    odd = [farthest] if band is not None and abs(pulls[band]) >= STRONG else []
+    odd += [words[1] for words in not_plain(star)]
+    if odd:
+        return f"odd by {listed(odd)}"
+    return f"farthest {farthest} sigma" if farthest else ""
 
 
 def _plain_star(fit: Fit) -> str:

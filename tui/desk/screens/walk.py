@@ -61,6 +61,7 @@ class Walk:
     name: str
     check: str = CHECKS[0]
     loaded: Loaded | None = None
+    p_min: float = 0.01  # of the queue's settings: below it a fit is refused
     evidence: dict[str, Evidence] = field(default_factory=dict)
     curves: dict[tuple[str, int], Curve | None] = field(default_factory=dict)
     story: tuple[StoryLine, ...] = ()
@@ -124,6 +125,12 @@ class Walk:
         if self.hand is not None and self.hand.fit is not None:
             return self.hand.fit
         return fit_of(self.own_evidence, self.fit_index)
+
+    @property
+    def model(self) -> str:
+        """The model of the fit that the program made and that is chosen; '' where there is none."""
+        made = fit_of(self.own_evidence, self.fit_index)
+        return made.model if made else ""
 
     @property
     def fits(self) -> int:

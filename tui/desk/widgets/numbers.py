@@ -6,6 +6,8 @@ import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
+from rich.cells import cell_len
+
 from tui.desk.text import decimal_aligned, number, once_in, p_text, safe
 from tui.desk.text import fit as cut
 from tui.desk.widgets.rows import Row, Span, row
@@ -14,6 +16,7 @@ from tui.model import Evidence, Fit, Param
 WIDE = 40  # columns from which full names, both ends of intervals and all fits find room
 NOTHING = "--"
 MODEL_WIDE = 26  # cells of a model's name
+WHY_NOT = {"dip_stands": "a dip stands", "spectrum_misfits": "its spectrum misfits"}  # though the bands are met
 LEVEL = " (95 %)"  # of a limit (Evidence keeps one-sided 95 % limits where a value lies at a bound)
 ROUNDING = 1e-6  # by which a limit may miss the bound that it lies at
 UP_TO = " up to "
@@ -79,16 +82,28 @@ def fit_title(width: int, evidence: Evidence, index: int) -> Row:
     return row((model, "head"), (short, "quiet"))
 
 
-def adequate_word(evidence: Evidence) -> str:
-    """The evidence's own state, which is no ruling."""
-    return "untestable" if evidence.adequate is None else "yes" if evidence.adequate else "no"
+def adequate_word(evidence: Evidence, shown: int = 0, p_min: float = 0.0) -> str:
+    """The evidence's own state, which is no ruling; where another fit than the shown one makes it so, which.
+
+    Args:
+        shown: index of the fit on view.
+        p_min: below which a fit is refused.
+    """
+    if evidence.adequate is None:
+        return "untestable"
+    if not evidence.adequate:
+        why = [words for fact, words in WHY_NOT.items() if evidence.facts.get(fact)]
+        is_refused = evidence.best is None or evidence.best.p < p_min
+        return f"no: {why[0]}" if why and not is_refused else "no"
+    stand = [place for place, fit in enumerate(evidence.fits) if fit.p >= p_min]
+    return "yes" if shown in stand or not stand else f"yes (by fit {stand[0] + 1})"
 
 
 def statistic_rows(width: int, fit: Fit, beside: Beside | None) -> list[Row]:
     """chi2, dof, p and BIC, those of another fit beside them."""
     columns = [_statistics(fit)] + ([_statistics(beside.fit)] if beside else [])
     room = max(8, (width - 6) // 2 if width < WIDE else 12)
-    label = beside.label if beside else ""
+    label = cut(beside.label, min(cell_len(beside.label), room - 1)) if beside else ""
     rows = [row(" " * 6, ("this fit".rjust(room), "head"), (label.rjust(room) if label else "", "quiet"))]
     for line, name in enumerate(("chi2", "dof", "p", "BIC")):
         cells = [column[line].rjust(room) for column in columns]

@@ -160,7 +160,7 @@ def _lines(canvas: Canvas, frame: Frame, plot: PlotData, view: PlotView) -> list
             turn += 1
         else:
             dash = {"total": TOTAL_DASH, "other": OTHER_DASH}.get(curve.role, SPECTRUM_DASH)
-            lines.append(Line(dots, curve.role, dash))
+            lines.append(Line(dots, curve.role, dash, curve.letter))
     return lines
 
 
@@ -252,7 +252,7 @@ def _draw_message(canvas: Canvas, frame: Frame, plot: PlotData) -> None:
 
 
 def _draw_letters(canvas: Canvas, frame: Frame, lines: list[Line]) -> None:
-    """Each component's letter on its own curve where it stands clear of everything, so that lines need no colour."""
+    """Each letter on its own curve where it stands clear of everything, so that lines need no colour."""
     for line in lines:
         if line.letter and canvas.unicode:
             others = [other.dots for other in lines if other is not line and (other.letter or other.style == "total")]

@@ -36,7 +36,8 @@ def _lines(plot: PlotData, unicode: bool) -> list[Row]:
         if curve.role == "total":
             entries.append([Span(dash_sample(TOTAL_DASH, 2) if unicode else "...", "total"), Span(f" {curve.label}")])
         elif curve.role == "other":
-            entries.append([Span(dash_sample(OTHER_DASH, 4) if unicode else ":::", "other"), Span(f" {curve.label}")])
+            sample = dash_sample(OTHER_DASH, 4) if unicode else ":::"
+            entries.append([Span(f"{sample}{curve.letter}", "other"), Span(f" {curve.label}")])
     components = [curve for curve in plot.curves if curve.role == "component"]
     for index, curve in enumerate(components):
         turn = index % len(COMPONENT_DASH)

@@ -16,6 +16,7 @@ if TYPE_CHECKING:
     from tui.checks import Curve
 
 LETTERS = "abcd"
+OTHER = "+"  # on the curve of the fit compared with, whose pulls are marked so too
 HALF = 0.5  # of the peak: where a band is taken to begin and end
 NARROW = 0.02  # share of the wavelength: width of a band of which only the pivot is known
 
@@ -58,7 +59,7 @@ def plot_curves(curve: Curve | None, other: Curve | None = None, other_label: st
             PlotCurve("total" if len(curve.components) > 1 else "model", curve.wave_um, curve.total_jy, "total")
         )
     if other is not None:
-        lines.append(PlotCurve(other_label, other.wave_um, other.total_jy, "other"))
+        lines.append(PlotCurve(other_label, other.wave_um, other.total_jy, "other", OTHER))
     return tuple(lines)
 
 
