@@ -24,10 +24,11 @@ from tui.desk.screens.pages import LOOK_ALIKES, PAGES, page_rows
 from tui.desk.screens.walk import Walk, step_check
 from tui.desk.session_thread import SessionThread
 from tui.desk.widgets.cutout import STRETCHES
-from tui.desk.widgets.note import NoteEditor
+from tui.desk.widgets.note import TOO_LONG, NoteEditor
 from tui.desk.widgets.rows import Row
 from tui.desk.widgets.rows_view import RowsView
 from tui.desk.widgets.spectrum_plot import SpectrumPlot, braille_works
+from tui.workflow.records import MAX_NOTE
 
 if TYPE_CHECKING:
     from tui.workflow.session import Session
@@ -112,7 +113,7 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
         if event.time < self._ready_at:
             event.stop()
             event.prevent_default()
-        elif self.walk.message or self.walk.recorded:
+        elif self._draft_of is None and (self.walk.message or self.walk.recorded):
             self.walk.message, self.walk.recorded = "", ()
             self.draw_foot()
 
@@ -272,13 +273,21 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
             return
         name, check = self._draft_of
         self.walk.notes[check] = message.text
+        if self.walk.message and len(message.text) < MAX_NOTE:
+            self.say("")
         self.write(lambda s: s.save_draft(name, check, message.text))
+
+    @on(NoteEditor.Full)
+    def say_full(self, message: NoteEditor.Full) -> None:
+        """What did not fit was not taken in silently."""
+        self.say(TOO_LONG.format(left_out=message.left_out))
 
     @on(NoteEditor.Left)
     def leave_note(self) -> None:
         """Letters are keys again."""
         if self._draft_of is not None:
             self._draft_of = None
+            self.walk.message = ""
             self.set_focus(None)
             self.lay_out(*self.size)
             self.draw_foot()

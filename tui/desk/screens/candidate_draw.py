@@ -125,7 +125,7 @@ def draw_foot(
     rows = advice_rows(width, height - 1 - KEY_ROWS, message, point, look, caution) if height > 1 + KEY_ROWS else []
     rows.append(rule_row(width, rule_facts(walk, session)))
     can_rule = session.reviewer is not None and not session.read_only
-    keys = writing() if is_writing else offered(walk, keymap, can_rule, scrolls)
+    keys = writing(walk.message) if is_writing else offered(walk, keymap, can_rule, scrolls)
     return [fit_row(line, width, more=" ..") for line in [*rows, *key_rows(width, keys, KEY_ROWS)]]
 
 

@@ -98,8 +98,10 @@ def _works(ids: str, walk: Walk, can_rule: bool, scrolls: bool) -> bool:
     return True
 
 
-def writing() -> list[Entry]:
-    """While a note is being written."""
+def writing(message: str = "") -> list[Entry]:
+    """While a note is being written; what has to be said then stands in place of the keys."""
+    if message:
+        return [("Tab", "leaves the note", ""), ("", message, "")]
     return [
         ("Tab", "leaves the note", ""),
         ("Enter", "begins a new line", ""),

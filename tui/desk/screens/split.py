@@ -17,7 +17,7 @@ from tui.desk.screens.questions import question
 from tui.desk.screens.split_rows import Split, foot_row, head_rows, split_rows
 from tui.desk.text import RULING_WORDS
 from tui.desk.widgets.key_line import KeyLine
-from tui.desk.widgets.note import NoteEditor
+from tui.desk.widgets.note import TOO_LONG, NoteEditor
 from tui.desk.widgets.rows import Row
 from tui.desk.widgets.rows_view import RowsView
 from tui.errors import TuiError
@@ -148,6 +148,11 @@ class SplitScreen(DeskScreen[None]):
         note = self.query_one(NoteEditor)
         note.display = True
         note.open(self.note)
+
+    @on(NoteEditor.Full)
+    def say_full(self, message: NoteEditor.Full) -> None:
+        """What did not fit was not taken in silently."""
+        self.say(TOO_LONG.format(left_out=message.left_out))
 
     @on(NoteEditor.Typed)
     def keep_draft(self, message: NoteEditor.Typed) -> None:

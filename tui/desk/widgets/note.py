@@ -8,9 +8,10 @@ from textual import events
 from textual.message import Message
 from textual.widgets import TextArea
 
+from tui.workflow.records import MAX_NOTE
 from tui.workflow.safe_text import safe
 
-MOST = 4000  # characters of one note
+TOO_LONG = f"A note holds {MAX_NOTE:,} characters: {{left_out:,}} more were left out."
 
 
 class NoteEditor(TextArea):
@@ -23,6 +24,12 @@ class NoteEditor(TextArea):
         text: str
 
     @dataclass
+    class Full(Message):
+        """More was typed or pasted than a note holds."""
+
+        left_out: int
+
+    @dataclass
     class Left(Message):
         """The reviewer is done writing."""
 
@@ -33,7 +40,7 @@ class NoteEditor(TextArea):
 
     def open(self, text: str) -> None:
         """Show a note to go on with, the cursor at its end."""
-        self._show(tame(text))
+        self._show(tame(text)[:MAX_NOTE])
         self.focus()
 
     async def _on_key(self, event: events.Key) -> None:
@@ -44,10 +51,24 @@ class NoteEditor(TextArea):
             return
         await super()._on_key(event)
 
+    async def _on_paste(self, event: events.Paste) -> None:
+        """What is pasted goes in whole and in order, made tame before, as far as there is room."""
+        event.prevent_default()
+        event.stop()
+        room = MAX_NOTE - len(self.text) + len(self.selected_text)
+        pasted = tame(event.text)
+        if len(pasted) > room:
+            self.post_message(self.Full(len(pasted) - room))
+        if pasted[:room] and (result := self._replace_via_keyboard(pasted[:room], *self.selection)):
+            self.move_cursor(result.end_location)
+
     def on_text_area_changed(self, event: TextArea.Changed) -> None:
         """Tell at every keystroke, paste included; what could steer a terminal is made visible at once."""
         event.stop()
         tamed = tame(self.text)
+        if len(tamed) > MAX_NOTE:
+            self.post_message(self.Full(len(tamed) - MAX_NOTE))
+            tamed = tamed[:MAX_NOTE]
         if tamed != self.text:
             self._show(tamed)
         self.post_message(self.Typed(tamed))
@@ -59,10 +80,10 @@ class NoteEditor(TextArea):
 
 
 def tame(text: str) -> str:
-    """A note fit for a terminal: its line ends kept, tabs as spaces, control characters shown, not too long.
+    """A note fit for a terminal: its line ends kept, each as one, tabs as spaces, control characters shown.
 
     >>> tame("one\\r\\ntwo\\tthree\\x1b[2J")
     'one\\ntwo three�[2J'
     """
     lines = text.replace("\r\n", "\n").replace("\r", "\n").expandtabs(4)
-    return safe(lines, newlines=True)[:MOST]
+    return safe(lines, newlines=True)
