@@ -4,10 +4,11 @@ from __future__ import annotations
 
 import math
 import re
+from dataclasses import replace
 
 import pytest
 
-from tui.desk.widgets.numbers import Beside, chance_rows, param_rows, statistic_rows, value_and_error
+from tui.desk.widgets.numbers import Beside, chance_rows, formal_row, param_rows, squeezed, statistic_rows, value_and_error
 from tui.desk.widgets.rows import row_text, row_width
 from tui.model import Fit, Param
 
@@ -98,3 +99,16 @@ def test_statistics_stand_beside_the_star_alone_without_running_over():
         text = "\n".join(row_text(line) for line in rows)
         assert all(row_width(line) <= width for line in rows)
         assert all(word in text for word in ("chi2", "121.4", "dof", "8e-24", "BIC", "130.6", "star alone", "<1e-300"))
+
+
+@pytest.mark.parametrize("room", [7, 8, 10, 12, 20])
+def test_sides_of_an_interval_that_differ_are_both_told_in_any_room(room):
+    said = squeezed(" +2.900 -0.011", room).strip()
+    assert said.startswith(("+2.9", "+3"))
+    assert re.search(r"-0?\.01", said), said
+
+
+def test_intervals_of_a_refused_fit_are_called_formal():
+    fit = Fit("m", 121.4, 6, 8e-24, 1.0, 130.6, {"teff": Param(5612.3, 5570.0, 5655.0, "K")})
+    assert "formal" in row_text(formal_row(fit, 0.01)) and row_width(formal_row(fit, 0.01)) <= 28
+    assert formal_row(replace(fit, p=0.3), 0.01) == []

@@ -84,7 +84,7 @@ def test_curves_have_letters_by_component_and_one_total():
 @pytest.mark.parametrize(
     ("index", "words"),
     [
-        (0, "J 1.24 micron: 100 +- 2.0 mJy, 0.4 sigma above the model"),
+        (0, "J 1.24 micron: 100 +- 2.0 mJy (fit error at least 2.8), 0.4 sigma above the model"),
         (2, "W3 12.1 micron: 20.0 mJy, 8.2 sigma above the model, not fitted; cc_flags d[/]\ufffd"),
         (3, "W4 22.2 micron: below 10.0 mJy (2 sigma), limit met"),
     ],

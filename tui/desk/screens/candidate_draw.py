@@ -18,6 +18,7 @@ from tui.desk.widgets.numbers import (
     adequate_word,
     fit_title,
     fits_table,
+    formal_row,
     number_columns,
     number_rows,
     param_rows,
@@ -71,7 +72,7 @@ def draw_numbers(walk: Walk, width: int, height: int) -> list[Row]:
     )
     rows = number_rows(width, shown, title, _beside(walk), "" if hand else adequate_word(own, walk.fit_index, walk.p_min))
     params = param_rows(width, shown.params, tuple(hand.fixed) if hand else (), hand.param if hand else "")
-    rows += [[], *params] if len(rows) + len(params) < height else params
+    rows += [formal_row(shown, walk.p_min), *params] if len(rows) + len(params) < height else params
     if hand is not None:
         rows += _hand_rows(walk, width)
     if walk.compared and walk.evidence.get(walk.compared) is not None:

@@ -20,6 +20,7 @@ WHY_NOT = {"dip_stands": "a dip stands", "spectrum_misfits": "its spectrum misfi
 LEVEL = " (95 %)"  # of a limit (Evidence keeps one-sided 95 % limits where a value lies at a bound)
 ROUNDING = 1e-6  # by which a limit may miss the bound that it lies at
 UP_TO = " up to "
+UNLIKE = 1.25  # sides of an interval that differ by this factor or more are both told
 LEAST: Mapping[str, float] = {  # where the ranges of the fits begin; the others begin at 0
     "dust_temperature": 20.0, "dust2_temperature": 20.0, "r_v": 2.3, "alpha": -math.inf,
 }  # fmt: skip
@@ -80,6 +81,11 @@ def fit_title(width: int, evidence: Evidence, index: int) -> Row:
     which = f"  fit {index + 1} of {count}" if count > 1 else ""
     short = which if len(model) + len(which) <= width else f" {index + 1}/{count}" if count > 1 else ""
     return row((model, "head"), (short, "quiet"))
+
+
+def formal_row(fit: Fit, p_min: float) -> Row:
+    """Above the numbers of a refused fit: its intervals take for granted that the model is right, which it is not."""
+    return row(("errors formal: fit refused", "quiet")) if fit.p < p_min and fit.params else []
 
 
 def adequate_word(evidence: Evidence, shown: int = 0, p_min: float = 0.0) -> str:
@@ -156,10 +162,10 @@ def param_rows(width: int, params: Mapping[str, Param], held: Sequence[str] = ()
 
 
 def squeezed(error: str, room: int) -> str:
-    """An interval in `room` columns: without its spaces, else the larger side for both, where the whole does not fit.
+    """An interval in `room` columns: without its spaces, else rounder, or one side for both where they are alike.
 
-    >>> squeezed(" +0.19 -0.11", 10), squeezed(" +0.19 -0.11", 7)
-    ('+0.19-0.11', '+-0.19')
+    >>> squeezed(" +0.19 -0.11", 10), squeezed(" +0.19 -0.18", 7), squeezed(" +2.900 -0.011", 10)
+    ('+0.19-0.11', '+-0.19', '+2.9-0.011')
     """
     if len(error) <= room:
         return error
@@ -169,7 +175,12 @@ def squeezed(error: str, room: int) -> str:
     if len(tight) <= room or not tight.startswith("+") or tight.startswith("+-"):
         return tight
     more, _, less = tight[1:].partition("-")
-    return f"+-{max(more, less, key=float)}" if "?" not in tight else f"+-{(more + less).strip('?')}"
+    if "?" in tight:
+        return f"+-{(more + less).strip('?')}"
+    if not UNLIKE * float(less) > float(more) > float(less) / UNLIKE:
+        rounder = [f"+{number(float(more), digits)}-{number(float(less), digits)}" for digits in (2, 1)]
+        return next((text for text in rounder if len(text) <= room), rounder[-1].replace("0.", "."))
+    return f"+-{max(more, less, key=float)}"
 
 
 def param_name(key: str, param: Param) -> ParamName:
@@ -211,7 +222,7 @@ def value_and_error(param: Param, factor: float = 1.0, wide: bool = False, least
     text, more, less = (f"{size:.{decimals}f}" for size in (value, up, down))
     if not (math.isfinite(up) and math.isfinite(down)):
         return text, f" {'+' + more if math.isfinite(up) else '+?'} {'-' + less if math.isfinite(down) else '-?'}"
-    if more == less or not wide and max(spread) < 1.25 * min(spread):
+    if more == less or not wide and max(spread) < UNLIKE * min(spread):
         return text, f" +-{max(more, less, key=float)}"
     return text, f" +{more} -{less}"
 

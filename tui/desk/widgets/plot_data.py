@@ -32,6 +32,7 @@ class PlotPoint:
     dropped: bool = False
     pull: float = math.nan
     other_pull: float = math.nan  # of the fit compared with
+    floor: float = 0.0  # calibration floor of the band, a share of the flux
 
 
 @dataclass(frozen=True, slots=True)

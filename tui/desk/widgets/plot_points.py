@@ -18,6 +18,7 @@ if TYPE_CHECKING:
 LETTERS = "abcd"
 OTHER = "+"  # on the curve of the fit compared with, whose pulls are marked so too
 HALF = 0.5  # of the peak: where a band is taken to begin and end
+TOLD = 1.05  # times the own error: from here on the error with the floor is told beside it
 NARROW = 0.02  # share of the wavelength: width of a band of which only the pivot is known
 
 
@@ -119,6 +120,7 @@ def point_words(plot: PlotData, index: int, measurement: Measurement) -> str:
     else:
         error = f" +- {number(measurement.error_jy * scale, 2)}" if measurement.error_jy > 0 else ""
         words = f"{name} {number(point.wave_um)} micron: {number(point.flux_jy * scale)}{error} {unit}"
+        words += fit_error_words(point, measurement, scale)
     if math.isfinite(point.pull):
         words += ", " + pull_words(point.pull, point.limit)
     if point.dropped:
@@ -126,6 +128,16 @@ def point_words(plot: PlotData, index: int, measurement: Measurement) -> str:
     if measurement.flags:
         words += "; " + ", ".join(f"{safe(key)} {safe(text)}" for key, text in measurement.flags.items())
     return words
+
+
+def fit_error_words(point: PlotPoint, measurement: Measurement, scale: float) -> str:
+    """How large the error is at least that the pull is counted in: the measurement's own and the band's floor.
+
+    The spread of real stars, and a floor of a model above the data, come on top; '' where the floor adds next to nothing.
+    """
+    own = measurement.error_jy
+    whole = math.hypot(own, point.floor * point.flux_jy)
+    return f" (fit error at least {number(whole * scale, 2)})" if 0 < TOLD * own < whole else ""
 
 
 def pull_words(pull: float, limit: bool) -> str:
@@ -165,5 +177,6 @@ def _point(measurement: Measurement, band: Band, fit: Fit | None, other: Fit | N
         limit=measurement.limit,
         dropped=out,
         pull=fit.pulls.get(measurement.band, math.nan) if fit else math.nan,
+        floor=band.floor,
         other_pull=other.pulls.get(measurement.band, math.nan) if other else math.nan,
     )
