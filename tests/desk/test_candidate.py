@@ -2,10 +2,14 @@
 
 from __future__ import annotations
 
+from threading import Thread
+
 import pytest
+from textual.pilot import Pilot
 
 from tests.desk.made import make_evidence
 from tui.desk.screens.candidate import CandidateScreen
+from tui.desk.screens.split import SplitScreen
 from tui.errors import StoreError
 from tui.model import CHECKS
 
@@ -275,3 +279,27 @@ def test_a_queue_that_may_only_be_read_says_so_and_takes_nothing(fake_session, o
         assert fake_session.log == [] and fake_session.drafts == {}
 
     on_candidate(fake_session, steps)
+
+
+def test_a_wait_for_another_program_is_said(fake_session, on_candidate, screen_text, settled):
+    async def steps(app, screen, press):
+        Thread(target=fake_session.hook, args=("Another program holds the queue",)).start()
+        while not screen.walk.message:
+            await settled(app, Pilot(app))
+        assert "Another program holds the queue." in screen_text(app)
+
+    on_candidate(fake_session, steps)
+
+
+def test_a_split_check_leads_to_everybodys_notes_and_back(fake_session, on_candidate, screen_text):
+    async def steps(app, screen, press):
+        await press("b")
+        assert "N shows all notes side by side" in " ".join(screen_text(app).split())
+        await press("N")
+        assert isinstance(app.screen, SplitScreen)
+        await press("q")
+        assert app.screen is screen and screen.walk.check == "blend"
+        await press("s", "N")
+        assert app.screen is screen and "are not split" in screen_text(app)
+
+    on_candidate(fake_session, steps, name="SM-0003")

@@ -82,6 +82,7 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
 
     def on_mount(self) -> None:
         """Open at the check where the reviewer was, else at the first one still to rule."""
+        self.session.on_wait(self.heard_waiting)
         position = self.session.position() if self.session.reviewer else None
         self.open(self.walk.name, position[1] if position and position[0] == self.walk.name else "")
 
@@ -90,6 +91,10 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
         self.reads.close(finish=False)
         self.alikes.close(finish=False)
         self.writes.close(finish=True)
+
+    def heard_waiting(self, sentence: str) -> None:
+        """Called in a thread that waits for another program: say so instead of nothing."""
+        self.app.call_later(self.say, f"{sentence}.")
 
     def on_resize(self, event: events.Resize) -> None:
         """Share the terminal anew, once there is something to share it among."""
@@ -223,6 +228,16 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
         """Other bands' pictures first: two of them under one eye, in turn."""
         self.walk.first_cutout = (self.walk.first_cutout + 1) % max(1, len(self.walk.cutouts))
         self.draw()
+
+    def action_split(self) -> None:
+        """Everybody's notes on this check side by side, where its rulings part; then here again, as things stand."""
+        if not self.walk.is_split:
+            self.say("The rulings on this check are not split, as far as you may see.")
+            return
+        from tui.desk.screens.split import SplitScreen
+
+        name, check = self.walk.name, self.walk.check
+        self.app.push_screen(SplitScreen(self.session, name, check), lambda _: self.open(name, check))
 
     def action_back(self) -> None:
         """Out of a mode, a page or the large plot; else to the queue."""

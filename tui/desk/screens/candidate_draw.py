@@ -35,7 +35,7 @@ if TYPE_CHECKING:
 READ_ONLY = "read only: nothing can be ruled or kept"
 READER_ONLY = "you read without a handle. To rule: plainlight join QUEUE HANDLE"
 WAITING = "computing the evidence: rulings open when the numbers are here"
-SPLIT = "The rulings on this check are split: page 8 shows them side by side, and you may rule once more."
+SPLIT = "The rulings on this check are split: N shows all notes side by side, and you may rule once more there."
 FACTS = ("ra", "dec", "parallax", "parallax_error", "ruwe", "sp_type", "otype", "age_myr", "logg", "av_max")
 KEY_ROWS = 2
 BEST_WIDE = 32  # cells of a check's title with its best model
@@ -140,7 +140,7 @@ def advice(walk: Walk) -> tuple[str, str, tuple[str, ...], str]:
     if measurement is not None and walk.plot_view.cursor is not None and walk.page == 0:
         point = point_words(walk.drawn, walk.plot_view.cursor, measurement)
     stale = walk.loaded.view.stale.get(walk.check, "") if walk.loaded else ""
-    is_split = walk.loaded is not None and walk.loaded.view.states.get(walk.check) == "split"
+    is_split = walk.is_split
     caution = (
         f"Your ruling is stale: {stale}." if stale else SPLIT if is_split else caution_line(walk.check, walk.evidence)
     )

@@ -14,6 +14,7 @@ Entry = tuple[str, str, str]  # keys, what they do, the action of a click
 _DEFAULTS = {key.id: key for key in PLACES["candidate"]}
 READING = (
     ("next", "next star", "next_for_me()"),
+    ("split", "all notes", "split()"),
     ("note", "note", "note()"),
     ("next_check", "next check", "next_check()"),
     ("checks", "checks", ""),
@@ -89,6 +90,8 @@ def _works(ids: str, walk: Walk, can_rule: bool, scrolls: bool) -> bool:
         return can_rule and walk.loaded is not None and walk.check in walk.loaded.view.own
     if ids == "next":
         return can_rule and walk.is_done
+    if ids == "split":
+        return walk.is_split
     if ids in ("note", "later"):
         return can_rule
     if ids == "pan_left pan_right":

@@ -105,6 +105,11 @@ class Walk:
         view = self.loaded.view if self.loaded else None
         return view is not None and view.done and not view.needs_me
 
+    @property
+    def is_split(self) -> bool:
+        """Whether the rulings on the check on view part, as far as the reader may know."""
+        return self.loaded is not None and self.loaded.view.states.get(self.check) == "split"
+
     def choose(self, ruling: str, stands: bool = False) -> None:
         """Choose a ruling; nothing is recorded yet."""
         self.chosen, self.stands, self.asking_compare = ruling, stands, False
