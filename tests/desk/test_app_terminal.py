@@ -95,6 +95,8 @@ def test_ctrl_z_stops_it_and_fg_brings_it_back(path):
         assert os.WIFSTOPPED(status) and desk.is_as_before()
         desk.process.send_signal(signal.SIGCONT)
         desk.wait_for(INTO)
+        for shown in (b"saltmarsh.db", b"SM-0001", b"SM-0003", b"next, fewest finished"):  # all is drawn anew
+            desk.wait_for(shown)
         os.write(desk.leader, b"Q")
         desk.wait_for(b"left in order")
 

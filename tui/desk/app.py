@@ -82,7 +82,8 @@ class Desk(Guarded, inherit_bindings=False):
         return QueueScreen(self.session)
 
     def on_mount(self) -> None:
-        """End in order when the line is cut."""
+        """End in order when the line is cut; come back from ctrl+z whole, though nothing has changed meanwhile."""
+        self.app_resume_signal.subscribe(self, lambda app: app.refresh())
         loop = asyncio.get_running_loop()
         for number in (signal.SIGTERM, signal.SIGHUP):
             loop.add_signal_handler(number, self.leave_at_once, number)
