@@ -2,10 +2,10 @@
 
     python tests/bench/bench_fits.py [--large] [--compare N]
 
-Evidence of all kinds for 10, 14 and 20 bands on two processes with peak memory of both; where other work shares the
-machine, "of CPU" is what it would be alone (1,000 candidates; with --large
-10,000 and, for 14 bands, 100,000 too); one candidate on demand; building and loading the grids; each model against
-scipy's least_squares from 8 starts and differential_evolution on the same models, data and frozen errors.
+Evidence of all kinds for 10, 14 and 20 bands on two processes with peak memory of both (1,000 candidates; with --large
+10,000 and, for 14 bands, 100,000 too); "of CPU" is what it would be where no other work shares the machine. One
+candidate on demand; building and loading the grids; each model for N candidates against scipy's least_squares from 8
+starts and differential_evolution on the same models, data and frozen errors.
 """
 
 from __future__ import annotations
@@ -36,9 +36,10 @@ from tui.data import load_flags  # noqa: E402
 from tui.model import KINDS, Candidate, Measurement, Settings  # noqa: E402
 from tui.physics import composite as c  # noqa: E402
 from tui.physics.fitting import fit  # noqa: E402
+from tui.workflow.memory import keep_freed_memory  # noqa: E402
 from tui.workflow.templates import build, templates_for  # noqa: E402
 
-CHUNK = 250  # candidates that a process assesses at once
+CHUNK = 1000  # candidates that a process assesses at once, nearly as the program does; fewer where there are few
 PROCESSES = 2
 LOWER = 0.1
 MODELS = (c.STAR, c.STAR_AV, c.STAR_AV_RV, c.DUST, c.DUST_AV, c.TWO_DUST, c.BOUND_PAIR, c.FREE_PAIR, c.COMPACT,
@@ -80,25 +81,27 @@ def candidates_of(problem, first=0):
 
 def work(task):
     """One process's share: assess chunk after chunk, made on the spot; (candidates, seconds, CPU seconds, peak MB)."""
-    names, seeds = task
+    keep_freed_memory()  # as the program does before it fits
+    names, size, seeds = task
     settings = Settings()
     grids, packaged = templates_for(settings), tables()
     assess_all(candidates_of(random_problem(grids, names, 20, 99)[0]), grids, settings, KINDS, packaged)
     spent = busy = 0.0
     for seed in seeds:
-        chunk = candidates_of(random_problem(grids, names, CHUNK, seed)[0])
+        chunk = candidates_of(random_problem(grids, names, size, seed)[0])
         start, start_busy = time.perf_counter(), time.process_time()
         assess_all(chunk, grids, settings, KINDS, packaged)
         spent += time.perf_counter() - start
         busy += time.process_time() - start_busy
-    return CHUNK * len(seeds), spent, busy, resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024
+    return size * len(seeds), spent, busy, resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024
 
 
 def evidence(count, names, label):
     """All evidence for `count` candidates on two processes."""
-    seeds = np.array_split(np.arange(count // CHUNK), PROCESSES)
+    size = min(CHUNK, count // PROCESSES)
+    seeds = np.array_split(np.arange(count // size), PROCESSES)
     with multiprocessing.get_context("spawn").Pool(PROCESSES) as pool:
-        shares = pool.map(work, [(names, [int(seed) for seed in share]) for share in seeds])
+        shares = pool.map(work, [(names, size, [int(seed) for seed in share]) for share in seeds])
     slowest, busiest = (max(share[place] for share in shares) for place in (1, 2))
     total = sum(share[0] for share in shares)
     memory = sum(peak for *_, peak in shares)
@@ -184,6 +187,7 @@ def main():
     parser.add_argument("--large", action="store_true", help="10,000 candidates, and 100,000 of 14 bands")
     parser.add_argument("--compare", type=int, default=200, metavar="N", help="candidates for the optimisers")
     chosen = parser.parse_args()
+    keep_freed_memory()
     print(ROW.format("what", "candidates", "", "", ""))
     grids_cost()
     grids = templates_for(Settings())

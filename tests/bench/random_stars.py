@@ -59,6 +59,8 @@ def random_problem(grids, names, count, seed, *, natures=NATURES, limits=0.15, c
     parallax = np.full(count, np.nan)
     for number, model in enumerate(natures):
         rows = np.flatnonzero(nature == number)
+        if not rows.size:
+            continue
         x[rows] = random_rows(rng, model, local, rows.size, av_max)
         kit = kit_for(model, local)
         seen = predict(kit, x[rows])

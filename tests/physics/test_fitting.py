@@ -174,7 +174,7 @@ def test_a_candidate_fits_alike_alone_and_in_company(drawn, batches, name):
 
 @pytest.mark.parametrize("first", [0, 1])
 def test_of_minima_that_take_turns_the_likelier_stands(drawn, monkeypatch, first):
-    # Each is made to seem the lowest with the other's errors, time after time: whichever comes last, the likelier stays.
+    # Each is made to seem the lowest with the other's errors time after time: whichever comes last, the likelier stays.
     problem, _, _ = drawn
     kit = kit_for(c.STAR_AV, problem.templates)
     errors = first_errors(problem)
