@@ -9,8 +9,10 @@ import pytest
 
 from tests.desk.conftest import settle, text_of
 from tests.desk.made import make_evidence
+from tui.desk.help import WORDS
 from tui.desk.practice_desk import PracticeDesk
 from tui.desk.screens.practice import PracticeScreen
+from tui.desk.text import KEY_OF_CHECK, RULING_MEANINGS
 from tui.model import CHECKS
 
 
@@ -57,6 +59,7 @@ def test_the_answer_follows_each_ruling_in_full():
             assert answers[check].why not in words(app)
             await press(app, pilot, {"explains": "e", "short": "f", "unclear": "u"}[answers[check].ruling], "enter")
             assert answers[check].why in words(app) and "So rules a practised eye too" in words(app)
+            assert practice.view(name).done or "LOOK AT" in words(app)
         assert practice.star(name).told in words(app) and "m: the next practice star" in words(app)
         await press(app, pilot, "m")
         assert "PRACTICE, 2 of 3" in words(app) and app.saved == ""
@@ -94,3 +97,14 @@ def test_alone_it_ends_with_q():
         assert not app.is_running or app._exit
 
     in_practice(steps)
+
+
+def test_where_a_check_fits_and_yet_falls_short_the_answer_says_what_that_means_as_help_does():
+    async def steps(app, pilot):
+        adequate = [check for check, one in app.screen.walk.evidence.items() if one.adequate and check in CHECKS]
+        check = next(one for one in adequate if app.screen.practice.answer(app.screen.walk.name, one).ruling == "short")
+        await press(app, pilot, KEY_OF_CHECK[check], "f", "enter")
+        assert f"It fits, yet falls short: {RULING_MEANINGS['short']}" in words(app)
+        assert dict(WORDS)["<short"] == RULING_MEANINGS["short"]
+
+    in_practice(steps, size=(120, 40))

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from tui.desk.text import RULING_MEANINGS
+
 ORIENTATION = (
     "Each line is a star that a search called odd; try to explain it away.",
     "m: the star that the fewest have finished. p: three stars to practise on.",
@@ -38,8 +40,8 @@ WHAT_FOR = {
 }
 
 WORDS = (
-    ("=expl", "the check explains the data: the sign says that the model meets them"),
-    ("<short", "the check falls short of the data"),
+    ("=expl", RULING_MEANINGS["explains"]),
+    ("<short", RULING_MEANINGS["short"]),
     ("~uncl", "you ruled that these data cannot tell"),
     (".todo", "you have not ruled it; whether others have stays sealed"),
     (":open", "too few sure rulings so far"),

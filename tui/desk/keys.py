@@ -15,6 +15,7 @@ from types import MappingProxyType
 
 from textual.binding import Binding
 
+from tui.desk.text import RULING_MEANINGS
 from tui.errors import SettingError
 from tui.model import CHECK_TITLES, CHECKS
 
@@ -34,6 +35,7 @@ class Key:
     rank: int = 2  # on the key line: 1 stays longest when room is short; 0 never stands there
 
 
+_CHOOSE = {ruling: f"Choose: {meaning}." for ruling, meaning in RULING_MEANINGS.items()}
 _CHECK_KEYS = dict(zip(CHECKS, "sixbd", strict=True))
 _PAGE_TITLES = (  # of a candidate's further pages, in the order of their numbers
     "facts", "measured", "all fits", "mixture", "dips", "pictures", "look-alikes", "rulings", "story",
@@ -100,10 +102,10 @@ TALLY = (
 )
 SPLIT = (
     Key("split.explains", "e", "choose('explains')", "explains",
-        "Choose: the check explains the data. Enter records it.", 1),
-    Key("split.short", "f", "choose('short')", "falls short", "Choose: the check falls short of the data.", 1),
+        _CHOOSE["explains"], 1),
+    Key("split.short", "f", "choose('short')", "falls short", _CHOOSE["short"], 1),
     Key("split.unclear", "u", "choose('unclear')", "unclear",
-        "Choose: these data cannot tell. It is not counted as sure.", 1),
+        f"{_CHOOSE['unclear']} It is not counted as sure.", 1),
     Key("split.note", "a", "note", "note", "Write a note beside your ruling: what decided it.", 2),
     Key("split.record", "enter", "record", "record",
         "Record what you chose, with the note, as seen with the others' in view.", 1),
@@ -121,9 +123,9 @@ HELP = (
 )
 CANDIDATE = (
     Key("candidate.explains", "e", "choose('explains')", "explains",
-        "Choose: the check explains the data. Enter records it.", 1),
-    Key("candidate.short", "f", "choose('short')", "falls short", "Choose: the check falls short of the data.", 1),
-    Key("candidate.unclear", "u", "choose('unclear')", "unclear", "Choose: these data cannot tell.", 1),
+        _CHOOSE["explains"], 1),
+    Key("candidate.short", "f", "choose('short')", "falls short", _CHOOSE["short"], 1),
+    Key("candidate.unclear", "u", "choose('unclear')", "unclear", _CHOOSE["unclear"], 1),
     Key("candidate.record", "enter", "record", "record",
         "Record what you chose, with its note, and go on to the next check you have to rule.", 1),
     Key("candidate.note", "a", "note", "a note",

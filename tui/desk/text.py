@@ -29,6 +29,13 @@ STATE_WORDS = MappingProxyType(
 RULING_WORDS = MappingProxyType(
     {"explains": "explains", "short": "falls short", "unclear": "unclear", "withdrawn": "withdrawn"}
 )
+RULING_MEANINGS = MappingProxyType(  # what each says of a check: for help, keys and practice alike
+    {
+        "explains": "the check can make these fluxes, and more than free parameters speaks for it",
+        "short": "the check cannot make these fluxes, or nothing but free parameters speaks for it",
+        "unclear": "these data cannot tell",
+    }
+)
 
 SPECTRUM_POINT = "spectrum:"  # how evidence names a point of the candidate's own spectrum, before its micron
 OFTEN, FEW = 0.1, 1e-9  # p from which a share reads better than odds, and up to which odds need an exponent

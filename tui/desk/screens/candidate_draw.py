@@ -123,7 +123,7 @@ def draw_foot(
 ) -> list[Row]:
     """Advice, the ruling line, the keys that work now."""
     message, point, look, caution = advice(walk)
-    rows = advice_rows(width, height - 1 - KEY_ROWS, message, point, look, caution) if height > 1 + KEY_ROWS else []
+    rows = advice_rows(width, height - 1 - KEY_ROWS, message, point, look, caution, walk.is_lesson and not walk.is_done) if height > 1 + KEY_ROWS else []
     rows.append(rule_row(width, rule_facts(walk, session)))
     can_rule = session.reviewer is not None and not session.read_only
     keys = writing(walk.message) if is_writing else offered(walk, keymap, can_rule, scrolls)
@@ -145,7 +145,7 @@ def advice(walk: Walk) -> tuple[str, str, tuple[str, ...], str]:
         f"Your ruling is stale: {stale}." if stale else SPLIT if is_split else caution_line(walk.check, walk.evidence)
     )
     look = look_at(walk.check, walk.fit) if walk.own_evidence is not None and not walk.page else ("",)
-    is_told = walk.is_lesson and walk.message or walk.page and not stale and not is_split
+    is_told = walk.is_lesson and walk.message and walk.is_done or walk.page and not stale and not is_split
     return walk.message, point, look, "" if is_told else caution
 
 
@@ -154,7 +154,7 @@ def advice_height(walk: Walk, width: int) -> int:
     said = advice(walk)
     if walk.page and not any((said[0], said[1], said[3])):
         return 0
-    return sum(len(part) for part in advice_parts(width, *said, height=2))
+    return sum(len(part) for part in advice_parts(width, *said, height=2, keeps_look=walk.is_lesson and not walk.is_done))
 
 
 def rule_facts(walk: Walk, session: Session) -> RuleFacts:

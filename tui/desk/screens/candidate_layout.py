@@ -14,7 +14,7 @@ class Shares:
     side: int
 
 
-LESSON = 6  # rows of an answer: what was ruled, why, and what the star was
+LESSON = 8  # rows of an answer: what was ruled, why, what the star was, and what to look at next
 
 
 def shares(width: int, height: int, plot_only: bool = False, advice: int = 2, is_lesson: bool = False) -> Shares:

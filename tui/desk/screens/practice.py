@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from tui.desk.screens.candidate import CandidateScreen
 from tui.desk.screens.walk import Loaded, Walk, next_to_rule
-from tui.desk.text import RULING_WORDS
+from tui.desk.text import RULING_MEANINGS, RULING_WORDS
 from tui.model import CHECK_TITLES, Reviewer
 from tui.workflow.practice_session import PracticeSession
 from tui.workflow.records import CandidateView
@@ -61,7 +61,10 @@ class PracticeScreen(CandidateScreen):
         verdict = "So rules a practised eye too" if answer.ruling == ruling else (
             f"A practised eye rules: {RULING_WORDS[answer.ruling]}"
         )
-        return f"{CHECK_TITLES[check]}, you: {RULING_WORDS[ruling]}. {verdict}. {answer.why}"
+        found = self.walk.evidence.get(check)
+        fits_but = found is not None and found.adequate and answer.ruling == "short"
+        meaning = f" It fits, yet falls short: {RULING_MEANINGS['short']}." if fits_but else ""
+        return f"{CHECK_TITLES[check]}, you: {RULING_WORDS[ruling]}. {verdict}. {answer.why}{meaning}"
 
     def further(self) -> str:
         """How to go on once a star is done."""

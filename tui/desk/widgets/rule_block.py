@@ -30,13 +30,16 @@ class RuleFacts:
     is_done: bool = False  # with this candidate, and nothing to rule again
 
 
-def advice_rows(width: int, height: int, message: str, point: str, look: Sequence[str], caution: str) -> list[Row]:
+def advice_rows(
+    width: int, height: int, message: str, point: str, look: Sequence[str], caution: str, keeps_look: bool = False
+) -> list[Row]:
     """What to look at (or what was just said, or the point under the cursor), then the caution, in `height` rows.
 
     Args:
         look: the same advice at less and less length; the first that fits is taken.
+        keeps_look: what to look at stands beneath what was just said, too.
     """
-    first, second = advice_parts(width, message, point, look, caution, height)
+    first, second = advice_parts(width, message, point, look, caution, height, keeps_look)
     for_first = max(1, height - len(second)) if second else height
     first = _cut(first, for_first, width)
     second = _cut(second, height - len(first), width)
@@ -44,12 +47,19 @@ def advice_rows(width: int, height: int, message: str, point: str, look: Sequenc
 
 
 def advice_parts(
-    width: int, message: str, point: str, look: Sequence[str], caution: str, height: int
+    width: int,
+    message: str,
+    point: str,
+    look: Sequence[str],
+    caution: str,
+    height: int,
+    keeps_look: bool = False,
 ) -> tuple[list[Row], list[Row]]:
     """Advice and caution in full, each in as many rows as it takes; of `look` what leaves room in `height` rows."""
     second = _labelled(width, "CAUTION", caution, "caution") if caution else []
     if message:
         first = _labelled(width, "", message, "message")
+        first += _labelled(width, "LOOK AT", look[-1], "") if keeps_look and look[-1] else []
     elif point:
         first = _labelled(width, "POINT", point, "")
     else:
