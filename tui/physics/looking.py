@@ -23,8 +23,7 @@ NO_BETTER = 0.03  # of the cost: an end must be lower by more to be worth going 
 ALIKE = 0.02  # parameters this close after a heat lead to the same minimum
 KEPT = 4  # minima remembered
 COARSE = 3e-3  # of the cost
-FEW = 300  # rows that are not worth a group or a heat of their own
-FEW_HEATS = ((4, 12.0), (15, 0.5))
+FEW = 300  # rows that are not worth a group of their own
 BLOCK = 4000  # rows that go down together; more would only cost memory
 
 
@@ -68,7 +67,7 @@ def look(problem: Problem, kit: Kit, errors: Errors, starts: FloatArray) -> Mini
     live = first_of_each(theta, owner)
     owner, theta = owner[live], theta[:, live]
     parked: list[tuple[np.ndarray, Walked]] = []
-    for steps, behind in HEATS if owner.size > FEW else FEW_HEATS:
+    for steps, behind in HEATS:
         at = _in_blocks(rows, tables, owner, theta, bounds, steps, COARSE)
         going, resting = _sorted_out(at, owner, m, behind)
         parked.append((owner[resting], at.take(resting)))
