@@ -199,7 +199,7 @@ def test_resumes_at_candidate_check_and_draft(fake_session, on_candidate):
         assert (screen.walk.check, screen.walk.note) == ("blend", "half a thought")
         assert fake_session.claims == {NAME}
         await press("q")
-        assert fake_session.claims == set() and fake_session.place == (NAME, "blend")
+        assert fake_session.claims == set() and fake_session.place == (NAME, "")
 
     on_candidate(fake_session, steps)
 
@@ -303,3 +303,23 @@ def test_a_split_check_leads_to_everybodys_notes_and_back(fake_session, on_candi
         assert app.screen is screen and "are not split" in screen_text(app)
 
     on_candidate(fake_session, steps, name="SM-0003")
+
+
+def test_who_was_cut_off_comes_back_to_candidate_check_and_draft_and_who_left_to_the_queue(
+    fake_session, drive, settled, screen_text
+):
+    fake_session.place = (NAME, "blend")
+    fake_session.save_draft(NAME, "dust", "half a thought")
+
+    async def cut_off(app, pilot):
+        assert isinstance(app.screen, CandidateScreen) and "[BLEND .todo]" in screen_text(app)
+        assert 'wdust".todo' in screen_text(app), "a note begun elsewhere is announced"
+        await pilot.press("q")
+        await settled(app, pilot)
+        assert not isinstance(app.screen, CandidateScreen)
+
+    async def left(app, pilot):
+        assert not isinstance(app.screen, CandidateScreen)
+
+    drive(fake_session, cut_off)
+    drive(fake_session, left)

@@ -64,7 +64,7 @@ def test_first_caution_and_the_count_of_others():
 
 
 def test_the_weightiest_caution_stands_first():
-    said = ("As bright as one dwarf: +0.01 +- 0.28 mag.", "Beam 12 arcsec.", "A dip stands: it has to be explained too.")
+    said = ("As bright as one dwarf: +0.01 +- 0.28 mag.", "Beam 12 arcsec.", "A dip stands: explain it too.")
     assert caution_line("blend", evidence_of("blend", said, J=0.0)).startswith("A dip stands")
     assert caution_line("blend", evidence_of("blend", said[:2], J=0.0)).startswith("Beam")
 

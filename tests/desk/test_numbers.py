@@ -8,7 +8,15 @@ from dataclasses import replace
 
 import pytest
 
-from tui.desk.widgets.numbers import Beside, chance_rows, formal_row, param_rows, squeezed, statistic_rows, value_and_error
+from tui.desk.widgets.numbers import (
+    Beside,
+    chance_rows,
+    formal_row,
+    param_rows,
+    squeezed,
+    statistic_rows,
+    value_and_error,
+)
 from tui.desk.widgets.rows import row_text, row_width
 from tui.model import Fit, Param
 

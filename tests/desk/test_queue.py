@@ -25,7 +25,7 @@ def lines_of(text: str) -> list[str]:
 
 @pytest.mark.parametrize("size", SIZES, ids=str)
 def test_the_queue_looks_so(fake_session, drive, screen_text, snapshot, size):
-    fake_session.place = ("SM-0003", "blend")
+    fake_session.place = ("SM-0003", "")
 
     async def steps(app, pilot):
         app.screen._settle.stop()
@@ -300,7 +300,7 @@ def test_a_fault_of_the_store_is_a_plain_line(fake_session, drive, screen_text, 
 
 
 def test_the_queue_resumes_where_the_reviewer_was(fake_session, drive):
-    fake_session.place = ("SM-0030", "dust")
+    fake_session.place = ("SM-0030", "")
 
     async def steps(app, pilot):
         assert app.screen.query_one(CandidateList).chosen.name == "SM-0030"

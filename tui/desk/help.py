@@ -49,6 +49,7 @@ WORDS = (
     ("-nodata", "the program has too few data to test it: nothing to rule"),
     ("*", "stale: the evidence that a ruling rests on has changed since in a way that matters"),
     (".sealed", "the outcome opens for you once you are done with the star"),
+    ('"', "after a check's name: a note of yours begun there and not recorded"),
     ("done", "you ruled `explains` on a check, or every check that can be tested"),
     ("3/5", "yours: you ruled on three of the five checks that can be ruled"),
     ("again", "yours: a split asks you once more, or your ruling is stale"),

@@ -34,6 +34,7 @@ if TYPE_CHECKING:
     from tui.workflow.session import Session
 
 
+NOWHERE = ""  # the check of a position that was left in order
 FAULT = "The evidence could not be had: something went wrong inside the program."
 
 
@@ -255,7 +256,7 @@ class CandidateScreen(OpensCandidates, RecordsRulings, MovesThroughPlot, ProbesB
         """Back to the queue; somebody else may look at this candidate."""
         name = self.walk.name
         if self.session.reviewer is not None:
-            self.write(lambda s: s.release(name))
+            self.write(lambda s: (s.release(name), s.save_position(name, NOWHERE)))  # who is cut off comes back here
         self.dismiss(None)
 
     # --- notes ---

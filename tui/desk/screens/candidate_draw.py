@@ -70,7 +70,8 @@ def draw_numbers(walk: Walk, width: int, height: int) -> list[Row]:
     title = (
         row(("by hand: ", "message"), (safe(shown.model), "head")) if hand else fit_title(width, own, walk.fit_index)
     )
-    rows = number_rows(width, shown, title, _beside(walk), "" if hand else adequate_word(own, walk.fit_index, walk.p_min))
+    adequate = "" if hand else adequate_word(own, walk.fit_index, walk.p_min)
+    rows = number_rows(width, shown, title, _beside(walk), adequate)
     params = param_rows(width, shown.params, tuple(hand.fixed) if hand else (), hand.param if hand else "")
     rows += [formal_row(shown, walk.p_min), *params] if len(rows) + len(params) < height else params
     if hand is not None:
@@ -122,8 +123,8 @@ def draw_foot(
     scrolls: bool = True,
 ) -> list[Row]:
     """Advice, the ruling line, the keys that work now."""
-    message, point, look, caution = advice(walk)
-    rows = advice_rows(width, height - 1 - KEY_ROWS, message, point, look, caution, walk.is_lesson and not walk.is_done) if height > 1 + KEY_ROWS else []
+    room = height - 1 - KEY_ROWS
+    rows = advice_rows(width, room, *advice(walk), keeps_look=goes_on(walk)) if room > 0 else []
     rows.append(rule_row(width, rule_facts(walk, session)))
     can_rule = session.reviewer is not None and not session.read_only
     keys = writing(walk.message) if is_writing else offered(walk, keymap, can_rule, scrolls)
@@ -154,7 +155,12 @@ def advice_height(walk: Walk, width: int) -> int:
     said = advice(walk)
     if walk.page and not any((said[0], said[1], said[3])):
         return 0
-    return sum(len(part) for part in advice_parts(width, *said, height=2, keeps_look=walk.is_lesson and not walk.is_done))
+    return sum(len(part) for part in advice_parts(width, *said, height=2, keeps_look=goes_on(walk)))
+
+
+def goes_on(walk: Walk) -> bool:
+    """Whether this is a practice star with checks left, where the next page is read right beneath the answer."""
+    return walk.is_lesson and not walk.is_done
 
 
 def rule_facts(walk: Walk, session: Session) -> RuleFacts:

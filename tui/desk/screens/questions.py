@@ -35,10 +35,14 @@ NOT_PLAIN = {  # fact of the star's evidence: how the question says it, and why 
     "dip_stands": ("it dips (page 5)", "a dip"),
     "spectrum_misfits": ("its own spectrum does not", "its spectrum"),
 }
-WEIGHTY = re.compile("A dip stands|own spectrum|A dip or the spectrum|has to be explained|[Rr]efused|outside|leaking|"
-                     "more than|survives the law|silicates are gone|no pair|cannot be tested|without the suspect")  # fmt: skip
-LIGHT = re.compile("As bright as one dwarf|Photosphere source|^Not fitted|effective wavelength|No error was given|"
-                   "errors look too large|The spectrum is not in")  # fmt: skip
+WEIGHTY = re.compile(
+    "A dip stands|own spectrum|A dip or the spectrum|has to be explained|[Rr]efused|outside|leaking|more than|"
+    "survives the law|silicates are gone|no pair|cannot be tested|without the suspect"
+)
+LIGHT = re.compile(
+    "As bright as one dwarf|Photosphere source|^Not fitted|effective wavelength|No error was given|"
+    "errors look too large|The spectrum is not in"
+)
 
 
 def question(check: str, evidence: Mapping[str, Evidence], room: int = 200) -> str:

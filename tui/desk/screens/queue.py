@@ -85,6 +85,8 @@ class QueueScreen(MovesThroughList, QueueBackground):
         self.list_beginning()
         self.call_after_refresh(self.order, counting=True)  # the first rows first: ordering takes the processor
         self.set_interval(POLL_THIN_S if self.app.thin else POLL_S, self.poll)
+        if position and position[1]:  # cut off amid a candidate: on with it
+            self.call_after_refresh(self.open_candidate, position[0])
 
     def orient(self, is_new: bool) -> None:
         """Three lines for who comes for the first time."""

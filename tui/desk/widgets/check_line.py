@@ -11,6 +11,7 @@ from tui.model import CHECK_TITLES, CHECKS
 from tui.workflow.records import CandidateView
 
 LEAST_NAME = 12  # cells of a name that is cut
+DRAFT = '"'
 ROOMY = 100  # columns from which checks stand under their full names
 
 
@@ -24,14 +25,14 @@ def title_row(width: int, name: str, odd: str, view: CandidateView | None, right
         right: the same said at less and less length, the handle last.
     """
     shown = Span(safe(name), "name")
-    standings = [[Span("   "), Span(text, outcome_style(view.outcome))] for text in standings_of(view)] if view else [[]]
+    said = standings_of(view) if view else []
+    standings = [[Span("   "), Span(text, outcome_style(view.outcome))] for text in said] or [[]]
     odds = [[Span(f"   {odd}", "quiet")], []] if odd else [[]]
     tails = [[Span(f"  {text} ", "quiet")] for text in right] or [[]]
     choices = [(why, standing, tail) for why in odds for standing in standings for tail in tails]
     needed = 1 + row_width([shown])
-    why, standing, tail = next(
-        (parts for parts in choices if needed + sum(map(row_width, parts)) <= width), (odds[0], standings[-1], tails[-1])
-    )
+    fitting = (parts for parts in choices if needed + sum(map(row_width, parts)) <= width)
+    why, standing, tail = next(fitting, (odds[0], standings[-1], tails[-1]))
     room = width - 1 - sum(map(row_width, (why, standing, tail)))
     name_span = shown._replace(text=fit(shown.text, min(row_width([shown]), max(LEAST_NAME, room)), cut="middle"))
     return [*fit_row([Span(" "), name_span, *why, *standing], width - row_width(tail)), *tail]
@@ -71,7 +72,10 @@ def outcome_style(outcome: str) -> str:
 
 
 def check_row(width: int, view: CandidateView | None, current: str, pages: str = "") -> Row:
-    """The five checks in walking order with sign and word; the one on view in capitals between brackets."""
+    """The five checks in walking order with sign and word; the one on view in capitals between brackets.
+
+    A check with a note begun and not recorded carries the mark `DRAFT`.
+    """
     names = CHECK_TITLES if width >= ROOMY else SHORT_CHECKS
     gap = "   " if width >= ROOMY else " "
     line: Row = [Span(" ")]
@@ -81,7 +85,8 @@ def check_row(width: int, view: CandidateView | None, current: str, pages: str =
         text, action = state_text(state, stale), f"check('{check}')"
         here = check == current
         label = f"[{names[check].upper()}" if here else f" {names[check]}"
-        line += [Span(label + " ", "now" if here else "", action), Span(text, state, action)]
+        mark = DRAFT if view is not None and view.drafts.get(check) else " "
+        line += [Span(label + mark, "now" if here else "", action), Span(text, state, action)]
         line += [Span("]" if here else " ", "now"), Span(gap if width >= ROOMY else "")]
     missing = width - row_width(line) - len(pages) - 1
     if pages and missing >= 1:

@@ -133,7 +133,7 @@ def point_words(plot: PlotData, index: int, measurement: Measurement) -> str:
 def fit_error_words(point: PlotPoint, measurement: Measurement, scale: float) -> str:
     """How large the error is at least that the pull is counted in: the measurement's own and the band's floor.
 
-    The spread of real stars, and a floor of a model above the data, come on top; '' where the floor adds next to nothing.
+    The spread of real stars, and the floor of a model above the data, come on top; '' where the floor adds little.
     """
     own = measurement.error_jy
     whole = math.hypot(own, point.floor * point.flux_jy)

@@ -131,7 +131,7 @@ def _rule_words(facts: RuleFacts) -> list[Row]:
             for said in (marked, short)
         ]
     return [
-        [*before, *_choices(gap, facts.is_nodata), *([Span(f"   {hint}", style)] if hint else [])]
+        [*before, *_choices(gap, facts.is_nodata), *([Span(f"{gap}{hint}", style)] if hint else [])]
         for before, gap, hint, style in _arranged(facts)
     ]
 
