@@ -107,3 +107,24 @@ def test_a_line_that_is_cut_ends_it(path):
     os.close(made.follower)
     os.close(made.leader)
     made.process.wait(LONGEST_S)
+
+
+def test_a_terminal_that_goes_without_a_signal_ends_it(path):
+    # as under nohup, or where the terminal was never the process's own: no hang-up signal comes, only an end of input
+    leader, follower = pty.openpty()
+    fcntl.ioctl(follower, termios.TIOCSWINSZ, struct.pack("HHHH", 24, 80, 0, 0))
+    process = subprocess.Popen(
+        [sys.executable, "-c", PROGRAM, path], stdin=follower, stdout=follower, stderr=subprocess.DEVNULL,
+        start_new_session=True, env={**os.environ, "TERM": "xterm-256color", "COLUMNS": "80", "LINES": "24"},
+    )  # fmt: skip
+    os.close(follower)
+    seen, ends = b"", time.monotonic() + LONGEST_S
+    while b"SM-0001" not in seen and time.monotonic() < ends:
+        if select.select([leader], [], [], 0.1)[0]:
+            seen += os.read(leader, 65536)
+    os.close(leader)
+    try:
+        process.wait(LONGEST_S)
+    finally:
+        process.kill()
+    assert process.returncode != -signal.SIGKILL

@@ -5,6 +5,7 @@ from __future__ import annotations
 import asyncio
 import gc
 import os
+import select
 import signal
 import threading
 from collections.abc import Mapping
@@ -27,6 +28,7 @@ if TYPE_CHECKING:
 
 SMALLEST = (80, 24)
 GRACE_S = 2.0  # after a signal, for putting the terminal back as it was
+INPUT, LOOK_S = 0, 2.0  # the terminal's file, and how often we see whether it is still there
 
 
 class Desk(Guarded, inherit_bindings=False):
@@ -87,6 +89,15 @@ class Desk(Guarded, inherit_bindings=False):
         loop = asyncio.get_running_loop()
         for number in (signal.SIGTERM, signal.SIGHUP):
             loop.add_signal_handler(number, self.leave_at_once, number)
+        if not self.is_headless and os.isatty(INPUT):
+            self.set_interval(LOOK_S, self.leave_a_gone_terminal)
+
+    def leave_a_gone_terminal(self) -> None:
+        """End where the terminal is gone and nobody was told, as under nohup; reading on would spin for ever."""
+        watch = select.poll()
+        watch.register(INPUT, 0)
+        if any(happened & (select.POLLHUP | select.POLLERR) for _, happened in watch.poll(0)):
+            self.leave_at_once(signal.SIGHUP)
 
     def on_ready(self) -> None:
         """The first screen is drawn: what was imported for it stays for good, and is not looked through for garbage.
