@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import os
+
 import pytest
 from textual.color import Color
 
@@ -193,6 +195,22 @@ def test_leaving(fake_session, drive, keys):
         assert not app.is_running or app._exit
 
     drive(fake_session, steps)
+
+
+def test_a_queue_deleted_while_open_is_told_in_a_plain_line_and_can_be_left(
+    disk_session, drive, screen_text, settled
+):
+    async def steps(app, pilot):
+        os.unlink(disk_session.path)
+        for key in ("o", "m", "t"):
+            await pilot.press(key)
+            await settled(app, pilot)
+            assert "was moved, deleted or replaced while open" in " ".join(screen_text(app).split())
+        await pilot.press("q", "q", "q")
+        await pilot.pause()
+        assert app._exit
+
+    drive(disk_session, steps)
 
 
 def test_one_q_too_many_does_not_end_the_program(fake_session, drive, screen_text, settled):
