@@ -247,7 +247,7 @@ def test_a_real_run_is_guarded_and_tells_at_the_end(fake_session, log, monkeypat
     app = Desk(fake_session)
 
     async def keys(pilot):
-        await pilot.press("t", "down", "q")
+        await pilot.press("t", "down", "q", "q")
 
     app.run(headless=True, size=(80, 24), auto_pilot=keys)
     assert app.return_code == 1 and len(log()) == 1
@@ -258,7 +258,7 @@ def test_a_real_run_without_faults_is_done(fake_session, log):
     app = Desk(fake_session)
 
     async def keys(pilot):
-        await pilot.press("down", "q")
+        await pilot.press("down", "q", "q")
 
     app.run(headless=True, size=(80, 24), auto_pilot=keys)
     assert app.return_code == 0 and not log()
