@@ -147,7 +147,7 @@ def settle_split(terminal: Terminal) -> str:
 def write_list(terminal: Terminal) -> None:
     """The tally, and the vetted list beside the queue."""
     terminal.press("t", "tally", "1 IS IT DONE +1[0-9]+ candidates")
-    terminal.press("w", "write out", r"write the list into .*\n saltmarsh-vetted\.ecsv")
+    terminal.press("w", "write out", r"write the list into .*\n\s*saltmarsh-vetted\.ecsv")
     terminal.type_key(ENTER)
     terminal.until(r"Wrote \d+ candidates to saltmarsh-vetted\.ecsv")
     terminal.press("q", "back", "NEED YOU")
