@@ -91,7 +91,7 @@ def queue(tmp_path, monkeypatch):
 def test_the_desk_opens_is_left_by_a_key_and_leaves_the_terminal_whole(queue):
     terminal = Terminal("review", queue, "--as", "heron")
     terminal.until("SM-")
-    terminal.press("q")
+    terminal.press("qq")
     assert terminal.status() == 0
     assert terminal.raw.endswith(b"\n") or b"\x1b[?1049l" in terminal.raw
     assert b"receipt" not in terminal.raw
@@ -103,7 +103,7 @@ def test_who_has_ruled_gets_a_receipt_on_leaving(queue):
         receipt = session.receipt()
     terminal = Terminal("review", queue, "--as", "heron", COLUMNS="80")
     terminal.until("SM-")
-    terminal.press("q")
+    terminal.press("qq")
     assert terminal.status() == 0
     assert receipt in terminal.raw.decode().replace("\r\n", "")
 
