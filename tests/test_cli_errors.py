@@ -191,11 +191,12 @@ def test_what_goes_wrong_beside_a_command_is_written_down_and_not_shown(tmp_path
 def test_ended_from_outside_it_says_so_and_leaves_no_other_word(tmp_path, number):
     code = (
         "import os, sys, signal; from tui.cli import group; from tui import __main__ as door; import click\n"
+        "signal.signal(signal.SIGINT, signal.default_int_handler)  # a shell ignores it for what runs in its background\n"
         "@click.command('join')\n"
         f"def join(): os.kill(os.getpid(), {int(number)}); signal.pause()\n"
         "group.cli.get_command = lambda ctx, name: join\n"
         "sys.argv = ['plainlight', 'join']; door.main()"
     )
-    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True)
+    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, timeout=60)
     assert (done.returncode, done.stdout) == (130, "")
     assert done.stderr.lstrip("\n") == "plainlight: Interrupted. What was already saved stays saved.\n"
