@@ -37,15 +37,21 @@ def test_evidence_is_asked_for_off_the_interface_thread(fake_session, on_candida
     on_candidate(fake_session, steps)
 
 
-def test_late_evidence_never_shows_under_another_name(fake_session, on_candidate, monkeypatch):
-    gate, plain = threading.Event(), fake_session.evidence
+def held_back(session, monkeypatch) -> threading.Event:
+    """The evidence of SM-0002 waits for this event."""
+    gate, plain = threading.Event(), session.evidence
 
     def slow(name, kinds=None):
         if name == "SM-0002":
             gate.wait(20)
         return plain(name)
 
-    monkeypatch.setattr(fake_session, "evidence", slow)
+    monkeypatch.setattr(session, "evidence", slow)
+    return gate
+
+
+def test_late_evidence_never_shows_under_another_name(fake_session, on_candidate, monkeypatch):
+    gate = held_back(fake_session, monkeypatch)
 
     async def steps(app, screen, press):
         left = screen.walk
@@ -61,14 +67,7 @@ def test_late_evidence_never_shows_under_another_name(fake_session, on_candidate
 
 
 def test_nothing_can_be_ruled_before_the_numbers_are_there(fake_session, on_candidate, monkeypatch):
-    gate, plain = threading.Event(), fake_session.evidence
-
-    def slow(name, kinds=None):
-        if name == "SM-0002":
-            gate.wait(20)
-        return plain(name)
-
-    monkeypatch.setattr(fake_session, "evidence", slow)
+    gate = held_back(fake_session, monkeypatch)
 
     async def steps(app, screen, press):
         screen.open("SM-0002")
