@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 from scipy import stats
@@ -100,6 +102,15 @@ def test_errors_that_are_too_large_are_said(look, templates):
     found = look(make(templates, c.STAR, 5772.0, error=0.2))
     assert found.best.p > 0.99
     assert any("errors look too large" in remark for remark in found.cautions)
+
+
+def test_an_error_that_was_not_given_is_said_and_the_floor_stands_for_it(look, templates):
+    given = make(templates, c.STAR, 5772.0)
+    lacking = replace(given, measurements=tuple(
+        replace(one, error_jy=float("nan")) if one.band in ("H", "W2") else one for one in given.measurements))  # fmt: skip
+    assert any("No error was given for H and W2" in remark for remark in look(lacking).cautions)
+    assert not any("No error was given" in remark for remark in look(given).cautions)
+    assert look(lacking).adequate is True
 
 
 @pytest.mark.parametrize(

@@ -9,7 +9,7 @@ import numpy as np
 import pytest
 
 from tui.desk.widgets.plot_data import PlotData
-from tui.desk.widgets.plot_points import band_ends, drawn_measurements, plot_curves, plot_points, point_words
+from tui.desk.widgets.plot_points import band_ends, plot_curves, plot_points, point_words
 from tui.model import Band, Candidate, Fit, Measurement
 
 NAN = math.nan
@@ -38,6 +38,7 @@ CANDIDATE = Candidate(
     ),
 )
 FIT = Fit("star", 1.0, 1, 0.5, 1.0, 1.0, pulls={"J": 0.4, "W3": 8.2, "W4": 0.0})
+DRAWN = [one for one in CANDIDATE.measurements if one.band in BANDS]
 
 
 def test_points_carry_errors_limits_pulls_and_what_was_left_out():
@@ -47,7 +48,7 @@ def test_points_carry_errors_limits_pulls_and_what_was_left_out():
     assert points[2].error_high_jy == pytest.approx(0.02 * 0.02)  # no error given: the band's floor
     assert points[3].limit and points[3].error_high_jy == 0
     assert [point.pull for point in points] == [0.4, 0.4, 8.2, 0.0]
-    assert [one.band for one in drawn_measurements(CANDIDATE, BANDS)] == [point.band for point in points]
+    assert [one.band for one in DRAWN] == [point.band for point in points]
 
 
 def test_band_not_fitted_is_drawn_as_left_out():
@@ -91,7 +92,7 @@ def test_curves_have_letters_by_component_and_one_total():
 )
 def test_point_in_words(index, words):
     plot = PlotData(plot_points(CANDIDATE, BANDS, FIT, dropped={"W3"}))
-    assert point_words(plot, index, drawn_measurements(CANDIDATE, BANDS)[index]) == words
+    assert point_words(plot, index, DRAWN[index]) == words
 
 
 def test_a_band_that_the_drawn_fit_did_without_is_no_used_point():

@@ -12,7 +12,6 @@ DISC_AGE_MYR = 10.0  # gas-rich discs are mostly gone by then (Haisch, Lada & La
 DEBRIS_AGE_MYR = 100.0  # warm debris is common up to here (Wyatt 2008, ARA&A 46, 339)
 GIANT_LOGG = 3.5  # cm s-2 in dex: dwarfs of all masses lie above (Pecaut & Mamajek 2013 radii and masses)
 COMPACT_LOGG = 6.0  # dwarfs lie below; white dwarfs near 8
-HAS_FIELDS = ("otype", "sp_type")
 
 
 @dataclass(frozen=True, slots=True)

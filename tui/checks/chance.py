@@ -147,11 +147,6 @@ def galactic(candidate: Candidate) -> tuple[float, float]:
     return float(np.degrees(LON_NCP - np.arctan2(y, x)) % 360.0), float(np.degrees(np.arcsin(np.clip(sine, -1, 1))))
 
 
-def expected_in_survey(p: Sequence[float]) -> float:
-    """Chance alignments to expect over the stars searched: the sum of their probabilities, unknown ones left out."""
-    return float(np.nansum(np.asarray(p, dtype=float)))
-
-
 def chance_sentences(chance: Chance | None, n_searched: int | None) -> tuple[str, ...]:
     """Cautions: the beam is large and the excess faint, or the search is wide enough to meet such a source."""
     if chance is None:

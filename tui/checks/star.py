@@ -18,7 +18,7 @@ from tui.physics.fitting import FitBatch
 from tui.physics.statistics import ln_chi2_tail, sigma_of_ln_p
 
 KIND = "star"
-VERSION = 3  # raise it whenever the same candidate could get other numbers
+VERSION = 4  # raise it whenever the same candidate could get other numbers
 SEQUENCE_SCATTER_MAG = 0.25  # of real dwarfs about the mean sequence
 EVOLVED_MAG = 1.3  # more than any triple of equals (1.193 mag) explains
 DIM_MAG = -0.5
@@ -69,6 +69,7 @@ def one_evidence(
         *range_remarks(batch, row),
         *luminosity_remarks(*extra),
         *parallax_remarks(candidate, batch, row, settings),
+        *unknown_errors(candidate),
         *left_out,
         *source_remark(batch.problem.templates.photosphere),
     ]

@@ -9,7 +9,6 @@ import numpy as np
 
 from tui.model import FloatArray
 
-MAG_PER_EFOLD = 2.5 / np.log(10.0)  # magnitude error of a small fractional flux error
 # Riello et al. 2021, A&A 649, A3, appendix C.1: what to add to G where bright sources saturate, 2 < G < 8
 # (coefficients confirmed in a public code copy)
 BRIGHT_G = (-0.09892, 0.059, -0.009775, 0.0004934)

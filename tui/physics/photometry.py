@@ -22,11 +22,6 @@ def flux_from_mag(mag: ArrayLike, zero_point_jy: float) -> FloatArray:
     return zero_point_jy * np.exp(-MAG * np.asarray(mag, dtype=np.float64))
 
 
-def flux_error_from_mag(flux_jy: ArrayLike, mag_error: ArrayLike) -> FloatArray:
-    """Error in Jy of a flux density whose magnitude has the error `mag_error`: 0.4 ln 10 F sigma_m."""
-    return MAG * np.abs(np.asarray(flux_jy)) * np.asarray(mag_error)
-
-
 def mag_from_flux(flux_jy: ArrayLike, zero_point_jy: float) -> FloatArray:
     """Pogson magnitude; NaN where the flux is not positive."""
     flux = np.asarray(flux_jy, dtype=np.float64)

@@ -15,7 +15,6 @@ from typing import Any
 import numpy as np
 
 MAGIC = b"plainlight grids 1\n"
-ARRAY_TYPES = ("<f8", "<i8", "|b1")
 _DIGEST = 32
 _LENGTH = 8
 

@@ -122,11 +122,6 @@ class Session:
         """The settings as last read."""
         return self.basis.settings
 
-    def refresh_settings(self) -> Settings:
-        """Read the settings again, as someone may have set them since."""
-        self.basis = read_basis(self.connection)
-        return self.settings
-
     @property
     def reader_id(self) -> str | None:
         """The reviewer's id, or None for a reader without a handle."""

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from tui.desk.summary import reason_text
-from tui.desk.text import KEY_OF_CHECK, SHORT_CHECKS, fit, outcome_text, plural, safe, state_text
+from tui.desk.text import SHORT_CHECKS, fit, outcome_text, plural, safe, state_text
 from tui.desk.widgets.rows import Row, Span, fit_row, row_width
 from tui.model import CHECK_TITLES, CHECKS
 from tui.workflow.records import CandidateView
@@ -92,8 +92,3 @@ def check_row(width: int, view: CandidateView | None, current: str, pages: str =
     if pages and missing >= 1:
         line += [Span(" " * missing), Span(pages, "quiet")]
     return fit_row(line, width)
-
-
-def check_letters() -> str:
-    """The keys of the checks, in order."""
-    return " ".join(KEY_OF_CHECK[check] for check in CHECKS)

@@ -149,11 +149,6 @@ def pull_words(pull: float, limit: bool) -> str:
     return f"{abs(pull):.1f} sigma {'above' if pull > 0 else 'below'} the model"
 
 
-def drawn_measurements(candidate: Candidate, bands: Mapping[str, Band]) -> list[Measurement]:
-    """The measurements behind the points of `plot_points`, in the same order."""
-    return [one for one in candidate.measurements if one.band in bands and bands[one.band].pivot_um > 0]
-
-
 def fit_of(evidence: Evidence | None, index: int) -> Fit | None:
     """One of the evidence's fits, or None where there is none of that number."""
     if evidence is None or not 0 <= index < len(evidence.fits):
