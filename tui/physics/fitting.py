@@ -107,6 +107,7 @@ def fit(
     likeliest, unsettled = now, np.zeros(0, np.intp)
     for _ in range(LOOKS):
         rows, again = look_again(problem, kit, now.errors, sigma, looked, extra)
+        unsettled = rows[:0]
         if not rows.size:
             break
         looked, sigma = looked.put(rows, again), put(sigma, rows, now.errors.sigma[rows])
