@@ -34,6 +34,12 @@ def test_a_party_to_a_split_is_asked_once_more(stands):
     assert standing_sentence(row, view) == "Pending: blend split. It asks you once more."
 
 
+def test_many_reasons_are_counted(stands):
+    reason = "open:star;open:instrument;open:blend;split:dust"
+    row, view = stands({"outcome": "pending", "needs_me": False}, {"pending_reason": reason})
+    assert standing_sentence(row, view) == "Pending: 3 checks open, 1 split."
+
+
 def test_who_is_no_longer_done_is_told_what_is_left(stands):
     row, view = stands({"outcome": "pending", "done": False}, {"to_rule": ("dust",)})
     assert standing_sentence(row, view) == "Pending: blend split. You have 1 check left: warm dust."

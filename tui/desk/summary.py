@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from typing import TYPE_CHECKING
 
-from tui.desk.text import band_names, listed, plural
+from tui.desk.text import band_names, listed, plural, safe
 from tui.model import CHECK_TITLES, Evidence
 
 if TYPE_CHECKING:
@@ -14,6 +14,7 @@ if TYPE_CHECKING:
 ODD_PULL = 3.0  # sigma: a band that the sentence names
 PLAIN_PULL = 2.0  # sigma: a band that agrees with the star alone
 NAMED_BANDS = 4
+MANY = 3  # reasons beyond the first from which on they are counted
 PARTED = ", though by different checks"
 
 
@@ -42,7 +43,9 @@ def standing_sentence(row: QueueRow, view: CandidateView | None) -> str:
         return _sealed_sentence(row)
     reason = view.pending_reason if view else ""
     if row.outcome == "pending":
-        said = f"Pending: {reason_text(reason)}." if reason else "Pending."
+        many = reason.count(";") >= MANY
+        told = counted_reason(reason) if many else reason_text(reason)
+        said = f"Pending: {told}." if reason else "Pending."
         return f"{said} {_asked(row, view)}" if row.needs_me else said
     return f"You are done with it. The team's outcome: {row.outcome}{_cause(row, view)}."
 
@@ -56,6 +59,19 @@ def begun_sentence(view: CandidateView | None) -> str:
     """On which checks the reader has a note that is not yet recorded; empty where there is none."""
     begun = [CHECK_TITLES[check] for check in CHECK_TITLES if view is not None and view.drafts.get(check)]
     return f"A note is begun on {listed(begun)}." if begun else ""
+
+
+def counted_reason(reason: str) -> str:
+    """Why a candidate is pending, the checks counted instead of named.
+
+    >>> counted_reason("open:star;open:blend;split:dust;nodata:extinction")
+    '2 checks open, 1 split, 1 without data'
+    """
+    states = [piece.partition(":")[0] for piece in reason.split(";") if piece]
+    words = {state: {"nodata": "without data"}.get(state, safe(state)) for state in dict.fromkeys(states)}
+    said = [f"{states.count(state)} {word}" for state, word in words.items()]
+    first = plural(states.count(states[0]), "check") if states else ""
+    return ", ".join([f"{first} {words[states[0]]}", *said[1:]]) if states else ""
 
 
 def reason_text(reason: str) -> str:

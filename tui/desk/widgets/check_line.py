@@ -4,8 +4,8 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from tui.desk.summary import reason_text
-from tui.desk.text import SHORT_CHECKS, fit, outcome_text, plural, safe, state_text
+from tui.desk.summary import counted_reason, reason_text
+from tui.desk.text import SHORT_CHECKS, fit, outcome_text, safe, state_text
 from tui.desk.widgets.rows import Row, Span, fit_row, row_width
 from tui.model import CHECK_TITLES, CHECKS
 from tui.workflow.records import CandidateView
@@ -49,19 +49,6 @@ def standings_of(view: CandidateView) -> list[str]:
         reason = safe(reason_text(view.pending_reason))
         return [f"{outcome}: {reason}", f"{outcome}: {counted_reason(view.pending_reason)}", outcome]
     return [f"{outcome} by {safe(reason_text(view.cause))}", outcome] if view.cause else [outcome]
-
-
-def counted_reason(reason: str) -> str:
-    """Why a candidate is pending, the checks counted instead of named.
-
-    >>> counted_reason("open:star;open:blend;split:dust;nodata:extinction")
-    '2 checks open, 1 split, 1 without data'
-    """
-    states = [piece.partition(":")[0] for piece in reason.split(";") if piece]
-    words = {state: {"nodata": "without data"}.get(state, safe(state)) for state in dict.fromkeys(states)}
-    said = [f"{states.count(state)} {word}" for state, word in words.items()]
-    first = plural(states.count(states[0]), "check") if states else ""
-    return ", ".join([f"{first} {words[states[0]]}", *said[1:]]) if states else ""
 
 
 def outcome_style(outcome: str) -> str:
