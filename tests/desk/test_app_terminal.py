@@ -114,7 +114,7 @@ def test_a_terminal_that_goes_without_a_signal_ends_it(path):
     leader, follower = pty.openpty()
     fcntl.ioctl(follower, termios.TIOCSWINSZ, struct.pack("HHHH", 24, 80, 0, 0))
     process = subprocess.Popen(
-        [sys.executable, "-c", PROGRAM, path], stdin=follower, stdout=follower, stderr=subprocess.DEVNULL,
+        [sys.executable, "-c", PROGRAM, path], stdin=follower, stdout=follower, stderr=follower,
         start_new_session=True, env={**os.environ, "TERM": "xterm-256color", "COLUMNS": "80", "LINES": "24"},
     )  # fmt: skip
     os.close(follower)
@@ -122,6 +122,7 @@ def test_a_terminal_that_goes_without_a_signal_ends_it(path):
     while b"SM-0001" not in seen and time.monotonic() < ends:
         if select.select([leader], [], [], 0.1)[0]:
             seen += os.read(leader, 65536)
+    assert b"SM-0001" in seen
     os.close(leader)
     try:
         process.wait(LONGEST_S)
